@@ -1,0 +1,96 @@
+"""A book: the basis, what is promised, what is held, and how rates move."""
+
+from __future__ import annotations
+
+import hashlib
+from collections.abc import Iterator
+from dataclasses import dataclass, field, fields, is_dataclass
+from functools import cached_property
+from typing import Any
+
+import numpy as np
+
+from desk.book.basis import Basis
+from desk.book.flows import FlowTable
+from desk.book.holding import Holding
+from desk.book.model import History, RatesModel, RiskyAssets
+from desk.book.run import Run
+
+__all__ = ["Book", "Notes"]
+
+NoteValue = str | float | None
+
+
+@dataclass(frozen=True)
+class Notes:
+    """Further columns of one sheet, kept as they stand.
+
+    Attributes
+    ----------
+    sheet : str
+        Name of the sheet.
+    headings : tuple of str
+    rows : tuple of tuple
+        One entry a data row of the sheet, in its order, each with one value a heading.
+    """
+
+    sheet: str
+    headings: tuple[str, ...]
+    rows: tuple[tuple[NoteValue, ...], ...]
+
+
+@dataclass(frozen=True)
+class Book:
+    """A book.
+
+    Attributes
+    ----------
+    basis : Basis
+    liabilities : FlowTable
+    holdings : tuple of Holding
+    asset_flows : FlowTable
+        Ready-made flows on the asset side.
+    rates_model : RatesModel or None
+    risky_assets : RiskyAssets or None
+    run : Run
+    history : History or None
+    notes : tuple of Notes
+        Further columns, by sheet.
+    """
+
+    basis: Basis
+    liabilities: FlowTable
+    holdings: tuple[Holding, ...] = ()
+    asset_flows: FlowTable = field(default_factory=FlowTable.empty)
+    rates_model: RatesModel | None = None
+    risky_assets: RiskyAssets | None = None
+    run: Run = field(default_factory=Run)
+    history: History | None = None
+    notes: tuple[Notes, ...] = ()
+
+    @cached_property
+    def digest(self) -> str:
+        """SHA-256 of everything in the book, hexadecimal: equal books have equal digests."""
+        digest = hashlib.sha256()
+        for piece in _pieces(self):
+            digest.update(len(piece).to_bytes(8, "little"))
+            digest.update(piece)
+        return digest.hexdigest()
+
+
+def _pieces(value: Any) -> Iterator[bytes]:
+    """The contents of a record as bytes, in the order of its fields."""
+    if is_dataclass(value):
+        yield type(value).__name__.encode()
+        for item in fields(value):
+            yield item.name.encode()
+            yield from _pieces(getattr(value, item.name))
+    elif isinstance(value, np.ndarray):
+        yield repr((value.dtype.str, value.shape)).encode()
+        yield value.tobytes()
+    elif isinstance(value, tuple):
+        yield f"tuple {len(value)}".encode()
+        for entry in value:
+            yield from _pieces(entry)
+    else:
+        yield repr(value).encode()

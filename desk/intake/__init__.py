@@ -1,0 +1,1 @@
+"""Spreadsheets into a book and a list of faults."""

@@ -1,0 +1,1 @@
+"""Day counts, compounding, curves and short-rate models."""

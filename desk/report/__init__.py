@@ -1,0 +1,1 @@
+"""Results into workbooks, CSV and JSON."""

@@ -1,0 +1,1 @@
+"""Measures, and the standing of a book."""
