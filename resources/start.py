@@ -152,7 +152,16 @@ def set_up(*, extras: frozenset[str] = frozenset()) -> Path:
     target = f"{PROJECT}[{','.join(sorted(wanted))}]" if wanted else str(PROJECT)
     say("Installing the program and its libraries. The first time this takes a minute or two.")
     began = time.monotonic()
-    command = [python, "-m", "pip", "install", "--quiet", "--disable-pip-version-check", "--editable", target]
+    command = [
+        str(python),
+        "-m",
+        "pip",
+        "install",
+        "--quiet",
+        "--disable-pip-version-check",
+        "--editable",
+        target,
+    ]
     if subprocess.run(command, check=False, stdout=sys.stderr).returncode != 0:
         say("The installation failed; the lines above say why. A network connection is needed for it.")
         raise SystemExit(1)
@@ -244,9 +253,8 @@ def run_tests(python: Path, arguments: Sequence[str]) -> int:
 def main(arguments: Sequence[str]) -> int:
     """Set up, then run the tests, the command given, or the window."""
     if sys.version_info < OLDEST_PYTHON:
-        say(
-            f"Python {'.'.join(map(str, OLDEST_PYTHON))} or later is needed; this is {sys.version.split()[0]}."
-        )
+        oldest = ".".join(map(str, OLDEST_PYTHON))
+        say(f"Python {oldest} or later is needed; this is {sys.version.split()[0]}.")
         return 1
     tests = arguments[:1] == ["--tests"]
     python = set_up(extras=frozenset({"work"}) if tests else frozenset())
