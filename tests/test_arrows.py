@@ -33,9 +33,19 @@ MAY_IMPORT: dict[str, tuple[str, ...]] = {
 QT = {"PySide6", "PyQt6", "PyQt5", "PySide2", "shiboken6", "pyqtgraph"}
 QT_CORE_ONLY = {"window.document", "window.jobs"}
 LIBRARIES_OF_RATES = {"numpy", "scipy"}
-FILE_LIBRARIES = set(
-    ["csv", "io", "openpyxl", "pandas", "pathlib", "pickle", "python_calamine", "shutil", "sqlite3", "tempfile", "zipfile"]
-)
+FILE_LIBRARIES = {
+    "csv",
+    "io",
+    "openpyxl",
+    "pandas",
+    "pathlib",
+    "pickle",
+    "python_calamine",
+    "shutil",
+    "sqlite3",
+    "tempfile",
+    "zipfile",
+}
 
 
 def imported_names(tree: ast.Module) -> Iterator[str]:
