@@ -65,8 +65,8 @@ class FlowTable:
             raise ValueError("`line`, `time`, `amount`, `beta` and `date` must be of one length")
         if self.line.size and not 0 <= self.line.min() <= self.line.max() < len(self.line_names):
             raise ValueError("`line` must index `line_names`")
-        if not (np.isfinite(self.time).all() and np.isfinite(self.amount).all()):
-            raise ValueError("`time` and `amount` must be finite")
+        if not all(np.isfinite(array).all() for array in (self.time, self.amount, self.beta)):
+            raise ValueError("`time`, `amount` and `beta` must be finite")
 
     @classmethod
     def build(

@@ -2,13 +2,17 @@
 
 from __future__ import annotations
 
+import math
 from dataclasses import dataclass
 from datetime import date
 from enum import StrEnum
 
 from desk.rates.day_count import DayCount
 
-__all__ = ["Holding", "HoldingKind"]
+__all__ = ["COUPON_FREQUENCIES", "Holding", "HoldingKind"]
+
+COUPON_FREQUENCIES = (1, 2, 4, 12)
+"""Coupons a year that fall on whole months."""
 
 
 class HoldingKind(StrEnum):
@@ -56,3 +60,16 @@ class Holding:
     market_value: float | None = None
     units: float | None = None
     duration: float | None = None
+
+    def __post_init__(self) -> None:
+        """Check that the holding has what its kind needs."""
+        if self.kind in (HoldingKind.BOND, HoldingKind.ZERO) and self.maturity is None:
+            raise ValueError(f"`maturity` must be given for the {self.kind} {self.name!r}")
+        if self.kind is HoldingKind.BOND and self.frequency not in COUPON_FREQUENCIES:
+            raise ValueError(f"`frequency` must be 1, 2, 4 or 12 for the bond {self.name!r}")
+        for name in ("nominal", "coupon", "market_value", "duration"):
+            number = getattr(self, name)
+            if number is not None and not math.isfinite(number):
+                raise ValueError(f"`{name}` must be finite for {self.name!r}")
+        if self.duration is not None and self.duration < 0.0:
+            raise ValueError(f"`duration` must be at least 0 for {self.name!r}")

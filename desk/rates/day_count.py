@@ -1,7 +1,7 @@
 """Day counts: the time between two dates in years.
 
-The names are those of the trade. Act/Act ICMA needs the coupon periods of its bond and is met in
-`desk.book.holding`; all others need only the two dates.
+The names are those of the trade. Only conventions that need nothing but the two dates are here: a bond's
+coupons are whole parts of its yearly coupon, so no convention enters its flows, only their times.
 """
 
 from __future__ import annotations
@@ -79,7 +79,7 @@ def _calendar_years(date: DateArray) -> tuple[NDArray[np.float64], NDArray[np.fl
     first = years.astype("datetime64[D]")
     length = ((years + 1).astype("datetime64[D]") - first).astype(np.float64)
     passed = (date - first).astype(np.float64)
-    return years.astype(np.float64), passed / length
+    return years.astype(np.int64).astype(np.float64), passed / length
 
 
 def _thirty_day_months(first: DateArray, last: DateArray, *, european: bool) -> NDArray[np.float64]:
@@ -89,4 +89,4 @@ def _thirty_day_months(first: DateArray, last: DateArray, *, european: bool) -> 
     day_1 = np.minimum(day_1, 30)
     day_2 = np.where((day_2 == 31) & (european | (day_1 == 30)), 30, day_2)
     days = 360 * (year_2 - year_1) + 30 * (month_2 - month_1) + (day_2 - day_1)
-    return days.astype(np.float64)
+    return np.asarray(days, dtype=np.float64)

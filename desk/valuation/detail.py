@@ -1,0 +1,50 @@
+"""One line of the standing, opened into its flows."""
+
+from __future__ import annotations
+
+import numpy as np
+
+from desk.book import Book, Side
+from desk.valuation.measures import value_rows
+from desk.valuation.priced import priced_flows
+from desk.valuation.records import FlowDetail
+
+__all__ = ["line_flows"]
+
+
+def line_flows(book: Book, side: Side, line_number: int) -> FlowDetail:
+    """The flows of one line with discount factors and present values.
+
+    Parameters
+    ----------
+    book : Book
+    side : Side
+    line_number : int
+        The line's place on its side, from 0, in the order of the standing.
+
+    Returns
+    -------
+    FlowDetail
+        In the order of the book; the present values add up to that of the line. A fund shows the one row
+        that stands for it.
+
+    Raises
+    ------
+    IndexError
+        If the side has no such line.
+    ValueError
+        If the basis gives no curve.
+    """
+    priced = priced_flows(book, side)
+    flows = priced.flows
+    if not 0 <= line_number < len(flows.line_names):
+        raise IndexError(f"`line_number` must be from 0 to {len(flows.line_names) - 1}, not {line_number}")
+    kept = flows.line == line_number
+    rows = value_rows(flows.time[kept], flows.amount[kept], curve=book.basis.curve, spread=flows.spread[kept])
+    return FlowDetail(
+        date=priced.date[kept],
+        time=rows.time,
+        amount=rows.amount,
+        discount_factor=np.exp(-rows.exponent),
+        present_value=rows.value,
+    )

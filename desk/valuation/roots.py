@@ -1,0 +1,157 @@
+"""The rate at which flows are worth a given value, for many groups of flows at once."""
+
+from __future__ import annotations
+
+import numpy as np
+from numpy.typing import NDArray
+
+from desk.book.arrays import FloatArray, IntArray
+
+__all__ = ["solve_rates"]
+
+_MOST_STEPS = 100
+_LARGEST_STEP_DOWN = 50.0  # in the exponent rate · time: e^50 is far from the largest float
+_SMALL_STEP = 1e-8  # in the exponent; the error left after the step is about its square
+_SEARCHED = np.linspace(np.log(0.5), np.log(2.0), 57)
+
+
+def solve_rates(
+    group: IntArray,
+    time: FloatArray,
+    amount: FloatArray,
+    *,
+    target: FloatArray,
+    start: FloatArray | None = None,
+) -> FloatArray:
+    """Continuous rates r with ``Σ amount · exp(-r · time) = target``, one a group.
+
+    Parameters
+    ----------
+    group : ndarray of int, shape (n,)
+        Each flow's group, from 0 to m - 1.
+    time : ndarray, shape (n,)
+        [years], at least 0.
+    amount : ndarray, shape (n,)
+        [currency]
+    target : ndarray, shape (m,)
+        What each group is to be worth [currency].
+    start : ndarray, shape (m,), optional
+        Where to begin; 0 by default.
+
+    Returns
+    -------
+    ndarray, shape (m,)
+        [1/year]; NaN where no rate does it, where every rate does, or where the flows have both signs and
+        not exactly one rate between -50 % and 100 % a year does it.
+
+    Notes
+    -----
+    For flows of one sign the logarithm of the sum is convex and falls in r, so Newton's method on it
+    reaches the one root from any start: at most one step is too long, to the left, after which the
+    iterates rise to the root. That step is bounded, to keep the exponent in range. Flows of both signs
+    are searched for changes of sign, and the one interval is narrowed by Newton's method with halving.
+    """
+    count = target.size
+    rates = np.full(count, np.nan)
+    later = time > 0.0
+    if not later.all():
+        target = target - np.bincount(group[~later], weights=amount[~later], minlength=count)
+        group, time, amount = group[later], time[later], amount[later]
+    begin = np.zeros(count) if start is None else np.where(np.isfinite(start), start, 0.0)
+    positive = _any_in_group(group, amount > 0.0, count)
+    negative = _any_in_group(group, amount < 0.0, count)
+    one_sign = (positive & ~negative & (target > 0.0)) | (negative & ~positive & (target < 0.0))
+    both_signs = positive & negative & np.isfinite(target)
+    with np.errstate(over="ignore", under="ignore", invalid="ignore", divide="ignore"):
+        if one_sign.any():
+            _newton_on_logarithm(rates, one_sign, group, time, amount, target, begin)
+        if both_signs.any():
+            _search(rates, both_signs, group, time, amount, target)
+    return rates
+
+
+def _any_in_group(group: IntArray, flag: NDArray[np.bool_], count: int) -> NDArray[np.bool_]:
+    """Whether a flag is set in each group, shape (m,)."""
+    found = np.zeros(count, dtype=np.bool_)
+    if flag.all():
+        found[group] = True
+    elif flag.any():
+        found[group[flag]] = True
+    return found
+
+
+def _newton_on_logarithm(
+    rates: FloatArray,
+    wanted: NDArray[np.bool_],
+    group: IntArray,
+    time: FloatArray,
+    amount: FloatArray,
+    target: FloatArray,
+    begin: FloatArray,
+) -> None:
+    """Write the rates of the wanted groups, whose flows are of one sign."""
+    count = target.size
+    longest = np.zeros(count)
+    np.maximum.at(longest, group, time)
+    rate = begin.copy()
+    active = wanted.copy()
+    rows_for = None
+    for _ in range(_MOST_STEPS):
+        if rows_for is None or not np.array_equal(rows_for, active):
+            if not active.all():
+                rows = active[group]
+                group, time, amount = group[rows], time[rows], amount[rows]
+            rows_for = active.copy()
+        worth = amount * np.exp(-rate[group] * time)
+        total = np.bincount(group, weights=worth, minlength=count)
+        slope = np.bincount(group, weights=worth * time, minlength=count)
+        # d/dr ln Σ = -slope/total
+        step = np.log(total / target) * total / slope
+        step = np.where(active, np.maximum(step, -_LARGEST_STEP_DOWN / longest), 0.0)
+        rate = rate + step
+        done = active & (np.abs(step) * longest <= _SMALL_STEP)
+        rates[done] = rate[done]
+        active = active & ~done & np.isfinite(step)
+        if not active.any():
+            return
+
+
+def _search(
+    rates: FloatArray,
+    wanted: NDArray[np.bool_],
+    group: IntArray,
+    time: FloatArray,
+    amount: FloatArray,
+    target: FloatArray,
+) -> None:
+    """Write the rates of the wanted groups, whose flows have both signs, where there is just one."""
+    count = target.size
+    rows = wanted[group]
+    group, time, amount = group[rows], time[rows], amount[rows]
+
+    def excess(rate: FloatArray) -> FloatArray:
+        worth = amount * np.exp(-rate[group] * time)
+        return np.asarray(np.bincount(group, weights=worth, minlength=count) - target)
+
+    # dimensions: rate searched, group
+    signs = np.where(np.array([excess(np.full(count, rate)) for rate in _SEARCHED]) >= 0.0, 1, -1)
+    changes = signs[1:] != signs[:-1]
+    single = wanted & (changes.sum(axis=0) == 1)
+    at = changes.argmax(axis=0)
+    low, high = _SEARCHED[at], _SEARCHED[at + 1]
+    sign_low = signs[at, np.arange(count)]
+    rate = 0.5 * (low + high)
+    for _ in range(_MOST_STEPS):
+        worth = amount * np.exp(-rate[group] * time)
+        value = np.bincount(group, weights=worth, minlength=count) - target
+        slope = np.bincount(group, weights=-worth * time, minlength=count)
+        same = np.where(value >= 0.0, 1, -1) == sign_low
+        low, high = np.where(same, rate, low), np.where(same, high, rate)
+        ahead = rate - value / slope
+        inside = (ahead >= low) & (ahead <= high)
+        following = np.where(inside, ahead, 0.5 * (low + high))
+        still = single & (np.abs(following - rate) > 1e-15 * (1.0 + np.abs(rate)))
+        rate = following
+        if not still.any():
+            break
+    rates[single] = rate[single]

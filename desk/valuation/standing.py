@@ -1,0 +1,202 @@
+"""The standing: the balance sheet valued at one date on one basis."""
+
+from __future__ import annotations
+
+from collections.abc import Callable
+
+import numpy as np
+
+from desk import __version__
+from desk.book import Book, PricedFlows, Provenance, Side
+from desk.book.arrays import FloatArray, IntArray
+from desk.valuation.measures import (
+    KEY_TERMS,
+    ValuedRows,
+    key_rate_durations,
+    measure,
+    measure_groups,
+    value_flows,
+)
+from desk.valuation.priced import priced_flows
+from desk.valuation.records import Condition, KeyRates, LineStanding, Periods, Standing
+
+__all__ = ["DURATION_TOLERANCE", "redington_conditions", "stand", "undiscounted_periods"]
+
+DURATION_TOLERANCE = 1e-4
+"""How far the duration condition may be missed, as a part of the liabilities' figure."""
+
+_YEARS_LISTED_WITHOUT_GAPS = 1000
+_YEAR_SLACK = 1e-9  # a twelfth added twelve times is still the first year
+
+
+def stand(book: Book, *, progress: Callable[[float], None] | None = None) -> Standing:
+    """Value a book.
+
+    Parameters
+    ----------
+    book : Book
+    progress : callable, optional
+        Called with the part done, from 0 to 1; it may stop the work by raising.
+
+    Returns
+    -------
+    Standing
+        An empty side is worth 0, with NaN for what has no meaning then.
+
+    Raises
+    ------
+    ValueError
+        If the basis gives no curve.
+    """
+    report = progress or (lambda _: None)
+    report(0.0)
+    curve = book.basis.curve
+    priced = {side: priced_flows(book, side) for side in Side}
+    report(0.3)
+    rows = {side: value_flows(priced[side].flows, curve) for side in Side}
+    total = {side: measure(rows[side]) for side in Side}
+    report(0.5)
+    lines = tuple(line for side in Side for line in _lines(book, priced[side].flows, rows[side]))
+    report(0.8)
+    assets, liabilities = total[Side.ASSETS], total[Side.LIABILITIES]
+    first = {side: float((rows[side].time * rows[side].value).sum()) for side in Side}
+    worth_a, worth_l = assets.present_value, liabilities.present_value
+    standing = Standing(
+        valuation_date=book.basis.valuation_date,
+        currency=book.basis.currency,
+        assets=assets,
+        liabilities=liabilities,
+        surplus=worth_a - worth_l,
+        funding_ratio=worth_a / worth_l if worth_l else np.nan,
+        # D_A - D_L · L / A, written with the sums so that an empty side needs no duration
+        duration_gap=(first[Side.ASSETS] - first[Side.LIABILITIES]) / worth_a if worth_a else np.nan,
+        dv01_gap=assets.dv01 - liabilities.dv01,
+        redington=redington_conditions(rows[Side.ASSETS], rows[Side.LIABILITIES]),
+        key_rates=_key_rates(rows[Side.ASSETS], rows[Side.LIABILITIES]),
+        periods=undiscounted_periods(priced[Side.ASSETS].flows, priced[Side.LIABILITIES].flows),
+        lines=lines,
+        faults=tuple(fault for side in Side for fault in priced[side].faults),
+        provenance=Provenance(book_digest=book.digest, program_version=__version__),
+    )
+    report(1.0)
+    return standing
+
+
+def _lines(book: Book, flows: PricedFlows, rows: ValuedRows) -> list[LineStanding]:
+    """The lines of one side, in the order of the book."""
+    count = len(flows.line_names)
+    measures = measure_groups(rows, flows.line, count)
+    flow_count = np.bincount(flows.line[flows.is_flow], minlength=count).tolist()
+    spread = _common_spread(flows, count)
+    holdings = book.holdings if flows.side is Side.ASSETS else ()
+    kinds = [holding.kind.value for holding in holdings] + ["flows"] * (count - len(holdings))
+    market = [holding.market_value for holding in holdings] + [None] * (count - len(holdings))
+    return [
+        LineStanding(flows.side, name, kind, of_line, None if np.isnan(own) else own, stated, number)
+        for name, kind, of_line, own, stated, number in zip(
+            flows.line_names, kinds, measures, spread, market, flow_count, strict=True
+        )
+    ]
+
+
+def _common_spread(flows: PricedFlows, count: int) -> list[float]:
+    """The spread of each line; NaN where its rows differ or it has none."""
+    common = np.full(count, np.nan)
+    common[flows.line] = flows.spread
+    differs = flows.line[flows.spread != common[flows.line]]
+    common[differs] = np.nan
+    return list(common.tolist())
+
+
+def _key_rates(assets: ValuedRows, liabilities: ValuedRows) -> KeyRates:
+    """Key-rate figures of both sides."""
+    durations_a, dv01_a = key_rate_durations(assets)
+    durations_l, dv01_l = key_rate_durations(liabilities)
+    return KeyRates(np.array(KEY_TERMS), durations_a, durations_l, dv01_a, dv01_l)
+
+
+def redington_conditions(assets: ValuedRows, liabilities: ValuedRows) -> tuple[Condition, ...]:
+    """Redington's three conditions, each with the two figures it compares.
+
+    Parameters
+    ----------
+    assets, liabilities : ValuedRows
+
+    Returns
+    -------
+    tuple of Condition
+        ``present_value``, ``duration``, ``convexity``: the sums of value, value times time and value
+        times time squared.
+
+    Notes
+    -----
+    The duration condition, an equality, holds within `DURATION_TOLERANCE` of the liabilities' figure.
+
+    References
+    ----------
+    Redington, F.M., "Review of the Principles of Life-Office Valuations", Journal of the Institute of
+    Actuaries 78, 1952, pp. 286-340.
+    """
+    figures = [
+        [float((rows.value * rows.time**power).sum()) for rows in (assets, liabilities)]
+        for power in (0, 1, 2)
+    ]
+    (worth_a, worth_l), (first_a, first_l), (second_a, second_l) = figures
+    return (
+        Condition(
+            "present_value",
+            "The assets are worth at least as much as the liabilities.",
+            worth_a,
+            worth_l,
+            worth_a >= worth_l,
+        ),
+        Condition(
+            "duration",
+            "Present value times duration is the same on both sides, "
+            f"within {DURATION_TOLERANCE:.2%} of the liabilities' figure.",
+            first_a,
+            first_l,
+            abs(first_a - first_l) <= DURATION_TOLERANCE * abs(first_l),
+        ),
+        Condition(
+            "convexity",
+            "Present value times convexity is greater for the assets than for the liabilities.",
+            second_a,
+            second_l,
+            second_a > second_l,
+        ),
+    )
+
+
+def undiscounted_periods(assets: PricedFlows, liabilities: PricedFlows) -> Periods:
+    """Undiscounted flows of both sides by year from the valuation date.
+
+    Parameters
+    ----------
+    assets, liabilities : PricedFlows
+
+    Returns
+    -------
+    Periods
+        From year 1 to the year of the last flow. Beyond year 1,000 years without a flow are left out.
+    """
+    years = [_year(side) for side in (assets, liabilities)]
+    last = max((int(year.max()) for year in years if year.size), default=0)
+    if last <= _YEARS_LISTED_WITHOUT_GAPS:
+        listed = np.arange(1, last + 1)
+    else:
+        listed = np.unique(np.concatenate(years))
+    amounts: list[FloatArray] = [
+        np.bincount(
+            np.searchsorted(listed, year), weights=side.amount[side.is_flow], minlength=listed.size
+        ).astype(np.float64)
+        for year, side in zip(years, (assets, liabilities), strict=True)
+    ]
+    net = amounts[0] - amounts[1]
+    return Periods(listed, amounts[0], amounts[1], net, np.cumsum(net))
+
+
+def _year(flows: PricedFlows) -> IntArray:
+    """The year each payment falls in, counted from 1."""
+    time = np.minimum(flows.time[flows.is_flow], 2.0**53)
+    return np.asarray(np.maximum(np.ceil(time - _YEAR_SLACK), 1.0), dtype=np.int64)
