@@ -11,6 +11,8 @@ __all__ = ["Pieces", "cubic_zero", "linear_zero", "log_linear", "monotone_convex
 
 FloatArray = NDArray[np.float64]
 
+_SHORTEST = 1e-12  # of an interval
+
 
 @dataclass(frozen=True, eq=False)
 class Pieces:
@@ -188,19 +190,26 @@ def _regions(left: float, right: float) -> list[tuple[float, float, tuple[float,
     """
     if left == 0.0 and right == 0.0:
         return [(0.0, 1.0, (0.0, 0.0, 0.0))]
-    if left * right >= 0.0:  # region (iv)
-        turn = right / (left + right)
+    if min(left, right) >= 0.0 or max(left, right) <= 0.0:  # region (iv)
+        turn = _snapped(right / (left + right))
         low = -left * right / (left + right)
         pieces = [_falling(turn, left, low), (turn, 1.0 - turn, _rising(1.0 - turn, low, right))]
     elif abs(right) > 2.0 * abs(left):  # region (ii)
-        turn = (right + 2.0 * left) / (right - left)
+        turn = _snapped((right + 2.0 * left) / (right - left))
         pieces = [(0.0, turn, (left, 0.0, 0.0)), (turn, 1.0 - turn, _rising(1.0 - turn, left, right))]
     elif abs(right) < 0.5 * abs(left):  # region (iii)
-        turn = 3.0 * right / (right - left)
+        turn = _snapped(3.0 * right / (right - left))
         pieces = [_falling(turn, left, right), (turn, 1.0 - turn, (right, 0.0, 0.0))]
     else:  # region (i)
         pieces = [(0.0, 1.0, (left, -4.0 * left - 2.0 * right, 3.0 * (left + right)))]
     return [piece for piece in pieces if piece[1] > 0.0]
+
+
+def _snapped(turn: float) -> float:
+    """The turn, moved to an end of the interval where the piece between them would be too short to divide by."""
+    if turn < _SHORTEST:
+        return 0.0
+    return 1.0 if turn > 1.0 - _SHORTEST else turn
 
 
 def _falling(length: float, start: float, end: float) -> tuple[float, float, tuple[float, float, float]]:

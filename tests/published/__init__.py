@@ -1,0 +1,1 @@
+"""Checks against published figures, each with its source beside it."""
