@@ -59,7 +59,7 @@ def stand(book: Book, *, progress: Callable[[float], None] | None = None) -> Sta
     lines = tuple(line for side in Side for line in _lines(book, priced[side].flows, rows[side]))
     report(0.8)
     assets, liabilities = total[Side.ASSETS], total[Side.LIABILITIES]
-    first = {side: float((rows[side].time * rows[side].value).sum()) for side in Side}
+    first = {side: _moments(rows[side])[1] for side in Side}
     worth_a, worth_l = assets.present_value, liabilities.present_value
     standing = Standing(
         valuation_date=book.basis.valuation_date,
@@ -80,6 +80,13 @@ def stand(book: Book, *, progress: Callable[[float], None] | None = None) -> Sta
     )
     report(1.0)
     return standing
+
+
+def _moments(rows: ValuedRows) -> tuple[float, float, float]:
+    """Sums of value, value times time, and value times time squared."""
+    with np.errstate(over="ignore", invalid="ignore"):
+        timed = rows.value * rows.time
+        return float(rows.value.sum()), float(timed.sum()), float((timed * rows.time).sum())
 
 
 def _lines(book: Book, flows: PricedFlows, rows: ValuedRows) -> list[LineStanding]:
@@ -137,11 +144,8 @@ def redington_conditions(assets: ValuedRows, liabilities: ValuedRows) -> tuple[C
     Redington, F.M., "Review of the Principles of Life-Office Valuations", Journal of the Institute of
     Actuaries 78, 1952, pp. 286-340.
     """
-    figures = [
-        [float((rows.value * rows.time**power).sum()) for rows in (assets, liabilities)]
-        for power in (0, 1, 2)
-    ]
-    (worth_a, worth_l), (first_a, first_l), (second_a, second_l) = figures
+    worth_a, first_a, second_a = _moments(assets)
+    worth_l, first_l, second_l = _moments(liabilities)
     return (
         Condition(
             "present_value",
@@ -192,8 +196,9 @@ def undiscounted_periods(assets: PricedFlows, liabilities: PricedFlows) -> Perio
         ).astype(np.float64)
         for year, side in zip(years, (assets, liabilities), strict=True)
     ]
-    net = amounts[0] - amounts[1]
-    return Periods(listed, amounts[0], amounts[1], net, np.cumsum(net))
+    with np.errstate(over="ignore", invalid="ignore"):
+        net = amounts[0] - amounts[1]
+        return Periods(listed, amounts[0], amounts[1], net, np.cumsum(net))
 
 
 def _year(flows: PricedFlows) -> IntArray:
