@@ -137,7 +137,10 @@ def exact(value: float | None, *, locale: QLocale | None = None, percent: bool =
     """
     if value is None or not math.isfinite(value):
         return ""
+    locale = locale or shown_locale()
     text = repr(float(value))
+    if not percent and "e" not in text:
+        return text.removesuffix(".0").replace(".", locale.decimalPoint()) if value else "0"
     mantissa, _, power = text.partition("e")
     exponent = int(power or 0) + (2 if percent else 0)
     sign = "-" if mantissa.startswith("-") else ""
@@ -153,7 +156,6 @@ def exact(value: float | None, *, locale: QLocale | None = None, percent: bool =
         exponent = 0
     whole = whole.lstrip("0") or "0"
     part = part.rstrip("0")
-    locale = locale or shown_locale()
     text = whole + (locale.decimalPoint() + part if part else "")
     return sign + text + (f"E{exponent:+d}" if exponent else "")
 
