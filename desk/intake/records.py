@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from collections.abc import Sequence
 from dataclasses import dataclass
 from datetime import date, datetime, time, timedelta
 from pathlib import Path
@@ -20,7 +21,7 @@ class SheetGrid:
     Attributes
     ----------
     name : str
-    rows : list of list
+    rows : sequence of sequence
         Cell values from A1 on; shared with the parser and not to be changed. Rows may differ in length.
     fields : dict of int to str
         For each column (0-based) that the book takes something from, what it takes.
@@ -30,7 +31,7 @@ class SheetGrid:
     """
 
     name: str
-    rows: list[list[Cell]]
+    rows: Sequence[Sequence[Cell]]
     fields: dict[int, str]
     heading_row: int | None
     hidden: bool

@@ -1,0 +1,321 @@
+"""Cells into numbers, dates, names and choices, with every fault on the way."""
+
+from __future__ import annotations
+
+import re
+from collections.abc import Mapping, Sequence
+from dataclasses import dataclass
+from datetime import date
+from enum import StrEnum
+from typing import TypeVar
+
+import numpy as np
+from numpy.typing import NDArray
+
+from desk.book import Severity
+from desk.intake.columns import Kind, column_letters
+from desk.intake.faults import FaultList
+from desk.intake.layout import IntArray, SourceSheet
+
+__all__ = ["Cells", "match_choice"]
+
+BoolArray = NDArray[np.bool_]
+FloatArray = NDArray[np.float64]
+Choice = TypeVar("Choice", bound=StrEnum)
+
+_PLAIN_NUMBER = re.compile(r"\s*[+-]?(?:\d+(?:\.\d*)?|\.\d+)(?:[eE][+-]?\d{1,3})?\s*", re.ASCII)
+_GROUPED_NUMBER = re.compile(r"\s*[+-]?[1-9]\d{0,2}(?:\.\d{3})+\s*", re.ASCII)
+_ISO_DATE = re.compile(r"\s*(\d{4})-(\d{2})-(\d{2})\s*", re.ASCII)
+_EMPTY_DATE = np.datetime64("NaT", "D")
+_EPOCH = np.datetime64("1970-01-01", "D")
+
+
+def _plain_number(text: str) -> float | None:
+    """The number that `text` states beyond doubt; None where there is doubt."""
+    if _PLAIN_NUMBER.fullmatch(text) and not _GROUPED_NUMBER.fullmatch(text):
+        number = float(text)
+        return number if np.isfinite(number) else None
+    return None
+
+
+def _iso_date(text: str) -> np.datetime64 | None:
+    """The date that `text` states as yyyy-mm-dd; None otherwise."""
+    match = _ISO_DATE.fullmatch(text)
+    if match is None:
+        return None
+    try:
+        return np.datetime64(date(*map(int, match.groups())), "D")
+    except ValueError:
+        return None
+
+
+def match_choice(text: str, choices: type[Choice]) -> Choice | None:
+    """The choice that `text` names, without regard to case, blanks, hyphens and underlines."""
+    key = re.sub(r"[\s_-]+", "", text).casefold()
+    for choice in choices:
+        if key == re.sub(r"[\s_-]+", "", choice.value).casefold():
+            return choice
+    return None
+
+
+@dataclass(eq=False)
+class Cells:
+    """Some cells of one column.
+
+    Attributes
+    ----------
+    sheet : SourceSheet
+    column : int or None
+        None where the source has no such column: every cell is then blank and no fault is added.
+    rows : ndarray of int, shape (n,)
+    faults : FaultList
+    """
+
+    sheet: SourceSheet
+    column: int | None
+    rows: IntArray
+    faults: FaultList
+
+    def __post_init__(self) -> None:
+        """Take the cells out of their column."""
+        count = self.rows.size
+        if self.column is None or self.column >= len(self.sheet.data.columns):
+            self.kinds = np.zeros(count, dtype=np.uint8)
+            self.values = np.zeros(count)
+            self.texts: list[str] = []
+            self.broken: Mapping[int, str] = {}
+            return
+        column = self.sheet.data.columns[self.column]
+        self.kinds = column.kinds[self.rows]
+        self.values = column.values[self.rows]
+        self.texts = column.texts
+        self.broken = self.sheet.broken.get(self.column, {})
+
+    @property
+    def filled(self) -> BoolArray:
+        """Which cells hold something, an error counting as something, shape (n,)."""
+        filled = np.asarray(self.kinds != Kind.BLANK)
+        if self.broken:
+            filled |= np.isin(self.rows, list(self.broken))
+        return filled
+
+    def fault(
+        self, entry: int, found: str, expected: str, mend: str, *, severity: Severity = Severity.GRAVE
+    ) -> None:
+        """Add a fault at one of the cells."""
+        column = -1 if self.column is None else self.column
+        self.faults.add(
+            found,
+            expected,
+            mend,
+            sheet=self.sheet.name,
+            row=int(self.rows[entry]),
+            column=column,
+            severity=severity,
+        )
+
+    def mild(self, entry: int, found: str, expected: str, mend: str) -> None:
+        """Add a mild fault at one of the cells."""
+        self.fault(entry, found, expected, mend, severity=Severity.MILD)
+
+    def each(self, flagged: BoolArray, found: str, expected: str, mend: str, *, mild: bool = False) -> None:
+        """Add a fault at each flagged cell; ``{}`` in `found` stands for what the cell holds."""
+        severity = Severity.MILD if mild else Severity.GRAVE
+        for entry in np.flatnonzero(flagged).tolist():
+            text = found.replace("{}", self.stated(entry)) if "{}" in found else found
+            self.fault(entry, text, expected, mend, severity=severity)
+
+    def stated(self, entry: int) -> str:
+        """What a cell holds, as a fault quotes it."""
+        if self.column is None:
+            return "nothing"
+        return self.sheet.data.columns[self.column].stated(int(self.rows[entry]))
+
+    def _odd(self, entry: int, expected: str, required: bool) -> None:
+        """Add the fault of a cell that holds nothing, or an error."""
+        row = int(self.rows[entry])
+        if row in self.broken:
+            self.fault(entry, self.broken[row], expected, "Mend the formula, or write the value itself.")
+        elif required:
+            self.fault(entry, "the cell is empty", expected, f"Write {expected} into it.")
+
+    def _required(self, required: bool | BoolArray) -> BoolArray:
+        if self.column is None:
+            return np.zeros(self.rows.size, dtype=np.bool_)
+        return np.broadcast_to(np.asarray(required, dtype=np.bool_), self.rows.shape)
+
+    def numbers(self, expected: str, *, required: bool | BoolArray = True) -> FloatArray:
+        """The cells as numbers; NaN where there is none.
+
+        Parameters
+        ----------
+        expected : str
+            What each cell should hold, for the faults: "an amount".
+        required : bool or ndarray of bool, shape (n,)
+            Which cells must hold one.
+
+        Returns
+        -------
+        ndarray, shape (n,)
+        """
+        good = (self.kinds == Kind.NUMBER) & np.isfinite(self.values)
+        if good.all():
+            return self.values
+        numbers = np.where(good, self.values, np.nan)
+        if self.column is None:
+            return numbers
+        parsed = [_plain_number(text) for text in self.texts]
+        must = self._required(required)
+        blank = self.kinds == Kind.BLANK
+        odd = ~good if self.broken else ~good & (~blank | must)
+        for entry in np.flatnonzero(odd).tolist():
+            if blank[entry]:
+                self._odd(entry, expected, bool(must[entry]))
+                continue
+            number = parsed[int(self.values[entry])] if self.kinds[entry] == Kind.TEXT else None
+            if number is not None:
+                numbers[entry] = number
+                self.mild(
+                    entry,
+                    f"{self.stated(entry)} stands where a number belongs; {number:.12g} is taken",
+                    expected,
+                    "Turn the text into a number.",
+                )
+            else:
+                self.fault(
+                    entry,
+                    f"{self.stated(entry)} stands where a number belongs",
+                    expected,
+                    "Write it as a plain number, without signs of grouping, units or words.",
+                )
+        return numbers
+
+    def dates(self, expected: str, *, required: bool | BoolArray = True) -> NDArray[np.datetime64]:
+        """The cells as dates, datetime64[D]; NaT where there is none."""
+        good = self.kinds == Kind.DATE
+        dates = np.full(self.rows.size, _EMPTY_DATE)
+        dates[good] = _EPOCH + self.values[good].astype(np.int64)
+        if good.all() or self.column is None:
+            return dates
+        must = self._required(required)
+        for entry in np.flatnonzero(~good).tolist():
+            kind = self.kinds[entry]
+            if kind == Kind.BLANK:
+                self._odd(entry, expected, bool(must[entry]))
+            elif kind == Kind.MOMENT:
+                days, rest = divmod(float(self.values[entry]), 86_400.0)
+                dates[entry] = _EPOCH + int(days)
+                if rest:
+                    self.mild(
+                        entry,
+                        f"{self.stated(entry)} holds a time of day, which is left out",
+                        expected,
+                        "Write the date alone.",
+                    )
+            elif kind == Kind.TEXT and (day := _iso_date(self.texts[int(self.values[entry])])) is not None:
+                dates[entry] = day
+                self.mild(
+                    entry,
+                    f"{self.stated(entry)} stands where a date belongs; {day} is taken",
+                    expected,
+                    "Turn the text into a date.",
+                )
+            elif kind == Kind.NUMBER:
+                self.fault(
+                    entry,
+                    f"the number {self.stated(entry)} stands where a date belongs",
+                    expected,
+                    "Format the cell as a date, or write the date.",
+                )
+            else:
+                self.fault(
+                    entry,
+                    f"{self.stated(entry)} stands where a date belongs",
+                    expected,
+                    "Write it as a date of the spreadsheet, or as yyyy-mm-dd.",
+                )
+        return dates
+
+    def names(self, expected: str) -> tuple[list[str], IntArray]:
+        """The cells as names.
+
+        Returns
+        -------
+        names : list of str
+            In order of first appearance.
+        number : ndarray of int, shape (n,)
+            Each cell's name, as an index into `names`; -1 where there is none.
+        """
+        count = self.rows.size
+        number = np.full(count, -1, dtype=np.int64)
+        index: dict[str, int] = {}
+        is_text = self.kinds == Kind.TEXT
+        blank = self.kinds == Kind.BLANK
+        spelt = int(np.count_nonzero(~is_text & ~blank))
+        if self.column is not None:
+            for entry in np.flatnonzero(blank).tolist():
+                self._odd(entry, expected, True)
+        if not spelt:
+            code = self.values[is_text].astype(np.int64)
+            first = np.full(len(self.texts), count, dtype=np.int64)
+            # Of several writes to one place the last stands: backwards, that is the first appearance.
+            first[code[::-1]] = np.arange(code.size - 1, -1, -1)
+            table = np.full(len(self.texts), -1, dtype=np.int64)
+            for place in np.argsort(first, kind="stable").tolist():
+                if first[place] < count:
+                    table[place] = index.setdefault(self.texts[place], len(index))
+            number[is_text] = table[code]
+            return list(index), number
+        for entry in np.flatnonzero(~blank).tolist():
+            text = self.sheet.data.text(int(self.rows[entry]), self.column or 0)
+            number[entry] = index.setdefault(text, len(index))
+        first_spelt = int(np.flatnonzero(~is_text & ~blank)[0])
+        letters = column_letters(self.column or 0)
+        self.mild(
+            first_spelt,
+            f"{spelt} cell(s) of column {letters} hold no text, the first {self.stated(first_spelt)}; "
+            "they are taken as names",
+            expected,
+            "Nothing needs to be done if these are names.",
+        )
+        return list(index), number
+
+    def texts_of(self, expected: str, *, required: bool | BoolArray = True) -> list[str]:
+        """The cells as texts, each as it stands; "" where there is none."""
+        must = self._required(required)
+        result = []
+        for entry in range(self.rows.size):
+            if self.kinds[entry] == Kind.BLANK:
+                if self.column is not None:
+                    self._odd(entry, expected, bool(must[entry]))
+                result.append("")
+            else:
+                result.append(self.sheet.data.text(int(self.rows[entry]), self.column or 0))
+        return result
+
+    def choices(
+        self, choices: type[Choice], expected: str, *, required: bool | BoolArray = True
+    ) -> list[Choice | None]:
+        """The cells as one of a few words; None where there is none."""
+        result: list[Choice | None] = []
+        words = ", ".join(choice.value for choice in choices)
+        for entry, text in enumerate(self.texts_of(f"{expected}: one of {words}", required=required)):
+            choice = match_choice(text, choices) if text else None
+            if text and choice is None:
+                self.fault(
+                    entry,
+                    f"{self.stated(entry)} is no known {expected.removeprefix('a ').removeprefix('an ')}",
+                    f"one of {words}",
+                    _suggestion(text, [choice.value for choice in choices]),
+                )
+            result.append(choice)
+        return result
+
+
+def _suggestion(text: str, words: Sequence[str]) -> str:
+    import difflib
+
+    close = difflib.get_close_matches(text.casefold(), [word.casefold() for word in words], 1, 0.6)
+    if close:
+        return f'Did you mean "{next(word for word in words if word.casefold() == close[0])}"?'
+    return "Write one of these words."

@@ -1,0 +1,51 @@
+"""Checks that several sheets share."""
+
+from __future__ import annotations
+
+import numpy as np
+from numpy.typing import NDArray
+
+from desk.intake.cells import Cells
+
+__all__ = ["check_correlations", "check_not_negative", "check_rates"]
+
+FloatArray = NDArray[np.float64]
+
+
+def check_rates(
+    cells: Cells, values: FloatArray, what: str, *, most: float = 1.0, least: float = -0.5
+) -> None:
+    """Report rates that are plainly meant in per cent, or that no rate can be."""
+    with np.errstate(invalid="ignore"):
+        high, low = np.flatnonzero(values > most), np.flatnonzero(values < least)
+    for entry in high.tolist():
+        value = float(values[entry])
+        cells.fault(
+            entry,
+            f"{what} is {value:.12g}, which is {value:.6g} times the whole a year",
+            f"{what} as a fraction or in a cell formatted as per cent",
+            f"Write {value:.12g} % or {value / 100:.12g}.",
+        )
+    for entry in low.tolist():
+        value = float(values[entry])
+        cells.fault(
+            entry,
+            f"{what} is {value:.12g}, below {least:.0%}",
+            f"{what} as a fraction or in a cell formatted as per cent",
+            f"Write {value:.12g} % or {value / 100:.12g}, or correct the figure.",
+        )
+
+
+def check_not_negative(cells: Cells, values: FloatArray, what: str, *, zero_allowed: bool = True) -> None:
+    """Report numbers that must not be negative."""
+    with np.errstate(invalid="ignore"):
+        flagged = values < 0.0 if zero_allowed else values <= 0.0
+    wanted = "at least 0" if zero_allowed else "above 0"
+    cells.each(flagged, f"{what} is {{}}", f"{what} {wanted}", "Correct the figure.")
+
+
+def check_correlations(cells: Cells, values: FloatArray, what: str) -> None:
+    """Report numbers that are no correlation."""
+    with np.errstate(invalid="ignore"):
+        flagged = np.abs(values) > 1.0
+    cells.each(flagged, f"{what} is {{}}", "a correlation between -1 and 1", "Correct the figure.")
