@@ -53,8 +53,10 @@ def read_holdings(table: Table, faults: FaultList, *, valuation_date: date | Non
     check_rates(cells["Coupon"], coupon, "the coupon")
     odd = ~np.isnan(frequency) & ~np.isin(frequency, _FREQUENCIES)
     cells["Frequency"].each(odd, "the frequency is {}", "1, 2, 4 or 12 coupons a year", "Correct the figure.")
+    with np.errstate(invalid="ignore"):
+        unlikely = (duration < 0.0) | (duration > 100.0)
     cells["Duration"].each(
-        np.abs(duration) > 100.0, "the duration is {}", "a duration in years", "Correct it."
+        unlikely, "the duration is {}", "a duration from 0 to 100 years", "Correct the figure."
     )
     with np.errstate(invalid="ignore"):
         cells["Nominal"].each(

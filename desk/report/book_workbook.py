@@ -15,7 +15,6 @@ from desk.report.safe_cells import LONGEST_TEXT, clean_text, put, write_whole
 
 if TYPE_CHECKING:
     from openpyxl import Workbook
-    from openpyxl.worksheet._write_only import WriteOnlyWorksheet
 
 __all__ = ["write_book"]
 
@@ -270,14 +269,12 @@ def _write_rows(
         written.append(cells + [_cell(written, note) for note in next(further, ())])
 
 
-def _start(
-    workbook: Workbook, sheet: str, headings: Sequence[str], further: Sequence[str]
-) -> WriteOnlyWorksheet:
+def _start(workbook: Workbook, sheet: str, headings: Sequence[str], further: Sequence[str]) -> Any:
     """A new sheet with its headings, frozen."""
     from openpyxl.styles import Font
     from openpyxl.utils import get_column_letter
 
-    written: WriteOnlyWorksheet = workbook.create_sheet(sheet)
+    written: Any = workbook.create_sheet(sheet)
     written.freeze_panes = "A2"
     for number, heading in enumerate([*headings, *further], start=1):
         width = _WIDTHS.get(heading, _WIDTH) if number <= len(headings) else _NOTE_WIDTH
@@ -294,7 +291,7 @@ def _start(
     return written
 
 
-def _cell(written: WriteOnlyWorksheet, value: Value, number_format: str | None = None) -> Any:
+def _cell(written: Any, value: Value, number_format: str | None = None) -> Any:
     from openpyxl.cell import WriteOnlyCell
 
     if isinstance(value, str):
