@@ -7,11 +7,36 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import NDArray
 
-__all__ = ["Pieces", "cubic_zero", "linear_zero", "log_linear", "monotone_convex"]
+__all__ = ["Pieces", "cubic_zero", "linear_zero", "locate", "log_linear", "monotone_convex"]
 
 FloatArray = NDArray[np.float64]
 
 _SHORTEST = 1e-12  # of an interval
+_MANY_TIMES = 500
+_FEW_STARTS = 80
+
+
+def locate(start: FloatArray, time: FloatArray) -> NDArray[np.intp]:
+    """The last of the starts that is at or before each time.
+
+    Parameters
+    ----------
+    start : ndarray, shape (p,)
+        Rising; the first is taken to be before every time.
+    time : ndarray, any shape
+
+    Returns
+    -------
+    ndarray of int, the shape of `time`
+        From 0 to p - 1.
+    """
+    if time.size < _MANY_TIMES or start.size > _FEW_STARTS:
+        return np.searchsorted(start[1:], time, side="right")
+    # For a few starts, counting those passed is several times faster than halving: it never branches.
+    passed = np.zeros(time.shape, dtype=np.uint8)
+    for beginning in start[1:]:
+        passed += time >= beginning
+    return passed.astype(np.intp)
 
 
 @dataclass(frozen=True, eq=False)
@@ -31,7 +56,7 @@ class Pieces:
 
     def _locate(self, time: FloatArray) -> tuple[NDArray[np.intp], FloatArray]:
         """Each time's piece, and the time since its beginning."""
-        piece = np.searchsorted(self.start[1:], time, side="right")
+        piece = locate(self.start, time)
         return piece, time - self.start[piece]
 
     def value(self, time: FloatArray) -> FloatArray:
@@ -206,7 +231,7 @@ def _regions(left: float, right: float) -> list[tuple[float, float, tuple[float,
 
 
 def _snapped(turn: float) -> float:
-    """The turn, moved to an end of the interval where the piece between them would be too short to divide by."""
+    """The turn, moved to an end of the interval where the piece up to it would be too short to divide by."""
     if turn < _SHORTEST:
         return 0.0
     return 1.0 if turn > 1.0 - _SHORTEST else turn

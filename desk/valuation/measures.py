@@ -13,8 +13,10 @@ from numpy.typing import ArrayLike
 from desk.book import PricedFlows
 from desk.book.arrays import FloatArray, IntArray
 from desk.rates.curve import DiscountCurve
+from desk.rates.interpolation import locate
 from desk.valuation.records import Measures
 from desk.valuation.roots import solve_rates
+from desk.valuation.sums import blocks, group_sums
 
 __all__ = [
     "BASIS_POINT",
@@ -80,9 +82,13 @@ def value_rows(
     """
     times = np.asarray(time, dtype=np.float64)
     amounts = np.asarray(amount, dtype=np.float64)
+    spreads = np.broadcast_to(np.asarray(spread, dtype=np.float64), times.shape)
+    exponent, value = np.empty_like(times), np.empty_like(times)
     with np.errstate(over="ignore", under="ignore", invalid="ignore"):
-        exponent = np.asarray((curve.zero(times) + np.asarray(spread, dtype=np.float64)) * times)
-        return ValuedRows(times, amounts, exponent, amounts * np.exp(-exponent))
+        for part in blocks(times.size):
+            exponent[part] = (curve.zero(times[part]) + spreads[part]) * times[part]
+            value[part] = amounts[part] * np.exp(-exponent[part])
+    return ValuedRows(times, amounts, exponent, value)
 
 
 def value_flows(flows: PricedFlows, curve: DiscountCurve) -> ValuedRows:
@@ -125,38 +131,53 @@ def measure_groups(rows: ValuedRows, group: IntArray, count: int) -> tuple[Measu
 
 def _measure_groups(rows: ValuedRows, group: IntArray, count: int) -> tuple[Measures, ...]:
     """The sums behind `measure_groups`."""
-
-    def sums(weights: FloatArray) -> FloatArray:
-        if count == 1:
-            return np.array([weights.sum()])
-        return np.bincount(group, weights=weights, minlength=count).astype(np.float64, copy=False)
-
     time, value = rows.time, rows.value
-    timed = time * value
-    worth = sums(value)
-    first = sums(timed)
-    second = sums(time * timed)
-    dv01 = -sums(value * np.expm1(-BASIS_POINT * time))
-    gross = sums(np.abs(value)) if value.size and value.min() < 0.0 else np.abs(worth)
+    some_negative = bool(value.size) and value.min() < 0.0
+    some_today = bool(time.size) and time.min() <= 0.0
+
+    def moments(part: slice) -> list[FloatArray]:
+        own_time, own = time[part], value[part]
+        timed = own_time * own
+        fall = -own * np.expm1(-BASIS_POINT * own_time)
+        sums = [own, timed, own_time * timed, fall, own * rows.exponent[part]]
+        if some_negative:
+            sums.append(np.abs(own))
+        if some_today:
+            later = own_time > 0.0
+            sums.extend((np.where(later, own, 0.0), later.astype(np.float64)))
+        return sums
+
+    worth, first, second, dv01, exponent, *rest = group_sums(group, count, moments)
+    gross = rest.pop(0) if some_negative else np.abs(worth)
+    target, later_rows = rest if some_today else (worth, np.ones(count))
     present = np.where(np.abs(worth) > _NO_VALUE * gross, worth, np.nan)
-
     effective = first / present
-    away = time - (effective[0] if count == 1 else effective[group])
-    dispersion = sums(value * away * away) / present
 
-    later = time > 0.0
-    target = worth if later.all() else sums(np.where(later, value, 0.0))
+    def scattered(part: slice) -> list[FloatArray]:
+        centre = effective[0] if count == 1 else effective[group[part]]
+        return [value[part] * (time[part] - centre) ** 2]
+
+    dispersion = group_sums(group, count, scattered)[0] / present
+
+    # Flows today are worth the same at any rate; left out, they take no digits from the rest.
+    solved = np.flatnonzero(time > 0.0) if some_today else slice(None)
     rate = solve_rates(
-        group[later],
-        time[later],
-        rows.amount[later],
+        group[solved],
+        time[solved],
+        rows.amount[solved],
         target=np.where(np.isnan(present), np.nan, target),
-        start=sums(value * rows.exponent) / first,
+        start=exponent / first,
     )
-    at_rate = rows.amount * np.exp(-(rate[0] if count == 1 else rate[group]) * time)
-    macaulay = sums(time * at_rate) / sums(at_rate)
+
+    def at_equivalent_rate(part: slice) -> list[FloatArray]:
+        of_row = rate[0] if count == 1 else rate[group[part]]
+        own = rows.amount[part] * np.exp(-of_row * time[part])
+        return [own, own * time[part]]
+
+    total, timed_total = group_sums(group, count, at_equivalent_rate)
+    macaulay = timed_total / total
     modified = macaulay * np.exp(-rate)
-    only_today = ~np.isnan(present) & (sums(later.astype(np.float64)) == 0.0)
+    only_today = ~np.isnan(present) & (later_rows == 0.0)
     macaulay = np.where(only_today, 0.0, macaulay)
     modified = np.where(only_today, 0.0, modified)
     columns = (worth, np.expm1(rate), macaulay, modified, effective, second / present, dispersion, dv01)
@@ -187,7 +208,7 @@ def key_rate_weights(time: FloatArray, *, terms: ArrayLike = KEY_TERMS) -> tuple
     Ho, T.S.Y., "Key Rate Durations: Measures of Interest Rate Risks", Journal of Fixed Income 2(2), 1992.
     """
     keys = np.asarray(terms, dtype=np.float64)
-    lower = np.clip(np.searchsorted(keys, time, side="right") - 1, 0, keys.size - 2)
+    lower = locate(keys[:-1], time)
     share = np.clip((time - keys[lower]) / np.diff(keys)[lower], 0.0, 1.0)
     return lower, share
 
@@ -209,19 +230,23 @@ def key_rate_durations(rows: ValuedRows, *, terms: ArrayLike = KEY_TERMS) -> tup
     dv01 : ndarray, shape (k,)
         The fall in present value for +1 basis point at the key, revalued exactly [currency].
     """
-    count = np.size(terms)
-    lower, share = key_rate_weights(rows.time, terms=terms)
+    # dimensions: slope by lower and upper key, fall by lower and upper key; key
+    sums = np.zeros((4, np.size(terms)))
     with np.errstate(over="ignore", under="ignore", invalid="ignore", divide="ignore"):
-        above, below = rows.time * share, rows.time * (1.0 - share)
-
-        def by_key(of_lower: FloatArray, of_upper: FloatArray) -> FloatArray:
-            total = np.bincount(lower, weights=of_lower, minlength=count).astype(np.float64, copy=False)
-            total[1:] += np.bincount(lower, weights=of_upper, minlength=count)[:-1]
-            return total
-
-        slope = by_key(rows.value * below, rows.value * above)
-        dv01 = by_key(
-            -rows.value * np.expm1(-BASIS_POINT * below), -rows.value * np.expm1(-BASIS_POINT * above)
-        )
+        for part in blocks(rows.time.size):
+            time, value = rows.time[part], rows.value[part]
+            lower, share = key_rate_weights(time, terms=terms)
+            above = time * share
+            below = time - above
+            sums += [
+                np.bincount(lower, weights=weights, minlength=sums.shape[1])
+                for weights in (
+                    value * below,
+                    value * above,
+                    -value * np.expm1(-BASIS_POINT * below),
+                    -value * np.expm1(-BASIS_POINT * above),
+                )
+            ]
         worth, gross = rows.value.sum(), np.abs(rows.value).sum()
+        slope, dv01 = sums[0::2] + np.roll(sums[1::2], 1, axis=1)
         return slope / (worth if abs(worth) > _NO_VALUE * gross else np.nan), dv01

@@ -6,6 +6,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from desk.book.arrays import FloatArray, IntArray
+from desk.valuation.sums import group_sums
 
 __all__ = ["solve_rates"]
 
@@ -55,7 +56,8 @@ def solve_rates(
     rates = np.full(count, np.nan)
     later = time > 0.0
     if not later.all():
-        target = target - np.bincount(group[~later], weights=amount[~later], minlength=count)
+        today = amount[~later]
+        target = target - group_sums(group[~later], count, lambda part: [today[part]])[0]
         group, time, amount = group[later], time[later], amount[later]
     begin = np.zeros(count) if start is None else np.where(np.isfinite(start), start, 0.0)
     positive = _any_in_group(group, amount > 0.0, count)
@@ -80,6 +82,20 @@ def _any_in_group(group: IntArray, flag: NDArray[np.bool_], count: int) -> NDArr
     return found
 
 
+def _worth_and_slope(
+    rate: FloatArray, group: IntArray, time: FloatArray, amount: FloatArray
+) -> tuple[FloatArray, FloatArray]:
+    """What each group is worth at its rate, and how fast that falls, each shape (m,)."""
+
+    def columns(part: slice) -> tuple[FloatArray, FloatArray]:
+        at_rate = rate[0] if rate.size == 1 else rate[group[part]]
+        worth = amount[part] * np.exp(-at_rate * time[part])
+        return worth, worth * time[part]
+
+    worth, slope = group_sums(group, rate.size, columns)
+    return worth, slope
+
+
 def _newton_on_logarithm(
     rates: FloatArray,
     wanted: NDArray[np.bool_],
@@ -92,7 +108,10 @@ def _newton_on_logarithm(
     """Write the rates of the wanted groups, whose flows are of one sign."""
     count = target.size
     longest = np.zeros(count)
-    np.maximum.at(longest, group, time)
+    if count == 1:
+        longest[0] = time.max()
+    else:
+        np.maximum.at(longest, group, time)
     rate = begin.copy()
     active = wanted.copy()
     rows_for = None
@@ -102,9 +121,7 @@ def _newton_on_logarithm(
                 rows = active[group]
                 group, time, amount = group[rows], time[rows], amount[rows]
             rows_for = active.copy()
-        worth = amount * np.exp(-rate[group] * time)
-        total = np.bincount(group, weights=worth, minlength=count)
-        slope = np.bincount(group, weights=worth * time, minlength=count)
+        total, slope = _worth_and_slope(rate, group, time, amount)
         # d/dr ln Σ = -slope/total
         step = np.log(total / target) * total / slope
         step = np.where(active, np.maximum(step, -_LARGEST_STEP_DOWN / longest), 0.0)
@@ -129,12 +146,9 @@ def _search(
     rows = wanted[group]
     group, time, amount = group[rows], time[rows], amount[rows]
 
-    def excess(rate: FloatArray) -> FloatArray:
-        worth = amount * np.exp(-rate[group] * time)
-        return np.asarray(np.bincount(group, weights=worth, minlength=count) - target)
-
     # dimensions: rate searched, group
-    signs = np.where(np.array([excess(np.full(count, rate)) for rate in _SEARCHED]) >= 0.0, 1, -1)
+    worth = np.array([_worth_and_slope(np.full(count, rate), group, time, amount)[0] for rate in _SEARCHED])
+    signs = np.where(worth >= target, 1, -1)
     changes = signs[1:] != signs[:-1]
     single = wanted & (changes.sum(axis=0) == 1)
     at = changes.argmax(axis=0)
@@ -142,12 +156,11 @@ def _search(
     sign_low = signs[at, np.arange(count)]
     rate = 0.5 * (low + high)
     for _ in range(_MOST_STEPS):
-        worth = amount * np.exp(-rate[group] * time)
-        value = np.bincount(group, weights=worth, minlength=count) - target
-        slope = np.bincount(group, weights=-worth * time, minlength=count)
+        total, slope = _worth_and_slope(rate, group, time, amount)
+        value = total - target
         same = np.where(value >= 0.0, 1, -1) == sign_low
         low, high = np.where(same, rate, low), np.where(same, high, rate)
-        ahead = rate - value / slope
+        ahead = rate + value / slope
         inside = (ahead >= low) & (ahead <= high)
         following = np.where(inside, ahead, 0.5 * (low + high))
         still = single & (np.abs(following - rate) > 1e-15 * (1.0 + np.abs(rate)))

@@ -188,13 +188,13 @@ def undiscounted_periods(assets: PricedFlows, liabilities: PricedFlows) -> Perio
     last = max((int(year.max()) for year in years if year.size), default=0)
     if last <= _YEARS_LISTED_WITHOUT_GAPS:
         listed = np.arange(1, last + 1)
+        places = [year - 1 for year in years]
     else:
         listed = np.unique(np.concatenate(years))
+        places = [np.searchsorted(listed, year) for year in years]
     amounts: list[FloatArray] = [
-        np.bincount(
-            np.searchsorted(listed, year), weights=side.amount[side.is_flow], minlength=listed.size
-        ).astype(np.float64)
-        for year, side in zip(years, (assets, liabilities), strict=True)
+        np.bincount(place, weights=side.amount[side.is_flow], minlength=listed.size).astype(np.float64)
+        for place, side in zip(places, (assets, liabilities), strict=True)
     ]
     with np.errstate(over="ignore", invalid="ignore"):
         net = amounts[0] - amounts[1]
