@@ -1,0 +1,336 @@
+"""A run: the book's rates model drawn, and both sides valued along the paths."""
+
+from __future__ import annotations
+
+import math
+from collections.abc import Callable, Sequence
+from dataclasses import dataclass
+from functools import partial
+
+import numpy as np
+
+from desk import __version__
+from desk.book import Book, Fault, Measure, PricedFlows, Provenance, Severity
+from desk.book.arrays import FloatArray, owned_floats
+from desk.scenarios.draws import BLOCK_PATHS, GENERATOR, Block, Crew, Plan, default_threads
+from desk.scenarios.models import rate_model
+from desk.scenarios.pathwise import PathValues, curve_value
+from desk.scenarios.records import (
+    ClosedForm,
+    Distribution,
+    Histogram,
+    NodeSummary,
+    Repricing,
+    Simulation,
+)
+from desk.scenarios.summaries import (
+    QUANTILE_RULE,
+    Moments,
+    histogram,
+    moments,
+    quantile_interval,
+    rank_interval,
+    sorted_quantile,
+)
+
+__all__ = ["simulate"]
+
+# Paths kept for pictures.
+_SHOWN = 50
+# Part of the work that goes into summing up, for the progress only.
+_SUMMING = 0.1
+
+
+def simulate(
+    book: Book,
+    assets: PricedFlows,
+    liabilities: PricedFlows,
+    *,
+    progress: Callable[[float], None] | None = None,
+    threads: int | None = None,
+) -> Simulation:
+    """Draw the book's rates model as its run says, and value both sides along the paths.
+
+    The same book, flows and seed give the same bits whatever the number of threads.
+
+    Parameters
+    ----------
+    book : Book
+        Its rates model, basis and run are used.
+    assets, liabilities : PricedFlows
+        The flows of both sides with their spreads. Under either measure bonds seen from a node are priced
+        under the pricing measure.
+    progress : callable, optional
+        Called with the part done, from 0 to 1, from the calling thread. An exception it raises stops the run
+        and comes out of this function, after all its threads have ended.
+    threads : int, optional
+        Number of threads; two, or as many as there are processors if fewer, when left out.
+
+    Raises
+    ------
+    ValueError
+        If the book has no rates model, or an item of it or of the basis will not do.
+    """
+    run = book.run
+    model = rate_model(book)
+    plan = Plan(
+        model=model,
+        paths=run.paths,
+        steps_per_year=run.steps_per_year,
+        steps=run.horizon_years * run.steps_per_year,
+        seed=run.seed,
+        real_world=run.measure is Measure.REAL_WORLD,
+    )
+    # Values too large for a float are reported as a fault, not as a warning.
+    with np.errstate(over="ignore", invalid="ignore", under="ignore", divide="ignore"):
+        values = PathValues(plan, (assets, liabilities))
+        collected = _collect(plan, values, run.percentiles, progress, threads or default_threads())
+        year = np.arange(run.horizon_years + 1, dtype=np.float64)
+        present_value = _present_values(plan, (assets, liabilities), collected.sides, run.percentiles)
+        result = Simulation(
+            model=str(book.rates_model.name) if book.rates_model is not None else "",
+            measure=run.measure,
+            paths=run.paths,
+            steps_per_year=run.steps_per_year,
+            horizon_years=run.horizon_years,
+            seed=run.seed,
+            savings_account=_node_summary(year, collected.accounts, run.percentiles),
+            short_rate=_node_summary(year, collected.rates, run.percentiles),
+            closed_form=_closed_form(plan, year, run.percentiles),
+            repricing=_repricing(plan, year, collected.discounts),
+            present_value=present_value,
+            sample_paths=owned_floats(np.exp(collected.shown)),
+            faults=_faults(run.horizon_years, (assets, liabilities), collected),
+            provenance=Provenance(
+                book_digest=book.digest,
+                program_version=__version__,
+                settings=_settings(book, values.surface_error),
+                seed=run.seed,
+            ),
+        )
+    if progress is not None:
+        progress(1.0)
+    return result
+
+
+@dataclass(frozen=True)
+class _Sample:
+    """One quantity at one node, summed up; the intervals hold one pair a level."""
+
+    moments: Moments
+    percentile: FloatArray
+    interval: tuple[tuple[float, float], ...]
+    histogram: Histogram
+    below_zero: float
+
+
+@dataclass(frozen=True)
+class _Collected:
+    """Everything the paths are drawn for, by year from 0; `sides` holds assets, liabilities, surplus."""
+
+    accounts: list[_Sample]
+    rates: list[_Sample]
+    discounts: list[Moments]
+    sides: list[_Sample]
+    shown: FloatArray
+
+
+def _collect(
+    plan: Plan,
+    values: PathValues,
+    levels: Sequence[float],
+    progress: Callable[[float], None] | None,
+    threads: int,
+) -> _Collected:
+    """Draw all paths, a few years at a time, and sum up each year before the next are drawn.
+
+    Only the samples of the years in hand are kept, and the present values: memory does not grow with the
+    horizon.
+    """
+    years = plan.steps // plan.steps_per_year
+    nodes = range(plan.steps_per_year, plan.steps + 1, plan.steps_per_year)
+    groups = list(plan.rounds(nodes))
+    today = float(plan.model.curve.forward(0.0, 0.0))
+    accounts, rates = [_certain(1.0, levels, plan.paths)], [_certain(today, levels, plan.paths)]
+    discounts = [Moments(1.0, 0.0, 0.0, 0.0)]
+    shown = np.zeros((min(_SHOWN, plan.paths), years + 1))
+    ranks = [rank_interval(plan.paths, level / 100.0) for level in levels]
+    sum_up = partial(_sum_up, levels=levels, ranks=ranks)
+    drawing = float(plan.blocks * plan.steps)
+    summing = _SUMMING * drawing / (years + 1)
+    with Crew(threads, drawing * (1.0 + _SUMMING), progress) as crew:
+        blocks = [Block(plan, index) for index in range(plan.blocks)]
+        buffer = np.empty((2, len(groups[0]), plan.paths))
+        for group in groups:
+            log_account, rate = buffer[0, : len(group)], buffer[1, : len(group)]
+            crew.grouped(blocks, partial(_advance, group, log_account, rate, values, crew))
+            shown[:, len(accounts) : len(accounts) + len(group)] = log_account[:, : len(shown)].T
+            found = crew.run([partial(_sum_up_account, row, sum_up) for row in log_account])
+            accounts += [sample for sample, _ in found]
+            discounts += [discount for _, discount in found]
+            rates += crew.run([partial(sum_up, row) for row in rate])
+            crew.add(summing * len(group))
+        surplus = values.value[0] - values.value[1]
+        sides = crew.run([partial(sum_up, row) for row in (*values.value, surplus)])
+    return _Collected(accounts, rates, discounts, sides, shown)
+
+
+def _advance(
+    group: Sequence[int],
+    log_account: FloatArray,
+    rate: FloatArray,
+    values: PathValues,
+    crew: Crew,
+    block: Block,
+) -> None:
+    block.advance(group, log_account, rate, visit=values.visit, crew=crew)
+
+
+def _sum_up(row: FloatArray, *, levels: Sequence[float], ranks: Sequence[tuple[int, int]]) -> _Sample:
+    """Sum up one sample; `row` is left sorted."""
+    found = moments(row)
+    row.sort()
+    return _Sample(
+        moments=found,
+        percentile=sorted_quantile(row, [level / 100.0 for level in levels]),
+        interval=tuple(quantile_interval(row, pair) for pair in ranks),
+        histogram=histogram(row),
+        below_zero=float(np.searchsorted(row, 0.0, side="left")) / row.size,
+    )
+
+
+def _sum_up_account(row: FloatArray, sum_up: Callable[[FloatArray], _Sample]) -> tuple[_Sample, Moments]:
+    """Sum up ``R_t`` and ``1/R_t`` from ``ln R_t``; `row` is overwritten."""
+    discount = moments(np.exp(-row))
+    np.exp(row, out=row)
+    return sum_up(row), discount
+
+
+def _certain(value: float, levels: Sequence[float], paths: int) -> _Sample:
+    """The sample of a quantity that is known."""
+    return _Sample(
+        moments=Moments(value, 0.0, 0.0, 0.0),
+        percentile=np.full(len(levels), value),
+        interval=((value, value),) * len(levels),
+        histogram=histogram(np.full(paths, value)),
+        below_zero=float(value < 0.0),
+    )
+
+
+def _node_summary(year: FloatArray, samples: list[_Sample], levels: tuple[float, ...]) -> NodeSummary:
+    intervals = np.array([sample.interval for sample in samples])
+    return NodeSummary(
+        year=owned_floats(year),
+        mean=owned_floats([sample.moments.mean for sample in samples]),
+        mean_se=owned_floats([sample.moments.mean_se for sample in samples]),
+        sd=owned_floats([sample.moments.sd for sample in samples]),
+        sd_se=owned_floats([sample.moments.sd_se for sample in samples]),
+        levels=levels,
+        percentile=owned_floats([sample.percentile for sample in samples]),
+        percentile_low=owned_floats(intervals[:, :, 0]),
+        percentile_high=owned_floats(intervals[:, :, 1]),
+        histograms=tuple(sample.histogram for sample in samples),
+    )
+
+
+def _closed_form(plan: Plan, year: FloatArray, levels: tuple[float, ...]) -> ClosedForm | None:
+    from scipy.special import ndtri
+
+    law = plan.model.account_law(year, real_world=plan.real_world)
+    if law is None:
+        return None
+    mean, variance = law
+    level = mean + 0.5 * variance
+    normal = np.asarray(ndtri(np.asarray(levels) / 100.0), dtype=np.float64)
+    return ClosedForm(
+        log_mean=owned_floats(mean),
+        log_variance=owned_floats(variance),
+        mean=owned_floats(np.exp(level)),
+        sd=owned_floats(np.exp(level) * np.sqrt(np.expm1(variance))),
+        percentile=owned_floats(np.exp(mean[:, None] + np.sqrt(variance)[:, None] * normal)),
+    )
+
+
+def _repricing(plan: Plan, year: FloatArray, discounts: list[Moments]) -> Repricing:
+    return Repricing(
+        year=owned_floats(year),
+        mean_discount=owned_floats([found.mean for found in discounts]),
+        mean_discount_se=owned_floats([found.mean_se for found in discounts]),
+        curve_discount=owned_floats(plan.model.curve.discount(year)),
+        expected_discount=owned_floats(plan.model.mean_discount(year, real_world=plan.real_world)),
+    )
+
+
+def _present_values(
+    plan: Plan, sides: tuple[PricedFlows, PricedFlows], samples: list[_Sample], levels: tuple[float, ...]
+) -> tuple[Distribution, ...]:
+    assets, liabilities = (curve_value(plan, flows) for flows in sides)
+    names = ("assets", "liabilities", "surplus")
+    return tuple(
+        Distribution(
+            name=name,
+            mean=sample.moments.mean,
+            se=sample.moments.mean_se,
+            sd=sample.moments.sd,
+            levels=levels,
+            percentile=owned_floats(sample.percentile),
+            percentile_low=owned_floats([low for low, _ in sample.interval]),
+            percentile_high=owned_floats([high for _, high in sample.interval]),
+            curve=curve,
+            below_zero=sample.below_zero,
+            below_zero_se=_share_error(sample.below_zero, plan.paths),
+            histogram=sample.histogram,
+        )
+        for name, sample, curve in zip(
+            names, samples, (assets, liabilities, assets - liabilities), strict=True
+        )
+    )
+
+
+def _share_error(share: float, paths: int) -> float:
+    """Standard error of a share of the paths; NaN for one path, as for every other figure."""
+    return math.sqrt(share * (1.0 - share) / paths) if paths > 1 else math.nan
+
+
+def _faults(horizon: int, sides: tuple[PricedFlows, PricedFlows], collected: _Collected) -> tuple[Fault, ...]:
+    faults = []
+    last = max((float(flows.time.max()) for flows in sides if len(flows)), default=math.inf)
+    if horizon > last + 1.0:
+        faults.append(
+            Fault(
+                found=f"the horizon of {horizon} years goes beyond the flows, the last of which is due "
+                f"in {last:.1f} years",
+                expected="a horizon at most a year beyond the last flow",
+                mend=f"Set Horizon to {math.ceil(last)} years, or leave it: the values are right.",
+                sheet="Run",
+                severity=Severity.MILD,
+            )
+        )
+    samples = (*collected.accounts, *collected.rates, *collected.sides)
+    if not all(math.isfinite(sample.moments.mean) for sample in samples):
+        faults.append(
+            Fault(
+                found="some values along the paths are too large for the computer's numbers",
+                expected="rates that stay within reason over the horizon",
+                mend="Lower Volatility or Horizon, or raise Mean reversion.",
+                sheet="Rates model",
+                severity=Severity.MILD,
+            )
+        )
+    return tuple(faults)
+
+
+def _settings(book: Book, surface_error: float) -> tuple[tuple[str, str], ...]:
+    """What the bits of the run depend on beside the book and the seed."""
+    run = book.run
+    return (
+        ("paths", str(run.paths)),
+        ("horizon_years", str(run.horizon_years)),
+        ("steps_per_year", str(run.steps_per_year)),
+        ("measure", str(run.measure)),
+        ("percentiles", " ".join(f"{level:g}" for level in run.percentiles)),
+        ("generator", GENERATOR),
+        ("block_paths", str(BLOCK_PATHS)),
+        ("quantile_rule", f"Hyndman-Fan {QUANTILE_RULE}"),
+        ("surface_error", f"{surface_error:.1e}"),
+    )
