@@ -86,13 +86,13 @@ def read_holdings(table: Table, faults: FaultList, *, valuation_date: date | Non
     _report_unused(cells, kinds, faults)
     _report_twice(cells["Name"], names)
     holdings = []
+    spoilt = faults.grave_rows(table.sheet.name)
     for entry, (name, kind) in enumerate(zip(names, kinds, strict=True)):
-        every = np.isnan(frequency[entry]) or frequency[entry] in _FREQUENCIES
-        if not name or kind is None or not every:
+        if int(rows[entry]) in spoilt or not name or kind is None:
             continue
         day = maturity[entry]
-        holdings.append(
-            Holding(
+        try:
+            holding = Holding(
                 name=name,
                 kind=kind,
                 nominal=_or(nominal[entry], 0.0),
@@ -104,7 +104,11 @@ def read_holdings(table: Table, faults: FaultList, *, valuation_date: date | Non
                 units=_or_none(units[entry]),
                 duration=_or_none(duration[entry]),
             )
-        )
+        except ValueError as error:
+            # Only where a column is missing, which is reported at its place.
+            cells["Name"].fault(entry, f"the row makes no holding: {error}", f"a {kind}", "Correct the row.")
+            continue
+        holdings.append(holding)
     return tuple(holdings)
 
 

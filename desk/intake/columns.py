@@ -11,12 +11,13 @@ from dataclasses import dataclass
 from datetime import date, datetime, time, timedelta
 from enum import IntEnum
 from itertools import compress
-from typing import Any, overload
+from typing import TYPE_CHECKING, Any, overload
 
 import numpy as np
 from numpy.typing import NDArray
 
-from desk.intake.records import Cell
+if TYPE_CHECKING:
+    from desk.intake.records import Cell
 
 __all__ = ["Column", "ColumnRows", "Kind", "SheetColumns", "address", "column_letters", "pack_column"]
 
@@ -191,7 +192,7 @@ class SheetColumns:
         return str(value).upper() if isinstance(value, bool) else str(value)
 
 
-class ColumnRows(Sequence[list[Cell]]):
+class ColumnRows(Sequence["list[Cell]"]):
     """The rows of a sheet, each made when it is asked for."""
 
     def __init__(self, sheet: SheetColumns) -> None:

@@ -50,6 +50,13 @@ class FaultList:
         """Whether one of them keeps the book from being used."""
         return any(fault.severity is Severity.GRAVE for *_, fault in self._found)
 
+    def grave_rows(self, sheet: str) -> set[int]:
+        """Rows of a sheet that hold a grave fault."""
+        order = self._order.get(sheet, len(self._order))
+        return {
+            row for place, row, _, fault in self._found if place == order and fault.severity is Severity.GRAVE
+        }
+
     def in_order(self) -> tuple[Fault, ...]:
         """All of them, by sheet, row and column."""
         return tuple(entry[3] for entry in sorted(self._found, key=lambda entry: entry[:3]))

@@ -56,6 +56,13 @@ class Answer:
     refused: str = ""
     detail: str = ""
 
+    @classmethod
+    def of(cls, answer: dict[str, Any]) -> Answer:
+        """What a reading process said."""
+        if "refused" in answer:
+            return cls({}, answer["refused"], answer["detail"])
+        return cls(answer)
+
 
 class _Process:
     """One reading process, its output gathered by a thread so that its pipe never fills."""
@@ -101,10 +108,7 @@ class _Process:
         """What it answered."""
         status = self._child.wait()
         if status == 0 and self._output:
-            content = marshal.loads(self._output)
-            if "refused" in content:
-                return Answer({}, content["refused"], content["detail"])
-            return Answer(content)
+            return Answer.of(marshal.loads(self._output))
         self._errors.seek(0)
         said = self._errors.read(1 << 16).decode("utf-8", "replace").strip()
         if sys.platform != "win32" and status == -signal.SIGXCPU:
@@ -122,7 +126,7 @@ def ask(
     Parameters
     ----------
     commands : sequence of str
-        Of ``values``, ``scan`` and ``extent``.
+        Of ``values``, ``scan``, ``both`` (the two in one process) and ``extent``.
     path : Path
     limits : Limits
         For each process. One that takes longer is ended and answered ``time``.

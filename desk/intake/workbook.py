@@ -227,10 +227,10 @@ def _check_horizon(
     day_count: DayCount,
 ) -> None:
     """Report a run that goes on for more than a year after everything is paid."""
-    last = 0.0
-    for flows in (parts.liabilities, parts.asset_flows):
-        if flows is not None and len(flows):
-            last = max(last, float(flows.time.max()))
+    if parts.liabilities is None or parts.asset_flows is None:
+        # Rows that could not be read may be the last ones.
+        return
+    last = max(float(flows.time.max(initial=0.0)) for flows in (parts.liabilities, parts.asset_flows))
     maturities = [holding.maturity for holding in parts.holdings if holding.maturity is not None]
     if maturities and valuation_date is not None:
         start, end = np.datetime64(valuation_date, "D"), np.datetime64(max(maturities), "D")

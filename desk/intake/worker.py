@@ -1,6 +1,6 @@
 """The reading process: parses a source apart from the program, under limits of memory and time.
 
-Run as ``python -m desk.intake.worker values|scan|extent PATH MEMORY SECONDS``. Writes one marshalled
+Run as ``python -m desk.intake.worker values|scan|both|extent PATH MEMORY SECONDS``. Writes one marshalled
 dictionary to standard output: either what was asked for, or ``refused`` with a reason. A file that makes
 the parser abort takes this process with it and nothing else.
 """
@@ -10,6 +10,7 @@ from __future__ import annotations
 import gc
 import marshal
 import sys
+from collections.abc import Callable
 from pathlib import Path
 from typing import Any
 
@@ -63,15 +64,47 @@ def read_values(path: Path) -> dict[str, Any]:
     return {"form": form, "sheets": sheets}
 
 
-def _answer(command: str, path: Path) -> dict[str, Any]:
-    if command == "values":
-        return read_values(path)
-    from desk.intake.scan import extents, scan_workbook
+def scan_facts(path: Path) -> dict[str, Any]:
+    """What the values do not tell, by sheet."""
+    from desk.intake.scan import scan_workbook
 
-    form = examine(path)
-    if form != "xlsx":
+    if examine(path) != "xlsx":
         raise Refused("unscanned")
-    return {"extents": extents(path)} if command == "extent" else {"facts": scan_workbook(path)}
+    return {"facts": scan_workbook(path)}
+
+
+def furthest_cells(path: Path) -> dict[str, Any]:
+    """How far each sheet reaches."""
+    from desk.intake.scan import extents
+
+    if examine(path) != "xlsx":
+        raise Refused("unscanned")
+    return {"extents": extents(path)}
+
+
+def read_both(path: Path) -> dict[str, Any]:
+    """The values and then the facts; what goes wrong with the facts leaves the values standing."""
+    return {**read_values(path), "scan": _answer(scan_facts, path)}
+
+
+_COMMANDS: dict[str, Callable[[Path], dict[str, Any]]] = {
+    "values": read_values,
+    "scan": scan_facts,
+    "both": read_both,
+    "extent": furthest_cells,
+}
+
+
+def _answer(command: Callable[[Path], dict[str, Any]], path: Path) -> dict[str, Any]:
+    """What a command gives, or why it gives nothing."""
+    try:
+        return command(path)
+    except Refused as refusal:
+        return {"refused": refusal.code, "detail": refusal.detail}
+    except MemoryError:
+        return {"refused": "memory", "detail": ""}
+    except Exception as error:
+        return {"refused": "corrupt", "detail": f"{type(error).__name__}: {error}"}
 
 
 def main(arguments: list[str]) -> int:
@@ -80,14 +113,7 @@ def main(arguments: list[str]) -> int:
     _set_limits(int(memory_bytes), int(seconds))
     # The cells are millions of objects that live to the end: looking for rubbish among them only costs.
     gc.disable()
-    try:
-        answer = _answer(command, Path(path))
-    except Refused as refusal:
-        answer = {"refused": refusal.code, "detail": refusal.detail}
-    except MemoryError:
-        answer = {"refused": "memory", "detail": ""}
-    except Exception as error:
-        answer = {"refused": "corrupt", "detail": f"{type(error).__name__}: {error}"}
+    answer = _answer(_COMMANDS[command], Path(path))
     sys.stdout.buffer.write(marshal.dumps(answer))
     sys.stdout.buffer.flush()
     return 0

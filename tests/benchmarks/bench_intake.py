@@ -10,6 +10,7 @@ import sys
 import tempfile
 import time
 from collections.abc import Callable
+from functools import partial
 from pathlib import Path
 
 import numpy as np
@@ -22,7 +23,17 @@ _LINES = [f"Line {number}" for number in range(12)]
 _SHARED = [
     *_LINES,
     *("Item", "Value", "Valuation date", "Currency", "EUR", "Curve kind", "zero", "Compounding", "annual"),
-    *("Interpolation", "log-linear", "Liability spread", "Term", "Rate", "Line", "Date", "Amount", "12,5 Mio"),
+    *(
+        "Interpolation",
+        "log-linear",
+        "Liability spread",
+        "Term",
+        "Rate",
+        "Line",
+        "Date",
+        "Amount",
+        "12,5 Mio",
+    ),
 ]
 
 
@@ -49,7 +60,8 @@ def make_book(path: Path, rows: int, *, faults: bool) -> Path:
         for number, (item, cell) in enumerate(basis, start=2)
     )
     curve_rows = f'<row r="1">{_text("A1", "Term")}{_text("B1", "Rate")}</row>' + "".join(
-        f'<row r="{number}"><c r="A{number}"><v>{term}</v></c><c r="B{number}"><v>{0.02 + term / 4000}</v></c></row>'
+        f'<row r="{number}"><c r="A{number}"><v>{term}</v></c>'
+        f'<c r="B{number}"><v>{0.02 + term / 4000}</v></c></row>'
         for number, term in enumerate((1, 2, 5, 10, 20, 30, 60), start=2)
     )
     pieces = [f'<row r="1">{_text("A1", "Line")}{_text("B1", "Date")}{_text("C1", "Amount")}</row>']
@@ -101,8 +113,8 @@ def main(rows: int = 500_000) -> None:
             path = make_book(Path(folder) / f"faults_{faults}.xlsx", rows, faults=faults)
             bare, whole = [], []
             for _ in range(3):
-                bare.append(_seconds(lambda path=path: _bare_read(path)))
-                whole.append(_seconds(lambda path=path: read_workbook(path)))
+                bare.append(_seconds(partial(_bare_read, path)))
+                whole.append(_seconds(partial(read_workbook, path)))
             count = len(read_workbook(path).faults)
             print(
                 f"{rows:,} rows, {count:,} faults: bare read {np.median(bare):.2f} s, "

@@ -16,7 +16,9 @@ _PACKAGE = "http://schemas.openxmlformats.org/package/2006"
 _HEAD = '<?xml version="1.0" encoding="UTF-8" standalone="yes"?>\n'
 
 
-def sheet_xml(rows: str, *, before: str = "", after: str = "", root: str = f'worksheet xmlns="{MAIN}"') -> str:
+def sheet_xml(
+    rows: str, *, before: str = "", after: str = "", root: str = f'worksheet xmlns="{MAIN}"'
+) -> str:
     """A sheet part: `before` and `after` stand on either side of the rows."""
     name = root.split()[0]
     return f"{_HEAD}<{root}>{before}<sheetData>{rows}</sheetData>{after}</{name}>"
@@ -56,7 +58,7 @@ def raw_workbook(
         + ('<workbookPr date1904="1"/>' if date1904 else "")
         + "<sheets>"
         + "".join(
-            f"<sheet name={quoteattr(name)} sheetId=\"{number}\""
+            f'<sheet name={quoteattr(name)} sheetId="{number}"'
             f' state="{(states or {}).get(name, "visible")}" r:id="rId{number}"/>'
             for number, name in numbered
         )
@@ -71,7 +73,7 @@ def raw_workbook(
         f'<Relationship Id="rId{len(sheets) + 2}" Type="{office}/sharedStrings" '
         'Target="sharedStrings.xml"/></Relationships>',
         "xl/styles.xml": f'{_HEAD}<styleSheet xmlns="{main}"><fonts count="1"><font/></fonts>'
-        "<fills count=\"1\"><fill/></fills><borders count=\"1\"><border/></borders>"
+        '<fills count="1"><fill/></fills><borders count="1"><border/></borders>'
         '<cellStyleXfs count="1"><xf/></cellStyleXfs><cellXfs count="2"><xf numFmtId="0"/>'
         '<xf numFmtId="14" applyNumberFormat="1"/></cellXfs></styleSheet>',
         "xl/sharedStrings.xml": f'{_HEAD}<sst xmlns="{main}">'
