@@ -115,8 +115,8 @@ def simulate(
 
     watched = _watched(progress, cancel)
     watched(0.0)
-    assets = priced_flows(book, Side.ASSETS)
-    liabilities = priced_flows(book, Side.LIABILITIES)
+    assets = priced_flows(book, Side.ASSETS).flows
+    liabilities = priced_flows(book, Side.LIABILITIES).flows
     simulation = draw(book, assets, liabilities, progress=watched)
     watched(1.0)
     return simulation
@@ -160,7 +160,7 @@ def report(
     Cancelled
         If `cancel` was set before the work was done.
     """
-    from desk.report.results_workbook import write_report
+    from desk.report.results.workbook import write_report
 
     if reading.book is None:
         raise ValueError("`reading` must have a book: its faults stand in the way")

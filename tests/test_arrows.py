@@ -17,6 +17,7 @@ NUMERIC = ("rates", "book", "valuation", "scenarios", "projection")
 MAY_IMPORT: dict[str, tuple[str, ...]] = {
     "": (),
     "places": (),
+    "terminal": (),
     "rates": (),
     "book": ("rates",),
     "valuation": ("rates", "book"),
@@ -26,9 +27,9 @@ MAY_IMPORT: dict[str, tuple[str, ...]] = {
     "report": (*NUMERIC, "intake", "places"),
     "store": (*NUMERIC, "intake", "places"),
     "tasks": (*NUMERIC, "intake", "report", "store"),
-    "batch": (*NUMERIC, "intake", "report", "store", "tasks", "places"),
+    "batch": (*NUMERIC, "intake", "report", "store", "tasks", "places", "terminal"),
     "window": (*NUMERIC, "intake", "report", "store", "tasks", "places"),
-    "__main__": (*NUMERIC, "intake", "report", "store", "tasks", "places", "batch", "window"),
+    "__main__": (*NUMERIC, "intake", "report", "store", "tasks", "places", "terminal", "batch", "window"),
 }
 QT = {"PySide6", "PyQt6", "PyQt5", "PySide2", "shiboken6", "pyqtgraph"}
 QT_CORE_ONLY = {"window.document", "window.jobs"}

@@ -1,0 +1,388 @@
+"""Results as plain-text tables for a terminal: units in the headings, thousands grouped, a true minus."""
+
+from __future__ import annotations
+
+import math
+import textwrap
+import unicodedata
+from collections.abc import Callable, Iterable, Sequence
+
+import numpy as np
+
+from desk.book import Fault, Severity
+from desk.intake.records import Reading
+from desk.report.wording import CAUTION, MEASURES, QUANTILE_METHOD, SIDE_NAMES
+from desk.scenarios.records import NodeSummary, Simulation
+from desk.valuation.records import LineStanding, Periods, Standing
+
+__all__ = [
+    "check_text",
+    "fault_line",
+    "grouped",
+    "percent",
+    "printable",
+    "simulation_text",
+    "standing_text",
+    "table",
+]
+
+LINES_SHOWN = 20
+LONGEST_NAME = 32
+LINE_WIDTH = 96
+_MISSING = "n/a"
+
+
+def printable(text: str) -> str:
+    """`text` on one line, with characters that would move the cursor shown as U+FFFD."""
+    return "".join(
+        letter if letter.isprintable() else " " if letter.isspace() else "\ufffd" for letter in text
+    )
+
+
+def grouped(value: float | None, places: int = 0) -> str:
+    """A number with grouped thousands and a true minus sign; ``n/a`` where there is none."""
+    if value is None or not math.isfinite(value):
+        return _MISSING
+    text = f"{value:,.{places}f}"
+    if text.startswith("-"):
+        # A negative number that is shown as zero has no sign.
+        text = f"−{text[1:]}" if text.strip("-0.,") else text[1:]
+    return text
+
+
+def percent(value: float | None, places: int = 3) -> str:
+    """A rate in per cent, without the sign for it."""
+    return grouped(None if value is None else 100.0 * value, places)
+
+
+def table(headings: Sequence[str], rows: Iterable[Sequence[str]], *, left: int = 1) -> str:
+    """A table in columns.
+
+    Parameters
+    ----------
+    headings : sequence of str
+        One a column; a line feed divides a heading into the name and the unit below it.
+    rows : iterable of sequences of str
+    left : int
+        How many columns, from the first, are set flush left; the others are set flush right.
+
+    Returns
+    -------
+    str
+        Without a line feed at the end.
+    """
+    tall = max(heading.count("\n") for heading in headings) + 1
+    parts = [[""] * (tall - 1 - heading.count("\n")) + heading.split("\n") for heading in headings]
+    head = [tuple(column[line] for column in parts) for line in range(tall)]
+    body = [tuple(row) for row in rows]
+    widths = [max(_width(row[number]) for row in (*head, *body)) for number in range(len(headings))]
+    rule = "─" * (sum(widths) + 2 * (len(widths) - 1))
+    return "\n".join(
+        [*(_row(row, widths, left) for row in head), rule, *(_row(row, widths, left) for row in body)]
+    )
+
+
+def fault_line(fault: Fault) -> str:
+    """One fault in one line; a mild one is marked so."""
+    mark = "mild: " if fault.severity is Severity.MILD else ""
+    return printable(f"{mark}{fault}")
+
+
+def check_text(reading: Reading) -> str:
+    """What reading a book gave, in a few lines; its faults go elsewhere."""
+    name = printable(reading.path.name)
+    grave = len(reading.grave)
+    mild = len(reading.faults) - grave
+    counts = f"{_count(grave, 'grave fault')}, {_count(mild, 'mild fault')}"
+    if reading.book is None:
+        return f"{name}: {counts}. The book cannot be used until the grave ones are mended."
+    book = reading.book
+    holds = ", ".join(
+        [
+            _count(len(book.liabilities), "liability flow"),
+            _count(len(book.holdings), "holding"),
+            _count(len(book.asset_flows), "ready-made asset flow"),
+        ]
+    )
+    return f"{name}: {counts}. It holds {holds}.\nContents {book.digest}"
+
+
+def standing_text(standing: Standing, *, title: str = "") -> str:
+    """A standing as tables."""
+    currency = printable(standing.currency)
+    head = f"Standing at {standing.valuation_date.isoformat()}, amounts in {currency}"
+    blocks = [
+        f"{printable(title)}\n{head}" if title else head,
+        _headline(standing, currency),
+        _sides(standing, currency),
+        _redington(standing),
+        _key_rates(standing, currency),
+        _lines(standing, currency),
+        _periods(standing.periods, currency),
+        _wrapped(CAUTION),
+    ]
+    return "\n\n".join(blocks)
+
+
+def simulation_text(simulation: Simulation, *, currency: str, title: str = "") -> str:
+    """A run as tables."""
+    account = simulation.savings_account
+    shown = _years_shown(account.year)
+    head = (
+        f"{_count(simulation.paths, 'path')} of {simulation.model} over "
+        f"{_count(simulation.horizon_years, 'year')}, {_count(simulation.steps_per_year, 'step')} a year, "
+        f"{simulation.measure} measure, seed {simulation.seed}"
+    )
+    blocks = [
+        f"{printable(title)}\n{head}" if title else head,
+        "Savings account: one unit rolled over\n" + _summary(account, shown, lambda value: grouped(value, 4)),
+        "Check of the mean of 1/R against the curve\n" + _repricing(simulation, shown),
+        "Short rate, continuously compounded [% a year]\n" + _summary(simulation.short_rate, shown, percent),
+        "Present values along the paths\n" + _distributions(simulation, printable(currency)),
+        _wrapped(QUANTILE_METHOD),
+        _wrapped(CAUTION),
+    ]
+    return "\n\n".join(blocks)
+
+
+def _headline(standing: Standing, currency: str) -> str:
+    """The key figures."""
+    rows = [
+        ("Assets", currency, grouped(standing.assets.present_value)),
+        ("Liabilities", currency, grouped(standing.liabilities.present_value)),
+        ("Surplus", currency, grouped(standing.surplus)),
+        ("Funding ratio", "%", percent(standing.funding_ratio, 2)),
+        ("Duration gap", "years", grouped(standing.duration_gap, 3)),
+        ("DV01 gap", currency, grouped(standing.dv01_gap)),
+    ]
+    return table(("Headline", "Unit", "Figure"), rows, left=2)
+
+
+def _sides(standing: Standing, currency: str) -> str:
+    """Every measure of both sides."""
+    rows = []
+    for wording in MEASURES:
+        unit = currency if wording.unit == "currency" else wording.unit
+        show = percent if wording.kind == "rate" else grouped
+        places = 0 if wording.kind == "money" else 3
+        figures = [
+            show(getattr(side, wording.name), places) for side in (standing.assets, standing.liabilities)
+        ]
+        rows.append((wording.label, unit, *figures))
+    return table(("Measure", "Unit", "Assets", "Liabilities"), rows, left=2)
+
+
+def _redington(standing: Standing) -> str:
+    """Redington's conditions."""
+    rows = [
+        (
+            condition.name.replace("_", " ").capitalize(),
+            grouped(condition.assets),
+            grouped(condition.liabilities),
+            "holds" if condition.holds else "does not hold",
+        )
+        for condition in standing.redington
+    ]
+    statements = [_wrapped(condition.statement) for condition in standing.redington]
+    return "\n".join([table(("Redington's conditions", "Assets", "Liabilities", ""), rows), *statements])
+
+
+def _key_rates(standing: Standing, currency: str) -> str:
+    """Key-rate durations and DV01."""
+    keys = standing.key_rates
+    gap = keys.dv01_assets - keys.dv01_liabilities
+    rows = [
+        (
+            f"{term:g}",
+            grouped(keys.assets[row], 3),
+            grouped(keys.liabilities[row], 3),
+            grouped(keys.dv01_assets[row]),
+            grouped(keys.dv01_liabilities[row]),
+            grouped(gap[row]),
+        )
+        for row, term in enumerate(keys.term.tolist())
+    ]
+    rows.append(
+        (
+            "all",
+            grouped(float(keys.assets.sum()), 3),
+            grouped(float(keys.liabilities.sum()), 3),
+            grouped(float(keys.dv01_assets.sum())),
+            grouped(float(keys.dv01_liabilities.sum())),
+            grouped(float(gap.sum())),
+        )
+    )
+    headings = (
+        "Key rate\n[years]",
+        "Assets\n[years]",
+        "Liabilities\n[years]",
+        f"DV01 assets\n[{currency}]",
+        f"DV01 liabilities\n[{currency}]",
+        f"DV01 gap\n[{currency}]",
+    )
+    return table(headings, rows, left=0)
+
+
+def _lines(standing: Standing, currency: str) -> str:
+    """The largest lines of both sides, the others together."""
+    rows = []
+    for side, side_name in SIDE_NAMES.items():
+        lines = [line for line in standing.lines if line.side is side]
+        shown = _largest(lines)
+        for line in shown:
+            name = printable(line.line)
+            cut = name if len(name) <= LONGEST_NAME else f"{name[: LONGEST_NAME - 1]}…"
+            spread = _MISSING if line.spread is None else grouped(10_000.0 * line.spread, 1)
+            rows.append(
+                (
+                    side_name,
+                    cut,
+                    line.kind,
+                    grouped(line.measures.present_value),
+                    grouped(line.measures.effective_duration, 3),
+                    spread,
+                )
+            )
+        if len(shown) < len(lines):
+            kept = {id(line) for line in shown}
+            rest = sum(line.measures.present_value for line in lines if id(line) not in kept)
+            rows.append((side_name, f"{len(lines) - len(shown):,} others", "", grouped(rest), "", ""))
+    headings = (
+        "Side",
+        "Line",
+        "Kind",
+        f"Present value\n[{currency}]",
+        "Effective duration\n[years]",
+        "Spread\n[basis points]",
+    )
+    return table(headings, rows, left=3)
+
+
+def _largest(lines: Sequence[LineStanding]) -> list[LineStanding]:
+    """The largest lines by present value, in the order of the book."""
+    if len(lines) <= LINES_SHOWN:
+        return list(lines)
+    sizes = np.array([abs(line.measures.present_value) for line in lines])
+    chosen = np.sort(np.argsort(-np.nan_to_num(sizes), kind="stable")[: LINES_SHOWN - 1])
+    return [lines[number] for number in chosen.tolist()]
+
+
+def _periods(periods: Periods, currency: str) -> str:
+    """Undiscounted flows: ten years one by one, then five years at a time."""
+    rows = []
+    years = periods.year.tolist()
+    start = 0
+    while start < len(years):
+        end = start + 1 if years[start] <= 10 else min(start + 5, len(years))
+        label = f"{years[start]}" if end == start + 1 else f"{years[start]} to {years[end - 1]}"
+        sums = [
+            float(column[start:end].sum()) for column in (periods.assets, periods.liabilities, periods.net)
+        ]
+        rows.append((label, *(grouped(value) for value in sums), grouped(float(periods.cumulative[end - 1]))))
+        start = end
+    unit = f"\n[{currency}]"
+    headings = ("Flows in year", f"Assets{unit}", f"Liabilities{unit}", f"Net{unit}", f"Cumulative net{unit}")
+    return table(headings, rows)
+
+
+def _years_shown(year: np.ndarray) -> list[int]:
+    """The rows of a summary that a terminal shows: the first five years, every fifth, the last."""
+    last = len(year) - 1
+    return [
+        row
+        for row, value in enumerate(year.tolist())
+        if value <= 5 or row == last or abs(value / 5 - round(value / 5)) < 1e-9
+    ]
+
+
+def _summary(summary: NodeSummary, shown: Sequence[int], show: Callable[[float], str]) -> str:
+    """A quantity by year."""
+    headings = (
+        "Year",
+        "Mean",
+        "Standard\nerror",
+        "Standard\ndeviation",
+        *(f"{level:g} %" for level in summary.levels),
+    )
+    rows = [
+        (
+            f"{summary.year[row]:g}",
+            show(summary.mean[row]),
+            show(summary.mean_se[row]),
+            show(summary.sd[row]),
+            *(show(value) for value in summary.percentile[row].tolist()),
+        )
+        for row in shown
+    ]
+    return table(headings, rows, left=0)
+
+
+def _repricing(simulation: Simulation, shown: Sequence[int]) -> str:
+    """The check of the draws against the curve."""
+    check = simulation.repricing
+    rows = []
+    for row in shown:
+        error = float(check.mean_discount_se[row])
+        away = float(check.mean_discount[row] - check.expected_discount[row])
+        rows.append(
+            (
+                f"{check.year[row]:g}",
+                grouped(check.mean_discount[row], 6),
+                grouped(error, 6),
+                grouped(check.expected_discount[row], 6),
+                grouped(check.curve_discount[row], 6),
+                grouped(away / error, 2) if error > 0.0 else _MISSING,
+            )
+        )
+    headings = (
+        "Year",
+        "Mean of 1/R",
+        "Standard\nerror",
+        "Expected",
+        "Curve",
+        "Difference\n[standard errors]",
+    )
+    return table(headings, rows, left=0)
+
+
+def _distributions(simulation: Simulation, currency: str) -> str:
+    """The pathwise present values of both sides and the surplus."""
+    sides = simulation.present_value
+    rows = [
+        ("Mean", *(grouped(side.mean) for side in sides)),
+        ("Standard error", *(grouped(side.se) for side in sides)),
+        ("Standard deviation", *(grouped(side.sd) for side in sides)),
+    ]
+    for number, level in enumerate(sides[0].levels if sides else ()):
+        rows.append((f"{level:g} %", *(grouped(float(side.percentile[number])) for side in sides)))
+    rows.append(("On the model's curve", *(grouped(side.curve) for side in sides)))
+    rows.append(("Share below 0 [%]", *(percent(side.below_zero, 2) for side in sides)))
+    rows.append(("Its standard error [%]", *(percent(side.below_zero_se, 2) for side in sides)))
+    return table((f"Present value [{currency}]", *(side.name.capitalize() for side in sides)), rows)
+
+
+def _wrapped(text: str) -> str:
+    """Prose in lines that a terminal can hold."""
+    return textwrap.fill(text, LINE_WIDTH)
+
+
+def _count(number: int, thing: str) -> str:
+    """A number of things in words."""
+    return f"{number:,} {thing}" if number == 1 else f"{number:,} {thing}s"
+
+
+def _width(text: str) -> int:
+    """Columns that a text takes in a terminal."""
+    return sum(
+        0 if unicodedata.combining(letter) else 2 if unicodedata.east_asian_width(letter) in "WF" else 1
+        for letter in text
+    )
+
+
+def _row(cells: Sequence[str], widths: Sequence[int], left: int) -> str:
+    """One row of a table."""
+    parts = []
+    for number, (cell, width) in enumerate(zip(cells, widths, strict=True)):
+        space = " " * (width - _width(cell))
+        parts.append(cell + space if number < left else space + cell)
+    return "  ".join(parts).rstrip()

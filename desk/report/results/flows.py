@@ -1,0 +1,268 @@
+"""The sheets of flows: each row of both sides with the formulas that give its present value.
+
+Above `ROW_CAP` rows a side is shown by line and year; what a row is worth is then a value, not a formula,
+and the sheet says so.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Iterator, Sequence
+from dataclasses import dataclass
+from typing import Any
+
+import numpy as np
+from numpy.typing import NDArray
+
+from desk.book import PricedFlows, Side
+from desk.book.arrays import FloatArray
+from desk.rates.curve import DiscountCurve
+from desk.report.results.plan import FIRST_ROW, HEADING_ROW, Block, Formula, SheetPlan, column_letter
+
+__all__ = ["ROW_CAP", "FlowSheet", "plan_flows"]
+
+ROW_CAP = 20_000
+SHEET_NAMES = {Side.ASSETS: "Asset flows", Side.LIABILITIES: "Liabilities"}
+COLUMNS = (
+    "line_name",
+    "line",
+    "date",
+    "time",
+    "year",
+    "payment",
+    "amount",
+    "zero",
+    "spread",
+    "discount",
+    "value",
+    "timed",
+    "timed_twice",
+    "reported",
+    "difference",
+)
+_YEAR_SLACK = 1e-9  # year k ends with time k, whatever rounding left of it
+
+
+@dataclass(frozen=True)
+class FlowSheet:
+    """A planned sheet of flows.
+
+    Attributes
+    ----------
+    plan : SheetPlan
+    names : dict of str to str
+        Names that the workbook defines, each with the area it stands for.
+    is_by_row : bool
+        False where the rows are sums by line and year.
+    rows_before : int
+        Rows of the side before they were summed up.
+    reported_value : float
+        Sum of the present values of the rows as the program computed them.
+    """
+
+    plan: SheetPlan
+    names: dict[str, str]
+    is_by_row: bool
+    rows_before: int
+    reported_value: float
+
+
+def plan_flows(
+    flows: PricedFlows, dates: NDArray[np.datetime64], curve: DiscountCurve, *, currency: str
+) -> FlowSheet:
+    """Plan the sheet of one side.
+
+    Parameters
+    ----------
+    flows : PricedFlows
+    dates : ndarray of datetime64[D], shape (n,)
+    curve : DiscountCurve
+    currency : str
+
+    Returns
+    -------
+    FlowSheet
+    """
+    by_row = len(flows) <= ROW_CAP
+    zero = curve.zero(flows.time)
+    value = flows.amount * np.exp(-(zero + flows.spread) * flows.time)
+    year = np.maximum(np.ceil(flows.time - _YEAR_SLACK), 1.0)
+    if by_row:
+        block = _row_block(flows, dates, zero=zero, value=value, year=year)
+    else:
+        block = _summed_block(flows, value=value, year=year)
+    plan = _plan(flows, block, currency=currency, by_row=by_row)
+    last = FIRST_ROW + max(block.count, 1) - 1
+    prefix = flows.side.value
+    names = {
+        f"{prefix}_{name}": plan.area(number, FIRST_ROW, last)
+        for number, name in enumerate(COLUMNS, start=1)
+        if name not in ("line_name", "date", "zero", "spread", "discount", "reported")
+    }
+    return FlowSheet(plan, names, by_row, len(flows), float(value.sum()))
+
+
+def _plan(flows: PricedFlows, block: Block, *, currency: str, by_row: bool) -> SheetPlan:
+    """Title, headings and the row of sums."""
+    what = "Payments promised" if flows.side is Side.LIABILITIES else "Payments of the assets"
+    if by_row:
+        note = (
+            "Present value = amount × EXP(−(zero rate + spread) × time), recomputed in each row. Zero rates "
+            "are continuously compounded."
+        )
+    else:
+        note = (
+            f"{len(flows):,} flows, more than the {ROW_CAP:,} that are shown one by one: summed by line and "
+            "year. The present values of the rows are values, not formulas."
+        )
+    plan = SheetPlan(SHEET_NAMES[flows.side], f"{what} after the valuation date", note, block=block)
+    plan.widths = dict(
+        enumerate(
+            (26.0, 7.0, 12.0, 11.0, 7.0, 9.0, 17.0, 11.0, 11.0, 13.0, 17.0, 19.0, 20.0, 17.0, 13.0), start=1
+        )
+    )
+    computed = "recomputed" if by_row else "summed"
+    plan.headings(
+        [
+            "Line",
+            "Line number",
+            "Date",
+            "Time [years]" if by_row else "Mean time [years]",
+            "Year",
+            "Payment [1 = yes]",
+            f"Amount [{currency}]",
+            "Zero rate [a year]",
+            "Spread [a year]",
+            f"Discount factor, {computed}" if by_row else "Mean discount factor",
+            f"Present value, {computed} [{currency}]",
+            f"Time × present value [{currency} × years]",
+            f"Time² × present value [{currency} × years²]",
+            f"Present value, reported [{currency}]",
+            f"Difference [{currency}]",
+        ]
+    )
+    last = FIRST_ROW + max(block.count, 1) - 1
+    plan.put(HEADING_ROW - 1, 6, "Sum", "text")
+    for number, name in enumerate(COLUMNS, start=1):
+        if name in ("amount", "value", "timed", "timed_twice", "reported", "difference"):
+            letter = column_letter(number)
+            form = "tiny" if name == "difference" else "money"
+            total = Formula(f"=SUM({letter}{FIRST_ROW}:{letter}{last})")
+            plan.put(HEADING_ROW - 1, number, total, "live", form)
+    if not block.count:
+        plan.put(FIRST_ROW, 1, "This side has no flows.", "note")
+    return plan
+
+
+_FORMS = (
+    "text",
+    "whole",
+    "date",
+    "years",
+    "whole",
+    "whole",
+    "money2",
+    "rate",
+    "rate",
+    "factor",
+    "money2",
+    "money2",
+    "money2",
+    "money2",
+    "tiny",
+)
+
+
+def _row_block(
+    flows: PricedFlows,
+    dates: NDArray[np.datetime64],
+    *,
+    zero: FloatArray,
+    value: FloatArray,
+    year: FloatArray,
+) -> Block:
+    """One row a flow, with formulas."""
+
+    def rows() -> Iterator[Sequence[Any]]:
+        names = flows.line_names
+        columns = (
+            (flows.line + 1).tolist(),
+            dates.astype(object).tolist(),
+            flows.time.tolist(),
+            year.tolist(),
+            flows.is_flow.astype(np.int64).tolist(),
+            flows.amount.tolist(),
+            zero.tolist(),
+            flows.spread.tolist(),
+            value.tolist(),
+        )
+        for row, cells in enumerate(zip(*columns, strict=True), start=FIRST_ROW):
+            line, date, time, year_number, payment, amount, rate, spread, worth = cells
+            yield (
+                names[line - 1],
+                line,
+                date,
+                time,
+                year_number,
+                payment,
+                amount,
+                rate,
+                spread,
+                Formula(f"=EXP(-(H{row}+I{row})*D{row})"),
+                Formula(f"=G{row}*J{row}"),
+                Formula(f"=D{row}*K{row}"),
+                Formula(f"=D{row}*L{row}"),
+                worth,
+                Formula(f"=K{row}-N{row}"),
+            )
+
+    inputs, live = "input", "live"
+    roles = (
+        *("text", "text", inputs, inputs, "reported", "reported", inputs, inputs, inputs),
+        *(live, live, live, live, "reported", live),
+    )
+    return Block(FIRST_ROW, len(flows), roles, _FORMS, rows)
+
+
+def _summed_block(flows: PricedFlows, *, value: FloatArray, year: FloatArray) -> Block:
+    """One row a line, year and kind of row, with sums as values."""
+    keys = np.stack((flows.line.astype(np.float64), year, flows.is_flow.astype(np.float64)), axis=1)
+    groups, place = np.unique(keys, axis=0, return_inverse=True)
+    place = place.reshape(-1)
+    count = len(groups)
+
+    def sums(weights: FloatArray) -> FloatArray:
+        return np.bincount(place, weights=weights, minlength=count).astype(np.float64)
+
+    worth, amount = sums(value), sums(flows.amount)
+    timed, timed_twice = sums(flows.time * value), sums(flows.time**2 * value)
+    size = sums(np.abs(value))
+    with np.errstate(divide="ignore", invalid="ignore"):
+        mean_time = sums(flows.time * np.abs(value)) / size
+        mean_discount = worth / amount
+
+    def rows() -> Iterator[Sequence[Any]]:
+        columns = (groups, mean_time, amount, mean_discount, worth, timed, timed_twice)
+        for row, cells in enumerate(
+            zip(*(column.tolist() for column in columns), strict=True), start=FIRST_ROW
+        ):
+            (line, year_number, payment), time, total, discount, present, first, second = cells
+            yield (
+                flows.line_names[int(line)],
+                line + 1,
+                None,
+                time,
+                year_number,
+                payment,
+                total,
+                None,
+                None,
+                discount,
+                present,
+                first,
+                second,
+                present,
+                Formula(f"=K{row}-N{row}"),
+            )
+
+    roles = ("text", *("text",) * 5, *("reported",) * 8, "live")
+    return Block(FIRST_ROW, count, roles, _FORMS, rows)
