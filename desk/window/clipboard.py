@@ -27,8 +27,8 @@ def put_table(text: str, markup: str) -> None:
 def _leave_plain_text() -> None:
     """Leave nothing on the clipboard that Python made.
 
-    WORKAROUND, seen with PySide6 6.11.3 on the offscreen platform: Qt deletes such data after the interpreter is gone, and the process
-    ends in a segmentation fault.
+    WORKAROUND, seen with PySide6 6.11.3 on the offscreen platform: Qt deletes such data after the
+    interpreter is gone, and the process ends in a segmentation fault.
     """
     if QGuiApplication.instance() is not None:
         clipboard = QGuiApplication.clipboard()

@@ -228,12 +228,23 @@ class Document(QObject):
         """Whether the book differs in its history from what was opened or last saved."""
         return bool(self._history) and self._history[self._place] is not self._saved
 
-    def mark_saved(self, path: Path) -> None:
-        """Note that the book as it stands was saved to `path`."""
-        if self._history:
-            self._saved = self._history[self._place]
-            self.path = path
-            self._tell_history()
+    def mark_saved(self, path: Path, book: Book | None = None) -> None:
+        """Note that a version of the book was saved to `path`.
+
+        Parameters
+        ----------
+        path : Path
+        book : Book, optional
+            The version that was saved, where edits may have followed; by default the book as it stands.
+        """
+        if not self._history:
+            return
+        saved = self._history[self._place]
+        if book is not None:
+            saved = next((version for version in self._history if version.book is book), self._saved or saved)
+        self._saved = saved
+        self.path = path
+        self._tell_history()
 
     def _book_replaced(self) -> None:
         book = self._open_book()

@@ -108,7 +108,7 @@ class TableModel(QAbstractTableModel):
             One entry a column, by key, all of one length.
         marks : mapping of (source row, key) to Mark, optional
         strong : collection of int
-            Source rows with emphasis: totals.
+            Source rows with emphasis: totals, which come last in any order but that of the data.
         """
         values = [plain_column(data[column.key], column) for column in self._columns]
         lengths = {len(array) for array in values}
@@ -179,6 +179,10 @@ class TableModel(QAbstractTableModel):
         else:
             place, falling = self._sorted_by
             order = _order(self._values[place], falling=falling)
+            if self._strong:
+                # Totals stay under what they sum up.
+                totals = np.isin(order, list(self._strong))
+                order = np.concatenate((order[~totals], np.sort(order[totals])))
         if self._shown is not None:
             order = order[self._shown[order]]
         self._order = order

@@ -158,7 +158,7 @@ class Table(QTableView):
     def fit_columns(self) -> None:
         """Widths from the headings, a sample of the rows and the extremes of each column."""
         model = self.table_model
-        plain, strong = QFontMetrics(self.font()), QFontMetrics(self.strong_font)
+        strong = QFontMetrics(self.strong_font)
         soft = QFontMetrics(soft_font(self.font()))
         count = len(model.column_values(model.columns[0].key)) if model.columns else 0
         sample = np.unique(np.linspace(0, max(count - 1, 0), min(count, _SAMPLE)).astype(int))
@@ -171,9 +171,8 @@ class Table(QTableView):
             if column.is_numeric and count:
                 finite = np.where(np.isfinite(values.astype(float)), values.astype(float), 0.0)
                 rows = np.append(sample, [finite.argmin(), finite.argmax()])
-            metrics = strong if column.is_numeric else plain
             for row in rows:
-                width = max(width, metrics.horizontalAdvance(column.shown(values[row])))
+                width = max(width, strong.horizontalAdvance(column.shown(values[row])))
             self.setColumnWidth(place, min(width + 2 * GAP + 2, _WIDEST))
         self._fitted = count > 0
 
@@ -316,14 +315,29 @@ class Table(QTableView):
         super().keyPressEvent(event)
 
     def paintEvent(self, event: QPaintEvent) -> None:
-        """Say what an empty table would hold."""
+        """Carry the hairlines on to the edge; say what an empty table would hold."""
         super().paintEvent(event)
+        self._paint_beyond()
         if self.table_model.rowCount() == 0 and self.empty_text:
             painter = QPainter(self.viewport())
             painter.setPen(self.theme.ink_soft)
             place = self.viewport().rect().adjusted(4 * GAP, 2 * GAP, -4 * GAP, -2 * GAP)
             flags = Qt.AlignmentFlag.AlignHCenter | Qt.AlignmentFlag.AlignVCenter | Qt.TextFlag.TextWordWrap
             painter.drawText(place, int(flags), self.empty_text)
+
+    def _paint_beyond(self) -> None:
+        """The hairlines right of the last column."""
+        count, area = self.table_model.rowCount(), self.viewport().rect()
+        start = self.horizontalHeader().length() - self.horizontalHeader().offset()
+        if not count or start >= area.right():
+            return
+        painter = QPainter(self.viewport())
+        painter.setPen(self.theme.hairline)
+        row, height = max(self.rowAt(0), 0), self.verticalHeader().defaultSectionSize()
+        line = self.rowViewportPosition(row) + height - 1
+        while row < count and line <= area.bottom():
+            painter.drawLine(start, line, area.right(), line)
+            row, line = row + 1, line + height
 
     def _on_double_click(self, index: QModelIndex) -> None:
         if not index.flags() & Qt.ItemFlag.ItemIsEditable:
