@@ -82,10 +82,16 @@ class TestEveryInterpolation:
         for method in (curve.discount, curve.zero, curve.instantaneous_forward):
             whole = method(grid)
             assert whole.shape == grid.shape
-            assert [float(method(time)) for time in grid.ravel()] == whole.ravel().tolist()
+            np.testing.assert_allclose(whole.ravel(), [method(t) for t in grid.ravel()], rtol=1e-14)
             assert method([]).shape == (0,)
             assert method(3).shape == ()
         assert curve.forward(grid[0], 70.0).shape == (3, 4)
+
+    def test_many_times_are_as_few(self, interpolation: Interpolation, rates: Floats) -> None:
+        curve = _curve(interpolation, rates)
+        times = np.concatenate((np.linspace(0.0, 70.0, 1500), TERMS, np.nextafter(TERMS, 0.0)))
+        for method in (curve.discount, curve.zero, curve.instantaneous_forward):
+            np.testing.assert_allclose(method(times), [method(time) for time in times], rtol=1e-14)
 
     def test_forwards_chain(self, interpolation: Interpolation, rates: Floats) -> None:
         curve = _curve(interpolation, rates)

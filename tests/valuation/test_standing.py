@@ -292,7 +292,7 @@ class TestPeriods:
         )
 
     def test_a_year_ends_with_its_last_day(self) -> None:
-        twelfths = float(np.sum(np.full(12, 1.0 / 12.0)))  # off by rounding
+        twelfths = float(np.nextafter(1.0, 2.0))  # what twelve twelfths may add up to
         periods = undiscounted_periods(
             self._flows([0.0, 0.01, twelfths, 1.0, 1.001, 2.0]), self._flows([3.0])
         )
