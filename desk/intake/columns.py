@@ -54,14 +54,12 @@ PackedColumn = tuple[bytes, bytes, list[str]]
 
 
 def pack_column(cells: Sequence[Any]) -> PackedColumn:
-    """One column as bytes of kinds, bytes of float64 numbers and the table of its texts."""
+    """One column as bytes of kinds, bytes of float64 numbers and its texts; a blank one as nothing."""
     count = len(cells)
     kinds = np.fromiter(map(_KINDS.__getitem__, map(type, cells)), dtype=np.uint8, count=count)
     values = np.zeros(count)
     texts: dict[str, int] = {}
-    for kind in np.unique(kinds).tolist():
-        if kind == Kind.BLANK:
-            continue
+    for kind in set(kinds.tolist()) - {Kind.BLANK}:
         where = kinds == kind
         chosen = list(compress(cells, where.tolist()))
         if kind == Kind.TEXT:
@@ -81,6 +79,9 @@ def pack_column(cells: Sequence[Any]) -> PackedColumn:
         if empty.any():
             is_text = kinds == Kind.TEXT
             kinds[is_text] = np.where(empty[values[is_text].astype(np.int64)], Kind.BLANK, Kind.TEXT)
+    if not kinds.any():
+        # A stray cell makes a sheet wide: columns of nothing are handed over as nothing.
+        return b"", b"", []
     return kinds.tobytes(), values.tobytes(), [_plain(text) for text in texts]
 
 
@@ -117,9 +118,15 @@ class Column:
     texts: list[str]
 
     @classmethod
-    def unpack(cls, packed: PackedColumn) -> Column:
-        """The column that `pack_column` packed."""
+    def unpack(cls, packed: PackedColumn, count: int) -> Column:
+        """The column of `count` rows that `pack_column` packed."""
         kinds, values, texts = packed
+        if not kinds:
+            return cls(
+                np.broadcast_to(np.uint8(Kind.BLANK), (count,)),
+                np.broadcast_to(np.float64(0.0), (count,)),
+                [],
+            )
         return cls(np.frombuffer(kinds, dtype=np.uint8), np.frombuffer(values), texts)
 
     @property

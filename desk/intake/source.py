@@ -114,7 +114,7 @@ def open_source(
         _refuse(path, values, faults, limits, look)
         return Source(sha256, [])
     sheets = [
-        SourceSheet(SheetColumns(name, hidden, count, [Column.unpack(packed) for packed in columns]))
+        SourceSheet(SheetColumns(name, hidden, count, [Column.unpack(packed, count) for packed in columns]))
         for name, hidden, count, columns in values.content["sheets"]
     ]
     faults.order_sheets([sheet.name for sheet in sheets])

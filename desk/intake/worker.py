@@ -18,6 +18,9 @@ from desk.intake.container import Refused, examine
 
 __all__ = ["main"]
 
+_MOST_CELLS = 60_000_000
+"""What is handed over takes nine bytes a cell in the program's own memory."""
+
 
 def _set_limits(memory_bytes: int, seconds: int) -> None:
     """Bound this process where the platform can; the program's own clock bounds it everywhere."""
@@ -46,6 +49,7 @@ def read_values(path: Path) -> dict[str, Any]:
     from desk.intake.columns import pack_rows
 
     sheets = []
+    cells = 0
     try:
         # By its content, not by its name: a name proves nothing.
         with open(path, "rb") as file:
@@ -55,7 +59,11 @@ def read_values(path: Path) -> dict[str, Any]:
                     continue
                 rows = workbook.get_sheet_by_name(about.name).to_python(skip_empty_area=False)
                 hidden = about.visible != calamine.SheetVisibleEnum.Visible
-                sheets.append((about.name, hidden, len(rows), pack_rows(rows)))
+                columns = pack_rows(rows)
+                cells += sum(len(kinds) for kinds, _, _ in columns)
+                if cells > _MOST_CELLS:
+                    raise Refused("memory")
+                sheets.append((about.name, hidden, len(rows), columns))
                 del rows
     except calamine.PasswordError as error:
         raise Refused("password") from error
