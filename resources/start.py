@@ -13,6 +13,7 @@ from __future__ import annotations
 
 import ctypes
 import hashlib
+import importlib.util
 import os
 import shutil
 import subprocess
@@ -122,16 +123,16 @@ def make_environment(environment: Path = ENVIRONMENT) -> Path:
     if works(python):
         return python
     say(f"Making the environment {environment.name} with Python {sys.version.split()[0]}.")
+    package = f"python{sys.version_info.major}.{sys.version_info.minor}-venv"
+    # Debian and Ubuntu keep the part of Python that puts pip into an environment in a package of its own.
+    if importlib.util.find_spec("ensurepip") is None and may_install_packages():
+        install_packages([package])
     try:
         venv.EnvBuilder(with_pip=True, clear=True).create(environment)
-    except (OSError, subprocess.SubprocessError) as error:
-        package = f"python{sys.version_info.major}.{sys.version_info.minor}-venv"
-        if may_install_packages() and install_packages([package]):
-            venv.EnvBuilder(with_pip=True, clear=True).create(environment)
-        else:
-            say(f"The environment could not be made: {error}")
-            say(f"On Debian and Ubuntu this helps:  sudo apt-get install {package}")
-            raise SystemExit(1) from None
+    except (OSError, subprocess.SubprocessError, SystemExit) as error:
+        say(f"The environment could not be made ({error}).")
+        say(f"On Debian and Ubuntu this helps:  sudo apt-get install {package}")
+        raise SystemExit(1) from None
     return python
 
 
