@@ -3,7 +3,6 @@
 from __future__ import annotations
 
 from dataclasses import dataclass
-from datetime import date
 from typing import Any, Literal
 
 import numpy as np
@@ -128,30 +127,12 @@ class Column:
                 return int(value) if value == int(value) else None
             return value
         if self.kind == "date":
-            return _parsed_date(text)
+            return numbers.parse_day(text)
         if self.kind == "flag":
             return {"yes": True, "true": True, "1": True, "no": False, "false": False, "0": False}.get(
                 text.casefold()
             )
         return text[1:] if text[:1] == "'" and text[1:].startswith(_FORMULA_STARTS) else text
-
-
-def _parsed_date(text: str) -> date | None:
-    """A date in ISO form or in the short form of the locale."""
-    try:
-        return date.fromisoformat(text)
-    except ValueError:
-        pass
-    locale = numbers.shown_locale()
-    form = locale.dateFormat(locale.FormatType.ShortFormat)
-    for pattern in (form, form if "yyyy" in form else form.replace("yy", "yyyy")):
-        if "yyyy" not in pattern:
-            # Two figures do not say which century.
-            continue
-        found = locale.toDate(text, pattern)
-        if found.isValid():
-            return date(found.year(), found.month(), found.day())
-    return None
 
 
 @dataclass(frozen=True)

@@ -26,6 +26,7 @@ __all__ = [
     "money",
     "money_scaled",
     "number",
+    "parse_day",
     "parse_number",
     "parse_rate",
     "rate",
@@ -310,3 +311,21 @@ def parse_rate(text: str, locale: QLocale | None = None) -> float | None:
     if not body.endswith(("%", "٪", "‰")):
         body += "%"
     return parse_number(body + closing, locale)
+
+
+def parse_day(text: str) -> date | None:
+    """A date in ISO form or in the short form of the locale."""
+    try:
+        return date.fromisoformat(text)
+    except ValueError:
+        pass
+    locale = shown_locale()
+    form = locale.dateFormat(locale.FormatType.ShortFormat)
+    for pattern in (form, form if "yyyy" in form else form.replace("yy", "yyyy")):
+        if "yyyy" not in pattern:
+            # Two figures do not say which century.
+            continue
+        found = locale.toDate(text, pattern)
+        if found.isValid():
+            return date(found.year(), found.month(), found.day())
+    return None

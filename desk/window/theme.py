@@ -331,4 +331,7 @@ class ThemeSwitch(QObject):
 
 def keep_look(widget: QWidget, name: str) -> None:
     """Give `widget` the role the style sheet knows as `name`."""
-    widget.setProperty("look", name)
+    if widget.property("look") != name:
+        widget.setProperty("look", name)
+        widget.style().unpolish(widget)
+        widget.style().polish(widget)

@@ -1,0 +1,274 @@
+"""What the stations have in common: heading, main pictures and table, form, and what they say when empty."""
+
+from __future__ import annotations
+
+from collections.abc import Callable
+
+from PySide6.QtCore import Qt, QTimer, Signal
+from PySide6.QtGui import QShowEvent
+from PySide6.QtWidgets import (
+    QFrame,
+    QHBoxLayout,
+    QLabel,
+    QPushButton,
+    QScrollArea,
+    QSplitter,
+    QStackedWidget,
+    QVBoxLayout,
+    QWidget,
+)
+
+from desk.window.document import Document
+from desk.window.fields import FORM_WIDTH, Form
+from desk.window.jobs import Jobs
+from desk.window.labels import ElidedLabel
+from desk.window.theme import GAP, HALF, STEP, WIDE, ThemeSwitch, keep_look
+
+__all__ = ["STALE", "Station"]
+
+STALE = "These figures are from before your last change."
+
+
+class _Strip(QWidget):
+    """A sentence across the station, with a button that mends what it says."""
+
+    def __init__(self) -> None:
+        super().__init__()
+        keep_look(self, "strip")
+        self.setAttribute(Qt.WidgetAttribute.WA_StyledBackground)
+        self.text = QLabel()
+        self.text.setWordWrap(True)
+        self.button = QPushButton()
+        row = QHBoxLayout(self)
+        row.setContentsMargins(WIDE - STEP, HALF, GAP, HALF)
+        row.addWidget(self.text, 1)
+        row.addWidget(self.button)
+        self._act: Callable[[], object] | None = None
+        self.button.clicked.connect(self._on_clicked)
+        self.hide()
+
+    def put(self, text: str, button_text: str, act: Callable[[], object] | None) -> None:
+        """Say `text` and offer `act`."""
+        self.text.setText(text)
+        self.button.setText(button_text)
+        self.button.setVisible(bool(button_text) and act is not None)
+        self._act = act
+        self.show()
+
+    def _on_clicked(self) -> None:
+        if self._act is not None:
+            self._act()
+
+
+class _Empty(QWidget):
+    """What a station needs before it can show anything, and the step that brings it."""
+
+    def __init__(self) -> None:
+        super().__init__()
+        self.text = QLabel()
+        self.text.setWordWrap(True)
+        self.text.setAlignment(Qt.AlignmentFlag.AlignHCenter)
+        self.text.setMinimumWidth(100 * STEP)
+        self.text.setMaximumWidth(120 * STEP)
+        self.button = QPushButton()
+        keep_look(self.button, "first")
+        column = QVBoxLayout(self)
+        column.setSpacing(WIDE)
+        column.addStretch(2)
+        column.addWidget(self.text, 0, Qt.AlignmentFlag.AlignHCenter)
+        column.addWidget(self.button, 0, Qt.AlignmentFlag.AlignHCenter)
+        column.addStretch(3)
+        self._act: Callable[[], object] | None = None
+        self.button.clicked.connect(self._on_clicked)
+
+    def put(self, text: str, button_text: str, act: Callable[[], object] | None) -> None:
+        """Say what is needed and offer the step."""
+        self.text.setText(text)
+        self.button.setText(button_text)
+        self.button.setVisible(bool(button_text) and act is not None)
+        self._act = act
+
+    def _on_clicked(self) -> None:
+        if self._act is not None:
+            self._act()
+
+
+class Station(QWidget):
+    """One station of the work. Subclasses fill it in their ``__init__`` and in `refresh`.
+
+    Attributes
+    ----------
+    key, title, purpose : str
+        Of the class: a plain name, the heading, and one sentence on what is done here.
+    document : Document
+    jobs : Jobs
+    theme_switch : ThemeSwitch
+    form : Form
+        In the panel at the right; hidden until `set_form_visible`.
+
+    Signals
+    -------
+    message(str)
+        Something to tell the reader in the foot.
+    step_wanted(str)
+        Another station (its key) or step is asked for: ``open`` asks for a book.
+    """
+
+    key = ""
+    title = ""
+    purpose = ""
+
+    message = Signal(str)
+    step_wanted = Signal(str)
+
+    def __init__(
+        self, document: Document, jobs: Jobs, theme_switch: ThemeSwitch, parent: QWidget | None = None
+    ) -> None:
+        super().__init__(parent)
+        self.document = document
+        self.jobs = jobs
+        self.theme_switch = theme_switch
+        self.setAccessibleName(self.title)
+        self.setAccessibleDescription(self.purpose)
+        self._is_outdated = True
+        self._refreshing = QTimer(self, singleShot=True, interval=0)
+        self._refreshing.timeout.connect(self.refresh_now)
+
+        heading = QLabel(self.title)
+        keep_look(heading, "title")
+        purpose = ElidedLabel(self.purpose)
+        keep_look(purpose, "soft")
+        self._heading_row = QHBoxLayout()
+        self._heading_row.setContentsMargins(WIDE, WIDE - STEP, WIDE, GAP)
+        self._heading_row.setSpacing(WIDE)
+        self._heading_row.addWidget(heading, 0, Qt.AlignmentFlag.AlignBaseline)
+        self._heading_row.addWidget(purpose, 1, Qt.AlignmentFlag.AlignBaseline)
+
+        self.strip = _Strip()
+        self.empty = _Empty()
+        self.pictures = QSplitter(Qt.Orientation.Horizontal)
+        self.main = QSplitter(Qt.Orientation.Vertical)
+        self.form = Form()
+        self._panel = QScrollArea()
+        self._panel.setWidget(self.form)
+        self._panel.setWidgetResizable(True)
+        self._panel.setFrameShape(QFrame.Shape.NoFrame)
+        self._panel.setHorizontalScrollBarPolicy(Qt.ScrollBarPolicy.ScrollBarAlwaysOff)
+        self._panel.setFixedWidth(FORM_WIDTH)
+        self._panel.setAccessibleName(f"Settings of {self.title}")
+        self._panel.hide()
+        for splitter in (self.pictures, self.main):
+            splitter.setChildrenCollapsible(False)
+            splitter.setHandleWidth(STEP)
+        self.pictures.hide()
+        self.main.addWidget(self.pictures)
+        body = QWidget()
+        row = QHBoxLayout(body)
+        row.setContentsMargins(WIDE, 0, 0, 0)
+        row.setSpacing(0)
+        row.addWidget(self.main, 1)
+        row.addWidget(self._panel)
+        self._stack = QStackedWidget()
+        self._stack.addWidget(body)
+        self._stack.addWidget(self.empty)
+        column = QVBoxLayout(self)
+        column.setContentsMargins(0, 0, 0, 0)
+        column.setSpacing(0)
+        column.addLayout(self._heading_row)
+        column.addWidget(self.strip)
+        column.addWidget(self._stack, 1)
+
+        for signal in (
+            document.reading_changed,
+            document.book_changed,
+            document.standing_changed,
+            document.simulation_changed,
+        ):
+            signal.connect(self.request_refresh)
+
+    # Filling it
+
+    def set_pictures(self, *pictures: QWidget, upright: bool = False) -> None:
+        """The main pictures, side by side, or one under the other where `upright`."""
+        self.pictures.setOrientation(Qt.Orientation.Vertical if upright else Qt.Orientation.Horizontal)
+        for picture in pictures:
+            self.pictures.addWidget(picture)
+        self.pictures.show()
+        self._share()
+
+    def set_table(self, table: QWidget, *, share: int = 40) -> None:
+        """The main table, under the pictures; `share` is its part of the height in percent."""
+        self.main.addWidget(table)
+        self._table_share = share
+        self._share()
+
+    def set_form_visible(self, visible: bool = True) -> None:
+        """Show the form's panel."""
+        self._panel.setVisible(visible)
+
+    def add_to_heading(self, widget: QWidget) -> None:
+        """Put a control at the right of the heading."""
+        self._heading_row.addWidget(widget, 0, Qt.AlignmentFlag.AlignVCenter)
+
+    _table_share = 40
+
+    def _share(self) -> None:
+        if self.main.count() > 1:
+            self.main.setStretchFactor(0, 100 - self._table_share)
+            self.main.setStretchFactor(1, self._table_share)
+            self.main.setSizes([10 * (100 - self._table_share), 10 * self._table_share])
+
+    # What it says
+
+    def show_empty(self, text: str, button_text: str = "", act: Callable[[], object] | None = None) -> None:
+        """Show nothing but what the station needs, and a button for the step that brings it."""
+        self.empty.put(text, button_text, act)
+        self._stack.setCurrentWidget(self.empty)
+
+    def show_content(self) -> None:
+        """Show pictures, table and form."""
+        self._stack.setCurrentIndex(0)
+
+    @property
+    def is_empty(self) -> bool:
+        """Whether the station shows only what it needs."""
+        return self._stack.currentWidget() is self.empty
+
+    def show_stale(
+        self, button_text: str = "", act: Callable[[], object] | None = None, *, text: str = STALE
+    ) -> None:
+        """Say that the figures shown are stale, or whatever else `text` says, and offer what mends it."""
+        self.strip.put(text, button_text, act)
+
+    def hide_stale(self) -> None:
+        """Take the strip away."""
+        self.strip.hide()
+
+    @property
+    def stale_text(self) -> str:
+        """What the strip says; empty where it is not there."""
+        return "" if self.strip.isHidden() else self.strip.text.text()
+
+    # Keeping up
+
+    def request_refresh(self) -> None:
+        """Refresh soon, once for all changes of this turn; a hidden station waits until it is shown."""
+        self._is_outdated = True
+        if self.isVisible():
+            self._refreshing.start()
+
+    def refresh_now(self) -> None:
+        """Refresh if anything changed since the last time."""
+        self._refreshing.stop()
+        if self._is_outdated:
+            self._is_outdated = False
+            self.refresh()
+
+    def refresh(self) -> None:
+        """Bring everything shown up to date with the document."""
+        raise NotImplementedError
+
+    def showEvent(self, event: QShowEvent) -> None:
+        """Be up to date from the first sight on."""
+        super().showEvent(event)
+        self.refresh_now()
