@@ -19,6 +19,8 @@ _MOST_RATIO = 300.0
 """Sheets of real data shrink to a tenth or a hundredth; a bomb to a thousandth."""
 _HEAD_BYTES = 1 << 16
 _OLE = bytes.fromhex("d0cf11e0a1b11ae1")
+_ENCRYPTED = "EncryptedPackage".encode("utf-16-le")
+"""Name of the stream that holds a workbook under a password ([MS-OFFCRYPTO], 2.3.4.4)."""
 _DOCTYPE = re.compile(rb"<!\s*DOCTYPE|<\0!\0D\0O\0C", re.IGNORECASE)
 
 
@@ -57,6 +59,8 @@ def examine(path: Path) -> str:
     if not head:
         raise Refused("empty")
     if head == _OLE:
+        if _mentions(path, _ENCRYPTED):
+            raise Refused("password")
         return "old"
     if head[:2] != b"PK":
         raise Refused("unknown")
@@ -80,6 +84,17 @@ def examine(path: Path) -> str:
     if "content.xml" in names:
         return "zip"
     raise Refused("unknown")
+
+
+def _mentions(path: Path, words: bytes) -> bool:
+    """Whether `words` stand somewhere in the file."""
+    kept = b""
+    with open(path, "rb") as file:
+        while chunk := file.read(1 << 20):
+            if words in kept + chunk:
+                return True
+            kept = chunk[-len(words) :]
+    return False
 
 
 def _examine_parts(package: zipfile.ZipFile) -> None:

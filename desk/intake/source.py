@@ -82,6 +82,9 @@ def open_source(
         if path.is_dir():
             faults.add("this is a folder", _WORKBOOK, "Choose a file.")
             return Source("", [])
+        if path.exists() and not path.is_file():
+            faults.add("this is no file but a device or a pipe", _WORKBOOK, "Choose a file.")
+            return Source("", [])
         size = path.stat().st_size
         if size > _MOST_BYTES:
             faults.add(
