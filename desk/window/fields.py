@@ -7,8 +7,8 @@ from dataclasses import dataclass
 from datetime import date
 from typing import Any
 
-from PySide6.QtCore import Qt, Signal
-from PySide6.QtGui import QKeyEvent, QWheelEvent
+from PySide6.QtCore import QPoint, Qt, Signal
+from PySide6.QtGui import QKeyEvent, QPainter, QPaintEvent, QPen, QWheelEvent
 from PySide6.QtWidgets import (
     QComboBox,
     QHBoxLayout,
@@ -20,7 +20,7 @@ from PySide6.QtWidgets import (
 )
 
 from desk.window import numbers
-from desk.window.theme import GAP, HALF, WIDE, keep_look, soft_font
+from desk.window.theme import GAP, HALF, STEP, WIDE, keep_look, soft_font
 
 __all__ = ["Choice", "ChoiceField", "DateField", "Field", "Form", "IntegerField", "NumberField", "TextField"]
 
@@ -50,6 +50,15 @@ class _Combo(QComboBox):
             super().wheelEvent(event)
         else:
             event.ignore()
+
+    def paintEvent(self, event: QPaintEvent) -> None:
+        """Draw the mark that it opens, in the colour of the theme, which a style sheet cannot."""
+        super().paintEvent(event)
+        painter = QPainter(self)
+        painter.setRenderHint(QPainter.RenderHint.Antialiasing)
+        painter.setPen(QPen(self.palette().placeholderText().color(), 1.5))
+        x, y = self.width() - 3 * STEP, self.height() // 2
+        painter.drawPolyline([QPoint(x - STEP, y - 2), QPoint(x, y + 2), QPoint(x + STEP, y - 2)])
 
 
 class Field(QWidget):

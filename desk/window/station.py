@@ -26,6 +26,8 @@ from desk.window.theme import GAP, HALF, STEP, WIDE, ThemeSwitch, keep_look
 
 __all__ = ["STALE", "Station"]
 
+_READABLE = 110 * STEP
+"""Width of running text [px]."""
 STALE = "These figures are from before your last change."
 
 
@@ -40,7 +42,7 @@ class _Strip(QWidget):
         self.text.setWordWrap(True)
         self.button = QPushButton()
         row = QHBoxLayout(self)
-        row.setContentsMargins(WIDE - STEP, HALF, GAP, HALF)
+        row.setContentsMargins(WIDE, HALF, WIDE, HALF)
         row.addWidget(self.text, 1)
         row.addWidget(self.button)
         self._act: Callable[[], object] | None = None
@@ -68,14 +70,18 @@ class _Empty(QWidget):
         self.text = QLabel()
         self.text.setWordWrap(True)
         self.text.setAlignment(Qt.AlignmentFlag.AlignHCenter)
-        self.text.setMinimumWidth(100 * STEP)
-        self.text.setMaximumWidth(120 * STEP)
+        self.text.setFixedWidth(_READABLE)
         self.button = QPushButton()
         keep_look(self.button, "first")
         column = QVBoxLayout(self)
         column.setSpacing(WIDE)
         column.addStretch(2)
-        column.addWidget(self.text, 0, Qt.AlignmentFlag.AlignHCenter)
+        # In a row of its own, for a wrapped label that is aligned gets the height of one line.
+        row = QHBoxLayout()
+        row.addStretch(1)
+        row.addWidget(self.text)
+        row.addStretch(1)
+        column.addLayout(row)
         column.addWidget(self.button, 0, Qt.AlignmentFlag.AlignHCenter)
         column.addStretch(3)
         self._act: Callable[[], object] | None = None
@@ -159,12 +165,12 @@ class Station(QWidget):
         self._panel.hide()
         for splitter in (self.pictures, self.main):
             splitter.setChildrenCollapsible(False)
-            splitter.setHandleWidth(STEP)
+            splitter.setHandleWidth(GAP)
         self.pictures.hide()
         self.main.addWidget(self.pictures)
         body = QWidget()
         row = QHBoxLayout(body)
-        row.setContentsMargins(WIDE, 0, 0, 0)
+        row.setContentsMargins(WIDE, GAP, 0, 0)
         row.setSpacing(0)
         row.addWidget(self.main, 1)
         row.addWidget(self._panel)
@@ -222,6 +228,7 @@ class Station(QWidget):
 
     def show_empty(self, text: str, button_text: str = "", act: Callable[[], object] | None = None) -> None:
         """Show nothing but what the station needs, and a button for the step that brings it."""
+        self.hide_stale()
         self.empty.put(text, button_text, act)
         self._stack.setCurrentWidget(self.empty)
 
