@@ -290,17 +290,17 @@ class SquareRootWalk:
 
     The rate. Over a step Δ it is ``c`` times a noncentral chi-square number with ``d = 4κθ/σ²`` degrees of
     freedom and noncentrality ``x e^{-κΔ}/c``, where ``c = σ²(1 - e^{-κΔ})/(4κ)`` (Cox, Ingersoll and Ross
-    1985, equation 18). It is drawn exactly, for every d including 0, as the mixture that defines it: a Poisson
-    number N with half the noncentrality as its mean, then a gamma number of shape d/2 + N. (numpy's own
-    noncentral chi-square does the same for d up to 1, wants d above 0, and does not hand out N.)
+    1985, equation 18). It is drawn exactly, for every d including 0, as the mixture that defines it: a
+    Poisson number N with half the noncentrality as its mean, then a gamma number of shape d/2 + N. (numpy's
+    own noncentral chi-square does the same for d up to 1, wants d above 0, and does not hand out N.)
 
     The integral. Given both ends of the step, N follows the Bessel law of Glasserman and Kim (2011), theorem
     2.2, and given N as well the integral is their sum of gamma numbers, whose cumulants are known in closed
     form (`integral_cumulants`). It is drawn as one gamma number with that mean and variance, so that its
-    first two moments given both ends are exact and only the third and later cumulants are not. The relative
-    error in the expectation of ``exp(-∫x)`` over a step is about a sixth of the error in the third cumulant: below
-    1e-11 for monthly steps with a rate of 5 % and a volatility coefficient of 0.1. Over 40 years of such
-    steps it is below 1e-8, against a standard error of about 1e-4 with a million paths.
+    first two moments given both ends are exact and only the third and later cumulants are not. Over a month
+    the relative error this leaves in the expectation of ``exp(-∫x)`` is below 1e-12 for rates up to 15 % and
+    volatility coefficients up to 0.2: over 40 years of such steps less than 1e-9, against a standard error of
+    about 1e-4 with a million paths. Over a year it is below 1e-7.
     """
 
     def __init__(

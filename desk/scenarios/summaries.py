@@ -78,17 +78,26 @@ def moments(values: FloatArray) -> Moments:
     mean = float(values.mean())
     if count == 1:
         return Moments(mean, math.nan, math.nan, math.nan)
-    squares = values - mean
-    squares *= squares
-    second = float(squares.mean())
-    variance = second * count / (count - 1)
-    deviation = math.sqrt(variance)
-    if deviation == 0.0:
+    parts = values - mean
+    reach = max(float(parts.max()), -float(parts.min()))
+    if reach == 0.0:
         return Moments(mean, 0.0, 0.0, 0.0)
-    squares *= squares
-    fourth = float(squares.mean())
+    if not math.isfinite(reach):
+        return Moments(mean, math.nan, math.nan, math.nan)
+    # In units of the largest part fourth powers of any sample fit a float.
+    parts /= reach
+    parts *= parts
+    second = float(parts.mean())
+    parts *= parts
+    fourth = float(parts.mean())
+    deviation = math.sqrt(second * count / (count - 1))
     spread = max(fourth - second**2 * (count - 3) / (count - 1), 0.0) / count
-    return Moments(mean, deviation / math.sqrt(count), deviation, 0.5 * math.sqrt(spread) / deviation)
+    return Moments(
+        mean,
+        reach * deviation / math.sqrt(count),
+        reach * deviation,
+        reach * 0.5 * math.sqrt(spread) / deviation,
+    )
 
 
 def sorted_quantile(
