@@ -16,7 +16,6 @@ __all__ = [
     "histogram_density",
     "middle_range",
     "repricing_error",
-    "rising_bins",
 ]
 
 
@@ -24,12 +23,6 @@ def histogram_density(histogram: Histogram) -> FloatArray:
     """Share of the sample in each bin divided by its width, shape (b,): the area under it is 1."""
     total = max(int(histogram.counts.sum()), 1)
     return np.asarray(histogram.counts / total / np.diff(histogram.edges))
-
-
-def rising_bins(histogram: Histogram) -> tuple[FloatArray, FloatArray, FloatArray]:
-    """Middles, widths and densities of the bins, each shape (b,)."""
-    width = np.diff(histogram.edges)
-    return histogram.edges[:-1] + 0.5 * width, width, histogram_density(histogram)
 
 
 def middle_range(histogram: Histogram) -> tuple[float, float]:
