@@ -153,9 +153,11 @@ class SquareRootRates:
         years = np.asarray(time, dtype=np.float64)
         return np.asarray(self._given.zero(years) * years + self._own_log_discount(years))
 
-    def account_law(self, time: ArrayLike, *, real_world: bool = False) -> None:
+    def account_law(
+        self, time: ArrayLike, *, real_world: bool = False
+    ) -> tuple[FloatArray, FloatArray] | None:
         """None: the savings account of this model is not lognormal."""
-        return
+        return None
 
     def mean_discount(self, time: ArrayLike, *, real_world: bool = False) -> FloatArray:
         """``E[1/R_t]``: the bond formula with the speed of the measure asked for."""

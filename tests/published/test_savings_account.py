@@ -13,12 +13,18 @@ from desk.scenarios.records import Simulation
 from desk.scenarios.simulation import simulate
 
 LEVELS = (0.5, 5.0, 50.0, 95.0, 99.5)
-NOTHING = PricedFlows(Side.ASSETS, (), np.zeros(0, int), [], [], [], np.zeros(0, bool))
+NOTHING = PricedFlows(
+    Side.ASSETS, (), np.zeros(0, int), np.zeros(0), np.zeros(0), np.zeros(0), np.zeros(0, bool)
+)
 
 
 def _run(model: RatesModel, *, paths: int = 50_000) -> Simulation:
     basis = Basis(
-        date(2026, 1, 1), "EUR", [1.0, 10.0, 30.0], [0.05, 0.05, 0.05], compounding=Compounding.CONTINUOUS
+        date(2026, 1, 1),
+        "EUR",
+        np.array([1.0, 10.0, 30.0]),
+        np.full(3, 0.05),
+        compounding=Compounding.CONTINUOUS,
     )
     run = Run(paths=paths, horizon_years=10, steps_per_year=4, seed=11, percentiles=LEVELS)
     book = Book(basis, FlowTable.empty(), rates_model=model, run=run)

@@ -16,15 +16,21 @@ SETS = 200
 MONTH = 1.0 / 12.0
 
 
-def model(**changes: float) -> SquareRootRates:
-    settings = {
-        "mean_reversion": 0.2,
-        "long_run_rate": 0.04,
-        "volatility": 0.08,
-        "starting_rate": 0.03,
-        "risk_price": 0.5,
-    }
-    return SquareRootRates(**(settings | changes))
+def model(
+    *,
+    mean_reversion: float = 0.2,
+    long_run_rate: float = 0.04,
+    volatility: float = 0.08,
+    starting_rate: float = 0.03,
+    risk_price: float = 0.5,
+) -> SquareRootRates:
+    return SquareRootRates(
+        mean_reversion=mean_reversion,
+        long_run_rate=long_run_rate,
+        volatility=volatility,
+        starting_rate=starting_rate,
+        risk_price=risk_price,
+    )
 
 
 def test_bonds_and_options_against_the_library() -> None:

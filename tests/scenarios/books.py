@@ -11,7 +11,10 @@ from desk.book import Basis, Book, FlowTable, Measure, ModelName, PricedFlows, R
 __all__ = ["ALL_MODELS", "NO_FLOWS", "assets", "book", "liabilities", "priced"]
 
 BASIS = Basis(
-    date(2026, 1, 1), "EUR", [1.0, 2.0, 5.0, 10.0, 20.0, 30.0], [0.02, 0.022, 0.025, 0.03, 0.032, 0.031]
+    date(2026, 1, 1),
+    "EUR",
+    np.array([1.0, 2.0, 5.0, 10.0, 20.0, 30.0]),
+    np.array([0.02, 0.022, 0.025, 0.03, 0.032, 0.031]),
 )
 
 ALL_MODELS: dict[ModelName, RatesModel] = {
