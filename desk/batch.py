@@ -13,7 +13,7 @@ import traceback
 from collections.abc import Callable, Iterable, Sequence
 from dataclasses import replace
 from pathlib import Path
-from typing import Any, NoReturn
+from typing import NoReturn
 
 from desk import __version__, tasks
 from desk.book import Book, Fault, ModelName, RatesModel, Run, Severity
@@ -173,8 +173,9 @@ def _check(options: argparse.Namespace) -> int:
 def _value(options: argparse.Namespace) -> int:
     """The standing."""
     reading, book = read_usable(options.book)
+    _insist_on(book, model=False)
     with ProgressLine("Valuing") as progress:
-        standing = _asking_right(lambda: tasks.value(book, progress=progress), reading)
+        standing = tasks.value(book, progress=progress)
     _complain_of(standing.faults)
     if options.json:
         say(as_json.text(as_json.standing_object(standing, reading.faults)))
@@ -205,8 +206,9 @@ def _simulate(options: argparse.Namespace) -> int:
     if faults:
         raise BadRequest(faults)
     book = _with_options(book, options)
+    _insist_on(book, model=True)
     with ProgressLine("Simulating") as progress:
-        simulation = _asking_right(lambda: tasks.simulate(book, progress=progress), reading)
+        simulation = tasks.simulate(book, progress=progress)
     _complain_of(simulation.faults)
     if options.json:
         say(as_json.text(as_json.simulation_object(simulation, reading.faults)))
@@ -221,9 +223,10 @@ def _report(options: argparse.Namespace) -> int:
     fault = _target_fault(options.out, options.book)
     if fault is not None:
         raise BadRequest([fault])
-    reading, _ = read_usable(options.book)
+    reading, book = read_usable(options.book)
+    _insist_on(book, model=book.rates_model is not None)
     with ProgressLine("Reporting") as progress:
-        written = _asking_right(lambda: tasks.report(reading, options.out, progress=progress), reading)
+        written = tasks.report(reading, options.out, progress=progress)
     say(f"The report is in {written}")
     return DONE
 
@@ -254,28 +257,19 @@ def _with_options(book: Book, options: argparse.Namespace) -> Book:
     return replace(book, run=run, rates_model=model)
 
 
-def _asking_right(work: Callable[[], Any], reading: Reading) -> Any:
-    """Do `work`; what it says of the book's contents is a fault of the book."""
+def _insist_on(book: Book, *, model: bool) -> None:
+    """Raise BadRequest where the basis gives no curve, or the model, if it is needed, cannot be drawn."""
+    from desk.scenarios.models import rate_model
+
     try:
-        return work()
+        sheet = "Basis"
+        _ = book.basis.curve
+        if model:
+            sheet = "Rates model"
+            rate_model(book)
     except ValueError as error:
-        if error.__cause__ is not None or not _raised_on_purpose(error):
-            raise
-        fault = Fault(
-            f"{error}",
-            "a basis and a model that can be used",
-            "Mend it in the book.",
-            sheet=reading.path.name,
-        )
-        raise BadRequest([fault]) from error
-
-
-def _raised_on_purpose(error: ValueError) -> bool:
-    """Whether a room raised the error itself; one out of a library is a failure of the program."""
-    trace = error.__traceback__
-    while trace is not None and trace.tb_next is not None:
-        trace = trace.tb_next
-    return trace is not None and str(trace.tb_frame.f_globals.get("__name__", "")).startswith("desk.")
+        wanted = "a curve" if sheet == "Basis" else "a model that can be drawn"
+        raise BadRequest([Fault(str(error), wanted, "Mend it in the book.", sheet=sheet)]) from error
 
 
 def _range_fault(name: str, given: int | None) -> Fault | None:

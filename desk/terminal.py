@@ -5,6 +5,7 @@ from __future__ import annotations
 import os
 import sys
 import time
+from collections.abc import Callable
 from typing import IO
 
 __all__ = ["ProgressLine", "complain", "say", "use_standard_streams"]
@@ -15,12 +16,15 @@ _PLAINER = str.maketrans("−─’", "--'", "")
 class ProgressLine:
     """One line on standard error that says what is done and how long it will take, on a terminal only."""
 
-    def __init__(self, what: str, stream: IO[str] | None = None) -> None:
-        """Begin the clock."""
+    def __init__(
+        self, what: str, stream: IO[str] | None = None, *, clock: Callable[[], float] = time.monotonic
+    ) -> None:
+        """Begin the clock, which tells seconds."""
+        self._clock = clock
         self._what = what
         self._stream = sys.stderr if stream is None else stream
         self._shown = self._stream.isatty()
-        self._start = time.monotonic()
+        self._start = clock()
         self._last = self._start
 
     def __enter__(self) -> ProgressLine:
@@ -35,8 +39,10 @@ class ProgressLine:
 
     def __call__(self, part: float) -> None:
         """Show the part done, at most ten times a second."""
-        now = time.monotonic()
-        if not self._shown or now - self._last < 0.1:
+        if not self._shown:
+            return
+        now = self._clock()
+        if now - self._last < 0.1:
             return
         self._last = now
         line = f"{self._what} {100 * part:3.0f} %"

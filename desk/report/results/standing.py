@@ -52,7 +52,11 @@ def check_measures(standing: Standing, sheets: dict[Side, FlowSheet], checks: Ch
         return found
     money = {"sheet": "Standing", "unit": standing.currency, "form": "money2"}
     found["surplus"] = checks.add(
-        "Surplus", reported=standing.surplus, formula=f"={worth_a}-{worth_l}", scale=worth_a, **money
+        "Surplus",
+        reported=standing.surplus,
+        formula=f"={worth_a}-{worth_l}",
+        scale=f"ABS({worth_a})+ABS({worth_l})",
+        **money,
     )
     found["funding_ratio"] = checks.add(
         "Funding ratio",
@@ -75,7 +79,7 @@ def check_measures(standing: Standing, sheets: dict[Side, FlowSheet], checks: Ch
             "DV01 gap",
             reported=standing.dv01_gap,
             formula=f"={found['assets_dv01']}-{found['liabilities_dv01']}",
-            scale=found["assets_dv01"],
+            scale=f"ABS({found['assets_dv01']})+ABS({found['liabilities_dv01']})",
             **money,
         )
     return found

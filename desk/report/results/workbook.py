@@ -3,8 +3,10 @@
 from __future__ import annotations
 
 from collections.abc import Callable
+from contextlib import suppress
 from datetime import UTC, datetime
 from pathlib import Path
+from typing import TYPE_CHECKING, Any
 
 from desk.book import Book, Side
 from desk.intake.records import Reading
@@ -21,6 +23,9 @@ from desk.report.safe_cells import clean_text, write_whole
 from desk.scenarios.records import Simulation
 from desk.valuation.priced import priced_flows
 from desk.valuation.records import Standing
+
+if TYPE_CHECKING:
+    from openpyxl import Workbook
 
 __all__ = ["write_report"]
 
@@ -130,6 +135,17 @@ def _write(
     workbook.properties.creator = "Gapwright"
     for name, area in names.items():
         workbook.defined_names[name] = DefinedName(name, attr_text=area)
+    try:
+        _write_sheets(workbook, plans, report)
+        workbook.save(target)
+    except BaseException:
+        _discard(workbook)
+        raise
+    report(1.0)
+
+
+def _write_sheets(workbook: Workbook, plans: list[SheetPlan], report: Callable[[float], None]) -> None:
+    """Write the sheets in their order."""
     styles = Styles(workbook)
     weights = [1 + (plan.block.count if plan.block else 0) for plan in plans]
     done, whole = 0, sum(weights)
@@ -137,8 +153,17 @@ def _write(
         write_sheet(workbook, plan, styles, _part(report, 0.1 + 0.7 * done / whole, 0.7 * weight / whole))
         done += weight
         report(0.1 + 0.7 * done / whole)
-    workbook.save(target)
-    report(1.0)
+
+
+def _discard(workbook: Workbook) -> None:
+    """Remove what a write-only workbook that is not finished keeps in temporary files."""
+    for sheet in workbook.worksheets:
+        # openpyxl offers no public way to abandon a sheet.
+        unfinished: Any = sheet
+        with suppress(OSError, ValueError):
+            if not unfinished.closed:
+                unfinished.close()
+            unfinished._writer.cleanup()
 
 
 def _part(report: Callable[[float], None], start: float, share: float) -> Callable[[float], None]:
