@@ -16,10 +16,7 @@ none is a quotation. Names of issuers and states are made up.
 
 from __future__ import annotations
 
-import io
-import re
 import sys
-import zipfile
 from collections.abc import Callable
 from datetime import date
 from pathlib import Path
@@ -60,7 +57,6 @@ from desk.book.arrays import owned_floats
 from desk.rates.compounding import Compounding
 from desk.rates.curve import Interpolation
 from desk.report.book_workbook import write_book
-from desk.report.safe_cells import write_whole
 from desk.valuation.standing import stand
 
 __all__ = ["BOOKS", "main"]
@@ -395,34 +391,13 @@ BOOKS: dict[str, Callable[[], Book]] = {
 }
 
 
-def _without_clock(path: Path) -> None:
-    """Write a workbook again with fixed dates, so that the same book gives the same bytes."""
-    made = io.BytesIO()
-    moment = VALUATION_DATE.timetuple()[:6]
-    with zipfile.ZipFile(path) as source, zipfile.ZipFile(made, "w", zipfile.ZIP_DEFLATED) as target:
-        for name in source.namelist():
-            data = source.read(name)
-            if name == "docProps/core.xml":
-                data = _plain_dates(data)
-            target.writestr(zipfile.ZipInfo(name, moment), data, zipfile.ZIP_DEFLATED, 9)
-    path.write_bytes(made.getvalue())
-
-
-def _plain_dates(core: bytes) -> bytes:
-    return re.sub(rb"\d{4}-\d\d-\d\dT\d\d:\d\d:\d\dZ", f"{VALUATION_DATE}T00:00:00Z".encode(), core)
-
-
 def main() -> None:
     """Rewrite the workbooks."""
     folder = Path(__file__).resolve().parent
     for name, make in BOOKS.items():
         book = make()
 
-        def write(path: Path, book: Book = book) -> None:
-            write_book(book, path)
-            _without_clock(path)
-
-        write_whole(folder / name, write)
+        write_book(book, folder / name)
         standing = stand(book)
         print(
             f"{name}: {len(book.liabilities):,} flows, {len(book.holdings)} holdings, "

@@ -11,7 +11,7 @@ from desk.book import Holding, HoldingKind, RiskyAssets
 from desk.intake.cells import Cells
 from desk.intake.checks import check_correlations, check_not_negative, check_rates
 from desk.intake.faults import FaultList
-from desk.intake.layout import SHEETS, Table, fold
+from desk.intake.layout import SHEETS, Table, find_known, fold
 from desk.rates.day_count import DayCount
 
 __all__ = ["further_columns", "read_holdings", "read_risky_assets"]
@@ -218,7 +218,7 @@ def read_risky_assets(table: Table, faults: FaultList) -> RiskyAssets | None:
 def _read_matrix(table: Table, names: list[str], faults: FaultList) -> FloatArray | None:
     """The correlation matrix, from one column a name; None where a column is missing or an entry is wrong."""
     sheet, rows = table.sheet, table.rows
-    reserved = {fold(heading) for heading in SHEETS["Risky assets"].columns}
+    headings = SHEETS["Risky assets"].columns
     columns: dict[str, int] = {}
     for heading, column in table.further:
         if fold(heading) in columns:
@@ -236,9 +236,10 @@ def _read_matrix(table: Table, names: list[str], faults: FaultList) -> FloatArra
     seen: set[str] = set()
     for entry, name in enumerate(names):
         key = fold(name)
-        if name and (key in reserved or key in seen):
+        reserved = find_known(name, headings) is not None
+        if name and (reserved or key in seen):
             faults.add(
-                f'the name "{name[:60]}" ' + ("is that of a heading" if key in reserved else "stands twice"),
+                f'the name "{name[:60]}" ' + ("is that of a heading" if reserved else "stands twice"),
                 "each asset under a name of its own",
                 "Rename the asset.",
                 sheet=sheet.name,

@@ -221,9 +221,13 @@ def read_basis_items(sheet: ItemSheet) -> dict[str, Any]:
         "compounding": sheet.choice("Compounding", Compounding, "a compounding", required=True),
         "interpolation": sheet.choice("Interpolation", Interpolation, "an interpolation", required=True),
         "liability_spread": sheet.number("Liability spread", "a rate a year", check_rates, required=True),
-        "market_risk_premium": sheet.number("Market risk premium", "a rate a year", check_rates) or 0.0,
+        "market_risk_premium": _or_zero(sheet.number("Market risk premium", "a rate a year", check_rates)),
         "day_count": sheet.choice("Day count", DayCount, "a day count") or DayCount.ACT_365F,
     }
+
+
+def _or_zero(value: float | None) -> float:
+    return 0.0 if value is None else value
 
 
 def _check_reversion(cells: Cells, values: NDArray[np.float64], what: str) -> None:
@@ -249,7 +253,7 @@ def read_rates_model(sheet: ItemSheet) -> RatesModel | None:
         "second_volatility": number("Second volatility", volatility, check_not_negative, check_rates_above),
         "factor_correlation": number("Factor correlation", "a correlation", check_correlations),
     }
-    risk_price = sheet.number("Risk price", "a price of risk") or 0.0
+    risk_price = _or_zero(sheet.number("Risk price", "a price of risk"))
     if name is None:
         return None
     if name in _SQUARE_ROOT:

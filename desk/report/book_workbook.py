@@ -2,39 +2,34 @@
 
 from __future__ import annotations
 
-from collections.abc import Iterable, Iterator, Sequence
-from datetime import date
+from collections.abc import Iterable, Sequence
 from pathlib import Path
-from typing import TYPE_CHECKING, Any
 
 import numpy as np
 
-from desk.book import Book, FlowTable, Holding, HoldingKind, Notes
+from desk.book import Book, FlowTable, History, Holding, HoldingKind, Notes, RatesModel, RiskyAssets, Run
 from desk.intake.layout import SHEETS, find_known, fold
-from desk.report.safe_cells import LONGEST_TEXT, clean_text, put, write_whole
-
-if TYPE_CHECKING:
-    from openpyxl import Workbook
+from desk.report.plain_workbook import PlainSheet, Style, Value, date_serials, write_sheets
+from desk.report.safe_cells import LONGEST_TEXT, clean_text, write_whole
 
 __all__ = ["write_book"]
 
-Value = str | float | date | np.datetime64 | None
-
-_PERCENT = "0.0000%"
-_MONEY = "#,##0.00"
-_YEARS = "0.0000"
-_FORMATS = {
-    **dict.fromkeys(("Rate", "Coupon", "Premium", "Volatility", "Dividend yield", "Short rate"), _PERCENT),
-    **dict.fromkeys(("Amount", "Nominal", "Market value", "Value", "Units"), _MONEY),
-    **dict.fromkeys(("Term", "Year", "Duration"), _YEARS),
+_STYLES = {
+    **dict.fromkeys(
+        ("Rate", "Coupon", "Premium", "Volatility", "Dividend yield", "Short rate"), Style.PERCENT
+    ),
+    **dict.fromkeys(("Amount", "Nominal", "Market value", "Value", "Units"), Style.MONEY),
+    **dict.fromkeys(("Term", "Year", "Duration"), Style.YEARS),
+    **dict.fromkeys(("Date", "Maturity"), Style.DATE),
 }
-_ITEM_FORMATS = {
-    **dict.fromkeys(("Liability spread", "Market risk premium", "Volatility"), _PERCENT),
-    **dict.fromkeys(("Long-run rate", "Starting rate", "Second volatility"), _PERCENT),
-    "Paths": "#,##0",
+_ITEM_STYLES = {
+    **dict.fromkeys(("Liability spread", "Market risk premium", "Volatility"), Style.PERCENT),
+    **dict.fromkeys(("Long-run rate", "Starting rate", "Second volatility"), Style.PERCENT),
+    "Paths": Style.WHOLE,
 }
 _WIDTHS = {"Line": 30.0, "Name": 34.0, "Item": 24.0}
 _WIDTH = 16.0
+_VALUE_WIDTH = 28.0
 _NOTE_WIDTH = 24.0
 _LAST_ROW = 1_048_576
 _LARGEST_WHOLE = 2**53
@@ -66,31 +61,29 @@ def write_book(book: Book, path: Path) -> Path:
     OSError
         If the file cannot be written.
     """
-    from openpyxl import Workbook
-
     _check_names(book)
+    basis, run = book.basis, book.run
     notes = {note.sheet: note for note in book.notes}
-    workbook = Workbook(write_only=True)
-    _write_items(workbook, "Basis", _basis(book), notes.get("Basis"))
-    basis = book.basis
-    _write_table(
-        workbook, "Curve", zip(basis.terms.tolist(), basis.rates.tolist(), strict=True), notes.get("Curve")
-    )
-    _write_flows(workbook, "Liabilities", book.liabilities, notes.get("Liabilities"))
-    if book.holdings:
-        _write_table(workbook, "Holdings", map(_holding, book.holdings), notes.get("Holdings"))
-    if len(book.asset_flows):
-        _write_flows(workbook, "Asset flows", book.asset_flows, notes.get("Asset flows"))
+    curve = list(zip(basis.terms.tolist(), basis.rates.tolist(), strict=True))
+    sheets = [
+        _items("Basis", _basis(book), notes.get("Basis")),
+        _table("Curve", curve, notes.get("Curve")),
+        _flows("Liabilities", book.liabilities, notes.get("Liabilities")),
+    ]
+    if book.holdings or "Holdings" in notes:
+        sheets.append(_table("Holdings", list(map(_holding, book.holdings)), notes.get("Holdings")))
+    if len(book.asset_flows) or "Asset flows" in notes:
+        sheets.append(_flows("Asset flows", book.asset_flows, notes.get("Asset flows")))
     if book.rates_model is not None:
-        _write_items(workbook, "Rates model", _rates_model(book), notes.get("Rates model"))
-    if book.risky_assets is not None and book.risky_assets.names:
-        _write_risky_assets(workbook, book, notes.get("Risky assets"))
-    _write_items(workbook, "Run", _run(book), notes.get("Run"))
-    history = book.history
-    if history is not None and history.date.size:
-        rows = zip(history.date, history.rate.tolist(), strict=True)
-        _write_table(workbook, "History", rows, notes.get("History"))
-    return write_whole(path, workbook.save)
+        sheets.append(_items("Rates model", _rates_model(book.rates_model), notes.get("Rates model")))
+    assets = book.risky_assets
+    if (assets is not None and assets.names) or "Risky assets" in notes:
+        sheets.append(_risky_assets(assets, notes.get("Risky assets")))
+    sheets.append(_items("Run", _run(run), notes.get("Run")))
+    history = [] if book.history is None else _history(book.history)
+    if history or "History" in notes:
+        sheets.append(_table("History", history, notes.get("History")))
+    return write_whole(path, lambda neighbour: write_sheets(neighbour, sheets))
 
 
 def _check_names(book: Book) -> None:
@@ -106,13 +99,31 @@ def _check_names(book: Book) -> None:
                 raise ValueError(f"a workbook holds no {what} without a name")
             if clean_text(name) != name:
                 raise ValueError(f"a workbook does not hold the name of the {what} {name[:40]!r} as it is")
-    if book.risky_assets is not None:
-        reserved = {fold(heading) for heading in SHEETS["Risky assets"].columns}
-        for name in book.risky_assets.names:
-            if fold(name) in reserved:
-                raise ValueError(f"no asset can be called {name!r}: the sheet has a heading of that name")
+    assets = () if book.risky_assets is None else book.risky_assets.names
+    for name in assets:
+        if find_known(name, SHEETS["Risky assets"].columns) is not None:
+            raise ValueError(f"no asset can be called {name!r}: the sheet has a heading of that name")
+    if len(set(map(fold, assets))) != len(assets):
+        raise ValueError("the names of the assets must differ by more than case and blanks")
+    for notes in book.notes:
+        _check_notes(notes, assets)
     if book.run.seed > _LARGEST_WHOLE:
         raise ValueError(f"a workbook holds no seed above {_LARGEST_WHOLE}")
+
+
+def _check_notes(notes: Notes, assets: Sequence[str]) -> None:
+    """Refuse notes that would be taken for something else."""
+    layout = SHEETS.get(notes.sheet)
+    if layout is None:
+        raise ValueError(f"a book workbook has no sheet {notes.sheet!r} for notes")
+    for heading in notes.headings[1:] if layout.items else notes.headings:
+        if not heading or heading.strip() != heading or clean_text(heading) != heading:
+            raise ValueError(f"a workbook does not hold the heading {heading[:40]!r} as it is")
+        taken = layout.more and fold(heading) in map(fold, assets)
+        if taken or find_known(heading, layout.columns) is not None:
+            raise ValueError(
+                f"no note can have the heading {heading[:40]!r}: the sheet has a column of that name"
+            )
 
 
 def _basis(book: Book) -> dict[str, Value]:
@@ -130,10 +141,7 @@ def _basis(book: Book) -> dict[str, Value]:
     }
 
 
-def _rates_model(book: Book) -> dict[str, Value]:
-    model = book.rates_model
-    if model is None:
-        return {}
+def _rates_model(model: RatesModel) -> dict[str, Value]:
     return {
         "Model": str(model.name),
         "Mean reversion": model.mean_reversion,
@@ -147,8 +155,7 @@ def _rates_model(book: Book) -> dict[str, Value]:
     }
 
 
-def _run(book: Book) -> dict[str, Value]:
-    run = book.run
+def _run(run: Run) -> dict[str, Value]:
     return {
         "Paths": run.paths,
         "Horizon (years)": run.horizon_years,
@@ -165,8 +172,8 @@ def _holding(holding: Holding) -> tuple[Value, ...]:
     return (
         holding.name,
         str(holding.kind),
-        None if holding.kind is HoldingKind.FUND and holding.nominal == 0.0 else holding.nominal,
-        holding.coupon if is_bond or holding.coupon != 0.0 else None,
+        holding.nominal if holding.kind is not HoldingKind.FUND or _differs(holding.nominal) else None,
+        holding.coupon if is_bond or _differs(holding.coupon) else None,
         holding.frequency if is_bond or holding.frequency != 1 else None,
         holding.maturity,
         None if holding.day_count is None else str(holding.day_count),
@@ -176,63 +183,69 @@ def _holding(holding: Holding) -> tuple[Value, ...]:
     )
 
 
-def _write_flows(workbook: Workbook, sheet: str, flows: FlowTable, notes: Notes | None) -> None:
+def _differs(value: float) -> bool:
+    """Whether a number is another than a plain 0, a negative zero included."""
+    return value != 0.0 or bool(np.signbit(value))
+
+
+def _history(history: History) -> list[tuple[Value, ...]]:
+    return list(zip(date_serials(history.date), history.rate.tolist(), strict=True))
+
+
+def _flows(sheet: str, flows: FlowTable, notes: Notes | None) -> PlainSheet:
     """Flows with the columns they use: a date where one is stated, the years where not."""
     dated = ~np.isnat(flows.date)
     columns: dict[str, Iterable[Value]] = {"Line": (flows.line_names[line] for line in flows.line.tolist())}
     if dated.any() or not len(flows):
-        columns["Date"] = iter(flows.date)
+        columns["Date"] = date_serials(flows.date)
     if not dated.all():
         columns["Year"] = (
             None if has_date else time
             for has_date, time in zip(dated.tolist(), flows.time.tolist(), strict=True)
         )
-    columns["Amount"] = iter(flows.amount.tolist())
-    if "Beta" in SHEETS[sheet].columns and flows.beta.any():
-        columns["Beta"] = iter(flows.beta.tolist())
-    _write_rows(workbook, sheet, list(columns), zip(*columns.values(), strict=True), notes, len(flows))
+    columns["Amount"] = flows.amount.tolist()
+    if "Beta" in SHEETS[sheet].columns and (flows.beta.any() or np.signbit(flows.beta).any()):
+        columns["Beta"] = flows.beta.tolist()
+    return _sheet(sheet, list(columns), zip(*columns.values(), strict=True), notes, len(flows))
 
 
-def _write_table(
-    workbook: Workbook, sheet: str, rows: Iterable[Sequence[Value]], notes: Notes | None
-) -> None:
+def _table(sheet: str, rows: Sequence[Sequence[Value]], notes: Notes | None) -> PlainSheet:
     """A table whose optional columns are left out where no row fills them."""
-    layout, rows = SHEETS[sheet], list(rows)
+    layout = SHEETS[sheet]
     used = [
         number
         for number, heading in enumerate(layout.columns)
         if heading not in layout.optional or any(row[number] is not None for row in rows)
     ]
     headings = [layout.columns[number] for number in used]
-    kept = ([row[number] for number in used] for row in rows)
-    _write_rows(workbook, sheet, headings, kept, notes, len(rows))
+    return _sheet(sheet, headings, ([row[number] for number in used] for row in rows), notes, len(rows))
 
 
-def _write_risky_assets(workbook: Workbook, book: Book, notes: Notes | None) -> None:
-    assets = book.risky_assets
-    if assets is None:
-        return
-    own = ["Name", "Value", "Premium", "Volatility", "Dividend yield"]
-    rows = (
-        [
-            name,
-            *(float(column[entry]) for column in (assets.value, assets.premium, assets.volatility)),
-            float(assets.dividend_yield[entry]),
-            *assets.correlation[entry].tolist(),
-            float(assets.rates_correlation[entry]),
-        ]
-        for entry, name in enumerate(assets.names)
+def _risky_assets(assets: RiskyAssets | None, notes: Notes | None) -> PlainSheet:
+    if assets is None or not assets.names:
+        return _sheet("Risky assets", list(SHEETS["Risky assets"].columns), (), notes, 0)
+    own = zip(
+        assets.names,
+        *(
+            column.tolist()
+            for column in (assets.value, assets.premium, assets.volatility, assets.dividend_yield)
+        ),
+        assets.correlation.tolist(),
+        assets.rates_correlation.tolist(),
+        strict=True,
     )
-    headings = [*own, *assets.names, "Rates"]
-    _write_rows(workbook, "Risky assets", headings, rows, notes, len(assets.names))
+    rows = ([*stated, *correlations, with_rates] for *stated, correlations, with_rates in own)
+    headings = ["Name", "Value", "Premium", "Volatility", "Dividend yield", *assets.names, "Rates"]
+    styles = [Style.PLAIN, Style.MONEY, *[Style.PERCENT] * 3, *[Style.PLAIN] * (len(assets.names) + 1)]
+    return _sheet("Risky assets", headings, rows, notes, len(assets.names), styles=styles)
 
 
-def _write_items(workbook: Workbook, sheet: str, items: dict[str, Value], notes: Notes | None) -> None:
+def _items(sheet: str, items: dict[str, Value], notes: Notes | None) -> PlainSheet:
     """A sheet of items and values, each item beside its notes; an item with neither is left out."""
-    beside: dict[str, tuple[Any, ...]] = {}
-    headings: tuple[str, ...] = ()
+    beside: dict[str, tuple[Value, ...]] = {}
+    further: tuple[str, ...] = ()
     if notes is not None:
-        headings = notes.headings[1:]
+        further = notes.headings[1:]
         for row in notes.rows:
             item = find_known(str(row[0]), tuple(items))
             if item is None:
@@ -240,67 +253,52 @@ def _write_items(workbook: Workbook, sheet: str, items: dict[str, Value], notes:
                     f"the notes of the sheet {sheet} name an item {row[0]!r} that it does not have"
                 )
             beside[item] = row[1:]
-    empty = (None,) * len(headings)
-    written = _start(workbook, sheet, ["Item", "Value"], headings)
-    for item, value in items.items():
-        if value is None and item not in beside:
-            continue
-        cells = [_cell(written, item), _cell(written, value, _ITEM_FORMATS.get(item))]
-        written.append(cells + [_cell(written, note) for note in beside.get(item, empty)])
+    empty = (None,) * len(further)
+    plain = [Style.PLAIN] * len(further)
+    rows = [
+        (
+            [item, _checked(value), *beside.get(item, empty)],
+            [Style.PLAIN, _ITEM_STYLES.get(item, Style.PLAIN), *plain],
+        )
+        for item, value in items.items()
+        if value is not None or item in beside
+    ]
+    widths = [_WIDTHS["Item"], _VALUE_WIDTH, *[_NOTE_WIDTH] * len(further)]
+    return PlainSheet(sheet, ["Item", "Value", *further], widths, rows)
 
 
-def _write_rows(
-    workbook: Workbook,
+def _sheet(
     sheet: str,
     headings: list[str],
     rows: Iterable[Sequence[Value]],
     notes: Notes | None,
     count: int,
-) -> None:
+    *,
+    styles: list[Style] | None = None,
+) -> PlainSheet:
+    """A sheet of rows with their notes beside them."""
     if count >= _LAST_ROW:
         raise ValueError(f"the sheet {sheet} would need {count + 1:,} rows; a sheet has {_LAST_ROW:,}")
-    if notes is not None and len(notes.rows) != count:
+    own = styles or [_STYLES.get(heading, Style.PLAIN) for heading in headings]
+    widths = [_WIDTHS.get(heading, _WIDTH) for heading in headings]
+    if notes is None:
+        return PlainSheet(sheet, headings, widths, ((row, own) for row in rows))
+    if len(notes.rows) != count:
         raise ValueError(f"the notes of the sheet {sheet} have {len(notes.rows)} rows for {count} of data")
-    formats = [_FORMATS.get(heading) for heading in headings]
-    written = _start(workbook, sheet, headings, () if notes is None else notes.headings)
-    further: Iterator[Sequence[Value]] = iter(() if notes is None else notes.rows)
-    for row in rows:
-        cells = [_cell(written, value, form) for value, form in zip(row, formats, strict=True)]
-        written.append(cells + [_cell(written, note) for note in next(further, ())])
+    further = [Style.PLAIN] * len(notes.headings)
+    return PlainSheet(
+        sheet,
+        [*headings, *notes.headings],
+        [*widths, *[_NOTE_WIDTH] * len(further)],
+        (
+            ([*row, *map(_checked, beside)], [*own, *further])
+            for row, beside in zip(rows, notes.rows, strict=True)
+        ),
+    )
 
 
-def _start(workbook: Workbook, sheet: str, headings: Sequence[str], further: Sequence[str]) -> Any:
-    """A new sheet with its headings, frozen."""
-    from openpyxl.styles import Font
-    from openpyxl.utils import get_column_letter
-
-    written: Any = workbook.create_sheet(sheet)
-    written.freeze_panes = "A2"
-    for number, heading in enumerate([*headings, *further], start=1):
-        width = _WIDTHS.get(heading, _WIDTH) if number <= len(headings) else _NOTE_WIDTH
-        written.column_dimensions[get_column_letter(number)].width = width
-    if sheet in ("Basis", "Rates model", "Run"):
-        written.column_dimensions["B"].width = 28.0
-    bold = Font(bold=True)
-    cells = []
-    for heading in [*headings, *further]:
-        cell = _cell(written, heading)
-        cell.font = bold
-        cells.append(cell)
-    written.append(cells)
-    return written
-
-
-def _cell(written: Any, value: Value, number_format: str | None = None) -> Any:
-    from openpyxl.cell import WriteOnlyCell
-
-    if isinstance(value, str):
-        if len(value) > LONGEST_TEXT:
-            raise ValueError(f"a workbook holds no text of {len(value):,} characters")
-        if not value.strip():
-            return None
-    elif isinstance(value, int | float) and not np.isfinite(value):
-        raise ValueError(f"a book workbook holds no number that is {value}")
-    elif value is None or (isinstance(value, np.datetime64) and np.isnat(value)):
-        return None
-    return put(WriteOnlyCell(written), value, number_format=number_format)
+def _checked(value: Value) -> Value:
+    """A value that is no name: a text too long for a cell is refused rather than cut."""
+    if isinstance(value, str) and len(value) > LONGEST_TEXT:
+        raise ValueError(f"a workbook holds no text of {len(value):,} characters")
+    return value

@@ -27,10 +27,13 @@ __all__ = [
     "LONGEST_TEXT",
     "NOT_A_NUMBER",
     "clean_text",
+    "exact_number",
+    "looks_like_formula",
     "put",
     "put_date",
     "put_number",
     "put_text",
+    "stored_text",
     "write_whole",
 ]
 
@@ -71,6 +74,25 @@ def clean_text(text: str) -> str:
     return text
 
 
+def stored_text(text: str) -> str:
+    """`text` cleaned and written so that a spreadsheet reads it as it stands."""
+    return _escaped(clean_text(text))
+
+
+def looks_like_formula(text: str) -> bool:
+    """Whether a spreadsheet might take `text` for a formula, an error or a command when it is typed again."""
+    return text.startswith(_SUSPECT_START)
+
+
+def exact_number(value: float) -> str:
+    """The shortest decimal that reads in again as the same float. Raises ValueError if it is not finite."""
+    number = float(value)
+    if not np.isfinite(number):
+        raise ValueError(f"a workbook holds no number that is {number}")
+    exact = repr(number)
+    return exact[:-2] if exact.endswith(".0") and number != 0 else exact
+
+
 def put_text(cell: Cell, text: str, *, number_format: str | None = None) -> Cell:
     """Put `text` into `cell` as text, whatever it begins with, and return the cell.
 
@@ -81,10 +103,9 @@ def put_text(cell: Cell, text: str, *, number_format: str | None = None) -> Cell
     """
     if not isinstance(text, str):
         raise TypeError(f"`text` must be a str, not {type(text).__name__}")
-    kept = clean_text(text)
-    cell.value = _escaped(kept)
+    cell.value = stored_text(text)
     cell.data_type = "s"
-    if kept.startswith(_SUSPECT_START):
+    if looks_like_formula(text):
         cell.quotePrefix = True
     if number_format is not None:
         cell.number_format = number_format
@@ -100,8 +121,7 @@ def put_number(cell: Cell, value: float, *, number_format: str | None = None) ->
     number = float(value)
     if not np.isfinite(number):
         return put_text(cell, NOT_A_NUMBER)
-    exact = repr(number)
-    cell.value = exact[:-2] if exact.endswith(".0") and number != 0 else exact
+    cell.value = exact_number(number)
     cell.data_type = "n"
     if number_format is not None:
         cell.number_format = number_format

@@ -1,0 +1,270 @@
+"""A book written as a workbook reads in again the same."""
+
+from __future__ import annotations
+
+from dataclasses import replace
+from datetime import date
+from pathlib import Path
+from typing import Any
+
+import numpy as np
+import pytest
+from hypothesis import HealthCheck, given, settings
+from hypothesis import strategies as st
+from openpyxl import load_workbook
+
+from desk.book import (
+    Basis,
+    Book,
+    FlowTable,
+    History,
+    Holding,
+    HoldingKind,
+    Measure,
+    ModelName,
+    Notes,
+    RatesModel,
+    RiskyAssets,
+    Run,
+    Severity,
+)
+from desk.intake.layout import SHEETS, find_known, fold
+from desk.intake.workbook import read_workbook
+from desk.rates.compounding import Compounding
+from desk.rates.curve import Interpolation
+from desk.rates.day_count import DayCount, year_fraction
+from desk.report.book_workbook import write_book
+from desk.report.safe_cells import clean_text
+
+TODAY = date(2026, 9, 30)
+
+
+def _basis(**changes: Any) -> Basis:
+    return replace(
+        Basis(TODAY, "EUR", np.array([1.0, 10.0, 30.0]), np.array([0.02, 0.03, 0.025]), title="=1+1"),
+        **changes,
+    )
+
+
+def _book(**changes: Any) -> Book:
+    return replace(Book(_basis(), FlowTable.build(["A", "B"], [1.0, 60.0], [5.0, 6.0])), **changes)
+
+
+def _again(book: Book, folder: Path) -> Book:
+    reading = read_workbook(write_book(book, folder / "book.xlsx"))
+    assert reading.book is not None, [str(fault) for fault in reading.faults]
+    return reading.book
+
+
+names = st.one_of(
+    st.text(min_size=1, max_size=20).filter(lambda text: bool(text.strip()) and clean_text(text) == text),
+    st.sampled_from(
+        ["=1+1", "+x", "-x", "@x", "#N/A", "_x0041_", " a ", "a\nb", "\u00e9\u4e2d\U0001f600", "12", "TRUE"]
+    ),
+)
+amounts = st.floats(-1e15, 1e15)
+rates = st.floats(-0.4, 0.9)
+dates = st.dates(date(2026, 10, 1), date(2200, 12, 31))
+
+
+@st.composite
+def flow_tables(draw: st.DrawFn, day_count: DayCount, *, beta: bool) -> FlowTable:
+    """Flows of which some state a date and some the years."""
+    lines = draw(st.lists(names, min_size=1, max_size=6))
+    days = [draw(st.one_of(st.none(), dates)) for _ in lines]
+    stated = np.array(days, dtype="M8[D]")
+    years = np.array([draw(st.floats(-3.0, 150.0)) for _ in lines])
+    time = np.where(np.isnat(stated), years, year_fraction(np.datetime64(TODAY), stated, day_count))
+    betas = [draw(st.one_of(st.just(0.0), st.floats(-2, 2))) for _ in lines] if beta else None
+    return FlowTable.build(lines, time, [draw(amounts) for _ in lines], beta=betas, date=stated)
+
+
+@st.composite
+def holdings(draw: st.DrawFn) -> Holding:
+    """A holding of any kind with what it needs."""
+    kind = draw(st.sampled_from(HoldingKind))
+    is_bond = kind is HoldingKind.BOND
+    has_maturity = is_bond or kind is HoldingKind.ZERO
+    worth = st.floats(1e-3, 1e12)
+    return Holding(
+        name=draw(names),
+        kind=kind,
+        nominal=0.0 if kind is HoldingKind.FUND else draw(worth),
+        coupon=draw(st.floats(0.0, 0.2)) if is_bond else 0.0,
+        frequency=draw(st.sampled_from([1, 2, 4, 12])) if is_bond else 1,
+        maturity=draw(dates) if has_maturity else None,
+        day_count=draw(st.one_of(st.none(), st.sampled_from(DayCount))),
+        market_value=draw(worth if kind is HoldingKind.FUND else st.one_of(st.none(), worth)),
+        units=draw(st.one_of(st.none(), worth)),
+        duration=draw(st.one_of(st.none(), st.floats(0, 50))) if kind is HoldingKind.FUND else None,
+    )
+
+
+@st.composite
+def risky(draw: st.DrawFn) -> RiskyAssets:
+    """Assets whose correlations hold together: those of one common driver."""
+    own = names.filter(lambda name: find_known(name, SHEETS["Risky assets"].columns) is None)
+    called = draw(st.lists(own, min_size=1, max_size=4, unique_by=fold))
+    count = len(called)
+    loading = np.array([draw(st.floats(-0.9, 0.9)) for _ in range(count + 1)])
+    joint = np.outer(loading, loading)
+    np.fill_diagonal(joint, 1.0)
+
+    def column(low: float, high: float) -> Any:
+        return np.array([draw(st.floats(low, high)) for _ in called])
+
+    return RiskyAssets(
+        tuple(called),
+        column(0, 1e9),
+        column(-0.1, 0.2),
+        column(0, 0.9),
+        column(0, 0.1),
+        joint[1:, 1:],
+        joint[0, 1:],
+    )
+
+
+@st.composite
+def books(draw: st.DrawFn) -> Book:
+    """A book with anything a workbook can hold."""
+    day_count = draw(st.sampled_from(DayCount))
+    terms = sorted(draw(st.sets(st.floats(0.05, 100.0), min_size=1, max_size=8)))
+    quotes = np.array([draw(st.floats(-0.02, 0.15)) for _ in terms])
+    basis = Basis(
+        valuation_date=TODAY,
+        currency=draw(st.sampled_from(["EUR", "GBP", "USD"])),
+        terms=np.array(terms),
+        rates=quotes,
+        compounding=draw(st.sampled_from(Compounding)),
+        interpolation=draw(st.sampled_from([Interpolation.LOG_LINEAR, Interpolation.LINEAR_ZERO])),
+        liability_spread=draw(rates),
+        market_risk_premium=draw(rates),
+        day_count=day_count,
+        title=draw(st.one_of(st.just(""), names)),
+    )
+    liabilities = draw(flow_tables(day_count, beta=True))
+    heading = names.map(str.strip).filter(
+        lambda text: find_known(text, SHEETS["Liabilities"].columns) is None
+    )
+    headings = draw(st.lists(heading, max_size=2, unique_by=fold))
+    note = st.one_of(st.none(), names, amounts)
+    notes: tuple[Notes, ...] = ()
+    if headings:
+        rows = tuple(tuple(draw(note) for _ in headings) for _ in range(len(liabilities)))
+        notes = (Notes("Liabilities", tuple(headings), rows),)
+    model = st.builds(
+        RatesModel,
+        name=st.sampled_from([ModelName.HULL_WHITE, ModelName.HO_LEE]),
+        mean_reversion=st.floats(0, 5),
+        volatility=st.floats(0, 0.9),
+        long_run_rate=st.one_of(st.none(), rates),
+        risk_price=st.floats(-3, 3),
+    )
+    history_days = sorted(draw(st.sets(st.dates(date(1950, 1, 1), TODAY), max_size=4)))
+    return Book(
+        basis=basis,
+        liabilities=liabilities,
+        holdings=tuple(draw(st.lists(holdings(), max_size=4))),
+        asset_flows=draw(st.one_of(st.just(FlowTable.empty()), flow_tables(day_count, beta=False))),
+        rates_model=draw(st.one_of(st.none(), model)),
+        risky_assets=draw(st.one_of(st.none(), risky())),
+        run=Run(
+            paths=draw(st.integers(1, 10**8)),
+            horizon_years=draw(st.integers(1, 200)),
+            steps_per_year=draw(st.integers(1, 366)),
+            seed=draw(st.integers(0, 2**53)),
+            measure=draw(st.sampled_from(Measure)),
+            percentiles=tuple(sorted(draw(st.sets(st.floats(1e-3, 99.9), min_size=1, max_size=7)))),
+        ),
+        history=None
+        if not history_days
+        else History(np.array(history_days, "M8[D]"), np.array([draw(rates) for _ in history_days])),
+        notes=notes,
+    )
+
+
+@settings(max_examples=40, deadline=None, suppress_health_check=list(HealthCheck))
+@given(book=books())
+def test_any_book_comes_back_the_same(book: Book, tmp_path_factory: pytest.TempPathFactory) -> None:
+    again = _again(book, tmp_path_factory.mktemp("book"))
+    assert again == book
+    assert again.digest == book.digest
+
+
+def test_a_second_copy_is_that_of_the_first(tmp_path: Path) -> None:
+    """Notes of every kind of sheet stay where they are however often a book is saved."""
+    book = _book(
+        holdings=(Holding("Cash", HoldingKind.DEPOSIT, 5.0),),
+        risky_assets=RiskyAssets(
+            ("E",), np.ones(1), np.zeros(1), np.ones(1), np.zeros(1), np.eye(1), np.zeros(1)
+        ),
+        notes=(
+            Notes("Basis", ("Item", "Source"), (("Title", "mine"), ("Compounding", 3.0))),
+            Notes("Curve", ("Quoted by", "Quoted by"), (("a", None), (None, "=b"), (1.5, "c"))),
+            Notes("Holdings", ("Where",), (("bank",),)),
+            Notes("Risky assets", ("Index",), (("x",),)),
+            Notes("Run", ("Item", "Why"), (("Seed", "chosen"),)),
+            Notes("History", ("Source",), ()),
+        ),
+    )
+    first = _again(book, tmp_path)
+    assert first == book
+    assert _again(first, tmp_path) == book
+
+
+def test_a_sheet_reads_well(tmp_path: Path) -> None:
+    path = write_book(_book(), tmp_path / "book.xlsx")
+    workbook = load_workbook(path)
+    assert workbook.sheetnames == ["Basis", "Curve", "Liabilities", "Run"]
+    for sheet in workbook:
+        assert sheet.freeze_panes == "A2"
+        assert sheet["A1"].font.bold
+        assert sheet.column_dimensions["A"].width > 10
+    assert workbook["Curve"]["B2"].number_format == "0.0000%"
+    assert workbook["Liabilities"]["C2"].number_format == "#,##0.00"
+    assert workbook["Basis"]["B2"].data_type == "s"
+    assert workbook["Basis"]["B3"].number_format == "yyyy-mm-dd"
+
+
+@pytest.mark.parametrize(
+    ("book", "match"),
+    [
+        (_book(liabilities=FlowTable.build([" "], [1.0], [1.0])), "without a name"),
+        (_book(liabilities=FlowTable.build(["a\x00"], [1.0], [1.0])), "as it is"),
+        (_book(liabilities=FlowTable.build(["x" * 40_000], [1.0], [1.0])), "as it is"),
+        (_book(basis=_basis(valuation_date=date(1899, 1, 1))), "no date before"),
+        (_book(basis=_basis(liability_spread=float("nan"))), "no number that is nan"),
+        (_book(basis=_basis(title="x" * 40_000)), "no text of 40,000"),
+        (_book(run=Run(seed=2**60)), "no seed above"),
+        (_book(notes=(Notes("Liabilities", ("amount",), ((None,), (None,))),)), "column of that name"),
+        (_book(notes=(Notes("Liabilities", ("Note",), ((None,),)),)), "1 rows for 2"),
+        (_book(notes=(Notes("Basis", ("Item", "Note"), (("Colour", "x"),)),)), "does not have"),
+        (_book(notes=(Notes("Else", ("Note",), ()),)), "no sheet 'Else'"),
+        (
+            _book(
+                risky_assets=RiskyAssets(
+                    ("rates",), np.ones(1), np.zeros(1), np.ones(1), np.zeros(1), np.eye(1), np.zeros(1)
+                )
+            ),
+            "heading of that name",
+        ),
+    ],
+    ids=lambda value: value if isinstance(value, str) else "",
+)
+def test_what_a_workbook_cannot_hold_is_refused_and_nothing_is_lost(
+    book: Book, match: str, tmp_path: Path
+) -> None:
+    path = tmp_path / "book.xlsx"
+    write_book(_book(), path)
+    former = path.read_bytes()
+    with pytest.raises(ValueError, match=match):
+        write_book(book, path)
+    assert path.read_bytes() == former
+    assert list(tmp_path.iterdir()) == [path]
+
+
+def test_a_book_without_liabilities_reads_in_again_with_a_word(tmp_path: Path) -> None:
+    book = _book(liabilities=FlowTable.empty())
+    reading = read_workbook(write_book(book, tmp_path / "book.xlsx"))
+    assert reading.book == book
+    assert [fault.severity for fault in reading.faults if fault.sheet == "Liabilities"] == [Severity.MILD]
