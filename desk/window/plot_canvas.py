@@ -67,7 +67,8 @@ class Canvas(QWidget):
         self._item = self.plot.getPlotItem()
         self._box = self._item.getViewBox()
         self._right_box = pg.ViewBox(enableMenu=False)
-        self._right_box.setZValue(self._box.zValue() + 1)
+        # It stands beside the whole plot in the scene, not in it as the left box does.
+        self._right_box.setZValue(self._item.zValue() + 1)
         self._right_box.setMouseEnabled(x=False, y=False)
         # The box over the plot only draws: the pointer belongs to the box beneath.
         self._right_box.setAcceptedMouseButtons(Qt.MouseButton.NoButton)
