@@ -2,9 +2,12 @@
 
 from __future__ import annotations
 
-from desk.valuation.records import Standing
+import numpy as np
 
-__all__ = ["BASIS_POINT", "surplus_change"]
+from desk.book.arrays import FloatArray
+from desk.valuation.records import KeyRates, Standing
+
+__all__ = ["BASIS_POINT", "key_rate_gap", "surplus_change"]
 
 BASIS_POINT = 1e-4
 
@@ -25,3 +28,8 @@ def surplus_change(standing: Standing, rate_move: float) -> float:
         move it is a first estimate only.
     """
     return -standing.dv01_gap * rate_move / BASIS_POINT
+
+
+def key_rate_gap(key_rates: KeyRates) -> FloatArray:
+    """DV01 of the assets less that of the liabilities at each key rate, shape (k,) [currency]."""
+    return np.asarray(key_rates.dv01_assets - key_rates.dv01_liabilities)
