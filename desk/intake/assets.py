@@ -9,7 +9,7 @@ from numpy.typing import NDArray
 
 from desk.book import Holding, HoldingKind, RiskyAssets
 from desk.intake.cells import Cells
-from desk.intake.checks import check_correlations, check_not_negative, check_rates
+from desk.intake.checks import check_correlations, check_not_negative, check_rates, check_size
 from desk.intake.faults import FaultList
 from desk.intake.layout import SHEETS, Table, find_known, fold
 from desk.rates.day_count import DayCount
@@ -51,6 +51,8 @@ def read_holdings(table: Table, faults: FaultList, *, valuation_date: date | Non
     duration = cells["Duration"].numbers("a duration in years", required=False)
     _report_missing_columns(table, used, faults)
     check_rates(cells["Coupon"], coupon, "the coupon")
+    for name, values in (("Nominal", nominal), ("Market value", market_value), ("Units", units)):
+        check_size(cells[name], values, f"the {name.lower()}")
     odd = ~np.isnan(frequency) & ~np.isin(frequency, _FREQUENCIES)
     cells["Frequency"].each(odd, "the frequency is {}", "1, 2, 4 or 12 coupons a year", "Correct the figure.")
     with np.errstate(invalid="ignore"):
@@ -66,7 +68,7 @@ def read_holdings(table: Table, faults: FaultList, *, valuation_date: date | Non
             "It counts as a debt; correct the sign if it is held.",
             mild=True,
         )
-        apart = ~np.isnan(market_value) & (nominal * market_value <= 0.0) & (nominal != 0.0)
+        apart = ~np.isnan(market_value) & (np.sign(nominal) * market_value <= 0.0) & (nominal != 0.0)
     if valuation_date is not None:
         past = ~np.isnat(maturity) & (maturity <= np.datetime64(valuation_date, "D"))
         cells["Maturity"].each(
@@ -185,6 +187,7 @@ def read_risky_assets(table: Table, faults: FaultList) -> RiskyAssets | None:
     dividend_yield = cells["Dividend yield"].numbers("a dividend yield a year", required=False)
     rates_correlation = cells["Rates"].numbers("a correlation")
     check_not_negative(cells["Value"], value, "the value")
+    check_size(cells["Value"], value, "the value")
     check_rates(cells["Premium"], premium, "the premium")
     check_not_negative(cells["Volatility"], volatility, "the volatility")
     check_rates(cells["Volatility"], volatility, "the volatility", most=3.0, least=-np.inf)

@@ -7,7 +7,7 @@ from numpy.typing import NDArray
 
 from desk.intake.cells import Cells
 
-__all__ = ["check_correlations", "check_not_negative", "check_rates"]
+__all__ = ["check_correlations", "check_not_negative", "check_rates", "check_size"]
 
 FloatArray = NDArray[np.float64]
 
@@ -34,6 +34,13 @@ def check_rates(
             f"{what} as a fraction or in a cell formatted as per cent",
             f"Write {value:.12g} % or {value / 100:.12g}, or correct the figure.",
         )
+
+
+def check_size(cells: Cells, values: FloatArray, what: str, *, most: float = 1e18) -> None:
+    """Report numbers so large that they can only be slips, and that sums would not bear."""
+    with np.errstate(invalid="ignore"):
+        flagged = np.abs(values) > most
+    cells.each(flagged, f"{what} is {{}}", f"{what} of at most {most:g}", "Correct the figure.")
 
 
 def check_not_negative(cells: Cells, values: FloatArray, what: str, *, zero_allowed: bool = True) -> None:

@@ -9,7 +9,7 @@ from numpy.typing import NDArray
 
 from desk.book import FlowTable, History
 from desk.intake.cells import Cells
-from desk.intake.checks import check_rates
+from desk.intake.checks import check_rates, check_size
 from desk.intake.faults import FaultList
 from desk.intake.layout import Table, fold
 from desk.rates.day_count import DayCount, year_fraction
@@ -95,6 +95,8 @@ def read_flows(
     _check_names(line_cells, names, line)
     if not rows.size:
         faults.mild("the sheet holds no flows", "one row a flow", "Add the flows.", sheet=sheet.name)
+    check_size(amount_cells, amounts, "the amount")
+    check_size(beta_cells, beta, "the beta", most=100.0)
     beta = np.where(np.isnan(beta), 0.0, beta)
     if (line < 0).any() or not (np.isfinite(time).all() and np.isfinite(amounts).all()):
         return None

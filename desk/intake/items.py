@@ -15,7 +15,7 @@ from numpy.typing import NDArray
 
 from desk.book import CurveKind, Measure, ModelName, RatesModel, Run
 from desk.intake.cells import Cells
-from desk.intake.checks import check_correlations, check_not_negative, check_rates
+from desk.intake.checks import check_correlations, check_not_negative, check_rates, check_size
 from desk.intake.columns import Kind
 from desk.intake.faults import FaultList
 from desk.intake.layout import Table, find_known, fold
@@ -235,6 +235,10 @@ def _check_reversion(cells: Cells, values: NDArray[np.float64], what: str) -> No
     cells.each(values > 100.0, f"{what} is {{}}", f"{what} a year, at most 100", "Correct the figure.")
 
 
+def _check_price(cells: Cells, values: NDArray[np.float64], what: str) -> None:
+    check_size(cells, values, what, most=100.0)
+
+
 def read_rates_model(sheet: ItemSheet) -> RatesModel | None:
     """The rates model; None where what it is cannot be told."""
     name = sheet.choice("Model", ModelName, "a model", required=True)
@@ -253,7 +257,7 @@ def read_rates_model(sheet: ItemSheet) -> RatesModel | None:
         "second_volatility": number("Second volatility", volatility, check_not_negative, check_rates_above),
         "factor_correlation": number("Factor correlation", "a correlation", check_correlations),
     }
-    risk_price = _or_zero(sheet.number("Risk price", "a price of risk"))
+    risk_price = _or_zero(sheet.number("Risk price", "a price of risk", _check_price))
     if name is None:
         return None
     if name in _SQUARE_ROOT:
