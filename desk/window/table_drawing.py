@@ -15,7 +15,7 @@ from desk.window.theme import GAP, HALF, Theme, mixed, soft_font, strong_font
 if TYPE_CHECKING:
     from desk.window.tables import Table
 
-__all__ = ["Cells", "Header"]
+__all__ = ["Cells", "Header", "paint_mark"]
 
 
 class Header(QHeaderView):
@@ -32,9 +32,10 @@ class Header(QHeaderView):
         self.setMinimumSectionSize(36)
 
     def sizeHint(self) -> QSize:
-        """High enough for both lines."""
+        """High enough for both lines, or for one where no column has a unit."""
         name = QFontMetrics(strong_font(self.font())).height()
-        unit = QFontMetrics(soft_font(self.font())).height()
+        has_units = any(column.shown_unit for column in self._table.table_model.columns)
+        unit = QFontMetrics(soft_font(self.font())).height() if has_units else 0
         return QSize(super().sizeHint().width(), name + unit + GAP)
 
     def paintSection(self, painter: QPainter, rect: QRect, section: int) -> None:
@@ -119,19 +120,19 @@ class Cells(QStyledItemDelegate):
         painter.setPen(theme.hairline)
         painter.drawLine(rect.bottomLeft(), rect.bottomRight())
         if mark is not None:
-            self._paint_mark(painter, rect, mark, theme)
+            paint_mark(painter, rect, mark, theme)
         if bool(state & QStyle.StateFlag.State_HasFocus) and self._table.hasFocus():
             painter.setPen(theme.focus)
             painter.setBrush(Qt.BrushStyle.NoBrush)
             painter.drawRect(rect.adjusted(0, 0, -1, -1))
         painter.restore()
 
-    @staticmethod
-    def _paint_mark(painter: QPainter, rect: QRect, mark: Mark, theme: Theme) -> None:
-        """Grave is a filled corner, mild an open one: told apart without their colours."""
-        corner = rect.topLeft()
-        shape = QPolygon([corner, corner + QPoint(8, 0), corner + QPoint(0, 8)])
-        colour = theme.grave if mark.grave else theme.mild
-        painter.setPen(colour)
-        painter.setBrush(colour if mark.grave else theme.surface)
-        painter.drawPolygon(shape)
+
+def paint_mark(painter: QPainter, rect: QRect, mark: Mark, theme: Theme) -> None:
+    """Mark a cell. Grave is a filled corner, mild an open one: told apart without their colours."""
+    corner = rect.topLeft()
+    shape = QPolygon([corner, corner + QPoint(8, 0), corner + QPoint(0, 8)])
+    colour = theme.grave if mark.grave else theme.mild
+    painter.setPen(colour)
+    painter.setBrush(colour if mark.grave else theme.surface)
+    painter.drawPolygon(shape)

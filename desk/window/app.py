@@ -1,0 +1,117 @@
+"""The start of the window.
+
+Order of events: the build of Qt is checked; the application gets its name, look and log; the window
+comes up on the welcome, or on a book; then, while the reader looks at it, the stations' libraries load.
+"""
+
+from __future__ import annotations
+
+import logging
+import sys
+from pathlib import Path
+
+from PySide6 import __version__ as pyside_version
+from PySide6.QtCore import QObject, QTimer
+from PySide6.QtWidgets import QApplication
+
+from desk import __version__
+
+__all__ = ["lost_references", "run"]
+
+_log = logging.getLogger(__name__)
+
+_CALLS = 200
+
+
+def lost_references() -> int:
+    """How many references to None a couple of hundred calls into Qt lose; 0 in a sound build.
+
+    Notes
+    -----
+    PySide6 6.12.0 takes one reference off None with every call that returns it. Before Python 3.12 None can
+    be used up so, and the process ends in the middle of the work.
+    """
+    thing = QObject()
+    before = sys.getrefcount(None)
+    for _ in range(_CALLS):
+        thing.parent()
+    return max(0, before - sys.getrefcount(None))
+
+
+def _refusal() -> str:
+    """Why the window must not open on this build of Qt; empty where it may."""
+    if lost_references() < _CALLS // 2:
+        return ""
+    return (
+        f"gapwright: PySide6 {pyside_version} is broken on Python {sys.version.split()[0]}: it loses "
+        "references to "
+        "None, and the window would end without warning. Install PySide6-Essentials below 6.12, or use "
+        "Python "
+        "3.12 or later. The commands work without it."
+    )
+
+
+def run(path: Path | None) -> int:
+    """Open the window and stay until it is closed.
+
+    Parameters
+    ----------
+    path : Path or None
+        A book to open.
+
+    Returns
+    -------
+    int
+        Exit status: 1 where the window must not open on this build of Qt.
+    """
+    refusal = _refusal()
+    if refusal:
+        print(refusal, file=sys.stderr)  # noqa: T201
+        return 1
+    from desk.window.document import Document
+    from desk.window.errors import ErrorKeeper, start_log
+    from desk.window.icons import app_icon
+    from desk.window.jobs import Jobs
+    from desk.window.main_window import MainWindow
+    from desk.window.settings import Settings
+    from desk.window.stations import all_stations
+    from desk.window.theme import ThemeSwitch
+
+    app = _application()
+    keeper = ErrorKeeper(app, log_path=start_log())
+    keeper.install()
+    _log.info("Gapwright %s started", __version__)
+    settings = Settings()
+    app.setWindowIcon(app_icon())
+    theme_switch = ThemeSwitch(app, settings.theme_mode, app)
+    jobs = Jobs()
+    document = Document(jobs)
+    window = MainWindow(
+        jobs=jobs,
+        document=document,
+        settings=settings,
+        theme_switch=theme_switch,
+        stations=all_stations(),
+    )
+    keeper.window = window
+    keeper.book_is_open = lambda: document.book is not None
+    keeper.save_copy = window.files.ask_save
+    window.show()
+    if path is not None:
+        window.files.open(path)
+    QTimer.singleShot(0, window.warm_up)
+    try:
+        return app.exec()
+    finally:
+        keeper.uninstall()
+        jobs.shutdown()
+
+
+def _application() -> QApplication:
+    """The application with its names."""
+    QApplication.setOrganizationName("Gapwright")
+    QApplication.setApplicationName("Gapwright")
+    QApplication.setApplicationVersion(__version__)
+    QApplication.setDesktopFileName("gapwright")
+    found = QApplication.instance()
+    return found if isinstance(found, QApplication) else QApplication(sys.argv[:1])
