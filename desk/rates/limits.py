@@ -16,6 +16,8 @@ With ``B(a, s) = (1 - exp(-a s)) / a``:
 
 from __future__ import annotations
 
+from collections.abc import Callable
+
 import numpy as np
 from numpy.typing import ArrayLike, NDArray
 
@@ -27,6 +29,7 @@ FloatArray = NDArray[np.float64]
 _NODES, _WEIGHTS = np.polynomial.legendre.leggauss(8)
 _NODES = 0.5 * (_NODES + 1.0)
 _WEIGHTS = 0.5 * _WEIGHTS
+_PART = 4096
 
 
 def first_integral(speed: float, time: ArrayLike) -> FloatArray:
@@ -44,8 +47,7 @@ def first_integral(speed: float, time: ArrayLike) -> FloatArray:
     ndarray, the shape of `time`
         [years].
     """
-    years = np.asarray(time, dtype=np.float64)
-    return np.asarray(years * _phi_1(np.asarray(speed * years)))
+    return _in_parts(lambda years: years * _phi_1(np.asarray(speed * years)), time)
 
 
 def second_integral(speed: float, time: ArrayLike) -> FloatArray:
@@ -53,13 +55,15 @@ def second_integral(speed: float, time: ArrayLike) -> FloatArray:
 
     Parameters and shapes as in `first_integral`; the result is in years squared.
     """
-    years = np.asarray(time, dtype=np.float64)
-    return np.asarray(years**2 * _phi_2(np.asarray(speed * years)))
+    return _in_parts(lambda years: years**2 * _phi_2(np.asarray(speed * years)), time)
 
 
 def mixed_integral(speed: float, other_speed: float, time: ArrayLike) -> FloatArray:
     """``∫₀ᵗ exp(-a s) (1 - exp(-b s))/b ds`` for speeds a and b, neither negative [years squared]."""
-    years = np.asarray(time, dtype=np.float64)
+    return _in_parts(lambda years: _mixed(speed, other_speed, years), time)
+
+
+def _mixed(speed: float, other_speed: float, years: FloatArray) -> FloatArray:
     p, q = np.asarray(speed * years), np.asarray(other_speed * years)
     near = p + q < 2.0
     with np.errstate(under="ignore"):
@@ -76,7 +80,10 @@ def mixed_integral(speed: float, other_speed: float, time: ArrayLike) -> FloatAr
 
 def product_integral(speed: float, other_speed: float, time: ArrayLike) -> FloatArray:
     """``∫₀ᵗ (1 - exp(-a s))/a · (1 - exp(-b s))/b ds`` for speeds a and b, neither negative [years cubed]."""
-    years = np.asarray(time, dtype=np.float64)
+    return _in_parts(lambda years: _product(speed, other_speed, years), time)
+
+
+def _product(speed: float, other_speed: float, years: FloatArray) -> FloatArray:
     if speed == other_speed == 0.0:
         return np.asarray(years**3 / 3.0)
     p = np.asarray(min(speed, other_speed) * years)
@@ -96,6 +103,18 @@ def product_integral(speed: float, other_speed: float, time: ArrayLike) -> Float
     other = grown if speed == other_speed else _phi_1(p[near][:, None] * _NODES)
     shape[near] = (grown * other * _NODES**2) @ _WEIGHTS
     return np.asarray(shape * years * years * years)
+
+
+def _in_parts(formula: Callable[[FloatArray], FloatArray], time: ArrayLike) -> FloatArray:
+    """A formula applied to a few thousand times at a time: its intermediate arrays stay in the cache."""
+    years = np.asarray(time, dtype=np.float64)
+    if years.size <= _PART:
+        return np.asarray(formula(years))
+    flat, result = years.reshape(-1), np.empty(years.size)
+    for start in range(0, flat.size, _PART):
+        part = slice(start, start + _PART)
+        result[part] = formula(flat[part])
+    return result.reshape(years.shape)
 
 
 def _phi_1(z: FloatArray) -> FloatArray:

@@ -14,13 +14,19 @@ from __future__ import annotations
 
 import math
 from dataclasses import dataclass
-from functools import lru_cache
 
 import numpy as np
 from numpy.typing import ArrayLike
 
 from desk.book.arrays import FloatArray
 from desk.rates.short_rate import ShortRateModel
+from desk.scenarios.chebyshev import (
+    chebyshev_points,
+    check_polynomials,
+    fill_series,
+    fill_tensor,
+    to_coefficients,
+)
 
 __all__ = ["Surface", "fit_surface", "flow_surfaces"]
 
@@ -31,10 +37,8 @@ _FEW = 3
 # Where the exponents within the range are larger than this, a common exponential is taken out first.
 _STEEP = 1.0
 _MOST_DEGREE = 160
-# Coefficients of a series that may be turned into powers.
-_SHORT = 14
-# Where a fit is compared with the sum: both ends and points that are no Chebyshev points of a usual degree.
-_CHECKS = np.array([-1.0, -0.713, 0.127, 1.0])
+# Numbers of the table of exponentials that a fit works on at a time.
+_TABLE = 32_768
 _TOLERANCE = 1e-11
 
 
@@ -65,10 +69,10 @@ class Surface:
     coefficient: FloatArray | None
     error: float
 
-    def __call__(self, state: FloatArray) -> FloatArray:
-        """Values at states, shape (n, m); shape (m,)."""
+    def __call__(self, state: FloatArray, out: FloatArray | None = None) -> FloatArray:
+        """Values at states, shape (n, m), as an array of shape (m,): `out`, where it is given."""
         count = state.shape[1]
-        result = np.empty(count)
+        result = np.empty(count) if out is None else out
         chunk = -(-count // -(-count // _CHUNK)) if count else 1
         for start in range(0, count, chunk):
             part = slice(start, start + chunk)
@@ -84,9 +88,9 @@ class Surface:
             np.subtract(state[row], 0.5 * (lowest + highest), out=place[row])
             place[row] *= 2.0 / (highest - lowest)
         if self.coefficient.ndim == 1:
-            _series(self.coefficient, place[0], out)
+            fill_series(self.coefficient, place[0], out)
         else:
-            _series_2(self.coefficient, place, out)
+            fill_tensor(self.coefficient, place, out)
         if self.tilt.any():
             exponent = np.zeros_like(out)
             for row, slope in enumerate((-0.5 * self.tilt * (self.high - self.low)).tolist()):
@@ -131,11 +135,15 @@ def flow_surfaces(
     level, exposure = model.bond_terms(nodes[:, None], maturities, past=True)
     weight = amounts * np.exp(level)
     firsts = np.searchsorted(maturities, nodes, side="left").tolist()
+    lowest, highest = np.asarray(low, dtype=np.float64), np.asarray(high, dtype=np.float64)
+    if exposure.shape[-1] == 1:
+        weight[maturities < nodes[:, None]] = 0.0
+        return _fit_nodes(weight, exposure[:, :, 0], lowest[:, 0], highest[:, 0], firsts, tolerance)
     return [
-        fit_surface(weight[row, first:], exposure[row, first:], lowest, highest, tolerance=tolerance)
-        for row, (first, lowest, highest) in enumerate(
-            zip(firsts, np.asarray(low, dtype=np.float64), np.asarray(high, dtype=np.float64), strict=True)
+        fit_surface(
+            weight[row, first:], exposure[row, first:], lowest[row], highest[row], tolerance=tolerance
         )
+        for row, first in enumerate(firsts)
     ]
 
 
@@ -157,27 +165,142 @@ def fit_surface(
     weights = np.asarray(weight, dtype=np.float64)
     exposures = np.asarray(exposure, dtype=np.float64)
     lowest, highest = np.asarray(low, dtype=np.float64), np.asarray(high, dtype=np.float64)
-    middle = 0.5 * (lowest + highest)
-    # A range of no width would divide by nothing.
-    half = np.maximum(0.5 * (highest - lowest), 1e-12 + 1e-9 * np.abs(middle))
-    low_end, high_end = middle - half, middle + half
-    direct = Surface(weights, exposures, low_end, high_end, np.zeros(half.size), None, 0.0)
-    if weights.size <= _FEW or half.size > 2:
-        return direct
+    if weights.size > _FEW and lowest.size == 1:
+        (surface,) = _fit_nodes(weights[None], exposures.T, lowest, highest, [0], tolerance)
+        return surface
+    if weights.size > _FEW and lowest.size == 2:
+        return _fit_two_factors(weights, exposures, lowest, highest, tolerance)
+    return _summed(weights, exposures, *_widened(lowest, highest))
+
+
+def _summed(weight: FloatArray, exposure: FloatArray, low: FloatArray, high: FloatArray) -> Surface:
+    """A surface that is not fitted."""
+    return Surface(weight, exposure, low, high, np.zeros(low.size), None, 0.0)
+
+
+def _widened(low: FloatArray, high: FloatArray) -> tuple[FloatArray, FloatArray]:
+    """The range with no part of it too narrow to divide by."""
+    middle = 0.5 * (low + high)
+    half = np.maximum(0.5 * (high - low), 1e-12 + 1e-9 * np.abs(middle))
+    return middle - half, middle + half
+
+
+def _fit_nodes(
+    weight: FloatArray,
+    exposure: FloatArray,
+    low: FloatArray,
+    high: FloatArray,
+    firsts: list[int],
+    tolerance: float,
+) -> list[Surface]:
+    """One-factor surfaces of several nodes at once; arrays of shapes (t, k) and (t,).
+
+    Node number row takes the flows from ``firsts[row]`` on; those before have no weight.
+    """
+    low, high = _widened(low, high)
+    middle, half = 0.5 * (low + high), 0.5 * (high - low)
+    with np.errstate(over="ignore", invalid="ignore", under="ignore", divide="ignore"):
+        scaled = weight * np.exp(-exposure * middle[:, None])
+        sizes = np.abs(scaled)
+        gross = sizes.sum(axis=1)
+        usable = np.isfinite(gross) & np.isfinite(half) & (gross > 0.0)
+        steep = usable & (exposure.max(axis=1) * half > _STEEP)
+        tilt = np.where(steep, (sizes * exposure).sum(axis=1) / gross, 0.0)
+        slopes = (exposure - tilt[:, None]) * -half[:, None]
+        steepest = np.abs(slopes).max(axis=1).tolist()
+    degrees = []
+    for row, slope in enumerate(steepest):
+        degree = _degree(slope, tolerance) if usable[row] else 0
+        flows = weight.shape[1] - firsts[row]
+        degrees.append(degree if flows > _FEW and degree < min(_MOST_DEGREE, 4 * flows) else 0)
+    fitted = [row for row, degree in enumerate(degrees) if degree]
+    coefficients: dict[int, tuple[FloatArray, float]] = {}
+    if fitted:
+        part = slice(None) if len(fitted) == len(degrees) else fitted
+        found = _series_of(scaled[part], sizes[part], slopes[part], max(degrees), tolerance)
+        coefficients = dict(zip(fitted, found, strict=True))
+    surfaces = []
+    for row, first in enumerate(firsts):
+        coefficient, error = coefficients.get(row, (None, 0.0))
+        one = slice(row, row + 1)
+        surfaces.append(
+            Surface(
+                weight[row, first:],
+                exposure[row, first:, None],
+                low[one],
+                high[one],
+                tilt[one],
+                coefficient,
+                error,
+            )
+        )
+    return surfaces
+
+
+def _series_of(
+    scaled: FloatArray, sizes: FloatArray, slopes: FloatArray, degree: int, tolerance: float
+) -> list[tuple[FloatArray, float]]:
+    """Coefficients of ``Σ scaledₖ exp(slopeₖ y)``, trimmed, and their error between the points of the fit."""
+    count = degree + 1
+    points = chebyshev_points(count)
+    values = np.empty((len(scaled), points.size))
+    # Where all flows have one sign there is no difference.
+    gross = values if scaled.min() >= 0.0 else np.empty_like(values)
+    group = max(1, _TABLE // slopes.size)
+    for start in range(0, points.size, group):
+        columns = slice(start, start + group)
+        # dimensions: points by nodes by flows
+        table = points[columns, None, None] * slopes
+        np.exp(table, out=table)
+        np.einsum("ptk,tk->tp", table, scaled, out=values[:, columns])
+        if gross is not values:
+            np.einsum("ptk,tk->tp", table, sizes, out=gross[:, columns])
+    coefficients = values[:, :count] @ to_coefficients(count).T
+    # The tail left out of a node's series adds up to less than its limit.
+    limits = tolerance * gross.min(axis=1)
+    tails = np.abs(coefficients)[:, ::-1].cumsum(axis=1)
+    kept = np.maximum(np.count_nonzero(tails >= limits[:, None], axis=1), 1)
+    coefficients[np.arange(count) >= kept[:, None]] = 0.0
+    errors = np.abs(coefficients @ check_polynomials(count) - values[:, count:]) / gross[:, count:]
+    worst = errors.max(axis=1).tolist()
+    return [
+        (row[:length], error) for row, length, error in zip(coefficients, kept.tolist(), worst, strict=True)
+    ]
+
+
+def _fit_two_factors(
+    weight: FloatArray, exposure: FloatArray, low: FloatArray, high: FloatArray, tolerance: float
+) -> Surface:
+    """A surface of two factors, by a tensor of Chebyshev polynomials."""
+    low, high = _widened(low, high)
+    middle, half = 0.5 * (low + high), 0.5 * (high - low)
+    direct = _summed(weight, exposure, low, high)
     with np.errstate(over="ignore", invalid="ignore", under="ignore"):
-        scaled = weights * np.exp(-(exposures @ middle))
-        gross = float(np.abs(scaled).sum())
-    if not (0.0 < gross < math.inf and math.isfinite(half.sum())):
+        scaled = weight * np.exp(-(exposure @ middle))
+        sizes = np.abs(scaled)
+        gross = float(sizes.sum())
+    if not (0.0 < gross < math.inf and np.isfinite(half).all()):
         return direct
-    tilt = direct.tilt
-    if float((exposures @ half).max()) > _STEEP:
-        tilt = np.abs(scaled) @ exposures / gross
-    slopes = (exposures - tilt) * half
-    degrees = [_degree(float(steepest), tolerance) for steepest in np.abs(slopes).max(axis=0)]
-    if max(degrees) > _MOST_DEGREE or math.prod(degree + 1 for degree in degrees) > 4 * weights.size:
+    tilt = np.zeros(2)
+    if float((exposure @ half).max()) > _STEEP:
+        tilt = sizes @ exposure / gross
+    slopes = (exposure - tilt) * -half
+    counts = [_degree(float(steepest), tolerance) + 1 for steepest in np.abs(slopes).max(axis=0)]
+    if max(counts) > _MOST_DEGREE or math.prod(counts) > 4 * weight.size:
         return direct
-    coefficient, error = _fit(scaled, slopes, degrees, tolerance)
-    return Surface(weights, exposures, low_end, high_end, tilt, coefficient, error)
+    # dimensions: flows by points, one a factor; the points of the fit first, then those of the check
+    one, two = (
+        np.exp(column[:, None] * chebyshev_points(count))
+        for column, count in zip(slopes.T, counts, strict=True)
+    )
+    values, grosses = (one.T * scaled) @ two, (one.T * sizes) @ two
+    coefficient = to_coefficients(counts[0]) @ values[: counts[0], : counts[1]] @ to_coefficients(counts[1]).T
+    small = np.abs(coefficient) < tolerance * float(grosses.min()) / coefficient.size
+    coefficient[small] = 0.0
+    evaluated = check_polynomials(counts[0]).T @ coefficient @ check_polynomials(counts[1])
+    between = values[counts[0] :, counts[1] :]
+    error = np.abs(evaluated - between) / grosses[counts[0] :, counts[1] :]
+    return Surface(weight, exposure, low, high, tilt, coefficient, float(error.max()))
 
 
 def _degree(slope: float, tolerance: float) -> int:
@@ -195,71 +318,6 @@ def _degree(slope: float, tolerance: float) -> int:
     return degree
 
 
-def _fit(
-    scaled: FloatArray, slopes: FloatArray, degrees: list[int], tolerance: float
-) -> tuple[FloatArray, float]:
-    """Coefficients through the Chebyshev points, trimmed, and their error at some points between."""
-    counts = [degree + 1 for degree in degrees]
-    # dimensions: factor by (flows, points); the points of the fit first, then those of the check.
-    powers = [
-        np.exp(-column[:, None] * _points(count)) for column, count in zip(slopes.T, counts, strict=True)
-    ]
-    sizes = np.abs(scaled)
-    if len(counts) == 1:
-        values, gross = np.stack([scaled, sizes]) @ powers[0]
-        coefficient = _cosines(counts[0]) @ values[: counts[0]]
-        between = values[counts[0] :]
-    else:
-        left = powers[0].T
-        values, gross = (left * scaled) @ powers[1], (left * sizes) @ powers[1]
-        coefficient = _cosines(counts[0]) @ values[: counts[0], : counts[1]] @ _cosines(counts[1]).T
-        between = values[counts[0] :, counts[1] :]
-    limit = 0.1 * tolerance * float(gross.min())
-    size = np.abs(coefficient)
-    if len(counts) == 1:
-        # The tail left out adds up to less than the limit.
-        kept = max(1, int(np.count_nonzero(size[::-1].cumsum() >= limit)))
-        coefficient = coefficient[:kept]
-        error = (coefficient @ _polynomials(kept) - between) / gross[counts[0] :]
-    else:
-        coefficient = np.where(size < limit / size.size, 0.0, coefficient)
-        evaluated = _polynomials(counts[0]).T @ coefficient @ _polynomials(counts[1])
-        error = (evaluated - between) / gross[counts[0] :, counts[1] :]
-    return coefficient, float(np.abs(error).max())
-
-
-@lru_cache(maxsize=256)
-def _points(count: int) -> FloatArray:
-    """The `count` Chebyshev points, and after them the points of the check."""
-    return np.concatenate([np.cos(np.pi * (np.arange(count) + 0.5) / count), _CHECKS])
-
-
-@lru_cache(maxsize=256)
-def _polynomials(count: int) -> FloatArray:
-    """The first `count` Chebyshev polynomials at the points of the check, shape (count, points)."""
-    return np.asarray(np.cos(np.outer(np.arange(count), np.arccos(_CHECKS))))
-
-
-@lru_cache(maxsize=256)
-def _to_powers(count: int) -> FloatArray:
-    """The matrix from `count` Chebyshev coefficients to those of 1, y, y², ..."""
-    matrix = np.zeros((count, count))
-    for order in range(count):
-        unit = np.zeros(order + 1)
-        unit[order] = 1.0
-        matrix[: order + 1, order] = np.polynomial.chebyshev.cheb2poly(unit)
-    return matrix
-
-
-@lru_cache(maxsize=256)
-def _cosines(count: int) -> FloatArray:
-    """The matrix from values at `_roots` to Chebyshev coefficients."""
-    order = np.arange(count)
-    matrix = 2.0 / count * np.cos(np.pi * np.outer(order, order + 0.5) / count)
-    matrix[0] *= 0.5
-    return np.asarray(matrix)
-
-
 def _direct(weight: FloatArray, exposure: FloatArray, state: FloatArray, out: FloatArray) -> None:
     """``Σ wₖ exp(-exposureₖ · x)`` flow by flow."""
     out.fill(0.0)
@@ -275,48 +333,3 @@ def _direct(weight: FloatArray, exposure: FloatArray, state: FloatArray, out: Fl
         np.exp(term, out=term)
         term *= one_weight
         out += term
-
-
-def _series(coefficient: FloatArray, place: FloatArray, out: FloatArray) -> None:
-    """A Chebyshev series at `place`.
-
-    A short series is turned into powers and takes Horner's rule, two operations a degree: the turn costs a
-    factor of ``2ᵈ⁻¹`` in rounding, which is small for it. A longer one takes Clenshaw's recurrence
-    ``bₖ = cₖ + 2y bₖ₊₁ - bₖ₊₂``, three operations a degree.
-    """
-    if coefficient.size <= _SHORT:
-        powers = (_to_powers(coefficient.size) @ coefficient).tolist()
-        out.fill(powers[-1])
-        for value in powers[-2::-1]:
-            out *= place
-            out += value
-        return
-    values = coefficient.tolist()
-    doubled = 2.0 * place
-    last, product = np.empty_like(out), np.empty_like(out)
-    now = doubled * values[-1]
-    now += values[-2]
-    last.fill(values[-1])
-    for value in values[-3:0:-1]:
-        np.multiply(doubled, now, out=product)
-        np.subtract(product, last, out=last)
-        last += value
-        now, last = last, now
-    np.multiply(place, now, out=product)
-    product -= last
-    np.add(product, values[0], out=out)
-
-
-def _series_2(coefficient: FloatArray, place: FloatArray, out: FloatArray) -> None:
-    """A tensor Chebyshev series: Clenshaw's recurrence over rows, each row a series in the second factor."""
-    doubled = 2.0 * place[0]
-    now, last, row, product = np.zeros_like(out), np.zeros_like(out), np.empty_like(out), np.empty_like(out)
-    for number in range(len(coefficient) - 1, -1, -1):
-        used = np.flatnonzero(coefficient[number])
-        np.multiply(doubled if number else place[0], now, out=product)
-        np.subtract(product, last, out=last)
-        if used.size:
-            _series(coefficient[number, : used[-1] + 1], place[1], row)
-            last += row
-        now, last = last, now
-    out[:] = now

@@ -51,7 +51,7 @@ def run(steps_per_year: int) -> None:
     values = [(side.mean - side.curve) / side.se for side in result.present_value]
     print(
         f"{PATHS:,} paths, {YEARS} years, {steps_per_year} step(s) a year: peak {peak:.2f} GB, wanted "
-        f"at most 1.5 GB; {seconds:.1f} s; largest z of E[1/R] {np.abs(score).max():.2f}, z of the present values "
+        f"at most 1.5 GB; {seconds:.1f} s; largest z of E[1/R] {np.abs(score).max():.2f}, of present values "
         + ", ".join(f"{value:.2f}" for value in values)
     )
 
