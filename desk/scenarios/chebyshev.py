@@ -46,7 +46,7 @@ def _to_powers(count: int) -> FloatArray:
 
 @lru_cache(maxsize=256)
 def to_coefficients(count: int) -> FloatArray:
-    """The matrix from values at `_roots` to Chebyshev coefficients."""
+    """The matrix from values at `chebyshev_points` to Chebyshev coefficients."""
     order = np.arange(count)
     matrix = 2.0 / count * np.cos(np.pi * np.outer(order, order + 0.5) / count)
     matrix[0] *= 0.5

@@ -14,7 +14,7 @@ import time
 from collections.abc import Callable, Iterator, Sequence
 from concurrent.futures import Future, ThreadPoolExecutor, wait
 from dataclasses import dataclass
-from functools import cached_property
+from functools import cached_property, partial
 from typing import TypeVar
 
 import numpy as np
@@ -237,18 +237,18 @@ class Crew:
         """Do `action` with every item, several items to a task."""
         size = -(-len(items) // _MOST_TASKS)
         groups = [items[start : start + size] for start in range(0, len(items), size)]
-
-        def work(group: Sequence[Result]) -> None:
-            for item in group:
-                action(item)
-
-        self.run([lambda group=group: work(group) for group in groups])  # type: ignore[misc]
+        self.run([partial(_each, action, group) for group in groups])
 
     def _tell(self, fraction: float) -> None:
         now = time.monotonic()
         if self._progress is not None and now - self._told >= _PAUSE:
             self._told = now
             self._progress(fraction)
+
+
+def _each(action: Callable[[Result], None], items: Sequence[Result]) -> None:
+    for item in items:
+        action(item)
 
 
 def _quietly(task: Callable[[], Result]) -> Result:

@@ -136,7 +136,7 @@ def flow_surfaces(
     weight = amounts * np.exp(level)
     firsts = np.searchsorted(maturities, nodes, side="left").tolist()
     lowest, highest = np.asarray(low, dtype=np.float64), np.asarray(high, dtype=np.float64)
-    if exposure.shape[-1] == 1:
+    if exposure.shape[-1] == 1 and maturities.size > _FEW:
         weight[maturities < nodes[:, None]] = 0.0
         return _fit_nodes(weight, exposure[:, :, 0], lowest[:, 0], highest[:, 0], firsts, tolerance)
     return [

@@ -88,7 +88,7 @@ def test_the_sample_has_that_law(name: str, request: pytest.FixtureRequest) -> N
     assert inside[years].mean() > 0.75
 
 
-def test_tail_mean_of_the_sample(vasicek_run: Simulation) -> None:
+def test_tail_mean_of_the_law(vasicek_run: Simulation) -> None:
     """Closed form of the lognormal law, ``exp(μ + s²/2) Φ(s - z)/(1 - p)``, checked by quadrature: the 95 %
     quantile is 4.16414331 and the mean beyond it 4.66334169 (computed). Here the tail mean is the mean of the
     upper percentiles of the law we report, by the midpoint rule."""

@@ -11,15 +11,29 @@ import numpy as np
 import pytest
 
 from desk.book import Book, Measure, ModelName, PricedFlows, RatesModel, Side
-from desk.scenarios.draws import block_generator
+from desk.scenarios.draws import BLOCK_PATHS, block_generator
 from desk.scenarios.models import rate_model
 from desk.scenarios.records import Simulation
 from desk.scenarios.simulation import simulate
 from tests.scenarios.books import ALL_MODELS, NO_FLOWS, assets, book, liabilities, priced
 
 
-def run(name: ModelName, **settings: int | Measure) -> Simulation:
-    return simulate(book(ALL_MODELS[name], **settings), assets(), liabilities())  # type: ignore[arg-type]
+def run(
+    name: ModelName,
+    *,
+    paths: int = 2_000,
+    horizon_years: int = 10,
+    steps_per_year: int = 4,
+    measure: Measure = Measure.PRICING,
+) -> Simulation:
+    settings = book(
+        ALL_MODELS[name],
+        paths=paths,
+        horizon_years=horizon_years,
+        steps_per_year=steps_per_year,
+        measure=measure,
+    )
+    return simulate(settings, assets(), liabilities())
 
 
 def same(first: object, second: object) -> bool:
@@ -84,8 +98,6 @@ def test_a_plain_loop_with_the_same_normals(horizon: int) -> None:
     variance = volatility**2 * (1.0 - decay**2) / (2.0 * speed)
     shared = volatility**2 / speed * (length - (1.0 - decay**2) / (2.0 * speed))
     spread = volatility**2 / speed**2 * (step - 2.0 * length + (1.0 - decay**2) / (2.0 * speed))
-    from desk.scenarios.draws import BLOCK_PATHS
-
     normals = block_generator(9, 0).standard_normal((2 * horizon, 2, BLOCK_PATHS))
     values, accounts = [], []
     for path in range(5):
@@ -223,8 +235,8 @@ def test_a_horizon_beyond_the_flows_is_said() -> None:
 
 def test_the_mean_does_not_depend_on_the_horizon_or_the_steps() -> None:
     """The value of flows after the horizon, and between nodes, is taken by bonds: no bias either way."""
-    for settings in ({"horizon_years": 1}, {"horizon_years": 30}, {"steps_per_year": 1}):
-        result = run(ModelName.GAUSSIAN_2, paths=20_000, **settings)
+    for horizon, steps_per_year in ((1, 4), (30, 4), (10, 1)):
+        result = run(ModelName.GAUSSIAN_2, paths=20_000, horizon_years=horizon, steps_per_year=steps_per_year)
         for side in result.present_value:
             assert abs(side.mean - side.curve) / side.se < 4.5
 

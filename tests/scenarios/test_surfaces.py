@@ -86,6 +86,25 @@ def test_the_degree_grows_with_the_range_and_the_error_does_not(halves: float) -
     assert max(narrow.error, wide.error) < 1e-10
 
 
+def test_nodes_with_few_flows_or_none() -> None:
+    model = rate_model(book(ALL_MODELS[ModelName.HULL_WHITE]))
+    state = np.array([[-0.01, 0.0, 0.02]])
+    for due in (np.zeros(0), np.array([1.0]), np.arange(1.0, 7.0)):
+        surfaces = flow_surfaces(
+            model, [0.5, 3.0, 5.0, 9.0], due, np.ones(due.size), np.full((4, 1), -0.1), np.full((4, 1), 0.1)
+        )
+        for node, surface in zip((0.5, 3.0, 5.0, 9.0), surfaces, strict=True):
+            level, exposure = model.bond_terms(node, due[due >= node])
+            assert surface(state) == pytest.approx(direct(np.exp(level), exposure, state), rel=1e-11)
+
+
+def test_the_result_may_be_given() -> None:
+    surface = fit_surface(np.ones(50), np.linspace(0.0, 10.0, 50)[:, None], [-0.05], [0.05])
+    state, out = np.array([[0.01, 0.02]]), np.empty(2)
+    assert surface(state, out) is out
+    assert np.array_equal(out, surface(state))
+
+
 def test_many_states_are_worked_on_in_parts() -> None:
     weight, exposure = np.ones(50), np.linspace(0.0, 10.0, 50)[:, None]
     surface = fit_surface(weight, exposure, [-0.05], [0.05])
