@@ -193,13 +193,14 @@ def save_copy(book: Book, path: Path) -> Path:
 
     Raises
     ------
+    ValueError
+        If a workbook cannot hold the book as it is; the message says what in it.
     OSError
         If the file cannot be written.
     """
     from desk.report.book_workbook import write_book
 
-    write_book(book, path)
-    return path
+    return write_book(book, path)
 
 
 def _watched(progress: Progress | None, cancel: CancelToken | None) -> Progress:

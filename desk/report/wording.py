@@ -14,8 +14,8 @@ CAUTION = (
 )
 
 QUANTILE_METHOD = (
-    "Percentiles are order statistics of the drawn paths; the interval beside each is its 95 % interval from "
-    "order statistics."
+    "Percentiles interpolate linearly between order statistics of the paths (Hyndman and Fan 1996, "
+    "definition 7); their 95 % intervals are order statistics."
 )
 
 SIDE_NAMES = {Side.ASSETS: "Assets", Side.LIABILITIES: "Liabilities"}

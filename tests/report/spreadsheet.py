@@ -96,7 +96,7 @@ def _python(token: Token) -> str:
     if token.type == Token.FUNC:
         return str(token.value) if token.subtype == Token.OPEN else ")"
     if token.type == Token.OP_IN:
-        return {"=": "==", "<>": "!=", "&": "+"}.get(token.value, token.value)
+        return {"=": "==", "<>": "!=", "&": "+"}.get(str(token.value), str(token.value))
     return str(token.value)
 
 

@@ -9,7 +9,7 @@ from desk.report.results.plan import FIRST_ROW, Formula, SheetPlan
 
 __all__ = ["TOLERANCE", "Check", "Checks"]
 
-TOLERANCE = 1e-9
+TOLERANCE = 1e-10
 FIRST_CHECK = FIRST_ROW + 2
 
 

@@ -229,29 +229,28 @@ def plan_provenance(
     )
     plan.widths = {1: 40.0, 2: 90.0}
     plan.headings(["Item", "Value"], left=2)
-    items: list[tuple[str, Any]] = [
+    items: list[tuple[str, str]] = [
         ("Program", f"Gapwright {standing.provenance.program_version}"),
         ("Written at, UTC", written_at.strftime("%Y-%m-%d %H:%M:%S")),
         ("Source file", reading.path.name),
         ("SHA-256 of the source file", reading.sha256),
         ("SHA-256 of the book's contents", standing.provenance.book_digest),
         ("Valuation date", standing.valuation_date.isoformat()),
-        *((f"Valuation: {name}", value) for name, value in standing.provenance.settings),
+        *((f"Valuation: {name.replace('_', ' ')}", value) for name, value in standing.provenance.settings),
     ]
     if simulation is not None:
         items += [
             ("Simulation: SHA-256 of the book's contents", simulation.provenance.book_digest),
             ("Simulation: model", str(simulation.model)),
-            ("Simulation: measure", simulation.measure.value),
-            ("Simulation: paths", simulation.paths),
-            ("Simulation: horizon in years", simulation.horizon_years),
-            ("Simulation: steps a year", simulation.steps_per_year),
             ("Simulation: seed", str(simulation.seed)),
-            *((f"Simulation: {name}", value) for name, value in simulation.provenance.settings),
+            *(
+                (f"Simulation: {name.replace('_', ' ')}", value)
+                for name, value in simulation.provenance.settings
+            ),
             ("Simulation: quantile method", QUANTILE_METHOD),
         ]
     items += [
-        ("Tolerance of the checks", TOLERANCE),
+        ("Tolerance of the checks", f"{TOLERANCE:g}"),
         ("Python", platform.python_version()),
         ("numpy", numpy.__version__),
         ("openpyxl", openpyxl.__version__),
@@ -260,6 +259,5 @@ def plan_provenance(
     ]
     for row, (label, value) in enumerate(items, start=FIRST_ROW):
         plan.put(row, 1, label, "text")
-        form = "tiny" if isinstance(value, float) else "whole" if isinstance(value, int) else "text"
-        plan.put(row, 2, value, "text", form)
+        plan.put(row, 2, value, "text")
     return plan

@@ -314,6 +314,7 @@ def plan_periods(standing: Standing, checks: Checks) -> SheetPlan:
     last = FIRST_ROW + count - 1
     checks.add_column("Years whose flows differ", plan, plan.mark_checks(11, FIRST_ROW, last))
     plan.charts.append((flow_chart(plan, standing), f"A{last + 3}"))
+    plan.page_breaks.append(last + 1)
     return plan
 
 

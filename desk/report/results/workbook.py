@@ -27,7 +27,7 @@ from desk.valuation.records import Standing
 if TYPE_CHECKING:
     from openpyxl import Workbook
 
-__all__ = ["write_report"]
+__all__ = ["plan_sheets", "write_report"]
 
 
 def write_report(
@@ -71,14 +71,14 @@ def write_report(
         raise ValueError("`reading` must have a book")
     report = progress or (lambda _: None)
     report(0.0)
-    plans, names = _plan_sheets(
+    plans, names = plan_sheets(
         reading, reading.book, standing, simulation, written_at=written_at or datetime.now(UTC)
     )
     report(0.1)
     return write_whole(path, lambda target: _write(plans, names, target, report))
 
 
-def _plan_sheets(
+def plan_sheets(
     reading: Reading, book: Book, standing: Standing, simulation: Simulation | None, *, written_at: datetime
 ) -> tuple[list[SheetPlan], dict[str, str]]:
     """All sheets in their order, and the names that the workbook defines."""
