@@ -3,10 +3,11 @@
 from __future__ import annotations
 
 import re
-from collections.abc import Mapping, Sequence
+from collections.abc import Iterable, Mapping, Sequence
 from dataclasses import dataclass
 from datetime import date
 from enum import StrEnum
+from itertools import repeat
 from typing import TypeVar
 
 import numpy as np
@@ -120,10 +121,25 @@ class Cells:
 
     def each(self, flagged: BoolArray, found: str, expected: str, mend: str, *, mild: bool = False) -> None:
         """Add a fault at each flagged cell; ``{}`` in `found` stands for what the cell holds."""
-        severity = Severity.MILD if mild else Severity.GRAVE
-        for entry in np.flatnonzero(flagged).tolist():
-            text = found.replace("{}", self.stated(entry)) if "{}" in found else found
-            self.fault(entry, text, expected, mend, severity=severity)
+        entries = np.flatnonzero(flagged)
+        texts: Iterable[str] = repeat(found, entries.size)
+        if "{}" in found:
+            texts = (found.replace("{}", self.stated(entry)) for entry in entries.tolist())
+        self.each_with(entries, texts, expected, mend, mild=mild)
+
+    def each_with(
+        self, entries: IntArray, found: Iterable[str], expected: str, mend: str, *, mild: bool = False
+    ) -> None:
+        """Add a fault at each entry, each with a text of its own."""
+        self.faults.add_rows(
+            found,
+            expected,
+            mend,
+            sheet=self.sheet.name,
+            rows=self.rows[entries].tolist(),
+            column=-1 if self.column is None else self.column,
+            severity=Severity.MILD if mild else Severity.GRAVE,
+        )
 
     def stated(self, entry: int) -> str:
         """What a cell holds, as a fault quotes it."""
@@ -131,13 +147,20 @@ class Cells:
             return "nothing"
         return self.sheet.data.columns[self.column].stated(int(self.rows[entry]))
 
-    def _odd(self, entry: int, expected: str, required: bool) -> None:
-        """Add the fault of a cell that holds nothing, or an error."""
-        row = int(self.rows[entry])
-        if row in self.broken:
-            self.fault(entry, self.broken[row], expected, "Mend the formula, or write the value itself.")
-        elif required:
-            self.fault(entry, "the cell is empty", expected, f"Write {expected} into it.")
+    def _odd(self, entries: IntArray, expected: str, required: BoolArray) -> None:
+        """Add the faults of cells that hold nothing, or an error."""
+        if self.broken and entries.size:
+            rows = self.rows[entries]
+            wrong = entries[np.isin(rows, list(self.broken))]
+            self.each_with(
+                wrong,
+                [self.broken[row] for row in self.rows[wrong].tolist()],
+                expected,
+                "Mend the formula, or write the value itself.",
+            )
+            entries = np.setdiff1d(entries, wrong, assume_unique=True)
+        empty = entries[required[entries]]
+        self.each_with(empty, repeat("the cell is empty", empty.size), expected, f"Write {expected} into it.")
 
     def _required(self, required: bool | BoolArray) -> BoolArray:
         if self.column is None:
@@ -167,11 +190,8 @@ class Cells:
         parsed = [_plain_number(text) for text in self.texts]
         must = self._required(required)
         blank = self.kinds == Kind.BLANK
-        odd = ~good if self.broken else ~good & (~blank | must)
-        for entry in np.flatnonzero(odd).tolist():
-            if blank[entry]:
-                self._odd(entry, expected, bool(must[entry]))
-                continue
+        self._odd(np.flatnonzero(blank), expected, must)
+        for entry in np.flatnonzero(~good & ~blank).tolist():
             number = parsed[int(self.values[entry])] if self.kinds[entry] == Kind.TEXT else None
             if number is not None:
                 numbers[entry] = number
@@ -197,12 +217,11 @@ class Cells:
         dates[good] = _EPOCH + self.values[good].astype(np.int64)
         if good.all() or self.column is None:
             return dates
-        must = self._required(required)
-        for entry in np.flatnonzero(~good).tolist():
+        blank = self.kinds == Kind.BLANK
+        self._odd(np.flatnonzero(blank), expected, self._required(required))
+        for entry in np.flatnonzero(~good & ~blank).tolist():
             kind = self.kinds[entry]
-            if kind == Kind.BLANK:
-                self._odd(entry, expected, bool(must[entry]))
-            elif kind == Kind.MOMENT:
+            if kind == Kind.MOMENT:
                 days, rest = divmod(float(self.values[entry]), 86_400.0)
                 dates[entry] = _EPOCH + int(days)
                 if rest:
@@ -252,9 +271,7 @@ class Cells:
         is_text = self.kinds == Kind.TEXT
         blank = self.kinds == Kind.BLANK
         spelt = int(np.count_nonzero(~is_text & ~blank))
-        if self.column is not None:
-            for entry in np.flatnonzero(blank).tolist():
-                self._odd(entry, expected, True)
+        self._odd(np.flatnonzero(blank), expected, self._required(True))
         if not spelt:
             code = self.values[is_text].astype(np.int64)
             first = np.full(len(self.texts), count, dtype=np.int64)
@@ -282,16 +299,12 @@ class Cells:
 
     def texts_of(self, expected: str, *, required: bool | BoolArray = True) -> list[str]:
         """The cells as texts, each as it stands; "" where there is none."""
-        must = self._required(required)
-        result = []
-        for entry in range(self.rows.size):
-            if self.kinds[entry] == Kind.BLANK:
-                if self.column is not None:
-                    self._odd(entry, expected, bool(must[entry]))
-                result.append("")
-            else:
-                result.append(self.sheet.data.text(int(self.rows[entry]), self.column or 0))
-        return result
+        blank = self.kinds == Kind.BLANK
+        self._odd(np.flatnonzero(blank), expected, self._required(required))
+        return [
+            "" if is_blank else self.sheet.data.text(row, self.column or 0)
+            for row, is_blank in zip(self.rows.tolist(), blank.tolist(), strict=True)
+        ]
 
     def choices(
         self, choices: type[Choice], expected: str, *, required: bool | BoolArray = True

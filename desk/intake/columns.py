@@ -10,6 +10,7 @@ from collections.abc import Iterable, Sequence
 from dataclasses import dataclass
 from datetime import date, datetime, time, timedelta
 from enum import IntEnum
+from functools import cache
 from itertools import compress
 from typing import TYPE_CHECKING, Any, overload
 
@@ -225,6 +226,7 @@ class ColumnRows(Sequence["list[Cell]"]):
         return [column.cell(row) for column in self._sheet.columns]
 
 
+@cache
 def column_letters(column: int) -> str:
     """Letters of a 0-based column: 0 is A, 26 is AA."""
     letters = ""

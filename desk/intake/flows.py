@@ -127,20 +127,28 @@ def _check_times(
     by_date = ~np.isnat(dates)
     with np.errstate(invalid="ignore"):
         past, far = time <= 0.0, time > _CALENDAR_YEAR
-    for entry in np.flatnonzero(past & by_date).tolist():
-        date_cells.mild(
-            entry,
-            f"the flow of {dates[entry]} is not after the valuation date {valuation_date}",
-            "a date after the valuation date",
-            "It is left out of every figure; correct the date or remove the row.",
-        )
-    for entry in np.flatnonzero(past & ~by_date).tolist():
-        year_cells.mild(
-            entry,
-            f"the flow is due {time[entry]:.6g} years from the valuation date, not after it",
-            "years above 0",
-            "It is left out of every figure; correct the years or remove the row.",
-        )
+    entries = np.flatnonzero(past & by_date)
+    date_cells.each_with(
+        entries,
+        (
+            f"the flow of {day} is not after the valuation date {valuation_date}"
+            for day in np.datetime_as_string(dates[entries]).tolist()
+        ),
+        "a date after the valuation date",
+        "It is left out of every figure; correct the date or remove the row.",
+        mild=True,
+    )
+    entries = np.flatnonzero(past & ~by_date)
+    year_cells.each_with(
+        entries,
+        (
+            f"the flow is due {years:.6g} years from the valuation date, not after it"
+            for years in time[entries].tolist()
+        ),
+        "years above 0",
+        "It is left out of every figure; correct the years or remove the row.",
+        mild=True,
+    )
     for entry in np.flatnonzero(far & by_date).tolist():
         date_cells.mild(
             entry,

@@ -183,7 +183,7 @@ def books(draw: st.DrawFn) -> Book:
     )
 
 
-@settings(max_examples=40, deadline=None, suppress_health_check=list(HealthCheck))
+@settings(max_examples=25, deadline=None, suppress_health_check=list(HealthCheck))
 @given(book=books())
 def test_any_book_comes_back_the_same(book: Book, tmp_path_factory: pytest.TempPathFactory) -> None:
     again = _again(book, tmp_path_factory.mktemp("book"))
