@@ -71,12 +71,16 @@ def _demonstrate() -> int:
     except batch.BadRequest:
         return 2
     os.environ["QT_QPA_PLATFORM"] = "offscreen"
+    # Qt's off-screen platform says of every window that it cannot hint at sizes.
+    os.environ.setdefault("QT_LOGGING_RULES", "default.warning=false")
     try:
         from desk.window.pictures import draw_all
+
+        pictures = draw_all(reading, standing, simulation, folder)
     except ImportError as error:
         print(f"Pictures are left out: {error}")
         return 0
-    for picture in draw_all(reading, standing, simulation, folder):
+    for picture in pictures:
         print(f"A picture is in {picture}")
     return 0
 
