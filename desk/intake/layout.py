@@ -56,6 +56,14 @@ class SheetLayout:
     more: bool = False
     spread: bool = False
 
+    @property
+    def wanted(self) -> tuple[str, ...]:
+        """What must be there, in words."""
+        needed = [heading for heading in self.columns if heading not in self.optional]
+        if "Year" in self.columns:
+            needed.insert(1, "Date or Year")
+        return tuple(needed)
+
 
 _PAIR = ("Item", "Value")
 
@@ -191,7 +199,7 @@ def lay_out(sheet: SourceSheet, layout: SheetLayout, faults: FaultList) -> Table
     data, name = sheet.data, sheet.name
     known = _by_fold(layout.columns)
     heading_row = _find_headings(sheet, known)
-    wanted = ", ".join(heading for heading in layout.columns if heading not in layout.optional)
+    wanted = ", ".join(layout.wanted)
     if heading_row is None:
         empty = not sheet.filled(range(len(data.columns))).any()
         faults.add(

@@ -19,6 +19,8 @@ __all__ = ["Source", "open_source"]
 _MOST_BYTES = 1 << 30
 _SIDE_BY_SIDE_BYTES = 1 << 20
 """From this size on, a second process costs less than it saves."""
+_SPARSE_CELLS = 20_000_000
+"""A sheet that spans more cells than this and is not read has a cell far from the others."""
 _SAVE = "Open it in a spreadsheet program and save it again as .xlsx."
 _WORKBOOK = "a book workbook (.xlsx)"
 _REFUSALS: dict[str, tuple[str, str]] = {
@@ -144,7 +146,7 @@ def _refuse(
         if spans:
             name = max(spans, key=lambda name: spans[name][0] * spans[name][1])
             rows, columns, furthest = spans[name]
-            if rows * columns > 50_000_000:
+            if rows * columns > _SPARSE_CELLS:
                 letters = furthest.rstrip("0123456789")
                 row = int(furthest[len(letters) :]) - 1
                 column = _index(letters)

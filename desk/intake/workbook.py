@@ -104,10 +104,9 @@ def _lay_out_all(sheets: list[SourceSheet], faults: FaultList) -> dict[str, Tabl
             if table is not None:
                 tables[name] = table
         elif layout.needed:
-            columns = ", ".join(heading for heading in layout.columns if heading not in layout.optional)
             faults.add(
                 f'the sheet "{name}" is missing',
-                f'a sheet "{name}" with the columns {columns}',
+                f'a sheet "{name}" with the columns {", ".join(layout.wanted)}',
                 "Add the sheet.",
             )
     return tables

@@ -117,11 +117,12 @@ def _stray(cell: str) -> Make:
         (lambda path: raw_workbook(path, {}), "", "no sheets"),
         (_stray("XFD1048576"), "Liabilities!XFD1048576", "a cell stands at XFD1048576"),
         (_stray("ZZ200000"), "Liabilities!ZZ200000", "more memory than it may"),
+        (_stray("XFD3000"), "Liabilities!XFD3000", "more memory than it may"),
         (_pipe, "", "no file"),
     ],
     ids=[
         *("zero bytes", "noise", "text", "folder", "missing", "cut", "spoilt", "locked", "encrypted", "bomb"),
-        *("entities", "hidden entities", "no sheets", "stray corner", "stray wide", "pipe"),
+        *("entities", "hidden entities", "no sheets", "stray corner", "stray wide", "stray near", "pipe"),
     ],
 )
 def test_what_is_no_workbook_gives_one_clear_fault(
@@ -165,6 +166,12 @@ def test_a_reading_that_takes_too_long_is_stopped(tmp_path: Path) -> None:
     assert answer.refused == "time"
     (fault,) = read_workbook(path, limits=Limits(seconds=0.0)).faults
     assert "took too long" in fault.found
+
+
+def test_a_reader_that_breaks_is_said_to(tmp_path: Path) -> None:
+    (answer,) = ask(("no such command",), save(sound_sheets(), tmp_path / "book.xlsx"), Limits())
+    assert answer.refused == "crash"
+    assert "no such command" in answer.detail
 
 
 class _Stop(Exception):
