@@ -52,7 +52,7 @@ class Menus:
     open, again, save, save_as, report, quit, undo, redo, copy : QAction
     themes : dict of str to QAction
     stations : dict of str to QAction
-    recent, demos : QMenu
+    recent, demos, help : QMenu
     """
 
     def __init__(
@@ -156,7 +156,7 @@ class Menus:
             self.themes[mode] = action
 
     def _make_help_menu(self, acts: Acts) -> None:
-        menu = self._window.menuBar().addMenu("&Help")
+        self.help = menu = self._window.menuBar().addMenu("&Help")
         self._action(menu, "&What this program does", acts.show_help, _Keys.HelpContents)
         self._action(menu, "&Keyboard", acts.show_keys)
         menu.addSeparator()

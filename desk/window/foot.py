@@ -87,7 +87,7 @@ class Foot(QWidget):
         self._back = QTimer(self)
         self._back.setSingleShot(True)
         self._back.setInterval(_MESSAGE_MS)
-        self._back.timeout.connect(self._show_caution)
+        self._back.timeout.connect(self.show_caution)
         jobs.started.connect(self._on_started)
         jobs.progressed.connect(self._on_progressed)
         jobs.ended.connect(self._on_ended)
@@ -135,7 +135,8 @@ class Foot(QWidget):
         label.style().unpolish(label)
         label.style().polish(label)
 
-    def _show_caution(self) -> None:
+    def show_caution(self) -> None:
+        """Show the caution in the place of a message."""
         self._message.setText(CAUTION)
         self._message.setToolTip(CAUTION)
         self._look(self._message, "soft")

@@ -98,7 +98,7 @@ def figures_of(standing: Standing | None, currency: str = "") -> tuple[Figure, .
     assets, asset_unit = _money(sides[0], currency, scale, digits)
     owed, owed_unit = _money(sides[1], currency, scale, digits)
     surplus, surplus_unit = _money(standing.surplus, currency, scale, digits)
-    dv01, dv01_unit = _money(standing.dv01_gap, currency, *_shared_scale((standing.dv01_gap,)))
+    dv01, dv01_unit = _money(standing.dv01_gap, currency, numbers.scale_for(standing.dv01_gap), 2)
     ratio = standing.funding_ratio
     gap = standing.duration_gap
     return (
@@ -116,9 +116,7 @@ def figures_of(standing: Standing | None, currency: str = "") -> tuple[Figure, .
             "Surplus",
             surplus,
             surplus_unit,
-            _sign_note(
-                standing.surplus, "a deficit", "neither surplus nor deficit", "assets exceed liabilities"
-            ),
+            _sign_note(standing.surplus, "in deficit", "in balance", "in surplus"),
             "surplus",
         ),
         Figure(
@@ -126,14 +124,14 @@ def figures_of(standing: Standing | None, currency: str = "") -> tuple[Figure, .
             "Funding ratio",
             numbers.number(100 * ratio, 1) if math.isfinite(ratio) else _UNKNOWN,
             "%",
-            "assets ÷ liabilities" if math.isfinite(ratio) else "no liabilities",
+            "of liabilities" if math.isfinite(ratio) else "no liabilities",
         ),
         Figure(
             "duration_gap",
             "Duration gap",
             numbers.years(gap) if math.isfinite(gap) else _UNKNOWN,
             "years",
-            _sign_note(gap, "assets are shorter", "assets match", "assets are longer"),
+            _sign_note(gap, "assets shorter", "matched", "assets longer"),
         ),
         Figure(
             "dv01_gap",
@@ -142,9 +140,9 @@ def figures_of(standing: Standing | None, currency: str = "") -> tuple[Figure, .
             f"{dv01_unit} a bp",
             _sign_note(
                 standing.dv01_gap,
-                "surplus rises with rates",
-                "surplus stands still",
-                "surplus falls as rates rise",
+                "surplus rises with rates up",
+                "surplus unmoved",
+                "surplus falls with rates up",
             ),
         ),
     )
@@ -354,7 +352,7 @@ class Headline(QWidget):
             "could not be valued": f"Could not be valued: {document.standing_failure}",
             "being valued": "Being valued…",
             "out of date": "Out of date: being valued again…" if document.is_valuing else "Out of date",
-        }.get(state, "Valued on the book as it stands" if book is not None else "")
+        }.get(state, "Figures are up to date" if book is not None else "")
         self._state.set_text(told)
         keep_look(self._state, "grave" if document.standing_failure else "mild" if state else "soft")
         self._state.style().unpolish(self._state)

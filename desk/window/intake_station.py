@@ -199,7 +199,7 @@ class IntakeStation(Station):
         if bool(faults) != self._has_faults:
             # Without faults there is nothing to read below: the sheet gets the room.
             self._has_faults = bool(faults)
-            self.main.setSizes([66, 34] if faults else [86, 14])
+            self.main.setSizes([660, 340] if faults else [860, 140])
 
     def _show_book(self) -> None:
         book = self.document.book

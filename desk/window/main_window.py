@@ -359,8 +359,12 @@ class MainWindow(QMainWindow):
         self.jobs.shutdown()
         event.accept()
 
-    def _close_now(self) -> None:
+    def discard_changes(self) -> None:
+        """Close without asking about unsaved changes from now on."""
         self._may_close = True
+
+    def _close_now(self) -> None:
+        self.discard_changes()
         self.close()
 
     def dragEnterEvent(self, event: QDragEnterEvent) -> None:

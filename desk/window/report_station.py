@@ -160,7 +160,7 @@ class ReportStation(Station):
         self.set_pictures(self.sheets, self.preview)
         self.pictures.setStretchFactor(0, 0)
         self.pictures.setStretchFactor(1, 1)
-        self.pictures.setSizes([260, 740])
+        self.pictures.setSizes([290, 710])
         self.runs = Table(
             _RUN_COLUMNS,
             theme_switch,

@@ -7,12 +7,15 @@ import os
 os.environ.setdefault("QT_QPA_PLATFORM", "offscreen")
 
 from collections.abc import Iterator
+from pathlib import Path
 
 import pytest
 from PySide6.QtCore import QLocale
 from PySide6.QtWidgets import QApplication
+from pytestqt.qtbot import QtBot
 
 from desk.window.theme import ThemeSwitch
+from tests.window.frame import Frame
 
 
 @pytest.fixture(autouse=True)
@@ -31,3 +34,25 @@ def theme_switch(qapp: QApplication) -> Iterator[ThemeSwitch]:
     yield switch
     switch.set_mode("light")
     switch.deleteLater()
+
+
+@pytest.fixture
+def frame(qtbot: QtBot, tmp_path: Path, theme_switch: ThemeSwitch) -> Iterator[Frame]:
+    """A window with stand-ins for dialogs, tasks and stations."""
+    made = Frame(tmp_path, theme_switch)
+    qtbot.addWidget(made.window, before_close_func=lambda _: made.document.stop())
+    made.window.show()
+    yield made
+    made.read.let_go.set()
+    made.save.let_go.set()
+    made.window.discard_changes()
+    made.window.close()
+    made.jobs.shutdown()
+
+
+@pytest.fixture
+def opened(frame: Frame, qtbot: QtBot) -> Frame:
+    """With a book open and valued."""
+    frame.window.files.open(frame.file())
+    qtbot.waitUntil(lambda: frame.document.standing is not None and not frame.jobs.running)
+    return frame

@@ -1,0 +1,108 @@
+"""The key figures: what they say, in what unit, and when they are not to be relied on."""
+
+from __future__ import annotations
+
+import math
+from dataclasses import replace
+
+import pytest
+from PySide6.QtCore import Qt
+from PySide6.QtTest import QTest
+from pytestqt.qtbot import QtBot
+
+from desk import tasks
+from desk.book import Book
+from desk.valuation.records import Standing
+from desk.window.headline import Figure, figures_of
+from tests.window.frame import Frame, a_book
+
+
+@pytest.fixture(scope="module")
+def standing() -> Standing:
+    return tasks.value(a_book())
+
+
+def _by_key(standing: Standing | None) -> dict[str, Figure]:
+    return {figure.key: figure for figure in figures_of(standing, "EUR")}
+
+
+def _resized(standing: Standing, assets: float, owed: float) -> Standing:
+    return replace(
+        standing,
+        assets=replace(standing.assets, present_value=assets),
+        liabilities=replace(standing.liabilities, present_value=owed),
+        surplus=assets - owed,
+    )
+
+
+def test_amounts_share_a_unit_in_which_they_add_up(standing: Standing) -> None:
+    figures = _by_key(_resized(standing, 2_130_295_866.0, 2_315_538_985.0))
+    shown = [(figures[key].value, figures[key].unit) for key in ("assets", "liabilities", "surplus")]
+    assert shown == [
+        ("2,130.3", "EUR million"),
+        ("2,315.5", "EUR million"),
+        ("−185.2", "EUR million"),
+    ]
+    figures = _by_key(_resized(standing, 51_200_000.0, 50_000_000.0))
+    assert (figures["surplus"].value, figures["surplus"].unit) == ("1.20", "EUR million")
+
+
+def test_signs_are_said_in_words(standing: Standing) -> None:
+    figures = _by_key(replace(standing, surplus=-1.0, duration_gap=-3.0, dv01_gap=-2.0))
+    assert figures["surplus"].note == "in deficit"
+    assert figures["duration_gap"].note == "assets shorter"
+    assert figures["dv01_gap"].note == "surplus rises with rates up"
+    figures = _by_key(replace(standing, surplus=1.0, duration_gap=3.0, dv01_gap=2.0))
+    assert figures["surplus"].note == "in surplus"
+    assert figures["dv01_gap"].note == "surplus falls with rates up"
+
+
+def test_what_has_no_meaning_is_not_available(standing: Standing) -> None:
+    figures = _by_key(replace(standing, funding_ratio=math.nan, duration_gap=math.nan))
+    assert figures["funding_ratio"].value == "n/a"
+    assert figures["funding_ratio"].note == "no liabilities"
+    assert figures["duration_gap"].value == "n/a"
+    assert {figure.value for figure in figures_of(None, "EUR")} == {"–"}
+
+
+def test_the_headline_shows_the_open_book(opened: Frame) -> None:
+    headline = opened.window.headline
+    assert headline.state == ""
+    ratio = next(button for button in headline.buttons if button.figure.key == "funding_ratio")
+    standing = opened.document.standing
+    assert standing is not None
+    assert ratio.figure.value == f"{100 * standing.funding_ratio:.1f}"
+    assert ratio.accessibleName().startswith("Funding ratio: ")
+    assert ratio.accessibleName().endswith("%, of liabilities")
+
+
+def test_a_figure_of_a_former_book_says_that_it_is(opened: Frame, qtbot: QtBot) -> None:
+    headline = opened.window.headline
+    opened.edit()
+    assert headline.state == "out of date"
+    assert {button.note for button in headline.buttons} == {"out of date"}
+    assert "out of date" in headline.buttons[0].accessibleName()
+    qtbot.waitUntil(lambda: headline.state == "")
+    assert headline.buttons[2].note == "in deficit"
+
+
+def test_a_book_that_cannot_be_valued_says_so(opened: Frame, qtbot: QtBot) -> None:
+    def fail(book: Book, **_: object) -> Standing:
+        raise ValueError("no curve")
+
+    opened.document._value = fail
+    opened.edit()
+    qtbot.waitUntil(lambda: opened.document.standing_failure == "no curve")
+    assert opened.window.headline.state == "could not be valued"
+
+
+def test_return_opens_a_figure(opened: Frame, qtbot: QtBot) -> None:
+    with qtbot.waitSignal(opened.window.headline.opened) as caught:
+        QTest.keyClick(opened.window.headline.buttons[3], Qt.Key.Key_Return)
+    assert caught.args == ["funding_ratio"]
+
+
+def test_no_figure_is_cut_at_the_least_width(opened: Frame) -> None:
+    opened.window.resize(1280, 720)
+    for button in opened.window.headline.buttons:
+        assert button.width() >= button.minimumSizeHint().width()
