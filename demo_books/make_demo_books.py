@@ -362,10 +362,10 @@ def small_endowment() -> Book:
             ),
             rates_model=RatesModel(
                 ModelName.CIR,
-                mean_reversion=0.1,
+                mean_reversion=0.06,
                 volatility=0.05,
-                long_run_rate=0.052,
-                starting_rate=0.0375,
+                long_run_rate=0.061,
+                starting_rate=0.037,
                 risk_price=-0.1,
             ),
             risky_assets=RiskyAssets(
@@ -381,7 +381,7 @@ def small_endowment() -> Book:
             history=history(13, start=0.003, long_run=0.03, end=0.0385, volatility=0.0085),
         )
 
-    return scaled(make, 1.02)
+    return scaled(make, 1.04)
 
 
 BOOKS: dict[str, Callable[[], Book]] = {
