@@ -51,9 +51,9 @@ def test_recent_books_are_offered_and_follow(
 ) -> None:
     welcome = Welcome(recent, theme_switch)
     qtbot.addWidget(welcome)
-    assert len(welcome.recent_buttons) == 0
+    assert [button.text() for button in welcome.recent_buttons] == []
     recent.add(tmp_path / "mine.xlsx")
-    buttons = list(welcome.recent_buttons)
+    buttons = welcome.recent_buttons
     assert [button.text() for button in buttons] == ["mine.xlsx"]
     with qtbot.waitSignal(welcome.chosen) as caught:
         buttons[0].click()

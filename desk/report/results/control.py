@@ -91,7 +91,7 @@ def plan_summary(
     for part in textwrap.wrap(CAUTION, NOTE_WIDTH - 10):
         plan.put(row, 1, part, "caution")
         row += 1
-    row = _how_to_read(plan, row + 1, simulation, sheets)
+    row = _how_to_read(plan, row + 1, reading, simulation, sheets)
     row = _signatures(plan, row + 1)
     _pictures(plan, standing, charts_from)
     return plan
@@ -132,7 +132,11 @@ def _headline(plan: SheetPlan, standing: Standing, recomputed: dict[str, str], c
 
 
 def _how_to_read(
-    plan: SheetPlan, row: int, simulation: Simulation | None, sheets: dict[Side, FlowSheet]
+    plan: SheetPlan,
+    row: int,
+    reading: Reading,
+    simulation: Simulation | None,
+    sheets: dict[Side, FlowSheet],
 ) -> int:
     """Notes on colours, signs and what is not recomputed; returns the row after them."""
     plan.put(row, 1, "How to read this workbook", "heading_left")
@@ -149,7 +153,11 @@ def _how_to_read(
         "Sheets are protected without a password against slips of the hand; inputs are open.",
     ]
     if simulation is None:
-        notes.append("The book has no rates model, so nothing was simulated: those sheets are left out.")
+        has_model = reading.book is not None and reading.book.rates_model is not None
+        why = (
+            "Nothing was simulated" if has_model else "The book has no rates model, so nothing was simulated"
+        )
+        notes.append(f"{why}: those sheets are left out.")
     else:
         notes.append(f"Simulated: {run_label(simulation)}. {QUANTILE_METHOD}")
     notes += [
