@@ -22,7 +22,17 @@ from PySide6.QtWidgets import (
 from desk.window import numbers
 from desk.window.theme import GAP, HALF, STEP, WIDE, keep_look, soft_font
 
-__all__ = ["Choice", "ChoiceField", "DateField", "Field", "Form", "IntegerField", "NumberField", "TextField"]
+__all__ = [
+    "Choice",
+    "ChoiceField",
+    "Combo",
+    "DateField",
+    "Field",
+    "Form",
+    "IntegerField",
+    "NumberField",
+    "TextField",
+]
 
 FORM_WIDTH = 280
 """Of the panel that holds a form [px]."""
@@ -41,7 +51,7 @@ class _Line(QLineEdit):
         super().keyPressEvent(event)
 
 
-class _Combo(QComboBox):
+class Combo(QComboBox):
     """A choice that the wheel leaves alone on its way down the page."""
 
     def wheelEvent(self, event: QWheelEvent) -> None:
@@ -336,7 +346,7 @@ class ChoiceField(Field):
     """One of a few values; what the chosen one means stands beneath."""
 
     def __init__(self, label: str, choices: Sequence[Choice], *, hint: str = "") -> None:
-        self.combo = _Combo()
+        self.combo = Combo()
         super().__init__(label, self.combo)
         self._general = hint
         self._value: Any = None
