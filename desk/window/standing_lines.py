@@ -10,7 +10,6 @@ from PySide6.QtCore import Qt, Signal
 from PySide6.QtGui import QKeySequence, QShortcut
 from PySide6.QtWidgets import (
     QAbstractItemView,
-    QComboBox,
     QHBoxLayout,
     QLabel,
     QLineEdit,
@@ -23,6 +22,7 @@ from PySide6.QtWidgets import (
 from desk.book import Side
 from desk.valuation.records import FlowDetail, LineStanding, Measures, Standing
 from desk.window import numbers
+from desk.window.fields import Combo
 from desk.window.standing_wording import amount
 from desk.window.tables import Column, Table
 from desk.window.theme import GAP, HALF, ThemeSwitch, keep_look
@@ -108,7 +108,7 @@ class LinesPage(QWidget):
     Attributes
     ----------
     table, totals, flows : Table
-    shown_sides : QComboBox
+    shown_sides : Combo
         All lines, or those of one side.
     finder : QLineEdit
         Shows the lines whose name holds its text.
@@ -139,7 +139,7 @@ class LinesPage(QWidget):
         self.flows = Table(
             _flow_columns(""), theme_switch, name="Flows of a line", empty_text="This line has no flows."
         )
-        self.shown_sides = QComboBox()
+        self.shown_sides = Combo()
         self.shown_sides.addItems(["All lines", "Assets", "Liabilities"])
         self.shown_sides.setAccessibleName("Side shown")
         self.finder = QLineEdit()
@@ -175,7 +175,6 @@ class LinesPage(QWidget):
         never = Qt.ScrollBarPolicy.ScrollBarAlwaysOff
         self.totals.setHorizontalScrollBarPolicy(never)
         self.totals.setVerticalScrollBarPolicy(never)
-        self.table.setCornerWidget(QWidget())
         self.table.setSelectionBehavior(QAbstractItemView.SelectionBehavior.SelectRows)
         return page
 
