@@ -92,5 +92,7 @@ def _pieces(value: Any) -> Iterator[bytes]:
         yield f"tuple {len(value)}".encode()
         for entry in value:
             yield from _pieces(entry)
+    elif isinstance(value, (int, float)) and not isinstance(value, bool) and float(value) == value:
+        yield repr(float(value)).encode()  # 5 and 5.0 are equal, and so are books that hold them
     else:
         yield repr(value).encode()

@@ -17,7 +17,7 @@ class Severity(StrEnum):
     """The book cannot be used until it is mended."""
 
 
-@dataclass(frozen=True)
+@dataclass(frozen=True, slots=True)
 class Fault:
     """One thing wrong with one cell or row of a source.
 

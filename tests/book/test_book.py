@@ -52,6 +52,15 @@ def test_any_change_changes_the_digest(changed: object) -> None:
     assert other.digest != _book().digest
 
 
+def test_a_whole_number_and_the_same_float_give_one_digest() -> None:
+    books = [
+        replace(_book(), holdings=(Holding("Fund", HoldingKind.FUND, market_value=value, units=value),))
+        for value in (5, 5.0)
+    ]
+    assert books[0] == books[1]
+    assert books[0].digest == books[1].digest
+
+
 def test_flows_are_lines_in_order_of_appearance() -> None:
     table = FlowTable.build(["b", "a", "b"], [0.0, -1.0, 2.0], [1.0, 2.0, 3.0])
     assert table.line_names == ("b", "a")
