@@ -22,7 +22,7 @@ def check_rates(
         value = float(values[entry])
         cells.fault(
             entry,
-            f"{what} is {value:.12g}, which is {value:.6g} times the whole a year",
+            f"{what} is {value:.12g}, which is {value * 100:.6g} % a year",
             f"{what} as a fraction or in a cell formatted as per cent",
             f"Write {value:.12g} % or {value / 100:.12g}.",
         )

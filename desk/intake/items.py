@@ -134,7 +134,7 @@ class ItemSheet:
         if value is None:
             return instead
         if not value.is_integer() or not least <= value <= most:
-            self._cells(item).fault(0, f"the {item.lower()} is {value:.12g}", expected, "Correct the figure.")
+            self._cells(item).fault(0, f"{item} is {value:.12g}", expected, "Correct the figure.")
             return instead
         return int(value)
 
@@ -275,7 +275,7 @@ def read_rates_model(sheet: ItemSheet) -> RatesModel | None:
             if value is not None and value < 0.0:
                 sheet.fault(
                     item,
-                    f"the {item.lower()} is {value:.12g}",
+                    f"{item} is {value:.12g}",
                     f"a rate of at least 0 for the model {name}",
                     "Correct the figure.",
                 )

@@ -40,7 +40,7 @@ def plan_basis(book: Book, curve_plan: SheetPlan, checks: Checks) -> SheetPlan:
         "Rates inside the program are continuously compounded.",
         title_rows="1:3",
     )
-    plan.widths = {1: 27.0, 2: 17.0, 3: 17.0, 4: 3.0} | dict.fromkeys(range(5, 13), 12.5)
+    plan.widths = {1: 27.0, 2: 38.0, 3: 17.0, 4: 3.0} | dict.fromkeys(range(5, 13), 12.5)
     plan.headings(["Item", "Value", "Unit"], left=1)
     plan.put(HEADING_ROW, 3, "Unit", "heading_unit")
     periods = ""
