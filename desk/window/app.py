@@ -6,8 +6,10 @@ comes up on the welcome, or on a book; then, while the reader looks at it, the s
 
 from __future__ import annotations
 
+import gc
 import logging
 import sys
+from functools import partial
 from pathlib import Path
 
 from PySide6 import __version__ as pyside_version
@@ -21,6 +23,7 @@ __all__ = ["lost_references", "run"]
 _log = logging.getLogger(__name__)
 
 _CALLS = 200
+_SWITCH_SECONDS = 0.001
 
 
 def lost_references() -> int:
@@ -99,7 +102,15 @@ def run(path: Path | None) -> int:
     window.show()
     if path is not None:
         window.files.open(path)
-    QTimer.singleShot(0, window.warm_up)
+    # A thread that computes in Python hands over after this long: the window repaints in many small steps.
+    sys.setswitchinterval(_SWITCH_SECONDS)
+
+    def warm() -> None:
+        # What is loaded by now stays: the collector need not look through it again and again.
+        gc.freeze()
+        window.make_ahead()
+
+    QTimer.singleShot(0, partial(window.warm_up, warm))
     try:
         return app.exec()
     finally:

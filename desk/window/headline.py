@@ -140,9 +140,9 @@ def figures_of(standing: Standing | None, currency: str = "") -> tuple[Figure, .
             f"{dv01_unit} a bp",
             _sign_note(
                 standing.dv01_gap,
-                "surplus rises with rates up",
-                "surplus unmoved",
-                "surplus falls with rates up",
+                "gains when rates rise",
+                "unmoved by rates",
+                "loses when rates rise",
             ),
         ),
     )

@@ -85,4 +85,4 @@ class HelpPage(QDialog):
         rows.addWidget(self.text)
         rows.addWidget(buttons)
         line = QFontMetrics(self.font())
-        self.resize(90 * line.averageCharWidth(), 26 * line.lineSpacing())
+        self.resize(90 * line.averageCharWidth(), 32 * line.lineSpacing())

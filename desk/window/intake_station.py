@@ -18,7 +18,7 @@ from desk.window.jobs import Jobs
 from desk.window.sheet_view import EMPTY, SheetView, cell_place
 from desk.window.station import Station
 from desk.window.tables import Table
-from desk.window.theme import GAP, ThemeSwitch
+from desk.window.theme import GAP, HALF, ThemeSwitch
 
 __all__ = ["IntakeStation", "marks_of"]
 
@@ -65,6 +65,8 @@ class IntakeStation(Station):
         One tab a sheet.
     sheet : SheetView
     faults : Table
+    whole_fault : QLabel
+        The fault that has the keyboard, written out.
     """
 
     key = "intake"
@@ -105,7 +107,19 @@ class IntakeStation(Station):
         self.faults.fit_columns()
         self.faults.activated_row.connect(self.go_to_fault)
         self.faults.message.connect(self.message)
-        self.set_table(self.faults, share=34)
+        self.faults.current_row_changed.connect(self._tell_fault)
+        self.whole_fault = QLabel()
+        self.whole_fault.setWordWrap(True)
+        self.whole_fault.setTextFormat(Qt.TextFormat.PlainText)
+        self.whole_fault.setTextInteractionFlags(Qt.TextInteractionFlag.TextSelectableByMouse)
+        self.whole_fault.setContentsMargins(GAP, HALF, GAP, HALF)
+        lower = QWidget()
+        below = QVBoxLayout(lower)
+        below.setContentsMargins(0, 0, 0, 0)
+        below.setSpacing(0)
+        below.addWidget(self.faults, 1)
+        below.addWidget(self.whole_fault)
+        self.set_table(lower, share=34)
         self._make_form()
 
     def _make_form(self) -> None:
@@ -196,6 +210,7 @@ class IntakeStation(Station):
             },
             marks=marks,
         )
+        self._tell_fault(self.faults.current_source_row())
         if bool(faults) != self._has_faults:
             # Without faults there is nothing to read below: the sheet gets the room.
             self._has_faults = bool(faults)
@@ -265,6 +280,13 @@ class IntakeStation(Station):
         cell = cell_place(fault.cell) or (reading.sheets[sheet].heading_row or 0, 0)
         if self.sheet.go_to(*cell):
             self.sheet.setFocus(Qt.FocusReason.OtherFocusReason)
+
+    def _tell_fault(self, place: int) -> None:
+        """Write out the fault that has the keyboard: its cells may be too narrow for it."""
+        faults = self._reading.faults if self._reading is not None else ()
+        fault = faults[place] if 0 <= place < len(faults) else None
+        self.whole_fault.setText(str(fault) if fault is not None else "")
+        self.whole_fault.setVisible(fault is not None)
 
     def _open_folder(self) -> None:
         if self._reading is not None:

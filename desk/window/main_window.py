@@ -7,7 +7,7 @@ from collections.abc import Callable, Sequence
 from pathlib import Path
 from typing import Protocol, runtime_checkable
 
-from PySide6.QtCore import QEvent, QObject, QSize, Qt
+from PySide6.QtCore import QEvent, QObject, QSize, Qt, QTimer
 from PySide6.QtGui import QCloseEvent, QDragEnterEvent, QDropEvent, QGuiApplication, QKeySequence, QShortcut
 from PySide6.QtWidgets import QApplication, QHBoxLayout, QMainWindow, QStackedWidget, QVBoxLayout, QWidget
 
@@ -33,6 +33,7 @@ __all__ = ["MainWindow", "RemembersSettings"]
 
 _SIZE = QSize(1280, 800)
 _LEAST = QSize(960, 600)
+_BETWEEN_STATIONS_MS = 250
 
 
 @runtime_checkable
@@ -76,7 +77,7 @@ class MainWindow(QMainWindow):
         self._entries = {entry.key: entry for entry in stations}
         self._stations: dict[str, Station] = {}
         self._shown = ""
-        self._may_close = False
+        self._may_close = self._is_closing = False
         self.recent = RecentBooks(settings, jobs, self)
         self.files = files(document, jobs, settings, self.recent, dialogs(self), self)
         self._build_parts(theme_switch)
@@ -197,8 +198,14 @@ class MainWindow(QMainWindow):
         if self.document.book is not None:
             self.document.run_simulation()
 
-    def warm_up(self) -> None:
-        """Load in the background what the stations need, so that the first visit to one is quick."""
+    def warm_up(self, then: Callable[[], None] | None = None) -> None:
+        """Load in the background what the stations need, so that the first visit to one is quick.
+
+        Parameters
+        ----------
+        then : callable, optional
+            Called when it is done.
+        """
         entries = tuple(self._entries.values())
 
         def work(*, progress: Callable[[float], None], cancel: object) -> None:
@@ -207,7 +214,20 @@ class MainWindow(QMainWindow):
                 entry.load()
                 progress((place + 1) / len(entries))
 
-        self.jobs.start("Getting the stations ready", work)
+        def loaded(_: None) -> None:
+            if then is not None:
+                then()
+
+        self.jobs.start("Getting the stations ready", work, on_done=loaded)
+
+    def make_ahead(self) -> None:
+        """Make the stations that were not visited yet, one at a time, while nothing runs."""
+        missing = next((key for key in self._entries if key not in self._stations), None)
+        if missing is None or self._is_closing:
+            return
+        if not self.jobs.running:
+            self.station(missing)
+        QTimer.singleShot(_BETWEEN_STATIONS_MS, self, self.make_ahead)
 
     def show_station(self, key: str) -> None:
         """Show a station; nothing happens for one this version does not have."""
@@ -354,6 +374,7 @@ class MainWindow(QMainWindow):
             return
         self._settings.geometry = self.saveGeometry()
         self._settings.flush()
+        self._is_closing = True
         self.hide()
         self.document.stop()
         self.jobs.shutdown()

@@ -4,9 +4,9 @@ from __future__ import annotations
 
 from collections.abc import Sequence
 
-from PySide6.QtCore import QRectF, Qt, Signal
+from PySide6.QtCore import QRectF, QSize, Qt, Signal
 from PySide6.QtGui import QColor, QFont, QFontMetricsF, QKeyEvent, QPainter, QPaintEvent, QPen
-from PySide6.QtWidgets import QHBoxLayout, QSizePolicy, QToolButton, QVBoxLayout, QWidget
+from PySide6.QtWidgets import QHBoxLayout, QScrollArea, QSizePolicy, QToolButton, QVBoxLayout, QWidget
 
 from desk.report.results.look import ASSETS, INK, LIABILITIES, QUIET
 from desk.report.results.plan import PlannedCell, SheetPlan
@@ -28,6 +28,9 @@ _GROUNDS = {
 }
 _INKS = {"note": QUIET, "caution": LIABILITIES, "input": "0000FF"}
 _LINE = QColor("#C9C6BC")
+_SMALL = QSize(280, 200)
+_LARGE = QSize(1263, 893)
+"""A page at one and a half times its size on paper, at 72 dots an inch."""
 _LEFT = ("title", "note", "caution", "heading_left", "sign", "unit", "heading_unit")
 
 
@@ -45,7 +48,7 @@ class _Page(QWidget):
         self.empty_text = ""
         self.setFocusPolicy(Qt.FocusPolicy.StrongFocus)
         self.setSizePolicy(QSizePolicy.Policy.Expanding, QSizePolicy.Policy.Expanding)
-        self.setMinimumSize(280, 200)
+        self.setMinimumSize(_SMALL)
 
     def keyPressEvent(self, event: QKeyEvent) -> None:
         """Turn the page."""
@@ -206,7 +209,7 @@ class PagePreview(QWidget):
 
     Attributes
     ----------
-    back, on : QToolButton
+    back, on, larger : QToolButton
     """
 
     def __init__(self, theme_switch: ThemeSwitch, parent: QWidget | None = None) -> None:
@@ -225,17 +228,27 @@ class PagePreview(QWidget):
             button.setAccessibleName(name)
             button.setToolTip(name)
             button.clicked.connect(lambda _=False, step=step: self.turn(step))
+        self.larger = QToolButton()
+        self.larger.setText("Larger")
+        self.larger.setCheckable(True)
+        self.larger.setToolTip("Show the page larger than there is room for, to be scrolled")
+        self.larger.toggled.connect(self._on_larger)
+        self._scroll = QScrollArea()
+        self._scroll.setWidget(self._page)
+        self._scroll.setWidgetResizable(True)
+        self._scroll.setFocusPolicy(Qt.FocusPolicy.NoFocus)
         row = QHBoxLayout()
         row.setContentsMargins(0, 0, 0, 0)
         row.setSpacing(HALF)
         row.addWidget(self.label, 1)
+        row.addWidget(self.larger)
         row.addWidget(self.back)
         row.addWidget(self.on)
         column = QVBoxLayout(self)
         column.setContentsMargins(GAP, 0, GAP, HALF)
         column.setSpacing(HALF)
         column.addLayout(row)
-        column.addWidget(self._page, 1)
+        column.addWidget(self._scroll, 1)
         theme_switch.changed.connect(lambda _: self._page.update())
         self.show_plans((), "", "")
 
@@ -276,6 +289,9 @@ class PagePreview(QWidget):
         sheet = self._page.sheet
         if sheet is not None:
             self.show_sheet(sheet.plan.name, self._page.page + steps)
+
+    def _on_larger(self, larger: bool) -> None:
+        self._page.setMinimumSize(_LARGE if larger else _SMALL)
 
     def _tell(self) -> None:
         name, page, pages = self.shown

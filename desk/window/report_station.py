@@ -31,7 +31,7 @@ from desk.window.page_preview import PagePreview
 from desk.window.settings import Settings
 from desk.window.station import Station
 from desk.window.tables import Table
-from desk.window.theme import ThemeSwitch
+from desk.window.theme import GAP, ThemeSwitch
 
 __all__ = ["ReportStation", "WrittenReport"]
 
@@ -264,6 +264,8 @@ class ReportStation(Station):
                 "pages": [self.preview.page_count(plan.name) for plan in plans],
             }
         )
+        self.sheets.fit_columns()
+        self.sheets.setMaximumWidth(self.sheets.horizontalHeader().length() + 2 * GAP)
         shown = self.preview.shown[0]
         names = [plan.name for plan in plans]
         if shown in names:

@@ -51,10 +51,10 @@ def test_signs_are_said_in_words(standing: Standing) -> None:
     figures = _by_key(replace(standing, surplus=-1.0, duration_gap=-3.0, dv01_gap=-2.0))
     assert figures["surplus"].note == "in deficit"
     assert figures["duration_gap"].note == "assets shorter"
-    assert figures["dv01_gap"].note == "surplus rises with rates up"
+    assert figures["dv01_gap"].note == "gains when rates rise"
     figures = _by_key(replace(standing, surplus=1.0, duration_gap=3.0, dv01_gap=2.0))
     assert figures["surplus"].note == "in surplus"
-    assert figures["dv01_gap"].note == "surplus falls with rates up"
+    assert figures["dv01_gap"].note == "loses when rates rise"
 
 
 def test_what_has_no_meaning_is_not_available(standing: Standing) -> None:

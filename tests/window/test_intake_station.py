@@ -59,6 +59,7 @@ def test_a_fault_leads_to_its_cell(station: IntakeStation, qtbot: QtBot) -> None
     index = station.sheet.currentIndex()
     assert station.tabs.currentIndex() == 1
     assert (index.row(), index.column()) == (2, 2)
+    assert station.whole_fault.text() == str(GRAVE)
     assert "the text “many”" in station.sheet.sheet_model.data(index, Qt.ItemDataRole.ToolTipRole)
 
 

@@ -243,9 +243,12 @@ def test_everything_that_takes_the_keyboard_has_a_name(opened: Frame) -> None:
                 assert name, f"{type(widget).__name__} in {type(part).__name__} has no name"
 
 
-def test_the_stations_libraries_load_in_the_background(frame: Frame, qtbot: QtBot) -> None:
-    frame.window.warm_up()
-    titles = [job.title for job in frame.jobs.running]
-    assert "Getting the stations ready" in titles
-    qtbot.waitUntil(lambda: not frame.jobs.running)
+def test_the_stations_are_made_ready_in_the_background(frame: Frame, qtbot: QtBot) -> None:
+    done: list[bool] = []
+    frame.window.warm_up(lambda: done.append(True))
+    assert "Getting the stations ready" in [job.title for job in frame.jobs.running]
+    qtbot.waitUntil(lambda: done == [True])
     assert frame.window._stations == {}
+    frame.window.make_ahead()
+    qtbot.waitUntil(lambda: set(frame.window._stations) == {"intake", "standing"})
+    assert frame.window.shown == "", "nothing is shown unasked"
