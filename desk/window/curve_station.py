@@ -13,95 +13,21 @@ from PySide6.QtWidgets import QHBoxLayout, QLabel, QPushButton, QVBoxLayout, QWi
 from desk.book import Basis
 from desk.book.arrays import FloatArray
 from desk.rates.compounding import Compounding
-from desk.rates.curve import Interpolation
 from desk.rates.day_count import DayCount
 from desk.rates.sampling import quote_details
 from desk.valuation.restating import with_day_count
 from desk.window import numbers
 from desk.window.curve_edits import merged, new_quote, quotes_fault, read_cells
-from desk.window.curve_picture import CurvePicture, stated_as
+from desk.window.curve_picture import CurvePicture
+from desk.window.curve_words import COMPOUNDINGS, DAY_COUNTS, HOW_TO_EDIT, INTERPOLATIONS, QUOTE_COLUMNS
 from desk.window.document import Document
 from desk.window.fields import Choice, ChoiceField, NumberField
 from desk.window.jobs import Jobs
 from desk.window.station import Station
-from desk.window.tables import Column, Table, parse_grid
+from desk.window.tables import Table, parse_grid
 from desk.window.theme import GAP, WIDE, ThemeSwitch, keep_look, soft_font
 
 __all__ = ["CurveStation"]
-
-_INTERPOLATIONS = (
-    Choice(
-        Interpolation.LOG_LINEAR,
-        "Log-linear on discount factors",
-        "Between two terms the forward rate is flat: it moves in steps, and never swings.",
-    ),
-    Choice(
-        Interpolation.LINEAR_ZERO,
-        "Linear on zero rates",
-        "Straight lines between the zero rates: simple, but the forward rate jumps at the terms.",
-    ),
-    Choice(
-        Interpolation.CUBIC_ZERO,
-        "Cubic spline on zero rates",
-        "A smooth line through the zero rates: the forward rate is smooth too, but it can swing.",
-    ),
-    Choice(
-        Interpolation.MONOTONE_CONVEX,
-        "Monotone convex",
-        "Forward rates without jumps that stay positive where the quotes allow it.",
-    ),
-)
-_COMPOUNDINGS = tuple(
-    Choice(compounding, str(compounding).capitalize(), f"The quotes are {stated_as(compounding)}.")
-    for compounding in Compounding
-)
-_DAY_COUNTS = (
-    Choice(DayCount.ACT_365F, "Act/365 Fixed", "Actual days over 365."),
-    Choice(DayCount.ACT_360, "Act/360", "Actual days over 360."),
-    Choice(DayCount.ACT_ACT_ISDA, "Act/Act ISDA", "Actual days over those of each calendar year."),
-    Choice(DayCount.THIRTY_360, "30/360", "Months of 30 days over 360, bond basis."),
-    Choice(DayCount.THIRTY_E_360, "30E/360", "Months of 30 days over 360, European."),
-)
-_COLUMNS = (
-    Column("term", "Term", "years", "years", digits=None, tooltip="Time to maturity.", editable=True),
-    Column(
-        "rate",
-        "Rate",
-        "% a year, as quoted",
-        "rate",
-        digits=3,
-        tooltip="The zero rate as the source states it.",
-        editable=True,
-    ),
-    Column(
-        "zero",
-        "Continuous rate",
-        "% a year",
-        "rate",
-        digits=4,
-        tooltip="The same zero rate, compounded continuously.",
-    ),
-    Column(
-        "discount",
-        "Discount factor",
-        "",
-        "number",
-        digits=6,
-        tooltip="Value today of one unit due at the term.",
-    ),
-    Column(
-        "forward",
-        "Forward to next",
-        "% a year, continuous",
-        "rate",
-        digits=4,
-        tooltip="Rate from this term to the next; at the last term the rate that goes on beyond it.",
-    ),
-)
-_HOW = (
-    "Terms and rates can be typed over, and pasted over from a spreadsheet: terms in years, rates in "
-    "percent. The curve follows at once."
-)
 
 
 class CurveStation(Station):
@@ -121,7 +47,7 @@ class CurveStation(Station):
         self.picture = CurvePicture(theme_switch)
         self.picture.message.connect(self.message)
         self.table = Table(
-            _COLUMNS,
+            QUOTE_COLUMNS,
             theme_switch,
             name="Quotes of the curve",
             description="Term and rate can be edited and pasted over. Insert adds a quote, Delete removes "
@@ -148,7 +74,7 @@ class CurveStation(Station):
         self.remove_button.setToolTip("The selected quotes (Delete)")
         self.replace_button = QPushButton("Paste a whole curve")
         self.replace_button.setToolTip("What is on the clipboard takes the place of all quotes")
-        how = QLabel(_HOW)
+        how = QLabel(HOW_TO_EDIT)
         how.setWordWrap(True)
         how.setFont(soft_font(self.font()))
         keep_look(how, "soft")
@@ -180,9 +106,9 @@ class CurveStation(Station):
         form.add_heading("The curve")
         self.date_note = form.add_note("")
         self.compounding = ChoiceField(
-            "Quotes are stated", _COMPOUNDINGS, hint="The figures stay; what they mean changes."
+            "Quotes are stated", COMPOUNDINGS, hint="The figures stay; what they mean changes."
         )
-        self.interpolation = ChoiceField("Between the quotes", _INTERPOLATIONS)
+        self.interpolation = ChoiceField("Between the quotes", INTERPOLATIONS)
         self.shown_as = ChoiceField("Show rates", (Choice("quoted", "As quoted"),))
         self.shown_as.set_choices(
             (
@@ -216,7 +142,7 @@ class CurveStation(Station):
         form.add(self.liability_spread)
         form.add(self.market_risk_premium)
         form.add_heading("Time")
-        self.day_count = ChoiceField("Day count", _DAY_COUNTS, hint="Turns dates into years.")
+        self.day_count = ChoiceField("Day count", DAY_COUNTS, hint="Turns dates into years.")
         form.add(self.day_count)
         for field, name, text in (
             (self.compounding, "compounding", "compounding of the quotes"),

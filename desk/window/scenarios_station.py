@@ -2,9 +2,10 @@
 
 from __future__ import annotations
 
+from collections.abc import Callable
 from dataclasses import replace
 
-from PySide6.QtCore import QSignalBlocker, Qt
+from PySide6.QtCore import QSignalBlocker, Qt, QTimer
 from PySide6.QtGui import QKeySequence, QShortcut
 from PySide6.QtWidgets import (
     QCheckBox,
@@ -12,7 +13,6 @@ from PySide6.QtWidgets import (
     QLabel,
     QPushButton,
     QSlider,
-    QSpinBox,
     QVBoxLayout,
     QWidget,
 )
@@ -27,7 +27,7 @@ from desk.window.fields import Combo
 from desk.window.jobs import Job, Jobs
 from desk.window.scenarios_form import RunForm
 from desk.window.scenarios_pictures import FanPicture, HistogramPicture, ValuesPicture
-from desk.window.scenarios_tables import PercentilesTable, RepricingTable, ValuesTable
+from desk.window.scenarios_tables import PercentilesTable, RepricingTable, ValuesTable, run_sentence
 from desk.window.standing_pages import Pages
 from desk.window.station import STALE, Station
 from desk.window.theme import STEP, WIDE, ThemeSwitch, keep_look
@@ -60,6 +60,10 @@ class ScenariosStation(Station):
         self._shown_book: Book | None = None
         self._job: Job | None = None
         self._failure = ""
+        # Pictures and tables take turns, so that the window never stops for all at once.
+        self._waiting: list[Callable[[], None]] = []
+        self._filling = QTimer(self, singleShot=True, interval=0)
+        self._filling.timeout.connect(self._fill_next)
         self.run_form = RunForm(
             self.form, change=self._change, run=self.run, cancel=document.cancel_simulation
         )
@@ -104,13 +108,11 @@ class ScenariosStation(Station):
         self.with_paths = QCheckBox("Some paths")
         self.slider = QSlider(Qt.Orientation.Horizontal)
         self.slider.setFixedWidth(32 * STEP)
-        self.slider.setAccessibleName("Year of the histogram, slider")
-        self.spin = QSpinBox()
-        # The slider beside it is its pair of arrows.
-        self.spin.setButtonSymbols(QSpinBox.ButtonSymbols.NoButtons)
-        self.spin.setPrefix("Year ")
-        self.spin.setAccessibleName("Year of the histogram")
-        for widget in (self.quantity, self.logarithmic, self.with_paths, self.slider, self.spin):
+        self.slider.setAccessibleName("Year of the histogram")
+        self.year_label = QLabel()
+        self.year_label.setBuddy(self.slider)
+        self.year_label.setFixedWidth(self.fontMetrics().horizontalAdvance("Year 200") + STEP)
+        for widget in (self.quantity, self.logarithmic, self.with_paths, self.year_label, self.slider):
             self.add_to_heading(widget)
 
     def _make_invitation(self) -> QWidget:
@@ -138,10 +140,10 @@ class ScenariosStation(Station):
     def _connect(self) -> None:
         self.quantity.currentIndexChanged.connect(lambda _: self._on_quantity())
         for box in (self.logarithmic, self.with_paths):
-            box.toggled.connect(lambda _: self._draw_fan())
-        self.in_full.toggled.connect(lambda _: self._fill_tables())
+            box.toggled.connect(lambda _: self._soon(self._draw_fan))
+        self.in_full.toggled.connect(lambda _: self._soon(self._fill_table))
+        self.pages.changed.connect(lambda _: self._soon(self._fill_table))
         self.slider.valueChanged.connect(self.set_year)
-        self.spin.valueChanged.connect(self.set_year)
         self.fan.year_chosen.connect(lambda year: self.set_year(round(year)))
         self.jobs.progressed.connect(self._on_progress)
         self.document.failed.connect(self._on_failed)
@@ -222,7 +224,7 @@ class ScenariosStation(Station):
 
     def _show_none(self, text: str, button: str, step: str) -> None:
         self.hide_stale()
-        for widget in (self.quantity, self.logarithmic, self.with_paths, self.slider, self.spin):
+        for widget in (self.quantity, self.logarithmic, self.with_paths, self.year_label, self.slider):
             widget.hide()
         act = self.add_model if step == "model" else lambda: self.step_wanted.emit(step)
         self.show_empty(text, button, act)
@@ -235,8 +237,10 @@ class ScenariosStation(Station):
         form.run_button.setVisible(not running)
         form.run_button.setEnabled(not obstacle)
         form.cancel_button.setVisible(running)
-        form.state.setText("Running." if running else obstacle)
-        form.state.setVisible(running or bool(obstacle))
+        there = document.simulation
+        about = obstacle or (run_sentence(there) if there is not None else "")
+        form.state.setText("Running." if running else about)
+        form.state.setVisible(running or bool(about))
         self.invitation_button.setEnabled(not running and not obstacle)
         self.invitation_button.setVisible(not running)
         self.invitation_text.setText(
@@ -287,7 +291,7 @@ class ScenariosStation(Station):
         for of_side in (self.sides_picture, self.surplus_picture):
             of_side.setVisible(of_values)
         self.quantity.setVisible(there)
-        for control in (self.slider, self.spin):
+        for control in (self.year_label, self.slider):
             control.setVisible(there and not of_values)
         for box in (self.logarithmic, self.with_paths):
             box.setVisible(there and quantity == "account")
@@ -296,38 +300,47 @@ class ScenariosStation(Station):
         last = len(simulation.savings_account.year) - 1
         if not 1 <= self.year <= last:
             self.year = max(1, last // 2)
-        for control in (self.slider, self.spin):
-            with QSignalBlocker(control):
-                control.setRange(1, last)
-                control.setValue(self.year)
-        self._draw_fan()
-        self._draw_year()
-        self._draw_values()
-        self._fill_tables()
-        self.repricing.show_run(simulation)
+        with QSignalBlocker(self.slider):
+            self.slider.setRange(1, last)
+        self._show_year_chosen()
+        self._draw()
 
     def _on_quantity(self) -> None:
         self._show_parts()
         if self.shown_quantity == "values":
             self.pages.show_page("values")
-        else:
-            if self.pages.current == "values":
-                self.pages.show_page("percentiles")
-            self._draw_fan()
-            self._draw_year()
-        self._fill_tables()
+        elif self.pages.current == "values":
+            self.pages.show_page("percentiles")
+        self._draw()
+
+    def _draw(self) -> None:
+        self._soon(self._draw_fan, self._draw_year, self._draw_values, self._fill_table)
+
+    def _soon(self, *steps: Callable[[], None]) -> None:
+        """Do `steps`, one a turn, each once however often it was asked for."""
+        self._waiting += [step for step in steps if step not in self._waiting]
+        self._filling.start()
+
+    def _fill_next(self) -> None:
+        step = self._waiting.pop(0)
+        if self._waiting:
+            self._filling.start()
+        step()
 
     def set_year(self, year: int) -> None:
         """Show the histogram of another year."""
         if self._shown is None:
             return
         year = min(max(year, 1), len(self._shown.savings_account.year) - 1)
-        for control in (self.slider, self.spin):
-            with QSignalBlocker(control):
-                control.setValue(year)
         if year != self.year:
             self.year = year
+            self._show_year_chosen()
             self._draw_year()
+
+    def _show_year_chosen(self) -> None:
+        with QSignalBlocker(self.slider):
+            self.slider.setValue(self.year)
+        self.year_label.setText(f"Year {self.year}")
 
     def _draw_fan(self) -> None:
         if self._shown is None or self.shown_quantity == "values":
@@ -351,7 +364,7 @@ class ScenariosStation(Station):
 
     def _draw_values(self) -> None:
         book = self.document.book
-        if self._shown is None or book is None:
+        if self._shown is None or book is None or self.shown_quantity != "values":
             return
         by_name = {each.name: each for each in self._shown.present_value}
         sides = [by_name[name] for name in ("assets", "liabilities") if name in by_name]
@@ -359,11 +372,17 @@ class ScenariosStation(Station):
         if "surplus" in by_name:
             self.surplus_picture.show_values("Surplus", [by_name["surplus"]], book.basis.currency)
 
-    def _fill_tables(self) -> None:
+    def _fill_table(self) -> None:
+        """Fill the table that is shown."""
         book = self.document.book
         if self._shown is None or book is None:
             return
-        in_full = self.in_full.isChecked()
-        quantity = "rate" if self.shown_quantity == "rate" else "account"
-        self.percentiles.show_run(self._shown, quantity, in_full=in_full)
-        self.values.show_run(self._shown, book.basis.currency, in_full=in_full)
+        in_full, page = self.in_full.isChecked(), self.pages.current
+        self.in_full.setVisible(page != "repricing")
+        if page == "percentiles":
+            quantity = "rate" if self.shown_quantity == "rate" else "account"
+            self.percentiles.show_run(self._shown, quantity, in_full=in_full)
+        elif page == "repricing":
+            self.repricing.show_run(self._shown)
+        else:
+            self.values.show_run(self._shown, book.basis.currency, in_full=in_full)

@@ -9,11 +9,12 @@ import numpy as np
 from desk.scenarios.records import Simulation
 from desk.scenarios.shapes import repricing_error
 from desk.window import numbers
+from desk.window.scenarios_form import MODEL_TITLES
 from desk.window.scenarios_pictures import level_name
 from desk.window.tables import Column, Kind, Mark, Table
 from desk.window.theme import ThemeSwitch
 
-__all__ = ["TOO_FAR", "PercentilesTable", "RepricingTable", "ValuesTable"]
+__all__ = ["TOO_FAR", "PercentilesTable", "RepricingTable", "ValuesTable", "run_sentence"]
 
 TOO_FAR = 3.0
 """A check further off than this many standard errors is marked."""
@@ -168,11 +169,14 @@ class ValuesTable(_Tabled):
                     data[f"p{place}_{key}"] = [float(value) for value in values]
         self._put(columns, data)
 
-    @staticmethod
-    def sentence(simulation: Simulation) -> str:
-        """What the run was, in one line."""
-        return (
-            f"{numbers.integer(simulation.paths)} paths of {simulation.model}, "
-            f"{numbers.integer(simulation.horizon_years)} years, {simulation.measure} measure, "
-            f"seed {simulation.seed}"
-        )
+
+def run_sentence(simulation: Simulation) -> str:
+    """What a run was, in one line."""
+    title = next(
+        (title for name, title in MODEL_TITLES.items() if name == simulation.model), simulation.model
+    )
+    return (
+        f"Shown: {numbers.integer(simulation.paths)} paths of {title} over "
+        f"{numbers.integer(simulation.horizon_years)} years, {simulation.measure} measure, "
+        f"seed {numbers.exact(float(simulation.seed))}."
+    )
