@@ -3,7 +3,6 @@
 from __future__ import annotations
 
 import logging
-import os
 from collections.abc import Callable
 from functools import partial
 from pathlib import Path
@@ -16,6 +15,7 @@ from desk.intake.records import Reading
 from desk.window.dialogs import Choice, Dialogs, documents
 from desk.window.document import Document
 from desk.window.jobs import Job, Jobs
+from desk.window.paths import is_inside, is_same_file
 from desk.window.recent import RecentBooks
 from desk.window.settings import Settings
 
@@ -24,13 +24,6 @@ __all__ = ["BookFiles"]
 _log = logging.getLogger(__name__)
 
 _Stamp = tuple[int, int]
-
-
-def _is_same_file(one: Path, other: Path) -> bool:
-    try:
-        return os.path.samefile(one, other)
-    except OSError:
-        return os.path.abspath(one) == os.path.abspath(other)
 
 
 def _stamp(path: Path) -> _Stamp | None:
@@ -130,7 +123,7 @@ class BookFiles(QObject):
     def _take(self, reading: Reading) -> None:
         self.own_path = self._own_stamp = None
         self._document.open_reading(reading)
-        if not _is_inside(reading.path, places.demo_books()):
+        if not is_inside(reading.path, places.demo_books()):
             self._settings.book_folder = reading.path.parent
         self._recent.add(reading.path)
         self.opened.emit(reading)
@@ -176,13 +169,13 @@ class BookFiles(QObject):
             return self.own_path
         source = self._document.path or Path("book.xlsx")
         folder = source.parent
-        if _is_inside(source, places.demo_books()) or not folder.is_dir():
+        if is_inside(source, places.demo_books()) or not folder.is_dir():
             folder = self._settings.book_folder or documents()
         return folder / f"{source.stem} (copy).xlsx"
 
     def _chosen(self, then: Callable[[], None] | None, path: Path) -> None:
         source = self._document.source
-        if source is not None and path != self.own_path and _is_same_file(path, source.path):
+        if source is not None and path != self.own_path and is_same_file(path, source.path):
             self._dialogs.ask_overwrite(
                 f"Replace “{path.name}”?",
                 "The book was opened from this workbook. What is in it beside the book (its formatting, "
@@ -265,10 +258,6 @@ class BookFiles(QObject):
         """What the open book is called: its file's name."""
         path = self._document.path
         return path.name if path is not None else "book"
-
-
-def _is_inside(path: Path, folder: Path) -> bool:
-    return os.path.abspath(path).startswith(os.path.abspath(folder) + os.sep)
 
 
 def _reason(error: OSError) -> str:

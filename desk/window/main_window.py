@@ -7,9 +7,9 @@ from collections.abc import Callable, Sequence
 from pathlib import Path
 from typing import Protocol, runtime_checkable
 
-from PySide6.QtCore import QEvent, QObject, QSize, Qt, QTimer
-from PySide6.QtGui import QCloseEvent, QDragEnterEvent, QDropEvent, QGuiApplication, QKeySequence, QShortcut
-from PySide6.QtWidgets import QApplication, QHBoxLayout, QMainWindow, QStackedWidget, QVBoxLayout, QWidget
+from PySide6.QtCore import QEvent, QSize, QTimer
+from PySide6.QtGui import QCloseEvent, QDragEnterEvent, QDropEvent, QKeySequence, QShortcut
+from PySide6.QtWidgets import QHBoxLayout, QMainWindow, QStackedWidget, QVBoxLayout, QWidget
 
 from desk.intake.records import Reading
 from desk.window import numbers
@@ -21,6 +21,7 @@ from desk.window.foot import Foot
 from desk.window.headline import Headline
 from desk.window.help_pages import HelpPage, about, keys, what_it_does
 from desk.window.jobs import Jobs
+from desk.window.panes import Pane, focus_first, next_pane, restore_geometry
 from desk.window.rail import Rail
 from desk.window.recent import RecentBooks
 from desk.window.settings import Settings
@@ -101,10 +102,10 @@ class MainWindow(QMainWindow):
         )
         for keys_text, step in (("F6", 1), ("Shift+F6", -1)):
             shortcut = QShortcut(QKeySequence(keys_text), self)
-            shortcut.activated.connect(lambda step=step: self._cycle(step))
+            shortcut.activated.connect(lambda step=step: next_pane(self._panes(), step))
         self.setAcceptDrops(True)
         self.setMinimumSize(_LEAST)
-        self._restore_geometry()
+        restore_geometry(self, settings.geometry, _SIZE)
         self._listen()
         self._retitle()
         self.show_welcome()
@@ -314,55 +315,19 @@ class MainWindow(QMainWindow):
     def _open_page(self, title: str, page: str) -> None:
         HelpPage(title, page, self).show()
 
-    def _panes(self) -> tuple[tuple[QWidget, Callable[[], None]], ...]:
-        panes = [
-            (self.rail, self.rail.take_focus),
-            (self.headline, self.headline.take_focus),
-            (self.stack, self._focus_station),
-            (self.foot, self.foot.take_focus),
-        ]
-        return tuple((widget, act) for widget, act in panes if widget.isVisible())
+    def _panes(self) -> tuple[Pane, ...]:
+        return (
+            Pane(self.rail, self.rail.take_focus),
+            Pane(self.headline, self.headline.take_focus),
+            Pane(self.stack, self._focus_station),
+            Pane(self.foot, self.foot.take_focus),
+        )
 
     def _focus_station(self) -> None:
-        page = self.stack.currentWidget()
-        if page is self.welcome:
+        if self.stack.currentWidget() is self.welcome:
             self.welcome.take_focus()
-            return
-        first = _first_with_focus(page)
-        if first is not None:
-            first.setFocus(Qt.FocusReason.ShortcutFocusReason)
-
-    def _cycle(self, step: int) -> None:
-        """Give the keyboard to the next part of the window."""
-        panes = self._panes()
-        focus = QApplication.focusWidget()
-        now = next(
-            (
-                place
-                for place, (widget, _) in enumerate(panes)
-                if focus is not None and (widget is focus or widget.isAncestorOf(focus))
-            ),
-            -1 if step > 0 else 0,
-        )
-        panes[(now + step) % len(panes)][1]()
-
-    def _restore_geometry(self) -> None:
-        """As it was left, unless that place is on no screen any more."""
-        self.resize(_SIZE)
-        geometry = self._settings.geometry
-        restored = not geometry.isEmpty() and self.restoreGeometry(geometry)
-        frame = self.frameGeometry()
-        screens = QGuiApplication.screens()
-        is_seen = any(screen.availableGeometry().intersected(frame).width() >= 120 for screen in screens)
-        if restored and is_seen:
-            return
-        screen = QGuiApplication.primaryScreen()
-        if screen is not None:
-            room = screen.availableGeometry()
-            self.resize(_SIZE.boundedTo(room.size()))
-            place = self.rect()
-            place.moveCenter(room.center())
-            self.move(place.topLeft())
+        else:
+            focus_first(self.stack.currentWidget())
 
     # What Qt calls
 
@@ -420,16 +385,3 @@ def _local_files(event: QDropEvent) -> list[Path]:
     urls = event.mimeData().urls()
     paths = [Path(url.toLocalFile()) for url in urls if url.isLocalFile()]
     return [path for path in paths if not os.path.isdir(path)]
-
-
-def _first_with_focus(page: QObject | None) -> QWidget | None:
-    """The first widget of a page, in its tab order, that takes the keyboard."""
-    if not isinstance(page, QWidget):
-        return None
-    widget = page.nextInFocusChain()
-    while widget is not None and widget is not page:
-        takes = bool(widget.focusPolicy() & Qt.FocusPolicy.TabFocus)
-        if takes and widget.isEnabled() and widget.isVisible() and page.isAncestorOf(widget):
-            return widget
-        widget = widget.nextInFocusChain()
-    return None

@@ -2,10 +2,8 @@
 
 from __future__ import annotations
 
-import os
 import time
 from collections.abc import Callable
-from dataclasses import dataclass
 from datetime import UTC, datetime
 from functools import partial
 from pathlib import Path
@@ -14,7 +12,7 @@ from PySide6.QtCore import Qt, QUrl
 from PySide6.QtGui import QDesktopServices
 from PySide6.QtWidgets import QWidget
 
-from desk import places, tasks
+from desk import tasks
 from desk.book import Book
 from desk.intake.records import Reading
 from desk.report.results.plan import SheetPlan
@@ -23,69 +21,28 @@ from desk.scenarios.records import Simulation
 from desk.valuation.records import Standing
 from desk.window import numbers
 from desk.window.columns import Column
-from desk.window.dialogs import Dialogs, documents
+from desk.window.dialogs import Dialogs
 from desk.window.document import Document
 from desk.window.fields import TextField
 from desk.window.jobs import Job, Jobs
 from desk.window.page_preview import PagePreview
+from desk.window.paths import is_same_file
+from desk.window.report_runs import ReportRuns, WrittenReport
+from desk.window.report_target import suggested_target, target_problem
 from desk.window.settings import Settings
 from desk.window.station import Station
 from desk.window.tables import Table
 from desk.window.theme import GAP, ThemeSwitch
 
-__all__ = ["ReportStation", "WrittenReport"]
+__all__ = ["ReportStation"]
 
 _SHEET_COLUMNS = (
     Column("sheet", "Sheet", tooltip="In the order of the workbook"),
     Column("rows", "Rows", kind="integer"),
     Column("pages", "Pages", kind="integer", tooltip="When printed on A4, landscape"),
 )
-_RUN_COLUMNS = (
-    Column("written", "Written", tooltip="Today's time of day"),
-    Column("file", "File"),
-    Column("assets", "Assets", kind="money"),
-    Column("liabilities", "Liabilities", kind="money"),
-    Column("surplus", "Surplus", kind="money"),
-    Column("ratio", "Funding ratio", kind="rate"),
-    Column("paths", "Paths", kind="integer", tooltip="Of the simulation in it"),
-    Column("seed", "Seed", tooltip="Of the simulation in it; the same seed gives the same figures"),
-    Column("book", "Book", tooltip="The first figures of the book's SHA-256: equal books have equal ones"),
-    Column("folder", "Folder"),
-)
-
 _Wanted = tuple[Book, Standing, Simulation | None]
 """What pages are laid out from."""
-
-
-@dataclass(frozen=True)
-class WrittenReport:
-    """A report written since the window was opened.
-
-    Attributes
-    ----------
-    path : Path
-    at : str
-        Time of day.
-    book_digest : str
-    standing : Standing or None
-        That is in it; None where it was computed while writing.
-    simulation : Simulation or None
-        Likewise.
-    seed : int or None
-        Of the simulation in it; None where the book has no model.
-    paths : int or None
-        Likewise.
-    currency : str
-    """
-
-    path: Path
-    at: str
-    book_digest: str
-    standing: Standing | None
-    simulation: Simulation | None
-    seed: int | None
-    paths: int | None
-    currency: str
 
 
 def _lay_out(
@@ -117,7 +74,7 @@ class ReportStation(Station):
     preview : PagePreview
     target : TextField
         Where it goes.
-    runs : Table
+    runs : ReportRuns
         Reports written since the window was opened.
     written : list of WrittenReport
         Likewise, the latest first.
@@ -161,15 +118,7 @@ class ReportStation(Station):
         self.pictures.setStretchFactor(0, 0)
         self.pictures.setStretchFactor(1, 1)
         self.pictures.setSizes([290, 710])
-        self.runs = Table(
-            _RUN_COLUMNS,
-            theme_switch,
-            name="Reports written",
-            description="Return opens a report in the program for workbooks.",
-            empty_text="Reports written in this session are listed here, to be compared and opened.",
-        )
-        self.runs.setSelectionBehavior(Table.SelectionBehavior.SelectRows)
-        self.runs.fit_columns()
+        self.runs = ReportRuns(theme_switch)
         self.runs.activated_row.connect(self._open_report)
         self.runs.message.connect(self.message)
         self.set_table(self.runs, share=20)
@@ -320,29 +269,12 @@ class ReportStation(Station):
             return
         self._target_source = source.path
         remembered = self._settings.report_folder if self._settings is not None else None
-        demo = os.path.abspath(source.path).startswith(os.path.abspath(places.demo_books()) + os.sep)
-        beside = source.path.parent
-        folder = remembered if remembered is not None and remembered.is_dir() else None
-        if folder is None:
-            folder = documents() if demo or not beside.is_dir() else beside
-        self.target.set_value(str(folder / f"{source.path.stem}_report.xlsx"))
+        self.target.set_value(str(suggested_target(source.path, remembered)))
         self._show_file_name()
 
     def _target_problem(self, text: str) -> str:
-        """What is wrong with a place for the report; nothing where nothing is."""
-        if not text:
-            return "Enter where the report goes."
-        path = Path(text).expanduser()
-        if path.suffix.casefold() != ".xlsx":
-            return "The name must end in .xlsx."
-        if not path.parent.is_dir():
-            return f"There is no folder {path.parent}."
-        if path.is_dir():
-            return "This is a folder."
-        for book in (self.document.path, self.document.source.path if self.document.source else None):
-            if book is not None and _is_same(path, book):
-                return "This is the book itself: the report would replace it."
-        return ""
+        source = self.document.source
+        return target_problem(text, (self.document.path, source.path if source else None))
 
     def _browse(self) -> None:
         def chosen(path: Path) -> None:
@@ -387,7 +319,7 @@ class ReportStation(Station):
         if str(path) != self.target.value:
             self.target.set_value(str(path))
             self._show_file_name()
-        own = any(_is_same(path, made.path) for made in self.written)
+        own = any(is_same_file(path, made.path) for made in self.written)
         if path.exists() and not own and path != self._asked:
             self._dialogs.ask_overwrite(
                 f"Replace “{path.name}”?",
@@ -435,7 +367,7 @@ class ReportStation(Station):
         if self._settings is not None:
             self._settings.report_folder = path.parent
         self._asked = None
-        self._show_written()
+        self.runs.show_reports(self.written)
         self._arm()
         self.message.emit(f"The report is in {path}.")
 
@@ -452,24 +384,6 @@ class ReportStation(Station):
         self._writing = None
         self._arm()
         self.message.emit(f"{path.name} was not written: it was cancelled.")
-
-    def _show_written(self) -> None:
-        standings = [made.standing for made in self.written]
-        self.runs.set_rows(
-            {
-                "written": [made.at for made in self.written],
-                "file": [made.path.name for made in self.written],
-                "assets": [one.assets.present_value if one else None for one in standings],
-                "liabilities": [one.liabilities.present_value if one else None for one in standings],
-                "surplus": [one.surplus if one else None for one in standings],
-                "ratio": [one.funding_ratio if one else None for one in standings],
-                "paths": [made.paths for made in self.written],
-                "seed": ["" if made.seed is None else str(made.seed) for made in self.written],
-                "book": [made.book_digest[:12] for made in self.written],
-                "folder": [str(made.path.parent) for made in self.written],
-            }
-        )
-        self.runs.fit_columns()
 
     # Opening
 
@@ -493,10 +407,3 @@ class ReportStation(Station):
             self.message.emit(f"There is no {path} any more.")
         elif not QDesktopServices.openUrl(QUrl.fromLocalFile(str(path))):
             self.message.emit(f"Nothing here opens {path}.")
-
-
-def _is_same(one: Path, other: Path) -> bool:
-    try:
-        return os.path.samefile(one, other)
-    except OSError:
-        return os.path.abspath(one) == os.path.abspath(other)
