@@ -292,7 +292,7 @@ class MainWindow(QMainWindow):
             elif document.standing is None or document.standing_is_stale:
                 notes["standing"] = ("being valued", "mild")
             if document.is_simulating:
-                notes["scenarios"] = ("runs", "ink_soft")
+                notes["scenarios"] = ("running", "ink_soft")
             elif document.simulation is None:
                 has_model = document.book.rates_model is not None
                 notes["scenarios"] = ("not run yet" if has_model else "no rates model", "ink_soft")

@@ -156,7 +156,7 @@ class _RecentButton(QAbstractButton):
         painter.setPen(theme.hairline)
         painter.drawLine(0, self.height() - 1, self.width(), self.height() - 1)
         flat = int(Qt.AlignmentFlag.AlignLeft | Qt.AlignmentFlag.AlignVCenter)
-        name_width = min(painter.fontMetrics().horizontalAdvance(self.text()), self.width() // 2)
+        name_width = min(painter.fontMetrics().horizontalAdvance(self.text()) + 2, self.width() // 2)
         place = self.rect().adjusted(0, 0, 0, -1)
         painter.setPen(theme.ink)
         name = painter.fontMetrics().elidedText(self.text(), Qt.TextElideMode.ElideMiddle, name_width)
