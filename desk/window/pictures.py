@@ -31,7 +31,7 @@ if TYPE_CHECKING:
 
 __all__ = ["draw_all", "draw_window", "main"]
 
-_SIZE = QSize(1120, 640)
+_SIZE = QSize(1680, 960)
 """Of a station whose pictures are drawn [px]."""
 _PATIENCE_SECONDS = 600.0
 
