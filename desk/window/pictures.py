@@ -31,8 +31,8 @@ if TYPE_CHECKING:
 
 __all__ = ["draw_all", "draw_window", "main"]
 
-_SIZE = QSize(1680, 960)
-"""Of a station whose pictures are drawn [px]."""
+_SIZE = QSize(960, 540)
+"""Of a picture [px]; in a PNG there are twice as many."""
 _PATIENCE_SECONDS = 600.0
 
 
@@ -93,20 +93,25 @@ def _draw_station(station: Station, jobs: Jobs, folder: Path) -> list[Path]:
     from desk.window.plots import Picture
 
     station.setAttribute(Qt.WidgetAttribute.WA_DontShowOnScreen)
-    station.resize(_SIZE)
     station.show()
     station.refresh_now()
     _wait(lambda: not jobs.running)
     written = []
-    for picture in station.findChildren(Picture):
-        if not picture.isVisible():
-            continue
+    for picture in [one for one in station.findChildren(Picture) if one.isVisible()]:
+        # On its own it has the same shape whatever room the station would have given it.
+        picture.setParent(None)
+        picture.setAttribute(Qt.WidgetAttribute.WA_DontShowOnScreen)
+        picture.resize(_SIZE)
+        picture.show()
+        _settle()
         picture.settle()
         name = re.sub(r"[^a-z0-9]+", "-", picture.title.casefold()).strip("-") or "picture"
         for ending in ("png", "svg"):
             path = folder / f"{station.key}-{name}.{ending}"
             picture.save(path)
             written.append(path)
+        picture.close()
+        picture.deleteLater()
     return written
 
 

@@ -35,7 +35,7 @@ def test_every_picture_is_drawn_as_png_and_svg(tmp_path: Path) -> None:
     for path in written:
         if path.suffix == ".png":
             image = QImage(str(path))
-            assert image.width() > 600
+            assert image.width() == 1920
             assert _colours(image) > 10, f"{path.name} is empty"
         else:
             assert ElementTree.parse(path).getroot().tag.endswith("svg")
