@@ -14,7 +14,7 @@ from desk.book import Basis
 from desk.book.arrays import FloatArray
 from desk.rates.compounding import Compounding
 from desk.rates.day_count import DayCount
-from desk.rates.sampling import quote_details
+from desk.rates.sampling import QuoteDetail, quote_details
 from desk.valuation.restating import with_day_count
 from desk.window import numbers
 from desk.window.curve_edits import merged, new_quote, quotes_fault, read_cells
@@ -180,7 +180,13 @@ class CurveStation(Station):
         self.liability_spread.set_value(basis.liability_spread)
         self.market_risk_premium.set_value(basis.market_risk_premium)
         self.day_count.set_value(basis.day_count)
-        detail = quote_details(basis.curve)
+        try:
+            detail = quote_details(basis.curve)
+        except ValueError as error:
+            # Its own edits give a curve or are refused; a book may still come from elsewhere.
+            none = np.full(basis.terms.shape, np.nan)
+            detail = QuoteDetail(basis.terms, none, none, none)
+            self._refuse(f"These quotes give no curve: {error}.")
         self.table.set_rows(
             {
                 "term": basis.terms,
@@ -200,7 +206,10 @@ class CurveStation(Station):
         as_quoted = self.shown_as.value == "quoted"
         compounding = book.basis.compounding if as_quoted else Compounding.CONTINUOUS
         ends = [float(flows.time.max()) for flows in (book.liabilities, book.asset_flows) if len(flows)]
-        self.picture.show_basis(book.basis, max(ends, default=0.0), compounding)
+        try:
+            self.picture.show_basis(book.basis, max(ends, default=0.0), compounding)
+        except ValueError:
+            self.picture.clear()
 
     # Editing
 

@@ -136,12 +136,14 @@ class RunForm:
         self,
         form: Form,
         *,
+        book: Callable[[], Book | None],
         change: Callable[[str, Book], None],
         run: Callable[[], object],
         cancel: Callable[[], object],
     ) -> None:
+        # Asked for at every edit: two edits may come before what is shown follows.
+        self._book = book
         self._change = change
-        self._book: Book | None = None
         self.run_button: QPushButton = form.add_button("Run the scenarios", run, first=True)
         self.run_button.setToolTip("Ctrl+R")
         self.cancel_button: QPushButton = form.add_button("Cancel the run", cancel)
@@ -206,7 +208,6 @@ class RunForm:
 
     def show_book(self, book: Book) -> None:
         """Show the settings of a book."""
-        self._book = book
         model, run = book.rates_model, book.run
         name = model.name if model is not None else ModelName.HULL_WHITE
         self.model.set_value(name)
@@ -233,19 +234,22 @@ class RunForm:
     # Editing
 
     def _on_model(self, name: ModelName) -> None:
-        if self._book is not None:
-            model = suggested_model(name, self._book.basis, self._book.rates_model)
-            self._change(f"Model {MODEL_TITLES[name]}", replace(self._book, rates_model=model))
+        book = self._book()
+        if book is not None:
+            model = suggested_model(name, book.basis, book.rates_model)
+            self._change(f"Model {MODEL_TITLES[name]}", replace(book, rates_model=model))
 
     def _on_item(self, key: str, value: float) -> None:
-        if self._book is None or self._book.rates_model is None:
+        book = self._book()
+        if book is None or book.rates_model is None:
             return
         item = "volatility" if key == "root_volatility" else key
         changes: dict[str, Any] = {item: value}
-        model: RatesModel = replace(self._book.rates_model, **changes)
-        self._change(f"Change of the {item.replace('_', ' ')}", replace(self._book, rates_model=model))
+        model: RatesModel = replace(book.rates_model, **changes)
+        self._change(f"Change of the {item.replace('_', ' ')}", replace(book, rates_model=model))
 
     def _on_run(self, name: str, value: Any, what: str) -> None:
-        if self._book is not None:
+        book = self._book()
+        if book is not None:
             changes: dict[str, Any] = {name: value}
-            self._change(f"Change of the {what}", replace(self._book, run=replace(self._book.run, **changes)))
+            self._change(f"Change of the {what}", replace(book, run=replace(book.run, **changes)))

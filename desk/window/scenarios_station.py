@@ -65,7 +65,11 @@ class ScenariosStation(Station):
         self._filling = QTimer(self, singleShot=True, interval=0)
         self._filling.timeout.connect(self._fill_next)
         self.run_form = RunForm(
-            self.form, change=self._change, run=self.run, cancel=document.cancel_simulation
+            self.form,
+            book=lambda: self.document.book,
+            change=self._change,
+            run=self.run,
+            cancel=document.cancel_simulation,
         )
         self._make_controls()
         self.fan = FanPicture(theme_switch)

@@ -170,6 +170,18 @@ def test_the_last_quote_cannot_be_removed(station: CurveStation, bench: Bench) -
     assert bench.book.basis.terms.size == 4
 
 
+def test_quotes_from_elsewhere_that_give_no_curve_can_be_mended(station: CurveStation, bench: Bench) -> None:
+    bench.edit_basis(terms=np.array([1.0, 1.0]), rates=np.array([0.02, 0.03]))
+    station.refresh_now()
+    assert "give no curve" in station.stale_text
+    assert shown(station, 0, "discount") == "–"
+    assert not station.picture.names
+    assert edit(station, 1, "term", "2")
+    station.refresh_now()
+    assert not station.stale_text
+    assert "Zero" in station.picture.names
+
+
 # Pasting
 
 
