@@ -48,8 +48,8 @@ QUOTE_COLUMNS = (
     Column("term", "Term", "years", "years", digits=None, tooltip="Time to maturity.", editable=True),
     Column(
         "rate",
-        "Rate",
-        "% a year, as quoted",
+        "Quoted rate",
+        "% a year",
         "rate",
         digits=3,
         tooltip="The zero rate as the source states it.",
@@ -74,10 +74,10 @@ QUOTE_COLUMNS = (
     Column(
         "forward",
         "Forward to next",
-        "% a year, continuous",
+        "% a year",
         "rate",
         digits=4,
-        tooltip="Rate from this term to the next; at the last term the rate that goes on beyond it.",
+        tooltip="Continuous rate from this term to the next; at the last, the rate that goes on beyond it.",
     ),
 )
 HOW_TO_EDIT = (

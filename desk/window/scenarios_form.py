@@ -236,7 +236,12 @@ class RunForm:
     def _on_model(self, name: ModelName) -> None:
         book = self._book()
         if book is not None:
-            model = suggested_model(name, book.basis, book.rates_model)
+            try:
+                model = suggested_model(name, book.basis, book.rates_model)
+            except ValueError as error:
+                # Only a basis that gives no curve has no rate to begin with.
+                self.model.set_problem(f"{error}.")
+                return
             self._change(f"Model {MODEL_TITLES[name]}", replace(book, rates_model=model))
 
     def _on_item(self, key: str, value: float) -> None:

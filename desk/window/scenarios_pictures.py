@@ -15,7 +15,6 @@ from desk.scenarios.records import Distribution, Histogram, NodeSummary, Simulat
 from desk.scenarios.shapes import account_density, histogram_density, middle_range
 from desk.window import numbers
 from desk.window.plots import Picture
-from desk.window.standing_wording import amount
 from desk.window.theme import ThemeSwitch
 
 __all__ = ["FanPicture", "HistogramPicture", "ValuesPicture", "level_name"]
@@ -77,7 +76,9 @@ class FanPicture(Picture):
         """
         is_account = quantity == "account"
         summary = simulation.savings_account if is_account else simulation.short_rate
-        self._is_logarithmic = logarithmic and is_account and bool((summary.percentile > 0.0).all())
+        shown = summary.percentile
+        can_be = is_account and bool(((shown > 0.0) & np.isfinite(shown)).all())
+        self._is_logarithmic = logarithmic and can_be
         self.clear()
         self._marked = ""
         if is_account:
@@ -277,14 +278,13 @@ class ValuesPicture(Picture):
         if alone and ranges[0][0] < 0.0 < ranges[0][1]:
             self.add_vertical(0.0, "0")
         self.set_range(x=(min(low for low, _ in ranges), max(high for _, high in ranges)))
-        self.set_description(" ".join(_value_sentence(each, currency) for each in distributions))
+        self.set_description(_value_sentence(distributions))
         self.reset_view()
 
 
-def _value_sentence(each: Distribution, currency: str) -> str:
-    mean = f"{amount(each.mean, currency)} ± {amount(each.se, currency)}"
-    if each.name != "surplus":
-        return f"{each.name.capitalize()}: mean {mean}."
-    chance = numbers.rate(each.below_zero, 1, with_unit=True)
-    error = numbers.rate(each.below_zero_se, 1, with_unit=True)
-    return f"Below zero on {chance} ± {error} of the paths; mean {mean}."
+def _value_sentence(distributions: Sequence[Distribution]) -> str:
+    if len(distributions) != 1 or distributions[0].name != "surplus":
+        return "The flows discounted along each path."
+    chance = numbers.rate(distributions[0].below_zero, 1, with_unit=True)
+    error = numbers.rate(distributions[0].below_zero_se, 1, with_unit=True)
+    return f"Below zero on {chance} ± {error} of the paths."

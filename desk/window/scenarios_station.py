@@ -8,7 +8,6 @@ from dataclasses import replace
 from PySide6.QtCore import QSignalBlocker, Qt, QTimer
 from PySide6.QtGui import QKeySequence, QShortcut
 from PySide6.QtWidgets import (
-    QCheckBox,
     QHBoxLayout,
     QLabel,
     QPushButton,
@@ -25,6 +24,7 @@ from desk.window import numbers
 from desk.window.document import Document
 from desk.window.fields import Combo
 from desk.window.jobs import Job, Jobs
+from desk.window.scenarios_boxes import TickBox
 from desk.window.scenarios_form import RunForm
 from desk.window.scenarios_pictures import FanPicture, HistogramPicture, ValuesPicture
 from desk.window.scenarios_tables import PercentilesTable, RepricingTable, ValuesTable, run_sentence
@@ -35,6 +35,8 @@ from desk.window.theme import STEP, WIDE, ThemeSwitch, keep_look
 __all__ = ["ScenariosStation"]
 
 _QUANTITIES = ("account", "rate", "values")
+_SMALL_TABLE = 184
+"""Height of the table of present values with its tabs [px]."""
 _TITLES = ("Savings account", "Short rate", "Present values")
 
 
@@ -60,6 +62,7 @@ class ScenariosStation(Station):
         self._shown_book: Book | None = None
         self._job: Job | None = None
         self._failure = ""
+        self._usual_sizes: list[int] = []
         # Pictures and tables take turns, so that the window never stops for all at once.
         self._waiting: list[Callable[[], None]] = []
         self._filling = QTimer(self, singleShot=True, interval=0)
@@ -93,7 +96,7 @@ class ScenariosStation(Station):
         self.pages.add("percentiles", "Percentiles by year", self.percentiles)
         self.pages.add("repricing", "Check against the curve", self.repricing)
         self.pages.add("values", "Present values", self.values)
-        self.in_full = QCheckBox("Intervals and closed form")
+        self.in_full = TickBox("Intervals and closed form")
         self.in_full.setChecked(True)
         self.pages.add_control(self.in_full)
         self.set_pictures(self.fan, self.histogram, self.sides_picture, self.surplus_picture)
@@ -108,8 +111,8 @@ class ScenariosStation(Station):
         self.quantity = Combo()
         self.quantity.addItems(list(_TITLES))
         self.quantity.setAccessibleName("Shown")
-        self.logarithmic = QCheckBox("Log scale")
-        self.with_paths = QCheckBox("Some paths")
+        self.logarithmic = TickBox("Log scale")
+        self.with_paths = TickBox("Some paths")
         self.slider = QSlider(Qt.Orientation.Horizontal)
         self.slider.setFixedWidth(32 * STEP)
         self.slider.setAccessibleName("Year of the histogram")
@@ -146,7 +149,7 @@ class ScenariosStation(Station):
         for box in (self.logarithmic, self.with_paths):
             box.toggled.connect(lambda _: self._soon(self._draw_fan))
         self.in_full.toggled.connect(lambda _: self._soon(self._fill_table))
-        self.pages.changed.connect(lambda _: self._soon(self._fill_table))
+        self.pages.changed.connect(lambda _: self._soon(self._share_height, self._fill_table))
         self.slider.valueChanged.connect(self.set_year)
         self.fan.year_chosen.connect(lambda year: self.set_year(round(year)))
         self.jobs.progressed.connect(self._on_progress)
@@ -308,6 +311,16 @@ class ScenariosStation(Station):
             self.slider.setRange(1, last)
         self._show_year_chosen()
         self._draw()
+
+    def _share_height(self) -> None:
+        """Give the pictures what a table of three rows does not need."""
+        small = self.shown_quantity == "values" and self.pages.current == "values"
+        if small and not self._usual_sizes:
+            self._usual_sizes = self.main.sizes()
+            self.main.setSizes([sum(self._usual_sizes) - _SMALL_TABLE, _SMALL_TABLE, 0])
+        elif not small and self._usual_sizes:
+            self.main.setSizes(self._usual_sizes)
+            self._usual_sizes = []
 
     def _on_quantity(self) -> None:
         self._show_parts()

@@ -120,10 +120,6 @@ class StandingStation(Station):
             form.add(field)
             field.committed.connect(lambda value, name=name, text=text: self._change(name, value, text))
         self.curve_button = form.add_button("Edit the curve", lambda: self.step_wanted.emit("curve"))
-        form.add_note(
-            "Figures are estimates, not a certified valuation: the local standards that apply and a "
-            "qualified actuary decide."
-        )
 
     # Showing
 

@@ -13,7 +13,7 @@ from pytestqt.qtbot import QtBot
 
 from desk.book import Measure, ModelName
 from desk.scenarios.records import Simulation
-from desk.scenarios.suggestions import MODEL_ITEMS
+from desk.scenarios.suggestions import MODEL_ITEMS, suggested_model
 from desk.window.plot_series import Bars, Line
 from desk.window.scenarios_station import ScenariosStation
 from desk.window.scenarios_tables import RepricingTable
@@ -379,6 +379,37 @@ def test_the_check_against_the_curve_marks_what_is_too_far_off(
     marked = [row for row in range(9) if table.table_model.mark_at(row, place)]
     assert marked == [3]
     dispose(table)
+
+
+@pytest.mark.parametrize("name", [ModelName.HO_LEE, ModelName.CIR])
+def test_rates_that_run_away_are_still_shown(
+    station: ScenariosStation, bench: Bench, qtbot: QtBot, name: ModelName
+) -> None:
+    book = a_fund()
+    model = replace(suggested_model(name, book.basis), volatility=4.0)
+    run_long = replace(book.run, paths=50, horizon_years=120, steps_per_year=1)
+    bench.open(replace(book, rates_model=model, run=run_long))
+    station.refresh_now()
+    simulation = run(station, bench, qtbot)
+    for quantity in (0, 1, 2):
+        station.quantity.setCurrentIndex(quantity)
+        settle(station, qtbot)
+    station.quantity.setCurrentIndex(0)
+    station.logarithmic.setChecked(True)
+    station.set_year(120)
+    settle(station, qtbot)
+    assert station.histogram.title == "Savings account at year 120"
+    assert station.percentiles.table_model.rowCount() == simulation.savings_account.year.size
+
+
+def test_one_path_has_no_errors_to_show(station: ScenariosStation, bench: Bench, qtbot: QtBot) -> None:
+    bench.open(replace(a_fund(), run=replace(a_fund().run, paths=1, horizon_years=1)))
+    station.refresh_now()
+    run(station, bench, qtbot)
+    station.quantity.setCurrentIndex(2)
+    settle(station, qtbot)
+    assert column(station.values, "se") == ["–", "–", "–"]
+    assert (station.slider.minimum(), station.slider.maximum(), station.year) == (1, 1, 1)
 
 
 def test_another_book_starts_from_nothing(station: ScenariosStation, bench: Bench, qtbot: QtBot) -> None:
