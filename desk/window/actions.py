@@ -12,10 +12,10 @@ from PySide6.QtWidgets import QApplication, QMainWindow, QMenu, QWidget
 
 from desk.window.book_files import BookFiles
 from desk.window.document import Document
-from desk.window.icons import icon
+from desk.window.parts.icons import icon
+from desk.window.parts.theme import Theme, ThemeSwitch
 from desk.window.recent import RecentBooks
 from desk.window.stations import StationEntry
-from desk.window.theme import Theme, ThemeSwitch
 from desk.window.welcome import demo_books_there
 
 __all__ = ["Acts", "Menus"]

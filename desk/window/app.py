@@ -73,12 +73,12 @@ def run(path: Path | None) -> int:
         return 1
     from desk.window.document import Document
     from desk.window.errors import ErrorKeeper, start_log
-    from desk.window.icons import app_icon
     from desk.window.jobs import Jobs
     from desk.window.main_window import MainWindow
+    from desk.window.parts.icons import app_icon
+    from desk.window.parts.theme import ThemeSwitch
     from desk.window.settings import Settings
     from desk.window.stations import all_stations
-    from desk.window.theme import ThemeSwitch
 
     app = _application()
     keeper = ErrorKeeper(app, log_path=start_log())

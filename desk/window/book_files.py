@@ -15,7 +15,7 @@ from desk.intake.records import Reading
 from desk.window.dialogs import Choice, Dialogs, documents
 from desk.window.document import Document
 from desk.window.jobs import Job, Jobs
-from desk.window.paths import is_inside, is_same_file
+from desk.window.parts.paths import is_inside, is_same_file
 from desk.window.recent import RecentBooks
 from desk.window.settings import Settings
 

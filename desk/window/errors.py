@@ -37,7 +37,7 @@ from PySide6.QtWidgets import (
 )
 
 from desk import __version__
-from desk.window.theme import GAP, HALF, WIDE, keep_look
+from desk.window.parts.theme import GAP, HALF, WIDE, keep_look
 
 __all__ = ["ErrorDialog", "ErrorKeeper", "log_folder", "start_log", "versions"]
 

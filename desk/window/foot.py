@@ -15,9 +15,9 @@ from PySide6.QtWidgets import (
 )
 
 from desk.report.wording import CAUTION
-from desk.window import numbers
 from desk.window.jobs import Job, Jobs
-from desk.window.theme import GAP, WIDE, ThemeSwitch, keep_look
+from desk.window.parts import numbers
+from desk.window.parts.theme import GAP, WIDE, ThemeSwitch, keep_look
 
 __all__ = ["Foot", "time_left"]
 

@@ -11,11 +11,11 @@ from PySide6.QtGui import QEnterEvent, QFont, QFontMetrics, QKeyEvent, QPainter,
 from PySide6.QtWidgets import QAbstractButton, QHBoxLayout, QSizePolicy, QVBoxLayout, QWidget
 
 from desk.valuation.records import Standing
-from desk.window import numbers
 from desk.window.document import Document
-from desk.window.labels import ElidedLabel
-from desk.window.numbers import Scale
-from desk.window.theme import GAP, HALF, WIDE, Theme, ThemeSwitch, keep_look, mixed, soft_font, tabular
+from desk.window.parts import numbers
+from desk.window.parts.labels import ElidedLabel
+from desk.window.parts.numbers import Scale
+from desk.window.parts.theme import GAP, HALF, WIDE, Theme, ThemeSwitch, keep_look, mixed, soft_font, tabular
 
 __all__ = ["Figure", "FigureButton", "Headline", "figures_of"]
 

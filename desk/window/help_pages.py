@@ -10,8 +10,8 @@ from PySide6.QtWidgets import QDialog, QDialogButtonBox, QTextBrowser, QVBoxLayo
 
 from desk.report.wording import CAUTION
 from desk.window.errors import versions
+from desk.window.parts.theme import GAP, WIDE
 from desk.window.stations import StationEntry
-from desk.window.theme import GAP, WIDE
 
 __all__ = ["HelpPage", "about", "keys", "what_it_does"]
 

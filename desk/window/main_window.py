@@ -12,7 +12,6 @@ from PySide6.QtGui import QCloseEvent, QDragEnterEvent, QDropEvent, QKeySequence
 from PySide6.QtWidgets import QHBoxLayout, QMainWindow, QStackedWidget, QVBoxLayout, QWidget
 
 from desk.intake.records import Reading
-from desk.window import numbers
 from desk.window.actions import Acts, Menus
 from desk.window.book_files import BookFiles
 from desk.window.dialogs import Dialogs
@@ -21,13 +20,14 @@ from desk.window.foot import Foot
 from desk.window.headline import Headline
 from desk.window.help_pages import HelpPage, about, keys, what_it_does
 from desk.window.jobs import Jobs
-from desk.window.panes import Pane, focus_first, next_pane, restore_geometry
+from desk.window.parts import numbers
+from desk.window.parts.panes import Pane, focus_first, next_pane, restore_geometry
+from desk.window.parts.theme import ThemeSwitch
 from desk.window.rail import Rail
 from desk.window.recent import RecentBooks
 from desk.window.settings import Settings
 from desk.window.station import Station
 from desk.window.stations import StationEntry
-from desk.window.theme import ThemeSwitch
 from desk.window.welcome import Welcome
 
 __all__ = ["MainWindow", "RemembersSettings"]

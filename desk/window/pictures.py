@@ -22,8 +22,8 @@ from desk.scenarios.records import Simulation
 from desk.valuation.records import Standing
 from desk.window.document import Document
 from desk.window.jobs import Jobs
+from desk.window.parts.theme import ThemeSwitch
 from desk.window.stations import all_stations
-from desk.window.theme import ThemeSwitch
 
 if TYPE_CHECKING:
     from desk.window.main_window import MainWindow
@@ -90,7 +90,7 @@ def draw_all(reading: Reading, standing: Standing, simulation: Simulation | None
 
 def _draw_station(station: Station, jobs: Jobs, folder: Path) -> list[Path]:
     """The pictures of one station."""
-    from desk.window.plots import Picture
+    from desk.window.parts.plots import Picture
 
     station.setAttribute(Qt.WidgetAttribute.WA_DontShowOnScreen)
     station.show()

@@ -6,8 +6,8 @@ from PySide6.QtCore import QEvent, QRect, QRectF, QSize, Qt, Signal
 from PySide6.QtGui import QEnterEvent, QFontMetrics, QKeyEvent, QPainter, QPaintEvent, QPen
 from PySide6.QtWidgets import QAbstractButton, QButtonGroup, QSizePolicy, QVBoxLayout, QWidget
 
-from desk.window.icons import paint_icon
-from desk.window.theme import GAP, HALF, STEP, WIDE, Theme, ThemeSwitch, mixed, soft_font, strong_font
+from desk.window.parts.icons import paint_icon
+from desk.window.parts.theme import GAP, HALF, STEP, WIDE, Theme, ThemeSwitch, mixed, soft_font, strong_font
 
 __all__ = ["Rail", "RailButton"]
 

@@ -19,10 +19,10 @@ from PySide6.QtWidgets import (
 )
 
 from desk.window.document import Document
-from desk.window.fields import FORM_WIDTH, Form
 from desk.window.jobs import Jobs
-from desk.window.labels import ElidedLabel
-from desk.window.theme import GAP, HALF, STEP, WIDE, ThemeSwitch, keep_look
+from desk.window.parts.fields import FORM_WIDTH, Form
+from desk.window.parts.labels import ElidedLabel
+from desk.window.parts.theme import GAP, HALF, STEP, WIDE, ThemeSwitch, keep_look
 
 __all__ = ["STALE", "Station"]
 

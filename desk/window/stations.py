@@ -33,31 +33,31 @@ class StationEntry:
 
 
 def _intake() -> type[Station]:
-    from desk.window.intake_station import IntakeStation
+    from desk.window.intake.station import IntakeStation
 
     return IntakeStation
 
 
 def _curve() -> type[Station]:
-    from desk.window.curve_station import CurveStation
+    from desk.window.curve.station import CurveStation
 
     return CurveStation
 
 
 def _standing() -> type[Station]:
-    from desk.window.standing_station import StandingStation
+    from desk.window.standing.station import StandingStation
 
     return StandingStation
 
 
 def _scenarios() -> type[Station]:
-    from desk.window.scenarios_station import ScenariosStation
+    from desk.window.scenarios.station import ScenariosStation
 
     return ScenariosStation
 
 
 def _report() -> type[Station]:
-    from desk.window.report_station import ReportStation
+    from desk.window.report.station import ReportStation
 
     return ReportStation
 

@@ -22,9 +22,9 @@ from PySide6.QtWidgets import (
 )
 
 from desk.places import demo_books
-from desk.window.labels import ElidedLabel
+from desk.window.parts.labels import ElidedLabel
+from desk.window.parts.theme import GAP, HALF, STEP, WIDE, ThemeSwitch, keep_look, soft_font, strong_font
 from desk.window.recent import RecentBooks
-from desk.window.theme import GAP, HALF, STEP, WIDE, ThemeSwitch, keep_look, soft_font, strong_font
 
 __all__ = ["DEMO_BOOKS", "DemoBook", "DemoCard", "Welcome", "demo_books_there"]
 

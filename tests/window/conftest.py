@@ -14,7 +14,7 @@ from PySide6.QtCore import QLocale
 from PySide6.QtWidgets import QApplication
 from pytestqt.qtbot import QtBot
 
-from desk.window.theme import ThemeSwitch
+from desk.window.parts.theme import ThemeSwitch
 from tests.window.frame import Frame
 
 

@@ -21,10 +21,10 @@ from desk.window.dialogs import Choice, Dialogs
 from desk.window.document import Document
 from desk.window.jobs import Jobs
 from desk.window.main_window import MainWindow
+from desk.window.parts.theme import ThemeSwitch
 from desk.window.settings import Settings
 from desk.window.station import Station
 from desk.window.stations import StationEntry
-from desk.window.theme import ThemeSwitch
 
 VALUATION_DATE = date(2031, 3, 31)
 

@@ -13,9 +13,9 @@ from PySide6.QtSvg import QSvgRenderer
 
 from desk.places import resources
 from desk.window import app
-from desk.window.icons import app_icon, icon
+from desk.window.parts.icons import app_icon, icon
+from desk.window.parts.theme import DARK, LIGHT, Theme
 from desk.window.stations import all_stations
-from desk.window.theme import DARK, LIGHT, Theme
 
 
 def test_this_build_of_qt_keeps_its_references() -> None:

@@ -12,7 +12,7 @@ from desk.report.wording import CAUTION
 from desk.tasks import Cancelled
 from desk.window.foot import Foot, time_left
 from desk.window.jobs import Jobs
-from desk.window.theme import ThemeSwitch
+from desk.window.parts.theme import ThemeSwitch
 
 
 @pytest.fixture

@@ -15,9 +15,9 @@ from pytestqt.qtbot import QtBot
 from desk.report.wording import CAUTION
 from desk.window.dialogs import Choice
 from desk.window.help_pages import HelpPage
+from desk.window.parts.theme import ThemeSwitch
 from desk.window.rail import RailButton
 from desk.window.stations import all_stations
-from desk.window.theme import ThemeSwitch
 from tests.window.frame import GRAVE, MILD, Frame, PlainStation, a_book, a_reading
 
 

@@ -10,8 +10,8 @@ from pytestqt.qtbot import QtBot
 
 from desk.window.document import Document
 from desk.window.jobs import Jobs
+from desk.window.parts.theme import ThemeSwitch
 from desk.window.station import STALE, Station
-from desk.window.theme import ThemeSwitch
 
 
 class Counting(Station):

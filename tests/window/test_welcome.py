@@ -12,9 +12,9 @@ from PySide6.QtTest import QTest
 from pytestqt.qtbot import QtBot
 
 from desk.window.jobs import Jobs
+from desk.window.parts.theme import GAP, WIDE, ThemeSwitch
 from desk.window.recent import RecentBooks
 from desk.window.settings import Settings
-from desk.window.theme import GAP, WIDE, ThemeSwitch
 from desk.window.welcome import DEMO_BOOKS, Welcome, demo_books_there
 
 

@@ -16,10 +16,10 @@ from desk.report.as_json import simulation_object, standing_object
 from desk.window.document import Document
 from desk.window.jobs import Jobs
 from desk.window.main_window import MainWindow
-from desk.window.report_station import ReportStation
+from desk.window.parts.theme import ThemeSwitch
+from desk.window.report.station import ReportStation
 from desk.window.settings import Settings
 from desk.window.stations import all_stations
-from desk.window.theme import ThemeSwitch
 
 DEMO_BOOKS = sorted(path.name for path in demo_books().glob("*.xlsx"))
 PATIENCE = 60_000
@@ -46,10 +46,10 @@ def window(qtbot: QtBot, tmp_path: Path, theme_switch: ThemeSwitch) -> Iterator[
     jobs.shutdown()
 
 
-def cells_of(path: Path) -> dict[str, list[tuple[object, ...]]]:
+def cells_of(path: Path) -> dict[str, list[object]]:
     """Every sheet's cells but those of the provenance, which tell when and from where."""
     workbook = openpyxl.load_workbook(path)
-    sheets = {
+    sheets: dict[str, list[object]] = {
         sheet.title: [tuple(row) for row in sheet.iter_rows(values_only=True)]
         for sheet in workbook.worksheets
         if sheet.title != "Provenance"

@@ -1,0 +1,152 @@
+"""Edits of the quotes of a curve: what is wrong with them, and what a spreadsheet's cells make of them."""
+
+from __future__ import annotations
+
+from collections.abc import Sequence
+from dataclasses import dataclass
+
+import numpy as np
+
+from desk.book.arrays import FloatArray
+from desk.rates.compounding import Compounding, from_continuous
+from desk.rates.curve import Curve
+from desk.window.parts import numbers
+
+__all__ = ["Pasted", "merged", "new_quote", "quotes_fault", "read_cells"]
+
+_MOST_SHOWN = 6
+_MOST_ROWS = 10_000
+_LONGEST = 24
+
+
+def quotes_fault(terms: FloatArray, rates: FloatArray, compounding: Compounding) -> str:
+    """Why these quotes make no curve, in one line for the reader; empty where they make one."""
+    if not terms.size:
+        return "A curve needs at least one quote."
+    if not (np.isfinite(terms).all() and np.isfinite(rates).all()):
+        return "Every quote needs a term and a rate."
+    if (terms <= 0.0).any():
+        bad = float(terms[terms <= 0.0][0])
+        return f"A term must be above 0 years, not {numbers.exact(bad)}."
+    steps = np.diff(terms)
+    if (steps == 0.0).any():
+        twice = float(terms[:-1][steps == 0.0][0])
+        return f"The term {numbers.exact(twice)} years would stand twice."
+    if (steps < 0.0).any():
+        place = int(np.flatnonzero(steps < 0.0)[0])
+        after, before = float(terms[place + 1]), float(terms[place])
+        return (
+            f"Terms must rise: {numbers.exact(after)} years would come after {numbers.exact(before)} years."
+        )
+    least = -compounding.per_year
+    if compounding is not Compounding.CONTINUOUS and (rates <= least).any():
+        return (
+            f"A rate compounded {compounding} must be above {numbers.rate(float(least), 0, with_unit=True)}."
+        )
+    return ""
+
+
+@dataclass(frozen=True)
+class Pasted:
+    """What pasted cells hold.
+
+    Attributes
+    ----------
+    columns : dict of str to list of float
+        ``term`` or ``rate`` or both, of one length.
+    faults : tuple of str
+        Each cell that holds no number, with its place among the pasted ones.
+    """
+
+    columns: dict[str, list[float]]
+    faults: tuple[str, ...]
+
+    @property
+    def fault(self) -> str:
+        """All the faults in one text; empty where there is none."""
+        if not self.faults:
+            return ""
+        more = len(self.faults) - _MOST_SHOWN
+        tail = f" And {more} more." if more > 0 else ""
+        return " ".join(self.faults[:_MOST_SHOWN]) + tail
+
+
+def read_cells(grid: Sequence[Sequence[str]], first: str) -> Pasted:
+    """Read cells that were copied from a spreadsheet.
+
+    Parameters
+    ----------
+    grid : sequence of rows of texts
+        A first row of words is taken for headings. Empty rows are left out.
+    first : str
+        ``term`` or ``rate``: where the first column goes. Terms are in years, rates in percent, with or
+        without its sign.
+    """
+    keys: tuple[str, ...] = ("term", "rate") if first == "term" else ("rate",)
+    wide = max((len(row) for row in grid), default=0)
+    keys = keys[:wide]
+    columns: dict[str, list[float]] = {key: [] for key in keys}
+    faults = []
+    if wide > len(keys):
+        what = "a term and a rate" if len(keys) == 2 else "a rate"
+        faults.append(f"There are {wide} columns where a row needs {what}.")
+    if len(grid) > _MOST_ROWS:
+        faults.append(f"There are {numbers.integer(len(grid))} rows: too many for a curve.")
+        return Pasted({}, tuple(faults))
+    for place, row in enumerate(grid):
+        cells = [(row[column] if column < len(row) else "").strip() for column in range(len(keys))]
+        if not any(cells) or (place == 0 and _are_words(cells)):
+            continue
+        for key, text in zip(keys, cells, strict=True):
+            value = numbers.parse_number(text) if key == "term" else numbers.parse_rate(text)
+            if value is None:
+                found = f"“{text[:_LONGEST]}” is no {key}" if text else f"the {key} is missing"
+                faults.append(f"Row {place + 1}: {found}.")
+            columns[key].append(np.nan if value is None else value)
+    if not faults and not any(columns.values()):
+        faults.append("There is no quote among what was pasted.")
+    return Pasted(columns, tuple(faults))
+
+
+def _are_words(cells: Sequence[str]) -> bool:
+    return all(text and not any(mark.isdigit() for mark in text) for text in cells)
+
+
+def merged(
+    terms: FloatArray, rates: FloatArray, pasted: Pasted, start: int
+) -> tuple[FloatArray, FloatArray, str]:
+    """The quotes with pasted ones over them from row `start` on, and further ones after the last.
+
+    Returns
+    -------
+    terms, rates : ndarray
+    fault : str
+        Why they do not go in; empty where they do.
+    """
+    count = max((len(values) for values in pasted.columns.values()), default=0)
+    beyond = start + count - terms.size
+    if beyond > 0 and len(pasted.columns) < 2:
+        return terms, rates, f"There are {numbers.integer(count)} figures for fewer rows from here on."
+    grown = [np.append(values, np.full(max(beyond, 0), np.nan)) for values in (terms, rates)]
+    for values, key in zip(grown, ("term", "rate"), strict=True):
+        if key in pasted.columns:
+            values[start : start + count] = pasted.columns[key]
+    return grown[0], grown[1], ""
+
+
+def new_quote(curve: Curve, compounding: Compounding, after: int) -> tuple[float, float]:
+    """A term and a rate to add after a quote: on the curve, so that it hardly moves.
+
+    Between two terms it is the middle, to hundredths of a year where there is room; after the last one it is
+    as far beyond as that is beyond the one before.
+    """
+    terms = curve.terms
+    if after < terms.size - 1:
+        low, high = float(terms[after]), float(terms[after + 1])
+        term = (low + high) / 2
+        rounded = round(term, 2)
+        term = rounded if low < rounded < high else term
+    else:
+        step = float(terms[-1] - terms[-2]) if terms.size > 1 else float(terms[-1])
+        term = float(terms[-1]) + step
+    return term, float(from_continuous(curve.zero(term), compounding))

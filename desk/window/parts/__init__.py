@@ -1,0 +1,1 @@
+"""Shared widgets: tables, pictures, fields, the look."""

@@ -1,0 +1,138 @@
+"""How the headings and cells of a table are drawn."""
+
+from __future__ import annotations
+
+from typing import TYPE_CHECKING
+
+from PySide6.QtCore import QPoint, QRect, QSize, Qt
+from PySide6.QtGui import QFontMetrics, QPainter, QPaintEvent, QPolygon
+from PySide6.QtWidgets import QHeaderView, QStyle, QStyledItemDelegate, QStyleOptionViewItem
+
+from desk.window.parts.columns import Mark
+from desk.window.parts.table_model import Index
+from desk.window.parts.theme import GAP, HALF, Theme, mixed, soft_font, strong_font
+
+if TYPE_CHECKING:
+    from desk.window.parts.tables import Table
+
+__all__ = ["Cells", "Header", "paint_mark"]
+
+
+class Header(QHeaderView):
+    """Headings in two lines: the name, and under it, softer, the unit."""
+
+    def __init__(self, table: Table) -> None:
+        super().__init__(Qt.Orientation.Horizontal, table)
+        self._table = table
+        self.setSectionsClickable(True)
+        self.setHighlightSections(False)
+        self.setSortIndicatorShown(True)
+        self.setSortIndicatorClearable(True)
+        self.setStretchLastSection(False)
+        self.setMinimumSectionSize(36)
+
+    def sizeHint(self) -> QSize:
+        """High enough for both lines, or for one where no column has a unit."""
+        name = QFontMetrics(strong_font(self.font())).height()
+        has_units = any(column.shown_unit for column in self._table.table_model.columns)
+        unit = QFontMetrics(soft_font(self.font())).height() if has_units else 0
+        return QSize(super().sizeHint().width(), name + unit + GAP)
+
+    def paintSection(self, painter: QPainter, rect: QRect, section: int) -> None:
+        """Draw one heading."""
+        theme, column = self._table.theme, self._table.table_model.columns[section]
+        side = Qt.AlignmentFlag.AlignRight if column.is_numeric else Qt.AlignmentFlag.AlignLeft
+        painter.save()
+        painter.fillRect(rect, theme.surface)
+        inner = rect.adjusted(GAP, HALF, -GAP, -HALF)
+        name_font, unit_font = strong_font(self.font()), soft_font(self.font())
+        name_metrics = QFontMetrics(name_font)
+        if self.sortIndicatorSection() == section:
+            self._paint_arrow(painter, inner, name_metrics.height(), column.is_numeric)
+            inner_name = inner.adjusted(12, 0, 0, 0) if column.is_numeric else inner.adjusted(0, 0, -12, 0)
+        else:
+            inner_name = inner
+        painter.setFont(name_font)
+        painter.setPen(theme.ink)
+        shown = name_metrics.elidedText(column.heading, Qt.TextElideMode.ElideRight, inner_name.width())
+        painter.drawText(inner_name, int(side | Qt.AlignmentFlag.AlignTop), shown)
+        painter.setFont(unit_font)
+        painter.setPen(theme.ink_soft)
+        unit = QFontMetrics(unit_font).elidedText(
+            column.shown_unit, Qt.TextElideMode.ElideRight, inner.width()
+        )
+        painter.drawText(inner, int(side | Qt.AlignmentFlag.AlignBottom), unit)
+        painter.setPen(mixed(theme.hairline, theme.ink_soft, 0.4))
+        painter.drawLine(rect.bottomLeft(), rect.bottomRight())
+        painter.restore()
+
+    def _paint_arrow(self, painter: QPainter, inner: QRect, height: int, at_left: bool) -> None:
+        x = inner.left() + 4 if at_left else inner.right() - 4
+        y = inner.top() + height // 2
+        tip = -3 if self.sortIndicatorOrder() is Qt.SortOrder.AscendingOrder else 3
+        painter.setPen(Qt.PenStyle.NoPen)
+        painter.setBrush(self._table.theme.ink_soft)
+        painter.drawPolygon(QPolygon([QPoint(x - 4, y - tip), QPoint(x + 4, y - tip), QPoint(x, y + tip)]))
+
+    def paintEvent(self, event: QPaintEvent) -> None:
+        """Carry the ground and the line on beyond the last heading."""
+        super().paintEvent(event)
+        rest = self.viewport().rect()
+        if self.count():
+            last = self.logicalIndex(self.count() - 1)
+            rest.setLeft(self.sectionViewportPosition(last) + self.sectionSize(last))
+        if rest.width() > 0:
+            painter = QPainter(self.viewport())
+            painter.fillRect(rest, self._table.theme.surface)
+            painter.setPen(mixed(self._table.theme.hairline, self._table.theme.ink_soft, 0.4))
+            painter.drawLine(rest.bottomLeft(), rest.bottomRight())
+
+
+class Cells(QStyledItemDelegate):
+    """Cells with a hairline under each, emphasis, and the marks of faults."""
+
+    def __init__(self, table: Table) -> None:
+        super().__init__(table)
+        self._table = table
+
+    def paint(self, painter: QPainter, option: QStyleOptionViewItem, index: Index) -> None:
+        """Draw one cell."""
+        theme, model = self._table.theme, self._table.table_model
+        rect = option.rect
+        state = option.state
+        row, place = index.row(), index.column()
+        column = model.columns[place]
+        chosen = bool(state & QStyle.StateFlag.State_Selected)
+        mark = model.mark_at(row, place)
+        painter.save()
+        if chosen:
+            part = 0.28 if self._table.hasFocus() else 0.14
+            painter.fillRect(rect, mixed(theme.surface, theme.accent, part))
+        elif mark is not None:
+            painter.fillRect(rect, mixed(theme.surface, theme.grave if mark.grave else theme.mild, 0.10))
+        painter.setFont(self._table.strong_font if model.is_strong(row) else self._table.font())
+        painter.setPen(theme.ink)
+        side = Qt.AlignmentFlag.AlignRight if column.is_numeric else Qt.AlignmentFlag.AlignLeft
+        inner = rect.adjusted(GAP, 0, -GAP, -1)
+        text = str(model.data(index))
+        shown = painter.fontMetrics().elidedText(text, Qt.TextElideMode.ElideRight, inner.width())
+        painter.drawText(inner, int(side | Qt.AlignmentFlag.AlignVCenter), shown)
+        painter.setPen(theme.hairline)
+        painter.drawLine(rect.bottomLeft(), rect.bottomRight())
+        if mark is not None:
+            paint_mark(painter, rect, mark, theme)
+        if bool(state & QStyle.StateFlag.State_HasFocus) and self._table.hasFocus():
+            painter.setPen(theme.focus)
+            painter.setBrush(Qt.BrushStyle.NoBrush)
+            painter.drawRect(rect.adjusted(0, 0, -1, -1))
+        painter.restore()
+
+
+def paint_mark(painter: QPainter, rect: QRect, mark: Mark, theme: Theme) -> None:
+    """Mark a cell. Grave is a filled corner, mild an open one: told apart without their colours."""
+    corner = rect.topLeft()
+    shape = QPolygon([corner, corner + QPoint(8, 0), corner + QPoint(0, 8)])
+    colour = theme.grave if mark.grave else theme.mild
+    painter.setPen(colour)
+    painter.setBrush(colour if mark.grave else theme.surface)
+    painter.drawPolygon(shape)

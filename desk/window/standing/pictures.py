@@ -1,0 +1,122 @@
+"""The pictures of the standing: flows of both sides by year, and DV01 by key rate."""
+
+from __future__ import annotations
+
+import numpy as np
+
+from desk.book.arrays import FloatArray
+from desk.valuation.estimates import key_rate_gap
+from desk.valuation.records import KeyRates, Periods
+from desk.window.parts import numbers
+from desk.window.parts.plots import Picture
+from desk.window.parts.theme import ThemeSwitch
+from desk.window.standing.wording import amount
+
+__all__ = ["FlowPicture", "KeyRatePicture"]
+
+_CUMULATIVE = "Cumulative net"
+
+
+class FlowPicture(Picture):
+    """Flows by year, assets up and liabilities down, with the cumulative net on an axis of its own.
+
+    Both axes have their zero on one line.
+    """
+
+    def __init__(self, theme_switch: ThemeSwitch) -> None:
+        super().__init__("Flows of both sides by year", theme_switch)
+
+    def show_periods(self, periods: Periods, currency: str) -> None:
+        """Draw the periods of a standing."""
+        self.set_axes("Year", "", "", currency, y_kind="money", with_zero=True)
+        self.set_right_axis("Cumulative", currency, kind="money")
+        self.add_bars("Assets", periods.year, periods.assets, "assets", width=0.72)
+        self.add_bars("Liabilities", periods.year, -periods.liabilities, "liabilities", width=0.72)
+        self.add_line(_CUMULATIVE, periods.year, periods.cumulative, "surplus", right=True)
+        self.set_description(_flow_sentence(periods, currency))
+
+    def readings_at(self, x: float) -> list[tuple[str, str]]:
+        """Each value with its own unit: the two axes may differ in theirs."""
+        return [
+            (name, f"{(scale := self._right if series.on_right else self._y).text(value)} {scale.shown_unit}")
+            for series in self._series.values()
+            for name, value in series.readings(x)
+        ]
+
+    def settle(self) -> None:
+        """Bring the picture up to date, both zeros on one line."""
+        super().settle()
+        if self._home is None or not self._has_right:
+            return
+        spans = [self._span(on_right=side) for side in (False, True)]
+        low_1, high_1 = _around_zero(*spans[0], below=_below(spans))
+        low_2, high_2 = _around_zero(*spans[1], below=_below(spans))
+        self._home = (self._home[0], self._home[1], low_1, high_1)
+        self._home_right = (low_2, high_2)
+        self._right_box.setYRange(low_2, high_2, padding=0)
+        if self._is_home:
+            self._go_home()
+        self._place_names()
+
+    def _span(self, *, on_right: bool) -> tuple[float, float]:
+        """The least and the greatest value on one axis, zero among them."""
+        extents = [each.extent() for each in self._series.values() if each.on_right == on_right]
+        values = np.array([[0.0, 0.0], *(extent[2:] for extent in extents)])
+        return float(np.nanmin(values)), float(np.nanmax(values))
+
+
+def _below(spans: list[tuple[float, float]]) -> float:
+    """The part of the height under zero that suits all of `spans` best."""
+    shares = [-low / (high - low) for low, high in spans if high > low]
+    if not shares:
+        return 0.5
+    return float(np.clip(np.mean(shares), min(0.25, *shares), max(0.75, *shares)))
+
+
+def _around_zero(low: float, high: float, *, below: float) -> tuple[float, float]:
+    """A range that holds `low` to `high`, with this part of it under zero."""
+    needed = [size / part for size, part in ((-low, below), (high, 1.0 - below)) if part > 0.0]
+    whole = 1.06 * max(needed, default=0.0) or 1.0
+    return -below * whole, (1.0 - below) * whole
+
+
+def _flow_sentence(periods: Periods, currency: str) -> str:
+    if not periods.year.size:
+        return "There are no flows after the valuation date."
+    lowest = int(periods.cumulative.argmin())
+    value = float(periods.cumulative[lowest])
+    if value >= 0.0:
+        return "Undiscounted. Receipts so far cover payments so far in every year."
+    year = int(periods.year[lowest])
+    return f"Undiscounted. Cumulative net lowest in year {year}: {amount(value, currency)}."
+
+
+class KeyRatePicture(Picture):
+    """DV01 of both sides and the gap at each key rate."""
+
+    def __init__(self, theme_switch: ThemeSwitch) -> None:
+        super().__init__("DV01 by key rate", theme_switch)
+
+    def show_key_rates(self, key_rates: KeyRates, currency: str) -> None:
+        """Draw the key rates of a standing."""
+        place = np.arange(key_rates.term.size, dtype=float)
+        gap = key_rate_gap(key_rates)
+        self.set_axes("Key rate", "years", "DV01", currency, y_kind="money", with_zero=True)
+        self.set_x_names(
+            {float(at): numbers.exact(float(term)) for at, term in zip(place, key_rates.term, strict=True)}
+        )
+        for name, heights, role, offset in (
+            ("Assets", key_rates.dv01_assets, "assets", -0.27),
+            ("Liabilities", key_rates.dv01_liabilities, "liabilities", 0.0),
+            ("Gap", gap, "surplus", 0.27),
+        ):
+            self.add_bars(name, place, heights, role, width=0.25, offset=offset)
+        self.set_description(_key_sentence(key_rates, gap, currency))
+
+
+def _key_sentence(key_rates: KeyRates, gap: FloatArray, currency: str) -> str:
+    if not np.any(gap):
+        return "For +1 basis point at each key rate. There is no gap."
+    widest = int(np.abs(gap).argmax())
+    term = numbers.exact(float(key_rates.term[widest]))
+    return f"For +1 basis point each. Widest gap at {term} years: {amount(float(gap[widest]), currency)}."
