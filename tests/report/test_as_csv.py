@@ -33,7 +33,7 @@ def test_text_that_looks_like_a_formula_is_escaped(start: str) -> None:
         (True, "true"),
         (date(2026, 3, 31), "2026-03-31"),
         (np.datetime64("2026-03-31"), "2026-03-31"),
-        (np.datetime64("NaT"), ""),
+        (np.datetime64("NaT", "D"), ""),
         ("plain", "plain"),
         ("", ""),
     ],

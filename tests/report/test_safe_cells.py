@@ -119,7 +119,7 @@ def test_dates(tmp_path: Path) -> None:
     days = [date(1900, 3, 1), date(2026, 9, 30), date(2030, 1, 2), date(9999, 12, 31)]
     assert _read_back(_column(tmp_path / "a.xlsx", values, put)) == days
     cell = Workbook().worksheets[0]["A1"]
-    assert put_date(cell, np.datetime64("NaT")).value is None
+    assert put_date(cell, np.datetime64("NaT", "D")).value is None
     with pytest.raises(ValueError, match="before 1900-03-01"):
         put_date(cell, date(1900, 2, 28))
 

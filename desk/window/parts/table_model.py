@@ -27,7 +27,7 @@ def plain_column(values: Values, column: Column) -> NDArray[Any]:
         return np.array([np.nan if value is None else value for value in values], dtype=np.float64)
     if column.kind == "date":
         return np.array(
-            [np.datetime64("NaT") if value is None else value for value in values], "datetime64[D]"
+            [np.datetime64("NaT", "D") if value is None else value for value in values], "datetime64[D]"
         )
     array = np.empty(len(values), dtype=object)
     array[:] = list(values)

@@ -46,7 +46,7 @@ def test_figures_are_grouped_with_a_true_minus() -> None:
 def test_no_value_is_an_en_dash_and_nothing_has_no_sign() -> None:
     for shown in (money(None), money(math.nan), rate(math.nan), numbers.day(None)):
         assert shown == "–"
-    assert numbers.day(np.datetime64("NaT")) == "–"
+    assert numbers.day(np.datetime64("NaT", "D")) == "–"
     assert number(math.inf) == "∞"
     assert number(-math.inf) == "−∞"
     assert number(-0.001, 2, locale=ENGLISH) == "0.00"
