@@ -88,6 +88,8 @@ def _pieces(value: Any) -> Iterator[bytes]:
     elif isinstance(value, np.ndarray):
         yield repr((value.dtype.str, value.shape)).encode()
         yield value.tobytes()
+    elif isinstance(value, tuple) and value and all(type(entry) is Holding for entry in value):
+        yield from _holding_pieces(value)
     elif isinstance(value, tuple):
         yield f"tuple {len(value)}".encode()
         for entry in value:
@@ -96,3 +98,25 @@ def _pieces(value: Any) -> Iterator[bytes]:
         yield repr(float(value)).encode()  # 5 and 5.0 are equal, and so are books that hold them
     else:
         yield repr(value).encode()
+
+
+def _holding_pieces(holdings: tuple[Holding, ...]) -> Iterator[bytes]:
+    """The contents of holdings by column: there may be many, and a column is quick to write."""
+    yield f"holdings {len(holdings)}".encode()
+    for item in fields(Holding):
+        column = [getattr(holding, item.name) for holding in holdings]
+        yield item.name.encode()
+        types = set(map(type, column))
+        if types <= {float, int, type(None)} and _fit_floats(column, types):
+            missing = np.array([entry is None for entry in column], dtype=np.bool_)
+            yield missing.tobytes()
+            yield (np.array(column, dtype=np.float64) + 0.0).tobytes()  # a negative zero equals zero
+        else:
+            yield repr(column).encode()
+
+
+def _fit_floats(column: list[float | None], types: set[type]) -> bool:
+    """Whether every whole number of a column is a float too."""
+    if int not in types:
+        return True
+    return all(not isinstance(entry, int) or abs(entry) <= 2**53 for entry in column)

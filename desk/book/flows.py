@@ -116,9 +116,11 @@ class FlowTable:
 class PricedFlows:
     """The future flows of one side with the spread at which each is discounted.
 
-    A row is worth ``amount · P(0, time) · exp(-spread · time)`` today. A fund, which has no flows,
-    stands here as one row at its stated duration that is worth its market value on the book's curve;
-    a deposit is a row at time 0.
+    A row is worth ``amount · P(0, time) · exp(-spread · time)`` today. A fund or property, which has no
+    flows, stands here as one row at its stated duration that is worth its market value on the book's curve;
+    a deposit is a row at time 0. Floating interest stands here as the fixed amounts that replicate it on any
+    curve (see `desk.valuation.floating`), so that the rows keep their meaning when rates move; what is
+    expected to be paid on today's curve stands beside them.
 
     Attributes
     ----------
@@ -135,6 +137,9 @@ class PricedFlows:
         Continuously compounded spread over the curve [1/year].
     is_flow : ndarray of bool, shape (n,)
         False for the row that stands for a fund: it is no payment and no period shows it.
+    payment : ndarray, shape (n,), optional
+        What the row pays, as projected on today's curve [currency]; by default its amount. By line the two
+        are worth the same.
     """
 
     side: Side
@@ -144,6 +149,7 @@ class PricedFlows:
     amount: FloatArray
     spread: FloatArray
     is_flow: NDArray[np.bool_]
+    payment: FloatArray | None = None
 
     def __post_init__(self) -> None:
         """Own the arrays and check that they go together."""
@@ -159,10 +165,19 @@ class PricedFlows:
             array.shape != shape for array in (self.line, self.amount, self.spread, self.is_flow)
         ):
             raise ValueError("`line`, `time`, `amount`, `spread` and `is_flow` must be of one length")
+        if self.payment is not None:
+            object.__setattr__(self, "payment", owned_floats(self.payment))
+            if self.paid.shape != shape:
+                raise ValueError("`payment` must be of the length of `amount`")
 
     def __len__(self) -> int:
         """Number of rows."""
         return int(self.time.size)
+
+    @property
+    def paid(self) -> FloatArray:
+        """What each row pays, as projected on today's curve, shape (n,) [currency]."""
+        return self.amount if self.payment is None else self.payment
 
     @property
     def spread_discounted(self) -> FloatArray:

@@ -26,7 +26,7 @@ def line_flows(book: Book, side: Side, line_number: int) -> FlowDetail:
     -------
     FlowDetail
         In the order of the book; the present values add up to that of the line. A fund shows the one row
-        that stands for it.
+        that stands for it; floating interest as it is projected today.
 
     Raises
     ------
@@ -40,7 +40,7 @@ def line_flows(book: Book, side: Side, line_number: int) -> FlowDetail:
     if not 0 <= line_number < len(flows.line_names):
         raise IndexError(f"`line_number` must be from 0 to {len(flows.line_names) - 1}, not {line_number}")
     kept = flows.line == line_number
-    rows = value_rows(flows.time[kept], flows.amount[kept], curve=book.basis.curve, spread=flows.spread[kept])
+    rows = value_rows(flows.time[kept], flows.paid[kept], curve=book.basis.curve, spread=flows.spread[kept])
     return FlowDetail(
         date=priced.date[kept],
         time=rows.time,

@@ -7,10 +7,9 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import NDArray
 
-from desk.book import Book, Fault, FlowTable, Holding, HoldingKind, PricedFlows, Severity, Side
+from desk.book import Book, Fault, FlowTable, PricedFlows, Severity, Side
 from desk.book.arrays import FloatArray
-from desk.book.schedule import holding_flows
-from desk.valuation.spread import solve_spreads
+from desk.valuation.holdings import STATED_KINDS, price_holdings
 
 __all__ = ["PricedSide", "priced_flows"]
 
@@ -26,11 +25,16 @@ class PricedSide:
         Of each row of `flows`; NaT where there is none.
     faults : tuple of Fault
         What could not be done as asked, all of the mild kind.
+    stated_value, credit_loss : ndarray, shape (k,)
+        Of each line: what the source says it is worth, and what expected default takes off its value
+        [currency]; NaN where there is no such figure.
     """
 
     flows: PricedFlows
     date: NDArray[np.datetime64]
     faults: tuple[Fault, ...]
+    stated_value: FloatArray
+    credit_loss: FloatArray
 
 
 def priced_flows(book: Book, side: Side) -> PricedSide:
@@ -46,11 +50,10 @@ def priced_flows(book: Book, side: Side) -> PricedSide:
     PricedSide
         Liabilities: the lines of the book's table, each row at the liability spread plus its beta times
         the market risk premium. Assets: each holding is a line, in order and by position, so that
-        holdings of one name stay apart; then the lines of ready-made flows, at no spread. A bond or zero
-        with a market value is discounted at the spread that gives that value, else at no spread. A
-        deposit is a flow today of its market value if it has one, else of its nominal. A fund is one row
-        at its stated duration, 0 by default, worth its market value. Rows on or before the valuation date
-        are left out.
+        holdings of one name stay apart; then the lines of ready-made flows, at no spread. How holdings are
+        priced stands with `desk.valuation.holdings.price_holdings`. A deposit is a flow today of its market
+        value if it has one, else of its nominal. A fund or property is one row at its stated duration, 0 by
+        default, worth its market value. Rows on or before the valuation date are left out.
 
     Raises
     ------
@@ -90,36 +93,19 @@ def _liabilities(book: Book) -> PricedSide:
         spread=basis.liability_spread + table.beta[kept] * basis.market_risk_premium,
         is_flow=np.ones(int(np.count_nonzero(kept)), dtype=np.bool_),
     )
-    return PricedSide(flows, table.date[kept], _past_rows(table, "Liabilities"))
+    no_figure = np.full(len(table.line_names), np.nan)
+    return PricedSide(flows, table.date[kept], _past_rows(table, "Liabilities"), no_figure, no_figure)
 
 
 def _assets(book: Book) -> PricedSide:
     """Holdings, then ready-made flows."""
-    holdings, table, curve = book.holdings, book.asset_flows, book.basis.curve
-    own = holding_flows(holdings, valuation_date=book.basis.valuation_date, day_count=book.basis.day_count)
-    is_solved = np.array([_takes_spread(holding) for holding in holdings], dtype=np.bool_)
-    market = np.array(
-        [0.0 if holding.market_value is None else holding.market_value for holding in holdings],
-        dtype=np.float64,
-    )
-    stated = np.array([holding.market_value is not None for holding in holdings], dtype=np.bool_)
-    is_deposit = np.array([holding.kind is HoldingKind.DEPOSIT for holding in holdings], dtype=np.bool_)
-    amount = np.where((is_deposit & stated)[own.holding], market[own.holding], own.amount)
-
-    spread = np.zeros(len(holdings))
-    rows = is_solved[own.holding]
-    if rows.any():
-        solved = solve_spreads(
-            own.holding[rows], own.time[rows], amount[rows], market_value=market, curve=curve
-        )
-        spread = np.where(is_solved, solved, 0.0)
-    has_rows = np.bincount(own.holding, minlength=len(holdings)) > 0
-    faults = _holding_faults(holdings, spread, has_rows)
-    spread = np.where(np.isfinite(spread), spread, 0.0)
-
-    funds = np.flatnonzero([holding.kind is HoldingKind.FUND for holding in holdings])
+    holdings, table = book.holdings, book.asset_flows
+    priced = price_holdings(holdings, book.basis)
+    own = priced.flows
+    funds = np.flatnonzero([holding.kind in STATED_KINDS for holding in holdings])
     fund_time = np.array([holdings[number].duration or 0.0 for number in funds], dtype=np.float64)
-    fund_amount = market[funds] / curve.discount(fund_time)
+    market = np.where(np.isnan(priced.stated_value[funds]), 0.0, priced.stated_value[funds])
+    fund_amount = market / book.basis.curve.discount(fund_time)
     kept = table.future
     no_date = np.full(funds.size, np.datetime64("NaT", "D"))
     own_line = np.concatenate((own.holding, funds))
@@ -128,55 +114,23 @@ def _assets(book: Book) -> PricedSide:
     def joined(of_bonds: FloatArray, of_funds: FloatArray, ready_made: FloatArray) -> FloatArray:
         return np.concatenate((np.concatenate((of_bonds, of_funds))[order], ready_made))
 
+    ready_made = table.amount[kept]
+    is_flow = np.concatenate((~own.is_start, np.zeros(funds.size, dtype=np.bool_)))
     flows = PricedFlows(
         side=Side.ASSETS,
         line_names=(*(holding.name for holding in holdings), *table.line_names),
         line=np.concatenate((own_line[order], table.line[kept] + len(holdings))),
         time=joined(own.time, fund_time, table.time[kept]),
-        amount=joined(amount, fund_amount, table.amount[kept]),
-        spread=joined(spread[own.holding], np.zeros(funds.size), np.zeros(int(np.count_nonzero(kept)))),
-        is_flow=np.concatenate(
-            (np.arange(order.size)[order] < own.holding.size, np.ones(int(np.count_nonzero(kept)), np.bool_))
-        ),
+        amount=joined(priced.amount, fund_amount, ready_made),
+        spread=joined(priced.spread[own.holding], np.zeros(funds.size), np.zeros(ready_made.size)),
+        is_flow=np.concatenate((is_flow[order], np.ones(ready_made.size, dtype=np.bool_))),
+        payment=None if (own.period_row < 0).all() else joined(priced.payment, fund_amount, ready_made),
     )
     dates = np.concatenate((np.concatenate((own.date, no_date))[order], table.date[kept]))
-    return PricedSide(flows, dates, (*faults, *_past_rows(table, "Asset flows")))
-
-
-def _takes_spread(holding: Holding) -> bool:
-    """Whether a spread is to be solved from the holding's market value."""
-    return holding.kind in (HoldingKind.BOND, HoldingKind.ZERO) and holding.market_value is not None
-
-
-def _holding_faults(
-    holdings: tuple[Holding, ...], spread: FloatArray, has_rows: NDArray[np.bool_]
-) -> tuple[Fault, ...]:
-    """What could not be done for each holding."""
-    faults = []
-    for holding, solved, pays in zip(holdings, spread, has_rows, strict=True):
-        if holding.kind is HoldingKind.FUND:
-            if holding.market_value is None:
-                found, expected = "no market value", "the market value of a fund"
-                mend = "It counts as 0; state its market value."
-                faults.append(_holding_fault(holding, found, expected, mend))
-        elif not pays:
-            found, expected = f"maturity {holding.maturity}", "a maturity after the valuation date"
-            mend = "It counts as 0; remove it or state what it has become."
-            faults.append(_holding_fault(holding, found, expected, mend))
-        elif not np.isfinite(solved):
-            found = f"a market value of {holding.market_value:g} that no spread gives"
-            expected = "a market value of the whole holding that its flows can be worth"
-            mend = "It is valued on the curve without a spread; check market value, nominal and coupon."
-            faults.append(_holding_fault(holding, found, expected, mend))
-    return tuple(faults)
-
-
-def _holding_fault(holding: Holding, found: str, expected: str, mend: str) -> Fault:
-    """A mild fault that names the holding."""
-    return Fault(
-        found=f"holding {holding.name!r} has {found}",
-        expected=expected,
-        mend=mend,
-        sheet="Holdings",
-        severity=Severity.MILD,
+    return PricedSide(
+        flows,
+        dates,
+        (*priced.faults, *_past_rows(table, "Asset flows")),
+        stated_value=np.concatenate((priced.stated_value, np.full(len(table.line_names), np.nan))),
+        credit_loss=np.concatenate((priced.credit_loss, np.full(len(table.line_names), np.nan))),
     )

@@ -69,9 +69,14 @@ class LineStanding:
         Continuously compounded spread over the curve [1/year]; None where it differs between the flows
         of the line.
     market_value : float or None
-        As the source states it [currency].
+        As the source states it, by its price if it states that [currency].
     flow_count : int
         Flows after the valuation date, today's included.
+    spread_duration : float or None
+        ``-(1/PV) dPV/ds`` for the spread s, the payments as projected today [years]; None where no spread
+        plays a part: a fund, property or swap.
+    expected_credit_loss : float or None
+        What expected default takes off the present value [currency]; None where none is expected.
     """
 
     side: Side
@@ -81,6 +86,8 @@ class LineStanding:
     spread: float | None
     market_value: float | None
     flow_count: int
+    spread_duration: float | None = None
+    expected_credit_loss: float | None = None
 
 
 @dataclass(frozen=True)

@@ -2,12 +2,12 @@
 
 from __future__ import annotations
 
-from collections.abc import Callable
+from collections.abc import Callable, Sequence
 
 import numpy as np
 
 from desk import __version__
-from desk.book import Book, PricedFlows, Provenance, Side
+from desk.book import Book, HoldingKind, PricedFlows, Provenance, Side
 from desk.book.arrays import FloatArray, IntArray
 from desk.valuation.measures import (
     KEY_TERMS,
@@ -17,14 +17,22 @@ from desk.valuation.measures import (
     measure_groups,
     value_flows,
 )
-from desk.valuation.priced import priced_flows
-from desk.valuation.records import Condition, KeyRates, LineStanding, Periods, Standing
+from desk.valuation.priced import PricedSide, priced_flows
+from desk.valuation.records import Condition, KeyRates, LineStanding, Measures, Periods, Standing
 
 __all__ = ["DURATION_TOLERANCE", "redington_conditions", "stand", "undiscounted_periods"]
 
 DURATION_TOLERANCE = 1e-4
 """How far the duration condition may be missed, as a part of the liabilities' figure."""
 
+_WITHOUT_SPREAD = frozenset(
+    {
+        HoldingKind.FUND.value,
+        HoldingKind.PROPERTY.value,
+        HoldingKind.PAYER_SWAP.value,
+        HoldingKind.RECEIVER_SWAP.value,
+    }
+)
 _YEARS_LISTED_WITHOUT_GAPS = 1000
 _YEAR_SLACK = 1e-9  # a twelfth added twelve times is still the first year
 
@@ -56,7 +64,7 @@ def stand(book: Book, *, progress: Callable[[float], None] | None = None) -> Sta
     rows = {side: value_flows(priced[side].flows, curve) for side in Side}
     total = {side: measure(rows[side]) for side in Side}
     report(0.5)
-    lines = tuple(line for side in Side for line in _lines(book, priced[side].flows, rows[side]))
+    lines = tuple(line for side in Side for line in _lines(book, priced[side], rows[side]))
     report(0.8)
     assets, liabilities = total[Side.ASSETS], total[Side.LIABILITIES]
     first = {side: _moments(rows[side])[1] for side in Side}
@@ -89,21 +97,52 @@ def _moments(rows: ValuedRows) -> tuple[float, float, float]:
         return float(rows.value.sum()), float(timed.sum()), float((timed * rows.time).sum())
 
 
-def _lines(book: Book, flows: PricedFlows, rows: ValuedRows) -> list[LineStanding]:
+def _lines(book: Book, priced: PricedSide, rows: ValuedRows) -> list[LineStanding]:
     """The lines of one side, in the order of the book."""
+    flows = priced.flows
     count = len(flows.line_names)
     measures = measure_groups(rows, flows.line, count)
     flow_count = np.bincount(flows.line[flows.is_flow], minlength=count).tolist()
     spread = _common_spread(flows, count)
     holdings = book.holdings if flows.side is Side.ASSETS else ()
     kinds = [holding.kind.value for holding in holdings] + ["flows"] * (count - len(holdings))
-    market = [holding.market_value for holding in holdings] + [None] * (count - len(holdings))
+    market, loss = _or_none(priced.stated_value), _or_none(priced.credit_loss)
+    durations = _spread_durations(flows, rows, measures, kinds)
     return [
-        LineStanding(flows.side, name, kind, of_line, None if np.isnan(own) else own, stated, number)
-        for name, kind, of_line, own, stated, number in zip(
-            flows.line_names, kinds, measures, spread, market, flow_count, strict=True
+        LineStanding(flows.side, name, kind, of_line, None if np.isnan(own) else own, *figures)
+        for name, kind, of_line, own, *figures in zip(
+            flows.line_names, kinds, measures, spread, market, flow_count, durations, loss, strict=True
         )
     ]
+
+
+def _or_none(figures: FloatArray) -> list[float | None]:
+    """Figures, with None for NaN."""
+    return [
+        None if missing else figure
+        for figure, missing in zip(figures.tolist(), np.isnan(figures), strict=True)
+    ]
+
+
+def _spread_durations(
+    flows: PricedFlows, rows: ValuedRows, measures: Sequence[Measures], kinds: Sequence[str]
+) -> list[float | None]:
+    """How each line's value falls with its spread; the effective duration where payments are fixed."""
+    durations: list[float | None] = [
+        None if kind in _WITHOUT_SPREAD else own.effective_duration
+        for own, kind in zip(measures, kinds, strict=True)
+    ]
+    floats = np.array([kind == HoldingKind.FLOATER.value for kind in kinds], dtype=np.bool_)
+    kept = np.flatnonzero(floats[flows.line])
+    if kept.size:
+        line = flows.line[kept]
+        with np.errstate(over="ignore", under="ignore", invalid="ignore", divide="ignore"):
+            worth = flows.paid[kept] * np.exp(-rows.exponent[kept])
+            first = np.bincount(line, weights=worth * flows.time[kept], minlength=len(kinds))
+        for number in np.unique(line).tolist():
+            present = measures[number].present_value
+            durations[number] = float(first[number]) / present if present else np.nan
+    return durations
 
 
 def _common_spread(flows: PricedFlows, count: int) -> list[float]:
@@ -193,7 +232,7 @@ def undiscounted_periods(assets: PricedFlows, liabilities: PricedFlows) -> Perio
         listed = np.unique(np.concatenate(years))
         places = [np.searchsorted(listed, year) for year in years]
     amounts: list[FloatArray] = [
-        np.bincount(place, weights=side.amount[side.is_flow], minlength=listed.size).astype(np.float64)
+        np.bincount(place, weights=side.paid[side.is_flow], minlength=listed.size).astype(np.float64)
         for place, side in zip(places, (assets, liabilities), strict=True)
     ]
     with np.errstate(over="ignore", invalid="ignore"):
