@@ -66,7 +66,8 @@ def years_to(dates: DateArray) -> FloatArray:
 
 def month_starts(first_month: int, count: int, step: int = 1) -> DateArray:
     """First days of months, counted from the month of the valuation date."""
-    months = TODAY.astype("M8[M]") + np.arange(first_month, first_month + count * step, step)
+    ahead = np.arange(first_month, first_month + count * step, step).astype("timedelta64[M]")
+    months = TODAY.astype("M8[M]") + ahead
     return np.asarray(months.astype("M8[D]"))
 
 
@@ -159,7 +160,7 @@ def history(seed: int, *, start: float, long_run: float, end: float, volatility:
         rate += 0.25 * (long_run - rate) / 12.0 + volatility * shock / np.sqrt(12.0)
         rates.append(rate)
     bent = np.array(rates) + np.linspace(0.0, end - rates[-1], 120)
-    months = TODAY.astype("M8[M]") + np.arange(-118, 2)
+    months = TODAY.astype("M8[M]") + np.arange(-118, 2).astype("timedelta64[M]")
     return History(months.astype("M8[D]") - np.timedelta64(1, "D"), np.round(bent, 6))
 
 

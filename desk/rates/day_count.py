@@ -77,7 +77,7 @@ def _calendar_years(date: DateArray) -> tuple[NDArray[np.float64], NDArray[np.fl
     """Calendar year, and the part of it that has passed: their differences add up to Act/Act ISDA."""
     years = date.astype("datetime64[Y]")
     first = years.astype("datetime64[D]")
-    length = ((years + 1).astype("datetime64[D]") - first).astype(np.float64)
+    length = ((years + np.timedelta64(1, "Y")).astype("datetime64[D]") - first).astype(np.float64)
     passed = (date - first).astype(np.float64)
     return years.astype(np.int64).astype(np.float64), passed / length
 
