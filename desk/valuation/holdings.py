@@ -52,8 +52,9 @@ class PricedHoldings:
         Over the curve, at which the expected payments give the value stated; 0 where none is [1/year].
     accrued : ndarray, shape (m,)
         Accrued interest; negative while a buyer no longer gets the next coupon [currency].
-    next_interest : ndarray, shape (m,)
-        The coupon a buyer no longer gets, if the holder gets it, as expected [currency]; else 0.
+    promised_to_buyer, payment_to_buyer : ndarray, shape (n,)
+        The same for a buyer on the valuation date, who no longer gets the next coupon while the holding
+        trades ex-dividend [currency].
     is_ex : ndarray of bool, shape (m,)
         Whether a buyer no longer gets the next coupon.
     stated_value : ndarray, shape (m,)
@@ -72,7 +73,8 @@ class PricedHoldings:
     amount: FloatArray
     spread: FloatArray
     accrued: FloatArray
-    next_interest: FloatArray
+    promised_to_buyer: FloatArray
+    payment_to_buyer: FloatArray
     is_ex: NDArray[np.bool_]
     stated_value: FloatArray
     credit_loss: FloatArray
@@ -118,7 +120,7 @@ def price_holdings(holdings: Sequence[Holding], basis: Basis) -> PricedHoldings:
     curve, count = basis.curve, len(holdings)
     flows = holding_flows(holdings, valuation_date=basis.valuation_date, day_count=basis.day_count)
     rates = implied_current_rates(flows, curve)
-    known, next_interest = _with_current_rates(flows, rates)
+    known, missed = _with_current_rates(flows, rates)
     accrued, is_ex = _accrued(flows, rates, count)
     stated = _stated(holdings, basis, accrued)
     is_deposit = np.array([holding.kind is HoldingKind.DEPOSIT for holding in holdings], dtype=np.bool_)
@@ -128,7 +130,8 @@ def price_holdings(holdings: Sequence[Holding], basis: Basis) -> PricedHoldings:
 
     projected = floating_interest(flows, curve)
     promised = known + projected
-    payment, floating = promised, flows.floating
+    promised_to_buyer = promised - missed if missed.any() else promised
+    payment, to_buyer, floating = promised, promised_to_buyer, flows.floating
     expected = expected_rows(
         flows,
         default_rate=np.array([holding.default_rate for holding in holdings], dtype=np.float64),
@@ -136,15 +139,15 @@ def price_holdings(holdings: Sequence[Holding], basis: Basis) -> PricedHoldings:
     )
     if expected is not None:
         payment = promised * expected.survival + expected.recovered
+        to_buyer = promised_to_buyer * expected.survival + expected.recovered
         known = known * expected.survival + expected.recovered
         floating = floating * expected.survival
-        next_interest = next_interest * expected.survival[flows.running.row]
-    of_holding = np.zeros(count)
-    of_holding[flows.running.holding[next_interest != 0.0]] = next_interest[next_interest != 0.0]
+    if to_buyer is not payment:
+        to_buyer = np.where(missed != 0.0, to_buyer, payment)
 
-    solved = _solved(holdings, stated, flows, payment, next_interest, curve)
+    solved = _solved(holdings, stated, flows, payment, to_buyer, curve)
     unstated = flows.running.holding[np.isnan(flows.running.rate)]
-    faults = _faults(holdings, stated, solved, flows, np.unique(unstated), of_holding)
+    faults = _faults(holdings, stated, solved, flows, np.unique(unstated), payment - to_buyer)
     spread = np.where(np.isfinite(solved), solved, 0.0)
     return PricedHoldings(
         flows=flows,
@@ -153,25 +156,27 @@ def price_holdings(holdings: Sequence[Holding], basis: Basis) -> PricedHoldings:
         amount=replicating_amounts(flows, known=known, floating=floating, spread=spread),
         spread=spread,
         accrued=accrued,
-        next_interest=of_holding,
+        promised_to_buyer=promised_to_buyer,
+        payment_to_buyer=to_buyer,
         is_ex=is_ex,
-        stated_value=_whole_value(stated, flows, next_interest, spread, curve),
+        stated_value=_whole_value(stated, flows, payment - to_buyer, spread, curve),
         credit_loss=_credit_loss(holdings, flows, promised - payment, spread, curve),
         faults=faults,
     )
 
 
 def _with_current_rates(flows: HoldingFlows, rates: FloatArray) -> tuple[FloatArray, FloatArray]:
-    """Known amounts with rates filled in, and the coupon of each running period that a buyer does not get."""
+    """Known amounts with rates filled in, and what of each row the holder gets and a buyer does not."""
     running = flows.running
-    known = flows.amount
+    known, missed = flows.amount, np.zeros(flows.amount.size)
     filled = np.flatnonzero(np.isnan(running.rate) & running.is_received)
     if filled.size:
         known = known.copy()
-        rows = running.row[filled]
-        known[rows] += running.nominal[filled] * rates[filled] * running.fraction[filled]
-    missed = running.is_ex & running.is_received
-    return known, np.where(missed, running.nominal * rates * running.fraction, 0.0)
+        # The two legs of a swap end their periods in rows of their own.
+        known[running.row[filled]] += (running.nominal * rates * running.fraction)[filled]
+    kept = running.is_ex & running.is_received
+    missed[running.row[kept]] = (running.nominal * rates * running.fraction)[kept]
+    return known, missed
 
 
 def _accrued(flows: HoldingFlows, rates: FloatArray, count: int) -> tuple[FloatArray, NDArray[np.bool_]]:
@@ -212,7 +217,7 @@ def _solved(
     stated: _Stated,
     flows: HoldingFlows,
     payment: FloatArray,
-    next_interest: FloatArray,
+    to_buyer: FloatArray,
     curve: DiscountCurve,
 ) -> FloatArray:
     """Spreads that give the stated values; 0 where none is stated, NaN where none gives it."""
@@ -222,15 +227,11 @@ def _solved(
     rows = is_solved[flows.holding]
     if not rows.any():
         return np.zeros(len(holdings))
-    running = flows.running
-    missed = np.flatnonzero((next_interest != 0.0) & stated.by_price[running.holding])
-    if missed.size:
-        payment = payment.copy()
-        payment[running.row[missed]] -= next_interest[missed]
+    wanted = np.where(stated.by_price[flows.holding[rows]], to_buyer[rows], payment[rows])
     spread = solve_spreads(
         flows.holding[rows],
         flows.time[rows],
-        payment[rows],
+        wanted,
         market_value=np.where(is_solved, value, 0.0),
         curve=curve,
     )
@@ -238,15 +239,14 @@ def _solved(
 
 
 def _whole_value(
-    stated: _Stated, flows: HoldingFlows, next_interest: FloatArray, spread: FloatArray, curve: DiscountCurve
+    stated: _Stated, flows: HoldingFlows, missed: FloatArray, spread: FloatArray, curve: DiscountCurve
 ) -> FloatArray:
     """What the source says the whole holding is worth, the coupon that a buyer does not get included."""
     value = stated.value
-    running = flows.running
-    missed = np.flatnonzero((next_interest != 0.0) & stated.by_price[running.holding])
-    if missed.size:
-        own, time = running.holding[missed], flows.time[running.row[missed]]
-        value[own] += next_interest[missed] * curve.discount(time) * np.exp(-spread[own] * time)
+    rows = np.flatnonzero((missed != 0.0) & stated.by_price[flows.holding])
+    if rows.size:
+        own, time = flows.holding[rows], flows.time[rows]
+        value[own] += missed[rows] * curve.discount(time) * np.exp(-spread[own] * time)
     return value
 
 
@@ -275,15 +275,16 @@ def _faults(
     solved: FloatArray,
     flows: HoldingFlows,
     no_current_rate: NDArray[np.int64],
-    next_interest: FloatArray,
+    missed: FloatArray,
 ) -> tuple[Fault, ...]:
     """What could not be done for each holding."""
     pays = np.zeros(len(holdings), dtype=np.bool_)
     pays[flows.holding] = True
     unset = np.zeros(len(holdings), dtype=np.bool_)
     unset[no_current_rate] = True
+    of_price = stated.of_price + np.bincount(flows.holding, weights=missed, minlength=len(holdings))
     with np.errstate(invalid="ignore"):
-        apart = np.abs(stated.of_price + next_interest - stated.market) > _MOST_APART * np.abs(stated.market)
+        apart = np.abs(of_price - stated.market) > _MOST_APART * np.abs(stated.market)
     is_stated = np.array([holding.kind in STATED_KINDS for holding in holdings], dtype=np.bool_)
     odd = (is_stated & np.isnan(stated.market)) | (~is_stated & ~pays) | ~np.isfinite(solved) | apart | unset
     faults = []
@@ -337,7 +338,7 @@ def _faults(
                 _fault(
                     holding,
                     f"a market value of {holding.market_value:,.2f} and a price that comes to "
-                    f"{stated.of_price[number] + next_interest[number]:,.2f}",
+                    f"{of_price[number]:,.2f}",
                     "figures that agree",
                     "The market value counts; correct or remove one of them.",
                 )
