@@ -9,7 +9,7 @@ from numpy.typing import NDArray
 
 from desk.book import Holding, HoldingKind, RiskyAssets
 from desk.intake.cells import Cells
-from desk.intake.checks import check_correlations, check_not_negative, check_rates, check_size
+from desk.intake.checks import check_correlations, check_not_negative, check_rates, check_size, plain
 from desk.intake.faults import FaultList
 from desk.intake.layout import SHEETS, Table, find_known, fold
 from desk.rates.day_count import DayCount
@@ -36,7 +36,7 @@ def read_holdings(table: Table, faults: FaultList, *, valuation_date: date | Non
     rows = table.rows
     cells = {name: Cells(table.sheet, table.column(name), rows, faults) for name in table.layout.columns}
     names = cells["Name"].texts_of("the name of the holding")
-    kinds = cells["Kind"].choices(HoldingKind, "a kind")
+    kinds = cells["Kind"].choices(HoldingKind, "a kind", among=tuple(_USED))
     used = {
         name: np.array([kind is not None and name in _USED[kind] for kind in kinds], dtype=np.bool_)
         for name in ("Nominal", "Coupon", "Frequency", "Maturity", "Market value")
@@ -51,8 +51,9 @@ def read_holdings(table: Table, faults: FaultList, *, valuation_date: date | Non
     duration = cells["Duration"].numbers("a duration in years", required=False)
     _report_missing_columns(table, used, faults)
     check_rates(cells["Coupon"], coupon, "the coupon")
-    for name, values in (("Nominal", nominal), ("Market value", market_value), ("Units", units)):
-        check_size(cells[name], values, f"the {name.lower()}")
+    check_size(cells["Nominal"], nominal, "the nominal")
+    check_size(cells["Market value"], market_value, "the market value")
+    check_size(cells["Units"], units, "the number of units")
     odd = ~np.isnan(frequency) & ~np.isin(frequency, _FREQUENCIES)
     cells["Frequency"].each(odd, "the frequency is {}", "1, 2, 4 or 12 coupons a year", "Correct the figure.")
     with np.errstate(invalid="ignore"):
@@ -71,9 +72,13 @@ def read_holdings(table: Table, faults: FaultList, *, valuation_date: date | Non
         apart = ~np.isnan(market_value) & (np.sign(nominal) * market_value <= 0.0) & (nominal != 0.0)
     if valuation_date is not None:
         past = ~np.isnat(maturity) & (maturity <= np.datetime64(valuation_date, "D"))
-        cells["Maturity"].each(
-            past & used["Maturity"],
-            "the holding matured on {}, not after the valuation date",
+        matured = np.flatnonzero(past & used["Maturity"])
+        cells["Maturity"].each_with(
+            matured,
+            (
+                f"the holding matured on {day}, not after the valuation date {valuation_date}"
+                for day in np.datetime_as_string(maturity[matured]).tolist()
+            ),
             "a date after the valuation date",
             "It is kept and counts for nothing; remove it or correct the date.",
             mild=True,
@@ -81,8 +86,8 @@ def read_holdings(table: Table, faults: FaultList, *, valuation_date: date | Non
         apart &= ~past
     cells["Market value"].each(
         apart & used["Maturity"],
-        "the market value is {} for a nominal of the other sign",
-        "a market value of the sign of the nominal: no spread gives this one",
+        "the market value is {}, which no spread gives for this nominal",
+        "a market value above 0 for a holding, below 0 for a debt",
         "Correct it, or leave it empty.",
     )
     _report_unused(cells, kinds, faults)
@@ -108,7 +113,9 @@ def read_holdings(table: Table, faults: FaultList, *, valuation_date: date | Non
             )
         except ValueError as error:
             # Only where a column is missing, which is reported at its place.
-            cells["Name"].fault(entry, f"the row makes no holding: {error}", f"a {kind}", "Correct the row.")
+            cells["Name"].fault(
+                entry, f"the row makes no holding: {plain(error)}", f"a {kind}", "Correct the row."
+            )
             continue
         holdings.append(holding)
     return tuple(holdings)

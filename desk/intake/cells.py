@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 import re
-from collections.abc import Iterable, Mapping, Sequence
+from collections.abc import Iterable, Iterator, Mapping, Sequence
 from dataclasses import dataclass
 from datetime import date
 from enum import StrEnum
@@ -39,15 +39,15 @@ def _plain_number(text: str) -> float | None:
     return None
 
 
-def _iso_date(text: str) -> np.datetime64 | None:
-    """The date that `text` states as yyyy-mm-dd; None otherwise."""
+def _iso_date(text: str) -> np.datetime64:
+    """The date that `text` states as yyyy-mm-dd; NaT otherwise."""
     match = _ISO_DATE.fullmatch(text)
     if match is None:
-        return None
+        return _EMPTY_DATE
     try:
         return np.datetime64(date(*map(int, match.groups())), "D")
     except ValueError:
-        return None
+        return _EMPTY_DATE
 
 
 def match_choice(text: str, choices: type[Choice]) -> Choice | None:
@@ -124,7 +124,7 @@ class Cells:
         entries = np.flatnonzero(flagged)
         texts: Iterable[str] = repeat(found, entries.size)
         if "{}" in found:
-            texts = (found.replace("{}", self.stated(entry)) for entry in entries.tolist())
+            texts = (found.replace("{}", stated) for stated in self._all_stated(entries))
         self.each_with(entries, texts, expected, mend, mild=mild)
 
     def each_with(
@@ -146,6 +146,13 @@ class Cells:
         if self.column is None:
             return "nothing"
         return self.sheet.data.columns[self.column].stated(int(self.rows[entry]))
+
+    def _all_stated(self, entries: IntArray) -> Iterator[str]:
+        """What each of some cells holds, as a fault quotes it."""
+        if self.column is None:
+            return repeat("nothing", entries.size)
+        stated = self.sheet.data.columns[self.column].stated
+        return map(stated, self.rows[entries].tolist())
 
     def _odd(self, entries: IntArray, expected: str, required: BoolArray) -> None:
         """Add the faults of cells that hold nothing, or an error."""
@@ -187,27 +194,34 @@ class Cells:
         numbers = np.where(good, self.values, np.nan)
         if self.column is None:
             return numbers
-        parsed = [_plain_number(text) for text in self.texts]
         must = self._required(required)
         blank = self.kinds == Kind.BLANK
         self._odd(np.flatnonzero(blank), expected, must)
-        for entry in np.flatnonzero(~good & ~blank).tolist():
-            number = parsed[int(self.values[entry])] if self.kinds[entry] == Kind.TEXT else None
-            if number is not None:
-                numbers[entry] = number
-                self.mild(
-                    entry,
-                    f"{self.stated(entry)} stands where a number belongs; {number:.12g} is taken",
-                    expected,
-                    "Turn the text into a number.",
+        odd = np.flatnonzero(~good & ~blank)
+        parsed = [_plain_number(text) for text in self.texts]
+        as_texts = np.array([np.nan if number is None else number for number in parsed], dtype=np.float64)
+        is_text = self.kinds[odd] == Kind.TEXT
+        texts = odd[is_text]
+        numbers[texts] = as_texts[self.values[texts].astype(np.int64)]
+        taken = np.isfinite(numbers[odd])
+        self.each_with(
+            odd[taken],
+            (
+                f"{stated} stands where a number belongs; {number:.12g} is taken"
+                for stated, number in zip(
+                    self._all_stated(odd[taken]), numbers[odd[taken]].tolist(), strict=True
                 )
-            else:
-                self.fault(
-                    entry,
-                    f"{self.stated(entry)} stands where a number belongs",
-                    expected,
-                    "Write it as a plain number, without signs of grouping, units or words.",
-                )
+            ),
+            expected,
+            "Turn the text into a number.",
+            mild=True,
+        )
+        self.each_with(
+            odd[~taken],
+            (f"{stated} stands where a number belongs" for stated in self._all_stated(odd[~taken])),
+            expected,
+            "Write it as a plain number, without signs of grouping, units or words.",
+        )
         return numbers
 
     def dates(self, expected: str, *, required: bool | BoolArray = True) -> NDArray[np.datetime64]:
@@ -219,41 +233,56 @@ class Cells:
             return dates
         blank = self.kinds == Kind.BLANK
         self._odd(np.flatnonzero(blank), expected, self._required(required))
-        for entry in np.flatnonzero(~good & ~blank).tolist():
-            kind = self.kinds[entry]
-            if kind == Kind.MOMENT:
-                days, rest = divmod(float(self.values[entry]), 86_400.0)
-                dates[entry] = _EPOCH + int(days)
-                if rest:
-                    self.mild(
-                        entry,
-                        f"{self.stated(entry)} holds a time of day, which is left out",
-                        expected,
-                        "Write the date alone.",
-                    )
-            elif kind == Kind.TEXT and (day := _iso_date(self.texts[int(self.values[entry])])) is not None:
-                dates[entry] = day
-                self.mild(
-                    entry,
-                    f"{self.stated(entry)} stands where a date belongs; {day} is taken",
-                    expected,
-                    "Turn the text into a date.",
+        odd = np.flatnonzero(~good & ~blank)
+        kinds = self.kinds[odd]
+        self._take_moments(odd[kinds == Kind.MOMENT], dates, expected)
+        texts = odd[kinds == Kind.TEXT]
+        if texts.size:
+            parsed = np.array([_iso_date(text) for text in self.texts], dtype="datetime64[D]")
+            dates[texts] = parsed[self.values[texts].astype(np.int64)]
+        taken = texts[~np.isnat(dates[texts])]
+        self.each_with(
+            taken,
+            (
+                f"{stated} stands where a date belongs; {day} is taken"
+                for stated, day in zip(
+                    self._all_stated(taken), dates[taken].astype(str).tolist(), strict=True
                 )
-            elif kind == Kind.NUMBER:
-                self.fault(
-                    entry,
-                    f"the number {self.stated(entry)} stands where a date belongs",
-                    expected,
-                    "Format the cell as a date, or write the date.",
-                )
-            else:
-                self.fault(
-                    entry,
-                    f"{self.stated(entry)} stands where a date belongs",
-                    expected,
-                    "Write it as a date of the spreadsheet, or as yyyy-mm-dd.",
-                )
+            ),
+            expected,
+            "Turn the text into a date.",
+            mild=True,
+        )
+        numbers = odd[kinds == Kind.NUMBER]
+        self.each_with(
+            numbers,
+            (f"the number {stated} stands where a date belongs" for stated in self._all_stated(numbers)),
+            expected,
+            "Format the cell as a date, or write the date.",
+        )
+        rest = odd[np.isnat(dates[odd]) & (kinds != Kind.NUMBER)]
+        self.each_with(
+            rest,
+            (f"{stated} stands where a date belongs" for stated in self._all_stated(rest)),
+            expected,
+            "Write it as a date of the spreadsheet, or as yyyy-mm-dd.",
+        )
         return dates
+
+    def _take_moments(self, entries: IntArray, dates: NDArray[np.datetime64], expected: str) -> None:
+        """Take the day of each date with a time of day; a time that is not midnight is a mild fault."""
+        if not entries.size:
+            return
+        days, rest = np.divmod(self.values[entries], 86_400.0)
+        dates[entries] = _EPOCH + days.astype(np.int64)
+        late = entries[rest != 0.0]
+        self.each_with(
+            late,
+            (f"{stated} holds a time of day, which is left out" for stated in self._all_stated(late)),
+            expected,
+            "Write the date alone.",
+            mild=True,
+        )
 
     def names(self, expected: str) -> tuple[list[str], IntArray]:
         """The cells as names.
@@ -288,12 +317,17 @@ class Cells:
             number[entry] = index.setdefault(text, len(index))
         first_spelt = int(np.flatnonzero(~is_text & ~blank)[0])
         letters = column_letters(self.column or 0)
+        stated = self.stated(first_spelt)
         self.mild(
             first_spelt,
-            f"{spelt} cell(s) of column {letters} hold no text, the first {self.stated(first_spelt)}; "
-            "they are taken as names",
+            (
+                f"{stated} is no text; it is taken as a name"
+                if spelt == 1
+                else f"{spelt:,} cells of column {letters} hold no text, the first {stated}; "
+                "they are taken as names"
+            ),
             expected,
-            "Nothing needs to be done if these are names.",
+            "Nothing needs to be done if that is meant.",
         )
         return list(index), number
 
@@ -307,19 +341,27 @@ class Cells:
         ]
 
     def choices(
-        self, choices: type[Choice], expected: str, *, required: bool | BoolArray = True
+        self,
+        choices: type[Choice],
+        expected: str,
+        *,
+        required: bool | BoolArray = True,
+        among: Sequence[Choice] | None = None,
     ) -> list[Choice | None]:
-        """The cells as one of a few words; None where there is none."""
+        """The cells as one of a few words, all of `choices` or those `among`; None where there is none."""
         result: list[Choice | None] = []
-        words = ", ".join(choice.value for choice in choices)
+        offered = tuple(choices) if among is None else among
+        words = ", ".join(choice.value for choice in offered)
         for entry, text in enumerate(self.texts_of(f"{expected}: one of {words}", required=required)):
             choice = match_choice(text, choices) if text else None
+            if choice not in offered:
+                choice = None
             if text and choice is None:
                 self.fault(
                     entry,
                     f"{self.stated(entry)} is no known {expected.removeprefix('a ').removeprefix('an ')}",
                     f"one of {words}",
-                    _suggestion(text, [choice.value for choice in choices]),
+                    _suggestion(text, [choice.value for choice in offered]),
                 )
             result.append(choice)
         return result

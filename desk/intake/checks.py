@@ -7,9 +7,20 @@ from numpy.typing import NDArray
 
 from desk.intake.cells import Cells
 
-__all__ = ["check_correlations", "check_not_negative", "check_rates", "check_size"]
+__all__ = ["check_correlations", "check_not_negative", "check_rates", "check_size", "plain", "some"]
 
 FloatArray = NDArray[np.float64]
+
+
+def some(what: str) -> str:
+    """ "the amount" as "an amount": what is expected is not what was found."""
+    name = what.removeprefix("the ")
+    return f"{'an' if name[0] in 'aeiou' else 'a'} {name}"
+
+
+def plain(error: Exception) -> str:
+    """What an error says, without the marks that are for those who write programs."""
+    return str(error).replace("`", "").replace("_", " ")
 
 
 def check_rates(
@@ -23,15 +34,15 @@ def check_rates(
         cells.fault(
             entry,
             f"{what} is {value:.12g}, which is {value * 100:.6g} % a year",
-            f"{what} as a fraction or in a cell formatted as per cent",
+            f"{some(what)} as a fraction or in a cell formatted as per cent",
             f"Write {value:.12g} % or {value / 100:.12g}.",
         )
     for entry in low.tolist():
         value = float(values[entry])
         cells.fault(
             entry,
-            f"{what} is {value:.12g}, below {least:.0%}",
-            f"{what} as a fraction or in a cell formatted as per cent",
+            f"{what} is {value:.12g}, below {100.0 * least:g} % a year",
+            f"{some(what)} as a fraction or in a cell formatted as per cent",
             f"Write {value:.12g} % or {value / 100:.12g}, or correct the figure.",
         )
 
@@ -40,15 +51,17 @@ def check_size(cells: Cells, values: FloatArray, what: str, *, most: float = 1e1
     """Report numbers so large that they can only be slips, and that sums would not bear."""
     with np.errstate(invalid="ignore"):
         flagged = np.abs(values) > most
-    cells.each(flagged, f"{what} is {{}}", f"{what} of at most {most:g}", "Correct the figure.")
+    cells.each(
+        flagged, f"{what} is {{}}", f"{some(what)} of at most {most:g} either way", "Correct the figure."
+    )
 
 
 def check_not_negative(cells: Cells, values: FloatArray, what: str, *, zero_allowed: bool = True) -> None:
     """Report numbers that must not be negative."""
     with np.errstate(invalid="ignore"):
         flagged = values < 0.0 if zero_allowed else values <= 0.0
-    wanted = "at least 0" if zero_allowed else "above 0"
-    cells.each(flagged, f"{what} is {{}}", f"{what} {wanted}", "Correct the figure.")
+    wanted = "of at least 0" if zero_allowed else "above 0"
+    cells.each(flagged, f"{what} is {{}}", f"{some(what)} {wanted}", "Correct the figure.")
 
 
 def check_correlations(cells: Cells, values: FloatArray, what: str) -> None:

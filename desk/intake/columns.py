@@ -6,7 +6,7 @@ seconds, moments count seconds from 1970-01-01, a text is the number of its entr
 
 from __future__ import annotations
 
-from collections.abc import Iterable, Sequence
+from collections.abc import Callable, Iterable, Sequence
 from dataclasses import dataclass
 from datetime import date, datetime, time, timedelta
 from enum import IntEnum
@@ -101,6 +101,19 @@ def _plain(text: str) -> str:
     )
 
 
+# By `Kind`: a table, because looking up the members of an enumeration costs more than all the rest.
+_MADE: tuple[Callable[[float, list[str]], Cell], ...] = (
+    lambda value, texts: None,
+    lambda value, texts: value,
+    lambda value, texts: texts[int(value)],
+    lambda value, texts: bool(value),
+    lambda value, texts: date.fromordinal(int(value) + _EPOCH),
+    lambda value, texts: _EPOCH_MOMENT + timedelta(seconds=value),
+    lambda value, texts: (_EPOCH_MOMENT + timedelta(seconds=value)).time(),
+    lambda value, texts: timedelta(seconds=value),
+)
+
+
 @dataclass(frozen=True, eq=False)
 class Column:
     """One column of a sheet, from its first row on.
@@ -137,22 +150,7 @@ class Column:
 
     def cell(self, row: int) -> Cell:
         """The value of one cell."""
-        kind, value = self.kinds[row], float(self.values[row])
-        if kind == Kind.BLANK:
-            return None
-        if kind == Kind.NUMBER:
-            return value
-        if kind == Kind.TEXT:
-            return self.texts[int(value)]
-        if kind == Kind.TRUTH:
-            return bool(value)
-        if kind == Kind.DATE:
-            return date.fromordinal(int(value) + _EPOCH)
-        if kind == Kind.MOMENT:
-            return _EPOCH_MOMENT + timedelta(seconds=value)
-        if kind == Kind.TIME:
-            return (_EPOCH_MOMENT + timedelta(seconds=value)).time()
-        return timedelta(seconds=value)
+        return _MADE[int(self.kinds[row])](float(self.values[row]), self.texts)
 
     def stated(self, row: int) -> str:
         """The value of one cell as a fault quotes it."""

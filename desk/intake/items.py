@@ -15,7 +15,7 @@ from numpy.typing import NDArray
 
 from desk.book import CurveKind, Measure, ModelName, RatesModel, Run
 from desk.intake.cells import Cells
-from desk.intake.checks import check_correlations, check_not_negative, check_rates, check_size
+from desk.intake.checks import check_correlations, check_not_negative, check_rates, check_size, some
 from desk.intake.columns import Kind
 from desk.intake.faults import FaultList
 from desk.intake.layout import Table, find_known, fold
@@ -23,12 +23,12 @@ from desk.rates.compounding import Compounding
 from desk.rates.curve import Interpolation
 from desk.rates.day_count import DayCount
 
-__all__ = ["ItemSheet", "read_basis_items", "read_rates_model", "read_run"]
+__all__ = ["MODEL_ITEMS", "ItemSheet", "read_basis_items", "read_rates_model", "read_run"]
 
 Choice = TypeVar("Choice", bound=StrEnum)
 Check = Callable[[Cells, NDArray[np.float64], str], None]
 
-_NEEDS: dict[ModelName, tuple[str, ...]] = {
+MODEL_ITEMS: dict[ModelName, tuple[str, ...]] = {
     ModelName.VASICEK: ("Mean reversion", "Volatility", "Long-run rate", "Starting rate"),
     ModelName.HO_LEE: ("Volatility",),
     ModelName.HULL_WHITE: ("Mean reversion", "Volatility"),
@@ -39,6 +39,7 @@ _NEEDS: dict[ModelName, tuple[str, ...]] = {
     ModelName.CIR: ("Mean reversion", "Volatility", "Long-run rate", "Starting rate"),
     ModelName.CIR_SHIFTED: ("Mean reversion", "Volatility", "Long-run rate", "Starting rate"),
 }
+"""The items that each model needs."""
 _SQUARE_ROOT = (ModelName.CIR, ModelName.CIR_SHIFTED)
 
 
@@ -127,14 +128,14 @@ class ItemSheet:
             cells.mild(0, f"the cell is empty; {instead} is taken", expected, f"Write {expected} into it.")
         return None if np.isnan(values[0]) else float(values[0])
 
-    def whole(self, item: str, *, least: int, most: int, instead: int) -> int:
-        """A whole number, `instead` where there is none."""
+    def whole(self, item: str, what: str, *, least: int, most: int, instead: int) -> int:
+        """A whole number, `instead` where there is none; `what` is its name in a sentence."""
         expected = f"a whole number from {least:,} to {most:,}"
         value = self.number(item, expected, instead=f"{instead:,}")
         if value is None:
             return instead
         if not value.is_integer() or not least <= value <= most:
-            self._cells(item).fault(0, f"{item} is {value:.12g}", expected, "Correct the figure.")
+            self._cells(item).fault(0, f"the {what} is {value:.12g}", expected, "Correct the figure.")
             return instead
         return int(value)
 
@@ -232,7 +233,9 @@ def _or_zero(value: float | None) -> float:
 
 def _check_reversion(cells: Cells, values: NDArray[np.float64], what: str) -> None:
     check_not_negative(cells, values, what)
-    cells.each(values > 100.0, f"{what} is {{}}", f"{what} a year, at most 100", "Correct the figure.")
+    cells.each(
+        values > 100.0, f"{what} is {{}}", f"{some(what)} of at most 100 a year", "Correct the figure."
+    )
 
 
 def _check_price(cells: Cells, values: NDArray[np.float64], what: str) -> None:
@@ -242,7 +245,7 @@ def _check_price(cells: Cells, values: NDArray[np.float64], what: str) -> None:
 def read_rates_model(sheet: ItemSheet) -> RatesModel | None:
     """The rates model; None where what it is cannot be told."""
     name = sheet.choice("Model", ModelName, "a model", required=True)
-    needs = _NEEDS[name] if name is not None else ()
+    needs = MODEL_ITEMS[name] if name is not None else ()
 
     def number(item: str, expected: str, *checks: Check) -> float | None:
         return sheet.number(item, expected, *checks, required=item in needs)
@@ -275,7 +278,7 @@ def read_rates_model(sheet: ItemSheet) -> RatesModel | None:
             if value is not None and value < 0.0:
                 sheet.fault(
                     item,
-                    f"{item} is {value:.12g}",
+                    f"the {item.lower()} is {value:.12g}",
                     f"a rate of at least 0 for the model {name}",
                     "Correct the figure.",
                 )
@@ -309,10 +312,14 @@ def read_run(sheet: ItemSheet) -> Run:
     default = Run()
     measure = sheet.choice("Measure", Measure, "a measure", instead=str(default.measure))
     return Run(
-        paths=sheet.whole("Paths", least=1, most=100_000_000, instead=default.paths),
-        horizon_years=sheet.whole("Horizon (years)", least=1, most=200, instead=default.horizon_years),
-        steps_per_year=sheet.whole("Steps a year", least=1, most=366, instead=default.steps_per_year),
-        seed=sheet.whole("Seed", least=0, most=2**53, instead=default.seed),
+        paths=sheet.whole("Paths", "number of paths", least=1, most=100_000_000, instead=default.paths),
+        horizon_years=sheet.whole(
+            "Horizon (years)", "horizon", least=1, most=200, instead=default.horizon_years
+        ),
+        steps_per_year=sheet.whole(
+            "Steps a year", "number of steps a year", least=1, most=366, instead=default.steps_per_year
+        ),
+        seed=sheet.whole("Seed", "seed", least=0, most=2**53, instead=default.seed),
         measure=measure or default.measure,
         percentiles=_percentiles(sheet, default.percentiles),
     )

@@ -213,7 +213,9 @@ def lay_out(sheet: SourceSheet, layout: SheetLayout, faults: FaultList) -> Table
     _report_missing(name, layout, fields, heading_row, faults)
     if (above := np.flatnonzero(sheet.filled(range(len(data.columns)))[:heading_row])).size:
         faults.mild(
-            f"{above.size} row(s) above the headings were not read",
+            "1 row above the headings was not read"
+            if above.size == 1
+            else f"{above.size} rows above the headings were not read",
             "the headings in the first row",
             "Nothing needs to be done if these are titles; otherwise move the headings up.",
             sheet=name,

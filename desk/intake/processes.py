@@ -74,7 +74,8 @@ class _Process:
         words = [command, str(path), str(limits.memory_bytes), str(int(limits.seconds) + 1)]
         self._child = subprocess.Popen(
             [sys.executable, "-m", "desk.intake.worker", *words],
-            stdin=subprocess.DEVNULL,
+            # Never written to: its end tells the process that this one is gone.
+            stdin=subprocess.PIPE,
             stdout=subprocess.PIPE,
             stderr=self._errors,
             cwd=home,
@@ -100,8 +101,9 @@ class _Process:
             self._child.kill()
         self._child.wait()
         self._reader.join()
-        if self._child.stdout is not None:
-            self._child.stdout.close()
+        for stream in (self._child.stdin, self._child.stdout):
+            if stream is not None:
+                stream.close()
         self._errors.close()
 
     def answer(self) -> Answer:

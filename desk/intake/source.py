@@ -43,7 +43,7 @@ _REFUSALS: dict[str, tuple[str, str]] = {
         "reading the file took too long and was stopped",
         "Remove what does not belong to the book from it.",
     ),
-    "crash": ("the file breaks its reader", _SAVE),
+    "crash": ("reading the file ended before its end", _SAVE),
     "memory": (
         "reading the file needs more memory than it may take",
         "Delete the rows and columns around the data (delete, not clear), save the workbook and try again.",
@@ -123,7 +123,8 @@ def open_source(
         for name, hidden, count, columns in values.content["sheets"]
     ]
     faults.order_sheets([sheet.name for sheet in sheets])
-    _take_facts(sheets, scan, faults)
+    if sheets:
+        _take_facts(sheets, scan, faults)
     return Source(sha256, sheets)
 
 
@@ -137,8 +138,9 @@ def _refuse(
 ) -> None:
     """Say in one fault why the file is not read, and where the trouble lies if that can be told."""
     found, mend = _REFUSALS.get(answer.refused, _REFUSALS["corrupt"])
-    if answer.detail and answer.refused in ("corrupt", "bomb", "crash"):
-        found += f" ({' '.join(answer.detail.split())[:160]})"
+    if answer.detail and answer.refused == "bomb":
+        # What a parser says of a broken file is meant for those who write parsers.
+        found += f" ({answer.detail[:160]})"
     sheet, row, column = "", -1, -1
     if answer.refused in ("memory", "time", "crash"):
         (extent,) = ask(("extent",), path, limits, watch=watch)
@@ -171,7 +173,7 @@ def _take_facts(sheets: list[SourceSheet], scan: Answer, faults: FaultList) -> N
         faults.mild(
             "in a file of this format error cells, formulas without a value and hidden rows do not show"
             if unscanned
-            else f"the search for error cells and hidden rows failed ({scan.detail or scan.refused})",
+            else "the search for error cells and hidden rows failed",
             _WORKBOOK,
             "Error cells count as empty. Save it as .xlsx to have them named." if unscanned else _SAVE,
         )
@@ -180,8 +182,7 @@ def _take_facts(sheets: list[SourceSheet], scan: Answer, faults: FaultList) -> N
         facts = scan.content["facts"].get(sheet.name)
         if facts is None or facts["failed"]:
             faults.mild(
-                "the search for error cells and hidden rows failed"
-                + (f" ({facts['failed'][:120]})" if facts else ""),
+                "the search for error cells and hidden rows failed",
                 "a sheet written as the standard says",
                 f"Error cells count as empty. {_SAVE}",
                 sheet=sheet.name,

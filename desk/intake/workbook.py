@@ -14,6 +14,7 @@ from numpy.typing import NDArray
 
 from desk.book import Basis, Book, CurveKind, FlowTable, History, Holding, RatesModel, RiskyAssets, Run
 from desk.intake.assets import read_holdings, read_risky_assets
+from desk.intake.checks import plain
 from desk.intake.columns import ColumnRows
 from desk.intake.faults import FaultList
 from desk.intake.flows import read_curve, read_flows, read_history
@@ -67,7 +68,7 @@ def read_workbook(
         report(0.97)
         if parts is not None and not faults.any_grave:
             book = parts
-    elif not len(faults):
+    elif not faults.any_grave:
         faults.add("the workbook holds no sheets", "the sheets of a book", "Choose another file.")
     by_sheet = {table.sheet.name: table for table in tables.values()}
     grids = tuple(_grid(sheet, by_sheet.get(sheet.name)) for sheet in source.sheets)
@@ -210,7 +211,7 @@ def _build_basis(
         basis.curve.discount(basis.terms)
     except ValueError as error:
         faults.add(
-            f"the quotes give no curve: {error}",
+            f"the quotes give no curve: {plain(error)}",
             "quotes from which a curve can be drawn",
             "Correct the quotes, or choose another interpolation.",
             sheet=table.sheet.name,

@@ -9,8 +9,12 @@ from __future__ import annotations
 
 import gc
 import marshal
+import os
+import signal
 import sys
+import threading
 from collections.abc import Callable
+from contextlib import suppress
 from pathlib import Path
 from typing import Any
 
@@ -115,9 +119,20 @@ def _answer(command: Callable[[Path], dict[str, Any]], path: Path) -> dict[str, 
         return {"refused": "corrupt", "detail": f"{type(error).__name__}: {error}"}
 
 
+def _end_with_starter() -> None:
+    """End this process once the one that started it is gone: that one holds the other end of the input."""
+    with suppress(OSError):
+        # Below the streams of Python, which a thread must not hold when the process ends.
+        os.read(0, 1)
+        os._exit(1)
+
+
 def main(arguments: list[str]) -> int:
     """Do one command and write its answer."""
     command, path, memory_bytes, seconds = arguments
+    # Ctrl-C reaches every process of a terminal; this one is ended by the one that started it.
+    signal.signal(signal.SIGINT, signal.SIG_IGN)
+    threading.Thread(target=_end_with_starter, name="starter", daemon=True).start()
     _set_limits(int(memory_bytes), int(seconds))
     # The cells are millions of objects that live to the end: looking for rubbish among them only costs.
     gc.disable()

@@ -144,7 +144,14 @@ CASES = [
     Case("beta beyond reason", put(L, "D3", 1e6), "Liabilities!D3", "the beta is 1000000", GRAVE),
     Case("blank amount", put(L, "C3", None), "Liabilities!C3", "the cell is empty", GRAVE),
     Case("blank line", put(L, "A3", None), "Liabilities!A3", "the cell is empty", GRAVE),
-    Case("number for a line", put(L, "A3", 101), "Liabilities!A3", "taken as names", MILD),
+    Case("number for a line", put(L, "A3", 101), "Liabilities!A3", "101 is no text", MILD),
+    Case(
+        "numbers for lines",
+        both(put(L, "A3", 101), put(L, "A4", 102)),
+        "Liabilities!A3",
+        "2 cells of column A hold no text, the first 101",
+        MILD,
+    ),
     Case("lines alike", put(L, "A4", "pensioners "), "Liabilities!A4", "differs from", MILD),
     Case("no time", put(L, "B3", None), "Liabilities!B3", "states no time", GRAVE),
     Case(
@@ -174,7 +181,7 @@ CASES = [
     Case("term twice", put(C, "A3", 1), "Curve!A3", "stands twice", GRAVE),
     Case("term zero", put(C, "A2", 0), "Curve!A2", "the term is 0", GRAVE),
     Case("rate in per cent", put(C, "B4", 3.5), "Curve!B4", "the rate is 3.5", GRAVE),
-    Case("rate far below", put(C, "B4", -0.6), "Curve!B4", "below -50%", GRAVE),
+    Case("rate far below", put(C, "B4", -0.6), "Curve!B4", "below -50 % a year", GRAVE),
     Case("rate blank", put(C, "B4", None), "Curve!B4", "the cell is empty", GRAVE),
     Case("no quotes", lambda s: s.update({C: s[C][:1]}), C, "no quotes", GRAVE),
     Case("unknown item", item("Basis", "Prepared by", "me"), "Basis!A11", "not known", MILD),
@@ -213,11 +220,12 @@ CASES = [
     Case("bond without frequency", put(H, "E2", None), "Holdings!E2", "the cell is empty", GRAVE),
     Case("frequency odd", put(H, "E2", 3), "Holdings!E2", "the frequency is 3", GRAVE),
     Case("coupon in per cent", put(H, "D2", 4.1), "Holdings!D2", "the coupon is 4.1", GRAVE),
-    Case("matured", put(H, "F2", date(2026, 9, 30)), "Holdings!F2", "matured on", MILD),
+    Case("matured", put(H, "F2", date(2026, 9, 30)), "Holdings!F2", "matured on 2026-09-30, not", MILD),
     Case("fund without value", put(H, "H5", None), "Holdings!H5", "the cell is empty", GRAVE),
     Case("fund without a column", drop_column(H, "Market value"), "Holdings!A5", "no market value", GRAVE),
     Case("short holding", both(put(H, "C3", -5)), "Holdings!C3", "the nominal is -5", MILD),
-    Case("worth of the other sign", put(H, "H2", -5), "Holdings!H2", "of the other sign", GRAVE),
+    Case("worth of the other sign", put(H, "H2", -5), "Holdings!H2", "-5, which no spread gives", GRAVE),
+    Case("worth nothing", put(H, "H2", 0), "Holdings!H2", "0, which no spread gives", GRAVE),
     Case("holding twice", put(H, "A3", "state 2% 2036"), "Holdings!A3", "stands twice", MILD),
     Case(
         "deposit with a maturity",
@@ -253,9 +261,9 @@ CASES = [
     Case("asset twice", put(R, "A3", "equity"), "Risky assets!A3", "stands twice", GRAVE),
     Case("asset named as a heading", put(R, "A3", "Rates"), "Risky assets!A3", "that of a heading", GRAVE),
     Case("asset volatility", put(R, "D2", -0.1), "Risky assets!D2", "is -0.1", GRAVE),
-    Case("paths not whole", item("Run", "Paths", 10.5), "Run!B2", "Paths is 10.5", GRAVE),
+    Case("paths not whole", item("Run", "Paths", 10.5), "Run!B2", "number of paths is 10.5", GRAVE),
     Case("steps zero", item("Run", "Steps a year", 0), "Run!B4", "is 0", GRAVE),
-    Case("seed negative", item("Run", "Seed", -1), "Run!B5", "Seed is -1", GRAVE),
+    Case("seed negative", item("Run", "Seed", -1), "Run!B5", "the seed is -1", GRAVE),
     Case("seed missing", drop_item("Run", "Seed"), "Run", "1 is taken", MILD),
     Case("measure blank", item("Run", "Measure", None), "Run!B6", "pricing is taken", MILD),
     Case("measure unknown", item("Run", "Measure", "risk"), "Run!B6", "no known measure", GRAVE),
@@ -378,6 +386,48 @@ def test_faults_come_by_sheet_and_row(tmp_path: Path) -> None:
     assert places == [
         *("Curve!B5", "Liabilities!A2", "Liabilities!C2", "Liabilities!C3", "Liabilities!C4", "History!B3"),
     ]
+
+
+@pytest.mark.parametrize(
+    ("spoil", "words"),
+    [
+        (put(L, "C2", 1e300), "expected an amount of at most 1e+18 either way"),
+        (put(H, "I5", 1e300), "the number of units is 1e+300; expected a number of units of at most"),
+        (item("Rates model", "Volatility", -0.1), "expected a volatility of at least 0"),
+        (item("Rates model", "Mean reversion", 1e6), "expected a mean reversion of at most 100 a year"),
+        (put(C, "B3", 2.5), "expected a rate as a fraction"),
+        (lambda s: s[L].insert(0, ["Flows of the fund"]), "1 row above the headings was not read"),
+        (item("Run", "Steps a year", 0.5), "the number of steps a year is 0.5"),
+    ],
+)
+def test_faults_are_sentences(spoil: Callable[[Sheets], object], words: str, tmp_path: Path) -> None:
+    sheets = sound_sheets()
+    spoil(sheets)
+    assert words in "\n".join(map(str, read_workbook(save(sheets, tmp_path / "book.xlsx")).faults))
+
+
+def test_many_faults_of_one_kind_are_told_apart(tmp_path: Path) -> None:
+    """They are found for whole columns at a time: each is still that of its own cell."""
+    sheets = sound_sheets()
+    odd: list[tuple[object, object, str]] = [
+        (50000, 1.0, "the number 50000 stands where a date belongs"),
+        ("1970-01-01", 1.0, 'the text "1970-01-01" stands where a date belongs; 1970-01-01 is taken'),
+        ("next year", 1.0, 'the text "next year" stands where a date belongs'),
+        (True, 1.0, "the truth value TRUE stands where a date belongs"),
+        (datetime(2031, 1, 2), 1.0, ""),
+        (datetime(2031, 1, 2, 12, 30), 1.0, "2031-01-02 12:30 holds a time of day"),
+        (date(2031, 1, 2), "12", 'the text "12" stands where a number belongs; 12 is taken'),
+        (date(2031, 1, 2), "12 Mio", 'the text "12 Mio" stands where a number belongs'),
+        (date(2031, 1, 2), False, "the truth value FALSE stands where a number belongs"),
+    ]
+    sheets[L] += [["Odd", day, amount, None] for _ in range(3) for day, amount, _ in odd]
+    reading = read_workbook(save(sheets, tmp_path / "book.xlsx"))
+    found: dict[int, list[str]] = {}
+    for fault in reading.faults:
+        found.setdefault(int(fault.cell[1:]), []).append(fault.found)
+    for row in range(5, 5 + 3 * len(odd)):
+        words = odd[(row - 5) % len(odd)][2]
+        assert any(words in text for text in found.get(row, [])) or not (words or found.get(row)), row
 
 
 def test_every_faulty_row_is_listed(tmp_path: Path) -> None:

@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import os
 import struct
+import subprocess
 import sys
 import threading
 import zipfile
@@ -172,6 +173,39 @@ def test_a_reader_that_breaks_is_said_to(tmp_path: Path) -> None:
     (answer,) = ask(("no such command",), save(sound_sheets(), tmp_path / "book.xlsx"), Limits())
     assert answer.refused == "crash"
     assert "no such command" in answer.detail
+
+
+def test_what_a_parser_says_stays_with_the_parser(tmp_path: Path) -> None:
+    path = tmp_path / "book.xlsx"
+    _cut(path)
+    (fault,) = read_workbook(path).faults
+    assert fault.found == "the file is damaged and cannot be read"
+
+
+def test_a_workbook_without_its_list_of_sheets_has_a_grave_fault(tmp_path: Path) -> None:
+    path = save(sound_sheets(), tmp_path / "book.xlsx")
+    with zipfile.ZipFile(path) as package:
+        parts = {name: package.read(name) for name in package.namelist() if name != "xl/workbook.xml"}
+    with zipfile.ZipFile(path, "w") as package:
+        for name, content in parts.items():
+            package.writestr(name, content)
+    reading = read_workbook(path)
+    assert reading.book is None
+    assert [fault.severity for fault in reading.faults] == [Severity.GRAVE]
+
+
+def test_a_reading_process_ends_with_the_program(tmp_path: Path) -> None:
+    """Its input ends when the program is killed, and so does it, whatever it is doing."""
+    work = (
+        "import sys, time; from desk.intake import worker;"
+        "worker._COMMANDS['wait'] = lambda path: time.sleep(600) or {};"
+        "sys.exit(worker.main(['wait', 'book.xlsx', str(3 << 30), '60']))"
+    )
+    home = Path(__file__).resolve().parents[2]
+    with subprocess.Popen([sys.executable, "-c", work], stdin=subprocess.PIPE, cwd=home) as child:
+        assert child.stdin is not None
+        child.stdin.close()
+        assert child.wait(timeout=60) == 1
 
 
 class _Stop(Exception):
