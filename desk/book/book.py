@@ -5,6 +5,8 @@ from __future__ import annotations
 import hashlib
 from collections.abc import Iterator
 from dataclasses import dataclass, field, fields, is_dataclass
+from datetime import date
+from enum import StrEnum
 from functools import cached_property
 from typing import Any
 
@@ -106,11 +108,15 @@ def _holding_pieces(holdings: tuple[Holding, ...]) -> Iterator[bytes]:
     for item in fields(Holding):
         column = [getattr(holding, item.name) for holding in holdings]
         yield item.name.encode()
-        types = set(map(type, column))
-        if types <= {float, int, type(None)} and _fit_floats(column, types):
-            missing = np.array([entry is None for entry in column], dtype=np.bool_)
-            yield missing.tobytes()
+        types = set(map(type, column)) - {type(None)}
+        if types <= {float, int} and _fit_floats(column, types):
+            yield np.array([entry is None for entry in column], dtype=np.bool_).tobytes()
             yield (np.array(column, dtype=np.float64) + 0.0).tobytes()  # a negative zero equals zero
+        elif types == {date}:
+            days = [0 if entry is None else entry.toordinal() for entry in column]
+            yield np.array(days, dtype=np.int64).tobytes()
+        elif len(types) == 1 and issubclass(next(iter(types)), StrEnum):
+            yield "\n".join("" if entry is None else entry for entry in column).encode()
         else:
             yield repr(column).encode()
 

@@ -87,6 +87,8 @@ class HoldingFlows:
         Regular periods from the row to the maturity.
     is_start : ndarray of bool, shape (n,)
         The row stands for the start of a floating leg that lies ahead; nothing is paid.
+    start_time : ndarray, shape (m,)
+        Years from the valuation date to the start of each holding; 0 where it has begun.
     running : RunningPeriods
     """
 
@@ -100,6 +102,7 @@ class HoldingFlows:
     outstanding: FloatArray
     periods_after: IntArray
     is_start: NDArray[np.bool_]
+    start_time: FloatArray
     running: RunningPeriods
 
 
@@ -156,7 +159,7 @@ def holding_flows(
     from_day[head] = begin
     interest, first_fraction = _interest(legs, leg, outstanding, from_day, when, head, own, begin == quasi)
 
-    is_ahead = begin > today
+    is_ahead = own.start > today  # where none is stated the comparison is False
     running = _running(own, head, outstanding, begin, when[head], first_fraction, today, ~is_ahead)
     floats = legs.is_floating[leg]
     floats[running.row] = False
@@ -176,6 +179,7 @@ def holding_flows(
         outstanding=np.where(legs.is_swap[leg], 0.0, outstanding),
         periods_after=after,
         is_start=np.zeros(leg.size, dtype=np.bool_),
+        start_time=_start_times(legs, today, day_count, len(holdings)),
         running=running,
     )
     ahead = np.flatnonzero(is_ahead & own.is_floating)
@@ -184,6 +188,14 @@ def holding_flows(
     if legs.is_swap.any():
         columns = _by_date(columns)
     return replace(columns, time=year_fraction(today, columns.date, day_count))
+
+
+def _start_times(legs: Legs, today: np.datetime64, day_count: DayCount, count: int) -> FloatArray:
+    """Years to the start of each holding, 0 where it has begun."""
+    times = np.zeros(count)
+    ahead = np.flatnonzero(legs.start > today)
+    times[legs.holding[ahead]] = year_fraction(today, legs.start[ahead], day_count)
+    return times
 
 
 def _payment_dates(legs: Legs, today: np.datetime64) -> tuple[IntArray, IntArray, DateArray]:
@@ -228,9 +240,11 @@ def _outstanding(
         rows, left = rows_of_leg[annuity].astype(np.float64), after[annuity].astype(np.float64) + 1.0
 
         def part_left(periods: FloatArray) -> FloatArray:
-            whole = np.expm1(-growth * rows)
+            # Written with exponents that do not rise, whatever the sign of the interest.
+            whole = np.expm1(-np.abs(growth) * rows)
             none = whole == 0.0  # no interest: repaid in equal parts
-            ratio = np.expm1(-growth * periods) / np.where(none, 1.0, whole)
+            ratio = np.expm1(-np.abs(growth) * periods) / np.where(none, 1.0, whole)
+            ratio = ratio * np.exp(np.minimum(growth, 0.0) * (rows - periods))
             return np.asarray(np.where(none, periods / rows, ratio))
 
         outstanding[annuity] = nominal[annuity] * part_left(left)

@@ -48,7 +48,7 @@ def expected_rows(
         None where nobody defaults. A payment c of a row at time t is expected to be ``c · S(t)`` with
         ``S(t) = (1 - default_rate)^t``; a default within the period that ends at t brings
         ``recovery_rate · outstanding`` at t, with probability ``S(t') - S(t)``, where t' is the time of the
-        holding's row before, or the valuation date.
+        holding's row before, or the valuation date. A default before a holding starts leaves nothing.
 
     References
     ----------
@@ -57,8 +57,9 @@ def expected_rows(
     """
     if not default_rate.any():
         return None
-    survival = np.exp(flows.time * np.log1p(-default_rate)[flows.holding])
-    before = np.ones_like(survival)
+    growth = np.log1p(-default_rate)
+    survival = np.exp(flows.time * growth[flows.holding])
+    before = np.exp(flows.start_time * growth)[flows.holding]
     same = flows.holding[1:] == flows.holding[:-1]
     before[1:][same] = survival[:-1][same]
     recovered = recovery_rate[flows.holding] * flows.outstanding * (before - survival)

@@ -39,7 +39,7 @@ def line_flows(book: Book, side: Side, line_number: int) -> FlowDetail:
     flows = priced.flows
     if not 0 <= line_number < len(flows.line_names):
         raise IndexError(f"`line_number` must be from 0 to {len(flows.line_names) - 1}, not {line_number}")
-    kept = flows.line == line_number
+    kept = (flows.line == line_number) & (flows.is_flow | (flows.paid != 0.0))
     rows = value_rows(flows.time[kept], flows.paid[kept], curve=book.basis.curve, spread=flows.spread[kept])
     return FlowDetail(
         date=priced.date[kept],

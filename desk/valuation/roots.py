@@ -96,6 +96,21 @@ def _worth_and_slope(
     return worth, slope
 
 
+def _worth_at_searched(group: IntArray, time: FloatArray, amount: FloatArray, count: int) -> FloatArray:
+    """What each group is worth at each rate searched, shape (rates, m)."""
+
+    def columns(part: slice) -> list[FloatArray]:
+        worth = amount[part] * np.exp(-_SEARCHED[0] * time[part])
+        step = np.exp(-(_SEARCHED[1] - _SEARCHED[0]) * time[part])  # the rates lie at even distances
+        found = [worth]
+        for _ in _SEARCHED[1:]:
+            worth = worth * step
+            found.append(worth)
+        return found
+
+    return group_sums(group, count, columns)
+
+
 def _newton_on_logarithm(
     rates: FloatArray,
     wanted: NDArray[np.bool_],
@@ -147,7 +162,7 @@ def _search(
     group, time, amount = group[rows], time[rows], amount[rows]
 
     # dimensions: rate searched, group
-    worth = np.array([_worth_and_slope(np.full(count, rate), group, time, amount)[0] for rate in _SEARCHED])
+    worth = _worth_at_searched(group, time, amount, count)
     signs = np.where(worth >= target, 1, -1)
     changes = signs[1:] != signs[:-1]
     single = wanted & (changes.sum(axis=0) == 1)

@@ -41,10 +41,16 @@ def group_sums(group: IntArray, count: int, columns: Callable[[slice], Sequence[
     """
     total: FloatArray | None = None
     for part in blocks(group.size):
+        found = columns(part)
+        if total is None:
+            total = np.zeros((len(found), count))
         if count == 1:  # one number after the other into one bin is the slowest way to add
-            sums = np.array([[column.sum()] for column in columns(part)])
-        else:
-            own = group[part]
-            sums = np.array([np.bincount(own, weights=column, minlength=count) for column in columns(part)])
-        total = sums if total is None else total + sums
+            total[:, 0] += [column.sum() for column in found]
+            continue
+        own = group[part]
+        # The rows of a block are often of few neighbouring groups.
+        low = int(own.min()) if own.size else 0
+        width = int(own.max()) - low + 1 if own.size else 0
+        for sums, column in zip(total, found, strict=True):
+            sums[low : low + width] += np.bincount(own - low, weights=column, minlength=width)
     return np.asarray(total, dtype=np.float64)

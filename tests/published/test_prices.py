@@ -180,7 +180,7 @@ def test_duration_and_modified_duration() -> None:
     ],
 )
 def test_price_in_every_basis(day_count: DayCount | None, price: float) -> None:
-    """ExcelFinancialFunctions test data, PRICE, values produced by Excel: 10 % coupon, redemption 130, 3 % yield.
+    """ExcelFinancialFunctions test data, PRICE, values produced by Excel.
 
     Redemption at 130 is a nominal of 130 with the coupon on 100. For bases 2 and 3 (Act/360, Act/365F) the
     spreadsheet takes as days to the next coupon what the accrued days leave of the period, as is done here.
@@ -194,13 +194,14 @@ def _fraction(days: list[str], maturity: str, months: int) -> list[float]:
     """Act/Act ICMA fractions between neighbouring days."""
     pairs = list(pairwise(np.array(days, dtype="M8[D]")))
     size = len(pairs)
-    return accrual_fraction(
+    fractions = accrual_fraction(
         np.array([first for first, _ in pairs]),
         np.array([last for _, last in pairs]),
         code=np.full(size, ICMA),
         maturity=np.full(size, np.datetime64(maturity)),
         months=np.full(size, months),
-    ).tolist()
+    )
+    return [float(fraction) for fraction in fractions]
 
 
 def test_odd_first_periods_in_act_act_icma() -> None:
