@@ -7,18 +7,23 @@ error in one line a fault. With ``--json`` standard output is one JSON object an
 from __future__ import annotations
 
 import argparse
+import errno
 import os
+import signal
 import sys
+import threading
 import traceback
-from collections.abc import Callable, Iterable, Sequence
+from collections.abc import Callable, Iterable, Iterator, Sequence
+from contextlib import contextmanager
 from dataclasses import replace
 from pathlib import Path
-from typing import NoReturn
 
-from desk import __version__, tasks
-from desk.book import Book, Fault, ModelName, RatesModel, Run, Severity
+from desk import tasks
+from desk.arguments import COMMANDS, parser, range_faults, target_fault
+from desk.book import Book, Fault, RatesModel, Run, Severity
 from desk.intake.records import Reading
 from desk.report import as_json, as_text
+from desk.report.said_once import further_faults
 from desk.scenarios.records import Simulation
 from desk.terminal import ProgressLine, complain, say, use_standard_streams
 from desk.valuation.records import Standing
@@ -26,10 +31,9 @@ from desk.valuation.records import Standing
 __all__ = ["COMMANDS", "BadRequest", "demonstrate", "main", "read_usable", "run_guarded"]
 
 DONE, FAILED, AT_FAULT = 0, 1, 2
-COMMANDS = ("check", "value", "simulate", "report")
 
-LIMITS = {"paths": (1, 100_000_000), "years": (1, 200), "steps": (1, 366), "seed": (0, 2**53)}
-"""Sensible range of each number that a command takes."""
+_NO_PLACE_TO_WRITE = (errno.EACCES, errno.EPERM, errno.EROFS, errno.ENAMETOOLONG, errno.ENOENT)
+"""Reasons why a file cannot be written that lie in the place asked for."""
 
 
 class BadRequest(Exception):
@@ -55,7 +59,39 @@ def main(arguments: Sequence[str] | None = None) -> int:
         As on the command line, without the program's name; by default those of the process.
     """
     given = list(sys.argv[1:] if arguments is None else arguments)
-    return run_guarded(lambda: _command(given))
+
+    def work() -> int:
+        with _ended_by_signals():
+            return _command(given)
+
+    return run_guarded(work)
+
+
+@contextmanager
+def _ended_by_signals() -> Iterator[None]:
+    """Let a request to end stop the work as Ctrl-C does, so that nothing half done stays behind."""
+    names = [name for name in ("SIGTERM", "SIGHUP") if hasattr(signal, name)]
+    former = {}
+
+    def end(number: int, frame: object) -> None:
+        signal.signal(number, signal.SIG_IGN)
+        raise KeyboardInterrupt
+
+    if threading.current_thread() is threading.main_thread():
+        for name in names:
+            number = getattr(signal, name)
+            # A process that is to outlive its terminal stays deaf to its end.
+            if signal.getsignal(number) is not signal.SIG_IGN:
+                former[number] = signal.signal(number, end)
+    try:
+        yield
+    finally:
+        for number, handler in former.items():
+            signal.signal(number, handler)
+
+
+class _CannotWrite(Exception):
+    """Standard output takes nothing more."""
 
 
 def run_guarded(work: Callable[[], int]) -> int:
@@ -63,9 +99,17 @@ def run_guarded(work: Callable[[], int]) -> int:
     use_standard_streams()
     try:
         status = work()
-        sys.stdout.flush()
+        _flush()
     except KeyboardInterrupt:
         complain("Stopped.")
+        return FAILED
+    except MemoryError:
+        complain("There is not enough memory for this. Ask for fewer paths or a shorter horizon.")
+        return FAILED
+    except _CannotWrite as error:
+        complain(f"The result cannot be written: {error}.")
+        # What Python still holds for the stream must not raise again at exit.
+        sys.stdout = open(os.devnull, "w", encoding="utf-8")  # noqa: SIM115
         return FAILED
     except BrokenPipeError:
         # The reader has gone: what Python still holds for it must not raise again at exit.
@@ -76,6 +120,26 @@ def run_guarded(work: Callable[[], int]) -> int:
         complain(f"The program failed: {type(error).__name__}: {error}")
         return FAILED
     return status
+
+
+def _flush() -> None:
+    """Hand over what was said."""
+    try:
+        sys.stdout.flush()
+    except BrokenPipeError:
+        raise
+    except OSError as error:
+        raise _CannotWrite(error.strerror or str(error)) from error
+
+
+def _say(text: str) -> None:
+    """Text on standard output, which may take nothing more."""
+    try:
+        say(text)
+    except BrokenPipeError:
+        raise
+    except OSError as error:
+        raise _CannotWrite(error.strerror or str(error)) from error
 
 
 def demonstrate(path: Path, folder: Path) -> tuple[Reading, Standing, Simulation | None]:
@@ -107,15 +171,15 @@ def demonstrate(path: Path, folder: Path) -> tuple[Reading, Standing, Simulation
     if book.rates_model is not None:
         with ProgressLine("Simulating") as progress:
             simulation = tasks.simulate(book, progress=progress)
-    say(as_text.standing_text(standing, title=book.basis.title))
+    _say(as_text.standing_text(standing, title=book.basis.title))
     if simulation is not None:
-        say("")
-        say(as_text.simulation_text(simulation, currency=book.basis.currency))
+        _say("")
+        _say(as_text.simulation_text(simulation, currency=book.basis.currency))
     folder.mkdir(parents=True, exist_ok=True)
     target = folder / f"{path.stem}_report.xlsx"
     with ProgressLine("Writing") as progress:
         tasks.report(reading, target, standing=standing, simulation=simulation, progress=progress)
-    say(f"\nThe report is in {target}")
+    _say(f"\nThe report is in {target}")
     return reading, standing, simulation
 
 
@@ -129,8 +193,7 @@ def read_usable(path: Path) -> tuple[Reading, Book]:
     """
     with ProgressLine("Reading") as progress:
         reading = tasks.read(path, progress=progress)
-    for fault in reading.faults:
-        complain(as_text.fault_line(fault))
+    _complain_of_reading(reading)
     if reading.book is None or reading.grave:
         raise _Reported(reading.faults)
     return reading, reading.book
@@ -143,11 +206,11 @@ class _Reported(BadRequest):
 def _command(given: Sequence[str]) -> int:
     """Parse the arguments and do what they ask."""
     try:
-        options = _parser().parse_args(given)
+        options = parser().parse_args(given)
     except SystemExit as ended:
         return ended.code if isinstance(ended.code, int) else AT_FAULT
     if options.command is None:
-        _parser().print_help(sys.stderr)
+        parser().print_help(sys.stderr)
         return AT_FAULT
     try:
         return _ACTIONS[options.command](options)
@@ -156,7 +219,7 @@ def _command(given: Sequence[str]) -> int:
             for fault in bad.faults:
                 complain(as_text.fault_line(fault))
         if getattr(options, "json", False):
-            say(as_json.text({"faults": [as_json.fault_object(fault) for fault in bad.faults]}))
+            _say(as_json.text({"faults": [as_json.fault_object(fault) for fault in bad.faults]}))
         return AT_FAULT
 
 
@@ -164,9 +227,8 @@ def _check(options: argparse.Namespace) -> int:
     """Read a book and list its faults."""
     with ProgressLine("Reading") as progress:
         reading = tasks.read(options.book, progress=progress)
-    for fault in reading.faults:
-        complain(as_text.fault_line(fault))
-    say(as_json.text(as_json.check_object(reading)) if options.json else as_text.check_text(reading))
+    _complain_of_reading(reading)
+    _say(as_json.text(as_json.check_object(reading)) if options.json else as_text.check_text(reading))
     return AT_FAULT if reading.grave or reading.book is None else DONE
 
 
@@ -176,17 +238,17 @@ def _value(options: argparse.Namespace) -> int:
     _insist_on(book, model=False)
     with ProgressLine("Valuing") as progress:
         standing = tasks.value(book, progress=progress)
-    _complain_of(standing.faults)
+    _complain_of(further_faults(reading.faults, standing.faults))
     if options.json:
-        say(as_json.text(as_json.standing_object(standing, reading.faults)))
+        _say(as_json.text(as_json.standing_object(standing, reading.faults)))
     else:
-        say(as_text.standing_text(standing, title=book.basis.title))
+        _say(as_text.standing_text(standing, title=book.basis.title))
     return DONE
 
 
 def _simulate(options: argparse.Namespace) -> int:
     """A run."""
-    faults = [fault for name in LIMITS if (fault := _range_fault(name, getattr(options, name))) is not None]
+    faults = list(range_faults(options))
     try:
         reading, book = read_usable(options.book)
     except BadRequest as bad:
@@ -209,25 +271,33 @@ def _simulate(options: argparse.Namespace) -> int:
     _insist_on(book, model=True)
     with ProgressLine("Simulating") as progress:
         simulation = tasks.simulate(book, progress=progress)
-    _complain_of(simulation.faults)
+    _complain_of(further_faults(reading.faults, simulation.faults))
     if options.json:
-        say(as_json.text(as_json.simulation_object(simulation, reading.faults)))
+        _say(as_json.text(as_json.simulation_object(simulation, reading.faults)))
     else:
         title, currency = book.basis.title, book.basis.currency
-        say(as_text.simulation_text(simulation, currency=currency, title=title))
+        _say(as_text.simulation_text(simulation, currency=currency, title=title))
     return DONE
 
 
 def _report(options: argparse.Namespace) -> int:
     """The report as a workbook."""
-    fault = _target_fault(options.out, options.book)
+    fault = target_fault(options.out, options.book)
     if fault is not None:
         raise BadRequest([fault])
     reading, book = read_usable(options.book)
     _insist_on(book, model=book.rates_model is not None)
-    with ProgressLine("Reporting") as progress:
-        written = tasks.report(reading, options.out, progress=progress)
-    say(f"The report is in {written}")
+    try:
+        with ProgressLine("Reporting") as progress:
+            written = tasks.report(reading, options.out, progress=progress)
+    except OSError as error:
+        reason = error.strerror or str(error)
+        if error.errno not in _NO_PLACE_TO_WRITE:
+            complain(as_text.printable(f"{options.out}: the report cannot be written: {reason}."))
+            return FAILED
+        fault = Fault(f"--out is {options.out}: {reason}", "a place that can be written to", "Name another.")
+        raise BadRequest([fault]) from error
+    _say(f"The report is in {written}")
     return DONE
 
 
@@ -252,15 +322,27 @@ def _with_options(book: Book, options: argparse.Namespace) -> Book:
     )
     model = book.rates_model
     if options.model is not None:
-        name = ModelName(options.model)
-        model = RatesModel(name) if model is None else replace(model, name=name)
+        model = RatesModel(options.model) if model is None else replace(model, name=options.model)
     return replace(book, run=run, rates_model=model)
 
 
 def _insist_on(book: Book, *, model: bool) -> None:
     """Raise BadRequest where the basis gives no curve, or the model, if it is needed, cannot be drawn."""
+    from desk.intake.checks import plain
+    from desk.intake.items import missing_items
     from desk.scenarios.models import rate_model
 
+    if model and book.rates_model is not None and (missing := missing_items(book.rates_model)):
+        name = book.rates_model.name
+        raise BadRequest(
+            Fault(
+                f'the item "{item}" is missing, which the model {name} needs',
+                f'a row with the item "{item}" and its value',
+                "Add the row, or name another model.",
+                sheet="Rates model",
+            )
+            for item in missing
+        )
     try:
         sheet = "Basis"
         _ = book.basis.curve
@@ -269,87 +351,17 @@ def _insist_on(book: Book, *, model: bool) -> None:
             rate_model(book)
     except ValueError as error:
         wanted = "a curve" if sheet == "Basis" else "a model that can be drawn"
-        raise BadRequest([Fault(str(error), wanted, "Mend it in the book.", sheet=sheet)]) from error
-
-
-def _range_fault(name: str, given: int | None) -> Fault | None:
-    """What is wrong with a number that a command was given."""
-    low, high = LIMITS[name]
-    if given is None or low <= given <= high:
-        return None
-    return Fault(
-        f"--{name} is {given}",
-        f"a whole number from {low} to {high}",
-        f"Give --{name} a number in that range.",
-    )
-
-
-def _target_fault(target: Path, source: Path) -> Fault | None:
-    """What is wrong with the place a report is to go to."""
-    if target.suffix.lower() != ".xlsx":
-        return Fault(f"--out is {target}", "a name that ends in .xlsx", "Name a workbook.")
-    if target.is_dir():
-        return Fault(f"--out is {target}, a folder", "a file", "Name a file in it.")
-    if not target.absolute().parent.is_dir():
-        return Fault(f"--out is {target}", "a folder that exists", "Make the folder first.")
-    if target.exists() and source.exists() and target.samefile(source):
-        return Fault("--out is the book itself", "another file", "Name another file: the book is not lost.")
-    return None
-
-
-class _Parser(argparse.ArgumentParser):
-    """A parser whose complaint is one line."""
-
-    def error(self, message: str) -> NoReturn:
-        """Say what is wrong in one line and end with the status of a fault."""
-        complain(as_text.printable(f"{self.prog}: {message}"))
-        self.exit(AT_FAULT)
-
-
-def _parser() -> argparse.ArgumentParser:
-    """The commands and their options."""
-    parser = _Parser(
-        prog="gapwright",
-        description="What promised payments are worth, whether the assets held will meet them, and how "
-        "both move with rates.",
-        epilog="Without a command the window opens: gapwright [BOOK]. Exit status: 0 done, 1 the program "
-        "failed, 2 the book or the arguments are at fault.",
-        allow_abbrev=False,
-    )
-    parser.add_argument("--version", action="version", version=f"Gapwright {__version__}")
-    commands = parser.add_subparsers(dest="command", metavar="COMMAND", parser_class=_Parser)
-
-    def command(name: str, text: str, *, has_json: bool = True) -> argparse.ArgumentParser:
-        added = commands.add_parser(name, help=text, description=text, allow_abbrev=False)
-        added.add_argument("book", metavar="BOOK", type=Path, help="a book workbook")
-        if has_json:
-            added.add_argument("--json", action="store_true", help="print one JSON object and nothing else")
-        return added
-
-    command("check", "Read a book and list its faults.")
-    command("value", "Print the standing: both sides valued, with their gaps.")
-    simulate = command("simulate", "Draw the rates model and value both sides along the paths.")
-    for name, text in (
-        ("paths", "number of paths"),
-        ("years", "length of every path in years"),
-        ("steps", "steps a year"),
-        ("seed", "seed of the draws"),
-    ):
-        low, high = LIMITS[name]
-        wording = f"{text}, from {low} to {high}; without it as the book says"
-        simulate.add_argument(f"--{name}", type=int, metavar="N", help=wording)
-    simulate.add_argument(
-        "--model",
-        choices=[name.value for name in ModelName],
-        metavar="NAME",
-        help=f"rates model in place of the book's: {', '.join(ModelName)}",
-    )
-    report = command("report", "Write the report as a workbook.", has_json=False)
-    report.add_argument("--out", type=Path, required=True, metavar="FILE.xlsx", help="the workbook to write")
-    return parser
+        raise BadRequest([Fault(plain(error), wanted, "Mend it in the book.", sheet=sheet)]) from error
 
 
 def _complain_of(faults: Iterable[Fault]) -> None:
     """Say the mild faults of a result."""
     for fault in faults:
         complain(as_text.fault_line(replace(fault, severity=Severity.MILD)))
+
+
+def _complain_of_reading(reading: Reading) -> None:
+    """Say the faults of a reading; one that has no place in the book says which file it is of."""
+    for fault in reading.faults:
+        line = as_text.fault_line(fault)
+        complain(line if fault.place else f"{as_text.printable(str(reading.path))}: {line}")

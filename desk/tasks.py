@@ -8,6 +8,7 @@ from __future__ import annotations
 
 import threading
 from collections.abc import Callable
+from dataclasses import replace
 from pathlib import Path
 
 from desk.book import Book
@@ -115,11 +116,11 @@ def simulate(
 
     watched = _watched(progress, cancel)
     watched(0.0)
-    assets = priced_flows(book, Side.ASSETS).flows
-    liabilities = priced_flows(book, Side.LIABILITIES).flows
-    simulation = draw(book, assets, liabilities, progress=watched)
+    assets, liabilities = priced_flows(book, Side.ASSETS), priced_flows(book, Side.LIABILITIES)
+    simulation = draw(book, assets.flows, liabilities.flows, progress=watched)
     watched(1.0)
-    return simulation
+    # A spread that could not be solved changes the present values along the paths too.
+    return replace(simulation, faults=(*assets.faults, *liabilities.faults, *simulation.faults))
 
 
 def report(

@@ -6,6 +6,7 @@ import os
 import sys
 import time
 from collections.abc import Callable
+from contextlib import suppress
 from typing import IO
 
 __all__ = ["ProgressLine", "complain", "say", "use_standard_streams"]
@@ -55,7 +56,8 @@ class ProgressLine:
 
 def complain(line: str) -> None:
     """One line on standard error."""
-    sys.stderr.write(_encodable(f"{line}\n", sys.stderr))
+    with suppress(OSError):  # a complaint that cannot be said changes nothing else
+        sys.stderr.write(_encodable(f"{line}\n", sys.stderr))
 
 
 def say(text: str) -> None:

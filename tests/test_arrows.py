@@ -27,7 +27,8 @@ MAY_IMPORT: dict[str, tuple[str, ...]] = {
     "report": (*NUMERIC, "intake", "places"),
     "store": (*NUMERIC, "intake", "places"),
     "tasks": (*NUMERIC, "intake", "report", "store"),
-    "batch": (*NUMERIC, "intake", "report", "store", "tasks", "places", "terminal"),
+    "arguments": ("rates", "book", "report", "terminal"),
+    "batch": (*NUMERIC, "intake", "report", "store", "tasks", "places", "terminal", "arguments"),
     "window": (*NUMERIC, "intake", "report", "store", "tasks", "places"),
     "__main__": (*NUMERIC, "intake", "report", "store", "tasks", "places", "terminal", "batch", "window"),
 }

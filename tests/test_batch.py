@@ -148,8 +148,8 @@ def test_simulate_with_another_model(run: Run) -> None:
         (["--paths", "-5"], "--paths is -5"),
         (["--steps", "1000"], "--steps is 1000"),
         (["--seed", "-1"], "--seed is -1"),
-        (["--years", "soon"], "invalid int value"),
-        (["--model", "guess"], "invalid choice"),
+        (["--years", "soon"], '"soon" is no whole number'),
+        (["--model", "guess"], '"guess" is no model'),
         (["--speed", "3"], "unrecognized arguments"),
     ],
 )

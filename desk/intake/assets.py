@@ -14,7 +14,7 @@ from desk.intake.faults import FaultList
 from desk.intake.layout import SHEETS, Table, find_known, fold
 from desk.rates.day_count import DayCount
 
-__all__ = ["further_columns", "read_holdings", "read_risky_assets"]
+__all__ = ["READ_KINDS", "further_columns", "read_holdings", "read_risky_assets"]
 
 BoolArray = NDArray[np.bool_]
 FloatArray = NDArray[np.float64]
@@ -28,6 +28,8 @@ _USED = {
     HoldingKind.DEPOSIT: frozenset({"Nominal"}),
     HoldingKind.FUND: frozenset({"Market value"}),
 }
+READ_KINDS = tuple(_USED)
+"""Kinds of holding that the sheet can state."""
 _ALWAYS_USED = frozenset({"Name", "Kind", "Day count", "Market value", "Units"})
 
 
@@ -36,7 +38,7 @@ def read_holdings(table: Table, faults: FaultList, *, valuation_date: date | Non
     rows = table.rows
     cells = {name: Cells(table.sheet, table.column(name), rows, faults) for name in table.layout.columns}
     names = cells["Name"].texts_of("the name of the holding")
-    kinds = cells["Kind"].choices(HoldingKind, "a kind", among=tuple(_USED))
+    kinds = cells["Kind"].choices(HoldingKind, "a kind", among=READ_KINDS)
     used = {
         name: np.array([kind is not None and name in _USED[kind] for kind in kinds], dtype=np.bool_)
         for name in ("Nominal", "Coupon", "Frequency", "Maturity", "Market value")

@@ -23,7 +23,7 @@ from desk.rates.compounding import Compounding
 from desk.rates.curve import Interpolation
 from desk.rates.day_count import DayCount
 
-__all__ = ["MODEL_ITEMS", "ItemSheet", "read_basis_items", "read_rates_model", "read_run"]
+__all__ = ["MODEL_ITEMS", "ItemSheet", "missing_items", "read_basis_items", "read_rates_model", "read_run"]
 
 Choice = TypeVar("Choice", bound=StrEnum)
 Check = Callable[[Cells, NDArray[np.float64], str], None]
@@ -292,6 +292,15 @@ def read_rates_model(sheet: ItemSheet) -> RatesModel | None:
                 mild=True,
             )
     return RatesModel(name=name, risk_price=risk_price, **model)
+
+
+def missing_items(model: RatesModel) -> tuple[str, ...]:
+    """The items that a model needs and does not have."""
+    return tuple(
+        item
+        for item in MODEL_ITEMS[model.name]
+        if getattr(model, item.lower().replace(" ", "_").replace("-", "_")) is None
+    )
 
 
 def sheet_parameters() -> tuple[str, ...]:

@@ -12,6 +12,7 @@ from typing import Any
 
 from desk.book import Fault
 from desk.intake.records import Reading
+from desk.report.said_once import further_faults
 from desk.scenarios.records import Distribution, NodeSummary, Simulation
 from desk.valuation.records import LineStanding, Measures, Standing
 
@@ -93,7 +94,7 @@ def standing_object(standing: Standing, faults: Iterable[Fault] = ()) -> dict[st
     ----------
     standing : Standing
     faults : iterable of Fault
-        Those of the reading; the standing's own are added.
+        Those of the reading; the standing's own are added where they say something new.
 
     Returns
     -------
@@ -127,7 +128,7 @@ def standing_object(standing: Standing, faults: Iterable[Fault] = ()) -> dict[st
             net=periods.net,
             cumulative=periods.cumulative,
         ),
-        "faults": [fault_object(fault) for fault in (*faults, *standing.faults)],
+        "faults": [fault_object(fault) for fault in _together(faults, standing.faults)],
     }
 
 
@@ -138,7 +139,7 @@ def simulation_object(simulation: Simulation, faults: Iterable[Fault] = ()) -> d
     ----------
     simulation : Simulation
     faults : iterable of Fault
-        Those of the reading; the run's own are added.
+        Those of the reading; the run's own are added where they say something new.
 
     Returns
     -------
@@ -160,8 +161,14 @@ def simulation_object(simulation: Simulation, faults: Iterable[Fault] = ()) -> d
         ),
         "short_rate": _summary(simulation.short_rate),
         "present_value": {side.name: _distribution(side) for side in simulation.present_value},
-        "faults": [fault_object(fault) for fault in (*faults, *simulation.faults)],
+        "faults": [fault_object(fault) for fault in _together(faults, simulation.faults)],
     }
+
+
+def _together(told: Iterable[Fault], found: Iterable[Fault]) -> tuple[Fault, ...]:
+    """The faults of a reading, and those of a result that say something new."""
+    told = tuple(told)
+    return (*told, *further_faults(told, found))
 
 
 def _number(value: Any) -> float | int | None:

@@ -8,6 +8,7 @@ from pathlib import Path
 import numpy as np
 
 from desk.book import Book, FlowTable, History, Holding, HoldingKind, Notes, RatesModel, RiskyAssets, Run
+from desk.intake.assets import READ_KINDS
 from desk.intake.layout import SHEETS, find_known, fold
 from desk.report.plain_workbook import PlainSheet, Style, Value, date_serials, write_sheets
 from desk.report.safe_cells import LONGEST_TEXT, clean_text, write_whole
@@ -99,6 +100,9 @@ def _check_names(book: Book) -> None:
                 raise ValueError(f"a workbook holds no {what} without a name")
             if clean_text(name) != name:
                 raise ValueError(f"a workbook does not hold the name of the {what} {name[:40]!r} as it is")
+    for holding in book.holdings:
+        if holding.kind not in READ_KINDS or _only_columns(holding) != holding:
+            raise ValueError(f"a workbook does not hold all there is to the holding {holding.name[:40]!r}")
     assets = () if book.risky_assets is None else book.risky_assets.names
     for name in assets:
         if find_known(name, SHEETS["Risky assets"].columns) is not None:
@@ -164,6 +168,22 @@ def _run(run: Run) -> dict[str, Value]:
         "Measure": str(run.measure),
         "Percentiles": "; ".join(repr(float(level)).removesuffix(".0") for level in run.percentiles),
     }
+
+
+def _only_columns(holding: Holding) -> Holding:
+    """A holding as its columns state it."""
+    return Holding(
+        name=holding.name,
+        kind=holding.kind,
+        nominal=holding.nominal,
+        coupon=holding.coupon,
+        frequency=holding.frequency,
+        maturity=holding.maturity,
+        day_count=holding.day_count,
+        market_value=holding.market_value,
+        units=holding.units,
+        duration=holding.duration,
+    )
 
 
 def _holding(holding: Holding) -> tuple[Value, ...]:

@@ -10,6 +10,7 @@ import os
 import re
 import secrets
 import stat
+import time
 from collections.abc import Callable
 from contextlib import suppress
 from datetime import date, datetime
@@ -53,6 +54,9 @@ _REPLACEMENT = "\N{REPLACEMENT CHARACTER}"
 _FORBIDDEN = re.compile("[\x00-\x08\x0b\x0c\x0e-\x1f\ud800-\udfff\ufffe\uffff]")
 # A spreadsheet reads _x0041_ in a text as the character U+0041 (ECMA-376 part 1, 22.9.2.19, ST_Xstring).
 _ESCAPE_LIKE = re.compile("_(?=x[0-9A-Fa-f]{4}_)")
+_NEIGHBOUR = re.compile(r"[0-9a-f]{12}\.part")
+_FORSAKEN_SECONDS = 3600.0
+"""No file takes so long to write: a neighbour that is older has nobody who writes it."""
 _SUSPECT_START = tuple("=+-@#'\t\n＝＋－＠")
 
 
@@ -190,7 +194,8 @@ def write_whole(path: Path, writer: Callable[[Path], object]) -> Path:
     former = target.stat() if target.exists() else None
     if former is not None and not os.access(target, os.W_OK):
         raise PermissionError(f"{path} must not be written to")
-    neighbour = target.with_name(f".{target.name[:100]}.{secrets.token_hex(6)}.part")
+    _remove_forsaken(target)
+    neighbour = target.with_name(f"{_neighbour_prefix(target)}{secrets.token_hex(6)}.part")
     os.close(os.open(neighbour, os.O_CREAT | os.O_EXCL | os.O_WRONLY, 0o666))
     try:
         writer(neighbour)
@@ -205,6 +210,23 @@ def write_whole(path: Path, writer: Callable[[Path], object]) -> Path:
         raise
     _flush_folder(target.parent)
     return path
+
+
+def _neighbour_prefix(target: Path) -> str:
+    """How the names of a file's neighbours begin."""
+    return f".{target.name[:100]}."
+
+
+def _remove_forsaken(target: Path) -> None:
+    """Remove neighbours of `target` that a process left when it was killed or the power went."""
+    prefix = _neighbour_prefix(target)
+    with suppress(OSError):
+        for entry in list(os.scandir(target.parent)):
+            if not entry.name.startswith(prefix) or not _NEIGHBOUR.fullmatch(entry.name[len(prefix) :]):
+                continue
+            with suppress(OSError):
+                if time.time() - entry.stat(follow_symlinks=False).st_mtime > _FORSAKEN_SECONDS:
+                    os.unlink(entry.path)
 
 
 def _flush_folder(folder: Path) -> None:

@@ -28,6 +28,7 @@ from desk.book import (
     Run,
     Severity,
 )
+from desk.intake.assets import READ_KINDS
 from desk.intake.layout import SHEETS, find_known, fold
 from desk.intake.workbook import read_workbook
 from desk.rates.compounding import Compounding
@@ -82,7 +83,7 @@ def flow_tables(draw: st.DrawFn, day_count: DayCount, *, beta: bool) -> FlowTabl
 @st.composite
 def holdings(draw: st.DrawFn) -> Holding:
     """A holding of any kind with what it needs."""
-    kind = draw(st.sampled_from(HoldingKind))
+    kind = draw(st.sampled_from(READ_KINDS))
     is_bond = kind is HoldingKind.BOND
     has_maturity = is_bond or kind is HoldingKind.ZERO
     worth = st.floats(1e-3, 1e12)

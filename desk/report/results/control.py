@@ -18,6 +18,7 @@ from desk.report.results.key_rates import key_rate_chart
 from desk.report.results.plan import FIRST_ROW, HEADING_ROW, Block, Formula, SheetPlan
 from desk.report.results.runs import run_label
 from desk.report.results.standing import flow_chart
+from desk.report.said_once import further_faults
 from desk.report.wording import CAUTION, MEASURES, QUANTILE_METHOD
 from desk.scenarios.records import Simulation
 from desk.valuation.records import Standing
@@ -200,9 +201,11 @@ def _pictures(plan: SheetPlan, standing: Standing, charts_from: dict[str, SheetP
 
 def plan_faults(reading: Reading, standing: Standing, simulation: Simulation | None) -> SheetPlan:
     """Everything that was found wrong, and what was done about it."""
-    sources: list[tuple[str, Sequence[Fault]]] = [("Reading", reading.faults), ("Valuation", standing.faults)]
+    told = reading.faults
+    of_standing = further_faults(told, standing.faults)
+    sources: list[tuple[str, Sequence[Fault]]] = [("Reading", told), ("Valuation", of_standing)]
     if simulation is not None:
-        sources.append(("Simulation", simulation.faults))
+        sources.append(("Simulation", further_faults((*told, *of_standing), simulation.faults)))
     faults = [(source, fault) for source, found in sources for fault in found]
     shown = faults[:FAULT_CAP]
     note = "A mild fault leaves the book usable; what was done is said."

@@ -278,7 +278,7 @@ def _histogram_table(
     plan: SheetPlan, bins: Histogram, *, row: int, column: int, unit: str, form: str
 ) -> tuple[int, int]:
     """Bins with their counts; returns the first and last row."""
-    middle = 0.5 * (bins.edges[:-1] + bins.edges[1:])
+    middle = 0.5 * bins.edges[:-1] + 0.5 * bins.edges[1:]
     plan.headings(
         [f"Middle of the bin [{unit}]", f"Bin from [{unit}]", "Paths"], row=row, column=column, left=0
     )

@@ -7,6 +7,7 @@ from contextlib import suppress
 from datetime import UTC, datetime
 from pathlib import Path
 from typing import TYPE_CHECKING, Any
+from zipfile import ZIP_DEFLATED, ZipFile
 
 from desk.book import Book, Side
 from desk.intake.records import Reading
@@ -128,6 +129,7 @@ def _write(
     """Write the planned sheets into one file."""
     from openpyxl import Workbook
     from openpyxl.workbook.defined_name import DefinedName
+    from openpyxl.writer.excel import ExcelWriter
 
     workbook = Workbook(write_only=True)
     workbook.calculation.fullCalcOnLoad = True
@@ -137,7 +139,9 @@ def _write(
         workbook.defined_names[name] = DefinedName(name, attr_text=area)
     try:
         _write_sheets(workbook, plans, report)
-        workbook.save(target)
+        # As a context the package is closed where the disk is full; left to itself it complains aloud.
+        with ZipFile(target, "w", ZIP_DEFLATED) as package:
+            ExcelWriter(workbook, package).save()
     except BaseException:
         _discard(workbook)
         raise
