@@ -11,7 +11,7 @@ import QuantLib as ql
 from hypothesis import given
 from hypothesis import strategies as st
 
-from desk.rates.day_count import DayCount, year_fraction
+from desk.rates.day_count import DayCount, add_months, coupon_fraction, year_fraction
 
 EVERY = list(DayCount)
 THEIRS = {
@@ -20,6 +20,7 @@ THEIRS = {
     DayCount.ACT_ACT_ISDA: ql.ActualActual(ql.ActualActual.ISDA),
     DayCount.THIRTY_360: ql.Thirty360(ql.Thirty360.BondBasis),
     DayCount.THIRTY_E_360: ql.Thirty360(ql.Thirty360.EurobondBasis),
+    DayCount.THIRTY_E_360_ISDA: ql.Thirty360(ql.Thirty360.ISDA),
 }
 DATES = st.dates(date(1901, 1, 1), date(2199, 12, 30))
 
@@ -28,7 +29,7 @@ def _one(start: date, end: date, day_count: DayCount) -> float:
     return float(year_fraction(np.datetime64(start), np.datetime64(end), day_count))
 
 
-@pytest.mark.parametrize("day_count", EVERY)
+@pytest.mark.parametrize("day_count", list(THEIRS))
 def test_agrees_with_quantlib(day_count: DayCount) -> None:
     random = np.random.default_rng(3)
     start = np.datetime64("1990-01-01") + random.integers(0, 30_000, 1000)
@@ -43,6 +44,70 @@ def test_agrees_with_quantlib(day_count: DayCount) -> None:
         for one, two in zip(start, end, strict=True)
     ]
     np.testing.assert_allclose(ours, theirs, rtol=1e-13, atol=1e-15)
+
+
+def test_thirty_to_month_ends_agrees_with_quantlib_at_the_termination() -> None:
+    random = np.random.default_rng(5)
+    month = np.datetime64("1990-01", "M") + random.integers(0, 900, 600)
+    end = month.astype("M8[D]") - np.timedelta64(1, "D")
+    start = end - random.integers(1, 4000, 600)
+    termination = np.where(random.random(600) < 0.5, end, end + 30)
+    ours = year_fraction(start, end, DayCount.THIRTY_E_360_ISDA, termination=termination)
+    for one, two, last, years in zip(start, end, termination, ours, strict=True):
+        first, second, ending = (ql.Date(str(day), "%Y-%m-%d") for day in (one, two, last))
+        theirs = ql.Thirty360(ql.Thirty360.ISDA, ending)
+        assert years == pytest.approx(theirs.yearFraction(first, second), abs=1e-15)
+
+
+@pytest.mark.parametrize("frequency", [1, 2, 4, 12])
+def test_coupon_fractions_agree_with_quantlib_on_schedules(frequency: int) -> None:
+    """Regular coupons, short and long first ones, and accrued parts of them."""
+    theirs = ql.ActualActual(ql.ActualActual.ISMA)
+    random = np.random.default_rng(frequency)
+    count, months = 400, 12 // frequency
+    closing = np.datetime64("2000-01-01", "D") + random.integers(0, 20_000, count)
+    # The days that every month has: how a schedule passes the others is another matter.
+    closing = closing.astype("M8[M]").astype("M8[D]") + random.integers(0, 28, count)
+    opening = add_months(closing, -months)
+    reach = random.uniform(0.0, 2.9, count) * (closing - opening).astype(float)
+    start = closing - np.maximum(reach, 1.0).astype("m8[D]")
+    ours = coupon_fraction(start, closing, period_start=opening, period_end=closing, frequency=frequency)
+    for place in range(count):
+        days = [ql.Date(str(day[place]), "%Y-%m-%d") for day in (start, closing, opening, closing)]
+        assert ours[place] == pytest.approx(theirs.yearFraction(*days), rel=1e-13)
+
+
+@given(DATES, DATES, DATES, st.sampled_from([1, 2, 3, 4, 6, 12]), st.integers(0, 40))
+def test_coupon_fractions_add_up(
+    start: date, middle: date, opening: date, frequency: int, periods: int
+) -> None:
+    begin = np.datetime64(opening.replace(day=min(opening.day, 28)), "D")
+    period = {"period_start": begin, "period_end": add_months(np.asarray(begin), 12 // frequency)}
+    first, second = np.datetime64(start), np.datetime64(middle)
+    later = add_months(np.asarray(begin), periods * 12 // frequency)
+
+    def between(one: np.datetime64, two: np.datetime64) -> float:
+        return float(coupon_fraction(one, two, frequency=frequency, **period))
+
+    whole = between(first, later[()])
+    assert whole == pytest.approx(between(first, second) + between(second, later[()]), abs=1e-11)
+    assert whole == -between(later[()], first)
+    # Whole periods are whole parts of a year.
+    assert between(begin, later[()]) == pytest.approx(periods / frequency, abs=1e-13)
+
+
+def test_coupon_fractions_refuse_what_is_no_period() -> None:
+    day = np.datetime64("2026-06-30")
+    with pytest.raises(ValueError, match="frequency"):
+        coupon_fraction(day, day, period_start=day, period_end=day + 181, frequency=5)
+    with pytest.raises(ValueError, match="period_end"):
+        coupon_fraction(day, day, period_start=day, period_end=day, frequency=2)
+
+
+def test_icma_without_a_coupon_counts_anniversaries() -> None:
+    ends = np.array(["2027-06-30", "2031-06-30", "2026-12-31", "2025-06-30"], dtype="M8[D]")
+    years = year_fraction(np.datetime64("2026-06-30"), ends, DayCount.ACT_ACT_ICMA)
+    np.testing.assert_allclose(years, [1.0, 5.0, 184.0 / 365.0, -1.0], rtol=1e-14)
 
 
 @given(DATES, DATES)

@@ -1,0 +1,150 @@
+"""Zero rates at which every quoted instrument is worth what it is quoted at."""
+
+from __future__ import annotations
+
+import numpy as np
+from numpy.typing import NDArray
+
+from desk.rates.curve import Curve, Interpolation
+from desk.rates.curve_error import CurveError
+from desk.rates.quoted_flows import QuotedFlows, flow_yields
+from desk.rates.sensitivity import exponents
+
+__all__ = ["bootstrap"]
+
+FloatArray = NDArray[np.float64]
+
+_MOST_STEPS = 60
+_MOST_HALVINGS = 25
+_REACHED = 1e-15  # of what an instrument is worth
+_ALLOWED = 1e-13  # likewise, where rounding bars the way to less
+_LONGEST_STEP = 3.0  # in the exponent zero rate · time
+
+
+def bootstrap(flows: QuotedFlows, *, interpolation: Interpolation = Interpolation.LOG_LINEAR) -> Curve:
+    """The curve on which every instrument is worth its value.
+
+    Parameters
+    ----------
+    flows : QuotedFlows
+        The instruments, in the order of their last payments, no two of which are at one time.
+    interpolation : Interpolation
+        What is drawn between the last payments, which are the terms of the curve.
+
+    Returns
+    -------
+    Curve
+        It gives back the values within 1e-12 of each.
+
+    Raises
+    ------
+    CurveError
+        If the instruments are out of order or two end together, or no curve gives back their values; `rows`
+        names the instruments.
+
+    Notes
+    -----
+    All zero rates are found together by Newton's method, because with most interpolations a later rate moves
+    the curve before it. Each begins at the yield of its own instrument; a step that leads away from the
+    values is halved.
+    """
+    flows.require_rising_terms()
+    interpolation = Interpolation(interpolation)
+    start = flow_yields(flows)
+    start = np.where(np.isfinite(start), start, 0.0)
+    rates = _solved(flows, interpolation, start)
+    if rates is None:
+        raise _diagnosis(flows, interpolation, start)
+    return Curve(flows.term, rates, interpolation)
+
+
+class _Equations:
+    """Values less targets by zero rates, each divided by what the instrument is worth."""
+
+    def __init__(self, flows: QuotedFlows, interpolation: Interpolation) -> None:
+        self._flows = flows
+        self._scale = np.maximum(np.abs(flows.target), 1e-3 * flows.sums(np.abs(flows.amount)))
+        # Many instruments pay on the same days.
+        times, self._time_of = np.unique(flows.time, return_inverse=True)
+        self._exponents = exponents(flows.term, times, interpolation)
+
+    def at(self, rates: FloatArray) -> tuple[FloatArray, FloatArray]:
+        """Relative differences, shape (m,), and their derivatives by the rates, shape (m, m)."""
+        flows, count = self._flows, rates.size
+        with np.errstate(over="ignore", under="ignore", invalid="ignore", divide="ignore"):
+            found = self._exponents(rates)
+            worth = flows.amount * np.exp(-found.value)[self._time_of]
+            # dimensions: instrument, number that tells the curve
+            by_number = np.zeros(count * len(found.by_rate))
+            for place, factor in zip(found.place, found.factor, strict=True):
+                cell = flows.instrument * len(found.by_rate) + place[self._time_of]
+                by_number += np.bincount(cell, worth * factor[self._time_of], by_number.size)
+            slope = -by_number.reshape(count, -1) @ found.by_rate
+            return (flows.sums(worth) - flows.target) / self._scale, slope / self._scale[:, None]
+
+
+def _solved(flows: QuotedFlows, interpolation: Interpolation, start: FloatArray) -> FloatArray | None:
+    """The zero rates at the terms; None where none are found."""
+    equations = _Equations(flows, interpolation)
+    rates = start
+    miss, slope = equations.at(rates)
+    for _ in range(_MOST_STEPS):
+        largest = float(np.abs(miss).max())
+        if largest <= _REACHED:
+            return rates
+        try:
+            step = np.linalg.solve(slope, -miss)
+        except np.linalg.LinAlgError:
+            break
+        longest = float((np.abs(step) * flows.term).max())
+        if not np.isfinite(longest):
+            break
+        step *= min(1.0, _LONGEST_STEP / longest) if longest > 0.0 else 1.0
+        size = float(np.linalg.norm(miss))
+        for _ in range(_MOST_HALVINGS):
+            ahead, ahead_slope = equations.at(rates + step)
+            if np.linalg.norm(ahead) < size:
+                break
+            if largest <= _ALLOWED:
+                return rates  # what is left is rounding
+            step = 0.5 * step
+        else:
+            return None
+        rates, miss, slope = rates + step, ahead, ahead_slope
+    return rates if float(np.abs(miss).max()) <= _ALLOWED else None
+
+
+def _diagnosis(flows: QuotedFlows, interpolation: Interpolation, start: FloatArray) -> CurveError:
+    """The first instrument with which the ones before it give no curve."""
+    works, fails = 0, len(flows)
+    while fails - works > 1:
+        middle = (works + fails) // 2
+        if _solved(flows.leading(middle), interpolation, start[:middle]) is None:
+            fails = middle
+        else:
+            works = middle
+    row = fails - 1
+    term = float(flows.term[row])
+    return CurveError(
+        f"no curve gives the quote at {term:g} years what it is quoted at"
+        + _why(flows, interpolation, row, works, start),
+        "Check this quote and those beside it, or fit a smooth curve through all.",
+        rows=(row,),
+    )
+
+
+def _why(flows: QuotedFlows, interpolation: Interpolation, row: int, works: int, start: FloatArray) -> str:
+    """What keeps a quote from fitting those before it."""
+    if not works:
+        return ""
+    rates = _solved(flows.leading(works), interpolation, start[:works])
+    if rates is None:
+        return ""
+    earlier = Curve(flows.term[:works], rates, interpolation)
+    own = flows.instrument == row
+    time, amount = flows.time[own], flows.amount[own]
+    known = time <= earlier.last_term
+    left = float(flows.target[row] - amount[known] @ earlier.discount(time[known]))
+    if left <= 0.0:
+        return ", because what it pays up to the quote before it is already worth as much"
+    return ""
