@@ -5,45 +5,23 @@ from __future__ import annotations
 from collections.abc import Sequence
 
 import numpy as np
-from numpy.typing import NDArray
 
 from desk.book.arrays import FloatArray, IntArray
-from desk.rates.day_count import DateArray, DayCount, year_fraction
+from desk.rates.day_count import DateArray, DayCount, add_months, year_fraction
 
-__all__ = ["ICMA", "accrual_fraction", "add_months", "day_count_codes", "period_around", "periods_left"]
-
-ICMA = -1
-"""Code of Act/Act ICMA among day counts; the others are numbered as in `DayCount`."""
+__all__ = ["ICMA", "accrual_fraction", "day_count_codes", "period_around", "periods_left"]
 
 _COUNTS = tuple(DayCount)
 _CODES: dict[DayCount | None, int] = {count: number for number, count in enumerate(_COUNTS)}
+
+ICMA = _CODES[DayCount.ACT_ACT_ICMA]
+"""Number of Act/Act ICMA among the day counts."""
 
 
 def day_count_codes(day_counts: Sequence[DayCount | None]) -> IntArray:
     """Day counts as numbers, shape (n,); None is Act/Act ICMA."""
     codes = _CODES | {None: ICMA}
     return np.array([codes[count] for count in day_counts], dtype=np.int64)
-
-
-def add_months(start: DateArray, months: NDArray[np.int64]) -> DateArray:
-    """Dates a number of months later, on the same day or the last day of a shorter month.
-
-    Parameters
-    ----------
-    start : ndarray of datetime64[D], shape (n,)
-    months : ndarray of int, shape (n,)
-        May be negative.
-
-    Returns
-    -------
-    ndarray of datetime64[D], shape (n,)
-    """
-    month = start.astype("M8[M]")
-    day = start - month.astype("M8[D]")
-    target = month + months.astype("timedelta64[M]")
-    first = target.astype("M8[D]")
-    length = (target + np.timedelta64(1, "M")).astype("M8[D]") - first
-    return np.asarray(first + np.minimum(day, length - np.timedelta64(1, "D")), dtype="M8[D]")
 
 
 def period_around(
@@ -116,5 +94,5 @@ def accrual_fraction(
             left = [periods_left(day[own], maturity=terms[0], months=terms[1]) for day in (start, end)]
             years[own] = (left[0] - left[1]) * terms[1] / 12.0
         else:
-            years[own] = year_fraction(start[own], end[own], _COUNTS[number])
+            years[own] = year_fraction(start[own], end[own], _COUNTS[number], termination=maturity[own])
     return years

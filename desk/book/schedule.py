@@ -10,11 +10,11 @@ from typing import Any
 import numpy as np
 from numpy.typing import NDArray
 
-from desk.book.accrual import ICMA, accrual_fraction, add_months, period_around
+from desk.book.accrual import ICMA, accrual_fraction, period_around
 from desk.book.arrays import FloatArray, IntArray
 from desk.book.holding import Amortisation, Holding
 from desk.book.legs import Legs, holding_legs
-from desk.rates.day_count import DateArray, DayCount, year_fraction
+from desk.rates.day_count import DateArray, DayCount, add_months, year_fraction
 
 __all__ = ["HoldingFlows", "RunningPeriods", "add_months", "holding_flows"]
 
