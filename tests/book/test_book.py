@@ -136,3 +136,13 @@ def test_a_basis_without_a_curve_says_why(change: dict[str, object], message: st
     basis = replace(_basis(), **change)  # type: ignore[arg-type]  # one field of several types
     with pytest.raises(ValueError, match=message):
         _ = basis.curve
+
+
+def test_payments_are_the_amounts_unless_they_are_stated() -> None:
+    one = np.ones(2)
+    flows = PricedFlows(Side.ASSETS, ("a",), np.zeros(2, np.int64), one, one, one, np.ones(2, np.bool_))
+    assert flows.paid is flows.amount
+    stated = replace(flows, payment=np.array([3.0, 4.0]))
+    assert stated.paid.tolist() == [3.0, 4.0]
+    with pytest.raises(ValueError, match="`payment` must be of the length of `amount`"):
+        replace(flows, payment=np.ones(3))

@@ -14,6 +14,7 @@ from desk.book import Amortisation, Basis, Book, FlowTable, Holding, HoldingKind
 from desk.rates.day_count import DayCount
 from desk.valuation.detail import line_flows
 from desk.valuation.holdings import price_holdings
+from desk.valuation.priced import priced_flows
 from desk.valuation.prices import holding_prices
 from desk.valuation.records import LineStanding, Standing
 from desk.valuation.standing import stand
@@ -363,3 +364,13 @@ def test_extreme_holdings_leave_finite_figures_or_faults() -> None:
     assert len(standing.lines) == len(holding_prices(_book(*holdings))) == 5
     assert len(price_holdings((), basis()).faults) == 0
     assert holding_prices(_book()) == ()
+
+
+def test_rows_of_every_kind_come_by_line_and_then_by_time() -> None:
+    random = np.random.default_rng(40)
+    holdings = [_random(kind, random) for _ in range(12) for kind in WITH_FLOWS]
+    flows = priced_flows(_book(*holdings), Side.ASSETS).flows
+    np.testing.assert_array_equal(np.lexsort((flows.time, flows.line)), np.arange(len(flows)))
+    # Only the start of a floating leg that lies ahead is no payment.
+    assert not flows.paid[~flows.is_flow].any()
+    assert flows.amount[~flows.is_flow].all()
