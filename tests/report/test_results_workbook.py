@@ -299,6 +299,18 @@ def test_an_empty_side_is_reported(tmp_path: Path, without: str) -> None:
         assert sheet.book["Summary"]["C8"].value == "n/a"
 
 
+def test_a_flow_in_the_year_9999_fails_no_formula(tmp_path: Path) -> None:
+    """A row thousands of years away overflows nothing in the workings of the near keys."""
+    book = examples.book()
+    far = FlowTable.build(["Far", "Near"], [7978.5, 3.0], [1000.0, 1000.0])
+    with np.errstate(over="raise"):
+        sheet = write(replace(book, liabilities=far), tmp_path / "far.xlsx")
+        values = [sheet.value(name, at) for name, at, _ in sheet.formulas()]
+    assert "CHECK" not in values
+    assert "#VALUE!" not in values
+    assert sheet.value(*MASTER) == "OK"
+
+
 def test_a_stopped_report_leaves_the_former_file(tmp_path: Path) -> None:
     """Whole or not at all: nothing of a stopped report is left behind."""
     path = tmp_path / "report.xlsx"

@@ -161,8 +161,9 @@ def _segments(plan: SheetPlan, work: int, terms: Sequence[float]) -> None:
                 text = f"=SUMPRODUCT({inside}*{time}*{value}*{share})" if share else "=0"
                 cells.append((Formula(text), "live", "money2"))
             for share in shares:
+                # Within the exponent, because the share of a row far outside would carry EXP over its end.
                 text = (
-                    f"=SUMPRODUCT({inside}*{value}*(1-EXP(-basis_point*{time}*{share})))" if share else "=0"
+                    f"=SUMPRODUCT({value}*(1-EXP(-basis_point*{inside}*{time}*{share})))" if share else "=0"
                 )
                 cells.append((Formula(text), "live", "money2"))
         plan.table_row(row, 1, cells)
