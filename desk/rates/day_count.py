@@ -141,12 +141,12 @@ def coupon_fraction(
     return np.asarray(np.where(missing, np.nan, periods * months / 12.0), dtype=np.float64)
 
 
-def add_months(start: DateArray, months: int | NDArray[np.int64]) -> DateArray:
+def add_months(start: np.datetime64 | DateArray, months: int | NDArray[np.int64]) -> DateArray:
     """Dates a number of months later, on the same day or the last day of a shorter month.
 
     Parameters
     ----------
-    start : ndarray of datetime64[D], any shape
+    start : datetime64[D] scalar or array, any shape
     months : int or ndarray of int, a shape that broadcasts
         May be negative.
 
@@ -154,8 +154,9 @@ def add_months(start: DateArray, months: int | NDArray[np.int64]) -> DateArray:
     -------
     ndarray of datetime64[D], the broadcast shape
     """
-    month = start.astype("datetime64[M]")
-    day = start - month.astype("datetime64[D]")
+    days = np.asarray(start, dtype="datetime64[D]")
+    month = days.astype("datetime64[M]")
+    day = days - month.astype("datetime64[D]")
     first = (month + np.asarray(months).astype("timedelta64[M]")).astype("datetime64[D]")
     length = (first.astype("datetime64[M]") + np.timedelta64(1, "M")).astype("datetime64[D]") - first
     return np.asarray(first + np.minimum(day, length - np.timedelta64(1, "D")), dtype="datetime64[D]")
