@@ -12,6 +12,7 @@ from xml.etree import ElementTree
 
 import numpy as np
 import pytest
+from openpyxl.utils import get_column_letter
 
 from desk import tasks
 from desk.book import Book, FlowTable
@@ -309,6 +310,35 @@ def test_a_flow_in_the_year_9999_fails_no_formula(tmp_path: Path) -> None:
     assert "CHECK" not in values
     assert "#VALUE!" not in values
     assert sheet.value(*MASTER) == "OK"
+
+
+def test_columns_are_wide_enough_for_large_amounts(tmp_path: Path) -> None:
+    """Amounts in a currency of small units leave no column of hashes: a digit takes one of its width."""
+    book = examples.book()
+    large = FlowTable.build(["Large"], [3.0], [12_345_678_901_234_567.0])
+    sheet = write(replace(book, liabilities=large), tmp_path / "large.xlsx")
+    checked = 0
+    for page in sheet.book.worksheets:
+        for row in page.iter_rows():
+            for cell in row:
+                value = sheet.value(page.title, cell.coordinate)
+                if cell.number_format.startswith("#,##0") and isinstance(value, float) and abs(value) > 1e12:
+                    shown = f"{value:,.2f}" if "0.00" in cell.number_format else f"{value:,.0f}"
+                    # A width counts digits; a comma or a point is half as wide as one.
+                    digits = sum(letter.isdigit() for letter in shown)
+                    width = page.column_dimensions[get_column_letter(cell.column or 1)].width
+                    assert width > digits + 0.5 * (len(shown) - digits), (page.title, cell.coordinate)
+                    checked += 1
+    assert checked > 30
+
+
+def test_a_long_title_is_cut_over_the_sheet_alone(tmp_path: Path) -> None:
+    """It would make the printed page as wide as itself; among the items of the basis it is whole."""
+    book = examples.book()
+    title = "A fund of a long name " * 100
+    sheet = write(replace(book, basis=replace(book.basis, title=title)), tmp_path / "long.xlsx")
+    assert len(sheet.book["Summary"]["A1"].value) == 120
+    assert title in [cell.value for row in sheet.book["Basis and curve"].iter_rows() for cell in row]
 
 
 def test_a_stopped_report_leaves_the_former_file(tmp_path: Path) -> None:

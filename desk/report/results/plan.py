@@ -23,11 +23,13 @@ if TYPE_CHECKING:
 __all__ = [
     "FIRST_ROW",
     "HEADING_ROW",
+    "LONGEST_TITLE",
     "Block",
     "Formula",
     "PlannedCell",
     "SheetPlan",
     "column_letter",
+    "widen",
     "write_sheet",
 ]
 
@@ -35,6 +37,11 @@ TITLE_ROW, NOTE_ROW, CHECK_ROW, HEADING_ROW, FIRST_ROW = 1, 2, 3, 4, 5
 MASTER_CHECK = "workbook_check"
 
 
+LONGEST_TITLE = 120
+"""Characters of a title over a sheet: a longer one would make the printed page as wide as itself."""
+_DIGITS_PLANNED = "9,999,999,999"
+"""The longest amount that the widths of the columns are made for."""
+_LARGEST_SHOWN = 1e24
 _UNIT = re.compile(r"\[[^\]]*\]")
 
 
@@ -165,6 +172,29 @@ class SheetPlan:
         return self.area(column, first, last)
 
 
+def widen(plans: Iterable[SheetPlan], largest: float) -> None:
+    """Make room in all columns of money for amounts of more digits than the widths are made for.
+
+    Parameters
+    ----------
+    plans : iterable of SheetPlan
+        Their widths are changed.
+    largest : float
+        Size of the largest amount.
+    """
+    extra = len(f"{min(abs(largest), _LARGEST_SHOWN):,.0f}") - len(_DIGITS_PLANNED)
+    if not extra > 0:
+        return
+    for plan in plans:
+        columns = {
+            column for row in plan.cells.values() for column, cell in row.items() if "money" in cell.form
+        }
+        if plan.block is not None:
+            columns |= {number for number, form in enumerate(plan.block.forms, start=1) if "money" in form}
+        for column in columns:
+            plan.widths[column] = plan.widths.get(column, 10.0) + extra
+
+
 def column_letter(column: int) -> str:
     """``A`` for 1."""
     from openpyxl.utils import get_column_letter
@@ -185,7 +215,8 @@ def write_sheet(
     for column, width in plan.widths.items():
         sheet.column_dimensions[column_letter(column)].width = width
     set_up_page(sheet, title_rows=plan.title_rows, is_one_page=plan.is_one_page)
-    plan.put(TITLE_ROW, 1, plan.title, "title")
+    title = plan.title if len(plan.title) <= LONGEST_TITLE else plan.title[: LONGEST_TITLE - 1] + "…"
+    plan.put(TITLE_ROW, 1, title, "title")
     plan.put(NOTE_ROW, 1, plan.note, "note")
     if CHECK_ROW not in plan.cells or 1 not in plan.cells[CHECK_ROW]:
         plan.put(CHECK_ROW, 1, Formula(f'="Workbook check: "&{MASTER_CHECK}'), "note")

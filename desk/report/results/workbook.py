@@ -9,6 +9,8 @@ from pathlib import Path
 from typing import TYPE_CHECKING, Any
 from zipfile import ZIP_DEFLATED, ZipFile
 
+import numpy as np
+
 from desk.book import Book, Side
 from desk.intake.records import Reading
 from desk.report.results.checks import Checks
@@ -17,7 +19,7 @@ from desk.report.results.flows import FlowSheet, plan_flows
 from desk.report.results.inputs import plan_basis, plan_curve, plan_holdings
 from desk.report.results.key_rates import plan_key_rates
 from desk.report.results.look import Styles
-from desk.report.results.plan import MASTER_CHECK, SheetPlan, write_sheet
+from desk.report.results.plan import MASTER_CHECK, SheetPlan, widen, write_sheet
 from desk.report.results.runs import plan_present_values, plan_savings_account, plan_short_rate
 from desk.report.results.standing import check_measures, plan_lines, plan_periods
 from desk.report.safe_cells import clean_text, write_whole
@@ -85,10 +87,11 @@ def plan_sheets(
     """All sheets in their order, and the names that the workbook defines."""
     checks = Checks()
     sheets: dict[Side, FlowSheet] = {}
-    last_time = 0.0
+    last_time = largest = 0.0
     for side in Side:
         priced = priced_flows(book, side)
         sheets[side] = plan_flows(priced.flows, priced.date, book.basis.curve, currency=standing.currency)
+        largest = max(largest, float(np.abs(priced.flows.amount).sum()))
         last_time = max(last_time, float(priced.flows.time.max(initial=0.0)))
     recomputed = check_measures(standing, sheets, checks)
     curve = plan_curve(book.basis, last_time=last_time, checks=checks)
@@ -117,6 +120,7 @@ def plan_sheets(
     plans.append(checks.plan())
     plans.append(plan_faults(reading, standing, simulation))
     plans.append(plan_provenance(reading, standing, simulation, written_at=written_at))
+    widen(plans, largest)
     names = checks.names() | {MASTER_CHECK: MASTER_CHECK_AREA}
     for sheet in sheets.values():
         names |= sheet.names
