@@ -71,47 +71,48 @@ class _Equations:
     def at(self, rates: FloatArray) -> tuple[FloatArray, FloatArray]:
         """Relative differences, shape (m,), and their derivatives by the rates, shape (m, m)."""
         flows, count = self._flows, rates.size
-        with np.errstate(over="ignore", under="ignore", invalid="ignore", divide="ignore"):
-            found = self._exponents(rates)
-            worth = flows.amount * np.exp(-found.value)[self._time_of]
-            # dimensions: instrument, number that tells the curve
-            by_number = np.zeros(count * len(found.by_rate))
-            for place, factor in zip(found.place, found.factor, strict=True):
-                cell = flows.instrument * len(found.by_rate) + place[self._time_of]
-                by_number += np.bincount(cell, worth * factor[self._time_of], by_number.size)
-            slope = -by_number.reshape(count, -1) @ found.by_rate
-            return (flows.sums(worth) - flows.target) / self._scale, slope / self._scale[:, None]
+        found = self._exponents(rates)
+        worth = flows.amount * np.exp(-found.value)[self._time_of]
+        # dimensions: instrument, number that tells the curve
+        by_number = np.zeros(count * len(found.by_rate))
+        for place, factor in zip(found.place, found.factor, strict=True):
+            cell = flows.instrument * len(found.by_rate) + place[self._time_of]
+            by_number += np.bincount(cell, worth * factor[self._time_of], by_number.size)
+        slope = -by_number.reshape(count, -1) @ found.by_rate
+        return (flows.sums(worth) - flows.target) / self._scale, slope / self._scale[:, None]
 
 
 def _solved(flows: QuotedFlows, interpolation: Interpolation, start: FloatArray) -> FloatArray | None:
     """The zero rates at the terms; None where none are found."""
-    equations = _Equations(flows, interpolation)
-    rates = start
-    miss, slope = equations.at(rates)
-    for _ in range(_MOST_STEPS):
-        largest = float(np.abs(miss).max())
-        if largest <= _REACHED:
-            return rates
-        try:
-            step = np.linalg.solve(slope, -miss)
-        except np.linalg.LinAlgError:
-            break
-        longest = float((np.abs(step) * flows.term).max())
-        if not np.isfinite(longest):
-            break
-        step *= min(1.0, _LONGEST_STEP / longest) if longest > 0.0 else 1.0
-        size = float(np.linalg.norm(miss))
-        for _ in range(_MOST_HALVINGS):
-            ahead, ahead_slope = equations.at(rates + step)
-            if np.linalg.norm(ahead) < size:
+    # Where the search strays numbers may overflow; it then ends without a curve.
+    with np.errstate(over="ignore", under="ignore", invalid="ignore", divide="ignore"):
+        equations = _Equations(flows, interpolation)
+        rates = start
+        miss, slope = equations.at(rates)
+        for _ in range(_MOST_STEPS):
+            largest = float(np.abs(miss).max())
+            if largest <= _REACHED:
+                return rates
+            try:
+                step = np.linalg.solve(slope, -miss)
+            except np.linalg.LinAlgError:
                 break
-            if largest <= _ALLOWED:
-                return rates  # what is left is rounding
-            step = 0.5 * step
-        else:
-            return None
-        rates, miss, slope = rates + step, ahead, ahead_slope
-    return rates if float(np.abs(miss).max()) <= _ALLOWED else None
+            longest = float((np.abs(step) * flows.term).max())
+            if not np.isfinite(longest):
+                break
+            step *= min(1.0, _LONGEST_STEP / longest) if longest > 0.0 else 1.0
+            size = float(np.linalg.norm(miss))
+            for _ in range(_MOST_HALVINGS):
+                ahead, ahead_slope = equations.at(rates + step)
+                if np.linalg.norm(ahead) < size:
+                    break
+                if largest <= _ALLOWED:
+                    return rates  # what is left is rounding
+                step = 0.5 * step
+            else:
+                return None
+            rates, miss, slope = rates + step, ahead, ahead_slope
+        return rates if float(np.abs(miss).max()) <= _ALLOWED else None
 
 
 def _diagnosis(flows: QuotedFlows, interpolation: Interpolation, start: FloatArray) -> CurveError:
@@ -144,7 +145,8 @@ def _why(flows: QuotedFlows, interpolation: Interpolation, row: int, works: int,
     own = flows.instrument == row
     time, amount = flows.time[own], flows.amount[own]
     known = time <= earlier.last_term
-    left = float(flows.target[row] - amount[known] @ earlier.discount(time[known]))
-    if left <= 0.0:
+    with np.errstate(over="ignore", invalid="ignore"):
+        already = float(amount[known] @ earlier.discount(time[known]))
+    if already >= flows.target[row]:
         return ", because what it pays up to the quote before it is already worth as much"
     return ""

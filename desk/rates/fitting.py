@@ -22,7 +22,8 @@ _DECAYS = np.geomspace(0.1, 30.0, 18)
 _STARTS = 5
 _ROUNDS = 4
 _BETTER = 0.999  # of the sum of squares: with less gained, another round is not worth its while
-_MOST_EVALUATIONS = 200
+_FEW_EVALUATIONS, _MOST_EVALUATIONS = 30, 600
+_FINALISTS = 2
 _LARGEST_EXPONENT = 50.0
 _LARGEST_RATE = 10.0  # 1000 % a year: no path of the search goes past it
 
@@ -163,7 +164,13 @@ class _Problem:
         best: _Found | None = None
         known = self._yields[self._flows.instrument]
         for _ in range(_ROUNDS):
-            found = min((self._improved(start) for start in self._starts(known)), key=lambda one: one.cost)
+            tried = [self._improved(start, _FEW_EVALUATIONS) for start in self._starts(known)]
+            tried.sort(key=lambda one: one.cost)
+            finalists = [
+                one if one.converged else self._improved(one.numbers, _MOST_EVALUATIONS)
+                for one in tried[:_FINALISTS]
+            ]
+            found = min(finalists, key=lambda one: one.cost)
             if best is not None and found.cost >= _BETTER * best.cost:
                 best = min(best, found, key=lambda one: one.cost)
                 break
@@ -212,8 +219,8 @@ class _Problem:
         lowest.sort(key=lambda pair: pair[0])
         return [numbers for _, numbers in lowest[:_STARTS]]
 
-    def _improved(self, start: FloatArray) -> _Found:
-        """From one start to the nearest least sum of squares."""
+    def _improved(self, start: FloatArray, most_evaluations: int) -> _Found:
+        """From one start towards the nearest least sum of squares."""
         from scipy.optimize import least_squares
 
         rates = 2 + self._humps
@@ -235,9 +242,9 @@ class _Problem:
             bounds=(lowest, highest),
             x_scale="jac",
             ftol=1e-15,
-            xtol=1e-12,
+            xtol=1e-10,
             gtol=1e-15,
-            max_nfev=_MOST_EVALUATIONS,
+            max_nfev=most_evaluations,
         )
         return _Found(np.array(found.x), float(found.cost), bool(found.status > 0), int(found.nfev))
 

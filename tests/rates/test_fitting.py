@@ -1,0 +1,151 @@
+"""Smooth curves fitted to bonds: recovery of known curves, residuals, and sheets that give none."""
+
+from __future__ import annotations
+
+from dataclasses import replace
+
+import numpy as np
+import pytest
+from scipy.optimize import minimize
+
+from desk.rates.curve_error import CurveError
+from desk.rates.fitting import fit_nelson_siegel, fit_svensson
+from desk.rates.parametric import NelsonSiegel, Svensson
+from desk.rates.quoted_flows import QuotedFlows, flow_yields
+from desk.rates.quotes import bond_flows
+
+# Gürkaynak, R., Sack, B. and Wright, J. (2007), daily data file feds200628, 31 January 2002.
+TREASURY = Svensson(
+    0.0361515400768789,
+    -0.0153275172078452,
+    -0.036025165489901,
+    0.0797553534931804,
+    0.476663944558545,
+    10.4204535976878,
+)
+
+
+def _sheet(curve: NelsonSiegel | Svensson, count: int, random: np.random.Generator) -> QuotedFlows:
+    """Random bonds with their prices on a curve."""
+    terms = random.uniform(0.3, 30.0, count)
+    blank = bond_flows(terms, random.uniform(0.0, 0.08, count), prices=np.full(count, 100.0))
+    return replace(blank, target=blank.values(curve))
+
+
+def _noisy(flows: QuotedFlows, random: np.random.Generator) -> QuotedFlows:
+    return replace(flows, target=np.round(flows.target + random.normal(0.0, 0.05, len(flows)), 2))
+
+
+@pytest.mark.parametrize("count", [8, 30, 120])
+def test_published_parameters_are_recovered(count: int) -> None:
+    """Prices on the published curve give back its yields within 0.1 basis points, over the terms it was
+    fitted to."""
+    random = np.random.default_rng(count)
+    flows = _sheet(TREASURY, count, random)
+    found = fit_svensson(flows)
+    time = np.linspace(float(flows.term.min()), float(flows.term.max()), 300)
+    assert found.converged
+    assert np.abs(1e4 * (found.curve.zero(time) - TREASURY.zero(time))).max() < 0.1
+    assert found.largest_bp < 0.01
+    assert np.abs(found.residual_price).max() < 1e-3
+
+
+def test_random_curves_are_recovered() -> None:
+    random = np.random.default_rng(5)
+    for _ in range(25):
+        level = random.uniform(0.0, 0.06)
+        slope, curvature, second = random.uniform(-0.03, 0.03, 3)
+        decay = random.uniform(0.4, 3.0)
+        curve = Svensson(level, slope, curvature, second, decay, decay * random.uniform(2.5, 8.0))
+        flows = _sheet(curve, 40, random)
+        found = fit_svensson(flows)
+        time = np.linspace(float(flows.term.min()), float(flows.term.max()), 100)
+        assert np.abs(1e4 * (found.curve.zero(time) - curve.zero(time))).max() < 0.1
+
+
+def test_nelson_siegel_is_recovered() -> None:
+    curve = NelsonSiegel(0.042, -0.025, 0.01, 2.1)
+    found = fit_nelson_siegel(_sheet(curve, 12, np.random.default_rng(3)))
+    assert isinstance(found.curve, NelsonSiegel)
+    for name in ("level", "slope", "curvature", "decay"):
+        assert getattr(found.curve, name) == pytest.approx(getattr(curve, name), rel=1e-6)
+
+
+def test_residuals_are_what_they_say() -> None:
+    random = np.random.default_rng(7)
+    flows = _noisy(_sheet(TREASURY, 40, random), random)
+    found = fit_svensson(flows)
+    worth = flows.values(found.curve)
+    np.testing.assert_allclose(found.residual_price, worth - flows.target, atol=1e-12)
+    in_points = 1e4 * (flow_yields(flows, target=worth) - flow_yields(flows))
+    np.testing.assert_allclose(found.residual_bp, in_points, atol=1e-9)
+    assert found.rmse_bp == pytest.approx(np.sqrt(np.mean(in_points**2)))
+    assert found.largest_bp == np.abs(in_points).max()
+    # A fifth of a unit of price over a duration of some years is a few basis points of yield.
+    assert 0.1 < found.rmse_bp < 10.0
+
+
+def test_no_direction_leads_lower() -> None:
+    """A search that knows nothing of derivatives, from the curve found, finds nothing better."""
+    random = np.random.default_rng(8)
+    flows = _noisy(_sheet(TREASURY, 40, random), random)
+    found = fit_svensson(flows).curve
+    assert isinstance(found, Svensson)
+    yields = flow_yields(flows)
+    discounted = flows.amount * np.exp(-yields[flows.instrument] * flows.time)
+    scale = flows.sums(discounted * flows.time)
+
+    def cost(numbers: np.ndarray[tuple[int], np.dtype[np.float64]]) -> float:
+        rates, decays = numbers[:4], np.exp(numbers[4:])
+        curve = Svensson(*rates.tolist(), *decays.tolist())
+        return float(np.sum((1e4 * (flows.values(curve) - flows.target) / scale) ** 2))
+
+    begin = np.array([
+        found.level, found.slope, found.curvature, found.second_curvature,
+        np.log(found.decay), np.log(found.second_decay),
+    ])  # fmt: skip
+    searched = minimize(cost, begin, method="Nelder-Mead", options={"maxfev": 3000})
+    assert cost(begin) <= searched.fun * (1.0 + 1e-6)
+
+
+def test_one_bond_that_is_wrong_stands_out() -> None:
+    random = np.random.default_rng(9)
+    flows = _sheet(TREASURY, 60, random)
+    target = flows.target.copy()
+    target[17] += 3.0
+    found = fit_svensson(replace(flows, target=target))
+    assert int(np.argmax(np.abs(found.residual_bp))) == 17
+
+
+class TestFaults:
+    """Sheets that give no curve."""
+
+    def test_fewer_bonds_than_parameters(self) -> None:
+        flows = _sheet(TREASURY, 5, np.random.default_rng(1))
+        with pytest.raises(CurveError, match="5 quotes for a curve of 6 parameters"):
+            fit_svensson(flows)
+        assert fit_nelson_siegel(flows).converged
+        with pytest.raises(CurveError, match="3 quotes for a curve of 4 parameters"):
+            fit_nelson_siegel(flows.leading(3))
+
+    def test_a_bond_without_a_yield(self) -> None:
+        flows = _sheet(TREASURY, 8, np.random.default_rng(1))
+        target = flows.target.copy()
+        target[2] = -1.0
+        with pytest.raises(CurveError, match="no yield") as caught:
+            fit_svensson(replace(flows, target=target))
+        assert caught.value.rows == (2,)
+
+    def test_absurd_prices_end_in_a_curve_with_its_errors(self) -> None:
+        random = np.random.default_rng(10)
+        for _ in range(10):
+            flows = _sheet(TREASURY, 12, random)
+            wild = replace(flows, target=flows.target * np.exp(random.uniform(-4.0, 4.0, 12)))
+            found = fit_svensson(wild)
+            assert np.isfinite(found.residual_bp).all()
+            assert found.rmse_bp > 100.0
+
+    def test_bonds_that_all_mature_together(self) -> None:
+        flows = bond_flows(np.full(7, 5.0), np.linspace(0.0, 0.06, 7), yields=np.full(7, 0.03))
+        found = fit_svensson(flows)
+        assert found.largest_bp < 0.01
