@@ -391,7 +391,7 @@ def close(found: Any, wanted: float, scale: float = 0.0) -> bool:
     return isinstance(found, int | float) and abs(found - wanted) <= EXACT * max(abs(wanted), scale)
 
 
-def own_curve(workbook: Workbook) -> Curve:
+def own_curve(workbook: Workbook, *, real_world: bool = False) -> Curve:
     """``-ln P(0, t)`` of the model: the book's for Hull and White, its own for Cox, Ingersoll and Ross."""
     if workbook.model["Model"] == "hull-white":
         return curve_of(workbook)
@@ -399,12 +399,16 @@ def own_curve(workbook: Workbook) -> Curve:
     speed, level, volatility, start = (
         workbook.model[item] for item in ("Mean reversion", "Long-run rate", "Volatility", "Starting rate")
     )
+    pull = speed * level
+    if real_world:
+        # A price of risk λ√r makes the drift κθ - (κ - σλ) r: the same formulas with another speed.
+        speed -= volatility * workbook.model["Risk price"]
     root = math.sqrt(speed**2 + 2 * volatility**2)
 
     def exponent(time: float) -> float:
         grown = math.expm1(root * time)
         below = (speed + root) * grown + 2 * root
         share = math.log(2 * root) + (speed + root) * time / 2 - math.log(below)
-        return float(2 * grown / below * start - 2 * speed * level / volatility**2 * share)
+        return float(2 * grown / below * start - 2 * pull / volatility**2 * share)
 
     return exponent

@@ -223,6 +223,10 @@ def test_square_root_rates_follow_their_laws() -> None:
     volatility, start = workbook.model["Volatility"], workbook.model["Starting rate"]
     speed = workbook.model["Mean reversion"] - volatility * workbook.model["Risk price"]
     level, count = pull / speed, stated["paths"]
+    expected = own_curve(workbook, real_world=True)
+    for row in stated["savings_account"][1:]:
+        wanted = math.exp(-expected(row["year"]))
+        assert abs(row["mean_discount"] - wanted) <= ERRORS * row["mean_discount_se"]
     for row in stated["short_rate"][1:]:
         kept = math.exp(-speed * row["year"])
         mean = start * kept + level * (1 - kept)
