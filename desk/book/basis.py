@@ -8,9 +8,14 @@ from enum import StrEnum
 from functools import cached_property
 
 from desk.book.arrays import FloatArray, owned_floats, same_fields
-from desk.rates.compounding import Compounding, to_continuous
+from desk.rates.bootstrap import bootstrap
+from desk.rates.compounding import Compounding, from_continuous, to_continuous
 from desk.rates.curve import Curve, Interpolation
+from desk.rates.curve_error import CurveError
 from desk.rates.day_count import DayCount
+from desk.rates.quoted_flows import QuotedFlows
+from desk.rates.quotes import par_flows, swap_flows, zero_flows
+from desk.rates.smith_wilson import Extrapolation, smith_wilson
 
 __all__ = ["Basis", "CurveKind"]
 
@@ -47,6 +52,21 @@ class Basis:
     day_count : DayCount
         Turns dates into years.
     title : str
+    payments_per_year : int or None
+        Coupons of par yields, payments of the fixed leg of swaps: 1, 2, 4 or 12; None for those of
+        `compounding`, once a year if that is continuous.
+    ultimate_forward_rate : float or None
+        Of a Smith-Wilson curve, compounded once a year [1/year].
+    last_liquid_point : float or None
+        Quotes beyond it are left out of the curve [years]; None for the last quote.
+    convergence_point : float or None
+        Where the forward rate of a Smith-Wilson curve has come to the ultimate one [years]; None for 40 years
+        after the last liquid point, but no earlier than 60 years.
+    convergence_tolerance : float
+        How far it may still be from it there [1/year].
+    extrapolation : Extrapolation
+        How the curve goes on beyond the last liquid point. A Smith-Wilson curve needs
+        `ultimate_forward_rate`, and draws its own curve between the quotes in the place of `interpolation`.
     """
 
     valuation_date: date
@@ -60,6 +80,12 @@ class Basis:
     market_risk_premium: float = 0.0
     day_count: DayCount = DayCount.ACT_365F
     title: str = ""
+    payments_per_year: int | None = None
+    ultimate_forward_rate: float | None = None
+    last_liquid_point: float | None = None
+    convergence_point: float | None = None
+    convergence_tolerance: float = 1e-4
+    extrapolation: Extrapolation = Extrapolation.FLAT_FORWARD
 
     def __post_init__(self) -> None:
         """Own the quotes."""
@@ -72,6 +98,32 @@ class Basis:
 
     __hash__ = None  # type: ignore[assignment]
 
+    @property
+    def quote_payments(self) -> int:
+        """Payments a year of the instruments quoted, where they are par yields or swaps."""
+        return self.payments_per_year or self.compounding.per_year or 1
+
+    @cached_property
+    def quoted_flows(self) -> QuotedFlows:
+        """The instruments quoted: what they pay and what they are worth.
+
+        A par yield is restated with as many compounding periods a year as its bond has coupons; a swap rate
+        is a rate of simple interest and stays as it is.
+
+        Raises
+        ------
+        ValueError
+            If a quote is not one: a `desk.rates.curve_error.CurveError`, which names the quotes.
+        """
+        if self.curve_kind is CurveKind.ZERO:
+            return zero_flows(self.terms, to_continuous(self.rates, self.compounding))
+        if self.curve_kind is CurveKind.SWAP:
+            return swap_flows(self.terms, self.rates, payments_per_year=self.quote_payments)
+        rates = self.rates
+        if self.quote_payments != self.compounding.per_year:
+            rates = from_continuous(to_continuous(rates, self.compounding), _periods(self.quote_payments))
+        return par_flows(self.terms, rates, payments_per_year=self.quote_payments)
+
     @cached_property
     def curve(self) -> Curve:
         """The curve the quotes give.
@@ -79,8 +131,33 @@ class Basis:
         Raises
         ------
         ValueError
-            If the quotes give no curve: the message says which and why.
+            If the quotes give no curve: the message says which and why. A `desk.rates.curve_error.CurveError`
+            also numbers them.
         """
-        if self.curve_kind is not CurveKind.ZERO:
-            raise ValueError(f"`curve_kind` must be zero, not {self.curve_kind}")
-        return Curve(self.terms, to_continuous(self.rates, self.compounding), self.interpolation)
+        if self.extrapolation is Extrapolation.SMITH_WILSON:
+            if self.ultimate_forward_rate is None:
+                raise CurveError(
+                    "there is no ultimate forward rate", "Give it, or let the last forward rate go on."
+                )
+            return smith_wilson(
+                self.quoted_flows,
+                ultimate_forward_rate=self.ultimate_forward_rate,
+                last_liquid_point=self.last_liquid_point,
+                convergence_point=self.convergence_point,
+                tolerance=self.convergence_tolerance,
+            )
+        used = self.terms.size
+        if self.last_liquid_point is not None:
+            used = len(self.quoted_flows.liquid(self.last_liquid_point))
+        if self.curve_kind is CurveKind.ZERO:
+            rates = to_continuous(self.rates[:used], self.compounding)
+            return Curve(self.terms[:used], rates, self.interpolation)
+        return bootstrap(self.quoted_flows.leading(used), interpolation=self.interpolation)
+
+
+def _periods(per_year: int) -> Compounding:
+    """The compounding with so many periods a year."""
+    for compounding in Compounding:
+        if compounding.per_year == per_year:
+            return compounding
+    raise CurveError(f"{per_year} payments a year are none that quotes have", "Give 1, 2, 4 or 12.")

@@ -229,11 +229,19 @@ class _Problem:
         lowest[rates:], highest[rates:] = np.log(_SHORTEST_DECAY), np.log(_LONGEST_DECAY)
         begin = np.clip(start, lowest + 1e-9, highest - 1e-9)
 
+        known: dict[bytes, FloatArray] = {}
+
         def errors(numbers: FloatArray) -> FloatArray:
-            return self._errors(numbers)[0]
+            miss, slope = self._errors(numbers)
+            # Slopes are asked for where errors were last found to be lower, or just now.
+            if len(known) > _FEW_EVALUATIONS:
+                known.clear()
+            known[numbers.tobytes()] = slope
+            return miss
 
         def slopes(numbers: FloatArray) -> FloatArray:
-            return self._errors(numbers)[1]
+            slope = known.get(numbers.tobytes())
+            return self._errors(numbers)[1] if slope is None else slope
 
         found = least_squares(
             errors,

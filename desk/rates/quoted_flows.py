@@ -103,6 +103,23 @@ class QuotedFlows:
         end = self.first_row[count] if count < len(self) else self.instrument.size
         return QuotedFlows(self.instrument[:end], self.time[:end], self.amount[:end], self.target[:count])
 
+    def liquid(self, last_liquid_point: float) -> QuotedFlows:
+        """The instruments that end at or before the last liquid point [years].
+
+        Raises
+        ------
+        CurveError
+            If they are out of order, or none is left.
+        """
+        self.require_rising_terms()
+        used = int(np.sum(self.term <= last_liquid_point + 1e-9))
+        if not used:
+            raise CurveError(
+                f"no quote is at or before the last liquid point, {last_liquid_point:g} years",
+                "Set it later.",
+            )
+        return self.leading(used)
+
     def require_rising_terms(self) -> None:
         """Raise CurveError, naming the quotes, unless each instrument ends after the one before it."""
         falls = np.flatnonzero(np.diff(self.term) <= 0.0)

@@ -177,17 +177,14 @@ def smith_wilson(
     Coarse steps of 0.025 find the first alpha that keeps the tolerance, halving then the smallest between it
     and the step before. The gap at the convergence point T is ``α/|1 - κ e^{αT}|``, as published.
     """
-    flows.require_rising_terms()
     _require(
         math.isfinite(ultimate_forward_rate) and ultimate_forward_rate > -1.0,
         "the ultimate forward rate is not above -100 %",
         "Give it as a yearly rate.",
     )
     _require(tolerance > 0.0, "the tolerance is not above 0", "One basis point is usual.")
-    liquid = flows.term[-1] if last_liquid_point is None else last_liquid_point
-    used = int(np.sum(flows.term <= liquid + 1e-9))
-    _require(used > 0, f"no quote is at or before the last liquid point, {liquid:g} years", "Set it later.")
-    flows = flows.leading(used)
+    liquid = float(flows.term[-1]) if last_liquid_point is None else last_liquid_point
+    flows = flows.liquid(liquid)
     if convergence_point is None:
         convergence_point = max(liquid + _CONVERGENCE_YEARS, _EARLIEST_CONVERGENCE)
     _require(

@@ -8,7 +8,7 @@ from datetime import date
 import numpy as np
 import pytest
 
-from desk.book import Basis, Book, CurveKind, FlowTable, Holding, HoldingKind, PricedFlows, Side
+from desk.book import Basis, Book, FlowTable, Holding, HoldingKind, PricedFlows, Side
 from desk.rates.compounding import Compounding
 from desk.rates.curve import Interpolation
 
@@ -127,7 +127,6 @@ def test_the_basis_makes_its_curve() -> None:
 @pytest.mark.parametrize(
     ("change", "message"),
     [
-        ({"curve_kind": CurveKind.PAR}, "`curve_kind` must be zero, not par"),
         ({"terms": [10.0, 1.0]}, "`terms` must rise strictly"),
         ({"rates": [0.02, -1.5]}, "`rate` must be above -100 % when compounded annual"),
     ],
