@@ -9,6 +9,7 @@ from typing import Any, NoReturn
 
 from desk import __version__
 from desk.book import Fault, ModelName
+from desk.book.run import MOST_PATHS
 from desk.report.as_text import printable
 from desk.terminal import complain
 
@@ -16,7 +17,7 @@ __all__ = ["COMMANDS", "LIMITS", "parser", "range_faults", "target_fault"]
 
 COMMANDS = ("check", "value", "simulate", "report")
 
-LIMITS = {"paths": (1, 100_000_000), "years": (1, 200), "steps": (1, 366), "seed": (0, 2**53)}
+LIMITS = {"paths": (1, MOST_PATHS), "years": (1, 200), "steps": (1, 366), "seed": (0, 2**53)}
 """Sensible range of each number that a command takes."""
 
 _AT_FAULT = 2

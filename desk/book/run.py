@@ -6,9 +6,12 @@ from dataclasses import dataclass
 from enum import StrEnum
 from itertools import pairwise
 
-__all__ = ["DEFAULT_PERCENTILES", "Measure", "Run"]
+__all__ = ["DEFAULT_PERCENTILES", "MOST_PATHS", "Measure", "Run"]
 
 DEFAULT_PERCENTILES = (1.0, 5.0, 25.0, 50.0, 75.0, 95.0, 99.0)
+
+MOST_PATHS = 20_000_000
+"""More would not fit into the memory of an office machine."""
 
 
 class Measure(StrEnum):

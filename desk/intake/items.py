@@ -14,6 +14,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from desk.book import CurveKind, Measure, ModelName, RatesModel, Run
+from desk.book.run import MOST_PATHS
 from desk.intake.cells import Cells
 from desk.intake.checks import check_correlations, check_not_negative, check_rates, check_size, some
 from desk.intake.columns import Kind
@@ -321,7 +322,7 @@ def read_run(sheet: ItemSheet) -> Run:
     default = Run()
     measure = sheet.choice("Measure", Measure, "a measure", instead=str(default.measure))
     return Run(
-        paths=sheet.whole("Paths", "number of paths", least=1, most=100_000_000, instead=default.paths),
+        paths=sheet.whole("Paths", "number of paths", least=1, most=MOST_PATHS, instead=default.paths),
         horizon_years=sheet.whole(
             "Horizon (years)", "horizon", least=1, most=200, instead=default.horizon_years
         ),

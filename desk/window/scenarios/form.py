@@ -9,6 +9,7 @@ from typing import Any
 from PySide6.QtWidgets import QLabel, QPushButton
 
 from desk.book import Book, Measure, ModelName, RatesModel
+from desk.book.run import MOST_PATHS
 from desk.scenarios.suggestions import MODEL_ITEMS, MODEL_TRAITS, suggested_model
 from desk.window.parts.fields import Choice, ChoiceField, Field, Form, IntegerField, NumberField
 
@@ -177,7 +178,7 @@ class RunForm:
         self.paths = IntegerField(
             "Paths",
             low=1,
-            high=100_000_000,
+            high=MOST_PATHS,
             sensible=(1_000, 1_000_000),
             hint="Four times as many halve every standard error.",
         )
