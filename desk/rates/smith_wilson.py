@@ -19,7 +19,7 @@ from numpy.typing import ArrayLike, NDArray
 from desk.rates.curve import Curve
 from desk.rates.curve_error import CurveError
 from desk.rates.quoted_flows import QuotedFlows
-from desk.rates.wilson import WilsonSums, kernel
+from desk.rates.wilson import WilsonProducts, WilsonSums
 
 __all__ = ["Extrapolation", "SmithWilsonCurve", "smith_wilson"]
 
@@ -193,15 +193,18 @@ def smith_wilson(
         f"{liquid:g} years",
         "Set it later.",
     )
-    if alpha is None:
-        alpha = _smallest_alpha(flows, ultimate_forward_rate, convergence_point, tolerance)
-    else:
+    if alpha is not None:
         _require(math.isfinite(alpha) and alpha > 0.0, "alpha is not above 0", "Give a higher one, or none.")
-    weights, zeta, times = _fitted(flows, ultimate_forward_rate, alpha)
-    _require_positive(flows, times, weights, alpha, convergence_point)
+    # With absurd rates numbers overflow; what comes of it then fails the checks below.
+    with np.errstate(over="ignore", under="ignore", invalid="ignore", divide="ignore"):
+        fit = _Fit(flows, ultimate_forward_rate)
+        if alpha is None:
+            alpha = fit.smallest_alpha(convergence_point, tolerance)
+        weights, zeta = fit.weights(alpha)
+        _require_positive(flows, fit.times, weights, alpha, convergence_point)
     curve = SmithWilsonCurve(
         flows.term,
-        payment_times=times,
+        payment_times=fit.times,
         weights=weights,
         zeta=zeta,
         ultimate_forward_rate=ultimate_forward_rate,
@@ -218,57 +221,61 @@ def smith_wilson(
     return curve
 
 
-def _fitted(
-    flows: QuotedFlows, ultimate_forward_rate: float, alpha: float
-) -> tuple[FloatArray, FloatArray, FloatArray]:
-    """Weights of the payment times, zeta, and the payment times."""
-    times, place = np.unique(flows.time, return_inverse=True)
-    # dimensions: instrument, time
-    deflated = np.zeros((len(flows), times.size))
-    np.add.at(deflated, (flows.instrument, place), flows.amount)
-    deflated *= np.exp(-math.log1p(ultimate_forward_rate) * times)
-    products = deflated @ kernel(times[:, None], times, alpha) @ deflated.T
-    try:
-        zeta = np.linalg.solve(products, flows.target - deflated.sum(axis=1))
-    except np.linalg.LinAlgError as error:
-        raise CurveError(
-            "the quotes do not determine a Smith-Wilson curve", "Leave out quotes that repeat others."
-        ) from error
-    return zeta @ deflated, zeta, times
+class _Fit:
+    """The linear equations of the curve, for any alpha."""
 
+    def __init__(self, flows: QuotedFlows, ultimate_forward_rate: float) -> None:
+        self.times, place = np.unique(flows.time, return_inverse=True)
+        # dimensions: instrument, time
+        deflated = np.zeros((len(flows), self.times.size))
+        np.add.at(deflated, (flows.instrument, place), flows.amount)
+        deflated *= np.exp(-math.log1p(ultimate_forward_rate) * self.times)
+        self._deflated = deflated
+        self._missing = flows.target - deflated.sum(axis=1)
+        self._products = WilsonProducts(self.times, deflated)
 
-def _gap(flows: QuotedFlows, ultimate_forward_rate: float, alpha: float, convergence_point: float) -> float:
-    """How far the forward rate at the convergence point is from the ultimate one [1/year]."""
-    weights, _, times = _fitted(flows, ultimate_forward_rate, alpha)
-    with np.errstate(under="ignore"):
-        late = np.exp(-alpha * (convergence_point - times)) * -0.5 * np.expm1(-2.0 * alpha * times)
-    # α/(1 - κ e^{αT}) with κ e^{αT} = (1 + α Σ cu)/(e^{-αT} Σ c sinh(αu)).
-    pull = float(weights @ late)
-    rest = 1.0 + alpha * float(weights @ times) - pull
-    return abs(alpha * pull / rest) if rest != 0.0 else math.inf
-
-
-def _smallest_alpha(
-    flows: QuotedFlows, ultimate_forward_rate: float, convergence_point: float, tolerance: float
-) -> float:
-    def keeps(millionths: int) -> bool:
-        alpha = millionths * _MILLIONTH
-        return _gap(flows, ultimate_forward_rate, alpha, convergence_point) <= tolerance
-
-    high = _LOWEST_ALPHA
-    while not keeps(high):
-        high += _COARSE_STEP
-        if high > _HIGHEST_ALPHA:
+    def weights(self, alpha: float) -> tuple[FloatArray, FloatArray]:
+        """Weights of the payment times, and zeta."""
+        try:
+            zeta = np.linalg.solve(self._products.at(alpha), self._missing)
+        except np.linalg.LinAlgError as error:
             raise CurveError(
-                f"no alpha brings the forward rate at {convergence_point:g} years within "
-                f"{1e4 * tolerance:g} basis points of the ultimate one",
-                "Set a later convergence point or a wider tolerance, or give alpha.",
+                "the quotes do not determine a Smith-Wilson curve", "Leave out quotes that repeat others."
+            ) from error
+        return zeta @ self._deflated, zeta
+
+    def gap(self, alpha: float, convergence_point: float) -> float:
+        """How far the forward rate at the convergence point is from the ultimate one [1/year]."""
+        weights, _ = self.weights(alpha)
+        with np.errstate(under="ignore"):
+            late = (
+                np.exp(-alpha * (convergence_point - self.times)) * -0.5 * np.expm1(-2.0 * alpha * self.times)
             )
-    low = high - (_COARSE_STEP if high > _LOWEST_ALPHA else 1)
-    while high - low > 1:
-        middle = (low + high) // 2
-        low, high = (low, middle) if keeps(middle) else (middle, high)
-    return round(high * _MILLIONTH, 6)
+        # α/(1 - κ e^{αT}) with κ e^{αT} = (1 + α Σ cu)/(e^{-αT} Σ c sinh(αu)).
+        pull = float(weights @ late)
+        rest = 1.0 + alpha * float(weights @ self.times) - pull
+        return abs(alpha * pull / rest) if rest != 0.0 else math.inf
+
+    def smallest_alpha(self, convergence_point: float, tolerance: float) -> float:
+        """The smallest alpha of six decimals that brings the gap within the tolerance."""
+
+        def keeps(millionths: int) -> bool:
+            return self.gap(millionths * _MILLIONTH, convergence_point) <= tolerance
+
+        high = _LOWEST_ALPHA
+        while not keeps(high):
+            high += _COARSE_STEP
+            if high > _HIGHEST_ALPHA:
+                raise CurveError(
+                    f"no alpha brings the forward rate at {convergence_point:g} years within "
+                    f"{1e4 * tolerance:g} basis points of the ultimate one",
+                    "Set a later convergence point or a wider tolerance, or give alpha.",
+                )
+        low = high - (_COARSE_STEP if high > _LOWEST_ALPHA else 1)
+        while high - low > 1:
+            middle = (low + high) // 2
+            low, high = (low, middle) if keeps(middle) else (middle, high)
+        return round(high * _MILLIONTH, 6)
 
 
 def _require_positive(

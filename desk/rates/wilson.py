@@ -1,4 +1,4 @@
-"""Wilson functions: the kernel of Smith-Wilson curves, and weighted sums of it.
+"""Wilson functions: sums and products of the kernel of Smith-Wilson curves.
 
 ``H(t, u) = α min(t, u) - e^{-α max(t, u)} sinh(α min(t, u))``; the Wilson function proper is
 ``W(t, u) = e^{-ω(t + u)} H(t, u)``. Sources as in `desk.rates.smith_wilson`.
@@ -11,40 +11,48 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import NDArray
 
-__all__ = ["WilsonSums", "kernel"]
+__all__ = ["WilsonProducts", "WilsonSums"]
 
 FloatArray = NDArray[np.float64]
 
 
-def kernel(first: FloatArray, second: FloatArray, alpha: float) -> FloatArray:
-    """``H`` of two times, without loss of digits where they are short.
+class WilsonProducts:
+    """``Σᵢⱼ q_ki H(u_i, u_j) q_lj`` for every two instruments k and l, as a function of alpha.
 
     Parameters
     ----------
-    first, second : ndarray, shapes that broadcast
-        [years], at least 0.
-    alpha : float
-        Speed of convergence [1/year], above 0.
-
-    Returns
-    -------
-    ndarray, the broadcast shape
+    time : ndarray, shape (p,)
+        The u, rising and positive [years].
+    amounts : ndarray, shape (m, p)
+        The q.
 
     Notes
     -----
-    For short times both terms nearly cancel. There H is ``x (1 - e^{-y}) - e^{-y} (sinh x - x)`` with x and y
-    the lesser and the greater time by alpha, the last bracket by its series.
+    ``H(t, u) = α min(t, u) - ½ e^{-α|t - u|} + ½ e^{-α(t + u)}``. The products of the first part are those of
+    running sums and do not depend on α but for the factor; those of the second are carried on from one time
+    to the next; the third is a product of two numbers. So the work grows with p and not with its square.
     """
-    x = alpha * np.minimum(first, second)
-    y = alpha * np.maximum(first, second)
-    with np.errstate(under="ignore"):
-        square = np.minimum(x, 1.0) ** 2
-        series = 1.0 + square / 156.0 * (1.0 + square / 210.0)
-        for divisor in (110.0, 72.0, 42.0, 20.0):
-            series = 1.0 + square / divisor * series
-        short = -x * np.expm1(-y) - np.exp(-y) * np.minimum(x, 1.0) ** 3 / 6.0 * series
-        long = x - 0.5 * (np.exp(x - y) - np.exp(-x - y))
-    return np.asarray(np.where(x < 1.0, short, long))
+
+    def __init__(self, time: FloatArray, amounts: FloatArray) -> None:
+        self._time, self._amounts = time, amounts
+        self._width = np.diff(time, prepend=0.0)
+        still_ahead = np.cumsum(amounts[:, ::-1], axis=1)[:, ::-1]
+        self._of_lesser = (still_ahead * self._width) @ still_ahead.T
+        self._of_same = amounts @ amounts.T
+
+    def at(self, alpha: float) -> FloatArray:
+        """The products, shape (m, m)."""
+        with np.errstate(under="ignore"):
+            decay = np.exp(-alpha * self._width)
+            from_today = self._amounts @ np.exp(-alpha * self._time)
+            faded = np.empty_like(self._amounts.T)
+            running = np.zeros(len(self._amounts))
+            for k, amount in enumerate(self._amounts.T):
+                running = running * decay[k] + amount
+                faded[k] = running
+            earlier = self._amounts @ faded
+        of_distance = earlier + earlier.T - self._of_same
+        return np.asarray(alpha * self._of_lesser + 0.5 * (np.outer(from_today, from_today) - of_distance))
 
 
 @dataclass(frozen=True, eq=False)

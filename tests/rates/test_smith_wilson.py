@@ -10,7 +10,7 @@ from desk.rates.curve import Curve
 from desk.rates.curve_error import CurveError
 from desk.rates.quotes import bond_flows, par_flows, zero_flows
 from desk.rates.smith_wilson import SmithWilsonCurve, smith_wilson
-from desk.rates.wilson import WilsonSums, kernel
+from desk.rates.wilson import WilsonProducts, WilsonSums
 
 TERMS = np.arange(1.0, 21.0)
 RATES = 0.02 + 0.015 * -np.expm1(-TERMS / 8.0)
@@ -149,24 +149,29 @@ def test_a_tighter_tolerance_pulls_harder() -> None:
 
 
 @pytest.mark.parametrize("alpha", [0.01, 0.05, 0.3, 2.0, 20.0])
-def test_kernel_and_sums_keep_their_digits(alpha: float) -> None:
-    """Against the definition in extended precision, where that has enough digits itself."""
-    first = np.array([0.02, 0.3, 1.0, 7.0, 40.0, 100.0])
-    second = first[::-1][:, None] * 1.01
-    low = alpha * np.minimum(first, second).astype(np.longdouble)
-    high = alpha * np.maximum(first, second).astype(np.longdouble)
-    direct = low - 0.5 * (np.exp(low - high) - np.exp(-low - high))
-    np.testing.assert_allclose(kernel(first, second, alpha), direct.astype(float), rtol=2e-11)
-
+def test_sums_and_products_against_the_definition(alpha: float) -> None:
+    """The kernel written out in extended precision, and summed term by term."""
+    times = np.array([0.02, 0.3, 1.0, 7.0, 40.0, 100.0])
     weights = np.array([3.0, -2.0, 5.0, -1.0, 0.4, -0.1])
-    sums = WilsonSums.build(first, weights, alpha)
     time = np.linspace(0.0, 130.0, 400)
-    expected = kernel(time[:, None], first, alpha) @ weights
-    np.testing.assert_allclose(sums.value(time), expected, rtol=1e-11, atol=1e-14 * alpha * 100.0)
+
+    def kernel(first: Floats, second: Floats) -> Floats:
+        low = alpha * np.minimum(first, second).astype(np.longdouble)
+        high = alpha * np.maximum(first, second).astype(np.longdouble)
+        return np.asarray(low - 0.5 * (np.exp(low - high) - np.exp(-low - high)), dtype=np.float64)
+
+    sums = WilsonSums.build(times, weights, alpha)
+    expected = kernel(time[:, None], times) @ weights
+    np.testing.assert_allclose(sums.value(time), expected, rtol=1e-12, atol=1e-13)
     step = 1e-6
     slope = (sums.value(time[1:] + step) - sums.value(time[1:] - step)) / (2.0 * step)
     np.testing.assert_allclose(sums.slope(time[1:]), slope, atol=2e-5 * alpha)
     assert sums.limit == pytest.approx(float(sums.value(np.array(1e4))), rel=1e-12)
+
+    amounts = np.random.default_rng(6).normal(size=(3, times.size))
+    products = amounts @ kernel(times[:, None], times) @ amounts.T
+    found = WilsonProducts(times, amounts).at(alpha)
+    np.testing.assert_allclose(found, products, rtol=1e-10, atol=1e-13)
 
 
 class TestFaults:
@@ -209,6 +214,12 @@ class TestFaults:
         with pytest.raises(CurveError, match="would not be above 0") as caught:
             smith_wilson(flows, ultimate_forward_rate=ULTIMATE, alpha=0.1)
         assert caught.value.rows
+
+    @pytest.mark.parametrize("rate", [-0.999, 1e6])
+    def test_absurd_ultimate_rates(self, rate: float) -> None:
+        flows = par_flows([1.0, 30.0, 900.0], [0.02, 0.02, 0.02])
+        with pytest.raises(CurveError):
+            smith_wilson(flows, ultimate_forward_rate=rate)
 
     def test_absurd_quotes_end_in_an_error_or_a_curve(self) -> None:
         random = np.random.default_rng(4)
