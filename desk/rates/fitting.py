@@ -124,19 +124,17 @@ def _fitted(
     problem = _Problem(flows, yields, humps)
     best = problem.solved()
     curve = make(best.numbers)
-    price = flows.values(curve)
-    moved = flow_yields(flows, target=price)
-    in_points = 1e4 * (moved - yields)
-    for array in (in_points, price):
+    worth = flows.values(curve)
+    residual_price = worth - flows.target
+    residual_bp = 1e4 * (flow_yields(flows, target=worth) - yields)
+    for array in (residual_price, residual_bp):
         array.flags.writeable = False
-    residual = price - flows.target
-    residual.flags.writeable = False
     return CurveFit(
         curve=curve,
-        residual_price=residual,
-        residual_bp=in_points,
-        rmse_bp=float(np.sqrt(np.mean(in_points**2))),
-        largest_bp=float(np.abs(in_points).max()),
+        residual_price=residual_price,
+        residual_bp=residual_bp,
+        rmse_bp=float(np.sqrt(np.mean(residual_bp**2))),
+        largest_bp=float(np.abs(residual_bp).max()),
         converged=best.converged,
         evaluations=best.evaluations,
     )

@@ -179,8 +179,8 @@ def bond_flows(
 
     References
     ----------
-    Price from yield over coupon periods, the first counted by its days: ICMA Rule 803; Stigum, M. and
-    Robinson, F.L., Money Market and Bond Calculations (1996), as common practice has it.
+    Price from yield over coupon periods, the first counted by its days: common practice; Stigum, M. and
+    Robinson, F.L., Money Market and Bond Calculations (1996).
     """
     coupon = _checked_rates(coupons, maturities)
     per_year = _checked_frequency(frequency, np.ones(coupon.shape, dtype=np.int64))
