@@ -267,13 +267,15 @@ def _simulate(options: argparse.Namespace) -> int:
         )
     if faults:
         raise BadRequest(faults)
+    stated = book.rates_model
     book = _with_options(book, options)
     _insist_on(book, model=True)
     with ProgressLine("Simulating") as progress:
         simulation = tasks.simulate(book, progress=progress)
-    _complain_of(further_faults(reading.faults, simulation.faults))
+    told = (*reading.faults, *_volatility_faults(stated, book.rates_model))
+    _complain_of((*told[len(reading.faults) :], *further_faults(reading.faults, simulation.faults)))
     if options.json:
-        _say(as_json.text(as_json.simulation_object(simulation, reading.faults)))
+        _say(as_json.text(as_json.simulation_object(simulation, told)))
     else:
         title, currency = book.basis.title, book.basis.currency
         _say(as_text.simulation_text(simulation, currency=currency, title=title))
@@ -324,6 +326,26 @@ def _with_options(book: Book, options: argparse.Namespace) -> Book:
     if options.model is not None:
         model = RatesModel(options.model) if model is None else replace(model, name=options.model)
     return replace(book, run=run, rates_model=model)
+
+
+def _volatility_faults(stated: RatesModel | None, drawn: RatesModel | None) -> tuple[Fault, ...]:
+    """Says so where a volatility is drawn as something else than it was stated as."""
+    from desk.scenarios.suggestions import MODEL_TRAITS
+
+    if stated is None or drawn is None or drawn.volatility is None:
+        return ()
+    if MODEL_TRAITS[stated.name][1] == MODEL_TRAITS[drawn.name][1]:
+        return ()
+    kinds = ("a volatility a year of the rate itself", "a factor of the root of the rate")
+    return (
+        Fault(
+            f"the volatility {drawn.volatility:g} was stated for {stated.name} and is used for {drawn.name}",
+            kinds[MODEL_TRAITS[drawn.name][1]],
+            f"State one for {drawn.name} in the book.",
+            sheet="Rates model",
+            severity=Severity.MILD,
+        ),
+    )
 
 
 def _insist_on(book: Book, *, model: bool) -> None:

@@ -168,6 +168,20 @@ def test_several_wrong_settings_are_said_together(run: Run) -> None:
     assert err.count("\n") == 2
 
 
+@pytest.mark.parametrize(
+    ("name", "told"), [("cir", 0), ("cir-shifted", 0), ("vasicek", 1), ("hull-white", 1)]
+)
+def test_a_volatility_of_another_kind_of_model_is_told(
+    name: str, told: int, capsys: pytest.CaptureFixture[str]
+) -> None:
+    book = str(demo_books() / "small_endowment.xlsx")  # its model is a square-root one
+    assert batch.main(["simulate", book, *QUICK, "--model", name, "--json"]) == 0
+    out, err = capsys.readouterr()
+    assert err.count("was stated for cir and is used for") == told
+    found = [fault["found"] for fault in json.loads(out)["faults"]]
+    assert sum("was stated for cir and is used for" in text for text in found) == told
+
+
 def test_a_model_that_lacks_an_item_is_a_fault_of_the_book(run: Run, monkeypatch: pytest.MonkeyPatch) -> None:
     """Vasicek makes its own curve and needs a long-run rate."""
     monkeypatch.setattr(tasks, "read", lambda path, progress=None: examples.reading())
