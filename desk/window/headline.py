@@ -272,8 +272,8 @@ class FigureButton(QAbstractButton):
 _RIGHT = Qt.TextElideMode.ElideRight
 
 
-def _label(look: str) -> ElidedLabel:
-    label = ElidedLabel()
+def _label(look: str, *, lines: int = 1) -> ElidedLabel:
+    label = ElidedLabel(lines=lines)
     label.setMinimumWidth(96)
     keep_look(label, look)
     return label
@@ -295,11 +295,11 @@ class Headline(QWidget):
         self._document = document
         self._theme_switch = theme_switch
         self.setAccessibleName("Headline")
-        self._title = _label("strong")
+        self._title = _label("strong", lines=2)
         self._place = _label("soft")
         self._state = _label("soft")
         book = QVBoxLayout()
-        book.setSpacing(2)
+        book.setSpacing(0)
         for label in (self._title, self._place, self._state):
             book.addWidget(label)
         row = QHBoxLayout(self)

@@ -45,12 +45,16 @@ def keys(stations: tuple[StationEntry, ...]) -> str:
         ("F5", "Read the workbook again"),
         ("Ctrl+S", "Save; the first time, asks where"),
         ("Ctrl+Shift+S", "Save a copy somewhere else"),
+        ("Ctrl+R", "In Scenarios: run"),
         ("Ctrl+E", "Export the report"),
         ("Ctrl+Z, Ctrl+Shift+Z", "Undo and redo"),
         ("Ctrl+C, Ctrl+Shift+C", "In a table: copy as shown, or with full precision"),
         ("Ctrl+V", "In a table that takes it: paste from a spreadsheet"),
+        ("Insert, Delete", "In the quotes of the curve: add and remove"),
         ("Return", "In a table: open the row, or edit the cell"),
         ("← →", "In a picture: read the values along the axis"),
+        ("+ − 0", "In a picture: closer, further, the whole"),
+        ("Escape", "In a field: take the entry back; in the flows of a line: back to the lines"),
         ("Ctrl+Q", "Quit"),
     ]
     rows = "".join(

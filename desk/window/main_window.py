@@ -3,11 +3,13 @@
 from __future__ import annotations
 
 import os
-from collections.abc import Callable, Sequence
+from collections.abc import Callable, Mapping, Sequence
+from functools import partial
+from importlib import import_module
 from pathlib import Path
 from typing import Protocol, runtime_checkable
 
-from PySide6.QtCore import QEvent, QSize, QTimer
+from PySide6.QtCore import QEvent, QSize, Qt, QTimer
 from PySide6.QtGui import QCloseEvent, QDragEnterEvent, QDropEvent, QKeySequence, QShortcut
 from PySide6.QtWidgets import QHBoxLayout, QMainWindow, QStackedWidget, QVBoxLayout, QWidget
 
@@ -21,7 +23,7 @@ from desk.window.headline import Headline
 from desk.window.help_pages import HelpPage, about, keys, what_it_does
 from desk.window.jobs import Jobs
 from desk.window.parts import numbers
-from desk.window.parts.panes import Pane, focus_first, next_pane, restore_geometry
+from desk.window.parts.panes import Pane, next_pane, restore_geometry
 from desk.window.parts.theme import ThemeSwitch
 from desk.window.rail import Rail
 from desk.window.recent import RecentBooks
@@ -35,6 +37,8 @@ __all__ = ["MainWindow", "RemembersSettings"]
 _SIZE = QSize(1280, 800)
 _LEAST = QSize(960, 600)
 _BETWEEN_STATIONS_MS = 250
+_LATER = ("scipy.special", "scipy.optimize", "scipy.interpolate", "scipy.stats")
+"""What the first valuation or run would otherwise wait for."""
 
 
 @runtime_checkable
@@ -90,9 +94,9 @@ class MainWindow(QMainWindow):
             stations=tuple(stations),
             theme_switch=theme_switch,
             acts=Acts(
-                show_station=self.show_station,
+                show_station=self._go_to_station,
                 show_welcome=self.show_welcome,
-                show_report=lambda: self.show_station("report"),
+                show_report=lambda: self._go_to_station("report"),
                 show_help=lambda: self._open_page("What this program does", what_it_does(tuple(stations))),
                 show_keys=lambda: self._open_page("Keyboard", keys(tuple(stations))),
                 show_about=lambda: self._open_page("About Gapwright", about()),
@@ -179,8 +183,15 @@ class MainWindow(QMainWindow):
         """Join a station's wishes and messages to the window."""
         station.message.connect(self.foot.tell)
         station.step_wanted.connect(self._take_step)
+        after = _next_to(self._entries, station.key)
+        if after is not None:
+            station.set_next(after.key, after.title, after.purpose)
+        station.choose_sizes(self._settings.sizes(station.key))
         if isinstance(station, RemembersSettings):
             station.use_settings(self._settings)
+        # The foot comes after the station for the keyboard too.
+        QWidget.setTabOrder(_last_in(station), self.foot)
+        QWidget.setTabOrder(self.foot, self.foot.cancel_button)
 
     def _take_step(self, step: str) -> None:
         """Do what a station asks for: a step by its name, or another station by its key."""
@@ -193,7 +204,7 @@ class MainWindow(QMainWindow):
         if step in steps:
             steps[step]()
         else:
-            self.show_station(step)
+            self._go_to_station(step)
 
     def _simulate(self) -> None:
         if self.document.book is not None:
@@ -211,9 +222,13 @@ class MainWindow(QMainWindow):
 
         def work(*, progress: Callable[[float], None], cancel: object) -> None:
             del cancel
-            for place, entry in enumerate(entries):
-                entry.load()
-                progress((place + 1) / len(entries))
+            steps: list[Callable[[], object]] = [
+                *(entry.load for entry in entries),
+                *(partial(import_module, name) for name in _LATER),
+            ]
+            for place, step in enumerate(steps, start=1):
+                step()
+                progress(place / len(steps))
 
         def loaded(_: None) -> None:
             if then is not None:
@@ -241,6 +256,12 @@ class MainWindow(QMainWindow):
         self.rail.show_chosen(key)
         self._settings.station = key
 
+    def _go_to_station(self, key: str) -> None:
+        """Show a station and take the keyboard there."""
+        self.show_station(key)
+        if key == self._shown:
+            self._stations[key].focus_home()
+
     def show_welcome(self) -> None:
         """Show the page before a book is open."""
         self.headline.setVisible(self.document.book is not None)
@@ -260,7 +281,7 @@ class MainWindow(QMainWindow):
         if not self._shown:
             remembered = self._settings.station
             wanted = remembered if remembered in self._entries else "standing"
-            self.show_station(wanted if wanted in self._entries else next(iter(self._entries), ""))
+            self._go_to_station(wanted if wanted in self._entries else next(iter(self._entries), ""))
         mild = len(reading.faults)
         about_faults = ""
         if mild:
@@ -268,7 +289,7 @@ class MainWindow(QMainWindow):
         self.foot.tell(f"{reading.path.name} is open{about_faults}.")
 
     def _on_refused(self, reading: Reading) -> None:
-        self.show_station("intake")
+        self._go_to_station("intake")
         kept = f" {self.files.name} stays open, unchanged." if self.document.book is not None else ""
         faults = _counted(len(reading.grave), "grave fault")
         self.foot.tell(f"{reading.path.name} cannot be used yet: {faults}.{kept}", grave=True)
@@ -326,8 +347,8 @@ class MainWindow(QMainWindow):
     def _focus_station(self) -> None:
         if self.stack.currentWidget() is self.welcome:
             self.welcome.take_focus()
-        else:
-            focus_first(self.stack.currentWidget())
+        elif self._shown:
+            self._stations[self._shown].focus_home()
 
     # What Qt calls
 
@@ -338,6 +359,8 @@ class MainWindow(QMainWindow):
             self.files.settle_unsaved("before closing", self._close_now)
             return
         self._settings.geometry = self.saveGeometry()
+        for key, station in self._stations.items():
+            self._settings.set_sizes(key, station.chosen_sizes)
         self._settings.flush()
         self._is_closing = True
         self.hide()
@@ -375,6 +398,25 @@ class MainWindow(QMainWindow):
             for part in (self.rail, self.headline, self.foot):
                 for button in part.findChildren(QWidget):
                     button.update()
+
+
+def _next_to(entries: Mapping[str, StationEntry], key: str) -> StationEntry | None:
+    """The station after the one of this key; None after the last."""
+    keys = list(entries)
+    place = keys.index(key) + 1
+    return entries[keys[place]] if place < len(keys) else None
+
+
+def _last_in(page: QWidget) -> QWidget:
+    """The widget that the keyboard comes to last on a page."""
+    last = page
+    widget = page.nextInFocusChain()
+    while widget is not None and widget is not page:
+        takes = bool(widget.focusPolicy() & Qt.FocusPolicy.TabFocus) and widget.focusProxy() is None
+        if takes and page.isAncestorOf(widget):
+            last = widget
+        widget = widget.nextInFocusChain()
+    return last
 
 
 def _counted(count: int, what: str) -> str:

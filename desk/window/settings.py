@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 import json
-from collections.abc import Sequence
+from collections.abc import Mapping, Sequence
 from pathlib import Path
 from typing import Any
 
@@ -102,6 +102,26 @@ class Settings:
     @report_folder.setter
     def report_folder(self, folder: Path) -> None:
         self._store.setValue("reports/folder", str(folder))
+
+    def sizes(self, station: str) -> dict[str, list[int]]:
+        """How the reader has shared the room of a station, by the name of the splitter [px]."""
+        try:
+            found = json.loads(self._text(f"sizes/{station}", "{}"))
+        except ValueError:
+            return {}
+        if not isinstance(found, dict):
+            return {}
+        return {
+            str(name): [int(size) for size in sizes]
+            for name, sizes in found.items()
+            if isinstance(sizes, list) and all(isinstance(size, int) and size >= 0 for size in sizes)
+        }
+
+    def set_sizes(self, station: str, sizes: Mapping[str, Sequence[int]]) -> None:
+        """Remember them."""
+        self._store.setValue(
+            f"sizes/{station}", json.dumps({name: list(size) for name, size in sizes.items()})
+        )
 
     # The types are given each time: in a new process an INI file holds nothing but text.
 

@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Callable
+from collections.abc import Callable, Mapping, Sequence
 
 from PySide6.QtCore import Qt, QTimer, Signal
 from PySide6.QtGui import QShowEvent
@@ -22,6 +22,7 @@ from desk.window.document import Document
 from desk.window.jobs import Jobs
 from desk.window.parts.fields import FORM_WIDTH, Form
 from desk.window.parts.labels import ElidedLabel
+from desk.window.parts.panes import focus_first
 from desk.window.parts.theme import GAP, HALF, STEP, WIDE, ThemeSwitch, keep_look
 
 __all__ = ["STALE", "Station"]
@@ -149,6 +150,11 @@ class Station(QWidget):
         self._heading_row.setSpacing(WIDE)
         self._heading_row.addWidget(heading, 0, Qt.AlignmentFlag.AlignBaseline)
         self._heading_row.addWidget(purpose, 1, Qt.AlignmentFlag.AlignBaseline)
+        self._next = ""
+        self.next_button = QPushButton()
+        self.next_button.hide()
+        self.next_button.clicked.connect(lambda _=False: self.step_wanted.emit(self._next))
+        self._heading_row.addWidget(self.next_button, 0, Qt.AlignmentFlag.AlignVCenter)
 
         self.strip = _Strip()
         self.empty = _Empty()
@@ -162,10 +168,14 @@ class Station(QWidget):
         self._panel.setHorizontalScrollBarPolicy(Qt.ScrollBarPolicy.ScrollBarAlwaysOff)
         self._panel.setFixedWidth(FORM_WIDTH)
         self._panel.setAccessibleName(f"Settings of {self.title}")
+        # Its fields take the keyboard, and are scrolled to.
+        self._panel.setFocusPolicy(Qt.FocusPolicy.NoFocus)
         self._panel.hide()
-        for splitter in (self.pictures, self.main):
+        self._chosen_sizes: dict[str, list[int]] = {}
+        for name, splitter in self._splitters():
             splitter.setChildrenCollapsible(False)
             splitter.setHandleWidth(GAP)
+            splitter.splitterMoved.connect(lambda *_, name=name: self._on_splitter_moved(name))
         self.pictures.hide()
         self.main.addWidget(self.pictures)
         body = QWidget()
@@ -214,7 +224,15 @@ class Station(QWidget):
 
     def add_to_heading(self, widget: QWidget) -> None:
         """Put a control at the right of the heading."""
-        self._heading_row.addWidget(widget, 0, Qt.AlignmentFlag.AlignVCenter)
+        place = self._heading_row.count() - 1
+        self._heading_row.insertWidget(place, widget, 0, Qt.AlignmentFlag.AlignVCenter)
+
+    def set_next(self, key: str, title: str, purpose: str) -> None:
+        """Offer the station that the work goes on to, while this one has something to show."""
+        self._next = key
+        self.next_button.setText(f"Next: {title}")
+        self.next_button.setToolTip(purpose)
+        self.next_button.setVisible(not self.is_empty)
 
     _table_share = 40
 
@@ -224,6 +242,38 @@ class Station(QWidget):
             self.main.setStretchFactor(1, self._table_share)
             self.main.setSizes([10 * (100 - self._table_share), 10 * self._table_share])
 
+    def _splitters(self) -> tuple[tuple[str, QSplitter], ...]:
+        return (("pictures", self.pictures), ("main", self.main))
+
+    def _on_splitter_moved(self, name: str) -> None:
+        self._chosen_sizes[name] = dict(self._splitters())[name].sizes()
+
+    @property
+    def chosen_sizes(self) -> dict[str, list[int]]:
+        """How the reader has shared the room, by the name of the splitter, where they did."""
+        return dict(self._chosen_sizes)
+
+    def choose_sizes(self, sizes: Mapping[str, Sequence[int]]) -> None:
+        """Share the room as `chosen_sizes` said at another time."""
+        for name, splitter in self._splitters():
+            wanted = list(sizes.get(name, ()))
+            # Parts that were hidden had no room: then there is nothing to go by.
+            if len(wanted) >= 2 and wanted[0] > 0:
+                splitter.setSizes(wanted)
+                self._chosen_sizes[name] = wanted
+
+    def focus_home(self) -> None:
+        """Give the keyboard to what the reader came for: the step an empty station offers, or `home`."""
+        target = self.empty.button if self.is_empty else self.home()
+        if target is not None and target.isVisible() and target.isEnabled():
+            target.setFocus(Qt.FocusReason.ShortcutFocusReason)
+        else:
+            focus_first(self)
+
+    def home(self) -> QWidget | None:
+        """What matters most here; None for the first widget there is."""
+        return None
+
     # What it says
 
     def show_empty(self, text: str, button_text: str = "", act: Callable[[], object] | None = None) -> None:
@@ -231,10 +281,12 @@ class Station(QWidget):
         self.hide_stale()
         self.empty.put(text, button_text, act)
         self._stack.setCurrentWidget(self.empty)
+        self.next_button.hide()
 
     def show_content(self) -> None:
         """Show pictures, table and form."""
         self._stack.setCurrentIndex(0)
+        self.next_button.setVisible(bool(self._next))
 
     @property
     def is_empty(self) -> bool:

@@ -64,6 +64,10 @@ class CurveStation(Station):
         self.set_table(self._make_table_page(), share=46)
         self.set_form_visible()
 
+    def home(self) -> QWidget:
+        """The quotes."""
+        return self.table
+
     # Making it
 
     def _make_table_page(self) -> QWidget:

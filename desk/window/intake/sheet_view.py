@@ -2,16 +2,13 @@
 
 from __future__ import annotations
 
-import csv
-import html
-import io
 import re
 from collections.abc import Mapping, Sequence
 from datetime import date, datetime
 from typing import Any
 
 from PySide6.QtCore import QAbstractTableModel, QModelIndex, QObject, QRect, QSize, Qt, Signal
-from PySide6.QtGui import QAction, QContextMenuEvent, QFontMetrics, QKeySequence, QPainter
+from PySide6.QtGui import QAction, QContextMenuEvent, QFontMetrics, QKeySequence, QPainter, QPaintEvent
 from PySide6.QtWidgets import (
     QAbstractItemView,
     QHeaderView,
@@ -25,9 +22,9 @@ from PySide6.QtWidgets import (
 
 from desk.intake.records import SheetGrid
 from desk.window.parts import numbers
-from desk.window.parts.clipboard import put_table
+from desk.window.parts.clipboard import RowCopier
 from desk.window.parts.columns import Mark
-from desk.window.parts.table_drawing import paint_mark
+from desk.window.parts.table_drawing import paint_beyond, paint_mark, paint_rest
 from desk.window.parts.table_model import Index
 from desk.window.parts.theme import GAP, HALF, Theme, ThemeSwitch, mixed, soft_font, strong_font, tabular
 
@@ -195,6 +192,11 @@ class _SheetHeader(QHeaderView):
         painter.drawLine(rect.bottomLeft(), rect.bottomRight())
         painter.restore()
 
+    def paintEvent(self, event: QPaintEvent) -> None:
+        """Carry the ground and the line on beyond the last heading."""
+        super().paintEvent(event)
+        paint_rest(self, self._view.theme)
+
 
 class _RowHeader(QHeaderView):
     """Row numbers."""
@@ -310,6 +312,9 @@ class SheetView(QTableView):
         self._copy_action.setShortcutContext(Qt.ShortcutContext.WidgetShortcut)
         self._copy_action.triggered.connect(lambda _=False: self.copy())
         self.addAction(self._copy_action)
+        self._copier = RowCopier(self)
+        self._copier.message.connect(self.message)
+        self.sheet_model.modelAboutToBeReset.connect(self._copier.stop)
         theme_switch.changed.connect(self._on_theme)
 
     def show_sheet(self, grid: SheetGrid, marks: Mapping[tuple[int, int], Mark]) -> None:
@@ -335,18 +340,12 @@ class SheetView(QTableView):
         if not chosen.count():
             return
         part = chosen.at(0)
-        lines = [
-            [
-                _plain_text(self.sheet_model.value_at(row, place))
-                for place in range(part.left(), part.right() + 1)
-            ]
-            for row in range(part.top(), part.bottom() + 1)
-        ]
-        plain = io.StringIO()
-        csv.writer(plain, dialect="excel-tab", lineterminator="\n").writerows(lines)
-        put_table(plain.getvalue(), _as_html(lines))
-        count = part.height()
-        self.message.emit(f"Copied {numbers.integer(count)} {'row' if count == 1 else 'rows'}.")
+        model, places = self.sheet_model, range(part.left(), part.right() + 1)
+
+        def lines_of(rows: Sequence[int]) -> list[list[str]]:
+            return [[_plain_text(model.value_at(row, place)) for place in places] for row in rows]
+
+        self._copier.copy(range(part.top(), part.bottom() + 1), lines_of, tags=["<td>"] * len(places))
 
     def _fit_columns(self) -> None:
         plain, strong = QFontMetrics(self.font()), QFontMetrics(self.strong)
@@ -360,6 +359,11 @@ class SheetView(QTableView):
             width = max(widest, field, plain.horizontalAdvance("AAA")) + 2 * GAP + 4
             self.setColumnWidth(place, min(max(width, _NARROWEST), _WIDEST))
 
+    def paintEvent(self, event: QPaintEvent) -> None:
+        """Carry the hairlines on to the edge."""
+        super().paintEvent(event)
+        paint_beyond(self, self.theme)
+
     def contextMenuEvent(self, event: QContextMenuEvent) -> None:
         """Show the menu on the cells."""
         menu = QMenu(self)
@@ -371,10 +375,3 @@ class SheetView(QTableView):
         self.theme = theme
         for part in (self, self.horizontalHeader(), self.verticalHeader()):
             part.viewport().update()
-
-
-def _as_html(lines: Sequence[Sequence[str]]) -> str:
-    rows = "".join(
-        "<tr>" + "".join(f"<td>{html.escape(text)}</td>" for text in line) + "</tr>" for line in lines
-    )
-    return f"<table>{rows}</table>"

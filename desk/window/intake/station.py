@@ -16,11 +16,15 @@ from desk.window.jobs import Jobs
 from desk.window.parts import numbers
 from desk.window.parts.columns import Column, Mark
 from desk.window.parts.facts import Facts
+from desk.window.parts.models import model_title
 from desk.window.parts.tables import Table
-from desk.window.parts.theme import GAP, HALF, ThemeSwitch
+from desk.window.parts.theme import GAP, HALF, ThemeSwitch, keep_look
 from desk.window.station import Station
 
 __all__ = ["IntakeStation", "marks_of"]
+
+_NO_LIMIT = 16_777_215
+"""What Qt takes for no greatest height [px]."""
 
 _COLUMNS = (
     Column(
@@ -67,6 +71,8 @@ class IntakeStation(Station):
     faults : Table
     whole_fault : QLabel
         The fault that has the keyboard, written out.
+    no_faults : QLabel
+        In the place of the table where there are none.
     """
 
     key = "intake"
@@ -101,7 +107,6 @@ class IntakeStation(Station):
             theme_switch,
             name="Faults",
             description="Return leads to the cell of a fault.",
-            empty_text="No faults: everything in the workbook was understood.",
         )
         self.faults.setSelectionBehavior(Table.SelectionBehavior.SelectRows)
         self.faults.fit_columns()
@@ -113,13 +118,17 @@ class IntakeStation(Station):
         self.whole_fault.setTextFormat(Qt.TextFormat.PlainText)
         self.whole_fault.setTextInteractionFlags(Qt.TextInteractionFlag.TextSelectableByMouse)
         self.whole_fault.setContentsMargins(GAP, HALF, GAP, HALF)
-        lower = QWidget()
-        below = QVBoxLayout(lower)
+        self.no_faults = QLabel("No faults: everything in the workbook was understood.")
+        keep_look(self.no_faults, "soft")
+        self.no_faults.setContentsMargins(GAP, GAP, GAP, GAP)
+        self._lower = QWidget()
+        below = QVBoxLayout(self._lower)
         below.setContentsMargins(0, 0, 0, 0)
         below.setSpacing(0)
         below.addWidget(self.faults, 1)
         below.addWidget(self.whole_fault)
-        self.set_table(lower, share=34)
+        below.addWidget(self.no_faults)
+        self.set_table(self._lower, share=34)
         self._make_form()
 
     def _make_form(self) -> None:
@@ -142,6 +151,10 @@ class IntakeStation(Station):
         self.form.add_widget(self._book)
         self._edited: QLabel = self.form.add_note("")
         self.set_form_visible()
+
+    def home(self) -> QWidget:
+        """The faults where there are any, the sheet otherwise."""
+        return self.faults if self._has_faults else self.sheet
 
     def refresh(self) -> None:
         """Show the reading made last."""
@@ -212,9 +225,13 @@ class IntakeStation(Station):
         )
         self._tell_fault(self.faults.current_source_row())
         if bool(faults) != self._has_faults:
-            # Without faults there is nothing to read below: the sheet gets the room.
+            # Without faults there is one line to read below: the sheet gets the room.
             self._has_faults = bool(faults)
-            self.main.setSizes([660, 340] if faults else [860, 140])
+            self.faults.setVisible(self._has_faults)
+            self.no_faults.setVisible(not self._has_faults)
+            self._lower.setMaximumHeight(_NO_LIMIT if faults else self.no_faults.sizeHint().height())
+            if faults:
+                self.main.setSizes(self.chosen_sizes.get("main", [660, 340]))
 
     def _show_book(self) -> None:
         book = self.document.book
@@ -235,7 +252,7 @@ class IntakeStation(Station):
                 ("Liability flows", numbers.integer(len(book.liabilities))),
                 ("Holdings", numbers.integer(len(book.holdings))),
                 ("Asset flows", numbers.integer(len(book.asset_flows))),
-                ("Rates model", book.rates_model.name.value if book.rates_model else "none"),
+                ("Rates model", model_title(book.rates_model.name) if book.rates_model else "none"),
             ]
         )
         self._edited.setText("The book was changed in this window since it was read or saved.")

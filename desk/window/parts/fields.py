@@ -7,8 +7,8 @@ from dataclasses import dataclass
 from datetime import date
 from typing import Any
 
-from PySide6.QtCore import QPoint, Qt, Signal
-from PySide6.QtGui import QKeyEvent, QPainter, QPaintEvent, QPen, QWheelEvent
+from PySide6.QtCore import QEvent, QPoint, Qt, Signal
+from PySide6.QtGui import QKeyEvent, QKeySequence, QPainter, QPaintEvent, QPen, QWheelEvent
 from PySide6.QtWidgets import (
     QComboBox,
     QHBoxLayout,
@@ -20,6 +20,7 @@ from PySide6.QtWidgets import (
 )
 
 from desk.window.parts import numbers
+from desk.window.parts.labels import well_broken
 from desk.window.parts.theme import GAP, HALF, STEP, WIDE, keep_look, soft_font
 
 __all__ = [
@@ -39,9 +40,19 @@ FORM_WIDTH = 280
 
 
 class _Line(QLineEdit):
-    """An entry that Escape takes back."""
+    """An entry that Escape takes back; without typing to undo, the keys of undo are the book's."""
 
     reverted = Signal()
+
+    def event(self, event: QEvent) -> bool:
+        """Leave a key to the menus that would do nothing here."""
+        if event.type() is QEvent.Type.ShortcutOverride and isinstance(event, QKeyEvent):
+            keys = QKeySequence.StandardKey
+            undoes, redoes = event.matches(keys.Undo), event.matches(keys.Redo)
+            if (undoes and not self.isUndoAvailable()) or (redoes and not self.isRedoAvailable()):
+                event.ignore()
+                return False
+        return super().event(event)
 
     def keyPressEvent(self, event: QKeyEvent) -> None:
         """Escape takes the entry back."""
@@ -118,14 +129,15 @@ class Field(QWidget):
 
     def set_hint(self, hint: str) -> None:
         """Explain the field in a plain sentence."""
-        self._hint.setText(hint)
+        self._hint_text = hint
+        self._hint.setText(well_broken(hint))
         self._hint.setVisible(bool(hint))
         self.editor.setAccessibleDescription(hint)
 
     @property
     def hint(self) -> str:
         """The explanation under the field."""
-        return self._hint.text()
+        return self._hint_text
 
     @property
     def problem(self) -> str:

@@ -37,7 +37,7 @@ class Canvas(QWidget):
         self._verticals: dict[str, tuple[float, pg.InfiniteLine]] = {}
         self._shade: tuple[float, str, pg.LinearRegionItem] | None = None
         self._x, self._y, self._right = Scale(), Scale(), Scale()
-        self._has_right = False
+        self._has_right = self._right_is_alike = False
         self._zero_wanted = False
         self._fixed: dict[str, tuple[float, float]] = {}
         self._home: tuple[float, float, float, float] | None = None
@@ -130,10 +130,20 @@ class Canvas(QWidget):
         self._changed()
 
     def set_right_axis(
-        self, label: str, unit: str, *, kind: str = "number", digits: int | None = None
+        self,
+        label: str,
+        unit: str,
+        *,
+        kind: str = "number",
+        digits: int | None = None,
+        alike: bool = False,
     ) -> None:
-        """Have a second y axis, for the lines that ask for it."""
+        """Have a second y axis, for the lines that ask for it.
+
+        With `alike` it is in thousands, millions or more as the left-hand axis is, whose heading says so.
+        """
         right = self._right
+        self._right_is_alike = alike
         right.label, right.unit, right.kind, right.digits = label, unit, kind, digits
         if not self._has_right:
             self._has_right = True
@@ -316,7 +326,10 @@ class Canvas(QWidget):
             if self._shade is not None:
                 self._shade[2].setRegion((self._shade[0], max(stop, self._shade[0]) + 2 * (stop - left)))
         if right is not None:
-            self._right.fit(right[2], right[3])
+            if self._right_is_alike:
+                self._right.scale = self._y.scale
+            else:
+                self._right.fit(right[2], right[3])
             self._home_right = with_room(min(right[2], 0.0), right[3])
             self._right_box.setYRange(*self._home_right, padding=0)
         self._head()
@@ -335,7 +348,8 @@ class Canvas(QWidget):
             axis.update()
         axes["bottom"].setLabel(self._x.heading)
         self._y_heading.setText(self._y.heading)
-        self._right_heading.setText(self._right.heading if self._has_right else "")
+        beside = self._right.label if self._right_is_alike else self._right.heading
+        self._right_heading.setText(beside if self._has_right else "")
         self._right_heading.setVisible(self._has_right)
         bars = [series for series in self._series.values() if isinstance(series, Bars)]
         self._key.setText(

@@ -83,7 +83,8 @@ class Picture(Canvas):
         """Name the picture."""
         self._title.setText(title)
         self.setAccessibleName(title)
-        self.plot.setAccessibleName(f"Picture: {title}")
+        for part in (self.plot, self.plot.viewport()):
+            part.setAccessibleName(f"Picture: {title}")
         self.button.setAccessibleName(f"Save or copy the picture {title}")
 
     @property

@@ -6,7 +6,7 @@ from typing import TYPE_CHECKING
 
 from PySide6.QtCore import QPoint, QRect, QSize, Qt
 from PySide6.QtGui import QFontMetrics, QPainter, QPaintEvent, QPolygon
-from PySide6.QtWidgets import QHeaderView, QStyle, QStyledItemDelegate, QStyleOptionViewItem
+from PySide6.QtWidgets import QHeaderView, QStyle, QStyledItemDelegate, QStyleOptionViewItem, QTableView
 
 from desk.window.parts.columns import Mark
 from desk.window.parts.table_model import Index
@@ -15,7 +15,7 @@ from desk.window.parts.theme import GAP, HALF, Theme, mixed, soft_font, strong_f
 if TYPE_CHECKING:
     from desk.window.parts.tables import Table
 
-__all__ = ["Cells", "Header", "paint_mark"]
+__all__ = ["Cells", "Header", "paint_beyond", "paint_mark", "paint_rest"]
 
 
 class Header(QHeaderView):
@@ -24,6 +24,8 @@ class Header(QHeaderView):
     def __init__(self, table: Table) -> None:
         super().__init__(Qt.Orientation.Horizontal, table)
         self._table = table
+        self._measured_font = ""
+        self._heights: tuple[int, ...] = ()
         self.setSectionsClickable(True)
         self.setHighlightSections(False)
         self.setSortIndicatorShown(True)
@@ -33,10 +35,15 @@ class Header(QHeaderView):
 
     def sizeHint(self) -> QSize:
         """High enough for both lines, or for one where no column has a unit."""
-        name = QFontMetrics(strong_font(self.font())).height()
+        # Asked for again and again while a table is laid out.
+        key = self.font().key()
+        if key != self._measured_font:
+            self._measured_font = key
+            fonts = strong_font(self.font()), soft_font(self.font())
+            self._heights = tuple(QFontMetrics(font).height() for font in fonts)
+        name, unit = self._heights
         has_units = any(column.shown_unit for column in self._table.table_model.columns)
-        unit = QFontMetrics(soft_font(self.font())).height() if has_units else 0
-        return QSize(super().sizeHint().width(), name + unit + GAP)
+        return QSize(super().sizeHint().width(), name + (unit if has_units else 0) + GAP)
 
     def paintSection(self, painter: QPainter, rect: QRect, section: int) -> None:
         """Draw one heading."""
@@ -77,15 +84,7 @@ class Header(QHeaderView):
     def paintEvent(self, event: QPaintEvent) -> None:
         """Carry the ground and the line on beyond the last heading."""
         super().paintEvent(event)
-        rest = self.viewport().rect()
-        if self.count():
-            last = self.logicalIndex(self.count() - 1)
-            rest.setLeft(self.sectionViewportPosition(last) + self.sectionSize(last))
-        if rest.width() > 0:
-            painter = QPainter(self.viewport())
-            painter.fillRect(rest, self._table.theme.surface)
-            painter.setPen(mixed(self._table.theme.hairline, self._table.theme.ink_soft, 0.4))
-            painter.drawLine(rest.bottomLeft(), rest.bottomRight())
+        paint_rest(self, self._table.theme)
 
 
 class Cells(QStyledItemDelegate):
@@ -136,3 +135,32 @@ def paint_mark(painter: QPainter, rect: QRect, mark: Mark, theme: Theme) -> None
     painter.setPen(colour)
     painter.setBrush(colour if mark.grave else theme.surface)
     painter.drawPolygon(shape)
+
+
+def paint_beyond(view: QTableView, theme: Theme) -> None:
+    """Carry the hairlines under the rows on from the last column to the edge."""
+    model, area = view.model(), view.viewport().rect()
+    count = model.rowCount()
+    start = view.horizontalHeader().length() - view.horizontalHeader().offset()
+    if not count or start >= area.right():
+        return
+    painter = QPainter(view.viewport())
+    painter.setPen(theme.hairline)
+    row, height = max(view.rowAt(0), 0), view.verticalHeader().defaultSectionSize()
+    line = view.rowViewportPosition(row) + height - 1
+    while row < count and line <= area.bottom():
+        painter.drawLine(start, line, area.right(), line)
+        row, line = row + 1, line + height
+
+
+def paint_rest(header: QHeaderView, theme: Theme) -> None:
+    """Carry the ground and the line of headings on from the last one to the edge."""
+    rest = header.viewport().rect()
+    if header.count():
+        last = header.logicalIndex(header.count() - 1)
+        rest.setLeft(header.sectionViewportPosition(last) + header.sectionSize(last))
+    if rest.width() > 0:
+        painter = QPainter(header.viewport())
+        painter.fillRect(rest, theme.surface)
+        painter.setPen(mixed(theme.hairline, theme.ink_soft, 0.4))
+        painter.drawLine(rest.bottomLeft(), rest.bottomRight())

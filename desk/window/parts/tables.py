@@ -3,7 +3,6 @@
 from __future__ import annotations
 
 import csv
-import html
 import io
 from collections.abc import Callable, Mapping, Sequence
 
@@ -27,9 +26,9 @@ from PySide6.QtWidgets import (
     QWidget,
 )
 
-from desk.window.parts.clipboard import put_table
+from desk.window.parts.clipboard import RowCopier
 from desk.window.parts.columns import Column, Kind, Mark
-from desk.window.parts.table_drawing import Cells, Header
+from desk.window.parts.table_drawing import Cells, Header, paint_beyond
 from desk.window.parts.table_model import TableModel, Values
 from desk.window.parts.theme import GAP, Theme, ThemeSwitch, soft_font, strong_font, tabular
 
@@ -127,6 +126,11 @@ class Table(QTableView):
         self.selectionModel().currentRowChanged.connect(self._on_current_row)
         theme_switch.changed.connect(self._on_theme)
         self._actions = self._make_actions()
+        self._copier = RowCopier(self)
+        self._copier.message.connect(self.message)
+        # Rows are copied as they are: what is still on its way when they change is dropped.
+        self.table_model.modelAboutToBeReset.connect(self._copier.stop)
+        self.table_model.layoutAboutToBeChanged.connect(lambda *_: self._copier.stop())
 
     # Content
 
@@ -222,27 +226,25 @@ class Table(QTableView):
             return
         model = self.table_model
         columns = [model.columns[place] for place in places]
-        texts: list[list[str]] = []
-        for place, column in zip(places, columns, strict=True):
-            cells = column.copied(model.values_at(rows, place), exactly=exactly)
-            if chosen is not None:
-                cells = [
-                    text if (row, place) in chosen else "" for row, text in zip(rows, cells, strict=True)
-                ]
-            texts.append(cells)
-        lines = list(zip(*texts, strict=True))
+
+        def lines_of(some: Sequence[int]) -> list[tuple[str, ...]]:
+            texts: list[list[str]] = []
+            for place, column in zip(places, columns, strict=True):
+                cells = column.copied(model.values_at(some, place), exactly=exactly)
+                if chosen is not None:
+                    cells = [
+                        text if (row, place) in chosen else "" for row, text in zip(some, cells, strict=True)
+                    ]
+                texts.append(cells)
+            return list(zip(*texts, strict=True))
+
         whole = len(rows) == model.rowCount() and len(places) == len(model.columns)
-        if whole:
-            headings = tuple(
-                f"{column.heading} ({column.shown_unit})" if column.shown_unit else column.heading
-                for column in columns
-            )
-            lines.insert(0, headings)
-        plain = io.StringIO()
-        csv.writer(plain, dialect="excel-tab", lineterminator="\n").writerows(lines)
-        put_table(plain.getvalue(), _as_html(lines, columns, headed=whole))
-        count = len(rows)
-        self.message.emit(f"Copied {count} {'row' if count == 1 else 'rows'}.")
+        headings = [
+            f"{column.heading} ({column.shown_unit})" if column.shown_unit else column.heading
+            for column in columns
+        ]
+        tags = [_opening_tag(column) for column in columns]
+        self._copier.copy(rows, lines_of, tags=tags, headings=headings if whole else ())
 
     def paste(self) -> None:
         """Hand the clipboard's cells to whoever takes them."""
@@ -317,27 +319,13 @@ class Table(QTableView):
     def paintEvent(self, event: QPaintEvent) -> None:
         """Carry the hairlines on to the edge; say what an empty table would hold."""
         super().paintEvent(event)
-        self._paint_beyond()
+        paint_beyond(self, self.theme)
         if self.table_model.rowCount() == 0 and self.empty_text:
             painter = QPainter(self.viewport())
             painter.setPen(self.theme.ink_soft)
             place = self.viewport().rect().adjusted(4 * GAP, 2 * GAP, -4 * GAP, -2 * GAP)
             flags = Qt.AlignmentFlag.AlignHCenter | Qt.AlignmentFlag.AlignVCenter | Qt.TextFlag.TextWordWrap
             painter.drawText(place, int(flags), self.empty_text)
-
-    def _paint_beyond(self) -> None:
-        """The hairlines right of the last column."""
-        count, area = self.table_model.rowCount(), self.viewport().rect()
-        start = self.horizontalHeader().length() - self.horizontalHeader().offset()
-        if not count or start >= area.right():
-            return
-        painter = QPainter(self.viewport())
-        painter.setPen(self.theme.hairline)
-        row, height = max(self.rowAt(0), 0), self.verticalHeader().defaultSectionSize()
-        line = self.rowViewportPosition(row) + height - 1
-        while row < count and line <= area.bottom():
-            painter.drawLine(start, line, area.right(), line)
-            row, line = row + 1, line + height
 
     def _on_double_click(self, index: QModelIndex) -> None:
         if not index.flags() & Qt.ItemFlag.ItemIsEditable:
@@ -352,21 +340,8 @@ class Table(QTableView):
         self.horizontalHeader().viewport().update()
 
 
-def _as_html(lines: Sequence[Sequence[str]], columns: Sequence[Column], *, headed: bool) -> str:
-    opening = [
-        '<td align="right">'
-        if column.is_numeric
-        else "<td style=\"mso-number-format:'\\@'\">"
-        if column.kind == "text"
-        else "<td>"
-        for column in columns
-    ]
-    parts = ["<table>"]
-    for place, line in enumerate(lines):
-        if headed and place == 0:
-            cells = "".join(f"<th>{html.escape(text)}</th>" for text in line)
-        else:
-            cells = "".join(f"{tag}{html.escape(text)}</td>" for tag, text in zip(opening, line, strict=True))
-        parts.append(f"<tr>{cells}</tr>")
-    parts.append("</table>")
-    return "".join(parts)
+def _opening_tag(column: Column) -> str:
+    """Of a cell in HTML: a spreadsheet leaves text as it is."""
+    if column.is_numeric:
+        return '<td align="right">'
+    return "<td style=\"mso-number-format:'\\@'\">" if column.kind == "text" else "<td>"

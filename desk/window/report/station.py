@@ -25,6 +25,7 @@ from desk.window.jobs import Job, Jobs
 from desk.window.parts import numbers
 from desk.window.parts.columns import Column
 from desk.window.parts.fields import TextField
+from desk.window.parts.models import model_title
 from desk.window.parts.paths import is_same_file
 from desk.window.parts.tables import Table
 from desk.window.parts.theme import GAP, ThemeSwitch
@@ -150,6 +151,10 @@ class ReportStation(Station):
 
     # Keeping up
 
+    def home(self) -> QWidget:
+        """The button that writes."""
+        return self.write_button
+
     def refresh(self) -> None:
         """Show the report that the book as it stands would give."""
         document = self.document
@@ -237,8 +242,7 @@ class ReportStation(Station):
         elif simulation is not None:
             told = (
                 f"The run at hand goes in: {numbers.integer(simulation.paths)} paths of "
-                f"{simulation.model}, seed "
-                f"{simulation.seed}."
+                f"{model_title(simulation.model)}, seed {simulation.seed}."
             )
         else:
             run = book.run

@@ -12,17 +12,10 @@ from desk.book import Book, Measure, ModelName, RatesModel
 from desk.book.run import MOST_PATHS
 from desk.scenarios.suggestions import MODEL_ITEMS, MODEL_TRAITS, suggested_model
 from desk.window.parts.fields import Choice, ChoiceField, Field, Form, IntegerField, NumberField
+from desk.window.parts.models import MODEL_TITLES
 
-__all__ = ["MODEL_TITLES", "RunForm"]
+__all__ = ["RunForm"]
 
-MODEL_TITLES = {
-    ModelName.VASICEK: "Vasicek",
-    ModelName.HO_LEE: "Ho-Lee",
-    ModelName.HULL_WHITE: "Hull-White",
-    ModelName.GAUSSIAN_2: "Gaussian, two factors",
-    ModelName.CIR: "Cox-Ingersoll-Ross",
-    ModelName.CIR_SHIFTED: "Cox-Ingersoll-Ross, shifted",
-}
 _FITTED = "Reprices the book's curve exactly."
 _OWN = "Makes its own curve, which is not the book's: present values are on that one."
 _WHAT = {

@@ -160,12 +160,14 @@ def _fan_sentence(simulation: Simulation, summary: NodeSummary, *, is_account: b
     mean, error = float(summary.mean[-1]), float(summary.mean_se[-1])
     year = numbers.exact(float(summary.year[-1]))
     if not is_account:
-        text = f"{numbers.rate(mean, with_unit=True)} ± {numbers.rate(error, 3, with_unit=True)}"
-        return f"Mean at year {year}: {text} (one standard error)."
-    text = f"Mean at year {year}: {numbers.number(mean, 3)} ± {numbers.number(error, 3)} (one standard error)"
+        text = (
+            f"{numbers.rate(mean, with_unit=True)}, standard error {numbers.rate(error, 3, with_unit=True)}"
+        )
+        return f"Mean at year {year}: {text}."
+    text = f"Mean at year {year}: {numbers.number(mean, 3)}, standard error {numbers.number(error, 3)}."
     if simulation.closed_form is None:
-        return f"{text}. This model has no closed form of it."
-    return f"{text}; thin lines: closed form."
+        return f"{text} This model has no closed form of it."
+    return f"{text} Thin lines: closed form."
 
 
 def _nice_width(histogram: Histogram) -> float:

@@ -51,7 +51,7 @@ class ScenariosStation(Station):
 
     key = "scenarios"
     title = "Scenarios"
-    purpose = "What rates may do, and what follows for both sides"
+    purpose = "What rates may do, and what follows"
 
     def __init__(
         self, document: Document, jobs: Jobs, theme_switch: ThemeSwitch, parent: QWidget | None = None
@@ -63,6 +63,7 @@ class ScenariosStation(Station):
         self._job: Job | None = None
         self._failure = ""
         self._usual_sizes: list[int] = []
+        self._values_pictures: tuple[ValuesPicture, ...] = ()
         # Pictures and tables take turns, so that the window never stops for all at once.
         self._waiting: list[Callable[[], None]] = []
         self._filling = QTimer(self, singleShot=True, interval=0)
@@ -77,16 +78,12 @@ class ScenariosStation(Station):
         self._make_controls()
         self.fan = FanPicture(theme_switch)
         self.histogram = HistogramPicture(theme_switch)
-        self.sides_picture = ValuesPicture(theme_switch)
-        self.surplus_picture = ValuesPicture(theme_switch)
         self.percentiles = PercentilesTable(theme_switch)
         self.repricing = RepricingTable(theme_switch)
         self.values = ValuesTable(theme_switch)
         for teller in (
             self.fan,
             self.histogram,
-            self.sides_picture,
-            self.surplus_picture,
             self.percentiles,
             self.repricing,
             self.values,
@@ -99,8 +96,8 @@ class ScenariosStation(Station):
         self.in_full = TickBox("Intervals and closed form")
         self.in_full.setChecked(True)
         self.pages.add_control(self.in_full)
-        self.set_pictures(self.fan, self.histogram, self.sides_picture, self.surplus_picture)
-        for place, share in enumerate((3, 2, 1, 1)):
+        self.set_pictures(self.fan, self.histogram)
+        for place, share in enumerate((3, 2)):
             self.pictures.setStretchFactor(place, share)
         self.set_table(self.pages, share=44)
         self.main.addWidget(self._make_invitation())
@@ -154,9 +151,13 @@ class ScenariosStation(Station):
         self.fan.year_chosen.connect(lambda year: self.set_year(round(year)))
         self.jobs.progressed.connect(self._on_progress)
         self.document.failed.connect(self._on_failed)
-        shortcut = QShortcut(QKeySequence("Ctrl+R"), self)
-        shortcut.setContext(Qt.ShortcutContext.WidgetWithChildrenShortcut)
-        shortcut.activated.connect(self.run)
+        # It holds while the station is seen, wherever the keyboard is.
+        QShortcut(QKeySequence("Ctrl+R"), self).activated.connect(self.run)
+
+    def home(self) -> QWidget:
+        """The button that runs, or the one that stops."""
+        form = self.run_form
+        return form.cancel_button if self.document.is_simulating else form.run_button
 
     # Running
 
@@ -282,6 +283,18 @@ class ScenariosStation(Station):
         return ""
 
     @property
+    def values_pictures(self) -> tuple[ValuesPicture, ...]:
+        """Present values of both sides, and of the surplus; made when they are first wanted."""
+        if not self._values_pictures:
+            self._values_pictures = (ValuesPicture(self.theme_switch), ValuesPicture(self.theme_switch))
+            for picture in self._values_pictures:
+                picture.message.connect(self.message)
+                self.pictures.addWidget(picture)
+                self.pictures.setStretchFactor(self.pictures.count() - 1, 1)
+                picture.hide()
+        return self._values_pictures
+
+    @property
     def shown_quantity(self) -> str:
         """``account``, ``rate`` or ``values``."""
         return _QUANTITIES[max(self.quantity.currentIndex(), 0)]
@@ -295,8 +308,9 @@ class ScenariosStation(Station):
         self.invitation.setVisible(not there)
         for picture in (self.fan, self.histogram):
             picture.setVisible(not of_values)
-        for of_side in (self.sides_picture, self.surplus_picture):
-            of_side.setVisible(of_values)
+        if of_values or self._values_pictures:
+            for of_side in self.values_pictures:
+                of_side.setVisible(of_values)
         self.quantity.setVisible(there)
         for control in (self.year_label, self.slider):
             control.setVisible(there and not of_values)
@@ -385,9 +399,10 @@ class ScenariosStation(Station):
             return
         by_name = {each.name: each for each in self._shown.present_value}
         sides = [by_name[name] for name in ("assets", "liabilities") if name in by_name]
-        self.sides_picture.show_values("Assets and liabilities", sides, book.basis.currency)
+        both, surplus = self.values_pictures
+        both.show_values("Assets and liabilities", sides, book.basis.currency)
         if "surplus" in by_name:
-            self.surplus_picture.show_values("Surplus", [by_name["surplus"]], book.basis.currency)
+            surplus.show_values("Surplus", [by_name["surplus"]], book.basis.currency)
 
     def _fill_table(self) -> None:
         """Fill the table that is shown."""

@@ -9,9 +9,9 @@ import numpy as np
 from desk.scenarios.records import Simulation
 from desk.scenarios.shapes import repricing_error
 from desk.window.parts import numbers
+from desk.window.parts.models import model_title
 from desk.window.parts.tables import Column, Kind, Mark, Table
 from desk.window.parts.theme import ThemeSwitch
-from desk.window.scenarios.form import MODEL_TITLES
 from desk.window.scenarios.pictures import level_name
 
 __all__ = ["TOO_FAR", "PercentilesTable", "RepricingTable", "ValuesTable", "run_sentence"]
@@ -172,9 +172,7 @@ class ValuesTable(_Tabled):
 
 def run_sentence(simulation: Simulation) -> str:
     """What a run was, in one line."""
-    title = next(
-        (title for name, title in MODEL_TITLES.items() if name == simulation.model), simulation.model
-    )
+    title = model_title(simulation.model)
     return (
         f"Shown: {numbers.integer(simulation.paths)} paths of {title} over "
         f"{numbers.integer(simulation.horizon_years)} years, {simulation.measure} measure, "

@@ -168,7 +168,11 @@ class LinesPage(QWidget):
         column.setContentsMargins(0, 0, 0, 0)
         column.setSpacing(0)
         column.addWidget(self.table, 1)
-        column.addWidget(self.totals)
+        # As wide as the cells above: the bar beside them takes its room here too.
+        self._under = QHBoxLayout()
+        self._under.setContentsMargins(0, 0, 0, 0)
+        self._under.addWidget(self.totals)
+        column.addLayout(self._under)
         self.totals.horizontalHeader().hide()
         self.totals.setSortingEnabled(False)
         self.totals.setFixedHeight(2 * self.totals.verticalHeader().defaultSectionSize() + 2)
@@ -209,6 +213,12 @@ class LinesPage(QWidget):
         bar, follower = self.table.horizontalScrollBar(), self.totals.horizontalScrollBar()
         bar.rangeChanged.connect(lambda *_: follower.setRange(bar.minimum(), bar.maximum()))
         bar.valueChanged.connect(follower.setValue)
+        beside = self.table.verticalScrollBar()
+        beside.rangeChanged.connect(
+            lambda low, high: self._under.setContentsMargins(
+                0, 0, beside.sizeHint().width() if high > low else 0, 0
+            )
+        )
 
     # Showing
 

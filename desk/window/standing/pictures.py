@@ -15,6 +15,8 @@ from desk.window.standing.wording import amount
 __all__ = ["FlowPicture", "KeyRatePicture"]
 
 _CUMULATIVE = "Cumulative net"
+_LEAST_ROOM = 0.25
+"""Part of the height that the cumulative line has on each side of zero where it goes there."""
 
 
 class FlowPicture(Picture):
@@ -28,8 +30,8 @@ class FlowPicture(Picture):
 
     def show_periods(self, periods: Periods, currency: str) -> None:
         """Draw the periods of a standing."""
-        self.set_axes("Year", "", "", currency, y_kind="money", with_zero=True)
-        self.set_right_axis("Cumulative", currency, kind="money")
+        self.set_axes("Year", "", "A year", currency, y_kind="money", with_zero=True)
+        self.set_right_axis("Cumulative", currency, kind="money", alike=True)
         self.add_bars("Assets", periods.year, periods.assets, "assets", width=0.72)
         self.add_bars("Liabilities", periods.year, -periods.liabilities, "liabilities", width=0.72)
         self.add_line(_CUMULATIVE, periods.year, periods.cumulative, "surplus", right=True)
@@ -48,9 +50,10 @@ class FlowPicture(Picture):
         super().settle()
         if self._home is None or not self._has_right:
             return
-        spans = [self._span(on_right=side) for side in (False, True)]
-        low_1, high_1 = _around_zero(*spans[0], below=_below(spans))
-        low_2, high_2 = _around_zero(*spans[1], below=_below(spans))
+        bars, line = self._span(on_right=False), self._span(on_right=True)
+        below = _below(bars, line)
+        low_1, high_1 = _around_zero(*bars, below=below)
+        low_2, high_2 = _around_zero(*line, below=below)
         self._home = (self._home[0], self._home[1], low_1, high_1)
         self._home_right = (low_2, high_2)
         self._right_box.setYRange(low_2, high_2, padding=0)
@@ -65,12 +68,14 @@ class FlowPicture(Picture):
         return float(np.nanmin(values)), float(np.nanmax(values))
 
 
-def _below(spans: list[tuple[float, float]]) -> float:
-    """The part of the height under zero that suits all of `spans` best."""
-    shares = [-low / (high - low) for low, high in spans if high > low]
-    if not shares:
-        return 0.5
-    return float(np.clip(np.mean(shares), min(0.25, *shares), max(0.75, *shares)))
+def _below(bars: tuple[float, float], line: tuple[float, float]) -> float:
+    """The part of the height under zero: what the bars take, with some room for a line they leave none."""
+    low, high = bars if bars[1] > bars[0] else line
+    share = -low / (high - low) if high > low else 0.5
+    # The line's own axis stretches to suit, but not without end: a quarter of the height is room enough.
+    least = _LEAST_ROOM if line[0] < 0.0 else 0.0
+    most = 1.0 - _LEAST_ROOM if line[1] > 0.0 else 1.0
+    return float(np.clip(share, least, most))
 
 
 def _around_zero(low: float, high: float, *, below: float) -> tuple[float, float]:
@@ -88,7 +93,7 @@ def _flow_sentence(periods: Periods, currency: str) -> str:
     if value >= 0.0:
         return "Undiscounted. Receipts so far cover payments so far in every year."
     year = int(periods.year[lowest])
-    return f"Undiscounted. Cumulative net lowest in year {year}: {amount(value, currency)}."
+    return f"Undiscounted. Lowest cumulative: {amount(value, currency)}, year {year}."
 
 
 class KeyRatePicture(Picture):
@@ -119,4 +124,4 @@ def _key_sentence(key_rates: KeyRates, gap: FloatArray, currency: str) -> str:
         return "For +1 basis point at each key rate. There is no gap."
     widest = int(np.abs(gap).argmax())
     term = numbers.exact(float(key_rates.term[widest]))
-    return f"For +1 basis point each. Widest gap at {term} years: {amount(float(gap[widest]), currency)}."
+    return f"For +1 basis point. Widest gap at {term} years: {amount(float(gap[widest]), currency)}."

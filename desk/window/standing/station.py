@@ -123,6 +123,10 @@ class StandingStation(Station):
 
     # Showing
 
+    def home(self) -> QWidget:
+        """The lines."""
+        return self.lines.table
+
     def refresh(self) -> None:
         """Show the standing of the open book, and say where it is stale."""
         document = self.document

@@ -331,12 +331,13 @@ def test_present_values_mark_the_value_on_the_curve(
     simulation = run(station, bench, qtbot)
     station.quantity.setCurrentIndex(2)
     settle(station, qtbot)
-    assert station.sides_picture.isVisible()
+    sides_picture, surplus_picture = station.values_pictures
+    assert sides_picture.isVisible()
     assert not station.fan.isVisible()
-    assert station.sides_picture.names == ("Assets", "Liabilities")
+    assert sides_picture.names == ("Assets", "Liabilities")
     surplus = simulation.present_value[2]
-    assert station.surplus_picture._verticals["on the curve"][0] == surplus.curve
-    assert "Below zero on" in station.surplus_picture.description
+    assert surplus_picture._verticals["on the curve"][0] == surplus.curve
+    assert "Below zero on" in surplus_picture.description
     assert station.pages.current == "values"
     assert column(station.values, "name") == ["Assets", "Liabilities", "Surplus"]
     assert station.values.table_model.column_values("below")[2] == surplus.below_zero
