@@ -1,179 +1,22 @@
-"""Sheets of holdings and of risky assets."""
+"""The sheet of risky assets."""
 
 from __future__ import annotations
-
-from datetime import date
 
 import numpy as np
 from numpy.typing import NDArray
 
-from desk.book import Holding, HoldingKind, RiskyAssets
+from desk.book import RiskyAssets
 from desk.intake.cells import Cells
-from desk.intake.checks import check_correlations, check_not_negative, check_rates, check_size, plain
+from desk.intake.checks import check_correlations, check_not_negative, check_rates, check_size
 from desk.intake.faults import FaultList
 from desk.intake.layout import SHEETS, Table, find_known, fold
-from desk.rates.day_count import DayCount
 
-__all__ = ["READ_KINDS", "further_columns", "read_holdings", "read_risky_assets"]
+__all__ = ["further_columns", "read_risky_assets"]
 
-BoolArray = NDArray[np.bool_]
 FloatArray = NDArray[np.float64]
 
-_FREQUENCIES = (1.0, 2.0, 4.0, 12.0)
 _LEAST_EIGENVALUE = -1e-10
 """Of a correlation matrix whose entries are rounded to what a float holds."""
-_USED = {
-    HoldingKind.BOND: frozenset({"Nominal", "Coupon", "Frequency", "Maturity"}),
-    HoldingKind.ZERO: frozenset({"Nominal", "Maturity"}),
-    HoldingKind.DEPOSIT: frozenset({"Nominal"}),
-    HoldingKind.FUND: frozenset({"Market value"}),
-}
-READ_KINDS = tuple(_USED)
-"""Kinds of holding that the sheet can state."""
-_ALWAYS_USED = frozenset({"Name", "Kind", "Day count", "Market value", "Units"})
-
-
-def read_holdings(table: Table, faults: FaultList, *, valuation_date: date | None) -> tuple[Holding, ...]:
-    """The holdings; those with a grave fault are left out."""
-    rows = table.rows
-    cells = {name: Cells(table.sheet, table.column(name), rows, faults) for name in table.layout.columns}
-    names = cells["Name"].texts_of("the name of the holding")
-    kinds = cells["Kind"].choices(HoldingKind, "a kind", among=READ_KINDS)
-    used = {
-        name: np.array([kind is not None and name in _USED[kind] for kind in kinds], dtype=np.bool_)
-        for name in ("Nominal", "Coupon", "Frequency", "Maturity", "Market value")
-    }
-    nominal = cells["Nominal"].numbers("an amount", required=used["Nominal"])
-    coupon = cells["Coupon"].numbers("a coupon rate a year", required=used["Coupon"])
-    frequency = cells["Frequency"].numbers("1, 2, 4 or 12 coupons a year", required=used["Frequency"])
-    maturity = cells["Maturity"].dates("the date of maturity", required=used["Maturity"])
-    day_count = cells["Day count"].choices(DayCount, "a day count", required=False)
-    market_value = cells["Market value"].numbers("a market value", required=used["Market value"])
-    units = cells["Units"].numbers("a number of units", required=False)
-    duration = cells["Duration"].numbers("a duration in years", required=False)
-    _report_missing_columns(table, used, faults)
-    check_rates(cells["Coupon"], coupon, "the coupon")
-    check_size(cells["Nominal"], nominal, "the nominal")
-    check_size(cells["Market value"], market_value, "the market value")
-    check_size(cells["Units"], units, "the number of units")
-    odd = ~np.isnan(frequency) & ~np.isin(frequency, _FREQUENCIES)
-    cells["Frequency"].each(odd, "the frequency is {}", "1, 2, 4 or 12 coupons a year", "Correct the figure.")
-    with np.errstate(invalid="ignore"):
-        unlikely = (duration < 0.0) | (duration > 100.0)
-    cells["Duration"].each(
-        unlikely, "the duration is {}", "a duration from 0 to 100 years", "Correct the figure."
-    )
-    with np.errstate(invalid="ignore"):
-        cells["Nominal"].each(
-            nominal < 0.0,
-            "the nominal is {}",
-            "an amount of at least 0",
-            "It counts as a debt; correct the sign if it is held.",
-            mild=True,
-        )
-        apart = ~np.isnan(market_value) & (np.sign(nominal) * market_value <= 0.0) & (nominal != 0.0)
-    if valuation_date is not None:
-        past = ~np.isnat(maturity) & (maturity <= np.datetime64(valuation_date, "D"))
-        matured = np.flatnonzero(past & used["Maturity"])
-        cells["Maturity"].each_with(
-            matured,
-            (
-                f"the holding matured on {day}, not after the valuation date {valuation_date}"
-                for day in np.datetime_as_string(maturity[matured]).tolist()
-            ),
-            "a date after the valuation date",
-            "It is kept and counts for nothing; remove it or correct the date.",
-            mild=True,
-        )
-        apart &= ~past
-    cells["Market value"].each(
-        apart & used["Maturity"],
-        "the market value is {}, which no spread gives for this nominal",
-        "a market value above 0 for a holding, below 0 for a debt",
-        "Correct it, or leave it empty.",
-    )
-    _report_unused(cells, kinds, faults)
-    _report_twice(cells["Name"], names)
-    holdings = []
-    spoilt = faults.grave_rows(table.sheet.name)
-    for entry, (name, kind) in enumerate(zip(names, kinds, strict=True)):
-        if int(rows[entry]) in spoilt or not name or kind is None:
-            continue
-        day = maturity[entry]
-        try:
-            holding = Holding(
-                name=name,
-                kind=kind,
-                nominal=_or(nominal[entry], 0.0),
-                coupon=_or(coupon[entry], 0.0),
-                frequency=int(_or(frequency[entry], 1.0)),
-                maturity=None if np.isnat(day) else day.item(),
-                day_count=day_count[entry],
-                market_value=_or_none(market_value[entry]),
-                units=_or_none(units[entry]),
-                duration=_or_none(duration[entry]),
-            )
-        except ValueError as error:
-            # Only where a column is missing, which is reported at its place.
-            cells["Name"].fault(
-                entry, f"the row makes no holding: {plain(error)}", f"a {kind}", "Correct the row."
-            )
-            continue
-        holdings.append(holding)
-    return tuple(holdings)
-
-
-def _or(value: float, default: float) -> float:
-    return default if np.isnan(value) else float(value)
-
-
-def _or_none(value: float) -> float | None:
-    return None if np.isnan(value) else float(value)
-
-
-def _report_missing_columns(table: Table, used: dict[str, BoolArray], faults: FaultList) -> None:
-    """A fund needs a column that the sheet may do without."""
-    if table.column("Market value") is None and used["Market value"].any():
-        for row in table.rows[used["Market value"]].tolist():
-            faults.add(
-                "the fund has no market value",
-                "a market value",
-                'Add the column "Market value" and fill it.',
-                sheet=table.sheet.name,
-                row=row,
-                column=table.fields.get("Name", 0),
-            )
-
-
-def _report_unused(cells: dict[str, Cells], kinds: list[HoldingKind | None], faults: FaultList) -> None:
-    """Report figures that a holding of its kind does not have."""
-    for name in ("Nominal", "Coupon", "Frequency", "Maturity", "Duration"):
-        own = HoldingKind.FUND if name == "Duration" else None
-        filled = cells[name].filled
-        for entry in np.flatnonzero(filled).tolist():
-            kind = kinds[entry]
-            if kind is None or kind is own or name in _USED[kind]:
-                continue
-            if cells[name].values[entry] == 0.0 and cells[name].kinds[entry] != 0:
-                continue
-            cells[name].mild(
-                entry,
-                f"a {kind} has no {name.lower()}",
-                "an empty cell",
-                "It is kept and not used; remove it if it is not wanted.",
-            )
-
-
-def _report_twice(cells: Cells, names: list[str]) -> None:
-    seen: dict[str, int] = {}
-    for entry, name in enumerate(names):
-        if name and seen.setdefault(fold(name), entry) != entry:
-            cells.mild(
-                entry,
-                f'the holding "{name[:60]}" stands twice, also in row {cells.rows[seen[fold(name)]] + 1}',
-                "each holding under a name of its own",
-                "Both count; rename one if they are two, remove one if they are the same.",
-            )
 
 
 def read_risky_assets(table: Table, faults: FaultList) -> RiskyAssets | None:

@@ -346,22 +346,18 @@ class Cells:
         expected: str,
         *,
         required: bool | BoolArray = True,
-        among: Sequence[Choice] | None = None,
     ) -> list[Choice | None]:
-        """The cells as one of a few words, all of `choices` or those `among`; None where there is none."""
+        """The cells as one of a few words; None where there is none."""
         result: list[Choice | None] = []
-        offered = tuple(choices) if among is None else among
-        words = ", ".join(choice.value for choice in offered)
+        words = ", ".join(choice.value for choice in choices)
         for entry, text in enumerate(self.texts_of(f"{expected}: one of {words}", required=required)):
             choice = match_choice(text, choices) if text else None
-            if choice not in offered:
-                choice = None
             if text and choice is None:
                 self.fault(
                     entry,
                     f"{self.stated(entry)} is no known {expected.removeprefix('a ').removeprefix('an ')}",
                     f"one of {words}",
-                    _suggestion(text, [choice.value for choice in offered]),
+                    _suggestion(text, [choice.value for choice in choices]),
                 )
             result.append(choice)
         return result

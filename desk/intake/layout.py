@@ -66,6 +66,13 @@ class SheetLayout:
 
 
 _PAIR = ("Item", "Value")
+_HOLDING_TERMS = (
+    *("Day count", "Market value", "Units", "Duration"),
+    *("Start date", "First coupon", "Ex-dividend days", "Bought ex-dividend", "Amortisation"),
+    *("Price", "Price kind", "Discount rate", "Current rate", "Margin"),
+    *("Floating frequency", "Floating day count", "Default rate", "Recovery rate"),
+)
+"""Columns of the holdings that may be missing."""
 
 SHEETS: dict[str, SheetLayout] = {
     layout.name: layout
@@ -90,9 +97,9 @@ SHEETS: dict[str, SheetLayout] = {
             "Holdings",
             (
                 *("Name", "Kind", "Nominal", "Coupon", "Frequency", "Maturity"),
-                *("Day count", "Market value", "Units", "Duration"),
+                *_HOLDING_TERMS,
             ),
-            frozenset({"Day count", "Market value", "Units", "Duration"}),
+            frozenset(_HOLDING_TERMS),
         ),
         SheetLayout("Asset flows", ("Line", "Date", "Year", "Amount"), frozenset({"Date", "Year"})),
         SheetLayout(

@@ -13,11 +13,12 @@ import numpy as np
 from numpy.typing import NDArray
 
 from desk.book import Basis, Book, CurveKind, FlowTable, History, Holding, RatesModel, RiskyAssets, Run
-from desk.intake.assets import read_holdings, read_risky_assets
+from desk.intake.assets import read_risky_assets
 from desk.intake.checks import plain
 from desk.intake.columns import ColumnRows
 from desk.intake.faults import FaultList
 from desk.intake.flows import read_curve, read_flows, read_history
+from desk.intake.holdings import read_holdings
 from desk.intake.items import ItemSheet, read_basis_items, read_rates_model, read_run
 from desk.intake.layout import SHEETS, SourceSheet, Table, find_known, fold, lay_out
 from desk.intake.notes import read_notes

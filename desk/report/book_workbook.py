@@ -7,11 +7,25 @@ from pathlib import Path
 
 import numpy as np
 
-from desk.book import Book, FlowTable, History, Holding, HoldingKind, Notes, RatesModel, RiskyAssets, Run
-from desk.intake.assets import READ_KINDS
+from desk.book import (
+    Amortisation,
+    Book,
+    FlowTable,
+    History,
+    Holding,
+    HoldingKind,
+    Notes,
+    PriceKind,
+    RatesModel,
+    RiskyAssets,
+    Run,
+)
+from desk.book.holding import SWAP_KINDS
 from desk.intake.layout import SHEETS, find_known, fold
+from desk.rates.day_count import DayCount
 from desk.report.plain_workbook import PlainSheet, Style, Value, date_serials, write_sheets
 from desk.report.safe_cells import LONGEST_TEXT, clean_text, write_whole
+from desk.valuation.holdings import STATED_KINDS
 
 __all__ = ["write_book"]
 
@@ -19,9 +33,12 @@ _STYLES = {
     **dict.fromkeys(
         ("Rate", "Coupon", "Premium", "Volatility", "Dividend yield", "Short rate"), Style.PERCENT
     ),
+    **dict.fromkeys(
+        ("Discount rate", "Current rate", "Margin", "Default rate", "Recovery rate"), Style.PERCENT
+    ),
     **dict.fromkeys(("Amount", "Nominal", "Market value", "Value", "Units"), Style.MONEY),
     **dict.fromkeys(("Term", "Year", "Duration"), Style.YEARS),
-    **dict.fromkeys(("Date", "Maturity"), Style.DATE),
+    **dict.fromkeys(("Date", "Maturity", "Start date", "First coupon"), Style.DATE),
 }
 _ITEM_STYLES = {
     **dict.fromkeys(("Liability spread", "Market risk premium", "Volatility"), Style.PERCENT),
@@ -32,6 +49,8 @@ _WIDTHS = {"Line": 30.0, "Name": 34.0, "Item": 24.0}
 _WIDTH = 16.0
 _VALUE_WIDTH = 28.0
 _NOTE_WIDTH = 24.0
+_WITH_COUPON = (HoldingKind.BOND, *SWAP_KINDS)
+_WITH_FREQUENCY = (*_WITH_COUPON, HoldingKind.FLOATER)
 _LAST_ROW = 1_048_576
 _LARGEST_WHOLE = 2**53
 """Beyond this a cell, which holds a float, does not hold every whole number."""
@@ -100,9 +119,6 @@ def _check_names(book: Book) -> None:
                 raise ValueError(f"a workbook holds no {what} without a name")
             if clean_text(name) != name:
                 raise ValueError(f"a workbook does not hold the name of the {what} {name[:40]!r} as it is")
-    for holding in book.holdings:
-        if holding.kind not in READ_KINDS or _only_columns(holding) != holding:
-            raise ValueError(f"a workbook does not hold all there is to the holding {holding.name[:40]!r}")
     assets = () if book.risky_assets is None else book.risky_assets.names
     for name in assets:
         if find_known(name, SHEETS["Risky assets"].columns) is not None:
@@ -170,42 +186,44 @@ def _run(run: Run) -> dict[str, Value]:
     }
 
 
-def _only_columns(holding: Holding) -> Holding:
-    """A holding as its columns state it."""
-    return Holding(
-        name=holding.name,
-        kind=holding.kind,
-        nominal=holding.nominal,
-        coupon=holding.coupon,
-        frequency=holding.frequency,
-        maturity=holding.maturity,
-        day_count=holding.day_count,
-        market_value=holding.market_value,
-        units=holding.units,
-        duration=holding.duration,
-    )
-
-
 def _holding(holding: Holding) -> tuple[Value, ...]:
     """A holding's row; what a kind does not have is left empty unless it is stated."""
-    is_bond = holding.kind is HoldingKind.BOND
+    kind = holding.kind
     return (
         holding.name,
-        str(holding.kind),
-        holding.nominal if holding.kind is not HoldingKind.FUND or _differs(holding.nominal) else None,
-        holding.coupon if is_bond or _differs(holding.coupon) else None,
-        holding.frequency if is_bond or holding.frequency != 1 else None,
+        str(kind),
+        _unless_zero(holding.nominal) if kind in STATED_KINDS else holding.nominal,
+        holding.coupon if kind in _WITH_COUPON else _unless_zero(holding.coupon),
+        holding.frequency if kind in _WITH_FREQUENCY or holding.frequency != 1 else None,
         holding.maturity,
-        None if holding.day_count is None else str(holding.day_count),
+        _word(holding.day_count),
         holding.market_value,
         holding.units,
         holding.duration,
+        holding.start_date,
+        holding.first_coupon,
+        holding.ex_dividend_days or None,
+        "yes" if holding.bought_ex_dividend else None,
+        None if holding.amortisation is Amortisation.BULLET else str(holding.amortisation),
+        holding.price,
+        None if holding.price is None and holding.price_kind is PriceKind.CLEAN else str(holding.price_kind),
+        holding.discount_rate,
+        holding.current_rate,
+        _unless_zero(holding.margin),
+        holding.floating_frequency,
+        _word(holding.floating_day_count),
+        _unless_zero(holding.default_rate),
+        _unless_zero(holding.recovery_rate),
     )
 
 
-def _differs(value: float) -> bool:
-    """Whether a number is another than a plain 0, a negative zero included."""
-    return value != 0.0 or bool(np.signbit(value))
+def _word(day_count: DayCount | None) -> str | None:
+    return None if day_count is None else str(day_count)
+
+
+def _unless_zero(value: float) -> float | None:
+    """A number; None for a plain 0, which an empty cell states as well."""
+    return value if value != 0.0 or np.signbit(value) else None
 
 
 def _history(history: History) -> list[tuple[Value, ...]]:

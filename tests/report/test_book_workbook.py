@@ -2,7 +2,8 @@
 
 from __future__ import annotations
 
-from dataclasses import replace
+from calendar import monthrange
+from dataclasses import fields, replace
 from datetime import date
 from pathlib import Path
 from typing import Any
@@ -14,6 +15,7 @@ from hypothesis import strategies as st
 from openpyxl import load_workbook
 
 from desk.book import (
+    Amortisation,
     Basis,
     Book,
     FlowTable,
@@ -23,12 +25,13 @@ from desk.book import (
     Measure,
     ModelName,
     Notes,
+    PriceKind,
     RatesModel,
     RiskyAssets,
     Run,
     Severity,
 )
-from desk.intake.assets import READ_KINDS
+from desk.book.holding import SWAP_KINDS
 from desk.intake.layout import SHEETS, find_known, fold
 from desk.intake.workbook import read_workbook
 from desk.rates.compounding import Compounding
@@ -80,24 +83,82 @@ def flow_tables(draw: st.DrawFn, day_count: DayCount, *, beta: bool) -> FlowTabl
     return FlowTable.build(lines, time, [draw(amounts) for _ in lines], beta=betas, date=stated)
 
 
+QUOTED = (HoldingKind.BOND, HoldingKind.ZERO, HoldingKind.FLOATER, HoldingKind.BILL)
+WITH_COUPONS = (HoldingKind.BOND, HoldingKind.FLOATER, *SWAP_KINDS)
+STATED = (HoldingKind.FUND, HoldingKind.PROPERTY)
+
+
+def months_before(day: date, months: int) -> date:
+    """A date some months earlier, month ends clipped."""
+    year, month = divmod(day.year * 12 + day.month - 1 - months, 12)
+    return date(year, month + 1, min(day.day, monthrange(year, month + 1)[1]))
+
+
+@st.composite
+def dated_terms(draw: st.DrawFn, kind: HoldingKind, frequency: int) -> dict[str, Any]:
+    """Maturity, start, first coupon, ex-dividend days and amortisation of a kind that has a maturity."""
+    maturity = draw(dates)
+    start = draw(st.one_of(st.none(), st.dates(date(1990, 1, 1), date(2026, 9, 1))))
+    first = None
+    if kind in (HoldingKind.BOND, HoldingKind.FLOATER):
+        apart = 12 // frequency * draw(st.integers(0, 8))
+        first = draw(st.sampled_from([None, months_before(maturity, apart)]))
+        if first is not None and first <= (start or first):
+            first = None
+    days = draw(st.integers(0, 25)) if kind in WITH_COUPONS else 0
+    repaid = [Amortisation.BULLET]
+    if kind in WITH_COUPONS:
+        repaid.append(Amortisation.LEVEL)
+    if kind is HoldingKind.BOND:
+        repaid.append(Amortisation.ANNUITY)
+    return {
+        "maturity": maturity,
+        "start_date": start,
+        "first_coupon": first,
+        "ex_dividend_days": days,
+        "bought_ex_dividend": days > 0 and draw(st.booleans()),
+        "amortisation": draw(st.sampled_from(repaid)),
+    }
+
+
+def maybe(strategy: st.SearchStrategy[Any]) -> st.SearchStrategy[Any]:
+    """Nothing, or one of these."""
+    return st.one_of(st.none(), strategy)
+
+
 @st.composite
 def holdings(draw: st.DrawFn) -> Holding:
-    """A holding of any kind with what it needs."""
-    kind = draw(st.sampled_from(READ_KINDS))
-    is_bond = kind is HoldingKind.BOND
-    has_maturity = is_bond or kind is HoldingKind.ZERO
-    worth = st.floats(1e-3, 1e12)
+    """A holding of any kind with anything that it may state."""
+    kind = draw(st.sampled_from(HoldingKind))
+    worth, rate, day_count = st.floats(1e-3, 1e12), st.floats(-0.05, 0.2), st.sampled_from(DayCount)
+    frequency = draw(st.sampled_from([1, 2, 4, 12])) if kind in (*WITH_COUPONS, HoldingKind.ZERO) else 1
+    terms: dict[str, Any] = {}
+    if kind not in (HoldingKind.DEPOSIT, *STATED):
+        terms = draw(dated_terms(kind, frequency))
+    if kind in QUOTED:
+        by_rate = kind is HoldingKind.BILL and draw(st.booleans())
+        terms["discount_rate" if by_rate else "price"] = draw(maybe(st.floats(1e-3, 0.9)))
+        terms["price_kind"] = draw(st.sampled_from(PriceKind))
+    if kind in (*QUOTED, HoldingKind.TERM_DEPOSIT):
+        terms["default_rate"] = draw(st.floats(0.0, 0.99))
+        terms["recovery_rate"] = draw(st.floats(0.0, 1.0))
+    if kind in (HoldingKind.FLOATER, *SWAP_KINDS):
+        terms |= {"current_rate": draw(maybe(rate)), "margin": draw(rate)}
+    if kind in SWAP_KINDS:
+        terms["floating_frequency"] = draw(maybe(st.sampled_from([1, 2, 4, 12])))
+        terms["floating_day_count"] = draw(maybe(day_count))
+    pays_fixed = kind in (HoldingKind.BOND, *SWAP_KINDS) or terms.get("start_date") is not None
     return Holding(
         name=draw(names),
         kind=kind,
-        nominal=0.0 if kind is HoldingKind.FUND else draw(worth),
-        coupon=draw(st.floats(0.0, 0.2)) if is_bond else 0.0,
-        frequency=draw(st.sampled_from([1, 2, 4, 12])) if is_bond else 1,
-        maturity=draw(dates) if has_maturity else None,
-        day_count=draw(st.one_of(st.none(), st.sampled_from(DayCount))),
-        market_value=draw(worth if kind is HoldingKind.FUND else st.one_of(st.none(), worth)),
-        units=draw(st.one_of(st.none(), worth)),
-        duration=draw(st.one_of(st.none(), st.floats(0, 50))) if kind is HoldingKind.FUND else None,
+        nominal=0.0 if kind in STATED else draw(worth),
+        coupon=draw(st.floats(0.0, 0.2)) if pays_fixed else 0.0,
+        frequency=frequency,
+        day_count=draw(maybe(day_count)),
+        market_value=draw(worth if kind in STATED else maybe(worth)),
+        units=draw(maybe(worth)),
+        duration=draw(maybe(st.floats(0, 50))) if kind in STATED else None,
+        **terms,
     )
 
 
@@ -190,6 +251,46 @@ def test_any_book_comes_back_the_same(book: Book, tmp_path_factory: pytest.TempP
     again = _again(book, tmp_path_factory.mktemp("book"))
     assert again == book
     assert again.digest == book.digest
+
+
+@settings(max_examples=60, deadline=None, suppress_health_check=list(HealthCheck))
+@given(held=st.lists(holdings(), min_size=1, max_size=30))
+def test_any_holdings_come_back_the_same(
+    held: list[Holding], tmp_path_factory: pytest.TempPathFactory
+) -> None:
+    book = _book(holdings=tuple(held))
+    again = _again(book, tmp_path_factory.mktemp("book"))
+    assert again.holdings == book.holdings
+    assert again.digest == book.digest
+
+
+def test_every_term_of_a_holding_has_a_column(tmp_path: Path) -> None:
+    """Holdings that state each field come back; columns that none fills are not written."""
+    swap = Holding(
+        "Swap", HoldingKind.PAYER_SWAP, -5.0, 0.02, 2, date(2040, 5, 31), DayCount.THIRTY_360, -1.5, 3.0,
+        start_date=date(2027, 1, 4), current_rate=0.0, margin=-0.001, floating_frequency=4,
+        floating_day_count=DayCount.ACT_360,
+    )  # fmt: skip
+    bond = Holding(
+        "Bond", HoldingKind.BOND, 7.0, 0.0, 2, date(2040, 5, 31), start_date=date(2025, 1, 4),
+        first_coupon=date(2026, 11, 30), ex_dividend_days=7, bought_ex_dividend=True,
+        amortisation=Amortisation.ANNUITY, price=99.5, price_kind=PriceKind.DIRTY, default_rate=0.01,
+        recovery_rate=0.4,
+    )  # fmt: skip
+    bill = Holding("Bill", HoldingKind.BILL, 7.0, maturity=date(2027, 1, 31), discount_rate=0.02)
+    home = Holding("Home", HoldingKind.PROPERTY, market_value=9.0, duration=4.0)
+    plain = Holding("Plain", HoldingKind.DEPOSIT)
+    held = (swap, bond, bill, home)
+    unstated = {
+        field.name
+        for field in fields(Holding)
+        if all(getattr(each, field.name) == getattr(plain, field.name) for each in held)
+    }
+    assert not unstated
+    assert _again(_book(holdings=held), tmp_path).holdings == held
+    path = write_book(_book(holdings=(plain,)), tmp_path / "plain.xlsx")
+    headings = [cell.value for cell in load_workbook(path)["Holdings"][1]]
+    assert headings == ["Name", "Kind", "Nominal", "Coupon", "Frequency", "Maturity"]
 
 
 def test_a_second_copy_is_that_of_the_first(tmp_path: Path) -> None:
