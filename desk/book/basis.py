@@ -12,7 +12,7 @@ from desk.rates.bootstrap import bootstrap
 from desk.rates.compounding import Compounding, from_continuous, to_continuous
 from desk.rates.curve import Curve, Interpolation
 from desk.rates.curve_error import CurveError
-from desk.rates.day_count import DayCount
+from desk.rates.day_count import TIME_COUNTS, DayCount
 from desk.rates.quoted_flows import QuotedFlows
 from desk.rates.quotes import par_flows, swap_flows, zero_flows
 from desk.rates.smith_wilson import Extrapolation, smith_wilson
@@ -89,6 +89,8 @@ class Basis:
 
     def __post_init__(self) -> None:
         """Own the quotes."""
+        if self.day_count not in TIME_COUNTS:
+            raise ValueError(f"`day_count` must be one of {', '.join(TIME_COUNTS)}")
         object.__setattr__(self, "terms", owned_floats(self.terms))
         object.__setattr__(self, "rates", owned_floats(self.rates))
 

@@ -7,6 +7,7 @@ import re
 from collections.abc import Callable
 from datetime import date
 from enum import StrEnum
+from functools import partial
 from itertools import pairwise
 from typing import Any, TypeVar
 
@@ -16,13 +17,20 @@ from numpy.typing import NDArray
 from desk.book import CurveKind, Measure, ModelName, RatesModel, Run
 from desk.book.run import MOST_PATHS
 from desk.intake.cells import Cells
-from desk.intake.checks import check_correlations, check_not_negative, check_rates, check_size, some
+from desk.intake.checks import (
+    check_correlations,
+    check_not_negative,
+    check_rates,
+    check_size,
+    some,
+)
 from desk.intake.columns import Kind
 from desk.intake.faults import FaultList
 from desk.intake.layout import Table, find_known, fold
 from desk.rates.compounding import Compounding
 from desk.rates.curve import Interpolation
-from desk.rates.day_count import DayCount
+from desk.rates.day_count import TIME_COUNTS, DayCount
+from desk.rates.smith_wilson import Extrapolation
 
 __all__ = ["MODEL_ITEMS", "ItemSheet", "missing_items", "read_basis_items", "read_rates_model", "read_run"]
 
@@ -208,13 +216,6 @@ def read_basis_items(sheet: ItemSheet) -> dict[str, Any]:
             mild=True,
         )
     kind = sheet.choice("Curve kind", CurveKind, "a curve kind", required=True)
-    if kind not in (CurveKind.ZERO, None):
-        sheet.fault(
-            "Curve kind",
-            f"the curve kind is {kind}; curves are not yet built from {kind} rates",
-            "the curve kind zero",
-            "Write the zero rates of the curve and the kind zero.",
-        )
     return {
         "title": sheet.text("Title", "a title"),
         "valuation_date": sheet.date("Valuation date", "the valuation date"),
@@ -224,8 +225,68 @@ def read_basis_items(sheet: ItemSheet) -> dict[str, Any]:
         "interpolation": sheet.choice("Interpolation", Interpolation, "an interpolation", required=True),
         "liability_spread": sheet.number("Liability spread", "a rate a year", check_rates, required=True),
         "market_risk_premium": _or_zero(sheet.number("Market risk premium", "a rate a year", check_rates)),
-        "day_count": sheet.choice("Day count", DayCount, "a day count") or DayCount.ACT_365F,
+        "day_count": _time_count(sheet),
+        **_curve_items(sheet, kind),
     }
+
+
+_PAYMENTS = (1.0, 2.0, 4.0, 12.0)
+
+
+def _time_count(sheet: ItemSheet) -> DayCount:
+    """The day count of the basis, which needs the two dates only."""
+    count = sheet.choice("Day count", DayCount, "a day count") or DayCount.ACT_365F
+    if count in TIME_COUNTS:
+        return count
+    sheet.fault(
+        "Day count",
+        f"the day count {count} needs the periods of a bond",
+        f"one of {', '.join(TIME_COUNTS)}",
+        "Write one of these words.",
+    )
+    return DayCount.ACT_365F
+
+
+def _curve_items(sheet: ItemSheet, kind: CurveKind | None) -> dict[str, Any]:
+    """What is stated of how the curve is built and how it goes on, by the name of the field of `Basis`."""
+
+    def years(item: str) -> float | None:
+        value = sheet.number(item, "years above 0", partial(check_not_negative, zero_allowed=False))
+        return value if value is not None and value > 0.0 else None
+
+    payments = sheet.number("Payments a year", "1, 2, 4 or 12", _check_payments)
+    found = {
+        "payments_per_year": int(payments) if payments in _PAYMENTS else None,
+        "extrapolation": sheet.choice("Beyond the last quote", Extrapolation, "a way to go on"),
+        "ultimate_forward_rate": sheet.number("Ultimate forward rate", "a rate a year", check_rates),
+        "last_liquid_point": years("Last liquid point"),
+        "convergence_point": years("Convergence point"),
+        "convergence_tolerance": sheet.number("Convergence tolerance", "a rate a year", check_rates),
+    }
+    if kind is CurveKind.ZERO and payments is not None:
+        _tell_unused(sheet, "Payments a year", "par yields and swap rates use it")
+    if found["extrapolation"] is not Extrapolation.SMITH_WILSON:
+        for item in ("Ultimate forward rate", "Convergence point", "Convergence tolerance"):
+            if item in sheet.rows:
+                _tell_unused(sheet, item, f"a curve that goes on by {Extrapolation.SMITH_WILSON} uses it")
+    elif "Ultimate forward rate" not in sheet.rows:
+        sheet.fault(
+            "Beyond the last quote",
+            "there is no ultimate forward rate for the curve to come to",
+            'a row with the item "Ultimate forward rate" and its value',
+            "Add the row.",
+        )
+        found["extrapolation"] = None
+    return {name: value for name, value in found.items() if value is not None}
+
+
+def _tell_unused(sheet: ItemSheet, item: str, use: str) -> None:
+    sheet.fault(item, f"{item} is not used", f"nothing here: {use}", "Remove the row.", mild=True)
+
+
+def _check_payments(cells: Cells, values: NDArray[np.float64], what: str) -> None:
+    known = np.isin(values, _PAYMENTS) | np.isnan(values)
+    cells.each(~known, f"{what} are {{}}", "1, 2, 4 or 12", "Correct the figure.")
 
 
 def _or_zero(value: float | None) -> float:

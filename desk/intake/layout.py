@@ -82,7 +82,9 @@ SHEETS: dict[str, SheetLayout] = {
             _PAIR,
             items=(
                 *("Title", "Valuation date", "Currency", "Curve kind", "Compounding", "Interpolation"),
-                *("Liability spread", "Market risk premium", "Day count"),
+                *("Liability spread", "Market risk premium", "Day count", "Payments a year"),
+                *("Beyond the last quote", "Ultimate forward rate", "Last liquid point"),
+                *("Convergence point", "Convergence tolerance"),
             ),
             needed=True,
         ),

@@ -12,7 +12,7 @@ from typing import Any
 import numpy as np
 from numpy.typing import NDArray
 
-from desk.book import Basis, Book, CurveKind, FlowTable, History, Holding, RatesModel, RiskyAssets, Run
+from desk.book import Basis, Book, FlowTable, History, Holding, RatesModel, RiskyAssets, Run
 from desk.intake.assets import read_risky_assets
 from desk.intake.checks import plain
 from desk.intake.columns import ColumnRows
@@ -25,6 +25,7 @@ from desk.intake.notes import read_notes
 from desk.intake.processes import Limits
 from desk.intake.records import Reading, SheetGrid
 from desk.intake.source import open_source
+from desk.rates.curve_error import CurveError
 from desk.rates.day_count import DayCount, year_fraction
 
 __all__ = ["read_workbook"]
@@ -206,10 +207,19 @@ def _build_basis(
         # What is wrong is reported already; what follows from it is not said twice.
         return None
     basis = Basis(terms=terms, rates=rates, **items)
-    if basis.curve_kind is not CurveKind.ZERO:
-        return None
     try:
         basis.curve.discount(basis.terms)
+    except CurveError as error:
+        for row in error.rows or (-1,):
+            faults.add(
+                f"the quotes give no curve: {error.found}",
+                "quotes from which a curve can be drawn",
+                error.mend,
+                sheet=table.sheet.name,
+                row=int(table.rows[row]) if row >= 0 else -1,
+                column=table.fields["Rate"],
+            )
+        return None
     except ValueError as error:
         faults.add(
             f"the quotes give no curve: {plain(error)}",

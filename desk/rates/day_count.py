@@ -11,7 +11,7 @@ from enum import StrEnum
 import numpy as np
 from numpy.typing import NDArray
 
-__all__ = ["DateArray", "DayCount", "add_months", "coupon_fraction", "year_fraction"]
+__all__ = ["TIME_COUNTS", "DateArray", "DayCount", "add_months", "coupon_fraction", "year_fraction"]
 
 DateArray = NDArray[np.datetime64]
 
@@ -26,6 +26,16 @@ class DayCount(StrEnum):
     THIRTY_E_360 = "30E/360"
     ACT_ACT_ICMA = "Act/Act ICMA"
     THIRTY_E_360_ISDA = "30E/360 ISDA"
+
+
+TIME_COUNTS = (
+    DayCount.ACT_365F,
+    DayCount.ACT_360,
+    DayCount.ACT_ACT_ISDA,
+    DayCount.THIRTY_360,
+    DayCount.THIRTY_E_360,
+)
+"""Those that two dates alone determine: what a basis may count its years by."""
 
 
 def year_fraction(

@@ -69,7 +69,7 @@ def sample_curve(curve: Curve, *, until: float, points: int = 400) -> CurveSampl
 
 @dataclass(frozen=True, eq=False)
 class QuoteDetail:
-    """What a curve says at its terms, each array shape (q,).
+    """What a curve says at the terms of its quotes, each array shape (q,).
 
     Attributes
     ----------
@@ -90,9 +90,15 @@ class QuoteDetail:
     forward_to_next: FloatArray
 
 
-def quote_details(curve: Curve) -> QuoteDetail:
-    """What a curve says at its terms."""
-    terms = curve.terms
-    return QuoteDetail(
-        terms, curve.zero_rates, curve.discount(terms), curve.forward(terms, np.append(terms[1:], terms[-1]))
-    )
+def quote_details(curve: Curve, *, terms: FloatArray | None = None) -> QuoteDetail:
+    """What a curve says at the terms of its quotes.
+
+    Parameters
+    ----------
+    curve : Curve
+    terms : ndarray, shape (q,), optional
+        Rising [years]; those of the curve when left out. A curve that stops at a last liquid point has fewer
+        terms than there are quotes.
+    """
+    at = curve.terms if terms is None else terms
+    return QuoteDetail(at, curve.zero(at), curve.discount(at), curve.forward(at, np.append(at[1:], at[-1])))

@@ -9,6 +9,7 @@ import numpy as np
 
 from desk.book import (
     Amortisation,
+    Basis,
     Book,
     FlowTable,
     History,
@@ -158,6 +159,22 @@ def _basis(book: Book) -> dict[str, Value]:
         "Liability spread": basis.liability_spread,
         "Market risk premium": basis.market_risk_premium,
         "Day count": str(basis.day_count),
+        **_curve_items(basis),
+    }
+
+
+def _curve_items(basis: Basis) -> dict[str, Value]:
+    """How the curve is built and goes on, where that is not as for a basis that says nothing of it."""
+    beyond = basis.extrapolation
+    usual = Basis.convergence_tolerance
+    tolerance = basis.convergence_tolerance
+    return {
+        "Payments a year": basis.payments_per_year,
+        "Beyond the last quote": None if beyond is Basis.extrapolation else str(beyond),
+        "Ultimate forward rate": basis.ultimate_forward_rate,
+        "Last liquid point": basis.last_liquid_point,
+        "Convergence point": basis.convergence_point,
+        "Convergence tolerance": None if tolerance == usual else tolerance,
     }
 
 

@@ -206,9 +206,33 @@ CASES = [
     ),
     Case("interpolation unknown", item("Basis", "Interpolation", "magic"), "Basis!B7", "no known", GRAVE),
     Case("curve kind unknown", item("Basis", "Curve kind", "forward"), "Basis!B5", "no known", GRAVE),
-    Case("curve kind par", item("Basis", "Curve kind", "par"), "Basis!B5", "not yet built from par", GRAVE),
+    Case("payments a year", item("Basis", "Payments a year", 3), "Basis!B11", "payments a year are 3", GRAVE),
+    Case("payments unused", item("Basis", "Payments a year", 2), "Basis!B11", "is not used", MILD),
+    Case("way on unknown", item("Basis", "Beyond the last quote", "up"), "Basis!B11", "no known way", GRAVE),
     Case(
-        "curve kind swap", item("Basis", "Curve kind", "swap"), "Basis!B5", "not yet built from swap", GRAVE
+        "no ultimate rate",
+        item("Basis", "Beyond the last quote", "smith-wilson"),
+        "Basis!B11",
+        "no ultimate forward rate",
+        GRAVE,
+    ),
+    Case("ultimate unused", item("Basis", "Ultimate forward rate", 0.03), "Basis!B11", "is not used", MILD),
+    Case("ultimate in per cent", item("Basis", "Ultimate forward rate", 3.3), "Basis!B11", "is 3.3", GRAVE),
+    Case("liquid at once", item("Basis", "Last liquid point", 0.0), "Basis!B11", "point is 0", GRAVE),
+    Case("liquid too early", item("Basis", "Last liquid point", 0.1), "Curve", "no quote is at or", GRAVE),
+    Case(
+        "swap without a curve",
+        both(item("Basis", "Curve kind", "swap"), put("Curve", "B4", 0.99)),
+        "Curve!B4",
+        "no curve",
+        GRAVE,
+    ),
+    Case(
+        "day count of bonds",
+        item("Basis", "Day count", "Act/Act ICMA"),
+        "Basis!B10",
+        "needs the periods of a bond",
+        GRAVE,
     ),
     Case(
         "day count unknown", item("Basis", "Day count", "Act/364"), "Basis!B10", "no known day count", GRAVE

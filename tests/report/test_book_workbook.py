@@ -18,6 +18,7 @@ from desk.book import (
     Amortisation,
     Basis,
     Book,
+    CurveKind,
     FlowTable,
     History,
     Holding,
@@ -36,7 +37,8 @@ from desk.intake.layout import SHEETS, find_known, fold
 from desk.intake.workbook import read_workbook
 from desk.rates.compounding import Compounding
 from desk.rates.curve import Interpolation
-from desk.rates.day_count import DayCount, year_fraction
+from desk.rates.day_count import TIME_COUNTS, DayCount, year_fraction
+from desk.rates.smith_wilson import Extrapolation
 from desk.report.book_workbook import write_book
 from desk.report.safe_cells import clean_text
 
@@ -189,7 +191,7 @@ def risky(draw: st.DrawFn) -> RiskyAssets:
 @st.composite
 def books(draw: st.DrawFn) -> Book:
     """A book with anything a workbook can hold."""
-    day_count = draw(st.sampled_from(DayCount))
+    day_count = draw(st.sampled_from(TIME_COUNTS))
     terms = sorted(draw(st.sets(st.floats(0.05, 100.0), min_size=1, max_size=8)))
     quotes = np.array([draw(st.floats(-0.02, 0.15)) for _ in terms])
     basis = Basis(
@@ -203,6 +205,8 @@ def books(draw: st.DrawFn) -> Book:
         market_risk_premium=draw(rates),
         day_count=day_count,
         title=draw(st.one_of(st.just(""), names)),
+        payments_per_year=draw(maybe(st.sampled_from([1, 2, 4, 12]))),
+        last_liquid_point=draw(maybe(st.floats(terms[0], 100.0))),
     )
     liabilities = draw(flow_tables(day_count, beta=True))
     heading = names.map(str.strip).filter(
@@ -243,6 +247,27 @@ def books(draw: st.DrawFn) -> Book:
         else History(np.array(history_days, "M8[D]"), np.array([draw(rates) for _ in history_days])),
         notes=notes,
     )
+
+
+@pytest.mark.parametrize("kind", list(CurveKind))
+@pytest.mark.parametrize("extrapolation", list(Extrapolation))
+def test_how_the_curve_is_built_comes_back(
+    kind: CurveKind, extrapolation: Extrapolation, tmp_path: Path
+) -> None:
+    by_method = extrapolation is Extrapolation.SMITH_WILSON
+    basis = _basis(
+        curve_kind=kind,
+        payments_per_year=None if kind is CurveKind.ZERO else 2,
+        extrapolation=extrapolation,
+        last_liquid_point=20.0,
+        ultimate_forward_rate=0.0345 if by_method else None,
+        convergence_point=65.0 if by_method else None,
+        convergence_tolerance=2e-4 if by_method else 1e-4,
+    )
+    reading = read_workbook(write_book(_book(basis=basis), tmp_path / "book.xlsx"))
+    assert reading.faults == ()
+    assert reading.book is not None
+    assert reading.book.basis == basis
 
 
 @settings(max_examples=25, deadline=None, suppress_health_check=list(HealthCheck))

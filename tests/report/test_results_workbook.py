@@ -15,7 +15,8 @@ import pytest
 from openpyxl.utils import get_column_letter
 
 from desk import tasks
-from desk.book import Book, FlowTable
+from desk.book import Book, CurveKind, FlowTable
+from desk.rates.smith_wilson import Extrapolation
 from desk.report.results import flows
 from desk.report.results.workbook import write_report
 from desk.report.wording import CAUTION
@@ -281,6 +282,24 @@ def test_too_many_rows_are_summed_by_line_and_year(tmp_path: Path, monkeypatch: 
     assert "Liabilities: DV01" not in labels
     assert any("DV01" in str(label) and "90" in str(label) for label in labels)
     assert sheet.value(*MASTER) == "OK"
+
+
+@pytest.mark.parametrize("kind", list(CurveKind))
+@pytest.mark.parametrize("by_method", [False, True])
+def test_any_curve_is_recomputed(tmp_path: Path, kind: CurveKind, by_method: bool) -> None:
+    """Zero rates of quotes that are solved for together agree with their discount factors."""
+    of = replace(examples.book(), rates_model=None)
+    basis = replace(of.basis, curve_kind=kind, last_liquid_point=float(of.basis.terms[-2]))
+    if by_method:
+        basis = replace(basis, extrapolation=Extrapolation.SMITH_WILSON, ultimate_forward_rate=0.04)
+    sheet = write(replace(of, basis=basis), tmp_path / "report.xlsx")
+    values = [sheet.value(name, at) for name, at, _ in sheet.formulas()]
+    assert "CHECK" not in values
+    assert "#VALUE!" not in values
+    items = {row[0].value: row[1].value for row in sheet.book["Basis and curve"].iter_rows(max_col=2)}
+    assert items["Curve kind"] == kind
+    assert items["Last liquid point"] == basis.last_liquid_point
+    assert items.get("Ultimate forward rate") == (0.04 if by_method else None)
 
 
 @pytest.mark.parametrize("without", ["liabilities", "assets", "both"])

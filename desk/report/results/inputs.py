@@ -7,13 +7,16 @@ from typing import Any
 
 import numpy as np
 
-from desk.book import Basis, Book, Holding
+from desk.book import Basis, Book, CurveKind, Holding, HoldingKind
+from desk.book.arrays import FloatArray
 from desk.rates.compounding import to_continuous
+from desk.rates.smith_wilson import Extrapolation
 from desk.report.results.charts import Column, lines
 from desk.report.results.checks import Checks
 from desk.report.results.flows import ROW_CAP
 from desk.report.results.look import ASSETS, LIABILITIES, SURPLUS
 from desk.report.results.plan import FIRST_ROW, HEADING_ROW, Block, Formula, SheetPlan
+from desk.report.results.standing import size_of_line
 from desk.valuation.records import LineStanding
 
 __all__ = ["plan_basis", "plan_curve", "plan_holdings"]
@@ -36,7 +39,7 @@ def plan_basis(book: Book, curve_plan: SheetPlan, checks: Checks) -> SheetPlan:
     plan = SheetPlan(
         "Basis and curve",
         "Basis and curve",
-        f"Beyond the last quote, at {basis.terms[-1]:g} years, the curve goes on as its interpolation says. "
+        f"Beyond {basis.curve.terms[-1]:g} years the curve goes on {_goes_on(basis)}. "
         "Rates inside the program are continuously compounded.",
         title_rows="1:3",
     )
@@ -73,6 +76,13 @@ def plan_basis(book: Book, curve_plan: SheetPlan, checks: Checks) -> SheetPlan:
     return plan
 
 
+def _goes_on(basis: Basis) -> str:
+    """How the curve goes on beyond its last term, in words."""
+    if basis.extrapolation is Extrapolation.SMITH_WILSON:
+        return "by Smith and Wilson's method to the ultimate forward rate"
+    return "as its interpolation says"
+
+
 def _items(book: Book) -> list[tuple[str, Any, str, str]]:
     """Label, value, unit and format of each item of the basis, the model and the run."""
     basis, model, run = book.basis, book.rates_model, book.run
@@ -87,6 +97,7 @@ def _items(book: Book) -> list[tuple[str, Any, str, str]]:
         ("Day count", basis.day_count.value, "", "word"),
         ("Liability spread", basis.liability_spread, "a year, continuous", "rate"),
         ("Market risk premium", basis.market_risk_premium, "a year, per beta", "rate"),
+        *_curve_items(basis),
     ]
     if model is not None:
         items.append(("Rates model", model.name.value, "", "word"))
@@ -113,6 +124,20 @@ def _items(book: Book) -> list[tuple[str, Any, str, str]]:
     return items
 
 
+def _curve_items(basis: Basis) -> Iterator[tuple[str, Any, str, str]]:
+    """How the curve is built and goes on, where the basis says something of it."""
+    if basis.curve_kind is not CurveKind.ZERO:
+        yield "Payments a year", basis.quote_payments, "", "whole"
+    if basis.last_liquid_point is not None:
+        yield "Last liquid point", basis.last_liquid_point, "years", "years"
+    if basis.extrapolation is Extrapolation.SMITH_WILSON:
+        yield "Beyond the last quote", basis.extrapolation.value, "", "word"
+        yield "Ultimate forward rate", basis.ultimate_forward_rate, "a year", "rate"
+        if basis.convergence_point is not None:
+            yield "Convergence point", basis.convergence_point, "years", "years"
+        yield "Convergence tolerance", basis.convergence_tolerance, "a year", "rate"
+
+
 def _quotes(plan: SheetPlan, basis: Basis, periods: str, checks: Checks) -> None:
     """The quotes with their conversion to continuous rates and discount factors."""
     plan.headings(
@@ -129,11 +154,18 @@ def _quotes(plan: SheetPlan, basis: Basis, periods: str, checks: Checks) -> None
         column=5,
         left=0,
     )
-    continuous = to_continuous(basis.rates, basis.compounding)
     discount = basis.curve.discount(basis.terms)
+    # Zero rates are restated one by one; other quotes are solved for together, and the zero rate is that of
+    # the discount factor that came out.
+    is_restated = basis.curve_kind is CurveKind.ZERO and basis.curve.terms.size == basis.terms.size
+    continuous = (
+        to_continuous(basis.rates, basis.compounding) if is_restated else basis.curve.zero(basis.terms)
+    )
     for offset in range(basis.terms.size):
         row = FIRST_ROW + offset
         live = f"=IF({periods}=0,F{row},{periods}*LN(1+F{row}/MAX(1,{periods})))"
+        if not is_restated:
+            live = f"=-LN(I{row})/E{row}"
         plan.table_row(
             row,
             5,
@@ -214,7 +246,12 @@ def plan_curve(basis: Basis, *, last_time: float, checks: Checks) -> SheetPlan:
 
 
 def plan_holdings(
-    holdings: Sequence[Holding], standing_lines: Sequence[LineStanding], *, currency: str, checks: Checks
+    holdings: Sequence[Holding],
+    standing_lines: Sequence[LineStanding],
+    *,
+    line_size: FloatArray,
+    currency: str,
+    checks: Checks,
 ) -> SheetPlan:
     """What is held, with the spread and the value of each holding.
 
@@ -223,16 +260,23 @@ def plan_holdings(
     holdings : sequence of Holding
     standing_lines : sequence of LineStanding
         The lines of the assets: the holdings come first, in their order.
+    line_size : ndarray
+        Of each line, the sum of its rows' present values without their signs [currency].
     currency : str
     checks : Checks
         Gains the check of this sheet.
     """
     shown = min(len(holdings), ROW_CAP)
-    note = "The spread is the one at which the flows of a bond or zero are worth its market value."
+    note = (
+        "The spread is the one at which the payments expected of a holding are worth its market value, or what "
+        "its price comes to. Swaps are valued on the curve."
+    )
     if shown < len(holdings):
         note = f"The first {shown:,} of {len(holdings):,} holdings. {note}"
     plan = SheetPlan("Holdings", "Holdings", note)
-    plan.widths = dict(enumerate((28, 9, 12, 9, 15, 10, 11, 12, 15, 11, 11, 11, 15, 15, 11, 9, 15), start=1))
+    terms = _terms(holdings[:shown])
+    widths = (28, 13, 14, 9, 15, 10, 11, 12, 15, 11, 11, 11, 15, 15, 11, 9, 15, 11, 15)
+    plan.widths = dict(enumerate((*widths, *[12] * len(terms)), start=1))
     unit = f"[{currency}]"
     plan.headings(
         [
@@ -253,6 +297,9 @@ def plan_holdings(
             f"Difference {unit}",
             "Check",
             f"Market value less present value {unit}",
+            "Spread duration [years]",
+            f"Expected credit loss {unit}",
+            *(heading for heading, *_ in terms),
         ],
         left=3,
     )
@@ -260,7 +307,8 @@ def plan_holdings(
     def rows() -> Iterator[Sequence[Any]]:
         for number in range(shown):
             holding, line, row = holdings[number], standing_lines[number], FIRST_ROW + number
-            limit = f"check_tolerance*MAX(1,ABS(M{row}))"
+            size = size_of_line(f"M{row}", float(line_size[number]), line.measures.present_value)
+            limit = f"check_tolerance*{size}"
             yield (
                 holding.name,
                 holding.kind.value,
@@ -270,7 +318,7 @@ def plan_holdings(
                 holding.coupon,
                 holding.frequency,
                 holding.maturity,
-                holding.market_value,
+                line.market_value,
                 holding.units,
                 holding.duration,
                 line.spread,
@@ -278,17 +326,22 @@ def plan_holdings(
                 Formula(f"=SUMIFS(assets_value,assets_line,D{row})"),
                 Formula(f"=M{row}-N{row}"),
                 Formula(f'=IF(ABS(O{row})<={limit},"OK","CHECK")'),
-                None if holding.market_value is None else Formula(f"=I{row}-M{row}"),
+                None if line.market_value is None else Formula(f"=I{row}-M{row}"),
+                line.spread_duration,
+                line.expected_credit_loss,
+                *(values[number] for *_, values in terms),
             )
 
     source = ("input",)
     roles = (
         *(*source * 3, "text", *source * 7),
         *("reported", "reported", "live", "live", "check", "live"),
+        *("reported", "reported", *source * len(terms)),
     )
     forms = (
         *("text", "text", "text", "whole", "money", "rate", "whole", "date", "money2", "money", "years"),
         *("rate", "money2", "money2", "tiny", "text", "money2"),
+        *("years", "money2", *(form for _, form, _ in terms)),
     )
     plan.block = Block(FIRST_ROW, shown, roles, forms, rows)
     if shown:
@@ -300,3 +353,36 @@ def plan_holdings(
     else:
         plan.put(FIRST_ROW, 1, "The book has no holdings.", "note")
     return plan
+
+
+def _terms(holdings: Sequence[Holding]) -> list[tuple[str, str, list[Any]]]:
+    """Heading, format and values of the further terms that some holding states."""
+    usual = Holding("", HoldingKind.DEPOSIT)
+    terms = []
+    for heading, form, name in (
+        ("Price [per 100 of nominal]", "money2", "price"),
+        ("Price kind", "text", "price_kind"),
+        ("Discount rate [a year]", "rate", "discount_rate"),
+        ("Start date", "date", "start_date"),
+        ("First coupon", "date", "first_coupon"),
+        ("Ex-dividend [days]", "whole", "ex_dividend_days"),
+        ("Amortisation", "text", "amortisation"),
+        ("Current rate [a year]", "rate", "current_rate"),
+        ("Margin [a year]", "rate", "margin"),
+        ("Floating frequency [a year]", "whole", "floating_frequency"),
+        ("Floating day count", "text", "floating_day_count"),
+        ("Default rate [a year]", "rate", "default_rate"),
+        ("Recovery rate [share]", "share", "recovery_rate"),
+    ):
+        values = [getattr(holding, name) for holding in holdings]
+        if name == "price_kind":
+            stated = [holding.price is not None for holding in holdings]
+        else:
+            stated = [value != getattr(usual, name) for value in values]
+        if any(stated):
+            shown = [
+                (str(value) if form == "text" else value) if is_stated else None
+                for value, is_stated in zip(values, stated, strict=True)
+            ]
+            terms.append((heading, form, shown))
+    return terms

@@ -8,6 +8,7 @@ from desk.book import Basis
 from desk.rates.compounding import Compounding, from_continuous
 from desk.rates.curve import Curve
 from desk.rates.sampling import sample_curve
+from desk.rates.smith_wilson import Extrapolation
 from desk.window.parts import numbers
 from desk.window.parts.plots import Picture
 from desk.window.parts.theme import ThemeSwitch
@@ -65,10 +66,13 @@ class CurvePicture(Picture):
         self.add_line(_ZERO, sample.time, from_continuous(sample.zero, compounding), "rates")
         self.add_dots(_QUOTES, curve.terms, from_continuous(curve.zero_rates, compounding), "rates")
         self.shade_from(last, "beyond the last quote")
-        self.set_description(_sentence(curve, compounding))
+        ultimate = None
+        if basis.extrapolation is Extrapolation.SMITH_WILSON:
+            ultimate = basis.ultimate_forward_rate
+        self.set_description(_sentence(curve, compounding, ultimate))
 
 
-def _sentence(curve: Curve, compounding: Compounding) -> str:
+def _sentence(curve: Curve, compounding: Compounding, ultimate: float | None) -> str:
     rates = from_continuous(curve.zero_rates, compounding)
     beyond = float(from_continuous(curve.forward(curve.last_term, curve.last_term), compounding))
 
@@ -78,4 +82,7 @@ def _sentence(curve: Curve, compounding: Compounding) -> str:
         return f"{numbers.rate(float(rates[place]), 2, with_unit=True)} at {numbers.exact(term)} {unit}"
 
     known = f"Zero rates from {at(0)} to {at(-1)}" if curve.terms.size > 1 else f"One zero rate, {at(0)}"
+    if ultimate is not None:
+        goal = f"{numbers.rate(ultimate, with_unit=True)}, compounded annually"
+        return f"{known}; beyond the last quote the forward rate goes to {goal}."
     return f"{known}; beyond the last quote the forward rate stays at {numbers.rate(beyond, with_unit=True)}."

@@ -10,19 +10,29 @@ from PySide6.QtCore import Qt
 from PySide6.QtGui import QGuiApplication, QKeySequence, QShortcut
 from PySide6.QtWidgets import QHBoxLayout, QLabel, QPushButton, QVBoxLayout, QWidget
 
-from desk.book import Basis
+from desk.book import Basis, CurveKind
 from desk.book.arrays import FloatArray
 from desk.rates.compounding import Compounding
 from desk.rates.day_count import DayCount
 from desk.rates.sampling import QuoteDetail, quote_details
+from desk.rates.smith_wilson import Extrapolation
 from desk.valuation.restating import with_day_count
 from desk.window.curve.edits import merged, new_quote, quotes_fault, read_cells
 from desk.window.curve.picture import CurvePicture
-from desk.window.curve.words import COMPOUNDINGS, DAY_COUNTS, HOW_TO_EDIT, INTERPOLATIONS, QUOTE_COLUMNS
+from desk.window.curve.words import (
+    COMPOUNDINGS,
+    CURVE_KINDS,
+    DAY_COUNTS,
+    EXTRAPOLATIONS,
+    HOW_TO_EDIT,
+    INTERPOLATIONS,
+    PAYMENTS,
+    QUOTE_COLUMNS,
+)
 from desk.window.document import Document
 from desk.window.jobs import Jobs
 from desk.window.parts import numbers
-from desk.window.parts.fields import Choice, ChoiceField, NumberField
+from desk.window.parts.fields import Choice, ChoiceField, Form, NumberField
 from desk.window.parts.tables import Table, parse_grid
 from desk.window.parts.theme import GAP, WIDE, ThemeSwitch, keep_look, soft_font
 from desk.window.station import Station
@@ -121,9 +131,15 @@ class CurveStation(Station):
             )
         )
         self.shown_as.committed.connect(lambda _: self.redraw())
+        self.curve_kind = ChoiceField("Quotes are", CURVE_KINDS)
+        self.payments = ChoiceField("Payments a year", PAYMENTS)
         form.add(self.shown_as)
+        form.add(self.curve_kind)
+        form.add(self.payments)
         form.add(self.compounding)
         form.add(self.interpolation)
+        form.add_heading("Beyond the last quote")
+        self._make_beyond(form)
         form.add_heading("Added to the curve")
         self.liability_spread = NumberField(
             "Liability spread",
@@ -149,6 +165,12 @@ class CurveStation(Station):
         self.day_count = ChoiceField("Day count", DAY_COUNTS, hint="Turns dates into years.")
         form.add(self.day_count)
         for field, name, text in (
+            (self.curve_kind, "curve_kind", "kind of the quotes"),
+            (self.payments, "payments_per_year", "payments a year"),
+            (self.extrapolation, "extrapolation", "curve beyond the last quote"),
+            (self.ultimate_forward_rate, "ultimate_forward_rate", "ultimate forward rate"),
+            (self.last_liquid_point, "last_liquid_point", "last liquid point"),
+            (self.convergence_point, "convergence_point", "convergence point"),
             (self.compounding, "compounding", "compounding of the quotes"),
             (self.interpolation, "interpolation", "interpolation"),
             (self.liability_spread, "liability_spread", "liability spread"),
@@ -156,6 +178,62 @@ class CurveStation(Station):
         ):
             field.committed.connect(lambda value, name=name, text=text: self._change(name, value, text))
         self.day_count.committed.connect(self._change_day_count)
+
+    def _make_beyond(self, form: Form) -> None:
+        self.extrapolation = ChoiceField("How the curve goes on", EXTRAPOLATIONS)
+        self.last_liquid_point = NumberField(
+            "Last liquid point",
+            unit="years",
+            low=0.01,
+            high=150.0,
+            sensible=(10.0, 50.0),
+            hint="Quotes beyond it are left out; empty for the last quote.",
+            optional=True,
+        )
+        self.ultimate_forward_rate = NumberField(
+            "Ultimate forward rate",
+            unit="% a year",
+            percent=True,
+            low=-0.05,
+            high=0.2,
+            sensible=(0.02, 0.06),
+            hint="Compounded once a year; for Smith-Wilson.",
+            optional=True,
+        )
+        self.convergence_point = NumberField(
+            "Convergence point",
+            unit="years",
+            low=1.0,
+            high=300.0,
+            sensible=(40.0, 100.0),
+            hint="Where the forward rate has come to it; empty for 40 years after the last liquid point, "
+            "but no earlier than 60 years.",
+            optional=True,
+        )
+        for field in (
+            self.extrapolation,
+            self.last_liquid_point,
+            self.ultimate_forward_rate,
+            self.convergence_point,
+        ):
+            form.add(field)
+
+    def _show_form(self, basis: Basis) -> None:
+        self.curve_kind.set_value(basis.curve_kind)
+        self.payments.set_value(basis.payments_per_year)
+        self.compounding.set_value(basis.compounding)
+        self.interpolation.set_value(basis.interpolation)
+        self.extrapolation.set_value(basis.extrapolation)
+        self.last_liquid_point.set_value(basis.last_liquid_point)
+        self.ultimate_forward_rate.set_value(basis.ultimate_forward_rate)
+        self.convergence_point.set_value(basis.convergence_point)
+        self.liability_spread.set_value(basis.liability_spread)
+        self.market_risk_premium.set_value(basis.market_risk_premium)
+        self.day_count.set_value(basis.day_count)
+        by_method = basis.extrapolation is Extrapolation.SMITH_WILSON
+        self.payments.setVisible(basis.curve_kind is not CurveKind.ZERO)
+        self.interpolation.setVisible(not by_method)
+        self.convergence_point.setVisible(by_method)
 
     # Showing
 
@@ -179,13 +257,9 @@ class CurveStation(Station):
         self.date_note.setText(
             f"Valuation date {numbers.day(basis.valuation_date)}, currency {basis.currency}."
         )
-        self.compounding.set_value(basis.compounding)
-        self.interpolation.set_value(basis.interpolation)
-        self.liability_spread.set_value(basis.liability_spread)
-        self.market_risk_premium.set_value(basis.market_risk_premium)
-        self.day_count.set_value(basis.day_count)
+        self._show_form(basis)
         try:
-            detail = quote_details(basis.curve)
+            detail = quote_details(basis.curve, terms=basis.terms)
         except ValueError as error:
             # Its own edits give a curve or are refused; a book may still come from elsewhere.
             none = np.full(basis.terms.shape, np.nan)
@@ -236,6 +310,10 @@ class CurveStation(Station):
         fault = quotes_fault(basis.terms, basis.rates, basis.compounding)
         if fault:
             return f"{fault} The curve is unchanged."
+        try:
+            _ = basis.curve
+        except ValueError as error:
+            return f"{str(error).rstrip('.')}. The curve is unchanged."
         self.document.edit(text, replace(book, basis=basis))
         self.hide_stale()
         return ""
@@ -244,7 +322,7 @@ class CurveStation(Station):
         reason = self._put(f"Change of the {what}", **{name: value})
         if reason:
             self._refuse(reason)
-            self.compounding.set_value(self._basis().compounding)
+            self._show_form(self._basis())
 
     def _change_day_count(self, value: DayCount) -> None:
         book = self.document.book

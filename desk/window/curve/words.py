@@ -2,15 +2,47 @@
 
 from __future__ import annotations
 
+from desk.book import CurveKind
 from desk.rates.compounding import Compounding
 from desk.rates.curve import Interpolation
 from desk.rates.day_count import DayCount
+from desk.rates.smith_wilson import Extrapolation
 from desk.window.curve.picture import stated_as
 from desk.window.parts.columns import Column
 from desk.window.parts.fields import Choice
 
-__all__ = ["COMPOUNDINGS", "DAY_COUNTS", "HOW_TO_EDIT", "INTERPOLATIONS", "QUOTE_COLUMNS"]
+__all__ = [
+    "COMPOUNDINGS",
+    "CURVE_KINDS",
+    "DAY_COUNTS",
+    "EXTRAPOLATIONS",
+    "HOW_TO_EDIT",
+    "INTERPOLATIONS",
+    "PAYMENTS",
+    "QUOTE_COLUMNS",
+]
 
+CURVE_KINDS = (
+    Choice(CurveKind.ZERO, "Zero rates", "Each quote is the rate of a single payment at its term."),
+    Choice(CurveKind.PAR, "Par yields", "Each quote is the coupon at which a bond costs its nominal."),
+    Choice(CurveKind.SWAP, "Swap rates", "Each quote is the fixed rate of a swap that is worth nothing."),
+)
+PAYMENTS = (
+    Choice(None, "As compounded", "As often as the quotes are compounded; once a year if continuously."),
+    Choice(1, "Once a year", "Coupons or fixed payments once a year."),
+    Choice(2, "Twice a year", "Coupons or fixed payments twice a year."),
+    Choice(4, "Four times a year", "Coupons or fixed payments four times a year."),
+    Choice(12, "Twelve times a year", "Coupons or fixed payments every month."),
+)
+EXTRAPOLATIONS = (
+    Choice(Extrapolation.FLAT_FORWARD, "The last forward rate goes on", "The forward rate stays as it is."),
+    Choice(
+        Extrapolation.SMITH_WILSON,
+        "Smith-Wilson",
+        "The forward rate comes to the ultimate one at the convergence point. The same method draws the "
+        "curve between the quotes.",
+    ),
+)
 INTERPOLATIONS = (
     Choice(
         Interpolation.LOG_LINEAR,
@@ -52,7 +84,7 @@ QUOTE_COLUMNS = (
         "% a year",
         "rate",
         digits=3,
-        tooltip="The zero rate as the source states it.",
+        tooltip="The rate as the source states it.",
         editable=True,
     ),
     Column(
@@ -61,7 +93,7 @@ QUOTE_COLUMNS = (
         "% a year",
         "rate",
         digits=4,
-        tooltip="The same zero rate, compounded continuously.",
+        tooltip="The zero rate at the term, compounded continuously.",
     ),
     Column(
         "discount",

@@ -11,9 +11,11 @@ from PySide6.QtGui import QGuiApplication
 from PySide6.QtTest import QTest
 from pytestqt.qtbot import QtBot
 
+from desk.book import CurveKind
 from desk.rates.compounding import Compounding, to_continuous
 from desk.rates.curve import Interpolation
 from desk.rates.day_count import DayCount
+from desk.rates.smith_wilson import Extrapolation
 from desk.window.curve.edits import merged, new_quote, quotes_fault, read_cells
 from desk.window.curve.station import CurveStation
 from desk.window.parts.theme import ThemeSwitch
@@ -269,6 +271,37 @@ def test_compounding_says_what_the_figures_mean(station: CurveStation, bench: Be
     assert basis.rates.tolist() == a_fund().basis.rates.tolist()
     assert basis.curve.zero_rates == pytest.approx(to_continuous(basis.rates, Compounding.QUARTERLY))
     assert "compounded quarterly" in station.compounding.hint
+
+
+def test_quotes_of_another_kind_give_another_curve(station: CurveStation, bench: Bench) -> None:
+    before = bench.book.basis.curve.zero_rates
+    assert station.payments.isHidden()
+    station.curve_kind.committed.emit(CurveKind.SWAP)
+    station.payments.committed.emit(2)
+    station.refresh_now()
+    basis = bench.book.basis
+    assert (basis.curve_kind, basis.payments_per_year) == (CurveKind.SWAP, 2)
+    assert not np.allclose(basis.curve.zero_rates, before)
+    assert not station.payments.isHidden()
+    assert shown(station, 3, "zero") == f"{100 * basis.curve.zero_rates[3]:.4f}"
+
+
+def test_a_curve_goes_on_to_an_ultimate_forward_rate(station: CurveStation, bench: Bench) -> None:
+    station.extrapolation.committed.emit(Extrapolation.SMITH_WILSON)
+    assert "ultimate forward rate" in station.stale_text
+    assert bench.book.basis.extrapolation is Extrapolation.FLAT_FORWARD
+    assert station.extrapolation.value is Extrapolation.FLAT_FORWARD
+    station.ultimate_forward_rate.committed.emit(0.033)
+    station.extrapolation.committed.emit(Extrapolation.SMITH_WILSON)
+    station.last_liquid_point.committed.emit(float(bench.book.basis.terms[-2]))
+    station.refresh_now()
+    basis = bench.book.basis
+    far = float(basis.curve.forward(150.0, 151.0))
+    assert far == pytest.approx(np.log(1.033), abs=1e-4)
+    assert station.interpolation.isHidden()
+    # The quote that is left out is still in the table, with what the curve says there.
+    assert shown(station, 3, "zero") == f"{100 * float(basis.curve.zero(basis.terms[3])):.4f}"
+    assert "3.30 %" in station.picture.accessibleDescription().replace(" ", " ").replace("\u202f", " ")
 
 
 def test_the_day_count_moves_the_dates(station: CurveStation, bench: Bench) -> None:
