@@ -39,6 +39,8 @@ COLUMNS = (
     "reported",
     "difference",
 )
+PAID = "paid"
+"""A further column where what is paid is not what is discounted: floating interest."""
 _YEAR_SLACK = 1e-9  # year k ends with time k, whatever rounding left of it
 
 
@@ -57,6 +59,10 @@ class FlowSheet:
         Rows of the side before they were summed up.
     reported_value : float
         Sum of the present values of the rows as the program computed them.
+    line_size : ndarray, shape (k,)
+        Of each line, the sum of its rows' present values without their signs [currency].
+    has_paid : bool
+        Whether the column of what is paid stands there; else it is the amount.
     """
 
     plan: SheetPlan
@@ -64,6 +70,8 @@ class FlowSheet:
     is_by_row: bool
     rows_before: int
     reported_value: float
+    line_size: FloatArray
+    has_paid: bool
 
 
 def plan_flows(
@@ -96,9 +104,22 @@ def plan_flows(
     names = {
         f"{prefix}_{name}": plan.area(number, FIRST_ROW, last)
         for number, name in enumerate(COLUMNS, start=1)
-        if name not in ("line_name", "date", "zero", "spread", "discount", "reported")
+        if name not in ("line_name", "date", "zero", "spread", "reported")
     }
-    return FlowSheet(plan, names, by_row, len(flows), float(value.sum()))
+    has_paid = flows.payment is not None
+    names[f"{prefix}_{PAID}"] = (
+        plan.area(len(COLUMNS) + 1, FIRST_ROW, last) if has_paid else names[f"{prefix}_amount"]
+    )
+    size = np.bincount(flows.line, weights=np.abs(value), minlength=len(flows.line_names))
+    return FlowSheet(
+        plan,
+        names,
+        by_row,
+        len(flows),
+        float(value.sum()),
+        line_size=size.astype(np.float64),
+        has_paid=has_paid,
+    )
 
 
 def _plan(flows: PricedFlows, block: Block, *, currency: str, by_row: bool) -> SheetPlan:
@@ -114,10 +135,14 @@ def _plan(flows: PricedFlows, block: Block, *, currency: str, by_row: bool) -> S
             f"{len(flows):,} flows, more than the {ROW_CAP:,} that are shown one by one: summed by line and "
             "year. The present values of the rows are values, not formulas."
         )
+    has_paid = flows.payment is not None
+    if has_paid:
+        note += " Floating interest counts at the fixed amounts that are worth it on any curve."
     plan = SheetPlan(SHEET_NAMES[flows.side], f"{what} after the valuation date", note, block=block)
     plan.widths = dict(
         enumerate(
-            (26.0, 7.0, 12.0, 11.0, 7.0, 9.0, 17.0, 11.0, 11.0, 13.0, 17.0, 19.0, 20.0, 17.0, 13.0), start=1
+            (26.0, 7.0, 12.0, 11.0, 7.0, 9.0, 17.0, 11.0, 11.0, 13.0, 17.0, 19.0, 20.0, 17.0, 13.0, 17.0),
+            start=1,
         )
     )
     computed = "recomputed" if by_row else "summed"
@@ -138,12 +163,14 @@ def _plan(flows: PricedFlows, block: Block, *, currency: str, by_row: bool) -> S
             f"Time² × present value [{currency} × years²]",
             f"Present value, reported [{currency}]",
             f"Difference [{currency}]",
+            *([f"Paid, as projected [{currency}]"] if has_paid else []),
         ]
     )
     last = FIRST_ROW + max(block.count, 1) - 1
     plan.put(HEADING_ROW - 1, 6, "Sum", "text")
-    for number, name in enumerate(COLUMNS, start=1):
-        if name in ("amount", "value", "timed", "timed_twice", "reported", "difference"):
+    summed = ("amount", "value", "timed", "timed_twice", "reported", "difference", PAID)
+    for number, name in enumerate((*COLUMNS, *([PAID] if has_paid else [])), start=1):
+        if name in summed:
             letter = column_letter(number)
             form = "tiny" if name == "difference" else "money"
             total = Formula(f"=SUM({letter}{FIRST_ROW}:{letter}{last})")
@@ -169,6 +196,7 @@ _FORMS = (
     "money2",
     "money2",
     "tiny",
+    "money2",
 )
 
 
@@ -181,6 +209,7 @@ def _row_block(
     year: FloatArray,
 ) -> Block:
     """One row a flow, with formulas."""
+    has_paid = flows.payment is not None
 
     def rows() -> Iterator[Sequence[Any]]:
         names = flows.line_names
@@ -194,9 +223,10 @@ def _row_block(
             zero.tolist(),
             flows.spread.tolist(),
             value.tolist(),
+            flows.paid.tolist(),
         )
         for row, cells in enumerate(zip(*columns, strict=True), start=FIRST_ROW):
-            line, date, time, year_number, payment, amount, rate, spread, worth = cells
+            line, date, time, year_number, payment, amount, rate, spread, worth, paid = cells
             yield (
                 names[line - 1],
                 line,
@@ -213,14 +243,16 @@ def _row_block(
                 Formula(f"=D{row}*L{row}"),
                 worth,
                 Formula(f"=K{row}-N{row}"),
+                *([paid] if has_paid else []),
             )
 
     inputs, live = "input", "live"
     roles = (
         *("text", "text", inputs, inputs, "reported", "reported", inputs, inputs, inputs),
         *(live, live, live, live, "reported", live),
+        *(("reported",) if has_paid else ()),
     )
-    return Block(FIRST_ROW, len(flows), roles, _FORMS, rows)
+    return Block(FIRST_ROW, len(flows), roles, _FORMS[: len(roles)], rows)
 
 
 def _summed_block(flows: PricedFlows, *, value: FloatArray, year: FloatArray) -> Block:
@@ -233,7 +265,8 @@ def _summed_block(flows: PricedFlows, *, value: FloatArray, year: FloatArray) ->
     def sums(weights: FloatArray) -> FloatArray:
         return np.bincount(place, weights=weights, minlength=count).astype(np.float64)
 
-    worth, amount = sums(value), sums(flows.amount)
+    worth, amount, paid = sums(value), sums(flows.amount), sums(flows.paid)
+    has_paid = flows.payment is not None
     timed, timed_twice = sums(flows.time * value), sums(flows.time**2 * value)
     size = sums(np.abs(value))
     with np.errstate(divide="ignore", invalid="ignore"):
@@ -241,11 +274,11 @@ def _summed_block(flows: PricedFlows, *, value: FloatArray, year: FloatArray) ->
         mean_discount = worth / amount
 
     def rows() -> Iterator[Sequence[Any]]:
-        columns = (groups, mean_time, amount, mean_discount, worth, timed, timed_twice)
+        columns = (groups, mean_time, amount, mean_discount, worth, timed, timed_twice, paid)
         for row, cells in enumerate(
             zip(*(column.tolist() for column in columns), strict=True), start=FIRST_ROW
         ):
-            (line, year_number, payment), time, total, discount, present, first, second = cells
+            (line, year_number, payment), time, total, discount, present, first, second, projected = cells
             yield (
                 flows.line_names[int(line)],
                 line + 1,
@@ -262,7 +295,8 @@ def _summed_block(flows: PricedFlows, *, value: FloatArray, year: FloatArray) ->
                 second,
                 present,
                 Formula(f"=K{row}-N{row}"),
+                *([projected] if has_paid else []),
             )
 
-    roles = ("text", *("text",) * 5, *("reported",) * 8, "live")
-    return Block(FIRST_ROW, count, roles, _FORMS, rows)
+    roles = ("text", *("text",) * 5, *("reported",) * 8, "live", *(("reported",) if has_paid else ()))
+    return Block(FIRST_ROW, count, roles, _FORMS[: len(roles)], rows)

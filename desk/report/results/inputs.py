@@ -268,8 +268,8 @@ def plan_holdings(
     """
     shown = min(len(holdings), ROW_CAP)
     note = (
-        "The spread is the one at which the payments expected of a holding are worth its market value, or what "
-        "its price comes to. Swaps are valued on the curve."
+        "The spread is the one at which the payments expected of a holding are worth its market value, or "
+        "what its price comes to. Swaps are valued on the curve."
     )
     if shown < len(holdings):
         note = f"The first {shown:,} of {len(holdings):,} holdings. {note}"

@@ -126,10 +126,10 @@ def _recompute_key(
     ]
     cells.append((Formula("=" + ("+".join(away) or "0")), "live", "tiny"))
     cells.append((Formula(f"=ABS(D{row}-I{row})+ABS(E{row}-J{row})"), "live", "tiny"))
-    limit = f"check_tolerance*MAX(1,ABS(D{row})+ABS(E{row}))"
-    cells.append(
-        (Formula(f'=IF(AND(K{row}<=check_tolerance,L{row}<={limit}),"OK","CHECK")'), "check", "text")
-    )
+    size = "+".join(f"ABS({letter}{row})" for formula, letter in durations if formula is not None) or "0"
+    durations_agree = f"K{row}<=check_tolerance*MAX(1,{size})"
+    dv01s_agree = f"L{row}<=check_tolerance*MAX(1,ABS(D{row})+ABS(E{row}))"
+    cells.append((Formula(f'=IF(AND({durations_agree},{dv01s_agree}),"OK","CHECK")'), "check", "text"))
     plan.table_row(row, 7, cells)
 
 

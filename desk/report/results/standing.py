@@ -9,6 +9,7 @@ from typing import Any
 import numpy as np
 
 from desk.book import Side
+from desk.book.arrays import FloatArray
 from desk.report.results.charts import Column, bars_with_line, money_axis
 from desk.report.results.checks import Checks
 from desk.report.results.flows import ROW_CAP, FlowSheet
@@ -23,8 +24,10 @@ __all__ = [
     "flow_chart",
     "plan_lines",
     "plan_periods",
+    "size_of_line",
 ]
 
+_THIN = 100.0
 LIVE_WORK = 50_000_000
 """Comparisons that the formulas by line may cost a spreadsheet; above it they are left out."""
 
@@ -116,6 +119,16 @@ def _check_side(
         formula=f"=SUMPRODUCT(ABS({prefix}_difference))",
         scale=worth,
     )
+    if sheet.has_paid and sheet.is_by_row:
+        checks.add(
+            f"{name}: present value of what is paid, as projected",
+            sheet=place,
+            unit=currency,
+            form="money2",
+            reported=measures.present_value,
+            formula=f"=SUMPRODUCT({prefix}_paid,{prefix}_discount)",
+            scale=f"SUMPRODUCT(ABS({prefix}_value))",
+        )
     if math.isfinite(measures.effective_duration):
         add("effective_duration", "effective duration", "years", "years", f"=SUM({prefix}_timed)/{worth}")
         add("convexity", "convexity", "years²", "years2", f"=SUM({prefix}_timed_twice)/{worth}")
@@ -162,6 +175,7 @@ def plan_lines(standing: Standing, sheets: dict[Side, FlowSheet], checks: Checks
         note = f"The first {len(lines):,} of {len(standing.lines):,} lines. {note}"
     if not is_live:
         note = f"{len(standing.lines):,} lines, too many to recompute one by one here."
+    sizes = {side: sheet.line_size for side, sheet in sheets.items()}
     unit = f"[{standing.currency}]"
     plan = SheetPlan("Standing", "Standing: the lines of both sides", note)
     plan.widths = dict(
@@ -200,14 +214,43 @@ def plan_lines(standing: Standing, sheets: dict[Side, FlowSheet], checks: Checks
         *("text", "text", "text", "whole", "whole", "money2", "rate", "money2", "money2", "tiny"),
         *("years", "years", "tiny", "text", "rate", "years", "years", "years2", "years2", "money2"),
     )
-    plan.block = Block(FIRST_ROW, len(lines), roles, forms, lambda: _line_rows(lines, is_live=is_live))
+    plan.block = Block(FIRST_ROW, len(lines), roles, forms, lambda: _line_rows(lines, sizes, is_live=is_live))
     if lines and is_live:
         last = FIRST_ROW + len(lines) - 1
         checks.add_column("Lines that differ", plan, plan.mark_checks(14, FIRST_ROW, last))
     return plan
 
 
-def _line_rows(lines: Sequence[LineStanding], *, is_live: bool) -> Iterator[Sequence[Any]]:
+def size_of_line(address: str, size: float, present_value: float) -> str:
+    """Expression of the size that the tolerance of a line's present value is a part of.
+
+    Parameters
+    ----------
+    address : str
+        Of the present value.
+    size : float
+        Sum of the rows' present values without their signs [currency].
+    present_value : float
+        [currency]
+
+    Returns
+    -------
+    str
+        The size stands in it where little is left of the rows, as of the two legs of a swap: no sum is more
+        exact than its parts.
+    """
+    further = f",{size:.0f}" if _is_thin(size, present_value) else ""
+    return f"MAX(1,ABS({address}){further})"
+
+
+def _is_thin(size: float, present_value: float) -> bool:
+    """Whether a line's rows all but cancel."""
+    return math.isfinite(size) and size > _THIN * abs(present_value)
+
+
+def _line_rows(
+    lines: Sequence[LineStanding], sizes: dict[Side, FloatArray], *, is_live: bool
+) -> Iterator[Sequence[Any]]:
     """One row a line."""
     numbers = dict.fromkeys(Side, 0)
     for row, line in enumerate(lines, start=FIRST_ROW):
@@ -215,7 +258,8 @@ def _line_rows(lines: Sequence[LineStanding], *, is_live: bool) -> Iterator[Sequ
         side, measures = line.side.value, line.measures
         live: list[Any] = [None] * 6
         if is_live:
-            limit = f"check_tolerance*MAX(1,ABS(H{row}))"
+            size, worth = float(sizes[line.side][numbers[line.side] - 1]), measures.present_value
+            limit = f"check_tolerance*{size_of_line(f'H{row}', size, worth)}"
             live = [
                 Formula(f"=SUMIFS({side}_value,{side}_line,D{row})"),
                 Formula(f"=H{row}-I{row}"),
@@ -227,7 +271,8 @@ def _line_rows(lines: Sequence[LineStanding], *, is_live: bool) -> Iterator[Sequ
             if math.isfinite(measures.effective_duration):
                 live[3] = Formula(f"=SUMIFS({side}_timed,{side}_line,D{row})/I{row}")
                 live[4] = Formula(f"=K{row}-L{row}")
-                both = f"AND(ABS(J{row})<={limit},ABS(M{row})<=check_tolerance*MAX(1,K{row}))"
+                times = f"*{size / abs(worth):.0f}" if worth and _is_thin(size, worth) else ""
+                both = f"AND(ABS(J{row})<={limit},ABS(M{row})<=check_tolerance*MAX(1,ABS(K{row})){times})"
                 live[5] = Formula(f'=IF({both},"OK","CHECK")')
         live[2] = measures.effective_duration
         yield (
@@ -291,9 +336,9 @@ def plan_periods(standing: Standing, checks: Checks) -> SheetPlan:
                 (float(periods.liabilities[offset]), "reported", "money"),
                 (float(periods.net[offset]), "reported", "money"),
                 (float(periods.cumulative[offset]), "reported", "money"),
-                (Formula(f"=SUMIFS(assets_amount,assets_year,A{row},assets_payment,1)"), "live", "money"),
+                (Formula(f"=SUMIFS(assets_paid,assets_year,A{row},assets_payment,1)"), "live", "money"),
                 (
-                    Formula(f"=SUMIFS(liabilities_amount,liabilities_year,A{row},liabilities_payment,1)"),
+                    Formula(f"=SUMIFS(liabilities_paid,liabilities_year,A{row},liabilities_payment,1)"),
                     "live",
                     "money",
                 ),

@@ -96,7 +96,13 @@ def plan_sheets(
     recomputed = check_measures(standing, sheets, checks)
     curve = plan_curve(book.basis, last_time=last_time, checks=checks)
     basis = plan_basis(book, curve, checks)
-    holdings = plan_holdings(book.holdings, standing.lines, currency=standing.currency, checks=checks)
+    holdings = plan_holdings(
+        book.holdings,
+        standing.lines,
+        line_size=sheets[Side.ASSETS].line_size,
+        currency=standing.currency,
+        checks=checks,
+    )
     lines = plan_lines(standing, sheets, checks)
     key_rates = plan_key_rates(standing, sheets, recomputed, checks)
     periods = plan_periods(standing, checks)
