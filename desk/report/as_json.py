@@ -194,6 +194,8 @@ def _line(line: LineStanding) -> dict[str, Any]:
         "present_value": _number(line.measures.present_value),
         "effective_duration": _number(line.measures.effective_duration),
         "spread": _number(line.spread),
+        "spread_duration": _number(line.spread_duration),
+        "expected_credit_loss": _number(line.expected_credit_loss),
     }
 
 

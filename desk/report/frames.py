@@ -37,13 +37,16 @@ def line_frame(standing: Standing) -> pd.DataFrame:
             "flow_count": line.flow_count,
             "market_value": line.market_value,
             "spread": line.spread,
+            "spread_duration": line.spread_duration,
+            "expected_credit_loss": line.expected_credit_loss,
             **asdict(line.measures),
         }
         for line in standing.lines
     ]
-    columns = ["side", "line", "kind", "flow_count", "market_value", "spread", *asdict(standing.assets)]
+    may_miss = ["market_value", "spread", "spread_duration", "expected_credit_loss"]
+    columns = ["side", "line", "kind", "flow_count", *may_miss, *asdict(standing.assets)]
     frame = pd.DataFrame(rows, columns=columns)
-    return frame.astype({"market_value": float, "spread": float}).set_index(["side", "line"])
+    return frame.astype(dict.fromkeys(may_miss, float)).set_index(["side", "line"])
 
 
 def key_rate_frame(standing: Standing) -> pd.DataFrame:

@@ -9,6 +9,7 @@ from typing import Any
 import numpy as np
 import pytest
 
+from desk import tasks
 from desk.report import as_json
 from tests.report import examples
 
@@ -35,7 +36,10 @@ def test_standing_has_the_keys_of_the_contract() -> None:
     keys = {"term", "assets", "liabilities", "dv01_assets", "dv01_liabilities"}
     assert all(set(row) == keys for row in found["key_rates"])
     assert len(found["key_rates"]) == 14
-    line_keys = {"side", "line", "present_value", "effective_duration", "spread"}
+    line_keys = {
+        "side", "line", "present_value", "effective_duration", "spread", "spread_duration",
+        "expected_credit_loss",
+    }  # fmt: skip
     assert all(set(row) == line_keys for row in found["lines"])
     assert [row["side"] for row in found["lines"]] == ["assets"] * 6 + ["liabilities"] * 4
     period_keys = {"year", "assets", "liabilities", "net", "cumulative"}
@@ -62,6 +66,19 @@ def test_a_spread_that_differs_within_a_line_is_null() -> None:
     lines = {row["line"]: row for row in as_json.standing_object(examples.standing())["lines"]}
     assert lines["Pensions"]["spread"] is None
     assert lines["Bond"]["spread"] == pytest.approx(0.008, abs=0.01)
+
+
+def test_spread_durations_and_credit_losses() -> None:
+    """Null where none is: a fund has no spread, and a holding that cannot default loses nothing."""
+    first, *others = examples.book().holdings
+    book = replace(examples.book(), holdings=(replace(first, default_rate=0.01), *others))
+    standing = tasks.value(book)
+    lines = {row["line"]: row for row in as_json.standing_object(standing)["lines"]}
+    assert lines["Bond"]["spread_duration"] == standing.lines[0].spread_duration
+    assert lines["Bond"]["expected_credit_loss"] == standing.lines[0].expected_credit_loss
+    assert lines["Bond"]["expected_credit_loss"] > 0.0
+    assert lines["@Zero"]["expected_credit_loss"] is None
+    assert lines["Fund"]["spread_duration"] is None
 
 
 def test_what_is_not_finite_is_null() -> None:

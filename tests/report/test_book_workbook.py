@@ -33,6 +33,7 @@ from desk.book import (
     Severity,
 )
 from desk.book.holding import SWAP_KINDS
+from desk.book.run import MOST_PATHS
 from desk.intake.layout import SHEETS, find_known, fold
 from desk.intake.workbook import read_workbook
 from desk.rates.compounding import Compounding
@@ -235,7 +236,7 @@ def books(draw: st.DrawFn) -> Book:
         rates_model=draw(st.one_of(st.none(), model)),
         risky_assets=draw(st.one_of(st.none(), risky())),
         run=Run(
-            paths=draw(st.integers(1, 10**8)),
+            paths=draw(st.integers(1, MOST_PATHS)),
             horizon_years=draw(st.integers(1, 200)),
             steps_per_year=draw(st.integers(1, 366)),
             seed=draw(st.integers(0, 2**53)),

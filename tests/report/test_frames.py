@@ -19,6 +19,10 @@ def test_lines_are_indexed_by_side_and_line() -> None:
     assert total == pytest.approx(standing.liabilities.present_value, rel=1e-12)
     assert frame["dv01"].dtype == np.float64
     assert frame["spread"].isna().any()
+    assert frame["expected_credit_loss"].isna().all()
+    bond, fund = frame["spread_duration"].xs("assets", level="side").loc[["Bond", "Fund"]]
+    assert bond == standing.lines[0].measures.effective_duration
+    assert np.isnan(fund)
 
 
 def test_key_rates_and_periods() -> None:

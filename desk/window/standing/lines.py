@@ -72,7 +72,27 @@ def _columns(currency: str) -> tuple[Column, ...]:
             "rate",
             tooltip="The single annual effective rate with the same present value.",
         ),
-        Column("market_value", "Market value", currency, "money", tooltip="As the source states it."),
+        Column(
+            "spread_duration",
+            "Spread dur.",
+            "years",
+            "years",
+            tooltip="Spread duration: for a move of the spread alone; none where no spread plays a part.",
+        ),
+        Column(
+            "market_value",
+            "Market value",
+            currency,
+            "money",
+            tooltip="As the source states it, or what its price comes to.",
+        ),
+        Column(
+            "expected_credit_loss",
+            "Credit loss",
+            currency,
+            "money",
+            tooltip="Expected credit loss: what expected default takes off the present value.",
+        ),
         Column("macaulay_duration", "Macaulay dur.", "years", "years", tooltip="At the equivalent rate."),
         Column("modified_duration", "Modified dur.", "years", "years", tooltip="At the equivalent rate."),
         Column("convexity", "Convexity", "years²", "number", digits=1),
@@ -92,7 +112,14 @@ def _flow_columns(currency: str) -> tuple[Column, ...]:
     return (
         Column("date", "Date", "", "date"),
         Column("time", "Time", "years", "years", digits=4),
-        Column("amount", "Amount", currency, "money", digits=2),
+        Column(
+            "amount",
+            "Amount",
+            currency,
+            "money",
+            digits=2,
+            tooltip="What is paid: floating interest as projected on today's curve, default as expected.",
+        ),
         Column("discount_factor", "Discount factor", "", "number", digits=6, tooltip="With the spread."),
         Column("present_value", "Present value", currency, "money", digits=2),
     )
@@ -100,6 +127,12 @@ def _flow_columns(currency: str) -> tuple[Column, ...]:
 
 def _measures_of(rows: Sequence[Measures]) -> dict[str, Any]:
     return {name: np.array([getattr(row, name) for row in rows]) for name in _MEASURES}
+
+
+def _total(figures: Sequence[float | None]) -> float | None:
+    """The sum of what there is; None where there is nothing."""
+    stated = [figure for figure in figures if figure is not None]
+    return sum(stated) if stated else None
 
 
 class LinesPage(QWidget):
@@ -237,11 +270,14 @@ class LinesPage(QWidget):
                 "line": [line.line for line in lines],
                 "kind": [line.kind for line in lines],
                 "spread": [line.spread for line in lines],
+                "spread_duration": [line.spread_duration for line in lines],
                 "market_value": [line.market_value for line in lines],
+                "expected_credit_loss": [line.expected_credit_loss for line in lines],
                 "flow_count": [line.flow_count for line in lines],
                 **_measures_of([line.measures for line in lines]),
             }
         )
+        losses = [_total([line.expected_credit_loss for line in lines if line.side is side]) for side in Side]
         counts = [sum(line.flow_count for line in lines if line.side is side) for side in Side]
         self.totals.set_rows(
             {
@@ -249,7 +285,9 @@ class LinesPage(QWidget):
                 "line": ["All lines"] * 2,
                 "kind": [""] * 2,
                 "spread": [None] * 2,
+                "spread_duration": [None] * 2,
                 "market_value": [None] * 2,
+                "expected_credit_loss": losses,
                 "flow_count": counts,
                 **_measures_of([standing.assets, standing.liabilities]),
             },
