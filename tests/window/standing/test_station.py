@@ -4,6 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Iterator
 from dataclasses import replace
+from datetime import date
 
 import numpy as np
 import pytest
@@ -12,7 +13,7 @@ from PySide6.QtGui import QGuiApplication
 from PySide6.QtTest import QTest
 from pytestqt.qtbot import QtBot
 
-from desk.book import Book, FlowTable, Side
+from desk.book import Book, FlowTable, Holding, HoldingKind, Side
 from desk.valuation.records import FlowDetail, Standing
 from desk.valuation.standing import stand
 from desk.window.parts.tables import Table
@@ -91,8 +92,36 @@ def test_totals_stay_in_view_and_are_the_sides(station: StandingStation, bench: 
     ]
     assert totals.column_values("flow_count").tolist() == [14.0, 20.0]
     assert not station.lines.totals.isHidden()
-    widths = [station.lines.table.columnWidth(place) for place in range(14)]
-    assert widths == [station.lines.totals.columnWidth(place) for place in range(14)]
+    places = range(len(totals.columns))
+    widths = [station.lines.table.columnWidth(place) for place in places]
+    assert widths == [station.lines.totals.columnWidth(place) for place in places]
+
+
+def test_spread_durations_credit_losses_and_what_a_floater_pays(
+    station: StandingStation, bench: Bench, qtbot: QtBot
+) -> None:
+    end = date(2041, 3, 31)
+    floater = Holding("floater", HoldingKind.FLOATER, 1e6, frequency=1, maturity=end, current_rate=0.03)
+    risky = Holding("risky", HoldingKind.ZERO, 1e6, maturity=end, default_rate=0.02, recovery_rate=0.4)
+    fund = Holding("fund", HoldingKind.FUND, market_value=5e5, duration=4.0)
+    book = replace(a_fund(), holdings=(floater, risky, fund))
+    bench.open(book)
+    standing = wait_for_standing(bench, qtbot)
+    station.refresh_now()
+    durations = column(station.lines.table, "spread_duration")
+    assert durations[1:3] == ["10.01", "–"]
+    assert 8.0 < float(durations[0]) < 9.5
+    loss = standing.lines[1].expected_credit_loss
+    assert loss is not None
+    losses = station.lines.table.table_model.column_values("expected_credit_loss")
+    assert losses[1] == loss
+    assert column(station.lines.table, "expected_credit_loss")[::2] == ["–"] * 3
+    assert station.lines.totals.table_model.column_values("expected_credit_loss")[0] == loss
+    station.lines.open_row(0)
+    paid = station.lines.flows.table_model.column_values("amount")
+    assert paid.size == 10
+    assert paid[0] == pytest.approx(3e4)
+    assert paid[-1] > 1e6
 
 
 def test_the_flows_are_mirrored_and_both_zeros_stand_on_one_line(
