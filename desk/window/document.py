@@ -11,8 +11,9 @@ from typing import Any
 from PySide6.QtCore import QObject, Signal
 
 from desk import tasks
-from desk.book import Book
+from desk.book import Book, Fault
 from desk.intake.records import Reading
+from desk.report.said_once import further_faults
 from desk.scenarios.records import Simulation
 from desk.valuation.records import Standing
 from desk.window.jobs import Job, Jobs
@@ -60,6 +61,8 @@ class Document(QObject):
     book : Book or None
     standing : Standing or None
         Of the book, or of a former version of it while `standing_is_stale`.
+    standing_faults : tuple of Fault
+        What the valuation could not do as asked, beside what the reading says.
     standing_failure : str
         Why the book as it stands could not be valued; empty where it could, or while it is being valued.
     simulation : Simulation or None
@@ -101,6 +104,8 @@ class Document(QObject):
         self.source: Reading | None = None
         self.path: Path | None = None
         self.standing: Standing | None = None
+        self.standing_faults: tuple[Fault, ...] = ()
+        self._simulation_faults: tuple[Fault, ...] = ()
         self.standing_failure = ""
         self.simulation: Simulation | None = None
         self._history: list[_Version] = []
@@ -129,6 +134,16 @@ class Document(QObject):
             return None
         return replace(self.source, book=self.book)
 
+    @property
+    def faults(self) -> tuple[Fault, ...]:
+        """Those of what was read last; for the open book also what its standing and its run add to them."""
+        if self.reading is None:
+            return ()
+        if self.reading is not self.source:
+            return self.reading.faults
+        of_run = tuple(fault for fault in self._simulation_faults if fault not in self.standing_faults)
+        return (*self.reading.faults, *self.standing_faults, *of_run)
+
     def open_reading(self, reading: Reading) -> None:
         """Open what was read.
 
@@ -147,6 +162,7 @@ class Document(QObject):
         self.standing = self._standing_book = None
         self.standing_failure = ""
         self.simulation = self._simulation_book = None
+        self.standing_faults = self._simulation_faults = ()
         self._standing_stale = self._simulation_stale = False
         self._request_standing()
         self.reading_changed.emit()
@@ -327,17 +343,20 @@ class Document(QObject):
         # The former job, if one runs, is cancelled by the key; its callbacks no longer know this book.
         self._valuing = self._jobs.start(
             "Valuing the book",
-            partial(self._value, book),
+            partial(_with_faults, self._value, book, self._told()),
             on_done=partial(self._standing_done, book),
             on_failed=partial(self._standing_failed, book),
             exclusive_key=f"standing of {id(self)}",
         )
 
-    def _standing_done(self, book: Book, standing: Standing) -> None:
+    def _told(self) -> tuple[Fault, ...]:
+        return () if self.source is None else self.source.faults
+
+    def _standing_done(self, book: Book, result: tuple[Standing, tuple[Fault, ...]]) -> None:
         if book is not self._valuing_book:
             return
         self._valuing = self._valuing_book = None
-        self.standing, self._standing_book = standing, book
+        (self.standing, self.standing_faults), self._standing_book = result, book
         self._standing_stale = self._is_outdated(book, self._open_book(), STANDING_FIELDS)
         self.standing_changed.emit()
 
@@ -369,8 +388,8 @@ class Document(QObject):
                 act(value)
                 self.simulation_changed.emit()
 
-        def done(simulation: Simulation) -> None:
-            self.simulation, self._simulation_book = simulation, book
+        def done(result: tuple[Simulation, tuple[Fault, ...]]) -> None:
+            (self.simulation, self._simulation_faults), self._simulation_book = result, book
             self._simulation_stale = self._is_outdated(book, self._open_book(), SIMULATION_FIELDS)
 
         def failed(error: BaseException) -> None:
@@ -378,7 +397,7 @@ class Document(QObject):
 
         job = self._jobs.start(
             "Simulating",
-            partial(self._simulate, book),
+            partial(_with_faults, self._simulate, book, self._told()),
             on_done=partial(ended, done),
             on_failed=partial(ended, failed),
             on_cancelled=partial(ended, lambda _: None),
@@ -392,6 +411,14 @@ class Document(QObject):
         """Stop the run under way; the former result stays."""
         if self._simulating is not None:
             self._jobs.cancel(self._simulating)
+
+
+def _with_faults(
+    task: Callable[..., Any], book: Book, told: tuple[Fault, ...], **tools: Any
+) -> tuple[Any, tuple[Fault, ...]]:
+    """Run a task; its result, and what it could not do as asked that `told` does not say already."""
+    result = task(book, **tools)
+    return result, further_faults(told, result.faults) if result.faults else ()
 
 
 def _reason(error: BaseException) -> str:

@@ -300,7 +300,7 @@ class MainWindow(QMainWindow):
         notes: dict[str, tuple[str, str]] = {}
         if document.reading is not None:
             grave = len(document.reading.grave)
-            mild = len(document.reading.faults) - grave
+            mild = len(document.faults) - grave
             if grave:
                 notes["intake"] = (_counted(grave, "grave fault"), "grave")
             elif mild:

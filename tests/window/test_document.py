@@ -34,6 +34,12 @@ def a_reading(book: Book | None, name: str = "fund.xlsx") -> Reading:
     return Reading(path=Path(name), sha256="", book=book, faults=faults, sheets=())
 
 
+class Answer(tuple[str, float]):
+    """What a worker answers; as a result of a task it has faults."""
+
+    faults: tuple[Fault, ...] = ()
+
+
 class Worker:
     """Stands in for a task: held until let go, answers with the spread of the book it was given."""
 
@@ -50,7 +56,7 @@ class Worker:
                 raise Cancelled
         if self.error is not None:
             raise self.error
-        return ("of", book.basis.liability_spread)
+        return Answer(("of", book.basis.liability_spread))
 
 
 class Bench:

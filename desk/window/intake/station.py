@@ -84,6 +84,7 @@ class IntakeStation(Station):
     ) -> None:
         super().__init__(document, jobs, theme_switch, parent)
         self._reading: Reading | None = None
+        self._told: tuple[Fault, ...] = ()
         self._has_faults: bool | None = None
         self._by_sheet: dict[str, dict[tuple[int, int], Mark]] = {}
         self.tabs = QTabBar()
@@ -169,7 +170,9 @@ class IntakeStation(Station):
             )
             return
         self.show_content()
-        if reading is not self._reading:
+        faults = self.document.faults
+        if reading is not self._reading or faults != self._told:
+            self._told = faults
             self._show_reading(reading)
         self._show_book()
         self._show_state(reading)
@@ -177,13 +180,13 @@ class IntakeStation(Station):
     def _show_reading(self, reading: Reading) -> None:
         former = self.tabs.tabText(self.tabs.currentIndex()).split("  ")[0] if self.tabs.count() else ""
         self._reading = reading
-        self._by_sheet = {grid.name: marks_of(reading.faults, grid.name) for grid in reading.sheets}
+        self._by_sheet = {grid.name: marks_of(self._told, grid.name) for grid in reading.sheets}
         self.tabs.blockSignals(True)
         while self.tabs.count():
             self.tabs.removeTab(0)
         current = 0
         for place, grid in enumerate(reading.sheets):
-            of_sheet = [fault for fault in reading.faults if fault.sheet == grid.name]
+            of_sheet = [fault for fault in self._told if fault.sheet == grid.name]
             count = f"  ({numbers.integer(len(of_sheet))})" if of_sheet else ""
             hidden = ", hidden" if grid.hidden else ""
             shown = grid.name.replace("&", "&&")
@@ -196,7 +199,7 @@ class IntakeStation(Station):
         if reading.sheets:
             self.tabs.setCurrentIndex(current)
         self._on_tab(current if reading.sheets else -1)
-        self._show_faults(reading.faults)
+        self._show_faults(self._told)
         self._source.set_rows(
             [
                 ("File", reading.path.name),
@@ -204,7 +207,7 @@ class IntakeStation(Station):
                 ("SHA-256", reading.sha256[:16] if reading.sha256 else "could not be read"),
                 ("Sheets", numbers.integer(len(reading.sheets))),
                 ("Grave faults", numbers.integer(len(reading.grave))),
-                ("Mild faults", numbers.integer(len(reading.faults) - len(reading.grave))),
+                ("Mild faults", numbers.integer(len(self._told) - len(reading.grave))),
             ]
         )
 
@@ -283,9 +286,9 @@ class IntakeStation(Station):
     def go_to_fault(self, place: int) -> None:
         """Show the cell of a fault, counted in the order of the reading."""
         reading = self._reading
-        if reading is None or not 0 <= place < len(reading.faults):
+        if reading is None or not 0 <= place < len(self._told):
             return
-        fault = reading.faults[place]
+        fault = self._told[place]
         names = [grid.name for grid in reading.sheets]
         if fault.sheet not in names:
             about = f"a sheet named {fault.sheet}" if fault.sheet else "the workbook as a whole"
@@ -300,7 +303,7 @@ class IntakeStation(Station):
 
     def _tell_fault(self, place: int) -> None:
         """Write out the fault that has the keyboard: its cells may be too narrow for it."""
-        faults = self._reading.faults if self._reading is not None else ()
+        faults = self._told
         fault = faults[place] if 0 <= place < len(faults) else None
         self.whole_fault.setText(str(fault) if fault is not None else "")
         self.whole_fault.setVisible(fault is not None)

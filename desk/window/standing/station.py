@@ -169,6 +169,10 @@ class StandingStation(Station):
             self.show_stale("Value again", document.revalue)
         elif document.standing_is_stale:
             self.show_stale()
+        elif document.standing_faults:
+            first, *others = document.standing_faults
+            more = f" ({len(others)} more)" if others else ""
+            self.show_stale("See the faults", lambda: self.step_wanted.emit("intake"), text=f"{first}{more}")
         else:
             self.hide_stale()
 
