@@ -350,8 +350,11 @@ class Cells:
         """The cells as one of a few words; None where there is none."""
         result: list[Choice | None] = []
         words = ", ".join(choice.value for choice in choices)
+        known: dict[str, Choice | None] = {"": None}
         for entry, text in enumerate(self.texts_of(f"{expected}: one of {words}", required=required)):
-            choice = match_choice(text, choices) if text else None
+            if text not in known:
+                known[text] = match_choice(text, choices)
+            choice = known[text]
             if text and choice is None:
                 self.fault(
                     entry,
