@@ -116,6 +116,9 @@ def run(path: Path | None) -> int:
     finally:
         keeper.uninstall()
         jobs.shutdown()
+        from desk.window.parts.plot_parts import clear_store
+
+        clear_store()
 
 
 def _application() -> QApplication:

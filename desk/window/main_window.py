@@ -37,6 +37,9 @@ __all__ = ["MainWindow", "RemembersSettings"]
 _SIZE = QSize(1280, 800)
 _LEAST = QSize(960, 600)
 _BETWEEN_STATIONS_MS = 250
+_BETWEEN_PLOTS_MS = 40
+_PLOTS_AHEAD = 5
+"""As many areas as the stations have pictures at first."""
 _LATER = ("scipy.special", "scipy.optimize", "scipy.interpolate", "scipy.stats")
 """What the first valuation or run would otherwise wait for."""
 
@@ -83,6 +86,7 @@ class MainWindow(QMainWindow):
         self._stations: dict[str, Station] = {}
         self._shown = ""
         self._may_close = self._is_closing = False
+        self._made_ahead = 0
         self.recent = RecentBooks(settings, jobs, self)
         self.files = files(document, jobs, settings, self.recent, dialogs(self), self)
         self._build_parts(theme_switch)
@@ -237,13 +241,30 @@ class MainWindow(QMainWindow):
         self.jobs.start("Getting the stations ready", work, on_done=loaded)
 
     def make_ahead(self) -> None:
-        """Make the stations that were not visited yet, one at a time, while nothing runs."""
-        missing = next((key for key in self._entries if key not in self._stations), None)
+        """Make the stations that were not visited yet, one at a time, while nothing runs.
+
+        The first is the one that a book opens on; before it come the areas of its pictures.
+        """
+        order = sorted(self._entries, key=lambda key: key != self._first_station())
+        missing = next((key for key in order if key not in self._stations), None)
         if missing is None or self._is_closing:
             return
         if not self.jobs.running:
+            from desk.window.parts.plot_parts import store_plot
+
+            if self._made_ahead < _PLOTS_AHEAD:
+                self._made_ahead += 1
+                store_plot()
+                QTimer.singleShot(_BETWEEN_PLOTS_MS, self, self.make_ahead)
+                return
             self.station(missing)
         QTimer.singleShot(_BETWEEN_STATIONS_MS, self, self.make_ahead)
+
+    def _first_station(self) -> str:
+        """Key of the station that a book opens on: the one left last, or the standing."""
+        remembered = self._settings.station
+        wanted = remembered if remembered in self._entries else "standing"
+        return wanted if wanted in self._entries else next(iter(self._entries), "")
 
     def show_station(self, key: str) -> None:
         """Show a station; nothing happens for one this version does not have."""
@@ -279,9 +300,7 @@ class MainWindow(QMainWindow):
 
     def _on_opened(self, reading: Reading) -> None:
         if not self._shown:
-            remembered = self._settings.station
-            wanted = remembered if remembered in self._entries else "standing"
-            self._go_to_station(wanted if wanted in self._entries else next(iter(self._entries), ""))
+            self._go_to_station(self._first_station())
         mild = len(reading.faults)
         about_faults = ""
         if mild:

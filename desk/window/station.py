@@ -7,6 +7,7 @@ from collections.abc import Callable, Mapping, Sequence
 from PySide6.QtCore import Qt, QTimer, Signal
 from PySide6.QtGui import QShowEvent
 from PySide6.QtWidgets import (
+    QApplication,
     QFrame,
     QHBoxLayout,
     QLabel,
@@ -138,6 +139,8 @@ class Station(QWidget):
         self.setAccessibleName(self.title)
         self.setAccessibleDescription(self.purpose)
         self._is_outdated = True
+        self._waits_to_go_home = False
+        self._focus_left: QWidget | None = None
         self._refreshing = QTimer(self, singleShot=True, interval=0)
         self._refreshing.timeout.connect(self.refresh_now)
 
@@ -154,6 +157,8 @@ class Station(QWidget):
         self.next_button = QPushButton()
         self.next_button.hide()
         self.next_button.clicked.connect(lambda _=False: self.step_wanted.emit(self._next))
+        # As high with the button as without it.
+        self._heading_row.addStrut(self.next_button.sizeHint().height())
         self._heading_row.addWidget(self.next_button, 0, Qt.AlignmentFlag.AlignVCenter)
 
         self.strip = _Strip()
@@ -232,7 +237,11 @@ class Station(QWidget):
         self._next = key
         self.next_button.setText(f"Next: {title}")
         self.next_button.setToolTip(purpose)
-        self.next_button.setVisible(not self.is_empty)
+        self._offer_next()
+
+    def _offer_next(self) -> None:
+        there = bool(self._next) and not self.is_empty and self.document.book is not None
+        self.next_button.setVisible(there)
 
     _table_share = 40
 
@@ -269,6 +278,15 @@ class Station(QWidget):
             target.setFocus(Qt.FocusReason.ShortcutFocusReason)
         else:
             focus_first(self)
+        # There is nothing to go to before the first figures are there.
+        self._waits_to_go_home = self.is_empty and not self.empty.button.isVisible()
+        self._focus_left = QApplication.focusWidget()
+
+    def _go_home(self) -> None:
+        focus = QApplication.focusWidget()
+        is_elsewhere = focus is not None and focus.isVisible() and not self.isAncestorOf(focus)
+        if self.isVisible() and not (is_elsewhere and focus is not self._focus_left):
+            self.focus_home()
 
     def home(self) -> QWidget | None:
         """What matters most here; None for the first widget there is."""
@@ -286,7 +304,10 @@ class Station(QWidget):
     def show_content(self) -> None:
         """Show pictures, table and form."""
         self._stack.setCurrentIndex(0)
-        self.next_button.setVisible(bool(self._next))
+        self._offer_next()
+        if self._waits_to_go_home:
+            self._waits_to_go_home = False
+            QTimer.singleShot(0, self, self._go_home)
 
     @property
     def is_empty(self) -> bool:

@@ -25,6 +25,8 @@ UP_TARGET_SECONDS = 2.0
 PAUSE_TARGET_MS = 50.0
 _TICK_MS = 10
 _PATIENCE_SECONDS = 120.0
+_SETTLED = 20
+"""Looks, 15 ms apart, for which a step must be over."""
 
 _BARE = """
 import os, time
@@ -94,7 +96,7 @@ def _watch_start() -> None:
         def eventFilter(self, watched: QObject, event: QEvent) -> bool:
             """Look at every event."""
             if event.type() is QEvent.Type.Paint and isinstance(watched, QMainWindow):
-                print(time.time() - float(os.environ["STARTED_AT"]), flush=True)  # noqa: T201
+                print(time.time() - float(os.environ["STARTED_AT"]), flush=True)
                 QApplication.quit()
             return False
 
@@ -108,6 +110,8 @@ def _watch_start() -> None:
 def _steps(window: object, folder: Path, longest: _Longest) -> Iterator[Callable[[], bool]]:
     """What a reader does, one step after the other; each yields whether it is over."""
     from desk.window.main_window import MainWindow
+    from desk.window.report.station import ReportStation
+    from desk.window.scenarios.station import ScenariosStation
 
     assert isinstance(window, MainWindow)
     document, jobs = window.document, window.jobs
@@ -128,15 +132,18 @@ def _steps(window: object, folder: Path, longest: _Longest) -> Iterator[Callable
     document.run_simulation()
     yield lambda: quiet() and document.simulation is not None
     longest.enter("present values shown")
-    window.station("scenarios").quantity.setCurrentIndex(2)  # type: ignore[attr-defined]  # of that station
+    scenarios = window.station("scenarios")
+    assert isinstance(scenarios, ScenariosStation)
+    scenarios.quantity.setCurrentIndex(2)
     yield quiet
     longest.enter("report laid out")
     window.show_station("report")
     yield quiet
     longest.enter("report written")
     report = window.station("report")
-    report.target.set_value(str(folder / "report.xlsx"))  # type: ignore[attr-defined]  # of that station
-    report.write()  # type: ignore[attr-defined]  # of that station
+    assert isinstance(report, ReportStation)
+    report.target.set_value(str(folder / "report.xlsx"))
+    report.write()
     yield lambda: quiet() and (folder / "report.xlsx").exists()
 
 
@@ -150,38 +157,38 @@ def _watch_work() -> None:
 
     app = QApplication(sys.argv[:1])
     end = time.monotonic() + _PATIENCE_SECONDS
-    state: dict[str, object] = {}
-    settled = 0
+    longest: _Longest | None = None
+    steps: Iterator[Callable[[], bool]] = iter(())
+    is_over: Callable[[], bool] = bool
+    settled, done = 0, False
 
     def look() -> None:
-        nonlocal settled
+        nonlocal longest, steps, is_over, settled, done
         window = next((each for each in app.topLevelWidgets() if isinstance(each, MainWindow)), None)
         if window is None or time.monotonic() > end:
             app.quit()
             return
-        if "steps" not in state:
-            state["longest"] = _Longest()
-            state["steps"] = _steps(window, Path(os.environ["HOME"]), state["longest"])  # type: ignore[arg-type]
-            state["over"] = next(state["steps"])  # type: ignore[call-overload]
-        over: Callable[[], bool] = state["over"]  # type: ignore[assignment]
+        if longest is None:
+            longest = _Longest()
+            steps = _steps(window, Path(os.environ["HOME"]), longest)
+            is_over = next(steps)
         # What a step led to, single shots and repaints, belongs to it.
-        settled = settled + 1 if over() else 0
-        if settled < 20:
+        settled = settled + 1 if is_over() else 0
+        if settled < _SETTLED:
             return
         settled = 0
         try:
-            state["over"] = next(state["steps"])  # type: ignore[call-overload]
+            is_over = next(steps)
         except StopIteration:
-            state["done"] = True
+            done = True
             app.quit()
 
     watch = QTimer(interval=15)
     watch.timeout.connect(look)
     watch.start()
     run(None)
-    longest = state["longest"]
-    assert isinstance(longest, _Longest)
-    print(json.dumps({"done": "done" in state, "longest": longest.longest}))  # noqa: T201
+    told = longest.longest if longest is not None else {}
+    print(json.dumps({"done": done, "longest": told}))
 
 
 def main() -> int:
@@ -189,14 +196,14 @@ def main() -> int:
     here = str(Path(__file__).resolve())
     bare = median(float(_child(["-c", _BARE])) for _ in range(STARTS))
     ours = median(float(_child([here, "--start"])) for _ in range(STARTS))
-    print(f"a bare window is up after {bare:.2f} s, ours after {ours:.2f} s: {ours / bare:.1f} times")  # noqa: T201
-    print(f"  target: within {UP_TARGET_SECONDS:.0f} s")  # noqa: T201
+    print(f"a bare window is up after {bare:.2f} s, ours after {ours:.2f} s: {ours / bare:.1f} times")
+    print(f"  target: within {UP_TARGET_SECONDS:.0f} s")
     told = json.loads(_child([here, "--work"]))
-    print(f"longest pause of the event loop [ms], {BOOK.name}; target: {PAUSE_TARGET_MS:.0f}")  # noqa: T201
+    print(f"longest pause of the event loop [ms], {BOOK.name}; target: {PAUSE_TARGET_MS:.0f}")
     for step, pause in told["longest"].items():
-        print(f"  {pause:6.1f}  {step}")  # noqa: T201
+        print(f"  {pause:6.1f}  {step}")
     if not told["done"]:
-        print("  the work did not come to its end in time")  # noqa: T201
+        print("  the work did not come to its end in time")
         return 1
     return 0
 

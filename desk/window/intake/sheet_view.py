@@ -170,7 +170,7 @@ class _SheetHeader(QHeaderView):
         """High enough for both lines."""
         letter = QFontMetrics(soft_font(self.font())).height()
         field = QFontMetrics(strong_font(self.font())).height()
-        return QSize(super().sizeHint().width(), letter + field + GAP)
+        return QSize(self.length(), letter + field + GAP)
 
     def paintSection(self, painter: QPainter, rect: QRect, section: int) -> None:
         """Draw one heading."""

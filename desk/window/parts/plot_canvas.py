@@ -14,7 +14,7 @@ from PySide6.QtGui import QBrush, QFontMetricsF, QShowEvent
 from PySide6.QtWidgets import QGraphicsSimpleTextItem, QHBoxLayout, QLabel, QVBoxLayout, QWidget
 
 from desk.window.parts.plot_names import SIDE, Name, boxes_of
-from desk.window.parts.plot_parts import Plot, pen
+from desk.window.parts.plot_parts import pen, plot_from_store
 from desk.window.parts.plot_scale import Scale, with_room
 from desk.window.parts.plot_series import Band, Bars, Dots, Line, Paths, Series, together
 from desk.window.parts.theme import GAP, HALF, Theme, ThemeSwitch, keep_look, mixed, soft_font
@@ -57,7 +57,7 @@ class Canvas(QWidget):
         headings.addStretch(1)
         headings.addWidget(self._key)
         headings.addWidget(self._right_heading)
-        self.plot = Plot()
+        self.plot = plot_from_store()
         self.setFocusProxy(self.plot)
         self._column = QVBoxLayout()
         self._column.setSpacing(HALF)

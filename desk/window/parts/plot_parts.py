@@ -13,7 +13,7 @@ from PySide6.QtWidgets import QWidget
 from desk.window.parts import numbers
 from desk.window.parts.theme import Theme, mixed, soft_font
 
-__all__ = ["Axis", "Plot", "pen", "plain_digits"]
+__all__ = ["Axis", "Plot", "clear_store", "pen", "plain_digits", "plot_from_store", "store_plot"]
 
 
 _OVER = 12
@@ -143,6 +143,25 @@ class Plot(pg.PlotWidget):
         """Hand the keys on; those nobody takes go to the page."""
         event.ignore()
         self.key_pressed.emit(event)
+
+
+_store: list[Plot] = []
+"""Areas made while there was time."""
+
+
+def store_plot() -> None:
+    """Make an area ahead: it takes longer than anything else in a station."""
+    _store.append(Plot())
+
+
+def plot_from_store() -> Plot:
+    """An area, one made ahead where there is one."""
+    return _store.pop() if _store else Plot()
+
+
+def clear_store() -> None:
+    """Let go of what was made ahead."""
+    _store.clear()
 
 
 def pen(colour: QColor, width: float = 1.0, *, dashed: bool = False) -> QPen:

@@ -43,7 +43,7 @@ class Header(QHeaderView):
             self._heights = tuple(QFontMetrics(font).height() for font in fonts)
         name, unit = self._heights
         has_units = any(column.shown_unit for column in self._table.table_model.columns)
-        return QSize(super().sizeHint().width(), name + (unit if has_units else 0) + GAP)
+        return QSize(self.length(), name + (unit if has_units else 0) + GAP)
 
     def paintSection(self, painter: QPainter, rect: QRect, section: int) -> None:
         """Draw one heading."""

@@ -296,7 +296,7 @@ class PagePreview(QWidget):
     def _tell(self) -> None:
         name, page, pages = self.shown
         told = f"{name}, page {numbers.integer(page)} of {numbers.integer(pages)}" if name else ""
-        self.label.set_text(f"{told}   {FORMULA_SIGN} is a formula, computed when opened" if told else "")
+        self.label.set_text(f"{told}   {FORMULA_SIGN} marks a formula" if told else "")
         self.back.setEnabled(page > 1)
         self.on.setEnabled(page < pages)
         self._page.setAccessibleName(f"Page as it will come out: {told}" if told else "Pages of the report")

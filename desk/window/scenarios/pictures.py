@@ -166,7 +166,7 @@ def _fan_sentence(simulation: Simulation, summary: NodeSummary, *, is_account: b
         return f"Mean at year {year}: {text}."
     text = f"Mean at year {year}: {numbers.number(mean, 3)}, standard error {numbers.number(error, 3)}."
     if simulation.closed_form is None:
-        return f"{text} This model has no closed form of it."
+        return f"{text} There is no closed form."
     return f"{text} Thin lines: closed form."
 
 

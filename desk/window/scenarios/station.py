@@ -25,6 +25,7 @@ from desk.window.jobs import Job, Jobs
 from desk.window.parts import numbers
 from desk.window.parts.boxes import TickBox
 from desk.window.parts.fields import Combo
+from desk.window.parts.labels import well_broken
 from desk.window.parts.theme import STEP, WIDE, ThemeSwitch, keep_look
 from desk.window.scenarios.form import RunForm
 from desk.window.scenarios.pictures import FanPicture, HistogramPicture, ValuesPicture
@@ -242,12 +243,19 @@ class ScenariosStation(Station):
         document, form = self.document, self.run_form
         running = document.is_simulating
         obstacle = self._obstacle()
-        form.run_button.setVisible(not running)
+        had_focus = form.run_button.hasFocus() or form.cancel_button.hasFocus()
         form.run_button.setEnabled(not obstacle)
+        for button, wanted in ((form.cancel_button, running), (form.run_button, not running)):
+            if wanted:
+                button.show()
+                if had_focus:
+                    # The other one goes: the keyboard would go with it.
+                    button.setFocus(Qt.FocusReason.OtherFocusReason)
+        form.run_button.setVisible(not running)
         form.cancel_button.setVisible(running)
         there = document.simulation
         about = obstacle or (run_sentence(there) if there is not None else "")
-        form.state.setText("Running." if running else about)
+        form.state.setText("Running." if running else well_broken(about))
         form.state.setVisible(running or bool(about))
         self.invitation_button.setEnabled(not running and not obstacle)
         self.invitation_button.setVisible(not running)

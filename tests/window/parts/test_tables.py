@@ -334,3 +334,42 @@ put_table("a\\tb", "<table></table>")
 """
     done = subprocess.run([sys.executable, "-c", script], capture_output=True, text=True, check=False)
     assert done.returncode == 0, done.stderr
+
+
+def test_many_rows_are_copied_in_several_turns(theme_switch: ThemeSwitch, qtbot: QtBot) -> None:
+    table = Table(
+        (Column("line", "Line"), Column("amount", "Amount", "EUR", "money")), theme_switch, name="t"
+    )
+    qtbot.addWidget(table)
+    count = 10_001
+    table.set_rows({"line": [f"line {row}" for row in range(count)], "amount": np.arange(float(count))})
+    table.selectAll()
+    told: list[str] = []
+    table.message.connect(told.append)
+    QGuiApplication.clipboard().setText("before")
+    table.copy()
+    assert told == ["Copying 10,001 rows…"]
+    assert clipboard() == "before"
+    assert QGuiApplication.overrideCursor() is not None
+    qtbot.waitUntil(lambda: len(told) == 2)
+    assert told[1] == "Copied 10,001 rows."
+    assert QGuiApplication.overrideCursor() is None
+    lines = clipboard().splitlines()
+    assert len(lines) == count + 1
+    assert lines[0] == "Line\tAmount (EUR)"
+    assert lines[-1] == "line 10000\t10000"
+
+
+def test_rows_that_change_on_their_way_to_the_clipboard_are_dropped(
+    theme_switch: ThemeSwitch, qtbot: QtBot
+) -> None:
+    table = Table((Column("amount", "Amount", "EUR", "money"),), theme_switch, name="t")
+    qtbot.addWidget(table)
+    table.set_rows({"amount": np.arange(9_000.0)})
+    table.selectAll()
+    QGuiApplication.clipboard().setText("before")
+    table.copy()
+    table.set_rows({"amount": np.arange(3.0)})
+    assert QGuiApplication.overrideCursor() is None
+    qtbot.wait(20)
+    assert clipboard() == "before"

@@ -171,7 +171,10 @@ def test_a_model_that_cannot_be_drawn_says_why(station: ScenariosStation, bench:
 
 def test_a_run_is_shown_with_its_settings(station: ScenariosStation, bench: Bench, qtbot: QtBot) -> None:
     simulation = run(station, bench, qtbot)
-    assert "400 paths of Hull-White over 8 years, pricing measure, seed 7" in station.run_form.state.text()
+    assert (
+        "400 paths of Hull-White over 8 years, pricing measure, seed\N{NO-BREAK SPACE}7."
+        in station.run_form.state.text()
+    )
     assert station.slider.maximum() == 8
     assert station.year == 4
     mean = dict(station.fan.readings_at(8.0))["Mean"]

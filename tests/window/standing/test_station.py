@@ -14,10 +14,11 @@ from PySide6.QtTest import QTest
 from pytestqt.qtbot import QtBot
 
 from desk.book import Book, FlowTable, Holding, HoldingKind, Side
-from desk.valuation.records import FlowDetail, Standing
+from desk.valuation.records import FlowDetail, Periods, Standing
 from desk.valuation.standing import stand
 from desk.window.parts.tables import Table
 from desk.window.parts.theme import ThemeSwitch
+from desk.window.standing.pictures import FlowPicture
 from desk.window.standing.station import StandingStation
 from desk.window.standing.wording import amount, plain_reading, verdict
 from tests.window.benches import Bench, a_fund, dispose
@@ -142,6 +143,44 @@ def test_the_flows_are_mirrored_and_both_zeros_stand_on_one_line(
     assert right[0] <= standing.periods.cumulative.min()
     assert right[1] >= standing.periods.cumulative.max()
     assert home[2] <= -140_000.0
+    assert picture._y_heading.text() == "A year, EUR thousand"
+    assert picture._right_heading.text() == "Cumulative"
+    assert picture._right.shown_unit == "EUR thousand"
+
+
+def test_a_line_far_below_zero_does_not_press_the_bars(qtbot: QtBot, theme_switch: ThemeSwitch) -> None:
+    year = np.arange(1, 41)
+    assets, owed = np.where(year < 10, 130.0, 0.0), np.full(40, 150.0)
+    net = assets - owed
+    picture = FlowPicture(theme_switch)
+    qtbot.addWidget(picture)
+    picture.resize(500, 400)
+    picture.show_periods(Periods(year, assets, owed, net, np.cumsum(net)), "EUR")
+    picture.settle()
+    home, right = picture._home, picture._home_right
+    assert home is not None
+    assert right is not None
+    assert 280.0 / (home[3] - home[2]) > 0.9
+    assert home[2] / home[3] == pytest.approx(right[0] / right[1])
+    assert right[0] <= np.cumsum(net).min()
+
+
+@pytest.mark.parametrize("sign", [1.0, -1.0])
+def test_a_line_has_room_where_there_are_no_bars(
+    qtbot: QtBot, theme_switch: ThemeSwitch, sign: float
+) -> None:
+    year, flow, none = np.arange(1, 4), np.full(3, 10.0), np.zeros(3)
+    picture = FlowPicture(theme_switch)
+    qtbot.addWidget(picture)
+    cumulative = sign * np.array([-5.0, -9.0, -20.0])
+    picture.show_periods(
+        Periods(year, flow if sign > 0 else none, none if sign > 0 else flow, flow, cumulative), "EUR"
+    )
+    picture.settle()
+    right = picture._home_right
+    assert right is not None
+    assert right[0] <= cumulative.min()
+    assert right[1] >= cumulative.max()
 
 
 def test_key_rates_show_both_sides_and_the_gap(station: StandingStation, bench: Bench) -> None:
