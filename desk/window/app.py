@@ -106,14 +106,18 @@ def run(path: Path | None) -> int:
     sys.setswitchinterval(_SWITCH_SECONDS)
 
     def warm() -> None:
-        # What is loaded by now stays: the collector need not look through it again and again.
+        # What is loaded by now stays: the collector need not look through it again and again, nor, while
+        # it is loaded, through what there is so far.
         gc.freeze()
+        gc.enable()
         window.make_ahead()
 
+    gc.disable()
     QTimer.singleShot(0, partial(window.warm_up, warm))
     try:
         return app.exec()
     finally:
+        gc.enable()
         keeper.uninstall()
         jobs.shutdown()
         from desk.window.parts.plot_parts import clear_store

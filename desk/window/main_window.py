@@ -220,7 +220,7 @@ class MainWindow(QMainWindow):
         Parameters
         ----------
         then : callable, optional
-            Called when it is done.
+            Called when it is done, or came to nothing: then each station loads what it needs.
         """
         entries = tuple(self._entries.values())
 
@@ -238,7 +238,11 @@ class MainWindow(QMainWindow):
             if then is not None:
                 then()
 
-        self.jobs.start("Getting the stations ready", work, on_done=loaded)
+        def failed(error: BaseException) -> None:
+            loaded(None)
+            raise error
+
+        self.jobs.start("Getting the stations ready", work, on_done=loaded, on_failed=failed)
 
     def make_ahead(self) -> None:
         """Make the stations that were not visited yet, one at a time, while nothing runs.

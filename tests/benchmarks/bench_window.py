@@ -44,8 +44,9 @@ app.exec()
 
 
 def _environment(folder: Path) -> dict[str, str]:
-    """Settings, log and documents in a folder of their own."""
-    places = {name: str(folder) for name in ("HOME", "XDG_CONFIG_HOME", "XDG_STATE_HOME", "XDG_DATA_HOME")}
+    """Settings, log and report in a folder of their own."""
+    names = ("WORK_FOLDER", "XDG_CONFIG_HOME", "XDG_STATE_HOME", "XDG_DATA_HOME")
+    places = {name: str(folder) for name in names}
     return {"QT_QPA_PLATFORM": "offscreen", **os.environ, **places, "PYTHONPATH": str(ROOT)}
 
 
@@ -110,8 +111,6 @@ def _watch_start() -> None:
 def _steps(window: object, folder: Path, longest: _Longest) -> Iterator[Callable[[], bool]]:
     """What a reader does, one step after the other; each yields whether it is over."""
     from desk.window.main_window import MainWindow
-    from desk.window.report.station import ReportStation
-    from desk.window.scenarios.station import ScenariosStation
 
     assert isinstance(window, MainWindow)
     document, jobs = window.document, window.jobs
@@ -120,6 +119,10 @@ def _steps(window: object, folder: Path, longest: _Longest) -> Iterator[Callable
         return not jobs.running
 
     yield lambda: quiet() and all(key in window._stations for key in window._entries)
+    # Only now, for the window loads them beside its event loop.
+    from desk.window.report.station import ReportStation
+    from desk.window.scenarios.station import ScenariosStation
+
     longest.enter("book opened and valued")
     window.files.open(BOOK)
     yield lambda: quiet() and document.standing is not None
@@ -170,7 +173,7 @@ def _watch_work() -> None:
             return
         if longest is None:
             longest = _Longest()
-            steps = _steps(window, Path(os.environ["HOME"]), longest)
+            steps = _steps(window, Path(os.environ["WORK_FOLDER"]), longest)
             is_over = next(steps)
         # What a step led to, single shots and repaints, belongs to it.
         settled = settled + 1 if is_over() else 0
