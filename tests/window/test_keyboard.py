@@ -186,6 +186,7 @@ def test_a_pension_fund_is_run_by_keyboard_alone(window: MainWindow, qtbot: QtBo
     qtbot.waitUntil(lambda: report.write_button.hasFocus())
     press(window, Qt.Key.Key_Space)
     qtbot.waitUntil(lambda: bool(report.written), timeout=60_000)
+    qtbot.waitUntil(lambda: report.write_button.hasFocus())
     assert (tmp_path / "out.xlsx").stat().st_size > 10_000
 
 

@@ -17,6 +17,7 @@ __all__ = ["ReportRuns", "WrittenReport"]
 _COLUMNS = (
     Column("written", "Written", tooltip="Today's time of day"),
     Column("file", "File"),
+    Column("currency", "Currency", tooltip="Of the amounts beside it"),
     Column("assets", "Assets", kind="money"),
     Column("liabilities", "Liabilities", kind="money"),
     Column("surplus", "Surplus", kind="money"),
@@ -80,6 +81,7 @@ class ReportRuns(Table):
             {
                 "written": [made.at for made in reports],
                 "file": [made.path.name for made in reports],
+                "currency": [made.currency for made in reports],
                 "assets": [one.assets.present_value if one else None for one in standings],
                 "liabilities": [one.liabilities.present_value if one else None for one in standings],
                 "surplus": [one.surplus if one else None for one in standings],

@@ -101,6 +101,7 @@ class ReportStation(Station):
         self._dialogs = dialogs or Dialogs(self)
         self._settings: Settings | None = None
         self._writing: Job | None = None
+        self._gave_way_to: QWidget | None = None
         self._laid_out: _Wanted | None = None
         self._target_source: Path | None = None
         self.written: list[WrittenReport] = []
@@ -262,7 +263,15 @@ class ReportStation(Station):
     def _arm(self) -> None:
         """Switch the button on where a report can be written."""
         able = self.document.book is not None and not self.document.standing_failure and self._writing is None
+        had_focus = self.write_button.hasFocus()
         self.write_button.setEnabled(able)
+        if had_focus and not able:
+            # The keyboard leaves what is switched off, and comes back unless the reader took it elsewhere.
+            self._gave_way_to = self.window().focusWidget()
+        elif able and self._gave_way_to is not None:
+            if self._gave_way_to is self.window().focusWidget() and self.isVisible():
+                self.write_button.setFocus(Qt.FocusReason.OtherFocusReason)
+            self._gave_way_to = None
         self.folder_button.setEnabled(bool(self.written))
 
     # Where it goes
