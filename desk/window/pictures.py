@@ -75,10 +75,12 @@ def draw_all(reading: Reading, standing: Standing, simulation: Simulation | None
                 document.run_simulation()
             _wait(lambda: not jobs.running)
             written: list[Path] = []
+            drawn: list[Station] = []  # pyqtgraph does not bear that one is collected while the next is made
             for entry in all_stations():
                 if entry.key == "scenarios" and simulation is None:
                     continue
                 station = entry.load()(document, jobs, switch)
+                drawn.append(station)
                 written += _draw_station(station, jobs, folder)
                 station.close()
                 station.deleteLater()

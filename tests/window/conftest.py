@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import gc
 import os
 
 os.environ.setdefault("QT_QPA_PLATFORM", "offscreen")
@@ -16,6 +17,18 @@ from pytestqt.qtbot import QtBot
 
 from desk.window.parts.theme import ThemeSwitch
 from tests.window.frame import Frame
+
+
+@pytest.fixture(autouse=True, scope="package")
+def no_collection() -> Iterator[None]:
+    """Pictures that are gone are not collected while others are made.
+
+    WORKAROUND for a crash of PySide6 6.11 with pyqtgraph 0.14 (issue 1628 of pyqtgraph is of the same kind):
+    a new item that gets the address of a collected one is taken for it.
+    """
+    gc.disable()
+    yield
+    gc.enable()
 
 
 @pytest.fixture(autouse=True)
