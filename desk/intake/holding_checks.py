@@ -289,7 +289,7 @@ def _is_coupon_date(day: DayArray, maturity: DayArray, frequency: NDArray[np.int
     month, last_month = day.astype("M8[M]"), maturity.astype("M8[M]")
     in_month = (day - month.astype("M8[D]")).astype(np.int64) + 1
     in_last = (maturity - last_month.astype("M8[D]")).astype(np.int64) + 1
-    length = ((month + 1).astype("M8[D]") - month.astype("M8[D]")).astype(np.int64)
+    length = ((month + np.timedelta64(1, "M")).astype("M8[D]") - month.astype("M8[D]")).astype(np.int64)
     whole = (last_month - month).astype(np.int64) % (12 // frequency) == 0
     return np.asarray(whole & (in_month == np.minimum(in_last, length)))
 

@@ -199,7 +199,7 @@ def test_bond_prices_from_yields() -> None:
     today = date(2026, 6, 15)
     ql.Settings.instance().evaluationDate = _theirs(today)
     for _ in range(CASES):
-        maturity = np.datetime64(today) + int(random.integers(20, 15_000))
+        maturity = np.datetime64(today) + np.timedelta64(int(random.integers(20, 15_000)), "D")
         frequency, coupon = int(random.choice([1, 2, 4])), float(random.uniform(0.0, 0.1))
         stated = float(random.uniform(-0.01, 0.1))
         months = 12 // frequency

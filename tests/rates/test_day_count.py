@@ -48,10 +48,10 @@ def test_agrees_with_quantlib(day_count: DayCount) -> None:
 
 def test_thirty_to_month_ends_agrees_with_quantlib_at_the_termination() -> None:
     random = np.random.default_rng(5)
-    month = np.datetime64("1990-01", "M") + random.integers(0, 900, 600)
+    month = np.datetime64("1990-01", "M") + random.integers(0, 900, 600).astype("m8[M]")
     end = np.asarray(month.astype("M8[D]") - np.timedelta64(1, "D"), dtype="M8[D]")
-    start = np.asarray(end - random.integers(1, 4000, 600), dtype="M8[D]")
-    termination = np.where(random.random(600) < 0.5, end, end + 30)
+    start = np.asarray(end - random.integers(1, 4000, 600).astype("m8[D]"), dtype="M8[D]")
+    termination = np.where(random.random(600) < 0.5, end, end + np.timedelta64(30, "D"))
     ours = year_fraction(start, end, DayCount.THIRTY_E_360_ISDA, termination=termination)
     for one, two, last, years in zip(start, end, termination, ours, strict=True):
         first, second, ending = (ql.Date(str(day), "%Y-%m-%d") for day in (one, two, last))
@@ -100,7 +100,7 @@ def test_coupon_fractions_add_up(
 def test_coupon_fractions_refuse_what_is_no_period() -> None:
     day = np.datetime64("2026-06-30")
     with pytest.raises(ValueError, match="frequency"):
-        coupon_fraction(day, day, period_start=day, period_end=day + 181, frequency=5)
+        coupon_fraction(day, day, period_start=day, period_end=day + np.timedelta64(181, "D"), frequency=5)
     with pytest.raises(ValueError, match="period_end"):
         coupon_fraction(day, day, period_start=day, period_end=day, frequency=2)
 
