@@ -120,7 +120,7 @@ def bond(
     frequency: int,
 ) -> Holding:
     """A bond issued near today's rates; with a spread it has the market value the spread gives."""
-    maturity = (TODAY + round(365.25 * years)).item()
+    maturity = (TODAY + np.timedelta64(round(365.25 * years), "D")).item()
     maturity = maturity.replace(day=15)
     rate = float(np.expm1(basis.curve.zero(years))) + (spread or 0.0) + rng.normal(0.0, 0.009)
     coupon = max(round(400 * rate) / 400, 0.0025)
