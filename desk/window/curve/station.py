@@ -33,6 +33,7 @@ from desk.window.document import Document
 from desk.window.jobs import Jobs
 from desk.window.parts import numbers
 from desk.window.parts.fields import Choice, ChoiceField, Form, NumberField
+from desk.window.parts.premiums import liability_spread_field, market_risk_premium_field
 from desk.window.parts.tables import Table, parse_grid
 from desk.window.parts.theme import GAP, WIDE, ThemeSwitch, keep_look, soft_font
 from desk.window.station import Station
@@ -141,24 +142,8 @@ class CurveStation(Station):
         form.add_heading("Beyond the last quote")
         self._make_beyond(form)
         form.add_heading("Added to the curve")
-        self.liability_spread = NumberField(
-            "Liability spread",
-            unit="% a year",
-            percent=True,
-            low=-0.5,
-            high=0.5,
-            sensible=(-0.01, 0.03),
-            hint="Added to the continuous zero rates where liabilities are discounted.",
-        )
-        self.market_risk_premium = NumberField(
-            "Market risk premium",
-            unit="% a year",
-            percent=True,
-            low=-0.5,
-            high=0.5,
-            sensible=(0.0, 0.08),
-            hint="Added for each unit of beta, to flows whose risk does not diversify away.",
-        )
+        self.liability_spread = liability_spread_field()
+        self.market_risk_premium = market_risk_premium_field()
         form.add(self.liability_spread)
         form.add(self.market_risk_premium)
         form.add_heading("Time")

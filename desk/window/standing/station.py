@@ -15,7 +15,8 @@ from desk.valuation.records import FlowDetail, Standing
 from desk.window.document import Document
 from desk.window.jobs import Jobs
 from desk.window.parts import numbers
-from desk.window.parts.fields import NumberField, TextField
+from desk.window.parts.fields import TextField
+from desk.window.parts.premiums import liability_spread_field, market_risk_premium_field
 from desk.window.parts.theme import GAP, WIDE, ThemeSwitch
 from desk.window.standing.lines import LinesPage
 from desk.window.standing.pages import Pages
@@ -93,24 +94,8 @@ class StandingStation(Station):
         form = self.form
         form.add_heading("The basis")
         self.basis_note = form.add_note("")
-        self.liability_spread = NumberField(
-            "Liability spread",
-            unit="% a year",
-            percent=True,
-            low=-0.5,
-            high=0.5,
-            sensible=(-0.01, 0.03),
-            hint="Added to the continuous zero rates where liabilities are discounted.",
-        )
-        self.market_risk_premium = NumberField(
-            "Market risk premium",
-            unit="% a year",
-            percent=True,
-            low=-0.5,
-            high=0.5,
-            sensible=(0.0, 0.08),
-            hint="Added for each unit of beta, to flows whose risk does not diversify away.",
-        )
+        self.liability_spread = liability_spread_field()
+        self.market_risk_premium = market_risk_premium_field()
         self.name = TextField("Title", hint="Stands over reports of this basis.")
         for field, name, text in (
             (self.liability_spread, "liability_spread", "liability spread"),
