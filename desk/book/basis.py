@@ -2,12 +2,16 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from dataclasses import dataclass, field
 from datetime import date
 from enum import StrEnum
 from functools import cached_property
 
+import numpy as np
+
 from desk.book.arrays import FloatArray, owned_floats, same_fields
+from desk.book.curve_source import BondFit, CurveBonds, CurveParameters
+from desk.book.inflation import Inflation
 from desk.rates.bootstrap import bootstrap
 from desk.rates.compounding import Compounding, from_continuous, to_continuous
 from desk.rates.curve import Curve, Interpolation
@@ -17,7 +21,7 @@ from desk.rates.quoted_flows import QuotedFlows
 from desk.rates.quotes import par_flows, swap_flows, zero_flows
 from desk.rates.smith_wilson import Extrapolation, smith_wilson
 
-__all__ = ["Basis", "CurveKind"]
+__all__ = ["Basis", "CurveKind", "LiabilityMethod"]
 
 
 class CurveKind(StrEnum):
@@ -26,6 +30,26 @@ class CurveKind(StrEnum):
     ZERO = "zero"
     PAR = "par"
     SWAP = "swap"
+    BONDS = "bonds"
+    """A sheet of bonds with prices or yields."""
+    NELSON_SIEGEL = "nelson-siegel"
+    SVENSSON = "svensson"
+    """Parameters of the formula of that name."""
+    FLAT = "flat"
+    """One rate for all terms."""
+
+
+class LiabilityMethod(StrEnum):
+    """What liabilities are discounted on; the liability spread is added to each."""
+
+    CURVE = "curve"
+    """The curve of the basis."""
+    TERM_SPREADS = "spread by term"
+    """The curve, with a spread for each term."""
+    CORPORATE_BONDS = "corporate bonds"
+    """A curve of its own, drawn through a sheet of high-quality corporate bonds."""
+    EXPECTED_RETURN = "expected return"
+    """One flat rate: the return expected on the assets."""
 
 
 @dataclass(frozen=True, eq=False)
@@ -67,6 +91,26 @@ class Basis:
     extrapolation : Extrapolation
         How the curve goes on beyond the last liquid point. A Smith-Wilson curve needs
         `ultimate_forward_rate`, and draws its own curve between the quotes in the place of `interpolation`.
+    bonds : CurveBonds or None
+        Of a curve of bonds; `terms` and `rates` are empty then.
+    bond_fit : BondFit
+        How the curve is drawn through them.
+    parameters : CurveParameters or None
+        Of a Nelson-Siegel or Svensson curve; `terms` and `rates` are empty then.
+    flat_rate : float or None
+        Of a flat curve, in `compounding` [1/year]; `terms` and `rates` are empty then.
+    liability_method : LiabilityMethod
+    liability_terms, liability_spreads : ndarray, shape (l,)
+        Of a spread by term: terms [years] and continuously compounded spreads over the curve [1/year], joined
+        by lines and flat outside them.
+    liability_bonds : CurveBonds or None
+        The high-quality corporate bonds.
+    liability_fit : BondFit
+        How their curve is drawn.
+    expected_return : float or None
+        On the assets, annual effective [1/year].
+    inflation : Inflation or None
+        None where no line follows a price index.
     """
 
     valuation_date: date
@@ -86,13 +130,24 @@ class Basis:
     convergence_point: float | None = None
     convergence_tolerance: float = 1e-4
     extrapolation: Extrapolation = Extrapolation.FLAT_FORWARD
+    bonds: CurveBonds | None = None
+    bond_fit: BondFit = BondFit.SVENSSON
+    parameters: CurveParameters | None = None
+    flat_rate: float | None = None
+    liability_method: LiabilityMethod = LiabilityMethod.CURVE
+    liability_terms: FloatArray = field(default_factory=lambda: np.zeros(0))
+    liability_spreads: FloatArray = field(default_factory=lambda: np.zeros(0))
+    liability_bonds: CurveBonds | None = None
+    liability_fit: BondFit = BondFit.SVENSSON
+    expected_return: float | None = None
+    inflation: Inflation | None = None
 
     def __post_init__(self) -> None:
         """Own the quotes."""
         if self.day_count not in TIME_COUNTS:
             raise ValueError(f"`day_count` must be one of {', '.join(TIME_COUNTS)}")
-        object.__setattr__(self, "terms", owned_floats(self.terms))
-        object.__setattr__(self, "rates", owned_floats(self.rates))
+        for name in ("terms", "rates", "liability_terms", "liability_spreads"):
+            object.__setattr__(self, name, owned_floats(getattr(self, name)))
 
     def __eq__(self, other: object) -> bool:
         """Equal when every item is."""

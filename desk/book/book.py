@@ -15,8 +15,11 @@ import numpy as np
 from desk.book.basis import Basis
 from desk.book.flows import FlowTable
 from desk.book.holding import Holding
+from desk.book.inflation import LineTerms
+from desk.book.market import ScenarioSet, Volatilities, YieldHistory
 from desk.book.model import History, RatesModel, RiskyAssets
 from desk.book.run import Run
+from desk.book.shock import Shock, ShockSettings
 
 __all__ = ["Book", "Notes"]
 
@@ -58,6 +61,16 @@ class Book:
     history : History or None
     notes : tuple of Notes
         Further columns, by sheet.
+    line_terms : tuple of LineTerms
+        At most one a line of flows of either side; a line without is fixed, on the basis.
+    second_basis : Basis or None
+        A basis to compare the first one with, of the same date, currency and day count.
+    shocks : tuple of Shock
+        The user's own.
+    shock_settings : ShockSettings
+    volatilities : Volatilities or None
+    yield_history : YieldHistory or None
+    scenario_set : ScenarioSet or None
     """
 
     basis: Basis
@@ -69,6 +82,13 @@ class Book:
     run: Run = field(default_factory=Run)
     history: History | None = None
     notes: tuple[Notes, ...] = ()
+    line_terms: tuple[LineTerms, ...] = ()
+    second_basis: Basis | None = None
+    shocks: tuple[Shock, ...] = ()
+    shock_settings: ShockSettings = field(default_factory=ShockSettings)
+    volatilities: Volatilities | None = None
+    yield_history: YieldHistory | None = None
+    scenario_set: ScenarioSet | None = None
 
     @cached_property
     def digest(self) -> str:

@@ -14,6 +14,7 @@ from desk.book.arrays import FloatArray, IntArray
 __all__ = [
     "Condition",
     "FlowDetail",
+    "InflationStanding",
     "KeyRates",
     "LineStanding",
     "Measures",
@@ -173,6 +174,43 @@ class FlowDetail:
 
 
 @dataclass(frozen=True)
+class InflationStanding:
+    """How both sides follow expected inflation, nominal rates unchanged.
+
+    Attributes
+    ----------
+    assets_duration, liabilities_duration : float
+        ``(1/PV) dPV/di`` for a parallel move of the continuous expected inflation rates [years]. It is also the
+        fall for a rise of real rates while nominal rates stay, the real duration.
+    real_duration_gap : float
+        ``D_A - D_L · L / A`` with these [years].
+    dv01_assets, dv01_liabilities, dv01_gap : float
+        Rise in present value for +1 basis point on all expected inflation rates [currency].
+    term : ndarray, shape (k,)
+        Of the key rates of expected inflation [years].
+    key_assets, key_liabilities : ndarray, shape (k,)
+        Key-rate durations of expected inflation [years]; they sum to the durations.
+    key_dv01_assets, key_dv01_liabilities : ndarray, shape (k,)
+        [currency]
+    real_periods : Periods
+        The undiscounted flows by year in today's money: each over the expected index.
+    """
+
+    assets_duration: float
+    liabilities_duration: float
+    real_duration_gap: float
+    dv01_assets: float
+    dv01_liabilities: float
+    dv01_gap: float
+    term: FloatArray
+    key_assets: FloatArray
+    key_liabilities: FloatArray
+    key_dv01_assets: FloatArray
+    key_dv01_liabilities: FloatArray
+    real_periods: Periods
+
+
+@dataclass(frozen=True)
 class Standing:
     """The balance sheet valued at one date on one basis.
 
@@ -197,6 +235,8 @@ class Standing:
     faults : tuple of Fault
         What the valuation could not do as asked.
     provenance : Provenance
+    inflation : InflationStanding or None
+        None where the basis states no expected inflation.
     """
 
     valuation_date: date
@@ -213,3 +253,4 @@ class Standing:
     lines: tuple[LineStanding, ...]
     faults: tuple[Fault, ...]
     provenance: Provenance
+    inflation: InflationStanding | None = None
