@@ -4,7 +4,7 @@ from __future__ import annotations
 
 import hashlib
 from collections.abc import Iterator
-from dataclasses import dataclass, field, fields, is_dataclass
+from dataclasses import dataclass, field, fields, is_dataclass, replace
 from datetime import date
 from enum import StrEnum
 from functools import cached_property
@@ -89,6 +89,13 @@ class Book:
     volatilities: Volatilities | None = None
     yield_history: YieldHistory | None = None
     scenario_set: ScenarioSet | None = None
+
+    @cached_property
+    def on_second_basis(self) -> Book | None:
+        """The book as it stands on its second basis alone; None where it has none."""
+        if self.second_basis is None:
+            return None
+        return replace(self, basis=self.second_basis, second_basis=None)
 
     @cached_property
     def digest(self) -> str:

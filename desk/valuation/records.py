@@ -180,8 +180,8 @@ class InflationStanding:
     Attributes
     ----------
     assets_duration, liabilities_duration : float
-        ``(1/PV) dPV/di`` for a parallel move of the continuous expected inflation rates [years]. It is also the
-        fall for a rise of real rates while nominal rates stay, the real duration.
+        ``(1/PV) dPV/di`` for a parallel move of the continuous expected inflation rates [years]. It is also
+        the fall for a rise of real rates while nominal rates stay, the real duration.
     real_duration_gap : float
         ``D_A - D_L · L / A`` with these [years].
     dv01_assets, dv01_liabilities, dv01_gap : float
