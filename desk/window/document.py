@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Callable
-from dataclasses import dataclass, fields, replace
+from dataclasses import dataclass, replace
 from functools import partial
 from pathlib import Path
 from typing import Any
@@ -13,31 +13,20 @@ from PySide6.QtCore import QObject, Signal
 from desk import tasks
 from desk.book import Book, Fault
 from desk.intake.records import Reading
-from desk.report.said_once import further_faults
 from desk.scenarios.records import Simulation
 from desk.valuation.records import Standing
 from desk.window.jobs import Job, Jobs
+from desk.window.valued import Valued, changed_fields, is_outdated, reason, with_faults
 
 __all__ = ["Document", "changed_fields"]
 
-STANDING_FIELDS = frozenset({"basis", "liabilities", "holdings", "asset_flows"})
-"""Parts of a book that its standing follows from."""
-SIMULATION_FIELDS = STANDING_FIELDS | {"rates_model", "risky_assets", "run"}
+_VALUED = frozenset({"basis", "liabilities", "holdings", "asset_flows", "line_terms"})
+STANDING_FIELDS = _VALUED | {"second_basis"}
+"""Parts of a book that its standings follow from, on the first basis and on the second."""
+SIMULATION_FIELDS = _VALUED | {"rates_model", "risky_assets", "run", "scenario_set"}
 """Parts of a book that a simulation follows from."""
 
 _LONGEST_HISTORY = 200
-
-
-def changed_fields(old: Book, new: Book) -> frozenset[str]:
-    """The names of the parts in which two books differ."""
-    if old is new:
-        return frozenset()
-    names = (field.name for field in fields(Book))
-    return frozenset(
-        name
-        for name in names
-        if getattr(old, name) is not getattr(new, name) and getattr(old, name) != getattr(new, name)
-    )
 
 
 @dataclass(frozen=True, eq=False)
@@ -59,12 +48,6 @@ class Document(QObject):
     source : Reading or None
         The reading the open book came from.
     book : Book or None
-    standing : Standing or None
-        Of the book, or of a former version of it while `standing_is_stale`.
-    standing_faults : tuple of Fault
-        What the valuation could not do as asked, beside what the reading says.
-    standing_failure : str
-        Why the book as it stands could not be valued; empty where it could, or while it is being valued.
     simulation : Simulation or None
         The last run that came to its end.
     path : Path or None
@@ -103,21 +86,31 @@ class Document(QObject):
         self.reading: Reading | None = None
         self.source: Reading | None = None
         self.path: Path | None = None
-        self.standing: Standing | None = None
-        self.standing_faults: tuple[Fault, ...] = ()
+        self._first = Valued(
+            jobs,
+            title="Valuing the book",
+            value=lambda: self._value,
+            names=STANDING_FIELDS,
+            on_changed=self.standing_changed.emit,
+            on_failed=lambda why: self.failed.emit(f"The book could not be valued: {why}"),
+        )
+        self._second = Valued(
+            jobs,
+            title="Valuing the second basis",
+            value=lambda: self._value,
+            names=STANDING_FIELDS,
+            on_changed=self.standing_changed.emit,
+            on_failed=lambda why: self.failed.emit(f"The second basis could not be valued: {why}"),
+        )
+        self._wants_comparison = True
         self._simulation_faults: tuple[Fault, ...] = ()
-        self.standing_failure = ""
         self.simulation: Simulation | None = None
         self._history: list[_Version] = []
         self._place = -1
         self._saved: _Version | None = None
         self._was_modified = False
-        self._standing_book: Book | None = None
         self._simulation_book: Book | None = None
-        self._standing_stale = False
         self._simulation_stale = False
-        self._valuing: Job | None = None
-        self._valuing_book: Book | None = None
         self._simulating: Job | None = None
 
     # The book and its history
@@ -141,8 +134,8 @@ class Document(QObject):
             return ()
         if self.reading is not self.source:
             return self.reading.faults
-        of_run = tuple(fault for fault in self._simulation_faults if fault not in self.standing_faults)
-        return (*self.reading.faults, *self.standing_faults, *of_run)
+        further = dict.fromkeys((*self._first.faults, *self._second.faults, *self._simulation_faults))
+        return (*self.reading.faults, *further)
 
     def open_reading(self, reading: Reading) -> None:
         """Open what was read.
@@ -159,12 +152,13 @@ class Document(QObject):
         self._history = [_Version("", reading.book)]
         self._place = 0
         self._saved = self._history[0]
-        self.standing = self._standing_book = None
-        self.standing_failure = ""
+        self._first.forget()
+        self._second.forget()
+        self._wants_comparison = True
         self.simulation = self._simulation_book = None
-        self.standing_faults = self._simulation_faults = ()
-        self._standing_stale = self._simulation_stale = False
-        self._request_standing()
+        self._simulation_faults = ()
+        self._simulation_stale = False
+        self._request_standings()
         self.reading_changed.emit()
         self.book_changed.emit()
         self.standing_changed.emit()
@@ -264,15 +258,15 @@ class Document(QObject):
 
     def _book_replaced(self) -> None:
         book = self._open_book()
-        standing_was_stale = self._standing_stale
-        simulation_was_stale = self._simulation_stale
-        self._standing_stale = self._is_outdated(self._standing_book, book, STANDING_FIELDS)
-        self._simulation_stale = self._is_outdated(self._simulation_book, book, SIMULATION_FIELDS)
-        self._request_standing()
+        stale = (self.standing_is_stale, self.second_is_stale, self._simulation_stale)
+        had_second = self._second.standing is not None
+        self._simulation_stale = is_outdated(self._simulation_book, book, SIMULATION_FIELDS)
+        self._request_standings()
         self.book_changed.emit()
-        if self._standing_stale != standing_was_stale:
+        lost_second = had_second and self._second.standing is None
+        if (self.standing_is_stale, self.second_is_stale) != stale[:2] or lost_second:
             self.standing_changed.emit()
-        if self._simulation_stale != simulation_was_stale:
+        if self._simulation_stale != stale[2]:
             self.simulation_changed.emit()
         self._tell_history()
 
@@ -285,16 +279,63 @@ class Document(QObject):
     def _open_book(self) -> Book:
         return self._history[self._place].book
 
-    @staticmethod
-    def _is_outdated(of: Book | None, book: Book, names: frozenset[str]) -> bool:
-        return of is not None and bool(changed_fields(of, book) & names)
-
     # What follows from the book
+
+    @property
+    def standing(self) -> Standing | None:
+        """Of the book, or of a former version of it while `standing_is_stale`."""
+        return self._first.standing
+
+    @property
+    def standing_faults(self) -> tuple[Fault, ...]:
+        """What the valuation could not do as asked, beside what the reading says."""
+        return self._first.faults
+
+    @property
+    def standing_failure(self) -> str:
+        """Why the book as it stands could not be valued; empty where it could, or while it is valued."""
+        return self._first.failure
 
     @property
     def standing_is_stale(self) -> bool:
         """Whether `standing` is that of a former version of the book."""
-        return self._standing_stale
+        return self._first.is_stale
+
+    @property
+    def second_standing(self) -> Standing | None:
+        """On the second basis of the book, or of a former version of it while `second_is_stale`."""
+        return self._second.standing
+
+    @property
+    def second_failure(self) -> str:
+        """Why the book could not be valued on its second basis; empty where it could."""
+        return self._second.failure
+
+    @property
+    def second_is_stale(self) -> bool:
+        """Whether `second_standing` is that of a former version of the book."""
+        return self._second.is_stale
+
+    @property
+    def is_comparing(self) -> bool:
+        """Whether the book has a second basis and is looked at beside it."""
+        return self._wants_comparison and self.book is not None and self.book.second_basis is not None
+
+    @property
+    def comparison(self) -> Standing | None:
+        """What the standing is compared with; None while it is compared with nothing."""
+        return self._second.standing if self.is_comparing else None
+
+    @property
+    def comparison_is_current(self) -> bool:
+        """Whether there is a comparison and both of its standings are those of the book as it stands."""
+        return self.comparison is not None and not (self.standing_is_stale or self.second_is_stale)
+
+    def compare(self, wanted: bool) -> None:
+        """Look at the book beside its second basis, or at the first alone."""
+        if wanted != self._wants_comparison:
+            self._wants_comparison = wanted
+            self.standing_changed.emit()
 
     @property
     def simulation_is_stale(self) -> bool:
@@ -303,8 +344,13 @@ class Document(QObject):
 
     @property
     def is_valuing(self) -> bool:
-        """Whether a valuation runs."""
-        return self._valuing is not None
+        """Whether a valuation runs on the first basis."""
+        return self._first.is_running
+
+    @property
+    def is_valuing_second(self) -> bool:
+        """Whether a valuation runs on the second basis."""
+        return self._second.is_running
 
     @property
     def is_simulating(self) -> bool:
@@ -313,60 +359,27 @@ class Document(QObject):
 
     def stop(self) -> None:
         """Cancel what runs for this book."""
-        for job in (self._valuing, self._simulating):
-            if job is not None:
-                self._jobs.cancel(job)
-        self._valuing = self._valuing_book = self._simulating = None
+        self._first.stop()
+        self._second.stop()
+        if self._simulating is not None:
+            self._jobs.cancel(self._simulating)
+        self._simulating = None
 
     def revalue(self) -> None:
-        """Value the book once more."""
-        if self._history:
-            self._start_valuing()
+        """Value the book once more, on both bases."""
+        self._first.restart()
+        self._second.restart()
 
-    def _request_standing(self) -> None:
-        """See to it that the standing comes to be that of the book."""
+    def _request_standings(self) -> None:
+        """See to it that the standings come to be those of the book."""
         book = self._open_book()
-        if self.standing is not None and not self._standing_stale:
-            if self._valuing is not None:
-                self._jobs.cancel(self._valuing)
-                self._valuing = self._valuing_book = None
-            self.standing_failure = ""
-            return
-        if self._valuing is not None and not self._is_outdated(self._valuing_book, book, STANDING_FIELDS):
-            return
-        self._start_valuing()
-
-    def _start_valuing(self) -> None:
-        book = self._open_book()
-        self.standing_failure = ""
-        self._valuing_book = book
-        # The former job, if one runs, is cancelled by the key; its callbacks no longer know this book.
-        self._valuing = self._jobs.start(
-            "Valuing the book",
-            partial(_with_faults, self._value, book, self._told()),
-            on_done=partial(self._standing_done, book),
-            on_failed=partial(self._standing_failed, book),
-            exclusive_key=f"standing of {id(self)}",
-        )
-
-    def _told(self) -> tuple[Fault, ...]:
-        return () if self.source is None else self.source.faults
-
-    def _standing_done(self, book: Book, result: tuple[Standing, tuple[Fault, ...]]) -> None:
-        if book is not self._valuing_book:
-            return
-        self._valuing = self._valuing_book = None
-        (self.standing, self.standing_faults), self._standing_book = result, book
-        self._standing_stale = self._is_outdated(book, self._open_book(), STANDING_FIELDS)
-        self.standing_changed.emit()
-
-    def _standing_failed(self, book: Book, error: BaseException) -> None:
-        if book is not self._valuing_book:
-            return
-        self._valuing = self._valuing_book = None
-        self.standing_failure = _reason(error)
-        self.standing_changed.emit()
-        self.failed.emit(f"The book could not be valued: {self.standing_failure}")
+        told = () if self.source is None else self.source.faults
+        self._first.follow(book, told)
+        second = book.on_second_basis
+        if second is None:
+            self._second.forget()
+        else:
+            self._second.follow(second, told)
 
     def run_simulation(self) -> Job:
         """Run the book's simulation; a run under way is cancelled for it.
@@ -380,6 +393,7 @@ class Document(QObject):
         if book is None:
             raise RuntimeError("there is no open book to simulate")
         key = f"simulation of {id(self)}"
+        told = () if self.source is None else self.source.faults
         job: Job | None = None
 
         def ended(act: Callable[[Any], None], value: Any = None) -> None:
@@ -390,14 +404,14 @@ class Document(QObject):
 
         def done(result: tuple[Simulation, tuple[Fault, ...]]) -> None:
             (self.simulation, self._simulation_faults), self._simulation_book = result, book
-            self._simulation_stale = self._is_outdated(book, self._open_book(), SIMULATION_FIELDS)
+            self._simulation_stale = is_outdated(book, self._open_book(), SIMULATION_FIELDS)
 
         def failed(error: BaseException) -> None:
-            self.failed.emit(f"The simulation came to nothing: {_reason(error)}")
+            self.failed.emit(f"The simulation came to nothing: {reason(error)}")
 
         job = self._jobs.start(
             "Simulating",
-            partial(_with_faults, self._simulate, book, self._told()),
+            partial(with_faults, self._simulate, book, told),
             on_done=partial(ended, done),
             on_failed=partial(ended, failed),
             on_cancelled=partial(ended, lambda _: None),
@@ -411,16 +425,3 @@ class Document(QObject):
         """Stop the run under way; the former result stays."""
         if self._simulating is not None:
             self._jobs.cancel(self._simulating)
-
-
-def _with_faults(
-    task: Callable[..., Any], book: Book, told: tuple[Fault, ...], **tools: Any
-) -> tuple[Any, tuple[Fault, ...]]:
-    """Run a task; its result, and what it could not do as asked that `told` does not say already."""
-    result = task(book, **tools)
-    return result, further_faults(told, result.faults) if result.faults else ()
-
-
-def _reason(error: BaseException) -> str:
-    """Why, in the words of the error; its kind where it has none."""
-    return str(error).strip() or type(error).__name__

@@ -14,7 +14,7 @@ import pytest
 from PySide6.QtCore import SignalInstance
 from pytestqt.qtbot import QtBot
 
-from desk.book import Basis, Book, Fault, FlowTable, ModelName, RatesModel, Run
+from desk.book import Basis, Book, Fault, FlowTable, LineTerms, ModelName, RatesModel, Run, Side
 from desk.intake.records import Reading
 from desk.scenarios.records import Simulation
 from desk.tasks import Cancelled
@@ -353,3 +353,126 @@ def test_nothing_can_be_edited_or_run_without_a_book(bench: Bench) -> None:
     bench.document.redo()
     bench.document.revalue()
     assert not bench.jobs.running
+
+
+# The second basis
+
+
+def two_bases(first: float, second: float) -> Book:
+    return replace(a_book(first), second_basis=a_book(second).basis)
+
+
+def both_settled(bench: Bench, qtbot: QtBot) -> None:
+    document = bench.document
+    qtbot.waitUntil(
+        lambda: not (document.is_valuing or document.is_valuing_second or bench.jobs.running), timeout=10_000
+    )
+
+
+def second_of(bench: Bench) -> Any:
+    return bench.document.second_standing
+
+
+def test_a_book_with_two_bases_has_two_standings(bench: Bench, qtbot: QtBot) -> None:
+    bench.document.open_reading(a_reading(two_bases(0.01, 0.03)))
+    both_settled(bench, qtbot)
+    document = bench.document
+    assert (bench.standing, second_of(bench)) == (("of", 0.01), ("of", 0.03))
+    assert document.is_comparing
+    assert document.comparison_is_current
+    assert document.comparison is document.second_standing
+    assert [book.second_basis is None for book in bench.value.asked].count(True) == 1
+
+
+def test_without_a_second_basis_nothing_is_compared(opened: Bench) -> None:
+    document = opened.document
+    assert (document.second_standing, document.second_failure, document.comparison) == (None, "", None)
+    assert not document.is_comparing
+    assert not document.comparison_is_current
+    assert len(opened.value.asked) == 1
+
+
+def test_the_comparison_is_put_off_and_on(bench: Bench, qtbot: QtBot) -> None:
+    document = bench.document
+    document.open_reading(a_reading(two_bases(0.01, 0.03)))
+    both_settled(bench, qtbot)
+    bench.said.clear()
+    document.compare(False)
+    document.compare(False)
+    assert bench.said == ["standing"]
+    assert document.comparison is None
+    assert second_of(bench) == ("of", 0.03)
+    document.compare(True)
+    assert document.comparison is document.second_standing
+
+
+def test_a_second_basis_that_fails_leaves_the_first_standing(bench: Bench, qtbot: QtBot) -> None:
+    document, plain = bench.document, bench.value
+
+    def picky(book: Book, **tools: Any) -> Any:
+        if book.basis.liability_spread > 0.1:
+            raise ValueError("the rates give no curve")
+        return plain(book, **tools)
+
+    document._value = picky
+    document.open_reading(a_reading(two_bases(0.01, 0.2)))
+    both_settled(bench, qtbot)
+    assert bench.standing == ("of", 0.01)
+    assert document.standing_failure == ""
+    assert document.second_failure == "the rates give no curve"
+    assert document.second_standing is None
+    assert bench.failures == ["The second basis could not be valued: the rates give no curve"]
+    assert not document.comparison_is_current
+    document.edit("Change of the second basis", two_bases(0.01, 0.05))
+    both_settled(bench, qtbot)
+    assert document.second_failure == ""
+    assert second_of(bench) == ("of", 0.05)
+    # And the other way round.
+    document.edit("Change of the first basis", two_bases(0.2, 0.05))
+    both_settled(bench, qtbot)
+    assert document.standing_failure == "the rates give no curve"
+    assert document.second_failure == ""
+    assert second_of(bench) == ("of", 0.05)
+
+
+def test_a_second_basis_taken_away_takes_its_standing_along(bench: Bench, qtbot: QtBot) -> None:
+    document = bench.document
+    document.open_reading(a_reading(two_bases(0.01, 0.03)))
+    both_settled(bench, qtbot)
+    bench.said.clear()
+    document.edit("The second basis taken away", replace(two_bases(0.01, 0.03), second_basis=None))
+    assert second_of(bench) is None
+    assert "standing" in bench.said
+    both_settled(bench, qtbot)
+    document.undo()
+    both_settled(bench, qtbot)
+    assert second_of(bench) == ("of", 0.03)
+
+
+def test_a_run_does_not_follow_from_the_second_basis(bench: Bench, qtbot: QtBot) -> None:
+    document = bench.document
+    document.open_reading(a_reading(two_bases(0.01, 0.03)))
+    document.run_simulation()
+    both_settled(bench, qtbot)
+    document.edit("Change of the second basis", two_bases(0.01, 0.04))
+    assert not document.simulation_is_stale
+    assert document.standing_is_stale
+    assert document.second_is_stale
+    terms = (LineTerms(Side.LIABILITIES, "pensions", spread=0.01),)
+    document.edit("Terms of a line", replace(two_bases(0.01, 0.04), line_terms=terms))
+    assert document.simulation_is_stale
+
+
+def test_the_latest_edit_wins_on_both_bases(bench: Bench, qtbot: QtBot) -> None:
+    document = bench.document
+    document.open_reading(a_reading(two_bases(0.01, 0.03)))
+    both_settled(bench, qtbot)
+    bench.value.let_go.clear()
+    for step in range(1, 20):
+        document.edit("Change", two_bases(step / 1000, step / 500))
+    document.stop()
+    document.revalue()
+    bench.value.let_go.set()
+    both_settled(bench, qtbot)
+    assert (bench.standing, second_of(bench)) == (("of", 0.019), ("of", 0.038))
+    assert bench.failures == []

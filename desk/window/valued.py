@@ -1,0 +1,164 @@
+"""One standing that follows a book: the job that makes it, what it could not do, and whether it is stale."""
+
+from __future__ import annotations
+
+from collections.abc import Callable
+from dataclasses import fields
+from functools import partial
+from typing import Any
+
+from desk.book import Book, Fault
+from desk.report.said_once import further_faults
+from desk.valuation.records import Standing
+from desk.window.jobs import Job, Jobs
+
+__all__ = ["Valued", "changed_fields", "is_outdated", "reason", "with_faults"]
+
+
+def changed_fields(old: Book, new: Book) -> frozenset[str]:
+    """The names of the parts in which two books differ."""
+    if old is new:
+        return frozenset()
+    names = (field.name for field in fields(Book))
+    return frozenset(
+        name
+        for name in names
+        if getattr(old, name) is not getattr(new, name) and getattr(old, name) != getattr(new, name)
+    )
+
+
+def is_outdated(of: Book | None, book: Book, names: frozenset[str]) -> bool:
+    """Whether what was made of one book, if any, is not that of another: one of these parts differs."""
+    return of is not None and bool(changed_fields(of, book) & names)
+
+
+def with_faults(
+    task: Callable[..., Any], book: Book, told: tuple[Fault, ...], **tools: Any
+) -> tuple[Any, tuple[Fault, ...]]:
+    """Run a task; its result, and what it could not do as asked that `told` does not say already."""
+    result = task(book, **tools)
+    return result, further_faults(told, result.faults) if result.faults else ()
+
+
+def reason(error: BaseException) -> str:
+    """Why, in the words of the error; its kind where it has none."""
+    return str(error).strip() or type(error).__name__
+
+
+class Valued:
+    """The standing of a book that changes.
+
+    Attributes
+    ----------
+    standing : Standing or None
+        Of the book, or of a former version of it while `is_stale`.
+    faults : tuple of Fault
+        What the valuation could not do as asked, beside what was told before.
+    failure : str
+        Why the book as it stands could not be valued; empty where it could, or while it is being valued.
+    is_stale : bool
+        Whether `standing` is that of a former version.
+    """
+
+    def __init__(
+        self,
+        jobs: Jobs,
+        *,
+        title: str,
+        value: Callable[[], Callable[..., Standing]],
+        names: frozenset[str],
+        on_changed: Callable[[], None],
+        on_failed: Callable[[str], None],
+    ) -> None:
+        """Start without a book.
+
+        Parameters
+        ----------
+        jobs : Jobs
+        title : str
+            Of the job.
+        value : callable
+            Gives the task that values a book.
+        names : frozenset of str
+            Parts of a book that its standing follows from.
+        on_changed : callable
+            Called when a standing came, or failed to.
+        on_failed : callable
+            Called with the reason, after `on_changed`.
+        """
+        self._jobs = jobs
+        self._title = title
+        self._value = value
+        self._names = names
+        self._on_changed = on_changed
+        self._on_failed = on_failed
+        self._book: Book | None = None
+        self._told: tuple[Fault, ...] = ()
+        self._of: Book | None = None
+        self._job: Job | None = None
+        self._job_book: Book | None = None
+        self.standing: Standing | None = None
+        self.faults: tuple[Fault, ...] = ()
+        self.failure = ""
+        self.is_stale = False
+
+    @property
+    def is_running(self) -> bool:
+        """Whether a valuation runs."""
+        return self._job is not None
+
+    def stop(self) -> None:
+        """Cancel what runs."""
+        if self._job is not None:
+            self._jobs.cancel(self._job)
+        self._job = self._job_book = None
+
+    def forget(self) -> None:
+        """Cancel what runs and drop what there is."""
+        self.stop()
+        self.standing = self._book = self._of = None
+        self.faults = ()
+        self.failure = ""
+        self.is_stale = False
+
+    def follow(self, book: Book, told: tuple[Fault, ...]) -> None:
+        """See to it that the standing comes to be that of `book`; faults `told` before are not repeated."""
+        self._book, self._told = book, told
+        self.is_stale = is_outdated(self._of, book, self._names)
+        if self.standing is not None and not self.is_stale:
+            self.stop()
+            self.failure = ""
+        elif self._job is None or is_outdated(self._job_book, book, self._names):
+            self.restart()
+
+    def restart(self) -> None:
+        """Value the book once more."""
+        book = self._book
+        if book is None:
+            return
+        self.failure = ""
+        self._job_book = book
+        # The former job, if one runs, is cancelled by the key; its callbacks no longer know this book.
+        self._job = self._jobs.start(
+            self._title,
+            partial(with_faults, self._value(), book, self._told),
+            on_done=partial(self._done, book),
+            on_failed=partial(self._failed, book),
+            exclusive_key=f"{self._title} of {id(self)}",
+        )
+
+    def _done(self, book: Book, result: tuple[Standing, tuple[Fault, ...]]) -> None:
+        if book is not self._job_book or self._book is None:
+            return
+        self._job = self._job_book = None
+        (self.standing, self.faults), self._of = result, book
+        self.is_stale = is_outdated(book, self._book, self._names)
+        self._on_changed()
+
+    def _failed(self, book: Book, error: BaseException) -> None:
+        if book is not self._job_book:
+            return
+        self._job = self._job_book = None
+        self.failure = reason(error)
+        self._on_changed()
+        self._on_failed(self.failure)
