@@ -2,150 +2,17 @@
 
 from __future__ import annotations
 
-import math
-from collections.abc import Sequence
-from dataclasses import dataclass
-
 from PySide6.QtCore import QEvent, QRect, QSize, Qt, Signal
 from PySide6.QtGui import QEnterEvent, QFont, QFontMetrics, QKeyEvent, QPainter, QPaintEvent, QPen
 from PySide6.QtWidgets import QAbstractButton, QHBoxLayout, QSizePolicy, QVBoxLayout, QWidget
 
-from desk.valuation.records import Standing
 from desk.window.document import Document
+from desk.window.figures import UNKNOWN, Figure, figures_of
 from desk.window.parts import numbers
 from desk.window.parts.labels import ElidedLabel
-from desk.window.parts.numbers import Scale
 from desk.window.parts.theme import GAP, HALF, WIDE, Theme, ThemeSwitch, keep_look, mixed, soft_font, tabular
 
-__all__ = ["Figure", "FigureButton", "Headline", "figures_of"]
-
-_UNKNOWN = "n/a"
-
-
-@dataclass(frozen=True)
-class Figure:
-    """One key figure as it is shown.
-
-    Attributes
-    ----------
-    key : str
-        Names it, and the rows that make it up.
-    label, value, unit : str
-    note : str
-        What it means, in a few words.
-    series : str
-        Role of its mark in the theme; empty for none.
-    """
-
-    key: str
-    label: str
-    value: str
-    unit: str
-    note: str
-    series: str = ""
-
-
-def _shared_scale(values: Sequence[float]) -> tuple[Scale, int]:
-    """A scale and decimals in which amounts of several sizes can be added up by eye."""
-    largest = max((abs(value) for value in values if math.isfinite(value)), default=0.0)
-    scale = numbers.scale_for(largest)
-    if largest < 10 * scale.factor:
-        scale = numbers.scale_for(largest / 10)
-    return scale, 1 if largest >= 1_000 * scale.factor else 2
-
-
-def _money(value: float, currency: str, scale: Scale, digits: int) -> tuple[str, str]:
-    if not math.isfinite(value):
-        return _UNKNOWN, currency
-    scaled = numbers.money_scaled(value, currency, scale=scale, digits=digits)
-    return scaled.text, scaled.unit
-
-
-def _counted(count: int, one: str, more: str) -> str:
-    return f"{numbers.integer(count)} {one if count == 1 else more}"
-
-
-def _sign_note(value: float, below: str, none: str, above: str) -> str:
-    if not math.isfinite(value):
-        return "not defined here"
-    return below if value < 0 else above if value > 0 else none
-
-
-def figures_of(standing: Standing | None, currency: str = "") -> tuple[Figure, ...]:
-    """The six key figures of a standing; without one, what they will be.
-
-    Parameters
-    ----------
-    standing : Standing or None
-    currency : str, optional
-        Of the book, where there is no standing yet.
-    """
-    if standing is None:
-        units = (currency, currency, currency, "", "years", currency)
-        keys = ("assets", "liabilities", "surplus", "funding_ratio", "duration_gap", "dv01_gap")
-        labels = ("Assets", "Liabilities", "Surplus", "Funding ratio", "Duration gap", "DV01 gap")
-        marks = ("assets", "liabilities", "surplus", "", "", "")
-        return tuple(
-            Figure(key, label, numbers.NOT_AVAILABLE, unit, "", mark)
-            for key, label, unit, mark in zip(keys, labels, units, marks, strict=True)
-        )
-    currency = standing.currency
-    lines = {
-        side: sum(line.side.value == side for line in standing.lines) for side in ("assets", "liabilities")
-    }
-    sides = (standing.assets.present_value, standing.liabilities.present_value)
-    scale, digits = _shared_scale(sides)
-    assets, asset_unit = _money(sides[0], currency, scale, digits)
-    owed, owed_unit = _money(sides[1], currency, scale, digits)
-    surplus, surplus_unit = _money(standing.surplus, currency, scale, digits)
-    dv01, dv01_unit = _money(standing.dv01_gap, currency, numbers.scale_for(standing.dv01_gap), 2)
-    ratio = standing.funding_ratio
-    gap = standing.duration_gap
-    return (
-        Figure("assets", "Assets", assets, asset_unit, _counted(lines["assets"], "line", "lines"), "assets"),
-        Figure(
-            "liabilities",
-            "Liabilities",
-            owed,
-            owed_unit,
-            _counted(lines["liabilities"], "line", "lines"),
-            "liabilities",
-        ),
-        Figure(
-            "surplus",
-            "Surplus",
-            surplus,
-            surplus_unit,
-            _sign_note(standing.surplus, "in deficit", "in balance", "in surplus"),
-            "surplus",
-        ),
-        Figure(
-            "funding_ratio",
-            "Funding ratio",
-            numbers.number(100 * ratio, 1) if math.isfinite(ratio) else _UNKNOWN,
-            "%",
-            "of liabilities" if math.isfinite(ratio) else "no liabilities",
-        ),
-        Figure(
-            "duration_gap",
-            "Duration gap",
-            numbers.years(gap) if math.isfinite(gap) else _UNKNOWN,
-            "years",
-            _sign_note(gap, "assets shorter", "matched", "assets longer"),
-        ),
-        Figure(
-            "dv01_gap",
-            "DV01 gap",
-            dv01,
-            f"{dv01_unit} a bp",
-            _sign_note(
-                standing.dv01_gap,
-                "gains when rates rise",
-                "unmoved by rates",
-                "loses when rates rise",
-            ),
-        ),
-    )
+__all__ = ["FigureButton", "Headline"]
 
 
 class FigureButton(QAbstractButton):
@@ -169,18 +36,21 @@ class FigureButton(QAbstractButton):
 
     @property
     def note(self) -> str:
-        """The line under the figure: the state where there is one to tell, what it means otherwise."""
-        return self._state or self._figure.note
+        """The line under the figure: its state where there is one to tell, its change, or what it means."""
+        return self._state or self._figure.change or self._figure.note
 
     def show_figure(self, figure: Figure, state: str) -> None:
         """Show a figure; `state` says in words why it is not to be relied on, if it is not."""
         self._figure, self._state = figure, state
         self.setText(figure.label)
-        value = "not available" if figure.value in (numbers.NOT_AVAILABLE, _UNKNOWN) else figure.value
+        value = "not available" if figure.value in (numbers.NOT_AVAILABLE, UNKNOWN) else figure.value
         told = f"{figure.label}: {value} {figure.unit}".strip()
-        self.setAccessibleName(f"{told}, {self.note}" if self.note else told)
+        parts = (state,) if state else (figure.change_in_words, figure.note)
+        said = ", ".join((told, *(part for part in parts if part)))
+        self.setAccessibleName(said)
         self.setAccessibleDescription("Opens the rows that make it up.")
-        self.setToolTip(f"{told}\nOpens the rows that make it up.")
+        tip = f"{told}\n{figure.change_in_words}" if figure.change_in_words and not state else told
+        self.setToolTip(f"{tip}\nOpens the rows that make it up.")
         self.updateGeometry()
         self.update()
 
@@ -245,7 +115,8 @@ class FigureButton(QAbstractButton):
         painter.end()
 
     def _paint_note(self, painter: QPainter, theme: Theme, place: QRect, metrics: QFontMetrics) -> None:
-        painter.setPen(theme.text("mild") if self._state else theme.ink_soft)
+        plain = theme.ink if self._figure.change else theme.ink_soft
+        painter.setPen(theme.text("mild") if self._state else plain)
         flat = int(Qt.AlignmentFlag.AlignLeft | Qt.AlignmentFlag.AlignVCenter)
         painter.drawText(place, flat, metrics.elidedText(self.note, _RIGHT, place.width()))
 
@@ -352,15 +223,28 @@ class Headline(QWidget):
             "could not be valued": f"Could not be valued: {document.standing_failure}",
             "being valued": "Being valued…",
             "out of date": "Out of date: being valued again…" if document.is_valuing else "Out of date",
-        }.get(state, "Figures are up to date" if book is not None else "")
+        }.get(state, self._compared_text() if book is not None else "")
         self._state.set_text(told)
-        keep_look(self._state, "grave" if document.standing_failure else "mild" if state else "soft")
+        is_mild = bool(state or (document.is_comparing and document.second_failure))
+        keep_look(self._state, "grave" if document.standing_failure else "mild" if is_mild else "soft")
         self._state.style().unpolish(self._state)
         self._state.style().polish(self._state)
         currency = book.basis.currency if book is not None else ""
-        for figure in figures_of(document.standing, currency):
+        compared_with = document.comparison if document.comparison_is_current else None
+        for figure in figures_of(document.standing, currency, compared_with=compared_with):
             self._buttons[figure.key].show_figure(figure, state)
             self._buttons[figure.key].setEnabled(book is not None)
+
+    def _compared_text(self) -> str:
+        """What the figures are, where there is nothing to say against them."""
+        document = self._document
+        if not document.is_comparing:
+            return "Figures are up to date"
+        if document.second_failure:
+            return f"The second basis could not be valued: {document.second_failure}"
+        if document.comparison_is_current:
+            return "Compared with the second basis"
+        return "The second basis is being valued…"
 
     def take_focus(self) -> None:
         """Give the keyboard to the first figure."""
