@@ -2,26 +2,34 @@
 
 from __future__ import annotations
 
+from collections.abc import Iterator
+from contextlib import contextmanager
 from dataclasses import dataclass, field
 from datetime import date
 from enum import StrEnum
 from functools import cached_property
 
 import numpy as np
+from numpy.typing import ArrayLike
 
 from desk.book.arrays import FloatArray, owned_floats, same_fields
+from desk.book.bond_curve import bond_curve, bond_quotes, exact_fit
 from desk.book.curve_source import BondFit, CurveBonds, CurveParameters
 from desk.book.inflation import Inflation
+from desk.book.stated_curve import continuous_quotes, formula_curve, require_spreads, stated_flat_curve
 from desk.rates.bootstrap import bootstrap
 from desk.rates.compounding import Compounding, from_continuous, to_continuous
-from desk.rates.curve import Curve, Interpolation
+from desk.rates.curve import Curve, DiscountCurve, Interpolation
 from desk.rates.curve_error import CurveError
 from desk.rates.day_count import TIME_COUNTS, DayCount
+from desk.rates.fitting import CurveFit
 from desk.rates.quoted_flows import QuotedFlows
 from desk.rates.quotes import par_flows, swap_flows, zero_flows
 from desk.rates.smith_wilson import Extrapolation, smith_wilson
 
 __all__ = ["Basis", "CurveKind", "LiabilityMethod"]
+
+_BONDS, _LIABILITY_BONDS = "bonds", "liability bonds"
 
 
 class CurveKind(StrEnum):
@@ -37,6 +45,9 @@ class CurveKind(StrEnum):
     """Parameters of the formula of that name."""
     FLAT = "flat"
     """One rate for all terms."""
+
+
+_QUOTED = (CurveKind.ZERO, CurveKind.PAR, CurveKind.SWAP)
 
 
 class LiabilityMethod(StrEnum):
@@ -169,47 +180,215 @@ class Basis:
 
         Raises
         ------
-        ValueError
-            If a quote is not one: a `desk.rates.curve_error.CurveError`, which names the quotes.
+        CurveError
+            If a quote is not one, which `rows` names, or the curve is one that has no quotes.
         """
+        if self.curve_kind is CurveKind.BONDS:
+            return self.quoted_bonds
+        if self.curve_kind not in _QUOTED:
+            raise CurveError(f"a {self.curve_kind} curve has no quotes", "Choose another kind of curve.")
         if self.curve_kind is CurveKind.ZERO:
-            return zero_flows(self.terms, to_continuous(self.rates, self.compounding))
+            return zero_flows(self.terms, continuous_quotes(self.rates, self.compounding))
         if self.curve_kind is CurveKind.SWAP:
             return swap_flows(self.terms, self.rates, payments_per_year=self.quote_payments)
         rates = self.rates
         if self.quote_payments != self.compounding.per_year:
-            rates = from_continuous(to_continuous(rates, self.compounding), _periods(self.quote_payments))
+            rates = continuous_quotes(rates, self.compounding)
+            rates = from_continuous(rates, _periods(self.quote_payments))
         return par_flows(self.terms, rates, payments_per_year=self.quote_payments)
 
     @cached_property
-    def curve(self) -> Curve:
-        """The curve the quotes give.
+    def quoted_bonds(self) -> QuotedFlows:
+        """What the bonds of the curve pay and are worth, per 100 of nominal, in the order of the sheet.
 
         Raises
         ------
-        ValueError
-            If the quotes give no curve: the message says which and why. A `desk.rates.curve_error.CurveError`
-            also numbers them.
+        CurveError
+            If a bond is not one; `rows` names the bonds.
         """
-        if self.extrapolation is Extrapolation.SMITH_WILSON:
-            if self.ultimate_forward_rate is None:
+        with _rows_of(_BONDS):
+            return bond_quotes(self.bonds, valuation_date=self.valuation_date, day_count=self.day_count)
+
+    @cached_property
+    def curve(self) -> DiscountCurve:
+        """The curve of the basis.
+
+        A curve of bonds or quotes stops at the last liquid point, where there is one, and goes on as
+        `extrapolation` says; a fitted or stated formula goes on by itself.
+
+        Raises
+        ------
+        CurveError
+            If what is stated gives no curve: what was found, what would mend it, and which quotes or
+            bonds are at fault.
+        """
+        kind = self.curve_kind
+        if kind in (CurveKind.NELSON_SIEGEL, CurveKind.SVENSSON, CurveKind.FLAT):
+            if self.extrapolation is Extrapolation.SMITH_WILSON:
                 raise CurveError(
-                    "there is no ultimate forward rate", "Give it, or let the last forward rate go on."
+                    f"a {kind} curve has no quotes from which it could go on by Smith-Wilson",
+                    "Give bonds or rates by term, or take the other extrapolation.",
                 )
-            return smith_wilson(
-                self.quoted_flows,
-                ultimate_forward_rate=self.ultimate_forward_rate,
+            if kind is CurveKind.FLAT:
+                return stated_flat_curve(self.flat_rate, compounding=self.compounding, name="flat rate")
+            second = kind is CurveKind.SVENSSON
+            return formula_curve(self.parameters, second_hump=second, compounding=self.compounding)
+        if kind is CurveKind.BONDS:
+            fit = self.curve_fit
+            assert fit is not None
+            return fit.curve
+        if self.extrapolation is Extrapolation.SMITH_WILSON:
+            return self._smith_wilson(self.quoted_flows)
+        flows = self.quoted_flows
+        used = len(flows) if self.last_liquid_point is None else len(flows.liquid(self.last_liquid_point))
+        if kind is not CurveKind.ZERO:
+            return bootstrap(flows.leading(used), interpolation=self.interpolation)
+        flows.require_rising_terms()
+        rates = to_continuous(self.rates[:used], self.compounding)
+        return Curve(self.terms[:used], rates, self.interpolation)
+
+    @cached_property
+    def curve_fit(self) -> CurveFit | None:
+        """The curve of bonds and how far each is from it; None where the curve is not one of bonds.
+
+        Raises
+        ------
+        CurveError
+            If the bonds give no curve; `rows` names them.
+        """
+        if self.curve_kind is not CurveKind.BONDS:
+            return None
+        flows = self.quoted_bonds
+        assert self.bonds is not None
+        with _rows_of(_BONDS):
+            if self.extrapolation is Extrapolation.SMITH_WILSON:
+                return exact_fit(
+                    self.bonds, flows, self._smith_wilson, last_liquid_point=self.last_liquid_point
+                )
+            return bond_curve(
+                self.bonds,
+                flows,
+                fit=self.bond_fit,
+                interpolation=self.interpolation,
                 last_liquid_point=self.last_liquid_point,
-                convergence_point=self.convergence_point,
-                tolerance=self.convergence_tolerance,
             )
-        used = self.terms.size
+
+    def _smith_wilson(self, flows: QuotedFlows) -> Curve:
+        if self.ultimate_forward_rate is None:
+            raise CurveError(
+                "there is no ultimate forward rate", "Give it, or let the last forward rate go on."
+            )
+        return smith_wilson(
+            flows,
+            ultimate_forward_rate=self.ultimate_forward_rate,
+            last_liquid_point=self.last_liquid_point,
+            convergence_point=self.convergence_point,
+            tolerance=self.convergence_tolerance,
+        )
+
+    @property
+    def last_quoted_term(self) -> float | None:
+        """The last term for which a quote or bond of the curve speaks [years].
+
+        Beyond it the curve is extrapolated. None for a curve of parameters or one rate, which holds as it is
+        stated for every term.
+
+        Raises
+        ------
+        CurveError
+            If the quotes give no curve.
+        """
+        if self.curve_kind not in (*_QUOTED, CurveKind.BONDS):
+            return None
+        fit = self.curve_fit
+        if fit is not None:
+            return float(self.quoted_bonds.term[fit.is_used].max())
+        terms = self.quoted_flows.term
         if self.last_liquid_point is not None:
-            used = len(self.quoted_flows.liquid(self.last_liquid_point))
-        if self.curve_kind is CurveKind.ZERO:
-            rates = to_continuous(self.rates[:used], self.compounding)
-            return Curve(self.terms[:used], rates, self.interpolation)
-        return bootstrap(self.quoted_flows.leading(used), interpolation=self.interpolation)
+            terms = self.quoted_flows.liquid(self.last_liquid_point).term
+        return float(terms.max())
+
+    @cached_property
+    def liability_curve(self) -> DiscountCurve:
+        """What liabilities are discounted on, before any spread: `curve`, the corporate bonds' or a flat one.
+
+        All the corporate bonds are used: the last liquid point and the extrapolation are those of `curve`.
+
+        Raises
+        ------
+        CurveError
+            If what is stated gives no curve; its words say that it is that of the liabilities.
+        """
+        if self.liability_method is LiabilityMethod.EXPECTED_RETURN:
+            return stated_flat_curve(
+                self.expected_return, compounding=Compounding.ANNUAL, name="expected return on the assets"
+            )
+        fit = self.liability_curve_fit
+        return self.curve if fit is None else fit.curve
+
+    @cached_property
+    def liability_curve_fit(self) -> CurveFit | None:
+        """The corporate bonds' curve and how far each bond is from it; None on any other liability basis.
+
+        Raises
+        ------
+        CurveError
+            If the bonds give no curve; `rows` names them.
+        """
+        if self.liability_method is not LiabilityMethod.CORPORATE_BONDS:
+            return None
+        flows = self.liability_bonds_quoted
+        assert self.liability_bonds is not None
+        with _rows_of(_LIABILITY_BONDS, prefix=True):
+            return bond_curve(
+                self.liability_bonds, flows, fit=self.liability_fit, interpolation=self.interpolation
+            )
+
+    @cached_property
+    def liability_bonds_quoted(self) -> QuotedFlows:
+        """What the corporate bonds pay and are worth; see `quoted_bonds`."""
+        with _rows_of(_LIABILITY_BONDS, prefix=True):
+            return bond_quotes(
+                self.liability_bonds, valuation_date=self.valuation_date, day_count=self.day_count
+            )
+
+    def liability_spread_at(self, time: ArrayLike) -> FloatArray:
+        """What liabilities are discounted at over `curve`, `liability_spread` included and before any beta.
+
+        Parameters
+        ----------
+        time : array_like, shape (n,)
+            [years], at least 0.
+
+        Returns
+        -------
+        ndarray, shape (n,)
+            Continuously compounded [1/year].
+
+        Raises
+        ------
+        CurveError
+            If what is stated gives no curve or no spreads.
+        """
+        times = np.asarray(time, dtype=np.float64)
+        if self.liability_method is LiabilityMethod.CURVE:
+            return np.full(times.shape, self.liability_spread)
+        if self.liability_method is LiabilityMethod.TERM_SPREADS:
+            require_spreads(self.liability_terms, self.liability_spreads)
+            own = np.interp(times, self.liability_terms, self.liability_spreads)
+        else:
+            own = self.liability_curve.zero(times) - self.curve.zero(times)
+        return np.asarray(own + self.liability_spread)
+
+
+@contextmanager
+def _rows_of(subject: str, *, prefix: bool = False) -> Iterator[None]:
+    """Errors say of what their rows are rows; with `prefix` in their words too."""
+    try:
+        yield
+    except CurveError as error:
+        found = f"{subject}: {error.found}" if prefix else error.found
+        raise CurveError(found, error.mend, rows=error.rows, subject=subject) from error
 
 
 def _periods(per_year: int) -> Compounding:

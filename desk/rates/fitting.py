@@ -3,17 +3,18 @@
 from __future__ import annotations
 
 from collections.abc import Callable
-from dataclasses import dataclass
+from dataclasses import dataclass, field
 from itertools import combinations, product
 
 import numpy as np
 from numpy.typing import NDArray
 
+from desk.rates.curve import DiscountCurve
 from desk.rates.curve_error import CurveError
 from desk.rates.parametric import NelsonSiegel, Svensson, loadings
 from desk.rates.quoted_flows import QuotedFlows, flow_yields
 
-__all__ = ["CurveFit", "fit_nelson_siegel", "fit_svensson"]
+__all__ = ["CurveFit", "fit_nelson_siegel", "fit_svensson", "measured_fit"]
 
 FloatArray = NDArray[np.float64]
 
@@ -34,28 +35,75 @@ class CurveFit:
 
     Attributes
     ----------
-    curve : NelsonSiegel or Svensson
+    curve : DiscountCurve
+        A NelsonSiegel or Svensson where one was fitted.
     residual_price : ndarray, shape (m,)
         Value on the curve less the value quoted, bond by bond, in the unit of the quotes.
     residual_bp : ndarray, shape (m,)
         Yield at the value on the curve less yield at the value quoted, both continuous [basis points].
     rmse_bp : float
-        Root of the mean square of `residual_bp` [basis points].
+        Root of the mean square of `residual_bp` over the bonds used [basis points].
     largest_bp : float
-        The largest absolute value of `residual_bp` [basis points].
+        The largest absolute value of `residual_bp` among them [basis points].
     converged : bool
         Whether the search came to rest.
     evaluations : int
         How often the bonds were valued in the last part of the search.
+    is_used : ndarray of bool, shape (m,)
+        Whether the curve was fitted to the bond: not to those beyond a last liquid point.
     """
 
-    curve: NelsonSiegel | Svensson
+    curve: DiscountCurve
     residual_price: FloatArray
     residual_bp: FloatArray
     rmse_bp: float
     largest_bp: float
-    converged: bool
-    evaluations: int
+    converged: bool = True
+    evaluations: int = 0
+    is_used: NDArray[np.bool_] = field(default_factory=lambda: np.ones(0, dtype=np.bool_))
+
+    def __post_init__(self) -> None:
+        """Every bond is used where nothing else is said."""
+        if self.is_used.shape != self.residual_bp.shape:
+            object.__setattr__(self, "is_used", np.ones(self.residual_bp.shape, dtype=np.bool_))
+        self.is_used.flags.writeable = False
+
+
+def measured_fit(
+    curve: DiscountCurve,
+    flows: QuotedFlows,
+    *,
+    is_used: NDArray[np.bool_] | None = None,
+    converged: bool = True,
+    evaluations: int = 0,
+) -> CurveFit:
+    """How far any curve is from bonds.
+
+    Parameters
+    ----------
+    curve : DiscountCurve
+    flows : QuotedFlows
+    is_used : ndarray of bool, shape (m,), optional
+        The bonds it was fitted to, at least one; all of them when left out.
+    converged : bool
+    evaluations : int
+    """
+    used = np.ones(len(flows), dtype=np.bool_) if is_used is None else is_used.copy()
+    worth = flows.values(curve)
+    residual_price = worth - flows.target
+    residual_bp = 1e4 * (flow_yields(flows, target=worth) - flow_yields(flows))
+    for array in (residual_price, residual_bp):
+        array.flags.writeable = False
+    return CurveFit(
+        curve=curve,
+        residual_price=residual_price,
+        residual_bp=residual_bp,
+        rmse_bp=float(np.sqrt(np.mean(residual_bp[used] ** 2))),
+        largest_bp=float(np.abs(residual_bp[used]).max()),
+        converged=converged,
+        evaluations=evaluations,
+        is_used=used,
+    )
 
 
 def fit_nelson_siegel(flows: QuotedFlows) -> CurveFit:
@@ -124,20 +172,7 @@ def _fitted(
     problem = _Problem(flows, yields, humps)
     best = problem.solved()
     curve = make(best.numbers)
-    worth = flows.values(curve)
-    residual_price = worth - flows.target
-    residual_bp = 1e4 * (flow_yields(flows, target=worth) - yields)
-    for array in (residual_price, residual_bp):
-        array.flags.writeable = False
-    return CurveFit(
-        curve=curve,
-        residual_price=residual_price,
-        residual_bp=residual_bp,
-        rmse_bp=float(np.sqrt(np.mean(residual_bp**2))),
-        largest_bp=float(np.abs(residual_bp).max()),
-        converged=best.converged,
-        evaluations=best.evaluations,
-    )
+    return measured_fit(curve, flows, converged=best.converged, evaluations=best.evaluations)
 
 
 @dataclass(frozen=True, eq=False)

@@ -103,6 +103,15 @@ class QuotedFlows:
         end = self.first_row[count] if count < len(self) else self.instrument.size
         return QuotedFlows(self.instrument[:end], self.time[:end], self.amount[:end], self.target[:count])
 
+    def taken(self, chosen: ArrayLike) -> QuotedFlows:
+        """Some of the instruments, at least one, in the order of `chosen`, shape (k,)."""
+        rows = np.asarray(chosen, dtype=np.int64)
+        ends = np.append(self.first_row[1:], self.instrument.size)
+        count = (ends - self.first_row)[rows]
+        own = np.repeat(np.arange(rows.size), count)
+        place = np.arange(own.size) - np.repeat(np.cumsum(count) - count, count) + self.first_row[rows][own]
+        return QuotedFlows(own, self.time[place], self.amount[place], self.target[rows])
+
     def liquid(self, last_liquid_point: float) -> QuotedFlows:
         """The instruments that end at or before the last liquid point [years].
 

@@ -143,7 +143,7 @@ def bond_flows(
     frequency: ArrayLike = 2,
     prices: ArrayLike | None = None,
     yields: ArrayLike | None = None,
-    is_clean: bool = False,
+    is_clean: ArrayLike = False,
     day_count: DayCount | None = None,
     valuation_date: date | None = None,
     time_count: DayCount = DayCount.ACT_365F,
@@ -162,7 +162,7 @@ def bond_flows(
         Per 100 of nominal.
     yields : array_like, shape (m,), optional
         Compounded `frequency` times a year [1/year]. A bond has a price or a yield, the other being NaN.
-    is_clean : bool
+    is_clean : array_like of bool, shape () or (m,)
         Whether the prices are without accrued interest.
     day_count : DayCount, optional
         Of the accrued interest, with dates alone. By default Act/Act ICMA.
@@ -201,8 +201,10 @@ def bond_flows(
     _refuse(bond_yield <= -per_year, "the yield leaves nothing of the principal", "Give a higher yield.")
 
     part_left = schedule.periods[schedule.first_row]
-    if is_clean:
-        price = price + 100.0 * coupon * _accrued_years(schedule, part_left, per_year, day_count)
+    clean = np.broadcast_to(np.asarray(is_clean, dtype=np.bool_), coupon.shape)
+    if clean.any():
+        accrued = 100.0 * coupon * _accrued_years(schedule, part_left, per_year, day_count)
+        price = np.where(clean, price + accrued, price)
     with np.errstate(over="ignore", under="ignore"):
         growth = np.log1p(np.where(np.isfinite(bond_yield), bond_yield, 0.0) / per_year)
         of_yield = np.add.reduceat(amount * np.exp(-growth[own] * schedule.periods), schedule.first_row)
