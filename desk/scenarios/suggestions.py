@@ -41,6 +41,7 @@ _FIXED = {
 }
 _VOLATILITY = 0.009
 _SQUARE_ROOT_VOLATILITY = 0.05
+_LONG = 30.0  # years: the long end of a curve that is stated for every term
 
 
 def suggested_model(name: ModelName, basis: Basis, former: RatesModel | None = None) -> RatesModel:
@@ -84,5 +85,7 @@ def _begin(item: str, basis: Basis, *, square_root: bool) -> float:
     if item in _FIXED:
         return _FIXED[item]
     curve = basis.curve
-    rate = float(curve.forward(0.0, 0.0) if item == "starting_rate" else curve.zero(curve.last_term))
+    rate = float(
+        curve.forward(0.0, 0.0) if item == "starting_rate" else curve.zero(basis.last_quoted_term or _LONG)
+    )
     return max(round(rate, 4), 0.001) if square_root else round(rate, 4)

@@ -127,8 +127,8 @@ def test_the_basis_makes_its_curve() -> None:
 @pytest.mark.parametrize(
     ("change", "message"),
     [
-        ({"terms": [10.0, 1.0]}, "`terms` must rise strictly"),
-        ({"rates": [0.02, -1.5]}, "`rate` must be above -100 % when compounded annual"),
+        ({"terms": [10.0, 1.0]}, "the quote at 1 years stands after the one at 10 years"),
+        ({"rates": [0.02, -1.5]}, "not above -100 %, compounded annual"),
     ],
 )
 def test_a_basis_without_a_curve_says_why(change: dict[str, object], message: str) -> None:

@@ -358,7 +358,7 @@ def test_a_negative_curve_is_valued() -> None:
 
 
 def test_a_basis_without_a_curve_is_refused() -> None:
-    with pytest.raises(ValueError, match="`terms` must rise strictly"):
+    with pytest.raises(ValueError, match="two quotes stand at 3 years"):
         stand(replace(small_book(), basis=replace(basis(), terms=np.array([1, 2, 3, 3, 5, 6, 7.0]))))
 
 

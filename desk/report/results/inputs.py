@@ -39,7 +39,7 @@ def plan_basis(book: Book, curve_plan: SheetPlan, checks: Checks) -> SheetPlan:
     plan = SheetPlan(
         "Basis and curve",
         "Basis and curve",
-        f"Beyond {basis.curve.terms[-1]:g} years the curve goes on {_goes_on(basis)}. "
+        f"Beyond {basis.last_quoted_term or 0.0:g} years the curve goes on {_goes_on(basis)}. "
         "Rates inside the program are continuously compounded.",
         title_rows="1:3",
     )
@@ -157,7 +157,7 @@ def _quotes(plan: SheetPlan, basis: Basis, periods: str, checks: Checks) -> None
     discount = basis.curve.discount(basis.terms)
     # Zero rates are restated one by one; other quotes are solved for together, and the zero rate is that of
     # the discount factor that came out.
-    is_restated = basis.curve_kind is CurveKind.ZERO and basis.curve.terms.size == basis.terms.size
+    is_restated = basis.curve_kind is CurveKind.ZERO and basis.last_quoted_term == basis.terms[-1]
     continuous = (
         to_continuous(basis.rates, basis.compounding) if is_restated else basis.curve.zero(basis.terms)
     )
