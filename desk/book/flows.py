@@ -5,11 +5,15 @@ from __future__ import annotations
 from collections.abc import Sequence
 from dataclasses import dataclass
 from enum import StrEnum
+from typing import TYPE_CHECKING
 
 import numpy as np
 from numpy.typing import ArrayLike, NDArray
 
 from desk.book.arrays import FloatArray, IntArray, owned_dates, owned_floats, owned_integers, same_fields
+
+if TYPE_CHECKING:
+    from desk.book.inflation import Indexation
 
 __all__ = ["FlowTable", "PricedFlows", "Side"]
 
@@ -140,6 +144,14 @@ class PricedFlows:
     payment : ndarray, shape (n,), optional
         What the row pays, as projected on today's curve [currency]; by default its amount. By line the two
         are worth the same.
+    real_amount : ndarray, shape (n,), optional
+        The amount in today's money: that of a row that follows no index is its amount [currency].
+    index_class : ndarray of int, shape (n,), optional
+        How each row's real amount grows, as an index into `indexations`; -1 where it does not. Given where,
+        and only where, `real_amount` is. ``amount`` is the real amount times the growth expected today, and
+        a payment that grows is its amount.
+    indexations : tuple of Indexation
+        The classes, each with its lag.
     """
 
     side: Side
@@ -150,6 +162,9 @@ class PricedFlows:
     spread: FloatArray
     is_flow: NDArray[np.bool_]
     payment: FloatArray | None = None
+    real_amount: FloatArray | None = None
+    index_class: IntArray | None = None
+    indexations: tuple[Indexation, ...] = ()
 
     def __post_init__(self) -> None:
         """Own the arrays and check that they go together."""
@@ -169,6 +184,22 @@ class PricedFlows:
             object.__setattr__(self, "payment", owned_floats(self.payment))
             if self.paid.shape != shape:
                 raise ValueError("`payment` must be of the length of `amount`")
+        self._own_indexation()
+
+    def _own_indexation(self) -> None:
+        """Own the arrays of the indexation and check that they go together."""
+        object.__setattr__(self, "indexations", tuple(self.indexations))
+        if self.real_amount is None or self.index_class is None:
+            if self.real_amount is not None or self.index_class is not None:
+                raise ValueError("`real_amount` and `index_class` must be given together")
+            return
+        object.__setattr__(self, "real_amount", owned_floats(self.real_amount))
+        object.__setattr__(self, "index_class", owned_integers(self.index_class))
+        shape, of_row = self.time.shape, self.index_class
+        if self.real_amount.shape != shape or of_row.shape != shape:
+            raise ValueError("`real_amount` and `index_class` must be of the length of `amount`")
+        if of_row.size and not -1 <= of_row.min() <= of_row.max() < len(self.indexations):
+            raise ValueError("`index_class` must index `indexations`, or be -1")
 
     def __len__(self) -> int:
         """Number of rows."""

@@ -43,6 +43,8 @@ class HoldingKind(StrEnum):
     """Receives the fixed rate and pays the floating one."""
     PROPERTY = "property"
     """Like a fund: a market value and a stated duration."""
+    LINKED_BOND = "linked bond"
+    """A bond whose coupons and nominal follow a price index, with a lag."""
 
 
 class Amortisation(StrEnum):
@@ -75,11 +77,21 @@ _WITH_MATURITY = frozenset(
         HoldingKind.FLOATER,
         HoldingKind.BILL,
         HoldingKind.TERM_DEPOSIT,
+        HoldingKind.LINKED_BOND,
         *SWAP_KINDS,
     }
 )
-_WITH_COUPONS = frozenset({HoldingKind.BOND, HoldingKind.FLOATER, *SWAP_KINDS})
-_WITH_PRICE = frozenset({HoldingKind.BOND, HoldingKind.ZERO, HoldingKind.FLOATER, HoldingKind.BILL})
+_WITH_COUPONS = frozenset({HoldingKind.BOND, HoldingKind.LINKED_BOND, HoldingKind.FLOATER, *SWAP_KINDS})
+_WITH_FIRST_COUPON = _WITH_COUPONS - {*SWAP_KINDS}
+_WITH_PRICE = frozenset(
+    {
+        HoldingKind.BOND,
+        HoldingKind.ZERO,
+        HoldingKind.FLOATER,
+        HoldingKind.BILL,
+        HoldingKind.LINKED_BOND,
+    }
+)
 _WITH_DEFAULT = _WITH_PRICE | {HoldingKind.TERM_DEPOSIT}
 _AMORTISATIONS = {
     HoldingKind.BOND: frozenset(Amortisation),
@@ -112,9 +124,11 @@ class Holding:
     nominal : float
         What is still to be repaid of a bond, zero, bill, floater or term deposit; the amount on which a swap
         pays; balance of a deposit; 0 for a fund or property. Of an amortising holding it is what is
-        outstanding on the valuation date.
+        outstanding on the valuation date. Of a linked bond it is before indexation: the bond repays it times
+        its index ratio, and that times the growth of the index until then.
     coupon : float
-        Coupon rate of a bond, fixed rate of a swap, interest rate of a term deposit [1/year]; else 0.
+        Coupon rate of a bond, the real one of a linked bond; fixed rate of a swap; interest rate of a term
+        deposit [1/year]; else 0.
     frequency : int
         Coupons a year: 1, 2, 4 or 12; of the fixed leg of a swap. For a zero, the compounding of its yield.
     maturity : datetime.date or None
@@ -143,7 +157,8 @@ class Holding:
     amortisation : Amortisation
         Annuity is for bonds alone.
     price : float or None
-        Per 100 of nominal; of a bond, zero, bill or floater.
+        Per 100 of nominal; of a bond, zero, bill, floater or linked bond. That of a linked bond is in real
+        terms: times its index ratio it is money.
     price_kind : PriceKind
     discount_rate : float or None
         Bank discount rate of a bill [1/year]: ``price = 100 · (1 - discount_rate · time to maturity)`` in
@@ -161,6 +176,12 @@ class Holding:
         Probability of default within a year, from 0 to below 1.
     recovery_rate : float
         Part of the outstanding nominal received after a default, from 0 to 1.
+    index_lag_months : int
+        Of a linked bond: its payments follow the index as it stood so many months before, from 0 to 60.
+    index_ratio : float
+        Of a linked bond: the reference index today over that of its base date.
+    has_principal_floor : bool
+        A linked bond repays no less than its nominal, whatever the index has done. Its coupons have no floor.
     """
 
     name: str
@@ -187,6 +208,9 @@ class Holding:
     floating_day_count: DayCount | None = None
     default_rate: float = 0.0
     recovery_rate: float = 0.0
+    index_lag_months: int = 3
+    index_ratio: float = 1.0
+    has_principal_floor: bool = False
 
     def __post_init__(self) -> None:
         """Check that the holding has what its kind needs."""
@@ -218,7 +242,7 @@ class Holding:
         if self.kind is HoldingKind.TERM_DEPOSIT and self.coupon and start is None:
             raise ValueError(f"`start_date` must be given for the term deposit {self.name!r}")
         if first is not None:
-            if self.kind not in (HoldingKind.BOND, HoldingKind.FLOATER):
+            if self.kind not in _WITH_FIRST_COUPON:
                 raise ValueError(f"`first_coupon` must not be given for the {self.kind} {self.name!r}")
             if start is None or maturity is None:
                 raise ValueError(f"`start_date` must be given beside the first coupon of {self.name!r}")
@@ -237,13 +261,19 @@ class Holding:
             raise ValueError(f"`ex_dividend_days` must be given for {self.name!r}, bought ex-dividend")
 
     def _check_terms(self) -> None:
-        """Check amortisation and the floating leg."""
+        """Check amortisation, indexation and the floating leg."""
         allowed = _AMORTISATIONS.get(self.kind, _BULLET_ONLY)
         if self.amortisation not in allowed:
             names = " or ".join(kind.value for kind in Amortisation if kind in allowed)
             raise ValueError(f"`amortisation` must be {names} for the {self.kind} {self.name!r}")
         if self.amortisation is Amortisation.ANNUITY and self.coupon <= -self.frequency:
             raise ValueError(f"`coupon` must be above {-self.frequency} for the annuity {self.name!r}")
+        if not 0 <= self.index_lag_months <= 60:
+            raise ValueError(f"`index_lag_months` must be from 0 to 60 for {self.name!r}")
+        if not 0.0 < self.index_ratio < math.inf:
+            raise ValueError(f"`index_ratio` must be finite and above 0 for {self.name!r}")
+        if self.has_principal_floor and self.kind is not HoldingKind.LINKED_BOND:
+            raise ValueError(f"`has_principal_floor` must not be given for the {self.kind} {self.name!r}")
         if self.floating_frequency is not None and self.floating_frequency not in COUPON_FREQUENCIES:
             raise ValueError(f"`floating_frequency` must be 1, 2, 4 or 12 for {self.name!r}")
 

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import math
 from dataclasses import dataclass
 from enum import StrEnum
 from functools import cached_property
@@ -38,12 +39,19 @@ class Indexation:
         Of a rising line, a year [1/year].
     floor, cap : float or None
         Of a collared line, on each year's increase; None for none [1/year].
+    lag : float
+        How long the index takes to count, of a linked or collared line [years].
+    least : float or None
+        Of a linked line, the least growth from today to the payment, as a factor; None for none. A bond that
+        repays no less than its nominal has the inverse of its index ratio here.
     """
 
     kind: IndexationKind = IndexationKind.FIXED
     rise: float = 0.0
     floor: float | None = None
     cap: float | None = None
+    lag: float = 0.0
+    least: float | None = None
 
     def __post_init__(self) -> None:
         """Check that the terms go together."""
@@ -51,6 +59,15 @@ class Indexation:
             raise ValueError("`rise` must be above -1")
         if self.floor is not None and self.cap is not None and self.cap < self.floor:
             raise ValueError("`cap` must be at least `floor`")
+        if not 0.0 <= self.lag < math.inf:
+            raise ValueError("`lag` must be finite and at least 0")
+        if self.least is not None and not 0.0 <= self.least < math.inf:
+            raise ValueError("`least` must be finite and at least 0")
+
+    @property
+    def follows_index(self) -> bool:
+        """Whether expected inflation plays a part."""
+        return self.kind in (IndexationKind.LINKED, IndexationKind.COLLARED)
 
 
 @dataclass(frozen=True)
@@ -112,6 +129,10 @@ class Inflation:
         """Own the quotes."""
         object.__setattr__(self, "terms", owned_floats(self.terms))
         object.__setattr__(self, "rates", owned_floats(self.rates))
+        if not 0.0 <= self.volatility < math.inf:
+            raise ValueError("`volatility` must be finite and at least 0")
+        if self.recent is not None and not -1.0 < self.recent < math.inf:
+            raise ValueError("`recent` must be finite and above -1")
 
     def __eq__(self, other: object) -> bool:
         """Equal when every item is."""
@@ -131,3 +152,14 @@ class Inflation:
             If the quotes give no curve.
         """
         return Curve(self.terms, to_continuous(self.rates, Compounding.ANNUAL), self.interpolation)
+
+    @cached_property
+    def recent_rate(self) -> float:
+        """Inflation over the months just passed, continuously compounded [1/year].
+
+        Raises
+        ------
+        ValueError
+            If it is not stated and the quotes give no curve.
+        """
+        return float(self.curve.zero(0.0)) if self.recent is None else math.log1p(self.recent)

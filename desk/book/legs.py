@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Sequence
-from dataclasses import dataclass, fields
+from dataclasses import dataclass, fields, replace
 from datetime import date
 
 import numpy as np
@@ -25,7 +25,10 @@ _STEP_ONCE = 12
 
 @dataclass(frozen=True, eq=False)
 class Legs:
-    """Legs of holdings: one for each that pays, two for a swap; each array shape (k,), by holding.
+    """Legs of holdings: one for each that pays, two for some; each array shape (k,), by holding.
+
+    A swap has a fixed and a floating leg; a linked bond whose principal has a floor has its coupons in one
+    and the principal in another, since the two grow in different ways.
 
     Attributes
     ----------
@@ -55,6 +58,8 @@ class Legs:
     ex_days : ndarray of int
         Days before a coupon from which a buyer does not get it.
     bought_ex : ndarray of bool
+    repays : ndarray of bool
+        Whether the nominal is repaid.
     """
 
     holding: IntArray
@@ -73,6 +78,7 @@ class Legs:
     amortisation: IntArray
     ex_days: IntArray
     bought_ex: NDArray[np.bool_]
+    repays: NDArray[np.bool_]
 
     def __len__(self) -> int:
         """Number of legs."""
@@ -114,7 +120,7 @@ def holding_legs(holdings: Sequence[Holding], *, valuation_date: date) -> Legs:
     is_payer = is_kind(HoldingKind.PAYER_SWAP)
     is_swap = is_payer | is_kind(HoldingKind.RECEIVER_SWAP)
     is_floater = is_kind(HoldingKind.FLOATER)
-    is_bond = is_kind(HoldingKind.BOND)
+    is_bond = is_kind(HoldingKind.BOND, HoldingKind.LINKED_BOND)
     is_deposit = is_kind(HoldingKind.DEPOSIT)
     is_money = is_kind(HoldingKind.BILL, HoldingKind.TERM_DEPOSIT)
     has_rate = is_bond | is_swap | is_kind(HoldingKind.TERM_DEPOSIT)
@@ -154,12 +160,39 @@ def holding_legs(holdings: Sequence[Holding], *, valuation_date: date) -> Legs:
             0,
         ),
         bought_ex=np.array([holding.bought_ex_dividend for holding in holdings], dtype=np.bool_),
+        repays=~is_swap,
     )
     floating = np.flatnonzero(is_floater | is_swap)
     pays = np.flatnonzero(~is_floater & ~is_kind(HoldingKind.FUND, HoldingKind.PROPERTY))
-    if not floating.size:
-        return fixed.taken(pays)
-    return _with_floating(fixed, pays, floating, holdings, is_swap, nominal)
+    legs = fixed.taken(pays)
+    if floating.size:
+        legs = _with_floating(fixed, pays, floating, holdings, is_swap, nominal)
+    is_floored = np.array([holding.has_principal_floor for holding in holdings], dtype=np.bool_)
+    return _with_floored(legs, np.flatnonzero(is_floored[legs.holding] & legs.pays_coupons))
+
+
+def _with_floored(legs: Legs, split: IntArray) -> Legs:
+    """The legs with the principal of those at `split` in a leg of its own, after that of the coupons."""
+    if not split.size:
+        return legs
+    of_leg = legs.taken(split)
+    principal = replace(
+        of_leg,
+        pays_coupons=np.zeros(split.size, dtype=np.bool_),
+        rate=np.zeros(split.size),
+        ex_days=np.zeros_like(of_leg.ex_days),
+    )
+    repays = legs.repays.copy()
+    repays[split] = False
+    return _joined([replace(legs, repays=repays), principal])
+
+
+def _joined(legs: list[Legs]) -> Legs:
+    """Legs in the order of their holdings."""
+    together = Legs(
+        **{field.name: np.concatenate([getattr(leg, field.name) for leg in legs]) for field in fields(Legs)}
+    )
+    return together.taken(np.argsort(together.holding, kind="stable"))
 
 
 def _with_floating(
@@ -196,9 +229,7 @@ def _with_floating(
             amortisation=base.amortisation,
             ex_days=base.ex_days,
             bought_ex=base.bought_ex,
+            repays=base.repays,
         )
     )
-    together = Legs(
-        **{field.name: np.concatenate([getattr(leg, field.name) for leg in legs]) for field in fields(Legs)}
-    )
-    return together.taken(np.argsort(together.holding, kind="stable"))
+    return _joined(legs)

@@ -87,6 +87,8 @@ class HoldingFlows:
         Regular periods from the row to the maturity.
     is_start : ndarray of bool, shape (n,)
         The row stands for the start of a floating leg that lies ahead; nothing is paid.
+    is_principal : ndarray of bool, shape (n,)
+        The row repays the nominal and nothing else, coupons having rows of their own or there being none.
     start_time : ndarray, shape (m,)
         Years from the valuation date to the start of each holding; 0 where it has begun.
     running : RunningPeriods
@@ -102,6 +104,7 @@ class HoldingFlows:
     outstanding: FloatArray
     periods_after: IntArray
     is_start: NDArray[np.bool_]
+    is_principal: NDArray[np.bool_]
     start_time: FloatArray
     running: RunningPeriods
 
@@ -129,7 +132,8 @@ def holding_flows(
         fraction of its day count. The last comes with the nominal in one row; an amortising bond repays in
         parts, the interest of each period on what is then outstanding. A zero or bill pays its nominal at
         maturity, a term deposit with simple interest from its start; a deposit its nominal on the valuation
-        date; a fund or property nothing.
+        date; a fund or property nothing. A linked bond pays what a bond does, before indexation; the nominal
+        is a row of its own where it has a floor.
 
         A floater pays `current_rate` for the running period, then the rate of the curve and the margin. A
         payer swap receives that without the nominal and pays the fixed rate, every period by its day count; a
@@ -172,20 +176,21 @@ def holding_flows(
         holding=legs.holding[leg],
         date=when,
         time=np.empty(0),
-        amount=interest + np.where(legs.is_swap[leg], 0.0, repaid),
+        amount=interest + np.where(legs.repays[leg], repaid, 0.0),
         interest=interest,
         floating=floating,
         period_row=np.where(floating != 0.0, np.arange(leg.size) - 1, -1),
         outstanding=np.where(legs.is_swap[leg], 0.0, outstanding),
         periods_after=after,
         is_start=np.zeros(leg.size, dtype=np.bool_),
+        is_principal=~legs.pays_coupons[leg] & legs.repays[leg],
         start_time=_start_times(legs, today, day_count, len(holdings)),
         running=running,
     )
     ahead = np.flatnonzero(is_ahead & own.is_floating)
     if ahead.size:
         columns = _with_starts(columns, head[ahead], begin[ahead])
-    if legs.is_swap.any():
+    if (legs.holding[1:] == legs.holding[:-1]).any():
         columns = _by_date(columns)
     return replace(columns, time=year_fraction(today, columns.date, day_count))
 
@@ -331,6 +336,7 @@ def _with_starts(columns: HoldingFlows, head: IntArray, begin: DateArray) -> Hol
         "outstanding": 0.0,
         "periods_after": 0,
         "is_start": True,
+        "is_principal": False,
     }
     moved = {name: np.insert(getattr(columns, name), head, value) for name, value in at_start.items()}
     return replace(
@@ -359,6 +365,7 @@ def _by_date(columns: HoldingFlows) -> HoldingFlows:
             "outstanding",
             "periods_after",
             "is_start",
+            "is_principal",
         )
     }
     return replace(

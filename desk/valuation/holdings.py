@@ -8,13 +8,14 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import NDArray
 
-from desk.book import Basis, Fault, Holding, HoldingKind, PriceKind, Severity
-from desk.book.arrays import FloatArray
+from desk.book import Basis, Fault, Holding, HoldingKind, Indexation, PriceKind, Severity
+from desk.book.arrays import FloatArray, IntArray
 from desk.book.schedule import HoldingFlows, holding_flows
 from desk.rates.curve import DiscountCurve
 from desk.rates.day_count import DayCount, year_fraction
 from desk.valuation.credit import expected_rows
 from desk.valuation.floating import floating_interest, implied_current_rates, replicating_amounts
+from desk.valuation.linked import is_linked, linked_rows, no_inflation
 from desk.valuation.spread import solve_spreads
 
 __all__ = ["STATED_KINDS", "PricedHoldings", "price_holdings"]
@@ -29,6 +30,7 @@ _SPREAD_KINDS = frozenset(
         HoldingKind.FLOATER,
         HoldingKind.BILL,
         HoldingKind.TERM_DEPOSIT,
+        HoldingKind.LINKED_BOND,
     }
 )
 _MOST_APART = 0.01  # part of the market value by which the price may miss it
@@ -65,6 +67,13 @@ class PricedHoldings:
         default is expected.
     faults : tuple of Fault
         What could not be done as asked, all of the mild kind.
+    index_ratio : ndarray, shape (m,)
+        Of linked bonds, 1 for the others: by it nominal and price are money of today.
+    index_factor : ndarray, shape (n,)
+        Growth from today that is expected of each row; all amounts above hold it.
+    index_class : ndarray of int, shape (n,), or None
+        Into `indexations`; -1 where a row follows no index. None where none does.
+    indexations : tuple of Indexation
     """
 
     flows: HoldingFlows
@@ -79,6 +88,10 @@ class PricedHoldings:
     stated_value: FloatArray
     credit_loss: FloatArray
     faults: tuple[Fault, ...]
+    index_ratio: FloatArray
+    index_factor: FloatArray
+    index_class: IntArray | None = None
+    indexations: tuple[Indexation, ...] = ()
 
 
 @dataclass(frozen=True, eq=False)
@@ -112,6 +125,12 @@ def price_holdings(holdings: Sequence[Holding], basis: Basis) -> PricedHoldings:
         trades ex-dividend, though the holder gets it. Swaps have no spread. A deposit is worth its market
         value if it has one, else its nominal.
 
+        Payments of a linked bond are those of a bond, times its index ratio, times the growth of the index
+        that is expected until they are paid: ``I(t - lag) / I(-lag)``, by `desk.rates.inflation`. Its price
+        in real terms, and its accrued interest, are money once multiplied by the index ratio. The spread is
+        over the nominal curve. A principal with a floor is worth the expected value of the greater of the
+        two, by the lognormal model.
+
     Raises
     ------
     ValueError
@@ -122,7 +141,12 @@ def price_holdings(holdings: Sequence[Holding], basis: Basis) -> PricedHoldings:
     rates = implied_current_rates(flows, curve)
     known, missed = _with_current_rates(flows, rates)
     accrued, is_ex = _accrued(flows, rates, count)
-    stated = _stated(holdings, basis, accrued)
+    linked = linked_rows(holdings, flows, basis.inflation)
+    ratio, growth = linked.ratio, linked.factor
+    uplift = ratio[flows.holding] * growth
+    if linked.is_any:
+        known, missed, accrued = known * uplift, missed * uplift, accrued * ratio
+    stated = _stated(holdings, basis, accrued, ratio)
     is_deposit = np.array([holding.kind is HoldingKind.DEPOSIT for holding in holdings], dtype=np.bool_)
     quoted = is_deposit & ~np.isnan(stated.market)
     if quoted.any():
@@ -138,9 +162,10 @@ def price_holdings(holdings: Sequence[Holding], basis: Basis) -> PricedHoldings:
         recovery_rate=np.array([holding.recovery_rate for holding in holdings], dtype=np.float64),
     )
     if expected is not None:
-        payment = promised * expected.survival + expected.recovered
-        to_buyer = promised_to_buyer * expected.survival + expected.recovered
-        known = known * expected.survival + expected.recovered
+        recovered = expected.recovered * uplift if linked.is_any else expected.recovered
+        payment = promised * expected.survival + recovered
+        to_buyer = promised_to_buyer * expected.survival + recovered
+        known = known * expected.survival + recovered
         floating = floating * expected.survival
     if to_buyer is not payment:
         to_buyer = np.where(missed != 0.0, to_buyer, payment)
@@ -148,6 +173,11 @@ def price_holdings(holdings: Sequence[Holding], basis: Basis) -> PricedHoldings:
     solved = _solved(holdings, stated, flows, payment, to_buyer, curve)
     unstated = flows.running.holding[np.isnan(flows.running.rate)]
     faults = _faults(holdings, stated, solved, flows, np.unique(unstated), payment - to_buyer)
+    if linked.is_any and basis.inflation is None:
+        faults = (
+            *faults,
+            *no_inflation([holding.name for holding in holdings if is_linked(holding)], sheet="Holdings"),
+        )
     spread = np.where(np.isfinite(solved), solved, 0.0)
     return PricedHoldings(
         flows=flows,
@@ -162,6 +192,10 @@ def price_holdings(holdings: Sequence[Holding], basis: Basis) -> PricedHoldings:
         stated_value=_whole_value(stated, flows, payment - to_buyer, spread, curve),
         credit_loss=_credit_loss(holdings, flows, promised - payment, spread, curve),
         faults=faults,
+        index_ratio=ratio,
+        index_factor=growth,
+        index_class=linked.index_class,
+        indexations=linked.indexations,
     )
 
 
@@ -196,7 +230,9 @@ def _numbers(values: Sequence[float | None]) -> FloatArray:
     return np.array(values, dtype=np.float64)
 
 
-def _stated(holdings: Sequence[Holding], basis: Basis, accrued: FloatArray) -> _Stated:
+def _stated(
+    holdings: Sequence[Holding], basis: Basis, accrued: FloatArray, index_ratio: FloatArray
+) -> _Stated:
     """What the source says the holdings are worth."""
     market = _numbers([holding.market_value for holding in holdings])
     price = _numbers([holding.price for holding in holdings])
@@ -206,7 +242,7 @@ def _stated(holdings: Sequence[Holding], basis: Basis, accrued: FloatArray) -> _
             day_count = holding.day_count or DayCount.ACT_360
             years = float(year_fraction(today, np.datetime64(holding.maturity, "D"), day_count))
             price[number] = 100.0 * (1.0 - holding.discount_rate * years)
-    nominal = np.array([holding.nominal for holding in holdings], dtype=np.float64)
+    nominal = index_ratio * np.array([holding.nominal for holding in holdings], dtype=np.float64)
     is_clean = np.array([holding.price_kind is PriceKind.CLEAN for holding in holdings], dtype=np.bool_)
     of_price = nominal * price / 100.0 + np.where(is_clean, accrued, 0.0)
     return _Stated(market, of_price, np.isnan(market) & ~np.isnan(price))

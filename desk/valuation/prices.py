@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import math
 from dataclasses import dataclass
 
 import numpy as np
@@ -17,7 +18,10 @@ from desk.valuation.yields import StreetYields, street_yields
 __all__ = ["HoldingPrice", "holding_prices"]
 
 _MONEY_MARKET = frozenset({HoldingKind.BILL, HoldingKind.TERM_DEPOSIT})
-_SECURITIES = frozenset({HoldingKind.BOND, HoldingKind.ZERO, HoldingKind.FLOATER}) | _MONEY_MARKET
+_SECURITIES = (
+    frozenset({HoldingKind.BOND, HoldingKind.ZERO, HoldingKind.FLOATER, HoldingKind.LINKED_BOND})
+    | _MONEY_MARKET
+)
 _QUOTED = _SECURITIES | frozenset(SWAP_KINDS)
 
 
@@ -34,7 +38,8 @@ class HoldingPrice:
     accrued_interest : float
         Of the whole holding; negative while a buyer no longer gets the next coupon [currency].
     clean_price, dirty_price : float
-        Per 100 of nominal, without and with accrued interest, for a buyer on the valuation date.
+        Per 100 of nominal, without and with accrued interest, for a buyer on the valuation date; of a linked
+        bond in real terms.
     is_ex_dividend : bool
         Whether a buyer no longer gets the next coupon.
     street_yield : float
@@ -52,6 +57,11 @@ class HoldingPrice:
         ``-(1/PV) dPV/ds`` [years].
     expected_credit_loss : float
         What expected default takes off the present value [currency].
+    real_yield : float
+        Of a linked bond: at which its payments in today's money give its price, compounded as often as it
+        pays [1/year].
+    real_modified_duration : float
+        ``-(1/P) dP/dy`` for that yield [years].
     """
 
     holding: str
@@ -68,6 +78,8 @@ class HoldingPrice:
     spread: float
     spread_duration: float
     expected_credit_loss: float
+    real_yield: float = math.nan
+    real_modified_duration: float = math.nan
 
 
 def holding_prices(book: Book) -> tuple[HoldingPrice, ...]:
@@ -82,8 +94,8 @@ def holding_prices(book: Book) -> tuple[HoldingPrice, ...]:
     tuple of HoldingPrice, in the order of the holdings
         Prices are the present value per 100 of nominal, less the coupon a buyer no longer gets; where the
         source states a price or market value that a spread gives, they are that figure. The yield is that of
-        the promised payments, floating interest as projected. A fund, property or deposit has a present value
-        alone, a swap no yield and no spread.
+        the promised payments, floating interest and the index as projected. A fund, property or deposit has a
+        present value alone, a swap no yield and no spread.
 
     Raises
     ------
@@ -96,7 +108,7 @@ def holding_prices(book: Book) -> tuple[HoldingPrice, ...]:
     flows = priced.flows
     curve = basis.curve
     kinds = [holding.kind for holding in holdings]
-    nominal = np.array([holding.nominal for holding in holdings], dtype=np.float64)
+    nominal = priced.index_ratio * np.array([holding.nominal for holding in holdings], dtype=np.float64)
 
     with np.errstate(over="ignore", under="ignore", invalid="ignore", divide="ignore"):
         worth = curve.discount(flows.time) * np.exp(-priced.spread[flows.holding] * flows.time)
@@ -109,6 +121,10 @@ def holding_prices(book: Book) -> tuple[HoldingPrice, ...]:
         spread_duration = first / present
 
     yields = _yields(book, priced, price)
+    linked = frozenset({HoldingKind.LINKED_BOND})
+    real = yields
+    if not linked.isdisjoint(kinds):
+        real = _yields(book, priced, price, real_terms=True)
     is_stated = np.array([kind in STATED_KINDS for kind in kinds], dtype=np.bool_)
     stated = np.where(np.isnan(priced.stated_value), 0.0, priced.stated_value)
     columns = {
@@ -125,6 +141,8 @@ def holding_prices(book: Book) -> tuple[HoldingPrice, ...]:
         "spread": _only(priced.spread, kinds, _SECURITIES),
         "spread_duration": _only(spread_duration, kinds, _SECURITIES),
         "loss": priced.credit_loss,
+        "real_yield": _only(real.street, kinds, linked),
+        "real_modified": _only(real.modified, kinds, linked),
     }
     names = (holding.name for holding in holdings)
     rows = zip(names, *(column.tolist() for column in columns.values()), strict=True)
@@ -136,7 +154,9 @@ def _only(column: FloatArray, kinds: list[HoldingKind], meant: frozenset[Holding
     return np.where(np.array([kind in meant for kind in kinds], dtype=np.bool_), column, np.nan)
 
 
-def _yields(book: Book, priced: PricedHoldings, price: FloatArray) -> StreetYields:
+def _yields(
+    book: Book, priced: PricedHoldings, price: FloatArray, *, real_terms: bool = False
+) -> StreetYields:
     """Yields of the holdings that are securities; the figures of the others mean nothing."""
     flows, holdings = priced.flows, book.holdings
     today = np.datetime64(book.basis.valuation_date, "D")
@@ -148,10 +168,11 @@ def _yields(book: Book, priced: PricedHoldings, price: FloatArray) -> StreetYiel
     frequency[own.holding] = 12.0 / own.months
     kept = np.flatnonzero(is_security[flows.holding] & ~flows.is_start)
     holding = flows.holding[kept]
+    promised = priced.promised_to_buyer[kept]
     yields = street_yields(
         holding,
         np.maximum(to_maturity[holding] - flows.periods_after[kept], 0.0),
-        priced.promised_to_buyer[kept],
+        promised / priced.index_factor[kept] if real_terms else promised,
         price=price,
         frequency=frequency,
     )

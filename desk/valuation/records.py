@@ -78,6 +78,9 @@ class LineStanding:
         plays a part: a fund, property or swap.
     expected_credit_loss : float or None
         What expected default takes off the present value [currency]; None where none is expected.
+    inflation_dv01 : float or None
+        Rise in present value for +1 basis point on all expected inflation rates [currency]; None where the
+        basis states no expected inflation.
     """
 
     side: Side
@@ -89,6 +92,7 @@ class LineStanding:
     flow_count: int
     spread_duration: float | None = None
     expected_credit_loss: float | None = None
+    inflation_dv01: float | None = None
 
 
 @dataclass(frozen=True)
@@ -164,6 +168,10 @@ class FlowDetail:
         With the row's spread.
     present_value : ndarray
         [currency]
+    real_amount : ndarray or None
+        In today's money; None where the line follows no index and does not rise [currency].
+    index_factor : ndarray or None
+        Growth from today that is expected until the row is due: `amount` over `real_amount`.
     """
 
     date: NDArray[np.datetime64]
@@ -171,6 +179,8 @@ class FlowDetail:
     amount: FloatArray
     discount_factor: FloatArray
     present_value: FloatArray
+    real_amount: FloatArray | None = None
+    index_factor: FloatArray | None = None
 
 
 @dataclass(frozen=True)

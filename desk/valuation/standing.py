@@ -7,8 +7,10 @@ from collections.abc import Callable, Sequence
 import numpy as np
 
 from desk import __version__
-from desk.book import Book, HoldingKind, PricedFlows, Provenance, Side
+from desk.book import Book, HoldingKind, Inflation, PricedFlows, Provenance, Side
 from desk.book.arrays import FloatArray, IntArray
+from desk.rates.curve import DiscountCurve
+from desk.valuation.inflation_moves import InflationMoves, inflation_moves
 from desk.valuation.measures import (
     KEY_TERMS,
     ValuedRows,
@@ -18,7 +20,15 @@ from desk.valuation.measures import (
     value_flows,
 )
 from desk.valuation.priced import PricedSide, priced_flows
-from desk.valuation.records import Condition, KeyRates, LineStanding, Measures, Periods, Standing
+from desk.valuation.records import (
+    Condition,
+    InflationStanding,
+    KeyRates,
+    LineStanding,
+    Measures,
+    Periods,
+    Standing,
+)
 
 __all__ = ["DURATION_TOLERANCE", "redington_conditions", "stand", "undiscounted_periods"]
 
@@ -64,7 +74,11 @@ def stand(book: Book, *, progress: Callable[[float], None] | None = None) -> Sta
     rows = {side: value_flows(priced[side].flows, curve) for side in Side}
     total = {side: measure(rows[side]) for side in Side}
     report(0.5)
-    lines = tuple(line for side in Side for line in _lines(book, priced[side], rows[side]))
+    inflation = book.basis.inflation
+    moves: dict[Side, InflationMoves] = {}
+    if inflation is not None:
+        moves = {side: inflation_moves(priced[side].flows, rows[side].value, inflation) for side in Side}
+    lines = tuple(line for side in Side for line in _lines(book, priced[side], rows[side], moves.get(side)))
     report(0.8)
     assets, liabilities = total[Side.ASSETS], total[Side.LIABILITIES]
     first = {side: _moments(rows[side])[1] for side in Side}
@@ -85,6 +99,9 @@ def stand(book: Book, *, progress: Callable[[float], None] | None = None) -> Sta
         lines=lines,
         faults=tuple(fault for side in Side for fault in priced[side].faults),
         provenance=Provenance(book_digest=book.digest, program_version=__version__),
+        inflation=None
+        if inflation is None
+        else _inflation_standing(inflation, {side: priced[side].flows for side in Side}, total, moves),
     )
     report(1.0)
     return standing
@@ -97,7 +114,40 @@ def _moments(rows: ValuedRows) -> tuple[float, float, float]:
         return float(rows.value.sum()), float(timed.sum()), float((timed * rows.time).sum())
 
 
-def _lines(book: Book, priced: PricedSide, rows: ValuedRows) -> list[LineStanding]:
+def _inflation_standing(
+    inflation: Inflation,
+    flows: dict[Side, PricedFlows],
+    total: dict[Side, Measures],
+    moves: dict[Side, InflationMoves],
+) -> InflationStanding:
+    """How both sides follow expected inflation."""
+    worth = {side: total[side].present_value for side in Side}
+    slope = {side: float(moves[side].slope.sum()) for side in Side}
+    dv01 = {side: float(moves[side].line_dv01.sum()) for side in Side}
+    # Without an effective duration the side has no value to measure against.
+    base = {side: np.nan if np.isnan(total[side].effective_duration) else worth[side] for side in Side}
+    worth_a = worth[Side.ASSETS]
+    return InflationStanding(
+        assets_duration=slope[Side.ASSETS] / base[Side.ASSETS],
+        liabilities_duration=slope[Side.LIABILITIES] / base[Side.LIABILITIES],
+        real_duration_gap=(slope[Side.ASSETS] - slope[Side.LIABILITIES]) / worth_a if worth_a else np.nan,
+        dv01_assets=dv01[Side.ASSETS],
+        dv01_liabilities=dv01[Side.LIABILITIES],
+        dv01_gap=dv01[Side.ASSETS] - dv01[Side.LIABILITIES],
+        term=np.array(KEY_TERMS),
+        key_assets=moves[Side.ASSETS].slope / base[Side.ASSETS],
+        key_liabilities=moves[Side.LIABILITIES].slope / base[Side.LIABILITIES],
+        key_dv01_assets=moves[Side.ASSETS].dv01,
+        key_dv01_liabilities=moves[Side.LIABILITIES].dv01,
+        real_periods=undiscounted_periods(
+            flows[Side.ASSETS], flows[Side.LIABILITIES], inflation_curve=inflation.curve
+        ),
+    )
+
+
+def _lines(
+    book: Book, priced: PricedSide, rows: ValuedRows, moves: InflationMoves | None
+) -> list[LineStanding]:
     """The lines of one side, in the order of the book."""
     flows = priced.flows
     count = len(flows.line_names)
@@ -108,10 +158,20 @@ def _lines(book: Book, priced: PricedSide, rows: ValuedRows) -> list[LineStandin
     kinds = [holding.kind.value for holding in holdings] + ["flows"] * (count - len(holdings))
     market, loss = _or_none(priced.stated_value), _or_none(priced.credit_loss)
     durations = _spread_durations(flows, rows, measures, kinds)
+    linked: list[float | None] = [None] * count if moves is None else moves.line_dv01.tolist()
     return [
         LineStanding(flows.side, name, kind, of_line, None if np.isnan(own) else own, *figures)
         for name, kind, of_line, own, *figures in zip(
-            flows.line_names, kinds, measures, spread, market, flow_count, durations, loss, strict=True
+            flows.line_names,
+            kinds,
+            measures,
+            spread,
+            market,
+            flow_count,
+            durations,
+            loss,
+            linked,
+            strict=True,
         )
     ]
 
@@ -211,12 +271,17 @@ def redington_conditions(assets: ValuedRows, liabilities: ValuedRows) -> tuple[C
     )
 
 
-def undiscounted_periods(assets: PricedFlows, liabilities: PricedFlows) -> Periods:
+def undiscounted_periods(
+    assets: PricedFlows, liabilities: PricedFlows, *, inflation_curve: DiscountCurve | None = None
+) -> Periods:
     """Undiscounted flows of both sides by year from the valuation date.
 
     Parameters
     ----------
     assets, liabilities : PricedFlows
+    inflation_curve : DiscountCurve, optional
+        Of expected inflation: the flows are then in today's money, each over the index expected when it is
+        paid.
 
     Returns
     -------
@@ -232,12 +297,18 @@ def undiscounted_periods(assets: PricedFlows, liabilities: PricedFlows) -> Perio
         listed = np.unique(np.concatenate(years))
         places = [np.searchsorted(listed, year) for year in years]
     amounts: list[FloatArray] = [
-        np.bincount(place, weights=side.paid[side.is_flow], minlength=listed.size).astype(np.float64)
+        np.bincount(place, weights=_counted(side, inflation_curve), minlength=listed.size).astype(np.float64)
         for place, side in zip(places, (assets, liabilities), strict=True)
     ]
     with np.errstate(over="ignore", invalid="ignore"):
         net = amounts[0] - amounts[1]
         return Periods(listed, amounts[0], amounts[1], net, np.cumsum(net))
+
+
+def _counted(flows: PricedFlows, inflation_curve: DiscountCurve | None) -> FloatArray:
+    """What each payment counts, in money or in today's money."""
+    paid = flows.paid[flows.is_flow]
+    return paid if inflation_curve is None else paid * inflation_curve.discount(flows.time[flows.is_flow])
 
 
 def _year(flows: PricedFlows) -> IntArray:
