@@ -2,137 +2,56 @@
 
 from __future__ import annotations
 
-from collections.abc import Callable, Sequence
-from typing import Any
+from collections.abc import Callable
 
 import numpy as np
 from PySide6.QtCore import Qt, Signal
-from PySide6.QtGui import QKeySequence, QShortcut
+from PySide6.QtGui import QAction, QKeySequence, QShortcut
 from PySide6.QtWidgets import (
     QAbstractItemView,
     QHBoxLayout,
     QLabel,
     QLineEdit,
+    QMenu,
     QPushButton,
     QStackedWidget,
     QVBoxLayout,
     QWidget,
 )
 
-from desk.book import Side
-from desk.valuation.records import FlowDetail, LineStanding, Measures, Standing
+from desk.book import LineTerms, Side
+from desk.valuation.records import FlowDetail, LineStanding, Standing
 from desk.window.parts import numbers
 from desk.window.parts.fields import Combo
 from desk.window.parts.tables import Column, Table
 from desk.window.parts.theme import GAP, HALF, ThemeSwitch, keep_look
+from desk.window.standing.line_columns import (
+    flow_columns,
+    line_columns,
+    line_rows,
+    side_name,
+    total_rows,
+)
+from desk.window.standing.line_words import discount_words, indexation_words
 from desk.window.standing.wording import amount
 
-__all__ = ["LinesPage", "side_name"]
+__all__ = ["LinesPage"]
 
-_MEASURES = tuple(name for name in Measures.__dataclass_fields__)
 _SHOWN = ("all", "assets", "liabilities")
+_TERMS_KEYS = "Ctrl+Return"
 
 
-def side_name(side: Side) -> str:
-    """A side as it stands in a table."""
-    return {Side.ASSETS: "Assets", Side.LIABILITIES: "Liabilities"}[side]
+class _LinesTable(Table):
+    """Lines, with the step to the terms of one in the menu on its cells."""
 
+    def make_menu(self) -> QMenu:
+        """The menu on the cells."""
+        menu = super().make_menu()
+        menu.addSeparator()
+        menu.addAction(self.terms_action)
+        return menu
 
-def _columns(currency: str) -> tuple[Column, ...]:
-    return (
-        Column("side", "Side"),
-        Column("line", "Line"),
-        Column("kind", "Kind", tooltip="The kind of holding, or flows as the source states them."),
-        Column("present_value", "Present value", currency, "money"),
-        Column(
-            "dv01",
-            "DV01",
-            currency,
-            "money",
-            tooltip="Fall in present value for +1 basis point on all zero rates.",
-        ),
-        Column(
-            "effective_duration",
-            "Effective dur.",
-            "years",
-            "years",
-            tooltip="Effective duration: for a parallel move of the continuous zero rates.",
-        ),
-        Column(
-            "spread",
-            "Spread",
-            "% a year",
-            "rate",
-            tooltip="Over the curve, continuously compounded; none where it differs between flows.",
-        ),
-        Column(
-            "equivalent_rate",
-            "Equivalent rate",
-            "% a year",
-            "rate",
-            tooltip="The single annual effective rate with the same present value.",
-        ),
-        Column(
-            "spread_duration",
-            "Spread dur.",
-            "years",
-            "years",
-            tooltip="Spread duration: for a move of the spread alone; none where no spread plays a part.",
-        ),
-        Column(
-            "market_value",
-            "Market value",
-            currency,
-            "money",
-            tooltip="As the source states it, or what its price comes to.",
-        ),
-        Column(
-            "expected_credit_loss",
-            "Credit loss",
-            currency,
-            "money",
-            tooltip="Expected credit loss: what expected default takes off the present value.",
-        ),
-        Column("macaulay_duration", "Macaulay dur.", "years", "years", tooltip="At the equivalent rate."),
-        Column("modified_duration", "Modified dur.", "years", "years", tooltip="At the equivalent rate."),
-        Column("convexity", "Convexity", "years²", "number", digits=1),
-        Column(
-            "dispersion",
-            "Dispersion",
-            "years²",
-            "number",
-            digits=1,
-            tooltip="Variance of the times of the flows, weighted by present value.",
-        ),
-        Column("flow_count", "Flows", "", "integer", tooltip="After the valuation date, today's included."),
-    )
-
-
-def _flow_columns(currency: str) -> tuple[Column, ...]:
-    return (
-        Column("date", "Date", "", "date"),
-        Column("time", "Time", "years", "years", digits=4),
-        Column(
-            "amount",
-            "Amount",
-            currency,
-            "money",
-            digits=2,
-            tooltip="What is paid: floating interest as projected on today's curve, default as expected.",
-        ),
-        Column("discount_factor", "Discount factor", "", "number", digits=6, tooltip="With the spread."),
-        Column("present_value", "Present value", currency, "money", digits=2),
-    )
-
-
-def _measures_of(rows: Sequence[Measures]) -> dict[str, Any]:
-    return {name: np.array([getattr(row, name) for row in rows]) for name in _MEASURES}
-
-
-def _total(figures: Sequence[float | None]) -> float | None:
-    """The sum of what there is; None where there is nothing."""
-    stated = [figure for figure in figures if figure is not None]
-    return sum(stated) if stated else None
+    terms_action: QAction
 
 
 class LinesPage(QWidget):
@@ -145,32 +64,39 @@ class LinesPage(QWidget):
         All lines, or those of one side.
     finder : QLineEdit
         Shows the lines whose name holds its text.
+    terms_button : QPushButton
+        Asks for the terms of the selected line; only ready-made flows have any.
     open_line : callable or None
         Gives the flows of a line by its side and its place on the side.
 
     Signals
     -------
     message(str)
+    terms_wanted(LineStanding)
+        The reader asked to change the terms of a line.
     """
 
     message = Signal(str)
+    terms_wanted = Signal(object)
 
     def __init__(self, theme_switch: ThemeSwitch) -> None:
         super().__init__()
         self.open_line: Callable[[Side, int], FlowDetail] | None = None
         self._lines: tuple[LineStanding, ...] = ()
         self._currency = ""
+        self._columns: tuple[Column, ...] = ()
+        self._terms: tuple[LineTerms, ...] = ()
         self._opened: int | None = None
-        self.table = Table(
-            _columns(""),
+        self.table = _LinesTable(
+            line_columns(""),
             theme_switch,
             name="Lines of both sides",
             description="Return or a double click opens a line into its flows.",
             empty_text="No line matches.",
         )
-        self.totals = Table(_columns(""), theme_switch, name="Totals by side")
+        self.totals = Table(line_columns(""), theme_switch, name="Totals by side")
         self.flows = Table(
-            _flow_columns(""), theme_switch, name="Flows of a line", empty_text="This line has no flows."
+            flow_columns(""), theme_switch, name="Flows of a line", empty_text="This line has no flows."
         )
         self.shown_sides = Combo()
         self.shown_sides.addItems(["All lines", "Assets", "Liabilities"])
@@ -180,6 +106,16 @@ class LinesPage(QWidget):
         self.finder.setAccessibleName("Find a line")
         self.finder.setClearButtonEnabled(True)
         self.finder.setFixedWidth(160)
+        self.terms_button = QPushButton("Terms…")
+        self.terms_button.setAccessibleName("Terms of the selected line")
+        self.terms_button.setToolTip(
+            f"Indexation and discounting of the selected line of flows ({_TERMS_KEYS})"
+        )
+        action = self.table.terms_action = QAction("Terms of the line…", self.table)
+        action.setShortcut(QKeySequence(_TERMS_KEYS))
+        action.setShortcutContext(Qt.ShortcutContext.WidgetShortcut)
+        action.triggered.connect(lambda _=False: self.ask_terms())
+        self.table.addAction(action)
         self.back = QPushButton("Back to the lines")
         self.back.setToolTip("Escape")
         self.heading = QLabel()
@@ -241,6 +177,8 @@ class LinesPage(QWidget):
         for table in (self.table, self.totals, self.flows):
             table.message.connect(self.message)
         self.table.activated_row.connect(self.open_row)
+        self.table.current_row_changed.connect(self._offer_terms)
+        self.terms_button.clicked.connect(lambda _=False: self.ask_terms())
         self.back.clicked.connect(self.close_line)
         self.shown_sides.currentIndexChanged.connect(lambda _: self._filter())
         self.finder.textChanged.connect(lambda _: self._filter())
@@ -258,50 +196,44 @@ class LinesPage(QWidget):
 
     # Showing
 
-    def show_standing(self, standing: Standing) -> None:
-        """Show the lines of a standing; an opened line stays open where it is still there."""
-        if standing.currency != self._currency:
-            self._currency = standing.currency
-            self.table.set_columns(_columns(standing.currency))
-            self.totals.set_columns(_columns(standing.currency))
-            self.flows.set_columns(_flow_columns(standing.currency))
-        self._lines = standing.lines
-        lines = self._lines
-        self.table.set_rows(
-            {
-                "side": [side_name(line.side) for line in lines],
-                "line": [line.line for line in lines],
-                "kind": [line.kind for line in lines],
-                "spread": [line.spread for line in lines],
-                "spread_duration": [line.spread_duration for line in lines],
-                "market_value": [line.market_value for line in lines],
-                "expected_credit_loss": [line.expected_credit_loss for line in lines],
-                "flow_count": [line.flow_count for line in lines],
-                **_measures_of([line.measures for line in lines]),
-            }
-        )
-        losses = [_total([line.expected_credit_loss for line in lines if line.side is side]) for side in Side]
-        counts = [sum(line.flow_count for line in lines if line.side is side) for side in Side]
-        self.totals.set_rows(
-            {
-                "side": [side_name(side) for side in Side],
-                "line": ["All lines"] * 2,
-                "kind": [""] * 2,
-                "spread": [None] * 2,
-                "spread_duration": [None] * 2,
-                "market_value": [None] * 2,
-                "expected_credit_loss": losses,
-                "flow_count": counts,
-                **_measures_of([standing.assets, standing.liabilities]),
-            },
-            strong=(0, 1),
-        )
+    def show_standing(
+        self, standing: Standing, *, terms: tuple[LineTerms, ...] = (), second: Standing | None = None
+    ) -> None:
+        """Show the lines of a standing; an opened line stays open where it is still there.
+
+        Parameters
+        ----------
+        standing : Standing
+        terms : tuple of LineTerms, optional
+            Of the lines that state any.
+        second : Standing, optional
+            On the second basis, to be shown beside it.
+        """
+        current = self.table.current_source_row()
+        self._lines, self._terms = standing.lines, terms
+        self._set_columns(standing.currency, with_terms=bool(terms), with_second=second is not None)
+        self.table.set_rows(line_rows(standing, terms=terms, second=second))
+        self.totals.set_rows(total_rows(standing, second=second), strong=(0, 1))
+        if self.table.current_source_row() < 0 <= current < len(self._lines):
+            self.table.go_to(current)
         self._fit()
         self._filter()
-        if self._opened is not None and self._opened < len(lines):
+        self._offer_terms()
+        if self._opened is not None and self._opened < len(self._lines):
             self.open_row(self._opened)
         else:
             self.close_line()
+
+    def _set_columns(self, currency: str, *, with_terms: bool, with_second: bool) -> None:
+        columns = line_columns(currency, with_terms=with_terms, with_second=with_second)
+        if columns == self._columns:
+            return
+        self._columns = columns
+        self.table.set_columns(columns)
+        self.totals.set_columns(columns)
+        if currency != self._currency:
+            self._currency = currency
+            self.flows.set_columns(flow_columns(currency))
 
     def _fit(self) -> None:
         """Columns wide enough for the totals too."""
@@ -336,6 +268,25 @@ class LinesPage(QWidget):
             self.table.setCurrentIndex(self.table.table_model.index(0, 0))
             self.table.setFocus()
 
+    # The terms of a line
+
+    def _current_line(self) -> LineStanding | None:
+        """The selected line, if it is one of ready-made flows."""
+        row = self.table.current_source_row()
+        line = self._lines[row] if 0 <= row < len(self._lines) else None
+        return line if line is not None and line.kind == "flows" else None
+
+    def _offer_terms(self, _row: int = -1) -> None:
+        there = self._current_line() is not None
+        self.terms_button.setEnabled(there)
+        self.table.terms_action.setEnabled(there)
+
+    def ask_terms(self) -> None:
+        """Ask for the terms of the selected line."""
+        line = self._current_line()
+        if line is not None:
+            self.terms_wanted.emit(line)
+
     # Opening a line
 
     @property
@@ -362,7 +313,7 @@ class LinesPage(QWidget):
         count = numbers.integer(detail.time.size)
         self.about.setText(
             f"{side_name(line.side)}, {line.kind}: {count} {'row' if detail.time.size == 1 else 'rows'}, "
-            f"worth {value}"
+            f"worth {value}{self._terms_text(line)}"
         )
         self.flows.set_rows(
             {
@@ -378,6 +329,16 @@ class LinesPage(QWidget):
         if not was_open:
             self.flows.fit_columns()
             self.flows.setFocus()
+
+    def _terms_text(self, line: LineStanding) -> str:
+        """The terms of a line after what it is worth; nothing where it states none."""
+        own = next((each for each in self._terms if (each.side, each.line) == (line.side, line.line)), None)
+        if own is None or line.kind != "flows":
+            return ""
+        grows, rate = indexation_words(own.indexation), discount_words(own)
+        parts = [f"rising with {grows}" if grows.startswith("prices") else grows and f"rising {grows}"]
+        parts.append(rate and f"discounted at {rate}")
+        return "".join(f"; {part}" for part in parts if part)
 
     def close_line(self) -> None:
         """Go back to the lines."""

@@ -53,6 +53,17 @@ class Pages(QWidget):
         """Put a control at the right of the tabs."""
         self._row.addWidget(widget)
 
+    def set_page_visible(self, key: str, visible: bool) -> None:
+        """Offer a page or not; one that was shown and goes gives way to the first."""
+        place = self._keys.index(key)
+        if not visible and self.tabs.currentIndex() == place:
+            self.tabs.setCurrentIndex(0)
+        self.tabs.setTabVisible(place, visible)
+
+    def has_page(self, key: str) -> bool:
+        """Whether a page is offered."""
+        return self.tabs.isTabVisible(self._keys.index(key))
+
     @property
     def current(self) -> str:
         """The key of the page shown; empty where there is none."""

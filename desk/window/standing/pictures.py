@@ -28,14 +28,17 @@ class FlowPicture(Picture):
     def __init__(self, theme_switch: ThemeSwitch) -> None:
         super().__init__("Flows of both sides by year", theme_switch)
 
-    def show_periods(self, periods: Periods, currency: str) -> None:
-        """Draw the periods of a standing."""
-        self.set_axes("Year", "", "A year", currency, y_kind="money", with_zero=True)
+    def show_periods(self, periods: Periods, currency: str, *, in_real: bool = False) -> None:
+        """Draw the periods of a standing; `in_real` where they are in today's money."""
+        label = "A year, in today's money" if in_real else "A year"
+        self.set_axes("Year", "", label, currency, y_kind="money", with_zero=True)
         self.set_right_axis("Cumulative", currency, kind="money", alike=True)
         self.add_bars("Assets", periods.year, periods.assets, "assets", width=0.72)
         self.add_bars("Liabilities", periods.year, -periods.liabilities, "liabilities", width=0.72)
         self.add_line(_CUMULATIVE, periods.year, periods.cumulative, "surplus", right=True)
-        self.set_description(_flow_sentence(periods, currency))
+        self.set_description(
+            _flow_sentence(periods, currency, "In today's money, undiscounted" if in_real else "Undiscounted")
+        )
 
     def readings_at(self, x: float) -> list[tuple[str, str]]:
         """Each value with its own unit: the two axes may differ in theirs."""
@@ -85,15 +88,15 @@ def _around_zero(low: float, high: float, *, below: float) -> tuple[float, float
     return -below * whole, (1.0 - below) * whole
 
 
-def _flow_sentence(periods: Periods, currency: str) -> str:
+def _flow_sentence(periods: Periods, currency: str, what: str) -> str:
     if not periods.year.size:
         return "There are no flows after the valuation date."
     lowest = int(periods.cumulative.argmin())
     value = float(periods.cumulative[lowest])
     if value >= 0.0:
-        return "Undiscounted. Receipts so far cover payments so far in every year."
+        return f"{what}. Receipts so far cover payments so far in every year."
     year = int(periods.year[lowest])
-    return f"Undiscounted. Lowest cumulative: {amount(value, currency)}, year {year}."
+    return f"{what}. Lowest cumulative: {amount(value, currency)}, year {year}."
 
 
 class KeyRatePicture(Picture):

@@ -6,7 +6,7 @@ from PySide6.QtCore import Qt
 from PySide6.QtWidgets import QLabel, QVBoxLayout, QWidget
 
 from desk.valuation.estimates import key_rate_gap
-from desk.valuation.records import Standing
+from desk.valuation.records import Periods, Standing
 from desk.window.parts import numbers
 from desk.window.parts.tables import Column, Mark, Table
 from desk.window.parts.theme import GAP, ThemeSwitch, keep_look
@@ -16,11 +16,11 @@ __all__ = ["ConditionsPage", "KeyRatesTable", "PeriodsTable"]
 
 
 class PeriodsTable(Table):
-    """Undiscounted flows by year."""
+    """Undiscounted flows by year, in money or in today's."""
 
     def __init__(self, theme_switch: ThemeSwitch) -> None:
         super().__init__(self._make(""), theme_switch, name="Flows by year", empty_text="There are no flows.")
-        self._currency = ""
+        self._unit = ""
 
     @staticmethod
     def _make(currency: str) -> tuple[Column, ...]:
@@ -32,12 +32,12 @@ class PeriodsTable(Table):
             Column("cumulative", "Cumulative net", currency, "money"),
         )
 
-    def show_standing(self, standing: Standing) -> None:
-        """Show the periods of a standing."""
-        if standing.currency != self._currency:
-            self._currency = standing.currency
-            self.set_columns(self._make(standing.currency))
-        self.set_rows(vars(standing.periods))
+    def show_periods(self, periods: Periods, unit: str) -> None:
+        """Show the periods of a standing; `unit` is the currency, or that of today."""
+        if unit != self._unit:
+            self._unit = unit
+            self.set_columns(self._make(unit))
+        self.set_rows(vars(periods))
 
 
 class KeyRatesTable(Table):

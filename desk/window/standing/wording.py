@@ -4,13 +4,21 @@ from __future__ import annotations
 
 import math
 
+from desk.book import Basis, LiabilityMethod
 from desk.valuation.estimates import surplus_change
 from desk.valuation.records import Condition, Standing
 from desk.window.parts import numbers
 
-__all__ = ["amount", "condition_name", "plain_reading", "verdict"]
+__all__ = ["amount", "basis_words", "condition_name", "plain_reading", "verdict"]
 
 _FALL = -0.01
+
+_METHODS = {
+    LiabilityMethod.CURVE: "the curve",
+    LiabilityMethod.TERM_SPREADS: "the curve with a spread by term",
+    LiabilityMethod.CORPORATE_BONDS: "corporate bonds",
+    LiabilityMethod.EXPECTED_RETURN: "the expected return",
+}
 
 _CONDITIONS = {
     "present_value": "Present value",
@@ -69,3 +77,16 @@ def condition_name(condition: Condition) -> str:
 def verdict(holds: bool) -> str:
     """Whether a condition holds, by mark and by word."""
     return "✓ holds" if holds else "✗ does not hold"
+
+
+def basis_words(basis: Basis) -> str:
+    """What a basis is, in a few words: its title, what liabilities are discounted on, and its spread."""
+    method = basis.liability_method
+    if method is LiabilityMethod.EXPECTED_RETURN and basis.expected_return is not None:
+        on = f"an expected return of {numbers.rate(basis.expected_return, with_unit=True)}"
+    else:
+        on = _METHODS[method]
+    parts = [f"“{basis.title}”" if basis.title else "", f"liabilities on {on}"]
+    if basis.liability_spread:
+        parts.append(f"spread {numbers.rate(basis.liability_spread, with_unit=True)}")
+    return ", ".join(part for part in parts if part)

@@ -362,14 +362,14 @@ def test_the_table_copies(station: StandingStation) -> None:
 
 
 def test_the_form_edits_the_basis(station: StandingStation, bench: Bench, qtbot: QtBot) -> None:
-    station.liability_spread.committed.emit(0.02)
-    station.name.committed.emit("Another title")
+    station.basis_form.liability_spread.committed.emit(0.02)
+    station.basis_form.name.committed.emit("Another title")
     assert bench.book.basis.liability_spread == 0.02
     assert bench.document.undo_text == "Change of the title"
     bench.document.undo()
     bench.document.undo()
     station.refresh_now()
-    assert station.liability_spread.value == 0.005
+    assert station.basis_form.liability_spread.value == 0.005
 
 
 def test_figures_are_marked_until_they_follow(station: StandingStation, bench: Bench, qtbot: QtBot) -> None:
@@ -389,7 +389,7 @@ def test_a_book_that_cannot_be_valued_says_why(station: StandingStation, bench: 
     qtbot.waitUntil(lambda: bool(bench.document.standing_failure))
     station.refresh_now()
     assert "could not be valued" in station.stale_text
-    assert "rise" in station.stale_text
+    assert "order of their terms" in station.stale_text
     assert column(station.lines.table, "line")[0] == "bond"
 
 
