@@ -1,0 +1,129 @@
+"""A history of short rates made ready for estimation: checked, its dates turned into years."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+
+import numpy as np
+from numpy.typing import ArrayLike, NDArray
+
+__all__ = ["RateHistory", "rate_history"]
+
+FloatArray = NDArray[np.float64]
+
+_FEWEST_RATES = 12
+_DAYS_A_YEAR = 365.0
+_GAP = 5.0  # times the usual step
+_SHORT_YEARS = 10.0
+
+
+@dataclass(frozen=True, eq=False)
+class RateHistory:
+    """A history of short rates; made by `rate_history`.
+
+    Attributes
+    ----------
+    time : ndarray, shape (n,)
+        Years from the first rate, rising.
+    rate : ndarray, shape (n,)
+        Continuously compounded [1/year].
+    remarks : tuple of str
+        What is unusual about it, each one sentence.
+    """
+
+    time: FloatArray
+    rate: FloatArray
+    remarks: tuple[str, ...] = ()
+
+    @property
+    def step(self) -> FloatArray:
+        """Years from each rate to the next, shape (n - 1,)."""
+        return np.diff(self.time)
+
+    @property
+    def before(self) -> FloatArray:
+        """All rates but the last, shape (n - 1,)."""
+        return self.rate[:-1]
+
+    @property
+    def after(self) -> FloatArray:
+        """All rates but the first, shape (n - 1,)."""
+        return self.rate[1:]
+
+    @property
+    def years(self) -> float:
+        """Length of the history [years]."""
+        return float(self.time[-1] - self.time[0])
+
+
+def rate_history(times: ArrayLike, rates: ArrayLike) -> RateHistory:
+    """A history of short rates, checked.
+
+    Parameters
+    ----------
+    times : array_like, shape (n,)
+        Dates (datetime64, taken as Act/365 Fixed) or years; rising strictly, steps of any length.
+    rates : array_like, shape (n,)
+        Continuously compounded [1/year].
+
+    Returns
+    -------
+    RateHistory
+
+    Raises
+    ------
+    ValueError
+        If there are fewer than twelve rates, one is no number, two dates are equal or out of order, or the
+        rate never moves.
+    """
+    given, rate = np.asarray(times), np.array(rates, dtype=np.float64)
+    if rate.ndim != 1 or given.shape != rate.shape:
+        raise ValueError("`rates` must hold one rate a date, in one dimension")
+    if rate.size < _FEWEST_RATES:
+        raise ValueError(
+            f"the history is too short: {rate.size} rates, at least {_FEWEST_RATES} are needed for an estimate"
+        )
+    dated = np.issubdtype(given.dtype, np.datetime64)
+    if dated:
+        days = given.astype("datetime64[D]")
+        missing = np.isnat(days)
+        years = np.where(missing, np.nan, (days - days[0]).astype(np.float64) / _DAYS_A_YEAR)
+    else:
+        years = np.asarray(given, dtype=np.float64) - float(given[0])
+    for name, values in (("date", years), ("rate", rate)):
+        bad = np.flatnonzero(~np.isfinite(values))
+        if bad.size:
+            raise ValueError(f"the {name} in row {bad[0] + 1} of the history is missing or no number")
+    step = np.diff(years)
+    back = np.flatnonzero(step <= 0.0)
+    if back.size:
+        row = int(back[0]) + 1
+        what = "has the same date as" if step[row - 1] == 0.0 else "comes before"
+        raise ValueError(f"row {row + 1} of the history {what} row {row}: dates must rise, one rate a date")
+    if np.ptp(rate) == 0.0:
+        raise ValueError("the rate never moves in the history: nothing can be estimated from it")
+    for values in (years, rate):
+        values.flags.writeable = False
+    return RateHistory(years, rate, _remarks(given, step, dated))
+
+
+def _remarks(given: NDArray[np.generic], step: FloatArray, dated: bool) -> tuple[str, ...]:
+    remarks = []
+    usual = float(np.median(step))
+    gaps = np.flatnonzero(step > _GAP * usual)
+    if gaps.size:
+        row = int(gaps[np.argmax(step[gaps])])
+        where = f"{given[row]} to {given[row + 1]}" if dated else f"rows {row + 1} to {row + 2}"
+        many = "one gap" if gaps.size == 1 else f"{gaps.size} gaps"
+        remarks.append(
+            f"The history has {many} of more than {_GAP:g} times its usual step of {usual * _DAYS_A_YEAR:.0f} "
+            f"days, the longest from {where}: each is taken as one long step, which the model allows for, but "
+            "what happened within it is lost."
+        )
+    length = float(step.sum())
+    if length < _SHORT_YEARS:
+        remarks.append(
+            f"The history covers {length:.1f} years only: the speed of mean reversion cannot be told well from "
+            "less than some decades, however often the rate was noted."
+        )
+    return tuple(remarks)
