@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import argparse
+import math
 from collections.abc import Iterable
 from pathlib import Path
 from typing import Any, NoReturn
@@ -15,7 +16,7 @@ from desk.terminal import complain
 
 __all__ = ["COMMANDS", "LIMITS", "parser", "range_faults", "target_fault"]
 
-COMMANDS = ("check", "value", "simulate", "report")
+COMMANDS = ("check", "value", "shock", "simulate", "report")
 
 LIMITS = {"paths": (1, MOST_PATHS), "years": (1, 200), "steps": (1, 366), "seed": (0, 2**53)}
 """Sensible range of each number that a command takes."""
@@ -45,6 +46,26 @@ def parser() -> argparse.ArgumentParser:
 
     command("check", "Read a book and list its faults.")
     command("value", "Print the standing: both sides valued, with their gaps.")
+    shock = command("shock", "Print the standing under each shock.")
+    shock.add_argument(
+        "--set",
+        action="append",
+        default=[],
+        metavar="NAME",
+        help="a prescribed set of shocks in place of those the book asks for; may be given more than once",
+    )
+    shock.add_argument(
+        "--sets-from",
+        type=Path,
+        metavar="FOLDER",
+        help="folder with prescribed sets in place of the program's",
+    )
+    shock.add_argument(
+        "--reach",
+        type=_ratio,
+        metavar="RATIO",
+        help="also find the moves of rates that bring the funding ratio to this, for example 0.95",
+    )
     simulate = command("simulate", "Draw the rates model and value both sides along the paths.")
     for name, text in (
         ("paths", "number of paths"),
@@ -86,6 +107,19 @@ def _whole_number(text: str) -> int:
         return int(text)
     except ValueError:
         raise argparse.ArgumentTypeError(f'"{text}" is no whole number') from None
+
+
+def _ratio(text: str) -> float:
+    """A funding ratio as it is written on a command line."""
+    try:
+        ratio = float(text)
+    except ValueError:
+        ratio = math.nan
+    if not (math.isfinite(ratio) and ratio > 0.0):
+        raise argparse.ArgumentTypeError(
+            f'"{text}" is no funding ratio; it is a number above 0, such as 0.95'
+        )
+    return ratio
 
 
 def _model(text: str) -> ModelName:

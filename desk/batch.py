@@ -1,4 +1,4 @@
-"""The commands: check, value, simulate and report, without a window.
+"""The commands: check, value, shock, simulate and report, without a window.
 
 Exit status: 0 done; 1 the program failed; 2 the book or the arguments are at fault, said on standard
 error in one line a fault. With ``--json`` standard output is one JSON object and nothing else.
@@ -17,6 +17,7 @@ from collections.abc import Callable, Iterable, Iterator, Sequence
 from contextlib import contextmanager
 from dataclasses import replace
 from pathlib import Path
+from typing import TYPE_CHECKING
 
 from desk import tasks
 from desk.arguments import COMMANDS, parser, range_faults, target_fault
@@ -27,6 +28,9 @@ from desk.report.said_once import further_faults
 from desk.scenarios.records import Simulation
 from desk.terminal import ProgressLine, complain, say, use_standard_streams
 from desk.valuation.records import Standing
+
+if TYPE_CHECKING:
+    from desk.report.as_shocks import Reached
 
 __all__ = ["COMMANDS", "BadRequest", "demonstrate", "main", "read_usable", "run_guarded"]
 
@@ -246,6 +250,60 @@ def _value(options: argparse.Namespace) -> int:
     return DONE
 
 
+def _shock(options: argparse.Namespace) -> int:
+    """The standing under each shock."""
+    from desk.report import as_shocks
+
+    if options.sets_from is not None and not options.sets_from.is_dir():
+        raise BadRequest(
+            [
+                Fault(
+                    f"--sets-from is {options.sets_from}",
+                    "a folder that exists",
+                    "Name one, or leave it out.",
+                )
+            ]
+        )
+    reading, book = read_usable(options.book)
+    _insist_on(book, model=False)
+    with ProgressLine("Shocking") as progress:
+        table = tasks.shock(book, sets=tuple(options.set), folder=options.sets_from, progress=progress)
+    reached = None if options.reach is None else _reach(book, options.reach)
+    found = table.faults if reached is None else (*table.faults, *reached.faults)
+    _complain_of(further_faults(reading.faults, found))
+    if options.json:
+        _say(as_json.text(as_shocks.shocks_object(table, reading.faults, reached=reached)))
+    else:
+        _say(as_shocks.shocks_text(table, title=book.basis.title, reached=reached))
+    return DONE
+
+
+def _reach(book: Book, level: float) -> Reached:
+    """The moves of rates that bring the funding ratio to a level."""
+    from desk.intake.checks import plain
+    from desk.report.as_shocks import Reached
+    from desk.valuation.reverse import Goal
+
+    parallel = tasks.reverse(book, goal=Goal.FUNDING_RATIO, level=level)
+    least, faults = [], [] if parallel.fault is None else [parallel.fault]
+    for from_history, is_there in (
+        (False, book.rates_model is not None),
+        (True, book.yield_history is not None),
+    ):
+        if not is_there:
+            continue
+        try:
+            found = tasks.least_move(book, goal=Goal.FUNDING_RATIO, level=level, from_history=from_history)
+        except ValueError as error:
+            faults.append(Fault(plain(error), "a covariance of rates", "State another model or history."))
+            continue
+        if found.fault is None:
+            least.append(found)
+        else:
+            faults.append(found.fault)
+    return Reached(level, parallel, tuple(least), tuple(faults))
+
+
 def _simulate(options: argparse.Namespace) -> int:
     """A run."""
     faults = list(range_faults(options))
@@ -306,6 +364,7 @@ def _report(options: argparse.Namespace) -> int:
 _ACTIONS: dict[str, Callable[[argparse.Namespace], int]] = {
     "check": _check,
     "value": _value,
+    "shock": _shock,
     "simulate": _simulate,
     "report": _report,
 }

@@ -26,7 +26,7 @@ MAY_IMPORT: dict[str, tuple[str, ...]] = {
     "intake": ("rates", "book"),
     "report": (*NUMERIC, "intake", "places"),
     "store": (*NUMERIC, "intake", "places"),
-    "tasks": (*NUMERIC, "intake", "report", "store"),
+    "tasks": (*NUMERIC, "intake", "report", "store", "places"),
     "arguments": ("rates", "book", "report", "terminal"),
     "batch": (*NUMERIC, "intake", "report", "store", "tasks", "places", "terminal", "arguments"),
     "window": (*NUMERIC, "intake", "report", "store", "tasks", "places"),

@@ -3,14 +3,16 @@
 from __future__ import annotations
 
 import math
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from enum import StrEnum
 
-__all__ = ["Move", "MoveKind", "Shock", "ShockSettings"]
+from desk.rates.compounding import Compounding
+
+__all__ = ["RATE_MOVES", "Move", "MoveKind", "Shock", "ShockSet", "ShockSettings"]
 
 
 class MoveKind(StrEnum):
-    """What a move moves. Rates are continuous zero rates; sizes of rates are in basis points."""
+    """What a move moves. Sizes of rates are in basis points, of zero rates compounded as the shock says."""
 
     PARALLEL = "parallel"
     """All rates by one size."""
@@ -97,11 +99,62 @@ class Shock:
     moves : tuple of Move
     source : str
         Where it comes from: a rule with its year and article, or empty for the user's own.
+    compounding : Compounding
+        Of the zero rates and the expected inflation rates that its moves change: a rule that moves annual
+        rates is met exactly only on annual rates.
+    set_name : str
+        The set it is of; empty for the user's own.
     """
 
     name: str
     moves: tuple[Move, ...]
     source: str = ""
+    compounding: Compounding = Compounding.CONTINUOUS
+    set_name: str = ""
+
+    def scaled(self, scale: float, *, name: str | None = None) -> Shock:
+        """The shock with every size times `scale`; floors stay where they are.
+
+        Parameters
+        ----------
+        scale : float
+            Negative for the opposite move.
+        name : str, optional
+            Of the new shock; by default the same.
+        """
+        moves = tuple(
+            move if move.kind is MoveKind.FLOOR else replace(move, size=scale * move.size)
+            for move in self.moves
+        )
+        return replace(self, moves=moves, name=self.name if name is None else name)
+
+
+@dataclass(frozen=True)
+class ShockSet:
+    """A prescribed or customary set of shocks, as it stands for one currency.
+
+    Attributes
+    ----------
+    name : str
+    source : str
+        The rule with its year and article, or what custom it is.
+    status : str
+        From when and until when it holds, and what of it is not confirmed.
+    shocks : tuple of Shock
+        None where the set has no sizes for the currency, or states figures alone.
+    is_usual : bool
+        Whether a book in the currency that names no sets asks for this one.
+    figures : tuple of (str, float)
+        Stated figures that are no moves of a curve or of flows, such as a fall in mortality: what they do to
+        a line of liabilities is for the user to state.
+    """
+
+    name: str
+    source: str
+    status: str = ""
+    shocks: tuple[Shock, ...] = ()
+    is_usual: bool = True
+    figures: tuple[tuple[str, float], ...] = ()
 
 
 @dataclass(frozen=True)
