@@ -8,23 +8,27 @@ from dataclasses import dataclass
 import numpy as np
 
 from desk.book.arrays import FloatArray
-from desk.rates.compounding import Compounding, from_continuous
-from desk.rates.curve import Curve
+from desk.rates.compounding import Compounding
 from desk.window.parts import numbers
 
-__all__ = ["Pasted", "merged", "new_quote", "quotes_fault", "read_cells"]
+__all__ = ["Pasted", "merged", "next_term", "quotes_fault", "read_cells"]
 
 _MOST_SHOWN = 6
 _MOST_ROWS = 10_000
 _LONGEST = 24
 
 
-def quotes_fault(terms: FloatArray, rates: FloatArray, compounding: Compounding) -> str:
-    """Why these quotes make no curve, in one line for the reader; empty where they make one."""
+def quotes_fault(
+    terms: FloatArray, rates: FloatArray, compounding: Compounding, *, what: str = "rate"
+) -> str:
+    """Why these quotes make no curve, in one line for the reader; empty where they make one.
+
+    `what` is the name of a quote's figure.
+    """
     if not terms.size:
         return "A curve needs at least one quote."
     if not (np.isfinite(terms).all() and np.isfinite(rates).all()):
-        return "Every quote needs a term and a rate."
+        return f"Every quote needs a term and a {what}."
     if (terms <= 0.0).any():
         bad = float(terms[terms <= 0.0][0])
         return f"A term must be above 0 years, not {numbers.exact(bad)}."
@@ -134,19 +138,18 @@ def merged(
     return grown[0], grown[1], ""
 
 
-def new_quote(curve: Curve, compounding: Compounding, after: int) -> tuple[float, float]:
-    """A term and a rate to add after a quote: on the curve, so that it hardly moves.
+def next_term(terms: FloatArray, after: int) -> float:
+    """A term to add after a quote [years].
 
     Between two terms it is the middle, to hundredths of a year where there is room; after the last one it is
-    as far beyond as that is beyond the one before.
+    as far beyond as that is beyond the one before; the first of all is 1 year.
     """
-    terms = curve.terms
+    if not terms.size:
+        return 1.0
     if after < terms.size - 1:
         low, high = float(terms[after]), float(terms[after + 1])
         term = (low + high) / 2
         rounded = round(term, 2)
-        term = rounded if low < rounded < high else term
-    else:
-        step = float(terms[-1] - terms[-2]) if terms.size > 1 else float(terms[-1])
-        term = float(terms[-1]) + step
-    return term, float(from_continuous(curve.zero(term), compounding))
+        return rounded if low < rounded < high else term
+    step = float(terms[-1] - terms[-2]) if terms.size > 1 else float(terms[-1])
+    return float(terms[-1]) + step

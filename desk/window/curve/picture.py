@@ -1,88 +1,246 @@
-"""The picture of a curve."""
+"""The pictures of a curve: the curve itself, and how far it is from another or from its bonds."""
 
 from __future__ import annotations
 
+from collections.abc import Sequence
+
 import numpy as np
+from PySide6.QtWidgets import QVBoxLayout, QWidget
 
-from desk.book import Basis
+from desk.book.arrays import FloatArray
 from desk.rates.compounding import Compounding, from_continuous
-from desk.rates.curve import Curve
-from desk.rates.sampling import sample_curve
-from desk.rates.smith_wilson import Extrapolation
+from desk.window.curve.shown import Shown
+from desk.window.curve.words import stated_as
 from desk.window.parts import numbers
+from desk.window.parts.labels import ElidedLabel
 from desk.window.parts.plots import Picture
-from desk.window.parts.theme import ThemeSwitch
+from desk.window.parts.theme import ThemeSwitch, keep_look
 
-__all__ = ["CurvePicture", "stated_as"]
+__all__ = ["CurvePicture", "MisfitPicture", "reach"]
 
-_ZERO, _FORWARD, _DISCOUNT, _QUOTES = "Zero", "Forward", "Discount", "Quote"
 _MOST_BEYOND = 3.0
 """Shown at most this many times as far as the last term."""
+_USUAL_REACH = 40.0
+"""Of a curve that nothing is extrapolated of, where the book has no later flow [years]."""
 
 
-def stated_as(compounding: Compounding) -> str:
-    """How rates are stated, after a unit: ``annual``, ``continuous``."""
-    return {
-        Compounding.ANNUAL: "compounded annually",
-        Compounding.SEMI_ANNUAL: "compounded semi-annually",
-        Compounding.QUARTERLY: "compounded quarterly",
-        Compounding.MONTHLY: "compounded monthly",
-        Compounding.CONTINUOUS: "compounded continuously",
-    }[compounding]
+def reach(shown: Shown, last_flow: float) -> float:
+    """How far a curve is shown [years]: beyond its last quote, and to the last flow within reason."""
+    last = shown.last_quoted
+    if not np.isfinite(last):
+        return float(max(np.ceil(last_flow), _USUAL_REACH))
+    return float(max(1.2 * last, min(np.ceil(last_flow), _MOST_BEYOND * last)))
 
 
-class CurvePicture(Picture):
-    """Zero and forward rates and, on the right-hand axis, discount factors over one time axis."""
+class _RoomyPicture(Picture):
+    """A picture whose sentence and reading may go over two lines, in room that does not change."""
+
+    def __init__(self, title: str, theme_switch: ThemeSwitch) -> None:
+        super().__init__(title, theme_switch)
+        former, self._strip = self._strip, ElidedLabel(lines=2)
+        keep_look(self._strip, "soft")
+        self._strip_room = QWidget()
+        column = QVBoxLayout(self._strip_room)
+        column.setContentsMargins(0, 0, 0, 0)
+        column.addWidget(self._strip)
+        column.addStretch(1)
+        layout = self.page.layout()
+        if layout is not None:
+            layout.replaceWidget(former, self._strip_room)
+        former.hide()
+        former.deleteLater()
+        self.set_lines(1)
+
+    def set_lines(self, count: int) -> None:
+        """Give the sentence and the reading so many lines."""
+        self._strip_room.setFixedHeight(count * self._strip.fontMetrics().height())
+
+
+class CurvePicture(_RoomyPicture):
+    """Zero and forward rates and, on the right-hand axis, discount factors over one time axis.
+
+    Of expected inflation the right-hand axis has the price index. A second curve lies over it, dashed, and
+    the reading line says how far apart they are.
+    """
 
     def __init__(self, theme_switch: ThemeSwitch) -> None:
         super().__init__("Zero rates, forward rates and discount factors", theme_switch)
         self.set_right_axis("Discount factor", "", digits=4)
+        self._shown: Shown | None = None
+        self._other: Shown | None = None
+        self._other_name = ""
+        self._compounding = Compounding.ANNUAL
+        self._until = 0.0
 
-    def show_basis(self, basis: Basis, last_flow: float, compounding: Compounding) -> None:
-        """Draw the curve of a basis.
+    def show_curve(
+        self,
+        shown: Shown,
+        *,
+        until: float,
+        compounding: Compounding,
+        other: Shown | None = None,
+        other_name: str = "",
+    ) -> None:
+        """Draw a curve up to `until` [years], and another one over it.
 
         Parameters
         ----------
-        basis : Basis
-        last_flow : float
-            Time of the last flow of the book [years]: the picture reaches it, within reason.
+        shown : Shown
+        until : float
         compounding : Compounding
             How the rates are shown.
+        other : Shown, optional
+        other_name : str
+            Stands before the names of its lines.
         """
-        curve = basis.curve
-        last = curve.last_term
-        until = max(1.2 * last, min(np.ceil(last_flow), _MOST_BEYOND * last))
-        sample = sample_curve(curve, until=until)
-        self.set_axes(
-            "Term",
-            "years",
-            "Rate",
-            f"% a year, {stated_as(compounding)}",
-            y_kind="rate",
-            y_digits=3,
+        factor = "Index" if shown.is_index else "Discount"
+        others = (f"{other_name}: zero", f"{other_name}: forward") if other is not None else ()
+        for name in set(self.names) - {factor, "Forward", "Zero", *others, shown.quotes.name}:
+            self.remove(name)
+        self._shown, self._other, self._compounding, self._until = shown, other, compounding, until
+        self._other_name = other_name
+        self.set_lines(1 if other is None and shown.fit is None else 2)
+        right = "Price index" if shown.is_index else "Discount factor"
+        self.set_right_axis(right, "today 1" if shown.is_index else "", digits=4)
+        self.set_title(
+            "Expected inflation and the price index"
+            if shown.is_index
+            else "Zero rates, forward rates and discount factors"
         )
-        self.add_line(_DISCOUNT, sample.time, sample.discount, "ink_soft", dashed=True, right=True)
-        self.add_line(_FORWARD, sample.time, from_continuous(sample.forward, compounding), "accent")
-        self.add_line(_ZERO, sample.time, from_continuous(sample.zero, compounding), "rates")
-        self.add_dots(_QUOTES, curve.terms, from_continuous(curve.zero_rates, compounding), "rates")
-        self.shade_from(last, "beyond the last quote")
-        ultimate = None
-        if basis.extrapolation is Extrapolation.SMITH_WILSON:
-            ultimate = basis.ultimate_forward_rate
-        self.set_description(_sentence(curve, compounding, ultimate))
+        self.set_axes(
+            "Term", "years", "Rate", f"% a year, {stated_as(compounding)}", y_kind="rate", y_digits=3
+        )
+        time = shown.times(until)
+        self.add_line(factor, time, shown.factor(time), "ink_soft", dashed=True, right=True)
+        forward = from_continuous(shown.curve.forward(time, time), compounding)
+        if other is not None:
+            at = other.times(until)
+            # Thin and of one hue, as it is there to be measured against.
+            self.add_line(
+                f"{other_name}: forward",
+                at,
+                from_continuous(other.curve.forward(at, at), compounding),
+                "what_if",
+                dashed=True,
+                strong=False,
+            )
+            self.add_line(f"{other_name}: zero", at, other.zero(at, compounding), "what_if", dashed=True)
+        self.add_line("Forward", time, forward, "accent")
+        self.add_line("Zero", time, shown.zero(time, compounding), "rates")
+        quotes = shown.quotes
+        if quotes.term.size:
+            order = np.argsort(quotes.term, kind="stable")
+            self.add_dots(
+                quotes.name, quotes.term[order], from_continuous(quotes.rate[order], compounding), "rates"
+            )
+        is_beyond = np.isfinite(shown.last_quoted) and shown.last_quoted < until
+        last = "bond" if shown.fit is not None else "quote"
+        self.shade_from(shown.last_quoted if is_beyond else None, f"beyond the last {last}")
+        self.set_description(_sentence(shown, compounding, until))
+
+    def clear(self) -> None:
+        """Take out everything but the axes."""
+        self._shown = self._other = None
+        super().clear()
+
+    def readings_at(self, x: float) -> list[tuple[str, str]]:
+        """Names and values of every series at `x`, and how far the two curves are apart."""
+        found = dict(super().readings_at(x))
+        if self._shown is not None and self._other is not None and 0.0 <= x <= self._until:
+            apart = self._shown.zero(x, self._compounding) - self._other.zero(x, self._compounding)
+            found["Difference"] = f"{numbers.signed(1e4 * float(apart), 1)} bp"
+        if self._shown is not None and x > self._shown.last_quoted:
+            found["extrapolated"] = ""
+        other = self._other_name
+        first = ("Zero", f"{other}: zero", "Difference", "Forward", f"{other}: forward")
+        order = [name for name in first if name in found]
+        return [(name, found[name]) for name in (*order, *(name for name in found if name not in order))]
 
 
-def _sentence(curve: Curve, compounding: Compounding, ultimate: float | None) -> str:
-    rates = from_continuous(curve.zero_rates, compounding)
-    beyond = float(from_continuous(curve.forward(curve.last_term, curve.last_term), compounding))
+class MisfitPicture(_RoomyPicture):
+    """How far a curve is from another one, or from each of its bonds, in basis points."""
 
-    def at(place: int) -> str:
-        term = float(curve.terms[place])
-        unit = "year" if term == 1.0 else "years"
-        return f"{numbers.rate(float(rates[place]), 2, with_unit=True)} at {numbers.exact(term)} {unit}"
+    def __init__(self, theme_switch: ThemeSwitch) -> None:
+        super().__init__("Difference in zero rates", theme_switch)
+        self.set_lines(2)
+        self._bond_names: dict[float, list[str]] = {}
 
-    known = f"Zero rates from {at(0)} to {at(-1)}" if curve.terms.size > 1 else f"One zero rate, {at(0)}"
-    if ultimate is not None:
-        goal = f"{numbers.rate(ultimate, with_unit=True)}, compounded annually"
-        return f"{known}; beyond the last quote the forward rate goes to {goal}."
+    def show_difference(
+        self, shown: Shown, other: Shown, *, words: str, until: float, compounding: Compounding
+    ) -> None:
+        """Draw the zero rates of one curve less those of another, as `words` say, up to `until` [years]."""
+        self._only("Zero rates")
+        self.set_title("Difference in zero rates")
+        self.set_axes("Term", "years", "Difference", "bp", y_digits=1, with_zero=True)
+        time = np.union1d(shown.times(until), other.times(until))
+        apart = 1e4 * (shown.zero(time, compounding) - other.zero(time, compounding))
+        self.add_line("Zero rates", time, apart, "what_if")
+        is_beyond = np.isfinite(shown.last_quoted) and shown.last_quoted < until
+        self.shade_from(shown.last_quoted if is_beyond else None)
+        most = int(np.abs(apart).argmax())
+        where = numbers.years(float(time[most]), 1)
+        largest = numbers.signed(float(apart[most]), 1)
+        self.set_range(x=(0.0, until))
+        self.set_description(f"{words}: at most {largest} bp, at {where} years.")
+
+    def show_misfits(self, term: FloatArray, misfit_bp: FloatArray, names: Sequence[str], words: str) -> None:
+        """Draw the misfit of bonds at their maturities [years, basis points]."""
+        self._only("Misfit")
+        self.shade_from(None)
+        for at, name in zip(term.tolist(), names, strict=True):
+            self._bond_names.setdefault(at, []).append(name)
+        self.set_title("Misfit of each bond")
+        self.set_axes("Maturity", "years", "Fitted less quoted yield", "bp", y_digits=2, with_zero=True)
+        order = np.argsort(term, kind="stable")
+        self.add_dots("Misfit", term[order], misfit_bp[order], "rates")
+        self.set_range(x=(0.0, 1.05 * float(term.max())))
+        self.set_description(words)
+
+    def _only(self, kept: str) -> None:
+        self._bond_names = {}
+        for name in set(self.names) - {kept}:
+            self.remove(name)
+
+    def readings_at(self, x: float) -> list[tuple[str, str]]:
+        """With the bonds' names."""
+        found = super().readings_at(x)
+        names = [
+            name for at, some in self._bond_names.items() if np.isclose(at, x, rtol=1e-9) for name in some
+        ]
+        return [(", ".join(names), ""), *found] if names else found
+
+
+def _sentence(shown: Shown, compounding: Compounding, until: float) -> str:
+    """The curve in words: where it starts and ends, and how it goes on."""
+    what = "Expected inflation" if shown.is_index else "Zero rates"
+    last = shown.last_quoted
+    if not np.isfinite(last):
+        first = min(1.0, until)
+        return f"{what} from {_at(shown, first, compounding)} to {_at(shown, until, compounding)}."
+    start = float(shown.quotes.term.min()) if shown.quotes.term.size else min(1.0, last)
+    if start < last:
+        known = f"{what} from {_at(shown, start, compounding)} to {_at(shown, last, compounding)}"
+    else:
+        known = f"One rate, {_at(shown, last, compounding)}"
+    if shown.ultimate is not None:
+        goal = f"{numbers.rate(shown.ultimate, with_unit=True)}, compounded annually"
+        return (
+            f"{known}; beyond the last quote the forward rate goes to {goal}, at alpha "
+            f"{numbers.number(shown.alpha, 6)}."
+        )
+    if shown.fit is not None and not shown.knots.size:
+        end = from_continuous(shown.curve.forward(until, until), compounding)
+        return (
+            f"{known}; beyond the last bond the fitted formula goes on, to a forward rate of "
+            f"{numbers.rate(float(end), with_unit=True)} at {numbers.integer(until)} years."
+        )
+    beyond = float(from_continuous(shown.curve.forward(last, last), compounding))
     return f"{known}; beyond the last quote the forward rate stays at {numbers.rate(beyond, with_unit=True)}."
+
+
+def _at(shown: Shown, term: float, compounding: Compounding) -> str:
+    rate = numbers.rate(float(shown.zero(term, compounding)), 2, with_unit=True)
+    if abs(term - round(term)) < 0.005:
+        unit = "year" if round(term) == 1 else "years"
+        return f"{rate} at {numbers.integer(term)} {unit}"
+    return f"{rate} at {numbers.years(term)} years"

@@ -1,410 +1,481 @@
-"""The station Curve: quotes, what is drawn between them, and the premiums of the basis."""
+"""The station Curve: what a curve is made from, what is drawn through it, and the premiums of the basis."""
 
 from __future__ import annotations
 
-from dataclasses import replace
 from typing import Any
 
 import numpy as np
 from PySide6.QtCore import Qt
-from PySide6.QtGui import QGuiApplication, QKeySequence, QShortcut
-from PySide6.QtWidgets import QHBoxLayout, QLabel, QPushButton, QVBoxLayout, QWidget
+from PySide6.QtGui import QGuiApplication, QResizeEvent
+from PySide6.QtWidgets import QStackedWidget, QWidget
 
-from desk.book import Basis, CurveKind
+from desk.book import Basis, BondFit, Book, CurveBonds, CurveKind, LiabilityMethod
 from desk.book.arrays import FloatArray
+from desk.intake.records import Reading
 from desk.rates.compounding import Compounding
-from desk.rates.day_count import DayCount
-from desk.rates.sampling import QuoteDetail, quote_details
-from desk.rates.smith_wilson import Extrapolation
-from desk.valuation.restating import with_day_count
-from desk.window.curve.edits import merged, new_quote, quotes_fault, read_cells
-from desk.window.curve.picture import CurvePicture
-from desk.window.curve.words import (
-    COMPOUNDINGS,
-    CURVE_KINDS,
-    DAY_COUNTS,
-    EXTRAPOLATIONS,
-    HOW_TO_EDIT,
-    INTERPOLATIONS,
-    PAYMENTS,
-    QUOTE_COLUMNS,
+from desk.rates.curve import DiscountCurve
+from desk.rates.fitting import CurveFit
+from desk.window.curve.bond_cells import added
+from desk.window.curve.bond_figures import bond_figures, fit_in_words
+from desk.window.curve.bonds_page import BondsPage
+from desk.window.curve.comparison import (
+    PASTED,
+    Compared,
+    Former,
+    choices_of,
+    compared,
+    read_pasted,
 )
+from desk.window.curve.editing import Editor
+from desk.window.curve.faults import QUOTED_KINDS, fault_of
+from desk.window.curve.fields import CurveFields
+from desk.window.curve.headings import (
+    HOW_INFLATION,
+    HOW_QUOTES,
+    HOW_SPREADS,
+    INFLATION_COLUMNS,
+    QUOTE_COLUMNS,
+    SPREAD_COLUMNS,
+)
+from desk.window.curve.pages import SomePages
+from desk.window.curve.picture import CurvePicture, MisfitPicture, reach
+from desk.window.curve.quotes_page import QuotesPage
+from desk.window.curve.rates_page import RatesPage
+from desk.window.curve.shown import Shown, shown_of
+from desk.window.curve.starting import new_bond, no_bonds
+from desk.window.curve.targets import Part, Target, basis_of, targets_of
+from desk.window.curve.words import CURVE_KINDS, LIABILITY_METHODS, SHOWN_AS
 from desk.window.document import Document
 from desk.window.jobs import Jobs
 from desk.window.parts import numbers
-from desk.window.parts.fields import Choice, ChoiceField, Form, NumberField
-from desk.window.parts.premiums import liability_spread_field, market_risk_premium_field
-from desk.window.parts.tables import Table, parse_grid
-from desk.window.parts.theme import GAP, WIDE, ThemeSwitch, keep_look, soft_font
+from desk.window.parts.fields import Choice, ChoiceField
+from desk.window.parts.theme import ThemeSwitch
 from desk.window.station import Station
 
 __all__ = ["CurveStation"]
 
+_USUAL_RATE = 0.02
+"""Of a first quote, where there is no curve to put it on."""
+_LEAST_SEEN = 0.005
+"""Misfits below it are not drawn [basis points]."""
+_UPRIGHT_FROM = 860
+"""From this height on [px] the pictures stand one over the other; in less they stand side by side."""
+
 
 class CurveStation(Station):
-    """Quotes, editable and pasteable, and the curve they give.
+    """A curve of the book, stated in whichever way, editable and pasteable, and compared with another.
 
-    An edit that gives no curve is refused with one line that says why, and the former curve stays.
+    An edit that gives no curve is refused with one line that says why, or kept aside as a draft while bonds
+    are gathered; the former curve stays.
     """
 
     key = "curve"
     title = "Curve"
-    purpose = "The curve that everything is discounted on: its quotes, and what is drawn between them"
+    purpose = "The curve that everything is discounted on: what it is made from, and what is drawn through it"
 
     def __init__(
         self, document: Document, jobs: Jobs, theme_switch: ThemeSwitch, parent: QWidget | None = None
     ) -> None:
         super().__init__(document, jobs, theme_switch, parent)
+        self.editor = Editor(document)
+        self.former = Former()
+        self._source: Reading | None = None
+        self._shown_book: Book | None = None
+        self._pasted: Shown | None = None
+        self._refusal = ""
         self.picture = CurvePicture(theme_switch)
-        self.picture.message.connect(self.message)
-        self.table = Table(
-            QUOTE_COLUMNS,
-            theme_switch,
-            name="Quotes of the curve",
-            description="Term and rate can be edited and pasted over. Insert adds a quote, Delete removes "
-            "those selected.",
-            empty_text="No quotes.",
-        )
-        self.table.table_model.commit = self._commit
-        self.table.paste_callback = self._on_paste
-        self.table.table_model.refused.connect(self._refuse)
-        self.table.message.connect(self.message)
-        self._shown: Basis | None = None
+        self.misfit = MisfitPicture(theme_switch)
+        self.quotes = QuotesPage(theme_switch)
+        self.bonds = BondsPage(theme_switch)
+        self.rates = RatesPage(theme_switch)
+        self.pages = SomePages(theme_switch, name="Tables of the curve")
+        self.source = QStackedWidget()
+        self.source.addWidget(self.quotes)
+        self.source.addWidget(self.bonds)
+        self.pages.add("source", "Quotes", self.source)
+        self.pages.add("rates", "Rates by term", self.rates)
+        for teller in (self.picture, self.misfit, self.quotes, self.bonds, self.rates):
+            teller.message.connect(self.message)
+        for page in (self.quotes, self.bonds):
+            page.refused.connect(self._refuse)
+        self.quotes.take = self._take_quotes
+        self.quotes.suggest = self._suggest
+        self.bonds.take = self._take_bonds
+        self.bonds.with_new = self._with_new_bond
         self._make_form()
-        self.set_pictures(self.picture)
-        self.set_table(self._make_table_page(), share=46)
+        self.set_pictures(self.picture, self.misfit)
+        self.pictures.setStretchFactor(0, 2)
+        self.pictures.setStretchFactor(1, 1)
+        self.misfit.hide()
+        self.set_table(self.pages, share=46)
         self.set_form_visible()
 
     def home(self) -> QWidget:
-        """The quotes."""
-        return self.table
-
-    # Making it
-
-    def _make_table_page(self) -> QWidget:
-        page = QWidget()
-        self.add_button = QPushButton("Add a quote")
-        self.add_button.setToolTip("After the selected one, on the curve (Insert)")
-        self.remove_button = QPushButton("Remove")
-        self.remove_button.setToolTip("The selected quotes (Delete)")
-        self.replace_button = QPushButton("Paste a whole curve")
-        self.replace_button.setToolTip("What is on the clipboard takes the place of all quotes")
-        how = QLabel(HOW_TO_EDIT)
-        how.setWordWrap(True)
-        how.setFont(soft_font(self.font()))
-        keep_look(how, "soft")
-        side = QVBoxLayout()
-        side.setContentsMargins(WIDE, GAP, WIDE, GAP)
-        side.setSpacing(GAP)
-        for button, act in (
-            (self.add_button, self.add_quote),
-            (self.remove_button, self.remove_quotes),
-            (self.replace_button, self.replace_curve),
-        ):
-            button.clicked.connect(lambda _=False, act=act: act())
-            side.addWidget(button)
-        side.addWidget(how)
-        side.addStretch(1)
-        across = QHBoxLayout(page)
-        across.setContentsMargins(0, 0, 0, 0)
-        across.setSpacing(0)
-        across.addWidget(self.table, 3)
-        across.addLayout(side, 1)
-        for keys, act in ((Qt.Key.Key_Insert, self.add_quote), (Qt.Key.Key_Delete, self.remove_quotes)):
-            shortcut = QShortcut(QKeySequence(keys), self.table)
-            shortcut.setContext(Qt.ShortcutContext.WidgetShortcut)
-            shortcut.activated.connect(act)
-        return page
+        """The quotes or bonds, or what follows where there are none."""
+        if self.pages.current == "rates":
+            return self.rates.table
+        return self.bonds.table if self.source.currentWidget() is self.bonds else self.quotes.table
 
     def _make_form(self) -> None:
         form = self.form
-        form.add_heading("The curve")
+        form.add_heading("What is looked at")
         self.date_note = form.add_note("")
-        self.compounding = ChoiceField(
-            "Quotes are stated", COMPOUNDINGS, hint="The figures stay; what they mean changes."
+        self.view = ChoiceField("Show", (Choice(Target(), Target().title),))
+        self.compare_with = ChoiceField("Compare with", (Choice(None, "Nothing"),))
+        self.shown_as = ChoiceField("Show rates", SHOWN_AS)
+        form.add(self.view)
+        form.add(self.compare_with)
+        self.paste_button = form.add_button("Compare with pasted rates", self.compare_pasted)
+        self.paste_button.setToolTip(
+            "Terms in years and zero rates in percent from the clipboard, drawn over this curve"
         )
-        self.interpolation = ChoiceField("Between the quotes", INTERPOLATIONS)
-        self.shown_as = ChoiceField("Show rates", (Choice("quoted", "As quoted"),))
-        self.shown_as.set_choices(
-            (
-                Choice("quoted", "As quoted", "Of the picture only: as the quotes are stated."),
-                Choice("continuous", "Continuous", "Of the picture only: compounded continuously."),
+        form.add(self.shown_as)
+        self.fields = CurveFields(form)
+        form.add_heading("Second basis")
+        self.second_button = form.add_button("Add a second basis", self._on_second)
+        self.second_note = form.add_note("")
+        self.view.committed.connect(self._on_view)
+        self.compare_with.committed.connect(lambda _: self.redraw())
+        self.shown_as.committed.connect(lambda _: self.redraw())
+        fields = self.fields
+        fields.changed.connect(self._on_changed)
+        fields.kind_chosen.connect(self._on_kind)
+        fields.method_chosen.connect(self._on_method)
+        fields.inflation_changed.connect(
+            lambda name, value, what: self._finish(
+                self.editor.put_inflation(f"Change of the {what}", **{name: value})
             )
         )
-        self.shown_as.committed.connect(lambda _: self.redraw())
-        self.curve_kind = ChoiceField("Quotes are", CURVE_KINDS)
-        self.payments = ChoiceField("Payments a year", PAYMENTS)
-        form.add(self.shown_as)
-        form.add(self.curve_kind)
-        form.add(self.payments)
-        form.add(self.compounding)
-        form.add(self.interpolation)
-        form.add_heading("Beyond the last quote")
-        self._make_beyond(form)
-        form.add_heading("Added to the curve")
-        self.liability_spread = liability_spread_field()
-        self.market_risk_premium = market_risk_premium_field()
-        form.add(self.liability_spread)
-        form.add(self.market_risk_premium)
-        form.add_heading("Time")
-        self.day_count = ChoiceField("Day count", DAY_COUNTS, hint="Turns dates into years.")
-        form.add(self.day_count)
-        for field, name, text in (
-            (self.curve_kind, "curve_kind", "kind of the quotes"),
-            (self.payments, "payments_per_year", "payments a year"),
-            (self.extrapolation, "extrapolation", "curve beyond the last quote"),
-            (self.ultimate_forward_rate, "ultimate_forward_rate", "ultimate forward rate"),
-            (self.last_liquid_point, "last_liquid_point", "last liquid point"),
-            (self.convergence_point, "convergence_point", "convergence point"),
-            (self.compounding, "compounding", "compounding of the quotes"),
-            (self.interpolation, "interpolation", "interpolation"),
-            (self.liability_spread, "liability_spread", "liability spread"),
-            (self.market_risk_premium, "market_risk_premium", "market risk premium"),
-        ):
-            field.committed.connect(lambda value, name=name, text=text: self._change(name, value, text))
-        self.day_count.committed.connect(self._change_day_count)
-
-    def _make_beyond(self, form: Form) -> None:
-        self.extrapolation = ChoiceField("How the curve goes on", EXTRAPOLATIONS)
-        self.last_liquid_point = NumberField(
-            "Last liquid point",
-            unit="years",
-            low=0.01,
-            high=150.0,
-            sensible=(10.0, 50.0),
-            hint="Quotes beyond it are left out; empty for the last quote.",
-            optional=True,
-        )
-        self.ultimate_forward_rate = NumberField(
-            "Ultimate forward rate",
-            unit="% a year",
-            percent=True,
-            low=-0.05,
-            high=0.2,
-            sensible=(0.02, 0.06),
-            hint="Compounded once a year; for Smith-Wilson.",
-            optional=True,
-        )
-        self.convergence_point = NumberField(
-            "Convergence point",
-            unit="years",
-            low=1.0,
-            high=300.0,
-            sensible=(40.0, 100.0),
-            hint="Where the forward rate has come to it; empty for 40 years after the last liquid point, "
-            "but no earlier than 60 years.",
-            optional=True,
-        )
-        for field in (
-            self.extrapolation,
-            self.last_liquid_point,
-            self.ultimate_forward_rate,
-            self.convergence_point,
-        ):
-            form.add(field)
-
-    def _show_form(self, basis: Basis) -> None:
-        self.curve_kind.set_value(basis.curve_kind)
-        self.payments.set_value(basis.payments_per_year)
-        self.compounding.set_value(basis.compounding)
-        self.interpolation.set_value(basis.interpolation)
-        self.extrapolation.set_value(basis.extrapolation)
-        self.last_liquid_point.set_value(basis.last_liquid_point)
-        self.ultimate_forward_rate.set_value(basis.ultimate_forward_rate)
-        self.convergence_point.set_value(basis.convergence_point)
-        self.liability_spread.set_value(basis.liability_spread)
-        self.market_risk_premium.set_value(basis.market_risk_premium)
-        self.day_count.set_value(basis.day_count)
-        by_method = basis.extrapolation is Extrapolation.SMITH_WILSON
-        self.payments.setVisible(basis.curve_kind is not CurveKind.ZERO)
-        self.interpolation.setVisible(not by_method)
-        self.convergence_point.setVisible(by_method)
+        fields.day_count_chosen.connect(self.editor.put_day_count)
 
     # Showing
 
+    @property
+    def target(self) -> Target:
+        """The curve that is looked at."""
+        return self.editor.target
+
+    def look_at(self, target: Target) -> None:
+        """Look at another curve of the book."""
+        self.editor.target = target
+        self._refusal = ""
+        self._shown_book = None
+        self.compare_with.set_value(None)
+        self.picture.stop_reading()
+        self.request_refresh()
+        self.refresh_now()
+
+    def _on_view(self, target: Target) -> None:
+        self.look_at(target)
+
     def refresh(self) -> None:
-        """Show the basis of the open book."""
+        """Show the curve of the open book."""
         book = self.document.book
+        if self.document.source is not self._source:
+            self._source = self.document.source
+            self.editor.clear()
+            self.former.clear()
+            self._pasted = None
+            self._refusal = ""
+            self.picture.stop_reading()
         if book is None:
-            self._shown = None
+            self._shown_book = None
             self.show_empty(
-                "A curve comes with a book. Open one, and its quotes are here to look at and to edit.",
+                "A curve comes with a book. Open one, and what it is made from is here to see and to edit.",
                 "Open a book",
                 lambda: self.step_wanted.emit("open"),
             )
             return
         self.show_content()
-        basis = book.basis
-        if basis is self._shown:
+        if book is self._shown_book:
             return
-        self._shown = basis
-        self.hide_stale()
+        if basis_of(book, self.target) is None:
+            self.editor.target = Target()
+        if self._shown_book is not None:
+            self._refusal = ""
+        self._shown_book = book
+        self._show_form(book)
+        self.redraw()
+
+    def _show_form(self, book: Book) -> None:
+        basis = self.editor.drafted
         self.date_note.setText(
             f"Valuation date {numbers.day(basis.valuation_date)}, currency {basis.currency}."
         )
-        self._show_form(basis)
-        try:
-            detail = quote_details(basis.curve, terms=basis.terms)
-        except ValueError as error:
-            # Its own edits give a curve or are refused; a book may still come from elsewhere.
-            none = np.full(basis.terms.shape, np.nan)
-            detail = QuoteDetail(basis.terms, none, none, none)
-            self._refuse(f"These quotes give no curve: {error}.")
-        self.table.set_rows(
-            {
-                "term": basis.terms,
-                "rate": basis.rates,
-                "zero": detail.zero,
-                "discount": detail.discount,
-                "forward": detail.forward_to_next,
-            }
+        self._offer(self.view, tuple(Choice(one, one.title) for one in targets_of(book)), self.target)
+        self.fields.show_basis(basis, self.target.part, _note(book, self.target))
+        has_second = book.second_basis is not None
+        self.second_button.setText("Remove the second basis" if has_second else "Add a second basis")
+        self.second_note.setText(
+            "Its curves are in the list above, to be changed and compared."
+            if has_second
+            else "A copy of this one, to be changed and compared."
         )
-        self.redraw()
+
+    def _offer(self, field: ChoiceField, choices: tuple[Choice, ...], value: object) -> None:
+        """Offer choices without disturbing those that are there already."""
+        if getattr(field, "offered", None) != choices:
+            field.set_choices(choices)
+            field.__dict__["offered"] = choices
+        field.set_value(value)
 
     def redraw(self) -> None:
-        """Draw the curve in the compounding chosen."""
+        """Show the curve and what it is compared with, in the compounding chosen."""
         book = self.document.book
         if book is None:
             return
-        as_quoted = self.shown_as.value == "quoted"
-        compounding = book.basis.compounding if as_quoted else Compounding.CONTINUOUS
-        ends = [float(flows.time.max()) for flows in (book.liabilities, book.asset_flows) if len(flows)]
+        target = self.target
+        fault = ""
+        shown: Shown | None = None
         try:
-            self.picture.show_basis(book.basis, max(ends, default=0.0), compounding)
-        except ValueError:
+            shown = shown_of(self.editor.basis, target.part)
+        except ValueError as error:
+            why = fault_of(self.editor.basis, target.part) or f"{error}."
+            fault = f"There is no curve. {why}"
+        if shown is not None:
+            self.former.note(target, shown)
+        other = self._other(book)
+        basis = self.editor.drafted
+        self._show_table(basis, shown)
+        if shown is None:
             self.picture.clear()
+            self.misfit.hide()
+            self.rates.show_curve(None, until=1.0, compounding=Compounding.ANNUAL)
+            if not fault and target.part is Part.INFLATION:
+                self.picture.set_description(
+                    "There is no expected inflation yet: paste its terms and rates, or add one."
+                )
+        else:
+            self._draw(book, basis, shown, other)
+        self._tell(fault)
+
+    def _other(self, book: Book) -> Compared | None:
+        choices = choices_of(book, self.target, self.former, self._pasted)
+        value = self.compare_with.value
+        known = any(choice.value == value for choice in choices)
+        self._offer(self.compare_with, choices, value if known else None)
+        try:
+            return compared(book, self.target, self.compare_with.value, self.former, self._pasted)
+        except ValueError as error:
+            self._refusal = f"The other curve cannot be shown: {error}"
+            return None
+
+    def _compounding(self, shown: Shown) -> Compounding:
+        return shown.compounding if self.shown_as.value == "quoted" else Compounding.CONTINUOUS
+
+    def _draw(self, book: Book, basis: Basis, shown: Shown, other: Compared | None) -> None:
+        ends = [float(flows.time.max()) for flows in (book.liabilities, book.asset_flows) if len(flows)]
+        until = reach(shown, max(ends, default=0.0))
+        compounding = self._compounding(shown)
+        drawn = other.shown if other is not None else None
+        name = other.short if other is not None else ""
+        self.picture.show_curve(shown, until=until, compounding=compounding, other=drawn, other_name=name)
+        self.rates.show_curve(shown, until=until, compounding=compounding, other=drawn, other_name=name)
+        bonds = _bonds_of(basis, self.target.part)
+        if other is not None:
+            self.misfit.show_difference(
+                shown,
+                other.shown,
+                words=f"{self.target.title} less {other.title}",
+                until=until,
+                compounding=compounding,
+            )
+        elif bonds is not None and _has_misfits(shown, len(bonds)) and shown.fit is not None:
+            words = fit_in_words(bonds, shown.fit, is_exact=_is_exact(basis, self.target.part))
+            self.misfit.show_misfits(shown.quotes.term, shown.fit.residual_bp, bonds.names, words)
+        else:
+            self.misfit.hide()
+            return
+        self.misfit.show()
+
+    def _show_table(self, basis: Basis, shown: Shown | None) -> None:
+        part = self.target.part
+        bonds = _bonds_of(basis, part)
+        curve = None if shown is None else shown.curve
+        source: QWidget | None = None
+        title = "Quotes"
+        if bonds is not None:
+            source, title = self.bonds, "Bonds"
+            fit: CurveFit | None = None if shown is None or self.editor.has_draft else shown.fit
+            words = "" if fit is None else fit_in_words(bonds, fit, is_exact=_is_exact(basis, part))
+            self.bonds.show_bonds(bonds, bond_figures(basis, bonds, fit), words)
+        elif part is Part.INFLATION:
+            source = self.quotes
+            self.quotes.set_kind(INFLATION_COLUMNS, "quote", "Expected inflation", HOW_INFLATION)
+            inflation, none = basis.inflation, np.zeros(0)
+            terms, rates = (none, none) if inflation is None else (inflation.terms, inflation.rates)
+            self.quotes.show_quotes(terms, rates, curve, is_index=True)
+        elif part is Part.LIABILITIES and basis.liability_method is LiabilityMethod.TERM_SPREADS:
+            source, title = self.quotes, "Spreads"
+            self.quotes.set_kind(SPREAD_COLUMNS, "spread", "Spreads of the liabilities", HOW_SPREADS)
+            self.quotes.show_quotes(basis.liability_terms, basis.liability_spreads, curve)
+        elif part is Part.CURVE and basis.curve_kind in QUOTED_KINDS:
+            source = self.quotes
+            self.quotes.set_kind(QUOTE_COLUMNS, "quote", "Quotes of the curve", HOW_QUOTES)
+            self.quotes.show_quotes(basis.terms, basis.rates, curve)
+        self._show_source(source, title)
+
+    def _show_source(self, source: QWidget | None, title: str) -> None:
+        """Offer the table of what the curve is made from; show it where it is another one than before."""
+        before = (self.pages.shown_keys, self.source.currentWidget())
+        self.pages.set_title("source", title)
+        self.pages.show_only(("rates",) if source is None else ("source", "rates"))
+        if source is not None:
+            self.source.setCurrentWidget(source)
+        if (self.pages.shown_keys, self.source.currentWidget()) != before:
+            self.pages.show_page("rates" if source is None else "source")
+
+    def _tell(self, fault: str) -> None:
+        """Say what is wrong, or what a draft waits for, where it is seen."""
+        if self._refusal:
+            self.show_stale("Close", self._close, text=self._refusal)
+        elif self.editor.has_draft:
+            self.show_stale(
+                "Give it up",
+                self._discard,
+                text=f"{self.editor.draft_fault} The former curve stays in use until then.",
+            )
+        elif fault:
+            self.show_stale("Close", self.hide_stale, text=fault)
+        else:
+            self.hide_stale()
 
     # Editing
 
+    def _close(self) -> None:
+        self._refusal = ""
+        self.redraw()
+
+    def _discard(self) -> None:
+        self.editor.discard_draft()
+        self._show_again()
+
+    def _show_again(self) -> None:
+        self._shown_book = None
+        self.refresh()
+
     def _refuse(self, reason: str) -> None:
         """Say why an edit was not taken, where it is seen, until the next one is."""
-        self.show_stale("Close", self.hide_stale, text=reason)
+        self._refusal = reason
+        self._tell("")
 
-    def _basis(self) -> Basis:
-        book = self.document.book
-        if book is None:
-            raise RuntimeError("there is no open book to edit")
-        return book.basis
-
-    def _put(self, text: str, **changes: Any) -> str:
-        """Edit the basis; why not, where the quotes would give no curve."""
-        book = self.document.book
-        if book is None:
-            return "There is no open book."
-        basis = replace(book.basis, **changes)
-        fault = quotes_fault(basis.terms, basis.rates, basis.compounding)
-        if fault:
-            return f"{fault} The curve is unchanged."
-        try:
-            _ = basis.curve
-        except ValueError as error:
-            return f"{str(error).rstrip('.')}. The curve is unchanged."
-        self.document.edit(text, replace(book, basis=basis))
-        self.hide_stale()
-        return ""
-
-    def _change(self, name: str, value: Any, what: str) -> None:
-        reason = self._put(f"Change of the {what}", **{name: value})
+    def _finish(self, reason: str) -> None:
+        """After an edit from the form: say why it was not taken, and show what is there."""
+        self._refusal = reason
         if reason:
-            self._refuse(reason)
-            self._show_form(self._basis())
-
-    def _change_day_count(self, value: DayCount) -> None:
-        book = self.document.book
-        if book is not None:
-            self.document.edit("Change of the day count", with_day_count(book, value))
-
-    def _commit(self, row: int, key: str, value: float | None) -> str | None:
-        basis = self._basis()
-        if value is None:
-            return f"A quote needs a {key}. The curve is unchanged."
-        columns = {"term": basis.terms.copy(), "rate": basis.rates.copy()}
-        columns[key][row] = value
-        if key == "rate":
-            what = f"Change of the rate at {numbers.exact(float(basis.terms[row]))} years"
+            self._show_form(self.editor.book)
+            self._tell("")
         else:
-            what = f"Change of the term {numbers.exact(float(basis.terms[row]))} years"
-        return self._put(what, terms=columns["term"], rates=columns["rate"]) or None
+            self._show_again()
 
-    def add_quote(self) -> None:
-        """Add a quote after the current one, on the curve, and begin to edit its rate."""
-        basis = self._basis()
-        row = self.table.current_source_row()
-        after = row if row >= 0 else basis.terms.size - 1
-        term, rate = new_quote(basis.curve, basis.compounding, after)
-        reason = self._put(
-            f"New quote at {numbers.exact(term)} years",
-            terms=np.insert(basis.terms, after + 1, term),
-            rates=np.insert(basis.rates, after + 1, round(rate, 6)),
-        )
-        if reason:
-            self._refuse(reason)
+    def _taken(self, reason: str) -> str:
+        """After an edit from a table: show what is there where it was taken."""
+        if not reason:
+            self._refusal = ""
+            self._show_again()
+        return reason
+
+    def _take_quotes(self, text: str, terms: FloatArray, rates: FloatArray) -> str:
+        return self._taken(self.editor.put_quotes(text, terms, rates))
+
+    def _take_bonds(self, text: str, bonds: CurveBonds) -> str:
+        return self._taken(self.editor.put_bonds(text, bonds))
+
+    def _on_changed(self, name: str, value: Any, what: str) -> None:
+        self._finish(self.editor.put(f"Change of the {what}", **{name: value}))
+
+    def _on_kind(self, kind: CurveKind) -> None:
+        name = next(choice.text for choice in CURVE_KINDS if choice.value is kind)
+        self._finish(self.editor.choose_kind(kind, name[:1].casefold() + name[1:]))
+        if self.editor.has_draft:
+            self.bonds.table.setFocus()
+
+    def _on_method(self, method: LiabilityMethod) -> None:
+        name = next(choice.text for choice in LIABILITY_METHODS if choice.value is method)
+        self._finish(self.editor.choose_method(method, name[:1].casefold() + name[1:]))
+
+    def _on_second(self) -> None:
+        if self.editor.book.second_basis is None:
+            self.editor.add_second_basis()
+        else:
+            self.editor.remove_second_basis()
+
+    def _suggest(self, term: float) -> float:
+        """A rate to add at a term: on the curve."""
+        basis, part = self.editor.basis, self.target.part
+        try:
+            shown = shown_of(basis, part)
+        except ValueError:
+            shown = None
+        if shown is None:
+            return _USUAL_RATE
+        if part is Part.LIABILITIES:
+            return float(basis.liability_spread_at([term])[0]) - basis.liability_spread
+        return float(shown.zero(term, shown.compounding))
+
+    def _with_new_bond(self, bonds: CurveBonds, after: int) -> CurveBonds:
+        basis = self.editor.basis
+        curve: DiscountCurve | None = None
+        if not fault_of(basis, Part.CURVE):
+            curve = basis.curve
+        if self.target.part is Part.LIABILITIES and not fault_of(basis, Part.LIABILITIES):
+            curve = basis.liability_curve
+        name, maturity, coupon, frequency, bond_yield = new_bond(basis, bonds, curve, after)
+        cells = {"name": name, "maturity": maturity, "coupon": coupon, "frequency": frequency}
+        return added(bonds, after, **cells, **{"yield": bond_yield})
+
+    def compare_pasted(self) -> None:
+        """Draw the clipboard's terms and zero rates over the curve."""
+        try:
+            like = shown_of(self.editor.basis, self.target.part)
+        except ValueError:
+            like = None
+        if like is None:
+            self._refuse("There is no curve yet to compare with.")
             return
-        self.refresh_now()
-        self.table.go_to(after + 1)
-        self.table.setFocus()
-
-    def _selected(self) -> list[int]:
-        rows = {index.row() for index in self.table.selectionModel().selectedIndexes()}
-        return sorted(self.table.table_model.source_row(row) for row in rows)
-
-    def remove_quotes(self) -> None:
-        """Remove the quotes that are selected."""
-        basis = self._basis()
-        chosen = self._selected()
-        if not chosen:
-            self._refuse("Select the quotes to remove.")
+        pasted, fault = read_pasted(QGuiApplication.clipboard().text(), like)
+        if pasted is None:
+            self._refuse(fault)
             return
-        one = len(chosen) == 1
-        what = f"quote at {numbers.exact(float(basis.terms[chosen[0]]))} years" if one else "quotes"
-        reason = self._put(
-            f"Removal of the {what}",
-            terms=np.delete(basis.terms, chosen),
-            rates=np.delete(basis.rates, chosen),
-        )
-        if reason:
-            self._refuse(reason)
+        self._pasted, self._refusal = pasted, ""
+        self._offer(self.compare_with, choices_of(self.editor.book, self.target, self.former, pasted), PASTED)
+        self.redraw()
 
-    def replace_curve(self) -> None:
-        """Put the clipboard's terms and rates in the place of all quotes."""
-        grid = parse_grid(QGuiApplication.clipboard().text())
-        if not grid:
-            self._refuse("There is nothing to paste: copy two columns, terms in years and rates in percent.")
-            return
-        pasted = read_cells(grid, "term")
-        fault = pasted.fault
-        if not fault and "rate" not in pasted.columns:
-            fault = "A whole curve needs two columns: terms in years and rates in percent."
-        if fault:
-            self._refuse(f"Nothing was pasted. {fault}")
-            return
-        self._take(np.array(pasted.columns["term"]), np.array(pasted.columns["rate"]), "Pasted curve")
+    def resizeEvent(self, event: QResizeEvent) -> None:
+        """Stand the pictures as the height allows."""
+        super().resizeEvent(event)
+        upright = self.height() >= _UPRIGHT_FROM
+        self.pictures.setOrientation(Qt.Orientation.Vertical if upright else Qt.Orientation.Horizontal)
 
-    def _on_paste(self, row: int, key: str, grid: list[list[str]]) -> str | None:
-        basis = self._basis()
-        if key not in ("term", "rate"):
-            self._refuse("Paste on a term or a rate: the other columns follow from them.")
-            return None
-        if len(self._selected()) == basis.terms.size > 1 and max(map(len, grid)) > 1:
-            self.replace_curve()
-            return None
-        pasted = read_cells(grid, key)
-        if pasted.faults:
-            self._refuse(f"Nothing was pasted. {pasted.fault}")
-            return None
-        terms, rates, fault = merged(basis.terms, basis.rates, pasted, max(row, 0))
-        if fault:
-            self._refuse(f"Nothing was pasted. {fault}")
-            return None
-        self._take(terms, rates, "Pasted quotes")
-        return None
 
-    def _take(self, terms: FloatArray, rates: FloatArray, text: str) -> None:
-        reason = self._put(text, terms=terms, rates=rates)
-        if reason:
-            self._refuse(f"Nothing was pasted. {reason}")
-            return
-        low, high = numbers.rate(float(rates.min()), 3), numbers.rate(float(rates.max()), 3, with_unit=True)
-        self.message.emit(
-            f"Pasted. {numbers.integer(rates.size)} quotes from {low} to {high}, read as percent a year."
-        )
+def _bonds_of(basis: Basis, part: Part) -> CurveBonds | None:
+    """The bonds the curve is drawn through; None where it is made from something else."""
+    if part is Part.CURVE and basis.curve_kind is CurveKind.BONDS:
+        return basis.bonds if basis.bonds is not None else no_bonds()
+    if part is Part.LIABILITIES and basis.liability_method is LiabilityMethod.CORPORATE_BONDS:
+        return basis.liability_bonds if basis.liability_bonds is not None else no_bonds()
+    return None
+
+
+def _has_misfits(shown: Shown, count: int) -> bool:
+    """Whether there is a misfit to be seen: an exact fit leaves only rounding."""
+    fit = shown.fit
+    return fit is not None and fit.residual_bp.size == count and fit.largest_bp >= _LEAST_SEEN
+
+
+def _is_exact(basis: Basis, part: Part) -> bool:
+    return (basis.bond_fit if part is Part.CURVE else basis.liability_fit) is BondFit.EXACT
+
+
+def _note(book: Book, target: Target) -> str:
+    """What is to be known of where an edit goes."""
+    second = book.second_basis
+    if target.part is Part.INFLATION and second is not None:
+        if second.inflation == book.basis.inflation:
+            if target.is_second:
+                return "The second basis has the inflation of the first one; an edit here gives it its own."
+            return "The second basis has the same inflation, and follows."
+        return "Each of the two bases has its own inflation."
+    if target.part is Part.LIABILITIES:
+        return "The curve shown has the liability spread in it."
+    return ""

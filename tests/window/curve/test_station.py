@@ -16,7 +16,7 @@ from desk.rates.compounding import Compounding, to_continuous
 from desk.rates.curve import Interpolation
 from desk.rates.day_count import DayCount
 from desk.rates.smith_wilson import Extrapolation
-from desk.window.curve.edits import merged, new_quote, quotes_fault, read_cells
+from desk.window.curve.edits import merged, next_term, quotes_fault, read_cells
 from desk.window.curve.station import CurveStation
 from desk.window.parts.theme import ThemeSwitch
 from tests.window.benches import Bench, a_fund, dispose
@@ -45,12 +45,12 @@ def put_on_clipboard(text: str) -> None:
 
 
 def edit(station: CurveStation, row: int, key: str, text: str) -> bool:
-    model = station.table.table_model
+    model = station.quotes.table.table_model
     return model.setData(model.index(row, model.column_of(key)), text)
 
 
 def shown(station: CurveStation, row: int, key: str) -> str:
-    model = station.table.table_model
+    model = station.quotes.table.table_model
     return str(model.data(model.index(row, model.column_of(key))))
 
 
@@ -68,7 +68,7 @@ def test_without_a_book_it_asks_for_one(bench: Bench, qtbot: QtBot, theme_switch
 
 
 def test_the_table_shows_the_quotes_and_what_follows(station: CurveStation) -> None:
-    assert station.table.table_model.rowCount() == 4
+    assert station.quotes.table.table_model.rowCount() == 4
     assert shown(station, 0, "rate") == "2.000"
     # ln(1.02) = 0.0198026, 1/1.02 = 0.980392, and from 1 to 2 years ln(1.022² / 1.02) = 0.0237204.
     assert shown(station, 0, "zero") == "1.9803"
@@ -85,7 +85,7 @@ def test_the_picture_reads_zero_forward_and_discount(station: CurveStation) -> N
 
 def test_the_picture_reaches_beyond_the_last_quote(station: CurveStation) -> None:
     assert "beyond the last quote the forward rate stays at" in station.picture.description
-    assert dict(station.picture.readings_at(11.0)).keys() == {"Discount", "Forward", "Zero"}
+    assert dict(station.picture.readings_at(11.0)).keys() == {"Zero", "Forward", "Discount", "extrapolated"}
 
 
 def test_rates_are_shown_continuously_on_request(station: CurveStation, bench: Bench) -> None:
@@ -145,29 +145,29 @@ def test_words_are_no_rate(station: CurveStation, bench: Bench) -> None:
 
 def test_a_quote_is_added_on_the_curve(station: CurveStation, bench: Bench) -> None:
     before = bench.book.basis.curve.zero([1.5, 3.5, 7.0])
-    station.table.go_to(1)
-    station.add_quote()
+    station.quotes.table.go_to(1)
+    station.quotes.add()
     basis = bench.book.basis
     assert basis.terms.tolist() == [1.0, 2.0, 3.5, 5.0, 10.0]
     assert basis.curve.zero([1.5, 3.5, 7.0]) == pytest.approx(before, abs=2e-6)
-    assert station.table.current_source_row() == 2
+    assert station.quotes.table.current_source_row() == 2
 
 
 def test_the_keyboard_adds_and_removes(station: CurveStation, bench: Bench, qtbot: QtBot) -> None:
     station.activateWindow()
-    station.table.setFocus()
-    qtbot.waitUntil(station.table.hasFocus)
-    station.table.go_to(3)
-    QTest.keyClick(station.table, Qt.Key.Key_Insert)
+    station.quotes.table.setFocus()
+    qtbot.waitUntil(station.quotes.table.hasFocus)
+    station.quotes.table.go_to(3)
+    QTest.keyClick(station.quotes.table, Qt.Key.Key_Insert)
     assert bench.book.basis.terms.tolist() == [1.0, 2.0, 5.0, 10.0, 15.0]
-    station.table.selectRow(0)
-    QTest.keyClick(station.table, Qt.Key.Key_Delete)
+    station.quotes.table.selectRow(0)
+    QTest.keyClick(station.quotes.table, Qt.Key.Key_Delete)
     assert bench.book.basis.terms.tolist() == [2.0, 5.0, 10.0, 15.0]
 
 
 def test_the_last_quote_cannot_be_removed(station: CurveStation, bench: Bench) -> None:
-    station.table.selectAll()
-    station.remove_quotes()
+    station.quotes.table.selectAll()
+    station.quotes.remove()
     assert "at least one quote" in station.stale_text
     assert bench.book.basis.terms.size == 4
 
@@ -175,7 +175,8 @@ def test_the_last_quote_cannot_be_removed(station: CurveStation, bench: Bench) -
 def test_quotes_from_elsewhere_that_give_no_curve_can_be_mended(station: CurveStation, bench: Bench) -> None:
     bench.edit_basis(terms=np.array([1.0, 1.0]), rates=np.array([0.02, 0.03]))
     station.refresh_now()
-    assert "give no curve" in station.stale_text
+    assert "no curve" in station.stale_text
+    assert "1 years would stand twice" in station.stale_text
     assert shown(station, 0, "discount") == "–"
     assert not station.picture.names
     assert edit(station, 1, "term", "2")
@@ -189,8 +190,8 @@ def test_quotes_from_elsewhere_that_give_no_curve_can_be_mended(station: CurveSt
 
 def test_rows_are_pasted_over_as_one_step(station: CurveStation, bench: Bench) -> None:
     put_on_clipboard("2\t2.4\n5\t2.8%\n")
-    station.table.go_to(1)
-    station.table.paste()
+    station.quotes.table.go_to(1)
+    station.quotes.table.paste()
     assert bench.book.basis.rates.tolist() == [0.02, 0.024, 0.028, 0.03]
     bench.document.undo()
     assert bench.book.basis == a_fund().basis
@@ -198,15 +199,15 @@ def test_rows_are_pasted_over_as_one_step(station: CurveStation, bench: Bench) -
 
 def test_rows_beyond_the_last_are_added(station: CurveStation, bench: Bench) -> None:
     put_on_clipboard("10\t3.1\n20\t3.2\n30\t3.0")
-    station.table.go_to(3)
-    station.table.paste()
+    station.quotes.table.go_to(3)
+    station.quotes.table.paste()
     assert bench.book.basis.terms.tolist() == [1.0, 2.0, 5.0, 10.0, 20.0, 30.0]
 
 
 def test_every_bad_cell_is_named_and_nothing_is_pasted(station: CurveStation, bench: Bench) -> None:
     put_on_clipboard("1\t2.1\ntwo\t2.2\n5\t#N/A\n")
-    station.table.go_to(0)
-    station.table.paste()
+    station.quotes.table.go_to(0)
+    station.quotes.table.paste()
     assert "Nothing was pasted." in station.stale_text
     assert "Row 2: “two” is no term." in station.stale_text
     assert "Row 3: “#N/A” is no rate." in station.stale_text
@@ -215,8 +216,8 @@ def test_every_bad_cell_is_named_and_nothing_is_pasted(station: CurveStation, be
 
 def test_pasted_terms_that_do_not_rise_are_refused(station: CurveStation, bench: Bench) -> None:
     put_on_clipboard("9\t2.1")
-    station.table.go_to(1)
-    station.table.paste()
+    station.quotes.table.go_to(1)
+    station.quotes.table.paste()
     assert "5 years would come after 9 years" in station.stale_text
     assert not bench.document.can_undo
 
@@ -224,7 +225,7 @@ def test_pasted_terms_that_do_not_rise_are_refused(station: CurveStation, bench:
 def test_a_whole_curve_takes_the_place_of_all(station: CurveStation, bench: Bench, qtbot: QtBot) -> None:
     put_on_clipboard("Term\tRate\n0.5\t1.9 %\n30\t3,000.5E-3")
     with qtbot.waitSignal(station.message) as told:
-        station.replace_button.click()
+        station.quotes.replace_button.click()
     assert bench.book.basis.terms.tolist() == [0.5, 30.0]
     assert bench.book.basis.rates == pytest.approx([0.019, 0.030005])
     assert "read as percent a year" in told.args[0]
@@ -234,22 +235,22 @@ def test_a_whole_curve_takes_the_place_of_all(station: CurveStation, bench: Benc
 def test_figures_are_read_in_the_readers_locale(station: CurveStation, bench: Bench) -> None:
     QLocale.setDefault(QLocale(QLocale.Language.German, QLocale.Country.Germany))
     put_on_clipboard("0,5\t1,9\n1\t2,05\n")
-    station.replace_curve()
+    station.quotes.replace_all()
     assert bench.book.basis.terms.tolist() == [0.5, 1.0]
     assert bench.book.basis.rates == pytest.approx([0.019, 0.0205])
 
 
 def test_a_paste_on_what_follows_is_explained(station: CurveStation, bench: Bench) -> None:
     put_on_clipboard("0.97")
-    station.table.go_to(0, 3)
-    station.table.paste()
+    station.quotes.table.go_to(0, 3)
+    station.quotes.table.paste()
     assert "the other columns follow" in station.stale_text
     assert not bench.document.can_undo
 
 
 def test_an_empty_clipboard_is_said(station: CurveStation) -> None:
     put_on_clipboard("")
-    station.replace_curve()
+    station.quotes.replace_all()
     assert "nothing to paste" in station.stale_text
 
 
@@ -257,55 +258,55 @@ def test_an_empty_clipboard_is_said(station: CurveStation) -> None:
 
 
 def test_interpolation_and_spread_are_edits(station: CurveStation, bench: Bench) -> None:
-    station.interpolation.committed.emit(Interpolation.MONOTONE_CONVEX)
-    station.liability_spread.committed.emit(0.01)
+    station.fields.interpolation.committed.emit(Interpolation.MONOTONE_CONVEX)
+    station.fields.liability_spread.committed.emit(0.01)
     assert bench.book.basis.interpolation is Interpolation.MONOTONE_CONVEX
     assert bench.book.basis.liability_spread == 0.01
     assert bench.document.undo_text == "Change of the liability spread"
 
 
 def test_compounding_says_what_the_figures_mean(station: CurveStation, bench: Bench) -> None:
-    station.compounding.committed.emit(Compounding.QUARTERLY)
+    station.fields.compounding.committed.emit(Compounding.QUARTERLY)
     station.refresh_now()
     basis = bench.book.basis
     assert basis.rates.tolist() == a_fund().basis.rates.tolist()
     assert basis.curve.zero_rates == pytest.approx(to_continuous(basis.rates, Compounding.QUARTERLY))
-    assert "compounded quarterly" in station.compounding.hint
+    assert "compounded quarterly" in station.fields.compounding.hint
 
 
 def test_quotes_of_another_kind_give_another_curve(station: CurveStation, bench: Bench) -> None:
     before = bench.book.basis.curve.zero_rates
-    assert station.payments.isHidden()
-    station.curve_kind.committed.emit(CurveKind.SWAP)
-    station.payments.committed.emit(2)
+    assert station.fields.payments.isHidden()
+    station.fields.curve_kind.committed.emit(CurveKind.SWAP)
+    station.fields.payments.committed.emit(2)
     station.refresh_now()
     basis = bench.book.basis
     assert (basis.curve_kind, basis.payments_per_year) == (CurveKind.SWAP, 2)
     assert not np.allclose(basis.curve.zero_rates, before)
-    assert not station.payments.isHidden()
+    assert not station.fields.payments.isHidden()
     assert shown(station, 3, "zero") == f"{100 * basis.curve.zero_rates[3]:.4f}"
 
 
 def test_a_curve_goes_on_to_an_ultimate_forward_rate(station: CurveStation, bench: Bench) -> None:
-    station.extrapolation.committed.emit(Extrapolation.SMITH_WILSON)
+    station.fields.extrapolation.committed.emit(Extrapolation.SMITH_WILSON)
     assert "ultimate forward rate" in station.stale_text
     assert bench.book.basis.extrapolation is Extrapolation.FLAT_FORWARD
-    assert station.extrapolation.value is Extrapolation.FLAT_FORWARD
-    station.ultimate_forward_rate.committed.emit(0.033)
-    station.extrapolation.committed.emit(Extrapolation.SMITH_WILSON)
-    station.last_liquid_point.committed.emit(float(bench.book.basis.terms[-2]))
+    assert station.fields.extrapolation.value is Extrapolation.FLAT_FORWARD
+    station.fields.ultimate_forward_rate.committed.emit(0.033)
+    station.fields.extrapolation.committed.emit(Extrapolation.SMITH_WILSON)
+    station.fields.last_liquid_point.committed.emit(float(bench.book.basis.terms[-2]))
     station.refresh_now()
     basis = bench.book.basis
     far = float(basis.curve.forward(150.0, 151.0))
     assert far == pytest.approx(np.log(1.033), abs=1e-4)
-    assert station.interpolation.isHidden()
+    assert station.fields.interpolation.isHidden()
     # The quote that is left out is still in the table, with what the curve says there.
     assert shown(station, 3, "zero") == f"{100 * float(basis.curve.zero(basis.terms[3])):.4f}"
     assert "3.30 %" in station.picture.accessibleDescription().replace(" ", " ").replace("\u202f", " ")
 
 
 def test_the_day_count_moves_the_dates(station: CurveStation, bench: Bench) -> None:
-    station.day_count.committed.emit(DayCount.ACT_360)
+    station.fields.day_count.committed.emit(DayCount.ACT_360)
     assert bench.book.basis.day_count is DayCount.ACT_360
 
 
@@ -359,7 +360,9 @@ def test_rates_alone_do_not_make_new_rows() -> None:
     assert after.tolist() == [0.01, 0.03]
 
 
-def test_a_quote_after_the_only_one_is_twice_as_far() -> None:
-    basis = a_fund().basis
-    assert new_quote(basis.curve, basis.compounding, 3)[0] == 15.0
-    assert new_quote(basis.curve, basis.compounding, 0)[0] == 1.5
+def test_a_quote_after_the_last_is_as_far_again() -> None:
+    terms = a_fund().basis.terms
+    assert next_term(terms, 3) == 15.0
+    assert next_term(terms, 0) == 1.5
+    assert next_term(terms[:1], 0) == 2.0
+    assert next_term(np.zeros(0), -1) == 1.0
