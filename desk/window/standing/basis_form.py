@@ -16,7 +16,14 @@ from desk.window.parts.fields import Choice, ChoiceField, Field, Form, NumberFie
 from desk.window.parts.labels import well_broken
 from desk.window.parts.premiums import liability_spread_field, market_risk_premium_field
 from desk.window.parts.theme import ThemeSwitch
-from desk.window.standing.edits import basis_fault, held_as_second, swapped, with_method, without_second
+from desk.window.standing.edits import (
+    basis_fault,
+    changed_curve,
+    held_as_second,
+    swapped,
+    with_method,
+    without_second,
+)
 from desk.window.standing.spreads import SpreadsTable
 from desk.window.standing.wording import basis_words
 
@@ -194,12 +201,13 @@ class BasisForm(QObject):
             )
 
     def _put(self, text: str, basis: Basis) -> None:
-        """Edit the basis; say why not, where it would give liabilities no value and the former one did."""
+        """Edit the basis; say why not, where what is changed would give liabilities no value."""
         book = self._document.book
         if book is None:
             return
-        fault = basis_fault(basis)
-        if fault and not basis_fault(book.basis):
+        # Drawing a curve takes its time: only where the edit has to do with it.
+        fault = basis_fault(basis) if changed_curve(book.basis, basis) else ""
+        if fault:
             self.show_book(book, self._document.standing, self._document.comparison)
             self.refused.emit(f"{fault} The basis is unchanged.")
             return

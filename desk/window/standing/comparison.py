@@ -104,8 +104,8 @@ def _row(group: str, name: str, kind: str, currency: str, one: float, other: flo
         return ComparedMeasure(group, name, unit, 100.0 * one, 100.0 * other)
     if kind != "money":
         return ComparedMeasure(group, name, kind, one, other)
-    # One scale for both, so that they can be subtracted by eye.
-    scale = numbers.scale_for([one, other])
+    # One scale for both, so that they can be subtracted by eye, with four figures at least.
+    scale = numbers.scale_for([one / 10.0, other / 10.0])
     unit = numbers.unit_with_scale(currency, scale)
     return ComparedMeasure(group, name, unit, one / scale.factor, other / scale.factor)
 

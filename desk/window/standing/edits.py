@@ -13,6 +13,7 @@ from desk.valuation.records import Standing
 __all__ = [
     "NO_CORPORATE_BONDS",
     "basis_fault",
+    "changed_curve",
     "held_as_second",
     "swapped",
     "terms_of",
@@ -27,6 +28,21 @@ NO_CORPORATE_BONDS = (
 )
 _FIRST_TERMS = (1.0, 5.0, 10.0, 20.0, 30.0)
 """Of spreads by term that begin at nothing [years]."""
+
+
+def changed_curve(former: Basis, basis: Basis) -> bool:
+    """Whether two bases differ in what the curve of the liabilities is drawn from, their spread apart."""
+    if (
+        former.liability_method is not basis.liability_method
+        or former.liability_fit is not basis.liability_fit
+    ):
+        return True
+    if former.expected_return != basis.expected_return or former.liability_bonds != basis.liability_bonds:
+        return True
+    return not (
+        np.array_equal(former.liability_terms, basis.liability_terms)
+        and np.array_equal(former.liability_spreads, basis.liability_spreads)
+    )
 
 
 def basis_fault(basis: Basis) -> str:

@@ -42,13 +42,10 @@ class InflationPicture(Picture):
 
 def _sentence(inflation: InflationStanding, gap: FloatArray, currency: str) -> str:
     if not np.any(gap):
-        return "Rise for +1 basis point of expected inflation. There is no gap."
+        return "Rise for +1 basis point at each key rate. There is no gap."
     widest = int(np.abs(gap).argmax())
     term = numbers.exact(float(inflation.term[widest]))
-    return (
-        f"Rise for +1 basis point of expected inflation. Widest gap at {term} years: "
-        f"{amount(float(gap[widest]), currency)}."
-    )
+    return f"Widest gap at {term} years: {amount(float(gap[widest]), currency)} for +1 bp."
 
 
 class InflationPage(QWidget):
@@ -121,23 +118,29 @@ class InflationPage(QWidget):
 
     @staticmethod
     def _key_columns(currency: str) -> tuple[Column, ...]:
+        duration = "Key-rate duration of expected inflation."
+        dv01 = "Rise in present value for +1 basis point of expected inflation at this term."
         return (
-            Column("term", "Key rate", "years", "years"),
-            Column(
-                "assets", "Infl. dur. of assets", "years", "years", digits=3, tooltip="Key-rate duration."
-            ),
+            Column("term", "Key rate", "years", "years", tooltip="Term of the inflation rate that moves."),
+            Column("assets", "Assets dur.", "years", "years", digits=3, tooltip=f"Of assets. {duration}"),
             Column(
                 "liabilities",
-                "Infl. dur. of liabilities",
+                "Liabilities dur.",
                 "years",
                 "years",
                 digits=3,
-                tooltip="Key-rate duration.",
+                tooltip=f"Of liabilities. {duration}",
             ),
-            Column("dv01_assets", "Infl. DV01 of assets", currency, "money"),
-            Column("dv01_liabilities", "Infl. DV01 of liabilities", currency, "money"),
-            Column("gap", "Infl. DV01 gap", currency, "money", tooltip="Assets less liabilities."),
-            Column("rate_gap", "DV01 gap", currency, "money", tooltip="Of rates: assets less liabilities."),
+            Column("dv01_assets", "Assets DV01", currency, "money", tooltip=f"Of assets. {dv01}"),
+            Column(
+                "dv01_liabilities",
+                "Liabilities DV01",
+                currency,
+                "money",
+                tooltip=f"Of liabilities. {dv01}",
+            ),
+            Column("gap", "DV01 gap", currency, "money", tooltip="Of inflation: assets less liabilities."),
+            Column("rate_gap", "Of rates", currency, "money", tooltip="DV01 gap of rates at the same term."),
         )
 
     def show_standing(self, standing: Standing) -> None:

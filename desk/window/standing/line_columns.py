@@ -57,9 +57,9 @@ def line_columns(currency: str, *, with_terms: bool = False, with_second: bool =
         Column("side", "Side"),
         Column("line", "Line"),
         Column("kind", "Kind", tooltip="The kind of holding, or flows as the source states them."),
-        *(terms if with_terms else ()),
         Column("present_value", "Present value", currency, "money"),
         *(second if with_second else ()),
+        *(terms if with_terms else ()),
         *_measure_columns(currency),
     )
 

@@ -105,7 +105,7 @@ class LinesPage(QWidget):
         self.finder.setPlaceholderText("Find a line")
         self.finder.setAccessibleName("Find a line")
         self.finder.setClearButtonEnabled(True)
-        self.finder.setFixedWidth(160)
+        self.finder.setFixedWidth(128)
         self.terms_button = QPushButton("Terms…")
         self.terms_button.setAccessibleName("Terms of the selected line")
         self.terms_button.setToolTip(
@@ -244,6 +244,12 @@ class LinesPage(QWidget):
             self.totals.setColumnWidth(place, width)
 
     def _filter(self) -> None:
+        current = self.table.current_source_row()
+        self._show_wanted()
+        if current >= 0 and self.table.current_source_row() < 0:
+            self.table.go_to(current)
+
+    def _show_wanted(self) -> None:
         side = _SHOWN[max(self.shown_sides.currentIndex(), 0)]
         text = self.finder.text().strip().casefold()
         if side == "all" and not text:

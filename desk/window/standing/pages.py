@@ -59,6 +59,8 @@ class Pages(QWidget):
         if not visible and self.tabs.currentIndex() == place:
             self.tabs.setCurrentIndex(0)
         self.tabs.setTabVisible(place, visible)
+        # The bar does not see by itself that it needs other room now.
+        self.tabs.updateGeometry()
 
     def has_page(self, key: str) -> bool:
         """Whether a page is offered."""

@@ -12,7 +12,10 @@ from desk.window.parts.plots import Picture
 from desk.window.parts.theme import ThemeSwitch
 from desk.window.standing.wording import amount
 
-__all__ = ["FlowPicture", "KeyRatePicture"]
+__all__ = ["FLOWS", "FLOWS_IN_REAL", "FlowPicture", "KeyRatePicture"]
+
+FLOWS = "Flows of both sides by year"
+FLOWS_IN_REAL = "Flows by year in today's money"
 
 _CUMULATIVE = "Cumulative net"
 _LEAST_ROOM = 0.25
@@ -26,19 +29,16 @@ class FlowPicture(Picture):
     """
 
     def __init__(self, theme_switch: ThemeSwitch) -> None:
-        super().__init__("Flows of both sides by year", theme_switch)
+        super().__init__(FLOWS, theme_switch)
 
-    def show_periods(self, periods: Periods, currency: str, *, in_real: bool = False) -> None:
-        """Draw the periods of a standing; `in_real` where they are in today's money."""
-        label = "A year, in today's money" if in_real else "A year"
-        self.set_axes("Year", "", label, currency, y_kind="money", with_zero=True)
+    def show_periods(self, periods: Periods, currency: str) -> None:
+        """Draw the periods of a standing."""
+        self.set_axes("Year", "", "A year", currency, y_kind="money", with_zero=True)
         self.set_right_axis("Cumulative", currency, kind="money", alike=True)
         self.add_bars("Assets", periods.year, periods.assets, "assets", width=0.72)
         self.add_bars("Liabilities", periods.year, -periods.liabilities, "liabilities", width=0.72)
         self.add_line(_CUMULATIVE, periods.year, periods.cumulative, "surplus", right=True)
-        self.set_description(
-            _flow_sentence(periods, currency, "In today's money, undiscounted" if in_real else "Undiscounted")
-        )
+        self.set_description(_flow_sentence(periods, currency))
 
     def readings_at(self, x: float) -> list[tuple[str, str]]:
         """Each value with its own unit: the two axes may differ in theirs."""
@@ -88,15 +88,15 @@ def _around_zero(low: float, high: float, *, below: float) -> tuple[float, float
     return -below * whole, (1.0 - below) * whole
 
 
-def _flow_sentence(periods: Periods, currency: str, what: str) -> str:
+def _flow_sentence(periods: Periods, currency: str) -> str:
     if not periods.year.size:
         return "There are no flows after the valuation date."
     lowest = int(periods.cumulative.argmin())
     value = float(periods.cumulative[lowest])
     if value >= 0.0:
-        return f"{what}. Receipts so far cover payments so far in every year."
+        return "Undiscounted. Receipts so far cover payments so far in every year."
     year = int(periods.year[lowest])
-    return f"{what}. Lowest cumulative: {amount(value, currency)}, year {year}."
+    return f"Undiscounted. Lowest cumulative: {amount(value, currency)}, year {year}."
 
 
 class KeyRatePicture(Picture):
@@ -127,4 +127,4 @@ def _key_sentence(key_rates: KeyRates, gap: FloatArray, currency: str) -> str:
         return "For +1 basis point at each key rate. There is no gap."
     widest = int(np.abs(gap).argmax())
     term = numbers.exact(float(key_rates.term[widest]))
-    return f"For +1 basis point. Widest gap at {term} years: {amount(float(gap[widest]), currency)}."
+    return f"Widest gap at {term} years: {amount(float(gap[widest]), currency)} for +1 bp."

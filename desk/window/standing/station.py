@@ -21,7 +21,7 @@ from desk.window.standing.edits import terms_of, with_terms
 from desk.window.standing.inflation import InflationPage, InflationPicture
 from desk.window.standing.lines import LinesPage
 from desk.window.standing.pages import Pages
-from desk.window.standing.pictures import FlowPicture, KeyRatePicture
+from desk.window.standing.pictures import FLOWS, FLOWS_IN_REAL, FlowPicture, KeyRatePicture
 from desk.window.standing.tables import ConditionsPage, KeyRatesTable, PeriodsTable
 from desk.window.standing.terms_dialog import TermsDialog
 from desk.window.standing.wording import basis_words, plain_reading
@@ -88,8 +88,8 @@ class StandingStation(Station):
             teller.message.connect(self.message)
         self.pages = Pages(theme_switch, name="Tables of the standing")
         self.pages.add("lines", "Lines", self.lines)
-        self.pages.add("comparison", "Two bases", self.comparison)
-        self.pages.add("periods", "Flows by year", self.periods)
+        self.pages.add("comparison", "Bases", self.comparison)
+        self.pages.add("periods", "By year", self.periods)
         self.pages.add("key_rates", "Key rates", self.key_rates)
         self.pages.add("inflation", "Inflation", self.inflation)
         self.pages.add("redington", "Redington", self.conditions)
@@ -217,7 +217,8 @@ class StandingStation(Station):
         inflation = standing.inflation
         in_real = inflation is not None and self.money.currentIndex() == 1
         periods = inflation.real_periods if inflation is not None and in_real else standing.periods
-        self.flow_picture.show_periods(periods, standing.currency, in_real=in_real)
+        self.flow_picture.show_periods(periods, standing.currency)
+        self.flow_picture.set_title(FLOWS_IN_REAL if in_real else FLOWS)
         self.periods.show_periods(periods, f"{standing.currency} of today" if in_real else standing.currency)
 
     def _show_inflation(self) -> None:
@@ -231,9 +232,15 @@ class StandingStation(Station):
                 self.inflation_picture.message.connect(self.message)
                 self.pictures.addWidget(self.inflation_picture)
             self.inflation_picture.show_inflation(inflation, standing.currency)
+        shows_inflation = wanted and self.inflation_picture is not None
+        if self.flow_picture.isHidden() == shows_inflation:
+            return
         if self.inflation_picture is not None:
-            self.inflation_picture.setVisible(wanted)
-        self.flow_picture.setVisible(not wanted or self.inflation_picture is None)
+            self.inflation_picture.setVisible(shows_inflation)
+        self.flow_picture.setVisible(not shows_inflation)
+        # Equal shares for the two that are seen, unless the reader chose others.
+        self.pictures.setSizes([self.pictures.width()] * self.pictures.count())
+        self.choose_sizes(self.chosen_sizes)
 
     def show_rows(self, key: str) -> None:
         """Show the rows that make up a figure of the headline.
