@@ -2,12 +2,23 @@
 
 from __future__ import annotations
 
+from collections.abc import Iterable
+
 import numpy as np
 from numpy.typing import NDArray
 
 from desk.intake.cells import Cells
+from desk.intake.sheets import fold
 
-__all__ = ["check_correlations", "check_not_negative", "check_rates", "check_size", "plain", "some"]
+__all__ = [
+    "check_correlations",
+    "check_not_negative",
+    "check_rates",
+    "check_size",
+    "near_name",
+    "plain",
+    "some",
+]
 
 FloatArray = NDArray[np.float64]
 
@@ -16,6 +27,17 @@ def some(what: str) -> str:
     """ "the amount" as "an amount": what is expected is not what was found."""
     name = what.removeprefix("the ")
     return f"{'an' if name[0] in 'aeiou' else 'a'} {name}"
+
+
+def near_name(text: str, names: Iterable[str]) -> str:
+    """A question after the name that is meant; "" where none is near."""
+    import difflib
+
+    by_fold: dict[str, str] = {}
+    for name in names:
+        by_fold.setdefault(fold(name), name)
+    close = difflib.get_close_matches(fold(text), list(by_fold), 1, 0.6)
+    return f'Did you mean "{by_fold[close[0]][:60]}"?' if close else ""
 
 
 def plain(error: Exception) -> str:

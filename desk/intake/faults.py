@@ -20,7 +20,7 @@ class FaultList:
         self._faults: list[Fault] = []
         # Of each batch of faults: the order of its sheet, its column, and the row of each.
         self._places: list[tuple[int, int, NDArray[np.int64]]] = []
-        self._any_grave = False
+        self._graves = 0
         self._order: dict[str, int] = {}
 
     def order_sheets(self, names: list[str]) -> None:
@@ -43,7 +43,7 @@ class FaultList:
         order = self._order.get(sheet, len(self._order)) if sheet else -1
         self._faults.append(Fault(found, expected, mend, sheet, cell, severity))
         self._places.append((order, column, np.array([row], dtype=np.int64)))
-        self._any_grave |= severity is Severity.GRAVE
+        self._graves += severity is Severity.GRAVE
 
     def mild(
         self, found: str, expected: str, mend: str, *, sheet: str = "", row: int = -1, column: int = -1
@@ -71,7 +71,7 @@ class FaultList:
             for text, cell in zip(found, cells, strict=True)
         ]
         self._places.append((order, column, np.asarray(rows, dtype=np.int64)))
-        self._any_grave |= severity is Severity.GRAVE and len(rows) > 0
+        self._graves += len(rows) if severity is Severity.GRAVE else 0
 
     def __len__(self) -> int:
         """How many there are."""
@@ -80,7 +80,12 @@ class FaultList:
     @property
     def any_grave(self) -> bool:
         """Whether one of them keeps the book from being used."""
-        return self._any_grave
+        return self._graves > 0
+
+    @property
+    def grave_count(self) -> int:
+        """How many of them keep the book from being used."""
+        return self._graves
 
     def grave_rows(self, sheet: str) -> set[int]:
         """Rows of a sheet that hold a grave fault."""

@@ -1,4 +1,4 @@
-"""Sheets of flows and the curve: columns of numbers over times."""
+"""Sheets of flows, and the history of short rates."""
 
 from __future__ import annotations
 
@@ -14,7 +14,7 @@ from desk.intake.faults import FaultList
 from desk.intake.layout import Table, fold
 from desk.rates.day_count import DayCount, year_fraction
 
-__all__ = ["read_curve", "read_flows", "read_history"]
+__all__ = ["check_history_dates", "read_flows", "read_history"]
 
 FloatArray = NDArray[np.float64]
 
@@ -22,41 +22,6 @@ _CALENDAR_YEAR = 200.0
 """Years from the valuation date beyond which a figure is taken for a slip."""
 _SAME_TIME = 0.01
 """Years by which a rounded `Year` may differ from its `Date`."""
-
-
-def read_curve(table: Table, faults: FaultList) -> tuple[FloatArray, FloatArray]:
-    """Terms and rates of the curve's sheet, shape (q,)."""
-    term_cells = Cells(table.sheet, table.column("Term"), table.rows, faults)
-    rate_cells = Cells(table.sheet, table.column("Rate"), table.rows, faults)
-    terms = term_cells.numbers("a term in years")
-    rates = rate_cells.numbers("a rate a year")
-    if not table.rows.size:
-        faults.add(
-            "the sheet holds no quotes",
-            "one row a term",
-            "Add the curve's terms and rates.",
-            sheet=table.sheet.name,
-        )
-    with np.errstate(invalid="ignore"):
-        term_cells.each(terms <= 0.0, "the term is {}", "a term above 0 years", "Correct or remove the row.")
-        step = np.diff(terms, prepend=np.nan)
-        term_cells.each(
-            step == 0.0, "the term {} stands twice", "each term once", "Remove one of the two rows."
-        )
-        term_cells.each(
-            step < 0.0,
-            "the term {} is shorter than the one above it",
-            "terms that rise",
-            "Sort the rows by their term.",
-        )
-        term_cells.each(
-            terms > _CALENDAR_YEAR,
-            "the term is {}",
-            "a term in years, at most 200",
-            "Correct or remove the row.",
-        )
-    check_rates(rate_cells, rates, "the rate")
-    return terms, rates
 
 
 def read_flows(
@@ -185,24 +150,7 @@ def read_history(table: Table, faults: FaultList, *, valuation_date: date | None
     dates = date_cells.dates("a date")
     rates = rate_cells.numbers("a continuously compounded rate a year")
     check_rates(rate_cells, rates, "the short rate")
-    step = np.diff(dates, prepend=np.datetime64("NaT", "D")).astype("timedelta64[D]")
-    date_cells.each(
-        step == np.timedelta64(0, "D"), "{} stands twice", "each date once", "Remove one of the two rows."
-    )
-    date_cells.each(
-        step < np.timedelta64(0, "D"),
-        "{} is before the date above it",
-        "dates that rise",
-        "Sort the rows by their date.",
-    )
-    if valuation_date is not None:
-        date_cells.each(
-            dates > np.datetime64(valuation_date, "D"),
-            "{} is after the valuation date",
-            "a date of the past",
-            "It counts as it stands; correct the date if it is a slip.",
-            mild=True,
-        )
+    check_history_dates(date_cells, dates, valuation_date)
     if not table.rows.size:
         faults.mild(
             "the sheet holds no history",
@@ -214,3 +162,25 @@ def read_history(table: Table, faults: FaultList, *, valuation_date: date | None
     if np.isnat(dates).any() or np.isnan(rates).any():
         return None
     return History(dates, rates)
+
+
+def check_history_dates(cells: Cells, dates: NDArray[np.datetime64], valuation_date: date | None) -> None:
+    """Report dates of a history that do not rise or have yet to come."""
+    step = np.diff(dates, prepend=np.datetime64("NaT", "D")).astype("timedelta64[D]")
+    cells.each(
+        step == np.timedelta64(0, "D"), "{} stands twice", "each date once", "Remove one of the two rows."
+    )
+    cells.each(
+        step < np.timedelta64(0, "D"),
+        "{} is before the date above it",
+        "dates that rise",
+        "Sort the rows by their date.",
+    )
+    if valuation_date is not None:
+        cells.each(
+            dates > np.datetime64(valuation_date, "D"),
+            "{} is after the valuation date",
+            "a date of the past",
+            "It counts as it stands; correct the date if it is a slip.",
+            mild=True,
+        )

@@ -25,6 +25,7 @@ __all__ = [
     "check_annuities",
     "check_dates",
     "check_ex_dividend",
+    "check_indexation",
     "check_numbers",
     "check_prices",
     "check_worth",
@@ -47,16 +48,17 @@ class YesNo(StrEnum):
 
 
 _BOND, _ZERO, _BILL, _FLOATER = HoldingKind.BOND, HoldingKind.ZERO, HoldingKind.BILL, HoldingKind.FLOATER
+_LINKED = HoldingKind.LINKED_BOND
 _DEPOSIT, _TERM_DEPOSIT = HoldingKind.DEPOSIT, HoldingKind.TERM_DEPOSIT
 _STATED = (HoldingKind.FUND, HoldingKind.PROPERTY)
-_COUPONS = (_BOND, _FLOATER)
-_QUOTED = (_BOND, _ZERO, _BILL, _FLOATER)
+_COUPONS = (_BOND, _LINKED, _FLOATER)
+_QUOTED = (_BOND, _LINKED, _ZERO, _BILL, _FLOATER)
 _SPREAD = (*_QUOTED, _TERM_DEPOSIT)
 _DATED = (*_SPREAD, *SWAP_KINDS)
 
 NEEDED: dict[str, tuple[HoldingKind, ...]] = {
     "Nominal": (*_DATED, _DEPOSIT),
-    "Coupon": (_BOND, *SWAP_KINDS),
+    "Coupon": (_BOND, _LINKED, *SWAP_KINDS),
     "Frequency": (*_COUPONS, *SWAP_KINDS),
     "Maturity": _DATED,
     "Market value": _STATED,
@@ -72,7 +74,7 @@ USED: dict[str, tuple[HoldingKind, ...]] = {
     "First coupon": _COUPONS,
     "Ex-dividend days": _COUPONS,
     "Bought ex-dividend": _COUPONS,
-    "Amortisation": (*_COUPONS, *SWAP_KINDS),
+    "Amortisation": (_BOND, _FLOATER, *SWAP_KINDS),
     "Price": _QUOTED,
     "Price kind": _QUOTED,
     "Discount rate": (_BILL,),
@@ -82,12 +84,25 @@ USED: dict[str, tuple[HoldingKind, ...]] = {
     "Floating day count": SWAP_KINDS,
     "Default rate": _SPREAD,
     "Recovery rate": _SPREAD,
+    "Index lag (months)": (_LINKED,),
+    "Index ratio": (_LINKED,),
+    "Principal floor": (_LINKED,),
 }
 """Kinds that have a use for a column; the columns that are not here are for every kind."""
-_LEFT_OUT = frozenset({"First coupon", "Amortisation", "Price", "Discount rate", "Default rate"})
+_LEFT_OUT = frozenset(
+    {"First coupon", "Amortisation", "Price", "Discount rate", "Default rate", "Principal floor"}
+)
 """Columns that a holding of a kind without a use for them cannot even keep."""
-_SAYS_NOTHING = {"Amortisation": "bullet", "Price kind": "clean", "Bought ex-dividend": "no"}
+_SAYS_NOTHING = {
+    "Amortisation": "bullet",
+    "Price kind": "clean",
+    "Bought ex-dividend": "no",
+    "Principal floor": "no",
+}
 """Words that stand for what holds anyway."""
+_USUAL = {"Index lag (months)": 3.0, "Index ratio": 1.0}
+"""Numbers that do."""
+_MOST_LAG_MONTHS = 60
 _MOST_EX_DAYS = 300
 _LOW_PRICE = 2.0
 """A price per 100 below this is rather a price per 1."""
@@ -340,6 +355,36 @@ def check_annuities(
     )
 
 
+def check_indexation(
+    cells: dict[str, Cells], numbers: dict[str, FloatArray], kinds: KindMasks, *, has_inflation: bool
+) -> None:
+    """Report lags and index ratios that are none, and linked bonds without expected inflation."""
+    lag, ratio = numbers["Index lag (months)"], numbers["Index ratio"]
+    with np.errstate(invalid="ignore"):
+        odd = (lag < 0.0) | (lag > _MOST_LAG_MONTHS) | (lag != np.floor(lag)) & ~np.isnan(lag)
+        none = ratio <= 0.0
+        far = (ratio > 100.0) | ((ratio > 0.0) & (ratio < 0.01))
+    cells["Index lag (months)"].each(
+        odd, "the index lag is {}", f"a whole number of months from 0 to {_MOST_LAG_MONTHS}", _CORRECT
+    )
+    cells["Index ratio"].each(none, "the index ratio is {}", "an index ratio above 0", _CORRECT)
+    cells["Index ratio"].each(
+        far & kinds.among([_LINKED]),
+        "the index ratio is {}",
+        "the reference index today over that of the base date, mostly from 0.9 to 5",
+        "It counts as it stands; divide by the base index if it is the index itself.",
+        mild=True,
+    )
+    if not has_inflation:
+        cells["Kind"].each(
+            kinds.among([_LINKED]),
+            "a linked bond needs expected inflation, which the book does not have",
+            'a sheet "Inflation" with terms and rates',
+            "Add the sheet; without it the bond cannot follow an index.",
+            mild=True,
+        )
+
+
 def report_unused(
     cells: dict[str, Cells], kinds: list[HoldingKind | None], used: dict[str, BoolArray]
 ) -> None:
@@ -348,7 +393,7 @@ def report_unused(
     for name, has_use in used.items():
         own = cells[name]
         flagged = own.filled & known & ~has_use
-        flagged &= ~((own.kinds == Kind.NUMBER) & (own.values == 0.0))
+        flagged &= ~((own.kinds == Kind.NUMBER) & ((own.values == 0.0) | (own.values == _USUAL.get(name))))
         if (word := _SAYS_NOTHING.get(name)) is not None and flagged.any():
             texts = np.array([text.strip().casefold() == word for text in own.texts], dtype=np.bool_)
             place = np.flatnonzero(flagged & (own.kinds == Kind.TEXT))

@@ -19,6 +19,7 @@ from desk.intake.holding_checks import (
     check_annuities,
     check_dates,
     check_ex_dividend,
+    check_indexation,
     check_numbers,
     check_prices,
     check_worth,
@@ -35,7 +36,9 @@ __all__ = ["read_holdings"]
 FloatArray = NDArray[np.float64]
 
 
-def read_holdings(table: Table, faults: FaultList, *, valuation_date: date | None) -> tuple[Holding, ...]:
+def read_holdings(
+    table: Table, faults: FaultList, *, valuation_date: date | None, has_inflation: bool
+) -> tuple[Holding, ...]:
     """The holdings; those with a grave fault are left out."""
     rows = table.rows
     cells = {name: Cells(table.sheet, table.column(name), rows, faults) for name in table.layout.columns}
@@ -62,6 +65,8 @@ def read_holdings(table: Table, faults: FaultList, *, valuation_date: date | Non
             ("Floating frequency", "1, 2, 4 or 12 payments a year"),
             ("Default rate", "a default rate a year"),
             ("Recovery rate", "a recovery rate"),
+            ("Index lag (months)", "a number of months"),
+            ("Index ratio", "an index ratio"),
         )
     }
     with np.errstate(invalid="ignore"):
@@ -74,6 +79,7 @@ def read_holdings(table: Table, faults: FaultList, *, valuation_date: date | Non
     floating_day_counts = cells["Floating day count"].choices(DayCount, "a day count", required=False)
     amortisations = cells["Amortisation"].choices(Amortisation, "an amortisation", required=False)
     price_kinds = cells["Price kind"].choices(PriceKind, "a price kind", required=False)
+    floored = cells["Principal floor"].choices(YesNo, "an answer", required=False)
     bought_ex = cells["Bought ex-dividend"].choices(YesNo, "an answer", required=False)
 
     report_missing_columns(table, stated_kinds, needed, faults)
@@ -83,6 +89,7 @@ def read_holdings(table: Table, faults: FaultList, *, valuation_date: date | Non
     check_prices(cells, numbers, used)
     check_dates(cells, numbers["Frequency"], start=start, first=first, maturity=maturity, used=used)
     check_ex_dividend(cells, numbers, bought_ex)
+    check_indexation(cells, numbers, kinds, has_inflation=has_inflation)
     check_annuities(cells, amortisations, kinds)
     report_unused(cells, stated_kinds, used)
     report_twice(cells["Name"], names)
@@ -90,7 +97,7 @@ def read_holdings(table: Table, faults: FaultList, *, valuation_date: date | Non
     for name in ("Price", "Discount rate", "Default rate"):
         numbers[name] = np.where(used[name], numbers[name], np.nan)
     first[~used["First coupon"]] = np.datetime64("NaT", "D")
-    amortises = used["Amortisation"].tolist()
+    amortises, is_linked = used["Amortisation"].tolist(), used["Principal floor"].tolist()
     listed = {name: _or_none(column) for name, column in numbers.items()}
     days: dict[str, list[date | None]] = {
         name: column.astype(object).tolist()
@@ -129,6 +136,9 @@ def read_holdings(table: Table, faults: FaultList, *, valuation_date: date | Non
                 floating_day_count=floating_day_counts[entry],
                 default_rate=_or(listed["Default rate"][entry], 0.0),
                 recovery_rate=_or(listed["Recovery rate"][entry], 0.0),
+                index_lag_months=int(_or(listed["Index lag (months)"][entry], 3.0)),
+                index_ratio=_or(listed["Index ratio"][entry], 1.0),
+                has_principal_floor=is_linked[entry] and floored[entry] is YesNo.YES,
             )
         except ValueError as error:
             # Where a column is missing, which is reported at its place, or what no check above foresaw.

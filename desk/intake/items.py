@@ -1,20 +1,15 @@
-"""Sheets of items and values: the basis, the rates model and the run."""
+"""The items of the rates model, of the run and of the shock settings."""
 
 from __future__ import annotations
 
-import difflib
+import math
 import re
-from collections.abc import Callable
-from datetime import date
-from enum import StrEnum
-from functools import partial
 from itertools import pairwise
-from typing import Any, TypeVar
 
 import numpy as np
 from numpy.typing import NDArray
 
-from desk.book import CurveKind, Measure, ModelName, RatesModel, Run
+from desk.book import Measure, ModelName, RatesModel, Run, ShockSettings
 from desk.book.run import MOST_PATHS
 from desk.intake.cells import Cells
 from desk.intake.checks import (
@@ -25,17 +20,9 @@ from desk.intake.checks import (
     some,
 )
 from desk.intake.columns import Kind
-from desk.intake.faults import FaultList
-from desk.intake.layout import Table, find_known, fold
-from desk.rates.compounding import Compounding
-from desk.rates.curve import Interpolation
-from desk.rates.day_count import TIME_COUNTS, DayCount
-from desk.rates.smith_wilson import Extrapolation
+from desk.intake.item_sheet import Check, ItemSheet
 
-__all__ = ["MODEL_ITEMS", "ItemSheet", "missing_items", "read_basis_items", "read_rates_model", "read_run"]
-
-Choice = TypeVar("Choice", bound=StrEnum)
-Check = Callable[[Cells, NDArray[np.float64], str], None]
+__all__ = ["MODEL_ITEMS", "missing_items", "read_rates_model", "read_run", "read_shock_settings"]
 
 MODEL_ITEMS: dict[ModelName, tuple[str, ...]] = {
     ModelName.VASICEK: ("Mean reversion", "Volatility", "Long-run rate", "Starting rate"),
@@ -50,243 +37,6 @@ MODEL_ITEMS: dict[ModelName, tuple[str, ...]] = {
 }
 """The items that each model needs."""
 _SQUARE_ROOT = (ModelName.CIR, ModelName.CIR_SHIFTED)
-
-
-class ItemSheet:
-    """A sheet of items and values.
-
-    Parameters
-    ----------
-    table : Table
-    faults : FaultList
-        Unknown and repeated items are added at once.
-    """
-
-    def __init__(self, table: Table, faults: FaultList) -> None:
-        self._table = table
-        self._faults = faults
-        self.rows: dict[str, int] = {}
-        items = Cells(table.sheet, table.column("Item"), table.rows, faults)
-        for row, text in zip(table.rows.tolist(), items.texts_of("the name of an item"), strict=True):
-            if text:
-                self._place(text, row)
-
-    def _place(self, text: str, row: int) -> None:
-        table, known = self._table, self._table.layout.items
-        sheet, column = table.sheet.name, table.fields["Item"]
-        item = find_known(text, known)
-        if item is None:
-            close = difflib.get_close_matches(fold(text), [fold(name) for name in known], 1, 0.8)
-            found, expected = f'the item "{text[:60]}" is not known', f"one of {', '.join(known)}"
-            if close:
-                name = next(name for name in known if fold(name) == close[0])
-                self._faults.add(
-                    found, expected, f'Did you mean "{name}"?', sheet=sheet, row=row, column=column
-                )
-            else:
-                self._faults.mild(
-                    found, expected, "It is not used; remove the row.", sheet=sheet, row=row, column=column
-                )
-        elif item in self.rows:
-            self._faults.add(
-                f'the item "{item}" stands twice, also in row {self.rows[item] + 1}',
-                "each item once",
-                "Remove one of the two rows.",
-                sheet=sheet,
-                row=row,
-                column=column,
-            )
-        else:
-            self.rows[item] = row
-
-    def _cells(self, item: str) -> Cells:
-        rows = np.array([self.rows[item]], dtype=np.int64)
-        return Cells(self._table.sheet, self._table.column("Value"), rows, self._faults)
-
-    def _absent(self, item: str, required: bool, instead: str = "") -> bool:
-        if item in self.rows:
-            return False
-        sheet = self._table.sheet.name
-        if required:
-            self._faults.add(
-                f'the item "{item}" is missing',
-                f'a row with the item "{item}" and its value',
-                "Add the row.",
-                sheet=sheet,
-            )
-        elif instead:
-            self._faults.mild(
-                f'the item "{item}" is missing; {instead} is taken',
-                f'a row with the item "{item}" and its value',
-                "Add the row.",
-                sheet=sheet,
-            )
-        return True
-
-    def number(
-        self, item: str, expected: str, *checks: Check, required: bool = False, instead: str = ""
-    ) -> float | None:
-        """A number, None where there is none or it is wrong."""
-        if self._absent(item, required, instead):
-            return None
-        cells = self._cells(item)
-        values = cells.numbers(expected, required=required)
-        for check in checks:
-            check(cells, values, f"the {item.lower()}")
-        if instead and not cells.filled[0]:
-            cells.mild(0, f"the cell is empty; {instead} is taken", expected, f"Write {expected} into it.")
-        return None if np.isnan(values[0]) else float(values[0])
-
-    def whole(self, item: str, what: str, *, least: int, most: int, instead: int) -> int:
-        """A whole number, `instead` where there is none; `what` is its name in a sentence."""
-        expected = f"a whole number from {least:,} to {most:,}"
-        value = self.number(item, expected, instead=f"{instead:,}")
-        if value is None:
-            return instead
-        if not value.is_integer() or not least <= value <= most:
-            self._cells(item).fault(0, f"the {what} is {value:.12g}", expected, "Correct the figure.")
-            return instead
-        return int(value)
-
-    def choice(
-        self, item: str, choices: type[Choice], expected: str, *, required: bool = False, instead: str = ""
-    ) -> Choice | None:
-        """One of a few words."""
-        if self._absent(item, required, instead):
-            return None
-        cells = self._cells(item)
-        if instead and not cells.filled[0]:
-            cells.mild(0, f"the cell is empty; {instead} is taken", expected, f"Write {expected} into it.")
-        return cells.choices(choices, expected, required=required)[0]
-
-    def date(self, item: str, expected: str) -> date | None:
-        """A date that must be there."""
-        if self._absent(item, True):
-            return None
-        day = self._cells(item).dates(expected)[0]
-        return None if np.isnat(day) else day.item()
-
-    def text(self, item: str, expected: str, *, required: bool = False) -> str:
-        """A text, "" where there is none."""
-        if self._absent(item, required):
-            return ""
-        return self._cells(item).texts_of(expected, required=required)[0]
-
-    def fault(self, item: str, found: str, expected: str, mend: str, *, mild: bool = False) -> None:
-        """Add a fault at the value of an item that is there."""
-        cells = self._cells(item)
-        (cells.mild if mild else cells.fault)(0, found, expected, mend)
-
-    def stated(self, item: str) -> str:
-        """The value of an item that is there, as a fault quotes it."""
-        return self._cells(item).stated(0)
-
-    def spread_out(self, item: str) -> list[Cells]:
-        """The cells of an item: its value, and what follows in columns without a heading."""
-        table = self._table
-        taken = {column for _, column in table.further} | set(table.fields.values())
-        start = table.fields["Value"]
-        rows = np.array([self.rows[item]], dtype=np.int64)
-        columns = range(start, len(table.sheet.data.columns))
-        cells = [
-            Cells(table.sheet, column, rows, self._faults)
-            for column in columns
-            if column == start or column not in taken
-        ]
-        return [cell for number, cell in enumerate(cells) if number == 0 or cell.filled[0]]
-
-
-def read_basis_items(sheet: ItemSheet) -> dict[str, Any]:
-    """The items of the basis by the name of the field of `Basis`; None stands for what is wrong."""
-    currency = sheet.text("Currency", "a currency's three letters", required=True)
-    code = currency.strip().upper()
-    if currency and not (len(code) == 3 and code.isascii() and code.isalpha()):
-        sheet.fault(
-            "Currency",
-            f'"{currency[:40]}" is no currency',
-            "the three letters of ISO 4217",
-            "Write for example EUR.",
-        )
-    elif currency != code:
-        sheet.fault(
-            "Currency",
-            f'"{currency}" is taken as {code}',
-            "three capital letters",
-            f"Write {code}.",
-            mild=True,
-        )
-    kind = sheet.choice("Curve kind", CurveKind, "a curve kind", required=True)
-    return {
-        "title": sheet.text("Title", "a title"),
-        "valuation_date": sheet.date("Valuation date", "the valuation date"),
-        "currency": code,
-        "curve_kind": kind,
-        "compounding": sheet.choice("Compounding", Compounding, "a compounding", required=True),
-        "interpolation": sheet.choice("Interpolation", Interpolation, "an interpolation", required=True),
-        "liability_spread": sheet.number("Liability spread", "a rate a year", check_rates, required=True),
-        "market_risk_premium": _or_zero(sheet.number("Market risk premium", "a rate a year", check_rates)),
-        "day_count": _time_count(sheet),
-        **_curve_items(sheet, kind),
-    }
-
-
-_PAYMENTS = (1.0, 2.0, 4.0, 12.0)
-
-
-def _time_count(sheet: ItemSheet) -> DayCount:
-    """The day count of the basis, which needs the two dates only."""
-    count = sheet.choice("Day count", DayCount, "a day count") or DayCount.ACT_365F
-    if count in TIME_COUNTS:
-        return count
-    sheet.fault(
-        "Day count",
-        f"the day count {count} needs the periods of a bond",
-        f"one of {', '.join(TIME_COUNTS)}",
-        "Write one of these words.",
-    )
-    return DayCount.ACT_365F
-
-
-def _curve_items(sheet: ItemSheet, kind: CurveKind | None) -> dict[str, Any]:
-    """What is stated of how the curve is built and how it goes on, by the name of the field of `Basis`."""
-
-    def years(item: str) -> float | None:
-        value = sheet.number(item, "years above 0", partial(check_not_negative, zero_allowed=False))
-        return value if value is not None and value > 0.0 else None
-
-    payments = sheet.number("Payments a year", "1, 2, 4 or 12", _check_payments)
-    found = {
-        "payments_per_year": int(payments) if payments in _PAYMENTS else None,
-        "extrapolation": sheet.choice("Beyond the last quote", Extrapolation, "a way to go on"),
-        "ultimate_forward_rate": sheet.number("Ultimate forward rate", "a rate a year", check_rates),
-        "last_liquid_point": years("Last liquid point"),
-        "convergence_point": years("Convergence point"),
-        "convergence_tolerance": sheet.number("Convergence tolerance", "a rate a year", check_rates),
-    }
-    if kind is CurveKind.ZERO and payments is not None:
-        _tell_unused(sheet, "Payments a year", "par yields and swap rates use it")
-    if found["extrapolation"] is not Extrapolation.SMITH_WILSON:
-        for item in ("Ultimate forward rate", "Convergence point", "Convergence tolerance"):
-            if item in sheet.rows:
-                _tell_unused(sheet, item, f"a curve that goes on by {Extrapolation.SMITH_WILSON} uses it")
-    elif "Ultimate forward rate" not in sheet.rows:
-        sheet.fault(
-            "Beyond the last quote",
-            "there is no ultimate forward rate for the curve to come to",
-            'a row with the item "Ultimate forward rate" and its value',
-            "Add the row.",
-        )
-        found["extrapolation"] = None
-    return {name: value for name, value in found.items() if value is not None}
-
-
-def _tell_unused(sheet: ItemSheet, item: str, use: str) -> None:
-    sheet.fault(item, f"{item} is not used", f"nothing here: {use}", "Remove the row.", mild=True)
-
-
-def _check_payments(cells: Cells, values: NDArray[np.float64], what: str) -> None:
-    known = np.isin(values, _PAYMENTS) | np.isnan(values)
-    cells.each(~known, f"{what} are {{}}", "1, 2, 4 or 12", "Correct the figure.")
 
 
 def _or_zero(value: float | None) -> float:
@@ -403,25 +153,12 @@ def _percentiles(sheet: ItemSheet, default: tuple[float, ...]) -> tuple[float, .
     if item not in sheet.rows:
         sheet.number(item, expected, instead=shown)
         return default
-    levels: list[float] = []
     cells = sheet.spread_out(item)
     if len(cells) == 1 and not cells[0].filled[0]:
         cells[0].mild(0, f"the cell is empty; {shown} is taken", expected, "Write them, as 5; 50; 95.")
         return default
-    for cell in cells:
-        if cell.kinds[0] != Kind.TEXT:
-            levels += cell.numbers(expected).tolist()
-            continue
-        text = cell.texts[int(cell.values[0])].strip().rstrip(";,")
-        for word in re.split(r"\s*;\s*" if ";" in text else r"\s*,\s*|\s+", text):
-            try:
-                levels.append(float(word))
-            except ValueError:
-                cell.fault(
-                    0, f"{cell.stated(0)} holds what is no number", expected, "Write for example 5; 50; 95."
-                )
-                return default
-    if any(np.isnan(level) for level in levels):
+    levels = _listed_numbers(cells, expected, "5; 50; 95")
+    if levels is None:
         return default
     if not all(0.0 < level < 100.0 for level in levels):
         wrong = ", ".join(f"{level:g}" for level in levels if not 0.0 < level < 100.0)
@@ -431,3 +168,82 @@ def _percentiles(sheet: ItemSheet, default: tuple[float, ...]) -> tuple[float, .
         sheet.fault(item, "the percentiles do not rise", expected, "Sort them and remove repeated ones.")
         return default
     return tuple(levels)
+
+
+def _listed_numbers(cells: list[Cells], expected: str, example: str) -> list[float] | None:
+    """Numbers in one cell or several; None where one is wrong, which is reported."""
+    numbers: list[float] = []
+    for cell in cells:
+        if cell.kinds[0] != Kind.TEXT:
+            numbers += cell.numbers(expected).tolist()
+            continue
+        text = cell.texts[int(cell.values[0])].strip().rstrip(";,")
+        for word in re.split(r"\s*;\s*" if ";" in text else r"\s*,\s*|\s+", text):
+            try:
+                numbers.append(float(word))
+            except ValueError:
+                cell.fault(
+                    0, f"{cell.stated(0)} holds what is no number", expected, f"Write for example {example}."
+                )
+                return None
+    return None if any(math.isnan(number) for number in numbers) else numbers
+
+
+_NONE = "none"
+"""What stands in a cell for an empty list, where a blank one stands for the usual."""
+_MOST_RATIO = 10.0
+
+
+def read_shock_settings(sheet: ItemSheet) -> ShockSettings:
+    """Which prescribed sets are asked for, and the thresholds; what is not stated is as usual."""
+    usual = ShockSettings()
+    return ShockSettings(sets=_sets(sheet), thresholds=_thresholds(sheet, usual.thresholds))
+
+
+def _sets(sheet: ItemSheet) -> tuple[str, ...]:
+    """Names in one cell, with ; between them, or in several cells of the row."""
+    if "Sets" not in sheet.rows:
+        return ()
+    names: list[str] = []
+    for cell in sheet.spread_out("Sets"):
+        (text,) = cell.texts_of("names of prescribed sets", required=False)
+        for name in filter(None, map(str.strip, text.split(";"))):
+            if name in names:
+                cell.mild(
+                    0, f'the set "{name[:60]}" stands twice', "each set once", "It counts once; remove one."
+                )
+            else:
+                names.append(name)
+    return tuple(names)
+
+
+def _thresholds(sheet: ItemSheet, usual: tuple[float, ...]) -> tuple[float, ...]:
+    """Funding ratios that fall."""
+    item, expected = "Thresholds", "funding ratios above 0 that fall, the best first"
+    if item not in sheet.rows:
+        return usual
+    cells = sheet.spread_out(item)
+    if len(cells) == 1 and not cells[0].filled[0]:
+        shown = "; ".join(f"{ratio:g}" for ratio in usual)
+        cells[0].mild(0, f"the cell is empty; {shown} is taken", expected, f"Write them, or {_NONE}.")
+        return usual
+    if len(cells) == 1 and cells[0].texts_of(expected, required=False)[0].strip().casefold() == _NONE:
+        return ()
+    ratios = _listed_numbers(cells, expected, "1.05; 1")
+    if ratios is None:
+        return usual
+    for ratio in ratios:
+        if not 0.0 < ratio <= _MOST_RATIO:
+            sheet.fault(
+                item,
+                f"{ratio:.12g} is no funding ratio that parts good from poor",
+                f"{expected}, as fractions: 1.05 for 105 %",
+                f"Write {ratio / 100:.12g} if {ratio:.12g} % is meant."
+                if ratio > _MOST_RATIO
+                else "Correct or remove it.",
+            )
+            return usual
+    if any(first <= second for first, second in pairwise(ratios)):
+        sheet.fault(item, "the thresholds do not fall", expected, "Sort them and remove repeated ones.")
+        return usual
+    return tuple(ratios)

@@ -1,18 +1,28 @@
-"""The book workbook: its sheets, their headings and items, and where a source has them."""
+"""Where a source has the headings and rows of the book workbook."""
 
 from __future__ import annotations
 
 import difflib
-import re
 from collections.abc import Sequence
 from dataclasses import dataclass, field
 
 import numpy as np
 from numpy.typing import NDArray
 
+from desk.book import Severity
 from desk.intake.columns import ColumnRows, SheetColumns, address
 from desk.intake.faults import FaultList
 from desk.intake.records import SheetGrid
+from desk.intake.sheets import (
+    SHEETS,
+    SheetLayout,
+    by_fold,
+    find_known,
+    fold,
+    heading_years,
+    known_heading,
+    looks_like_years,
+)
 
 __all__ = ["SHEETS", "SheetLayout", "SourceSheet", "Table", "find_known", "fold", "lay_out"]
 
@@ -20,115 +30,8 @@ IntArray = NDArray[np.int64]
 
 _HEADING_DEPTH = 25
 """Rows in which headings are looked for, counted from the first that is filled."""
-
-
-def fold(text: str) -> str:
-    """`text` as headings, items and names of sheets are compared: without case and extra blanks."""
-    return " ".join(text.split()).casefold()
-
-
-@dataclass(frozen=True)
-class SheetLayout:
-    """What one sheet holds.
-
-    Attributes
-    ----------
-    name : str
-    columns : tuple of str
-        Headings, in the order in which they are written.
-    optional : frozenset of str
-        Those that may be missing.
-    items : tuple of str
-        For a sheet of items and values, the items.
-    needed : bool
-        Whether the sheet must be there.
-    more : bool
-        Whether further columns may belong to the sheet (the correlation matrix).
-    spread : bool
-        Whether a value may go on in the columns without a heading (the percentiles).
-    """
-
-    name: str
-    columns: tuple[str, ...]
-    optional: frozenset[str] = frozenset()
-    items: tuple[str, ...] = ()
-    needed: bool = False
-    more: bool = False
-    spread: bool = False
-
-    @property
-    def wanted(self) -> tuple[str, ...]:
-        """What must be there, in words."""
-        needed = [heading for heading in self.columns if heading not in self.optional]
-        if "Year" in self.columns:
-            needed.insert(1, "Date or Year")
-        return tuple(needed)
-
-
-_PAIR = ("Item", "Value")
-_HOLDING_TERMS = (
-    *("Day count", "Market value", "Units", "Duration"),
-    *("Start date", "First coupon", "Ex-dividend days", "Bought ex-dividend", "Amortisation"),
-    *("Price", "Price kind", "Discount rate", "Current rate", "Margin"),
-    *("Floating frequency", "Floating day count", "Default rate", "Recovery rate"),
-)
-"""Columns of the holdings that may be missing."""
-
-SHEETS: dict[str, SheetLayout] = {
-    layout.name: layout
-    for layout in (
-        SheetLayout(
-            "Basis",
-            _PAIR,
-            items=(
-                *("Title", "Valuation date", "Currency", "Curve kind", "Compounding", "Interpolation"),
-                *("Liability spread", "Market risk premium", "Day count", "Payments a year"),
-                *("Beyond the last quote", "Ultimate forward rate", "Last liquid point"),
-                *("Convergence point", "Convergence tolerance"),
-            ),
-            needed=True,
-        ),
-        SheetLayout("Curve", ("Term", "Rate"), needed=True),
-        SheetLayout(
-            "Liabilities",
-            ("Line", "Date", "Year", "Amount", "Beta"),
-            frozenset({"Date", "Year", "Beta"}),
-            needed=True,
-        ),
-        SheetLayout(
-            "Holdings",
-            (
-                *("Name", "Kind", "Nominal", "Coupon", "Frequency", "Maturity"),
-                *_HOLDING_TERMS,
-            ),
-            frozenset(_HOLDING_TERMS),
-        ),
-        SheetLayout("Asset flows", ("Line", "Date", "Year", "Amount"), frozenset({"Date", "Year"})),
-        SheetLayout(
-            "Rates model",
-            _PAIR,
-            items=(
-                *("Model", "Mean reversion", "Volatility", "Long-run rate", "Starting rate"),
-                *("Second mean reversion", "Second volatility", "Factor correlation", "Risk price"),
-            ),
-        ),
-        SheetLayout(
-            "Risky assets",
-            ("Name", "Value", "Premium", "Volatility", "Dividend yield", "Rates"),
-            frozenset({"Dividend yield"}),
-            more=True,
-        ),
-        SheetLayout(
-            "Run",
-            _PAIR,
-            items=("Paths", "Horizon (years)", "Steps a year", "Seed", "Measure", "Percentiles"),
-            spread=True,
-        ),
-        SheetLayout("History", ("Date", "Short rate")),
-    )
-}
-
-_UNITS = re.compile(r"\s*\((?:years?|a year)\)\s*$", re.IGNORECASE)
+_MOST_YEARS = 200.0
+"""Years from the valuation date beyond which a figure is taken for a slip."""
 
 
 @dataclass(eq=False)
@@ -179,6 +82,8 @@ class Table:
         Heading and column of every other column.
     rows : ndarray of int, shape (n,)
         The rows of data.
+    years : list of (float, int)
+        Years and column of each heading that states years, in the order of the columns.
     """
 
     sheet: SourceSheet
@@ -187,6 +92,7 @@ class Table:
     fields: dict[str, int]
     further: list[tuple[str, int]]
     rows: IntArray
+    years: list[tuple[float, int]] = field(default_factory=list)
 
     def column(self, heading: str) -> int | None:
         """Column of a heading, None where it is missing."""
@@ -197,7 +103,10 @@ class Table:
         return SheetGrid(
             self.sheet.name,
             ColumnRows(self.sheet.data),
-            {column: heading for heading, column in self.fields.items()},
+            {
+                **{column: heading for heading, column in self.fields.items()},
+                **{column: f"{self.layout.years} {years:g}".capitalize() for years, column in self.years},
+            },
             self.heading_row,
             self.sheet.data.hidden,
         )
@@ -206,8 +115,10 @@ class Table:
 def lay_out(sheet: SourceSheet, layout: SheetLayout, faults: FaultList) -> Table | None:
     """Find the headings of a sheet and the rows beneath them; what is wrong is added to `faults`."""
     data, name = sheet.data, sheet.name
-    known = _by_fold(layout.columns)
+    known = by_fold(layout.columns)
     heading_row = _find_headings(sheet, known)
+    if heading_row is None and layout.years:
+        heading_row = _first_full_row(sheet)
     wanted = ", ".join(layout.wanted)
     if heading_row is None:
         empty = not sheet.filled(range(len(data.columns))).any()
@@ -219,6 +130,9 @@ def lay_out(sheet: SourceSheet, layout: SheetLayout, faults: FaultList) -> Table
         )
         return None
     fields, further = _match_headings(sheet, layout, heading_row, known, faults)
+    years: list[tuple[float, int]] = []
+    if layout.years:
+        years, further = _take_years(sheet, layout, heading_row, further, faults)
     _report_missing(name, layout, fields, heading_row, faults)
     if (above := np.flatnonzero(sheet.filled(range(len(data.columns)))[:heading_row])).size:
         faults.mild(
@@ -231,14 +145,15 @@ def lay_out(sheet: SourceSheet, layout: SheetLayout, faults: FaultList) -> Table
             row=int(above[0]),
             column=0,
         )
-    own = list(fields.values())
+    own = [*fields.values(), *(column for _, column in years)]
     if layout.more:
         own += [column for _, column in further]
     beneath = np.arange(data.count) > heading_row
     rows = np.flatnonzero(sheet.filled(own) & beneath)
     _report_remarks(sheet, further, own, beneath, faults)
-    _report_hidden(sheet, fields, rows, faults)
-    return Table(sheet, layout, heading_row, fields, further, rows)
+    shown = {f"{stated:g}": column for stated, column in years}
+    _report_hidden(sheet, fields | shown, rows, faults)
+    return Table(sheet, layout, heading_row, fields, further, rows, years)
 
 
 def _find_headings(sheet: SourceSheet, known: dict[str, str]) -> int | None:
@@ -247,23 +162,77 @@ def _find_headings(sheet: SourceSheet, known: dict[str, str]) -> int | None:
     filled = np.flatnonzero(sheet.filled(range(len(data.columns))))
     best, most = None, 0
     for row in filled[:_HEADING_DEPTH].tolist():
-        held = {_known_heading(data.text(row, column), known) for column in range(len(data.columns))} - {None}
+        held = {known_heading(data.text(row, column), known) for column in range(len(data.columns))} - {None}
         if len(held) > most:
             best, most = row, len(held)
     return best
 
 
-def find_known(text: str, names: Sequence[str]) -> str | None:
-    """The heading or item that `text` is, with or without its unit in brackets after it; None if none."""
-    return _known_heading(text, _by_fold(names))
+def _first_full_row(sheet: SourceSheet) -> int | None:
+    """The first row that is about as full as any near the top: headings without a known one among them."""
+    filled = np.flatnonzero(sheet.filled(range(len(sheet.data.columns))))[:_HEADING_DEPTH]
+    if not filled.size:
+        return None
+    held = np.zeros(filled.size, dtype=np.int64)
+    for column in sheet.data.columns:
+        held += column.filled[filled]
+    # The column of the paths often has no heading, which makes the headings the shorter row.
+    return int(filled[np.argmax(held >= max(held.max() - 1, 1))])
 
 
-def _by_fold(names: Sequence[str]) -> dict[str, str]:
-    return {fold(_UNITS.sub("", name)): name for name in names}
+def _take_years(
+    sheet: SourceSheet,
+    layout: SheetLayout,
+    heading_row: int,
+    further: list[tuple[str, int]],
+    faults: FaultList,
+) -> tuple[list[tuple[float, int]], list[tuple[str, int]]]:
+    """The columns headed by years, and the further ones that are left."""
+    years: list[tuple[float, int]] = []
+    rest: list[tuple[str, int]] = []
+    seen: dict[float, int] = {}
+    what = f"the years of a {layout.years}"
 
+    def tell(column: int, found: str, expected: str, mend: str, severity: Severity = Severity.GRAVE) -> None:
+        faults.add(found, expected, mend, sheet=sheet.name, row=heading_row, column=column, severity=severity)
 
-def _known_heading(text: str, known: dict[str, str]) -> str | None:
-    return known.get(fold(_UNITS.sub("", text)))
+    for text, column in further:
+        stated = heading_years(text)
+        shown = f"{stated:g}" if stated is not None else text[:60]
+        if stated is None and not looks_like_years(text):
+            if sheet.data.columns[column].kinds[heading_row]:
+                _report_unknown(text, layout, False, faults, sheet=sheet.name, row=heading_row, column=column)
+            rest.append((text, column))
+        elif stated is None:
+            found = f'the heading "{shown}" is no number of years'
+            tell(column, found, f"{what}, as 5 or 0.25", "Write the years as a plain number.")
+        elif not 0.0 < stated <= _MOST_YEARS:
+            expected = f"{what}, above 0 and at most {_MOST_YEARS:g}"
+            tell(column, f"the heading is {shown} years", expected, "Correct the heading.")
+        elif stated in seen:
+            found = f"the {layout.years} {shown} stands twice, also in {address(heading_row, seen[stated])}"
+            tell(column, found, f"each {layout.years} once", "Remove one of the two columns.")
+        else:
+            if seen and stated < max(seen):
+                tell(
+                    column,
+                    f"the {layout.years} {shown} stands after {max(seen):g}",
+                    f"{layout.years}s that rise",
+                    f"The columns are taken in the order of their {layout.years}s; "
+                    "correct the heading if it is a slip.",
+                    Severity.MILD,
+                )
+            seen[stated] = column
+            years.append((stated, column))
+    if not years and not any(looks_like_years(text) for text, _ in further):
+        faults.add(
+            f"no column is headed by {what}",
+            f"one column a {layout.years}, headed by its years",
+            f"Write the years of each {layout.years} over its column.",
+            sheet=sheet.name,
+            row=heading_row,
+        )
+    return years, rest
 
 
 def _match_headings(
@@ -276,7 +245,7 @@ def _match_headings(
     seen: dict[str, int] = {}
     for column in range(len(data.columns)):
         text = data.text(heading_row, column).strip()
-        heading = _known_heading(text, known)
+        heading = known_heading(text, known)
         if heading in fields:
             faults.add(
                 f'the heading "{heading}" stands twice, also in {address(heading_row, fields[heading])}',
@@ -289,7 +258,7 @@ def _match_headings(
         elif heading is not None:
             fields[heading] = column
         elif text:
-            if not layout.more:
+            if not layout.more and not layout.years:
                 _report_unknown(
                     text, layout, fold(text) in seen, faults, sheet=name, row=heading_row, column=column
                 )
@@ -316,7 +285,7 @@ def _report_unknown(
     hint = next((heading for heading in layout.columns if close and fold(heading) == close[0]), None)
     faults.mild(
         f'the heading "{text[:60]}" is not one of this sheet\'s' + (" and stands twice" if repeated else ""),
-        f"one of {', '.join(layout.columns)}",
+        f"one of {', '.join(layout.allowed)}",
         (f'Did you mean "{hint}"? ' if hint else "") + "The column is kept as a note.",
         sheet=sheet,
         row=row,

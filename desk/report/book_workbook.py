@@ -2,14 +2,13 @@
 
 from __future__ import annotations
 
-from collections.abc import Iterable, Sequence
+from collections.abc import Iterable
 from pathlib import Path
 
 import numpy as np
 
 from desk.book import (
     Amortisation,
-    Basis,
     Book,
     FlowTable,
     History,
@@ -22,39 +21,22 @@ from desk.book import (
     Run,
 )
 from desk.book.holding import SWAP_KINDS
-from desk.intake.layout import SHEETS, find_known, fold
+from desk.intake.basis import FIRST, SECOND
+from desk.intake.sheets import SHEETS
 from desk.rates.day_count import DayCount
+from desk.report.book_basis import basis_sheets
+from desk.report.book_checks import check_book
+from desk.report.book_market import scenario_sheet, volatility_rows, yield_history_sheet
+from desk.report.book_sheets import items_sheet, rows_sheet, table_sheet, unless_zero
+from desk.report.book_terms import line_terms_row, shock_rows, shock_settings
 from desk.report.plain_workbook import PlainSheet, Style, Value, date_serials, write_sheets
-from desk.report.safe_cells import LONGEST_TEXT, clean_text, write_whole
+from desk.report.safe_cells import write_whole
 from desk.valuation.holdings import STATED_KINDS
 
 __all__ = ["write_book"]
 
-_STYLES = {
-    **dict.fromkeys(
-        ("Rate", "Coupon", "Premium", "Volatility", "Dividend yield", "Short rate"), Style.PERCENT
-    ),
-    **dict.fromkeys(
-        ("Discount rate", "Current rate", "Margin", "Default rate", "Recovery rate"), Style.PERCENT
-    ),
-    **dict.fromkeys(("Amount", "Nominal", "Market value", "Value", "Units"), Style.MONEY),
-    **dict.fromkeys(("Term", "Year", "Duration"), Style.YEARS),
-    **dict.fromkeys(("Date", "Maturity", "Start date", "First coupon"), Style.DATE),
-}
-_ITEM_STYLES = {
-    **dict.fromkeys(("Liability spread", "Market risk premium", "Volatility"), Style.PERCENT),
-    **dict.fromkeys(("Long-run rate", "Starting rate", "Second volatility"), Style.PERCENT),
-    "Paths": Style.WHOLE,
-}
-_WIDTHS = {"Line": 30.0, "Name": 34.0, "Item": 24.0}
-_WIDTH = 16.0
-_VALUE_WIDTH = 28.0
-_NOTE_WIDTH = 24.0
-_WITH_COUPON = (HoldingKind.BOND, *SWAP_KINDS)
+_WITH_COUPON = (HoldingKind.BOND, HoldingKind.LINKED_BOND, *SWAP_KINDS)
 _WITH_FREQUENCY = (*_WITH_COUPON, HoldingKind.FLOATER)
-_LAST_ROW = 1_048_576
-_LARGEST_WHOLE = 2**53
-"""Beyond this a cell, which holds a float, does not hold every whole number."""
 
 
 def write_book(book: Book, path: Path) -> Path:
@@ -82,100 +64,39 @@ def write_book(book: Book, path: Path) -> Path:
     OSError
         If the file cannot be written.
     """
-    _check_names(book)
-    basis, run = book.basis, book.run
+    check_book(book)
     notes = {note.sheet: note for note in book.notes}
-    curve = list(zip(basis.terms.tolist(), basis.rates.tolist(), strict=True))
-    sheets = [
-        _items("Basis", _basis(book), notes.get("Basis")),
-        _table("Curve", curve, notes.get("Curve")),
-        _flows("Liabilities", book.liabilities, notes.get("Liabilities")),
-    ]
-    if book.holdings or "Holdings" in notes:
-        sheets.append(_table("Holdings", list(map(_holding, book.holdings)), notes.get("Holdings")))
+    sheets = basis_sheets(book.basis, FIRST, notes)
+    if book.second_basis is not None:
+        sheets |= basis_sheets(book.second_basis, SECOND, notes, first=book.basis)
+    sheets["Liabilities"] = _flows("Liabilities", book.liabilities, notes.get("Liabilities"))
     if len(book.asset_flows) or "Asset flows" in notes:
-        sheets.append(_flows("Asset flows", book.asset_flows, notes.get("Asset flows")))
+        sheets["Asset flows"] = _flows("Asset flows", book.asset_flows, notes.get("Asset flows"))
     if book.rates_model is not None:
-        sheets.append(_items("Rates model", _rates_model(book.rates_model), notes.get("Rates model")))
+        model = _rates_model(book.rates_model)
+        sheets["Rates model"] = items_sheet("Rates model", model, notes.get("Rates model"))
     assets = book.risky_assets
     if (assets is not None and assets.names) or "Risky assets" in notes:
-        sheets.append(_risky_assets(assets, notes.get("Risky assets")))
-    sheets.append(_items("Run", _run(run), notes.get("Run")))
-    history = [] if book.history is None else _history(book.history)
-    if history or "History" in notes:
-        sheets.append(_table("History", history, notes.get("History")))
-    return write_whole(path, lambda neighbour: write_sheets(neighbour, sheets))
-
-
-def _check_names(book: Book) -> None:
-    """Refuse names that would not come back as they are."""
-    for what, names in (
-        ("line", book.liabilities.line_names),
-        ("line", book.asset_flows.line_names),
-        ("holding", [holding.name for holding in book.holdings]),
-        ("asset", () if book.risky_assets is None else book.risky_assets.names),
+        sheets["Risky assets"] = _risky_assets(assets, notes.get("Risky assets"))
+    sheets["Run"] = items_sheet("Run", _run(book.run), notes.get("Run"))
+    settings = shock_settings(book.shock_settings)
+    if any(value is not None for value in settings.values()) or "Shock settings" in notes:
+        sheets["Shock settings"] = items_sheet("Shock settings", settings, notes.get("Shock settings"))
+    for sheet, rows in (
+        ("Holdings", list(map(_holding, book.holdings))),
+        ("Line terms", list(map(line_terms_row, book.line_terms))),
+        ("Shocks", shock_rows(book.shocks)),
+        ("History", [] if book.history is None else _history(book.history)),
+        ("Volatilities", volatility_rows(book.volatilities)),
     ):
-        for name in names:
-            if not name.strip():
-                raise ValueError(f"a workbook holds no {what} without a name")
-            if clean_text(name) != name:
-                raise ValueError(f"a workbook does not hold the name of the {what} {name[:40]!r} as it is")
-    assets = () if book.risky_assets is None else book.risky_assets.names
-    for name in assets:
-        if find_known(name, SHEETS["Risky assets"].columns) is not None:
-            raise ValueError(f"no asset can be called {name!r}: the sheet has a heading of that name")
-    if len(set(map(fold, assets))) != len(assets):
-        raise ValueError("the names of the assets must differ by more than case and blanks")
-    for notes in book.notes:
-        _check_notes(notes, assets)
-    if book.run.seed > _LARGEST_WHOLE:
-        raise ValueError(f"a workbook holds no seed above {_LARGEST_WHOLE}")
-
-
-def _check_notes(notes: Notes, assets: Sequence[str]) -> None:
-    """Refuse notes that would be taken for something else."""
-    layout = SHEETS.get(notes.sheet)
-    if layout is None:
-        raise ValueError(f"a book workbook has no sheet {notes.sheet!r} for notes")
-    for heading in notes.headings[1:] if layout.items else notes.headings:
-        if not heading or heading.strip() != heading or clean_text(heading) != heading:
-            raise ValueError(f"a workbook does not hold the heading {heading[:40]!r} as it is")
-        taken = layout.more and fold(heading) in map(fold, assets)
-        if taken or find_known(heading, layout.columns) is not None:
-            raise ValueError(
-                f"no note can have the heading {heading[:40]!r}: the sheet has a column of that name"
-            )
-
-
-def _basis(book: Book) -> dict[str, Value]:
-    basis = book.basis
-    return {
-        "Title": basis.title or None,
-        "Valuation date": basis.valuation_date,
-        "Currency": basis.currency,
-        "Curve kind": str(basis.curve_kind),
-        "Compounding": str(basis.compounding),
-        "Interpolation": str(basis.interpolation),
-        "Liability spread": basis.liability_spread,
-        "Market risk premium": basis.market_risk_premium,
-        "Day count": str(basis.day_count),
-        **_curve_items(basis),
-    }
-
-
-def _curve_items(basis: Basis) -> dict[str, Value]:
-    """How the curve is built and goes on, where that is not as for a basis that says nothing of it."""
-    beyond = basis.extrapolation
-    usual = Basis.convergence_tolerance
-    tolerance = basis.convergence_tolerance
-    return {
-        "Payments a year": basis.payments_per_year,
-        "Beyond the last quote": None if beyond is Basis.extrapolation else str(beyond),
-        "Ultimate forward rate": basis.ultimate_forward_rate,
-        "Last liquid point": basis.last_liquid_point,
-        "Convergence point": basis.convergence_point,
-        "Convergence tolerance": None if tolerance == usual else tolerance,
-    }
+        if rows or sheet in notes:
+            sheets[sheet] = table_sheet(sheet, rows, notes.get(sheet))
+    if book.yield_history is not None:
+        sheets["Yield history"] = yield_history_sheet(book.yield_history, notes.get("Yield history"))
+    if book.scenario_set is not None:
+        sheets["Scenario set"] = scenario_sheet(book.scenario_set, notes.get("Scenario set"))
+    in_order = [sheets[name] for name in SHEETS if name in sheets]
+    return write_whole(path, lambda neighbour: write_sheets(neighbour, in_order))
 
 
 def _rates_model(model: RatesModel) -> dict[str, Value]:
@@ -206,11 +127,12 @@ def _run(run: Run) -> dict[str, Value]:
 def _holding(holding: Holding) -> tuple[Value, ...]:
     """A holding's row; what a kind does not have is left empty unless it is stated."""
     kind = holding.kind
+    is_linked = kind is HoldingKind.LINKED_BOND
     return (
         holding.name,
         str(kind),
-        _unless_zero(holding.nominal) if kind in STATED_KINDS else holding.nominal,
-        holding.coupon if kind in _WITH_COUPON else _unless_zero(holding.coupon),
+        unless_zero(holding.nominal) if kind in STATED_KINDS else holding.nominal,
+        holding.coupon if kind in _WITH_COUPON else unless_zero(holding.coupon),
         holding.frequency if kind in _WITH_FREQUENCY or holding.frequency != 1 else None,
         holding.maturity,
         _word(holding.day_count),
@@ -226,21 +148,19 @@ def _holding(holding: Holding) -> tuple[Value, ...]:
         None if holding.price is None and holding.price_kind is PriceKind.CLEAN else str(holding.price_kind),
         holding.discount_rate,
         holding.current_rate,
-        _unless_zero(holding.margin),
+        unless_zero(holding.margin),
         holding.floating_frequency,
         _word(holding.floating_day_count),
-        _unless_zero(holding.default_rate),
-        _unless_zero(holding.recovery_rate),
+        unless_zero(holding.default_rate),
+        unless_zero(holding.recovery_rate),
+        holding.index_lag_months if is_linked or holding.index_lag_months != 3 else None,
+        holding.index_ratio if is_linked or holding.index_ratio != 1.0 else None,
+        "yes" if holding.has_principal_floor else None,
     )
 
 
 def _word(day_count: DayCount | None) -> str | None:
     return None if day_count is None else str(day_count)
-
-
-def _unless_zero(value: float) -> float | None:
-    """A number; None for a plain 0, which an empty cell states as well."""
-    return value if value != 0.0 or np.signbit(value) else None
 
 
 def _history(history: History) -> list[tuple[Value, ...]]:
@@ -261,24 +181,12 @@ def _flows(sheet: str, flows: FlowTable, notes: Notes | None) -> PlainSheet:
     columns["Amount"] = flows.amount.tolist()
     if "Beta" in SHEETS[sheet].columns and (flows.beta.any() or np.signbit(flows.beta).any()):
         columns["Beta"] = flows.beta.tolist()
-    return _sheet(sheet, list(columns), zip(*columns.values(), strict=True), notes, len(flows))
-
-
-def _table(sheet: str, rows: Sequence[Sequence[Value]], notes: Notes | None) -> PlainSheet:
-    """A table whose optional columns are left out where no row fills them."""
-    layout = SHEETS[sheet]
-    used = [
-        number
-        for number, heading in enumerate(layout.columns)
-        if heading not in layout.optional or any(row[number] is not None for row in rows)
-    ]
-    headings = [layout.columns[number] for number in used]
-    return _sheet(sheet, headings, ([row[number] for number in used] for row in rows), notes, len(rows))
+    return rows_sheet(sheet, list(columns), zip(*columns.values(), strict=True), notes, len(flows))
 
 
 def _risky_assets(assets: RiskyAssets | None, notes: Notes | None) -> PlainSheet:
     if assets is None or not assets.names:
-        return _sheet("Risky assets", list(SHEETS["Risky assets"].columns), (), notes, 0)
+        return rows_sheet("Risky assets", list(SHEETS["Risky assets"].columns), (), notes, 0)
     own = zip(
         assets.names,
         *(
@@ -292,68 +200,4 @@ def _risky_assets(assets: RiskyAssets | None, notes: Notes | None) -> PlainSheet
     rows = ([*stated, *correlations, with_rates] for *stated, correlations, with_rates in own)
     headings = ["Name", "Value", "Premium", "Volatility", "Dividend yield", *assets.names, "Rates"]
     styles = [Style.PLAIN, Style.MONEY, *[Style.PERCENT] * 3, *[Style.PLAIN] * (len(assets.names) + 1)]
-    return _sheet("Risky assets", headings, rows, notes, len(assets.names), styles=styles)
-
-
-def _items(sheet: str, items: dict[str, Value], notes: Notes | None) -> PlainSheet:
-    """A sheet of items and values, each item beside its notes; an item with neither is left out."""
-    beside: dict[str, tuple[Value, ...]] = {}
-    further: tuple[str, ...] = ()
-    if notes is not None:
-        further = notes.headings[1:]
-        for row in notes.rows:
-            item = find_known(str(row[0]), tuple(items))
-            if item is None:
-                raise ValueError(
-                    f"the notes of the sheet {sheet} name an item {row[0]!r} that it does not have"
-                )
-            beside[item] = row[1:]
-    empty = (None,) * len(further)
-    plain = [Style.PLAIN] * len(further)
-    rows = [
-        (
-            [item, _checked(value), *beside.get(item, empty)],
-            [Style.PLAIN, _ITEM_STYLES.get(item, Style.PLAIN), *plain],
-        )
-        for item, value in items.items()
-        if value is not None or item in beside
-    ]
-    widths = [_WIDTHS["Item"], _VALUE_WIDTH, *[_NOTE_WIDTH] * len(further)]
-    return PlainSheet(sheet, ["Item", "Value", *further], widths, rows)
-
-
-def _sheet(
-    sheet: str,
-    headings: list[str],
-    rows: Iterable[Sequence[Value]],
-    notes: Notes | None,
-    count: int,
-    *,
-    styles: list[Style] | None = None,
-) -> PlainSheet:
-    """A sheet of rows with their notes beside them."""
-    if count >= _LAST_ROW:
-        raise ValueError(f"the sheet {sheet} would need {count + 1:,} rows; a sheet has {_LAST_ROW:,}")
-    own = styles or [_STYLES.get(heading, Style.PLAIN) for heading in headings]
-    widths = [_WIDTHS.get(heading, _WIDTH) for heading in headings]
-    if notes is None:
-        return PlainSheet(sheet, headings, widths, ((row, own) for row in rows))
-    if len(notes.rows) != count:
-        raise ValueError(f"the notes of the sheet {sheet} have {len(notes.rows)} rows for {count} of data")
-    further = [Style.PLAIN] * len(notes.headings)
-    return PlainSheet(
-        sheet,
-        [*headings, *notes.headings],
-        [*widths, *[_NOTE_WIDTH] * len(further)],
-        (
-            ([*row, *map(_checked, beside)], [*own, *further])
-            for row, beside in zip(rows, notes.rows, strict=True)
-        ),
-    )
-
-
-def _checked(value: Value) -> Value:
-    """A value that is no name: a text too long for a cell is refused rather than cut."""
-    if isinstance(value, str) and len(value) > LONGEST_TEXT:
-        raise ValueError(f"a workbook holds no text of {len(value):,} characters")
-    return value
+    return rows_sheet("Risky assets", headings, rows, notes, len(assets.names), styles=styles)

@@ -64,7 +64,7 @@ class PlainSheet:
     Attributes
     ----------
     name : str
-    headings : sequence of str
+    headings : sequence of values
         First row, bold and frozen.
     widths : sequence of float
         Of the columns [characters].
@@ -73,7 +73,7 @@ class PlainSheet:
     """
 
     name: str
-    headings: Sequence[str]
+    headings: Sequence[Value]
     widths: Sequence[float]
     rows: Iterable[tuple[Sequence[Value], Sequence[Style]]]
 

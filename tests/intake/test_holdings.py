@@ -32,6 +32,7 @@ SOUND: dict[str, dict[str, Any]] = {
     "payer swap": {"Nominal": 100, "Coupon": 0.03, "Frequency": 1, "Maturity": END, "Current rate": 0.02},
     "receiver swap": {"Nominal": 100, "Coupon": 0.03, "Frequency": 1, "Maturity": END, "Current rate": 0.02},
     "property": {"Market value": 100},
+    "linked bond": {"Nominal": 100, "Coupon": 0.01, "Frequency": 2, "Maturity": END},
 }
 """What each kind needs, and no more."""
 
@@ -41,7 +42,10 @@ def read(tmp_path: Path, *rows: dict[str, Any], headings: tuple[str, ...] = HEAD
     stated = [
         [{"Name": f"H{number}", **row}.get(name) for name in headings] for number, row in enumerate(rows)
     ]
-    sheets = sound_sheets() | {"Holdings": [list(headings), *stated]}
+    sheets = sound_sheets() | {
+        "Holdings": [list(headings), *stated],
+        "Inflation": [["Term", "Rate"], [10, 0.02]],
+    }
     return read_workbook(save(sheets, tmp_path / "book.xlsx"))
 
 

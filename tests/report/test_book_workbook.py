@@ -2,7 +2,6 @@
 
 from __future__ import annotations
 
-from calendar import monthrange
 from dataclasses import fields, replace
 from datetime import date
 from pathlib import Path
@@ -20,30 +19,26 @@ from desk.book import (
     Book,
     CurveKind,
     FlowTable,
-    History,
     Holding,
     HoldingKind,
-    Measure,
-    ModelName,
+    Indexation,
+    LineTerms,
     Notes,
     PriceKind,
-    RatesModel,
     RiskyAssets,
     Run,
     Severity,
+    Shock,
+    ShockSettings,
+    Side,
+    YieldHistory,
 )
-from desk.book.holding import SWAP_KINDS
-from desk.book.run import MOST_PATHS
-from desk.intake.layout import SHEETS, find_known, fold
+from desk.intake.basis_items import QUOTED_KINDS
 from desk.intake.workbook import read_workbook
-from desk.rates.compounding import Compounding
-from desk.rates.curve import Interpolation
-from desk.rates.day_count import TIME_COUNTS, DayCount, year_fraction
+from desk.rates.day_count import DayCount
 from desk.rates.smith_wilson import Extrapolation
 from desk.report.book_workbook import write_book
-from desk.report.safe_cells import clean_text
-
-TODAY = date(2026, 9, 30)
+from tests.report.book_strategies import TODAY, books, holdings
 
 
 def _basis(**changes: Any) -> Basis:
@@ -63,194 +58,7 @@ def _again(book: Book, folder: Path) -> Book:
     return reading.book
 
 
-names = st.one_of(
-    st.text(min_size=1, max_size=20).filter(lambda text: bool(text.strip()) and clean_text(text) == text),
-    st.sampled_from(
-        ["=1+1", "+x", "-x", "@x", "#N/A", "_x0041_", " a ", "a\nb", "\u00e9\u4e2d\U0001f600", "12", "TRUE"]
-    ),
-)
-amounts = st.floats(-1e15, 1e15)
-rates = st.floats(-0.4, 0.9)
-dates = st.dates(date(2026, 10, 1), date(2200, 12, 31))
-
-
-@st.composite
-def flow_tables(draw: st.DrawFn, day_count: DayCount, *, beta: bool) -> FlowTable:
-    """Flows of which some state a date and some the years."""
-    lines = draw(st.lists(names, min_size=1, max_size=6))
-    days = [draw(st.one_of(st.none(), dates)) for _ in lines]
-    stated = np.array(days, dtype="M8[D]")
-    years = np.array([draw(st.floats(-3.0, 150.0)) for _ in lines])
-    time = np.where(np.isnat(stated), years, year_fraction(np.datetime64(TODAY), stated, day_count))
-    betas = [draw(st.one_of(st.just(0.0), st.floats(-2, 2))) for _ in lines] if beta else None
-    return FlowTable.build(lines, time, [draw(amounts) for _ in lines], beta=betas, date=stated)
-
-
-QUOTED = (HoldingKind.BOND, HoldingKind.ZERO, HoldingKind.FLOATER, HoldingKind.BILL)
-WITH_COUPONS = (HoldingKind.BOND, HoldingKind.FLOATER, *SWAP_KINDS)
-STATED = (HoldingKind.FUND, HoldingKind.PROPERTY)
-
-
-def months_before(day: date, months: int) -> date:
-    """A date some months earlier, month ends clipped."""
-    year, month = divmod(day.year * 12 + day.month - 1 - months, 12)
-    return date(year, month + 1, min(day.day, monthrange(year, month + 1)[1]))
-
-
-@st.composite
-def dated_terms(draw: st.DrawFn, kind: HoldingKind, frequency: int) -> dict[str, Any]:
-    """Maturity, start, first coupon, ex-dividend days and amortisation of a kind that has a maturity."""
-    maturity = draw(dates)
-    start = draw(st.one_of(st.none(), st.dates(date(1990, 1, 1), date(2026, 9, 1))))
-    first = None
-    if kind in (HoldingKind.BOND, HoldingKind.FLOATER):
-        apart = 12 // frequency * draw(st.integers(0, 8))
-        first = draw(st.sampled_from([None, months_before(maturity, apart)]))
-        if first is not None and first <= (start or first):
-            first = None
-    days = draw(st.integers(0, 25)) if kind in WITH_COUPONS else 0
-    repaid = [Amortisation.BULLET]
-    if kind in WITH_COUPONS:
-        repaid.append(Amortisation.LEVEL)
-    if kind is HoldingKind.BOND:
-        repaid.append(Amortisation.ANNUITY)
-    return {
-        "maturity": maturity,
-        "start_date": start,
-        "first_coupon": first,
-        "ex_dividend_days": days,
-        "bought_ex_dividend": days > 0 and draw(st.booleans()),
-        "amortisation": draw(st.sampled_from(repaid)),
-    }
-
-
-def maybe(strategy: st.SearchStrategy[Any]) -> st.SearchStrategy[Any]:
-    """Nothing, or one of these."""
-    return st.one_of(st.none(), strategy)
-
-
-@st.composite
-def holdings(draw: st.DrawFn) -> Holding:
-    """A holding of any kind with anything that it may state."""
-    kind = draw(st.sampled_from(HoldingKind))
-    worth, rate, day_count = st.floats(1e-3, 1e12), st.floats(-0.05, 0.2), st.sampled_from(DayCount)
-    frequency = draw(st.sampled_from([1, 2, 4, 12])) if kind in (*WITH_COUPONS, HoldingKind.ZERO) else 1
-    terms: dict[str, Any] = {}
-    if kind not in (HoldingKind.DEPOSIT, *STATED):
-        terms = draw(dated_terms(kind, frequency))
-    if kind in QUOTED:
-        by_rate = kind is HoldingKind.BILL and draw(st.booleans())
-        terms["discount_rate" if by_rate else "price"] = draw(maybe(st.floats(1e-3, 0.9)))
-        terms["price_kind"] = draw(st.sampled_from(PriceKind))
-    if kind in (*QUOTED, HoldingKind.TERM_DEPOSIT):
-        terms["default_rate"] = draw(st.floats(0.0, 0.99))
-        terms["recovery_rate"] = draw(st.floats(0.0, 1.0))
-    if kind in (HoldingKind.FLOATER, *SWAP_KINDS):
-        terms |= {"current_rate": draw(maybe(rate)), "margin": draw(rate)}
-    if kind in SWAP_KINDS:
-        terms["floating_frequency"] = draw(maybe(st.sampled_from([1, 2, 4, 12])))
-        terms["floating_day_count"] = draw(maybe(day_count))
-    pays_fixed = kind in (HoldingKind.BOND, *SWAP_KINDS) or terms.get("start_date") is not None
-    return Holding(
-        name=draw(names),
-        kind=kind,
-        nominal=0.0 if kind in STATED else draw(worth),
-        coupon=draw(st.floats(0.0, 0.2)) if pays_fixed else 0.0,
-        frequency=frequency,
-        day_count=draw(maybe(day_count)),
-        market_value=draw(worth if kind in STATED else maybe(worth)),
-        units=draw(maybe(worth)),
-        duration=draw(maybe(st.floats(0, 50))) if kind in STATED else None,
-        **terms,
-    )
-
-
-@st.composite
-def risky(draw: st.DrawFn) -> RiskyAssets:
-    """Assets whose correlations hold together: those of one common driver."""
-    own = names.filter(lambda name: find_known(name, SHEETS["Risky assets"].columns) is None)
-    called = draw(st.lists(own, min_size=1, max_size=4, unique_by=fold))
-    count = len(called)
-    loading = np.array([draw(st.floats(-0.9, 0.9)) for _ in range(count + 1)])
-    joint = np.outer(loading, loading)
-    np.fill_diagonal(joint, 1.0)
-
-    def column(low: float, high: float) -> Any:
-        return np.array([draw(st.floats(low, high)) for _ in called])
-
-    return RiskyAssets(
-        tuple(called),
-        column(0, 1e9),
-        column(-0.1, 0.2),
-        column(0, 0.9),
-        column(0, 0.1),
-        joint[1:, 1:],
-        joint[0, 1:],
-    )
-
-
-@st.composite
-def books(draw: st.DrawFn) -> Book:
-    """A book with anything a workbook can hold."""
-    day_count = draw(st.sampled_from(TIME_COUNTS))
-    terms = sorted(draw(st.sets(st.floats(0.05, 100.0), min_size=1, max_size=8)))
-    quotes = np.array([draw(st.floats(-0.02, 0.15)) for _ in terms])
-    basis = Basis(
-        valuation_date=TODAY,
-        currency=draw(st.sampled_from(["EUR", "GBP", "USD"])),
-        terms=np.array(terms),
-        rates=quotes,
-        compounding=draw(st.sampled_from(Compounding)),
-        interpolation=draw(st.sampled_from([Interpolation.LOG_LINEAR, Interpolation.LINEAR_ZERO])),
-        liability_spread=draw(rates),
-        market_risk_premium=draw(rates),
-        day_count=day_count,
-        title=draw(st.one_of(st.just(""), names)),
-        payments_per_year=draw(maybe(st.sampled_from([1, 2, 4, 12]))),
-        last_liquid_point=draw(maybe(st.floats(terms[0], 100.0))),
-    )
-    liabilities = draw(flow_tables(day_count, beta=True))
-    heading = names.map(str.strip).filter(
-        lambda text: find_known(text, SHEETS["Liabilities"].columns) is None
-    )
-    headings = draw(st.lists(heading, max_size=2, unique_by=fold))
-    note = st.one_of(st.none(), names, amounts)
-    notes: tuple[Notes, ...] = ()
-    if headings:
-        rows = tuple(tuple(draw(note) for _ in headings) for _ in range(len(liabilities)))
-        notes = (Notes("Liabilities", tuple(headings), rows),)
-    model = st.builds(
-        RatesModel,
-        name=st.sampled_from([ModelName.HULL_WHITE, ModelName.HO_LEE]),
-        mean_reversion=st.floats(0, 5),
-        volatility=st.floats(0, 0.9),
-        long_run_rate=st.one_of(st.none(), rates),
-        risk_price=st.floats(-3, 3),
-    )
-    history_days = sorted(draw(st.sets(st.dates(date(1950, 1, 1), TODAY), max_size=4)))
-    return Book(
-        basis=basis,
-        liabilities=liabilities,
-        holdings=tuple(draw(st.lists(holdings(), max_size=4))),
-        asset_flows=draw(st.one_of(st.just(FlowTable.empty()), flow_tables(day_count, beta=False))),
-        rates_model=draw(st.one_of(st.none(), model)),
-        risky_assets=draw(st.one_of(st.none(), risky())),
-        run=Run(
-            paths=draw(st.integers(1, MOST_PATHS)),
-            horizon_years=draw(st.integers(1, 200)),
-            steps_per_year=draw(st.integers(1, 366)),
-            seed=draw(st.integers(0, 2**53)),
-            measure=draw(st.sampled_from(Measure)),
-            percentiles=tuple(sorted(draw(st.sets(st.floats(1e-3, 99.9), min_size=1, max_size=7)))),
-        ),
-        history=None
-        if not history_days
-        else History(np.array(history_days, "M8[D]"), np.array([draw(rates) for _ in history_days])),
-        notes=notes,
-    )
-
-
-@pytest.mark.parametrize("kind", list(CurveKind))
+@pytest.mark.parametrize("kind", QUOTED_KINDS)
 @pytest.mark.parametrize("extrapolation", list(Extrapolation))
 def test_how_the_curve_is_built_comes_back(
     kind: CurveKind, extrapolation: Extrapolation, tmp_path: Path
@@ -303,10 +111,14 @@ def test_every_term_of_a_holding_has_a_column(tmp_path: Path) -> None:
         amortisation=Amortisation.ANNUITY, price=99.5, price_kind=PriceKind.DIRTY, default_rate=0.01,
         recovery_rate=0.4,
     )  # fmt: skip
+    linked = Holding(
+        "Linked", HoldingKind.LINKED_BOND, 7.0, 0.01, 2, date(2040, 5, 31), index_lag_months=8,
+        index_ratio=1.25, has_principal_floor=True,
+    )  # fmt: skip
     bill = Holding("Bill", HoldingKind.BILL, 7.0, maturity=date(2027, 1, 31), discount_rate=0.02)
     home = Holding("Home", HoldingKind.PROPERTY, market_value=9.0, duration=4.0)
     plain = Holding("Plain", HoldingKind.DEPOSIT)
-    held = (swap, bond, bill, home)
+    held = (swap, bond, linked, bill, home)
     unstated = {
         field.name
         for field in fields(Holding)
@@ -367,6 +179,19 @@ def test_a_sheet_reads_well(tmp_path: Path) -> None:
         (_book(notes=(Notes("Liabilities", ("amount",), ((None,), (None,))),)), "column of that name"),
         (_book(notes=(Notes("Liabilities", ("Note",), ((None,),)),)), "1 rows for 2"),
         (_book(notes=(Notes("Basis", ("Item", "Note"), (("Colour", "x"),)),)), "does not have"),
+        (
+            _book(notes=(Notes("Scenario set", ("Q5",), ()), Notes("Yield history", ("5 Y",), ()))),
+            "column of",
+        ),
+        (_book(second_basis=_basis(currency="USD")), "currency of the first"),
+        (_book(shocks=(Shock("a", ()), Shock("a", ()))), "name"),
+        (_book(shock_settings=ShockSettings(sets=("a;b",))), "name of the set"),
+        (_book(shocks=(Shock("a", (), source=" "),)), "source"),
+        (_book(line_terms=(LineTerms(Side.ASSETS, "A", Indexation(lag=0.25)),)), "no lag"),
+        (
+            _book(yield_history=YieldHistory(np.zeros(0, "M8[D]"), np.array([2.0, 1.0]), np.zeros((0, 2)))),
+            "rise",
+        ),
         (_book(notes=(Notes("Else", ("Note",), ()),)), "no sheet 'Else'"),
         (
             _book(
