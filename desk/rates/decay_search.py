@@ -1,0 +1,435 @@
+"""The search for the parameters of a Nelson-Siegel or Svensson curve nearest to bonds.
+
+Parameters are the rates β and then the logarithms of the decays τ, one row a start: all starts of a search
+move at the same time.
+"""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+
+import numpy as np
+from numpy.typing import NDArray
+
+from desk.rates.quoted_flows import QuotedFlows
+
+__all__ = ["Found", "nearest"]
+
+FloatArray = NDArray[np.float64]
+
+_SHORTEST_DECAY, _LONGEST_DECAY = 0.05, 50.0  # years
+_DECAYS = np.geomspace(0.06, 50.0, 96)
+_LARGEST_RATE = 10.0  # 1000 % a year: no path of the search goes past it
+_LEVEL_BEYOND = 0.1  # how far the forward rate at the far end may be from all the yields [1/year]
+_LARGEST_EXPONENT = 50.0
+_NODES = 64
+_LANDSCAPES = 2
+_STARTS = 12
+_ROUNDS = 3
+_BETTER = 0.999  # of the sum of squares: with less gained, another round is not worth its while
+# Steps, and how many of the starts go on after them.
+_HEATS = ((8, 6), (25, 3), (80, 3))
+_FINALISTS, _FINE_STEPS, _MORE_STEPS = 2, 15, 200
+_RIDGE = 1e-11
+_ONE_PART, _MOST_IN_PARTS = 200_000, 10_000_000  # multiplications
+_AT_REST = 1e-9  # of the sum of squares: less than that is not to be gained
+_NOTHING = 1e-26  # a sum of squares of rates that is rounding
+_LEAST_DAMPING, _MOST_DAMPING = 1e-11, 1e6
+
+
+@dataclass(frozen=True, eq=False)
+class Found:
+    """Where the search ended.
+
+    Attributes
+    ----------
+    numbers : ndarray, shape (2 + 2 · humps,)
+        The rates [1/year] and then the decays themselves [years].
+    cost : float
+        The sum of squares [1/year²].
+    converged : bool
+        Whether it came to rest.
+    evaluations : int
+        How often the bonds were valued in its last part.
+    """
+
+    numbers: FloatArray
+    cost: float
+    converged: bool
+    evaluations: int
+
+
+def nearest(flows: QuotedFlows, yields: FloatArray, humps: int) -> Found:
+    """The parameters at which the sum of squares of price errors over price times duration is least.
+
+    Parameters
+    ----------
+    flows : QuotedFlows
+    yields : ndarray, shape (m,)
+        Continuous [1/year].
+    humps : int
+        1 for Nelson-Siegel, 2 for Svensson.
+    """
+    worth = flows.amount * np.exp(-yields[flows.instrument] * flows.time)
+    scale = flows.sums(worth * flows.time)  # price times duration
+    levels = float(yields.min()) - _LEVEL_BEYOND, float(yields.max()) + _LEVEL_BEYOND
+    rough, fine = _Thinned(flows, scale, humps, levels), _Whole(flows, scale, humps, levels)
+    starts = rough.landscape(yields[:, None])
+    for _ in range(_LANDSCAPES - 1):
+        starts = _joined(rough.landscape(rough.zero(starts[:1])), starts, humps)
+    begun = starts
+    tried, costs = np.empty((0, starts.shape[1])), np.empty(0)
+    best_cost = np.inf
+    for _ in range(_ROUNDS):
+        for steps, kept in _HEATS:
+            moved = _descended(rough, starts, steps)
+            starts = _distinct(moved.numbers, moved.cost)[:kept]
+        tried, costs = np.concatenate((tried, moved.numbers)), np.concatenate((costs, moved.cost))
+        lowest = int(costs.argmin())
+        gained = costs[lowest] < _BETTER * best_cost
+        best_cost = float(costs[lowest])
+        if not gained or best_cost <= _NOTHING:
+            break
+        further = _joined(begun, rough.landscape(rough.zero(tried[lowest : lowest + 1])), humps)
+        starts, begun = further[len(begun) :], further
+        if not len(starts):
+            break
+    moved = _descended(fine, _distinct(tried, costs)[:_FINALISTS], _FINE_STEPS)
+    lowest = int(moved.cost.argmin())
+    if not moved.at_rest[lowest]:
+        # Along the floor of a narrow valley.
+        moved, lowest = _descended(fine, moved.numbers[lowest : lowest + 1], _MORE_STEPS), 0
+    numbers = moved.numbers[lowest].copy()
+    numbers[2 + humps :] = np.exp(numbers[2 + humps :])
+    return Found(numbers, float(moved.cost[lowest]), bool(moved.at_rest[lowest]), moved.evaluations)
+
+
+def _joined(first: FloatArray, second: FloatArray, humps: int) -> FloatArray:
+    """The first points, and those of the second with other decays."""
+    near = np.abs(second[:, None, -humps:] - first[None, :, -humps:]).max(axis=2) < 1e-9
+    return np.concatenate((first, second[~near.any(axis=1)]))
+
+
+def _distinct(tried: FloatArray, costs: FloatArray) -> FloatArray:
+    """The lowest few of the points, leaving out those at the same sum of squares."""
+    order = np.argsort(costs, kind="stable")
+    is_new = np.diff(costs[order], prepend=-np.inf) > 1e-6 * costs[order]
+    return tried[order[is_new]]
+
+
+class _Errors:
+    """Errors of yield and their slopes, for many sets of parameters at a time."""
+
+    time: FloatArray
+
+    def __init__(self, humps: int, levels: tuple[float, float]) -> None:
+        self.humps, self.rates = humps, 2 + humps
+        count = 2 + 2 * humps
+        self.low, self.high = np.full(count, -_LARGEST_RATE), np.full(count, _LARGEST_RATE)
+        self.low[0], self.high[0] = levels
+        self.low[2 + humps :], self.high[2 + humps :] = np.log(_SHORTEST_DECAY), np.log(_LONGEST_DECAY)
+
+    def shapes(self, numbers: FloatArray) -> FloatArray:
+        """Derivatives of zero rates by the parameters; dimensions: start, parameter, time."""
+        decays = np.exp(numbers[:, self.rates :])
+        ratio = self.time / decays[:, :, None]
+        left = np.exp(-ratio)
+        tilt = -np.expm1(-ratio) / ratio
+        hump = tilt - left
+        # By ln τ, x = t/τ: the slope's loading moves by the curvature's, and that by itself less x e^{-x}.
+        bend = numbers[:, 2 : self.rates, None] * (hump - ratio * left)
+        bend[:, 0] += numbers[:, 1, None] * hump[:, 0]
+        found = np.empty((len(numbers), self.rates + self.humps, self.time.size))
+        found[:, 0] = 1.0
+        found[:, 1] = tilt[:, 0]
+        found[:, 2 : self.rates] = hump
+        found[:, self.rates :] = bend
+        return found
+
+    def zero(self, numbers: FloatArray) -> FloatArray:
+        """Zero rates; dimensions: start, time."""
+        shapes = self.shapes(numbers)[:, : self.rates]
+        return np.asarray(np.einsum("sk,skt->st", numbers[:, : self.rates], shapes))
+
+    def at(self, numbers: FloatArray) -> tuple[FloatArray, FloatArray]:
+        """Errors, dimensions start and bond [1/year], and slopes, dimensions start, parameter and bond."""
+        shapes = self.shapes(numbers)
+        zero = np.einsum("sk,skt->st", numbers[:, : self.rates], shapes[:, : self.rates])
+        # Bounded, so that a stray step meets large errors and not infinite ones.
+        factor = np.exp(np.minimum(-zero * self.time, _LARGEST_EXPONENT))
+        shapes *= (-self.time * factor)[:, None, :]
+        return self.errors(factor), self.sums(shapes)
+
+    def errors(self, factor: FloatArray) -> FloatArray:
+        """Errors at discount factors."""
+        raise NotImplementedError
+
+    def sums(self, per_time: FloatArray) -> FloatArray:
+        """Sums over the payments of each bond, by the scale of the bond; dimensions as given."""
+        raise NotImplementedError
+
+
+class _Whole(_Errors):
+    """Of the bonds as they are."""
+
+    def __init__(
+        self, flows: QuotedFlows, scale: FloatArray, humps: int, levels: tuple[float, float]
+    ) -> None:
+        super().__init__(humps, levels)
+        self.time, self._time_of = np.unique(flows.time, return_inverse=True)
+        self._flows, self._scale = flows, scale
+        # Many instruments pay on the same days: then a product of matrices is less work than sums of rows.
+        self._weights: FloatArray | None = None
+        if len(flows) * self.time.size <= 8 * flows.time.size:
+            self._weights = np.zeros((self.time.size, len(flows)))
+            np.add.at(self._weights, (self._time_of, flows.instrument), flows.amount)
+            self._weights /= scale
+
+    def errors(self, factor: FloatArray) -> FloatArray:
+        return self.sums(factor) - self._flows.target / self._scale
+
+    def sums(self, per_time: FloatArray) -> FloatArray:
+        if self._weights is not None:
+            return np.asarray(per_time @ self._weights)
+        per_flow = np.take(per_time, self._time_of, axis=-1)
+        per_flow *= self._flows.amount
+        return np.asarray(np.add.reduceat(per_flow, self._flows.first_row, axis=-1) / self._scale)
+
+
+class _Thinned(_Errors):
+    """Of bonds with each last payment as it is and the others shared out among a few times.
+
+    A payment goes to the four times about it in such parts that cubic polynomials of time are summed right.
+    """
+
+    def __init__(
+        self, flows: QuotedFlows, scale: FloatArray, humps: int, levels: tuple[float, float]
+    ) -> None:
+        super().__init__(humps, levels)
+        count = len(flows)
+        last = np.append(flows.first_row[1:], flows.instrument.size) - 1
+        others = np.ones(flows.instrument.size, dtype=np.bool_)
+        others[last] = False
+        time, amount, own = flows.time[others], flows.amount[others], flows.instrument[others]
+        self._weights = np.zeros((count, 0))
+        nodes = np.zeros(0)
+        if time.size:
+            nodes, weights = _shared_out(time, amount, own, count)
+            self._weights = weights / scale[:, None]
+        self.time = np.concatenate((flows.time[last], nodes))
+        self._own = flows.amount[last] / scale
+        self._target = flows.target / scale
+        self._count = count
+
+    def errors(self, factor: FloatArray) -> FloatArray:
+        return self.sums(factor) - self._target
+
+    def sums(self, per_time: FloatArray) -> FloatArray:
+        count = self._count
+        return np.asarray(per_time[..., :count] * self._own + per_time[..., count:] @ self._weights.T)
+
+    def landscape(self, known: FloatArray) -> FloatArray:
+        """The lowest points of a grid of decays, with the rates solved for to first order about known ones.
+
+        Parameters
+        ----------
+        known : ndarray, shape (m, 1) or (1, times)
+            A rate for each bond, or zero rates.
+
+        Returns
+        -------
+        ndarray, shape (s, parameters)
+            The lowest first.
+        """
+        count, time = self._count, self.time
+        if known.shape[0] == 1:
+            own_zero, zero = known[0, :count], known[:, count:]
+        else:
+            own_zero, zero = known[:, 0], known
+        own = self._own * np.exp(np.minimum(-own_zero * time[:count], _LARGEST_EXPONENT))
+        shared = self._weights * np.exp(np.minimum(-zero * time[count:], _LARGEST_EXPONENT))
+        worth = own + shared.sum(axis=1)
+        # What a zero rate at each time weighs in the error, to first order.
+        own_weight, weight = own * time[:count], shared * time[count:]
+        goal = own_weight * own_zero + (weight * zero).sum(axis=1) + worth - self._target
+        ratio = time / _DECAYS[:, None]
+        left = np.exp(-ratio)
+        tilt = -np.expm1(-ratio) / ratio
+        loadings = np.concatenate((np.ones((1, time.size)), tilt, tilt - left))
+        # dimensions: level, slopes and curvatures of all decays, goal; bond
+        columns = np.empty((len(loadings) + 1, count))
+        columns[:-1] = loadings[:, :count] * own_weight + _product(loadings[:, count:], weight.T)
+        columns[-1] = goal
+        products = _product(columns, columns.T)
+
+        size = _DECAYS.size
+        each = np.arange(size)
+        first = each if self.humps == 1 else each[:, None]
+        picks = [np.zeros_like(first[:1]), 1 + first, 1 + size + first]
+        if self.humps == 2:
+            picks.append(1 + size + each[None, :])
+        cost, rates = _least_squares(products, picks)
+        for number, low, high in zip(rates, self.low, self.high, strict=False):
+            cost[(number < low) | (number > high)] = np.inf
+        if self.humps == 2:
+            np.fill_diagonal(cost, np.inf)
+        beside = cost
+        for axis in range(self.humps):
+            beside = _lowest_of_three(beside, axis)
+        is_low = np.flatnonzero(np.isfinite(cost) & (cost == beside))
+        is_low = is_low[np.argsort(cost.ravel()[is_low], kind="stable")][:_STARTS]
+        if not is_low.size:
+            return self._middle()
+        decays = np.stack(np.unravel_index(is_low, cost.shape), axis=1)
+        return np.concatenate((rates.reshape(self.rates, -1)[:, is_low].T, np.log(_DECAYS)[decays]), axis=1)
+
+    def _middle(self) -> FloatArray:
+        """One start for quotes so far from each other that no rates within bounds fit any decays."""
+        start = np.zeros((1, self.rates + self.humps))
+        start[0, 0] = 0.5 * (self.low[0] + self.high[0])
+        start[0, self.rates :] = np.log([1.0, 5.0][: self.humps])
+        return start
+
+
+def _product(first: FloatArray, second: FloatArray) -> FloatArray:
+    """The product of two matrices, in parts so small that none is shared between threads.
+
+    Where other work keeps the cores busy, waiting for a second thread takes longer than the product.
+    """
+    work = first.size * second.shape[1]
+    if work > _MOST_IN_PARTS:
+        return np.asarray(first @ second)
+    found = np.empty((len(first), second.shape[1]))
+    rows = max(1, len(first) * _ONE_PART // work)
+    for start in range(0, len(first), rows):
+        part = slice(start, start + rows)
+        np.matmul(first[part], second, out=found[part])
+    return found
+
+
+def _lowest_of_three(values: FloatArray, axis: int) -> FloatArray:
+    """Each value or the lower of its two neighbours along an axis."""
+    along = np.moveaxis(values, axis, 0)
+    found = along.copy()
+    np.minimum(found[1:], along[:-1], out=found[1:])
+    np.minimum(found[:-1], along[1:], out=found[:-1])
+    return np.moveaxis(found, 0, axis)
+
+
+def _least_squares(products: FloatArray, picks: list[NDArray[np.intp]]) -> tuple[FloatArray, FloatArray]:
+    """Linear least squares on some of the columns, for many choices of columns at a time.
+
+    Parameters
+    ----------
+    products : ndarray, shape (c + 1, c + 1)
+        Of every two columns, the goal being the last.
+    picks : list of ndarray, shapes that broadcast
+        The columns of each choice.
+
+    Returns
+    -------
+    cost : ndarray, the broadcast shape
+    numbers : ndarray, the number of columns and the broadcast shape
+        By Cholesky's method, written out over the choices.
+    """
+    count, goal = len(picks), np.array(len(products) - 1)
+    lower: list[list[FloatArray]] = [[] for _ in range(count + 1)]
+    for i, rows in enumerate([*picks, goal]):
+        for j in range(min(i + 1, count)):
+            left = products[rows, picks[j]]
+            for k in range(j):
+                left = left - lower[i][k] * lower[j][k]
+            if i == j:
+                lower[i].append(np.sqrt(np.maximum(left, _RIDGE * products[rows, rows])))
+            else:
+                lower[i].append(left / lower[j][j])
+    shape = np.broadcast_shapes(*(pick.shape for pick in picks))
+    cost = np.full(shape, products[goal, goal])
+    for part in lower[count]:
+        cost -= part**2
+    numbers = np.empty((count, *shape))
+    for i in range(count - 1, -1, -1):
+        left = lower[count][i]
+        for k in range(i + 1, count):
+            left = left - lower[k][i] * numbers[k]
+        numbers[i] = left / lower[i][i]
+    return np.maximum(cost, 0.0), numbers
+
+
+def _shared_out(
+    time: FloatArray, amount: FloatArray, own: NDArray[np.int64], count: int
+) -> tuple[FloatArray, FloatArray]:
+    """A few times, and what each bond pays at each of them, shape (count, times)."""
+    # Closer where the time is short and curves bend.
+    nodes = np.geomspace(0.5, 0.5 + max(float(time.max()), 0.1), _NODES) - 0.5
+    first = np.clip(np.searchsorted(nodes, time) - 2, 0, _NODES - 4)
+    flat = np.zeros(count * _NODES)
+    for j in range(4):
+        part = amount.copy()
+        for k in range(4):
+            if k != j:
+                part *= (time - nodes[first + k]) / (nodes[first + j] - nodes[first + k])
+        flat += np.bincount(own * _NODES + first + j, part, count * _NODES)
+    # The first node is at time 0, where nothing is discounted and no rate counts.
+    nodes[0] = 1e-9
+    return nodes, flat.reshape(count, _NODES)
+
+
+@dataclass(frozen=True, eq=False)
+class _Moved:
+    numbers: FloatArray
+    cost: FloatArray
+    at_rest: NDArray[np.bool_]
+    evaluations: int
+
+
+def _descended(errors: _Errors, starts: FloatArray, most_steps: int) -> _Moved:
+    """All starts towards the nearest least sum of squares.
+
+    Levenberg and Marquardt's method (Marquardt, D.W. (1963), An algorithm for least-squares estimation of
+    nonlinear parameters, J. SIAM 11(2)) within bounds; a parameter at its bound stays while it would leave.
+    """
+    count = starts.shape[1]
+    low, high = errors.low, errors.high
+    numbers = np.clip(starts, low, high)
+    miss, slope = errors.at(numbers)
+    cost = np.sum(miss**2, axis=1)
+    damping = np.full(len(numbers), 1e-4)
+    at_rest = cost <= _NOTHING
+    diagonal = range(count)
+    evaluations = 1
+    for _ in range(most_steps):
+        live = np.flatnonzero(~at_rest & (damping < _MOST_DAMPING))
+        if not live.size:
+            break
+        here, slopes = numbers[live], slope[live]
+        side = np.einsum("skm,sm->sk", slopes, miss[live])
+        held = ((here <= low) & (side > 0.0)) | ((here >= high) & (side < 0.0))
+        matrix = slopes @ slopes.transpose(0, 2, 1)
+        size = np.sqrt(matrix[:, diagonal, diagonal])
+        size[held | (size == 0.0)] = 1.0
+        side = np.where(held, 0.0, side / size)
+        matrix /= size[:, :, None] * size[:, None, :]
+        free = ~held
+        matrix *= free[:, :, None] & free[:, None, :]
+        matrix[:, diagonal, diagonal] = 1.0 + damping[live, None]
+        step = np.linalg.solve(matrix, -side[:, :, None])[:, :, 0]
+        # What the step gains to first order of the errors: -(2 gᵀs + sᵀ(A - damping)s) = sᵀ(damping s - g).
+        promised = np.einsum("sk,sk->s", step, damping[live, None] * step - side)
+        ahead = np.clip(here + step / size, low, high)
+        ahead_miss, ahead_slope = errors.at(ahead)
+        evaluations += 1
+        ahead_cost = np.sum(ahead_miss**2, axis=1)
+        before = cost[live]
+        better = ahead_cost < before
+        rows = live[better]
+        numbers[rows], miss[rows], slope[rows] = ahead[better], ahead_miss[better], ahead_slope[better]
+        cost[rows] = ahead_cost[better]
+        # Less where the errors fell as promised, more where they did not.
+        ratio = (before - ahead_cost) / np.maximum(promised, 1e-300)
+        factor = np.where(ratio > 0.75, 0.1, np.where(ratio > 0.25, 0.7, np.where(better, 2.0, 5.0)))
+        damping[live] = np.maximum(damping[live] * factor, _LEAST_DAMPING)
+        at_rest[live] = (promised <= _AT_REST * before) & (better | (damping[live] < 1e-6)) | (
+            cost[live] <= _NOTHING
+        )
+    return _Moved(numbers, cost, at_rest, evaluations)
