@@ -22,8 +22,10 @@ def side_name(side: Side) -> str:
     return {Side.ASSETS: "Assets", Side.LIABILITIES: "Liabilities"}[side]
 
 
-def line_columns(currency: str, *, with_terms: bool = False, with_second: bool = False) -> tuple[Column, ...]:
-    """The columns; those of the terms of each line and of the second basis where they are wanted."""
+def line_columns(
+    currency: str, *, with_terms: bool = False, with_second: bool = False, with_inflation: bool = False
+) -> tuple[Column, ...]:
+    """The columns; those of terms, of the second basis and of inflation where they are wanted."""
     terms = (
         Column(
             "indexation",
@@ -60,11 +62,18 @@ def line_columns(currency: str, *, with_terms: bool = False, with_second: bool =
         Column("present_value", "Present value", currency, "money"),
         *(second if with_second else ()),
         *(terms if with_terms else ()),
-        *_measure_columns(currency),
+        *_measure_columns(currency, with_inflation=with_inflation),
     )
 
 
-def _measure_columns(currency: str) -> tuple[Column, ...]:
+def _measure_columns(currency: str, *, with_inflation: bool) -> tuple[Column, ...]:
+    inflation = Column(
+        "inflation_dv01",
+        "Inflation DV01",
+        currency,
+        "money",
+        tooltip="Rise in present value for +1 basis point of expected inflation.",
+    )
     return (
         Column(
             "dv01",
@@ -73,6 +82,7 @@ def _measure_columns(currency: str) -> tuple[Column, ...]:
             "money",
             tooltip="Fall in present value for +1 basis point on all zero rates.",
         ),
+        *((inflation,) if with_inflation else ()),
         Column(
             "effective_duration",
             "Effective dur.",
@@ -130,11 +140,30 @@ def _measure_columns(currency: str) -> tuple[Column, ...]:
     )
 
 
-def flow_columns(currency: str) -> tuple[Column, ...]:
-    """The columns of the flows of one line."""
+def flow_columns(currency: str, *, with_real: bool = False) -> tuple[Column, ...]:
+    """The columns of the flows of one line; with those in today's money where it follows an index."""
+    real = (
+        Column(
+            "real_amount",
+            "In today's money",
+            currency,
+            "money",
+            digits=2,
+            tooltip="Before it grows with prices, or at its fixed rate.",
+        ),
+        Column(
+            "index_factor",
+            "Growth",
+            "times",
+            "number",
+            digits=4,
+            tooltip="What is expected of it until the amount is due.",
+        ),
+    )
     return (
         Column("date", "Date", "", "date"),
         Column("time", "Time", "years", "years", digits=4),
+        *(real if with_real else ()),
         Column(
             "amount",
             "Amount",
@@ -174,6 +203,7 @@ def line_rows(
         "spread_duration": [line.spread_duration for line in lines],
         "market_value": [line.market_value for line in lines],
         "expected_credit_loss": [line.expected_credit_loss for line in lines],
+        "inflation_dv01": [line.inflation_dv01 for line in lines],
         "flow_count": [line.flow_count for line in lines],
         **_measures_of([line.measures for line in lines]),
     }
@@ -194,6 +224,8 @@ def total_rows(standing: Standing, *, second: Standing | None = None) -> dict[st
     lines = standing.lines
     losses = [_total([line.expected_credit_loss for line in lines if line.side is side]) for side in Side]
     sides = [standing.assets, standing.liabilities]
+    inflation = standing.inflation
+    moved = [None, None] if inflation is None else [inflation.dv01_assets, inflation.dv01_liabilities]
     other = np.full(2, np.nan)
     if second is not None:
         other = np.array([second.assets.present_value, second.liabilities.present_value])
@@ -209,6 +241,7 @@ def total_rows(standing: Standing, *, second: Standing | None = None) -> dict[st
         "spread_duration": [None] * 2,
         "market_value": [None] * 2,
         "expected_credit_loss": losses,
+        "inflation_dv01": moved,
         "flow_count": [sum(line.flow_count for line in lines if line.side is side) for side in Side],
         **_measures_of(sides),
     }

@@ -211,9 +211,18 @@ class LinesPage(QWidget):
         """
         current = self.table.current_source_row()
         self._lines, self._terms = standing.lines, terms
-        self._set_columns(standing.currency, with_terms=bool(terms), with_second=second is not None)
+        columns = line_columns(
+            standing.currency,
+            with_terms=bool(terms),
+            with_second=second is not None,
+            with_inflation=standing.inflation is not None,
+        )
+        order = self._set_columns(columns)
+        self._currency = standing.currency
         self.table.set_rows(line_rows(standing, terms=terms, second=second))
         self.totals.set_rows(total_rows(standing, second=second), strong=(0, 1))
+        if order is not None:
+            self.table.sortByColumn(*order)
         if self.table.current_source_row() < 0 <= current < len(self._lines):
             self.table.go_to(current)
         self._fit()
@@ -224,16 +233,18 @@ class LinesPage(QWidget):
         else:
             self.close_line()
 
-    def _set_columns(self, currency: str, *, with_terms: bool, with_second: bool) -> None:
-        columns = line_columns(currency, with_terms=with_terms, with_second=with_second)
+    def _set_columns(self, columns: tuple[Column, ...]) -> tuple[int, Qt.SortOrder] | None:
+        """Show other columns; the order that was chosen, where columns changed and its own is still there."""
         if columns == self._columns:
-            return
+            return None
+        headings = self.table.horizontalHeader()
+        place, direction = headings.sortIndicatorSection(), headings.sortIndicatorOrder()
+        key = self._columns[place].key if 0 <= place < len(self._columns) else ""
         self._columns = columns
         self.table.set_columns(columns)
         self.totals.set_columns(columns)
-        if currency != self._currency:
-            self._currency = currency
-            self.flows.set_columns(flow_columns(currency))
+        found = next((place for place, column in enumerate(columns) if column.key == key), -1)
+        return (found, direction) if found >= 0 else None
 
     def _fit(self) -> None:
         """Columns wide enough for the totals too."""
@@ -321,11 +332,16 @@ class LinesPage(QWidget):
             f"{side_name(line.side)}, {line.kind}: {count} {'row' if detail.time.size == 1 else 'rows'}, "
             f"worth {value}{self._terms_text(line)}"
         )
+        columns = flow_columns(self._currency, with_real=detail.real_amount is not None)
+        if columns != self.flows.table_model.columns:
+            self.flows.set_columns(columns)
         self.flows.set_rows(
             {
                 "date": detail.date,
                 "time": detail.time,
                 "amount": detail.amount,
+                "real_amount": () if detail.real_amount is None else detail.real_amount,
+                "index_factor": () if detail.index_factor is None else detail.index_factor,
                 "discount_factor": detail.discount_factor,
                 "present_value": detail.present_value,
             }

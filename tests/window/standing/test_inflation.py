@@ -94,3 +94,37 @@ def test_a_book_without_inflation_takes_the_page_away(
     assert station.flow_picture.isVisible()
     assert station.flow_picture.title == FLOWS
     assert column(station.periods, "liabilities")[0] == "140,000"
+
+
+def test_lines_and_flows_show_what_inflation_does(
+    station: StandingStation, bench: Bench, qtbot: QtBot
+) -> None:
+    show(bench, station, qtbot, with_inflation())
+    standing = bench.document.standing
+    assert standing is not None
+    assert standing.inflation is not None
+    moved = station.lines.table.table_model.column_values("inflation_dv01")
+    assert moved.sum() == pytest.approx(standing.inflation.dv01_assets + standing.inflation.dv01_liabilities)
+    totals = station.lines.totals.table_model.column_values("inflation_dv01")
+    assert totals[1] == standing.inflation.dv01_liabilities
+    station.lines.open_row(3)
+    flows = station.lines.flows.table_model
+    real, growth = flows.column_values("real_amount"), flows.column_values("index_factor")
+    assert real.tolist() == [100_000.0] * 10
+    np.testing.assert_allclose(real * growth, flows.column_values("amount"))
+    assert growth[-1] == pytest.approx(1.02**10)
+    station.lines.open_row(4)
+    assert "real_amount" not in [each.key for each in station.lines.flows.table_model.columns]
+
+
+def test_the_order_of_the_lines_stays_when_columns_come_and_go(
+    station: StandingStation, bench: Bench, qtbot: QtBot
+) -> None:
+    station.lines.show_side("all", by="present_value")
+    before = column(station.lines.table, "line")
+    assert before[0] == "pensions"
+    show(bench, station, qtbot, with_inflation())
+    model = station.lines.table.table_model
+    values = model.column_values("present_value")
+    shown = [values[model.source_row(row)] for row in range(model.rowCount())]
+    assert shown == sorted(values, reverse=True)
