@@ -312,6 +312,11 @@ class Document(QObject):
         return self._second.failure
 
     @property
+    def second_faults(self) -> tuple[Fault, ...]:
+        """What the valuation on the second basis could not do as asked and the first one could."""
+        return tuple(fault for fault in self._second.faults if fault not in self._first.faults)
+
+    @property
     def second_is_stale(self) -> bool:
         """Whether `second_standing` is that of a former version of the book."""
         return self._second.is_stale

@@ -181,12 +181,22 @@ class StandingStation(Station):
                 document.revalue,
                 text=f"The second basis could not be valued: {document.second_failure}{former}",
             )
-        elif document.standing_faults:
-            first, *others = document.standing_faults
-            more = f" ({len(others)} more)" if others else ""
-            self.show_stale("See the faults", lambda: self.step_wanted.emit("intake"), text=f"{first}{more}")
+        elif faults := self._faults():
+            more = f" ({len(faults) - 1} more)" if len(faults) > 1 else ""
+            self.show_stale(
+                "See the faults", lambda: self.step_wanted.emit("intake"), text=f"{faults[0]}{more}"
+            )
         else:
             self.hide_stale()
+
+    def _faults(self) -> list[str]:
+        """What the valuations shown could not do as asked."""
+        document = self.document
+        of_second = document.second_faults if document.comparison is not None else ()
+        return [
+            *(str(fault) for fault in document.standing_faults),
+            *(f"On the second basis: {fault}" for fault in of_second),
+        ]
 
     def _show_none(self, text: str, button: str = "", act: Any = None) -> None:
         self._shown = ()

@@ -164,6 +164,19 @@ def test_a_second_basis_without_a_curve_leaves_the_first(
     assert station.stale_text == ""
 
 
+def test_what_the_second_basis_could_not_do_is_said(
+    station: StandingStation, bench: Bench, qtbot: QtBot
+) -> None:
+    book = replace(with_inflation(), second_basis=a_fund().basis)
+    show(bench, station, qtbot, book)
+    (fault,) = bench.document.second_faults
+    assert bench.document.faults == (fault,)
+    assert station.stale_text == f"On the second basis: {fault}"
+    bench.document.compare(False)
+    station.refresh_now()
+    assert station.stale_text == ""
+
+
 def test_a_book_whose_lines_differ_in_place_is_not_compared_line_by_line(
     station: StandingStation, bench: Bench
 ) -> None:
