@@ -10,6 +10,7 @@ from desk.book import Basis, CurveBonds
 from desk.book.arrays import FloatArray
 from desk.book.bond_curve import bond_quotes
 from desk.rates.fitting import CurveFit
+from desk.rates.parametric import NelsonSiegel, Svensson
 from desk.rates.quoted_flows import QuotedFlows, flow_yields
 from desk.window.parts import numbers
 
@@ -111,6 +112,9 @@ def fit_in_words(bonds: CurveBonds, fit: CurveFit, *, is_exact: bool) -> str:
         f"Root mean square misfit {numbers.number(fit.rmse_bp, 1)} bp over {count} {plural}; the largest "
         f"{largest} bp, {name}."
     )
+    parameters = {NelsonSiegel: 4, Svensson: 6}.get(type(fit.curve), 0)
+    if used < 2 * parameters - 2:
+        text += f" {count} {plural} are few for {parameters} parameters: the curve may swing beside them."
     if not fit.converged:
         text += " The search did not come to rest: look at the bonds furthest off."
     return text

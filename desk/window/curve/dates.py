@@ -33,8 +33,8 @@ def read_dates(texts: Sequence[str]) -> tuple[list[date | None], list[str]]:
         For each cell, what is wrong with it; empty where nothing is, or where the cell is.
     """
     pairs = [_figures(text.strip()) for text in texts]
-    day_first = any(pair is not None and pair[0] > 12 for pair in pairs)
-    month_first = any(pair is not None and pair[1] > 12 for pair in pairs)
+    day_first = any(pair is not None and pair[1] <= 12 < pair[0] <= 31 for pair in pairs)
+    month_first = any(pair is not None and pair[0] <= 12 < pair[1] <= 31 for pair in pairs)
     dates: list[date | None] = []
     faults: list[str] = []
     for text, pair in zip(texts, pairs, strict=True):

@@ -104,10 +104,12 @@ class Editor:
         self.discard_draft()
         if kind is basis.curve_kind:
             return ""
-        self._kept[(self.target.is_second, basis.curve_kind)] = source_of(basis)
+        curve = self._curve
+        if curve is not None:
+            self._kept[(self.target.is_second, basis.curve_kind)] = source_of(basis)
         same = kind in QUOTED_KINDS and basis.curve_kind in QUOTED_KINDS
         kept = None if same else self._kept.get((self.target.is_second, kind))
-        changes = start(basis, kind, kept=kept, curve=self._curve, middle=mean_time(self.book))
+        changes = start(basis, kind, kept=kept, curve=curve, middle=mean_time(self.book))
         return self.put(f"Curve stated by {name}", may_wait=kind is CurveKind.BONDS, **changes)
 
     def choose_method(self, method: LiabilityMethod, name: str) -> str:

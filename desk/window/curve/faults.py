@@ -77,7 +77,7 @@ def _tried(basis: Basis, part: Part) -> str:
             _ = basis.liability_curve
     except CurveError as error:
         return f"{_places(basis, part, error.rows)}{_ended(error.found)} {error.mend}".strip()
-    except (ValueError, OverflowError) as error:
+    except (ValueError, ArithmeticError) as error:
         return _ended(str(error))
     return ""
 

@@ -31,6 +31,8 @@ class SpreadCurve:
     def __init__(self, basis: Basis) -> None:
         self._curve = basis.curve
         self._basis = basis
+        # What gives no spread is told here, before anything is drawn.
+        self.zero(1.0)
 
     def _exponent(self, time: FloatArray) -> FloatArray:
         return self.zero(time) * time

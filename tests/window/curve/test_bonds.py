@@ -1,0 +1,342 @@
+"""A curve drawn through bonds: from the first paste to the misfit of each."""
+
+from __future__ import annotations
+
+from dataclasses import replace
+
+import numpy as np
+import pytest
+from PySide6.QtCore import QLocale, Qt
+from PySide6.QtGui import QGuiApplication
+from PySide6.QtTest import QTest
+from pytestqt.qtbot import QtBot
+
+from desk.book import BondFit, CurveKind
+from desk.window.curve.bond_figures import bond_figures, fit_in_words
+from desk.window.curve.station import CurveStation
+from tests.window.benches import Bench, a_fund
+from tests.window.curve.books import (
+    TERMS,
+    YIELDS,
+    as_cells,
+    choose,
+    edit,
+    put_on_clipboard,
+    shown,
+    some_bonds,
+    tabs,
+    with_bonds,
+)
+
+
+@pytest.fixture
+def bonded(station: CurveStation, bench: Bench) -> CurveStation:
+    """With a curve of bonds in the book."""
+    bench.open(with_bonds())
+    station.refresh_now()
+    return station
+
+
+# Coming to bonds
+
+
+def test_a_curve_of_bonds_waits_for_them_on_the_former_curve(station: CurveStation, bench: Bench) -> None:
+    before = bench.book
+    zero = station.picture.description
+    choose(station.fields.curve_kind, "Bonds")
+    assert bench.book is before
+    assert station.picture.description == zero
+    assert "There are no bonds yet: paste them" in station.stale_text
+    assert "The former curve stays in use until then." in station.stale_text
+    assert tabs(station) == ["Bonds", "Rates by term"]
+    assert station.bonds.table.table_model.rowCount() == 0
+    put_on_clipboard(as_cells(some_bonds()))
+    station.bonds.table.paste()
+    basis = bench.book.basis
+    assert basis.curve_kind is CurveKind.BONDS
+    assert basis.bonds == some_bonds()
+    assert basis.terms.size == 0
+    assert not station.stale_text
+    bench.document.undo()
+    assert bench.book.basis == a_fund().basis
+
+
+def test_too_few_bonds_wait_for_more(station: CurveStation, bench: Bench) -> None:
+    before = bench.book
+    choose(station.fields.curve_kind, "Bonds")
+    put_on_clipboard(as_cells(some_bonds(TERMS[:3], YIELDS[:3])))
+    station.bonds.table.paste()
+    assert bench.book is before
+    assert station.bonds.table.table_model.rowCount() == 3
+    assert "There are 3 bonds, and this fit needs 6" in station.stale_text
+    choose(station.fields.bond_fit, "Exact")
+    assert len(bench.book.basis.bonds or ()) == 3
+    assert bench.book.basis.bond_fit is BondFit.EXACT
+
+
+def test_bonds_can_be_gathered_one_by_one(station: CurveStation, bench: Bench) -> None:
+    choose(station.fields.curve_kind, "Bonds")
+    former = bench.book.basis.curve
+    for _ in range(6):
+        station.bonds.add()
+    bonds = bench.book.basis.bonds
+    assert bonds is not None
+    assert len(bonds) == 6
+    assert len(set(bonds.names)) == 6
+    # Each was put at par on the former curve, every two years.
+    zero = np.expm1(former.zero([2.0, 4.0, 6.0, 8.0, 10.0, 12.0]))
+    assert bonds.bond_yield == pytest.approx(zero, abs=1e-3)
+
+
+def test_a_draft_can_be_given_up(station: CurveStation, bench: Bench) -> None:
+    choose(station.fields.curve_kind, "Bonds")
+    station.strip.button.click()
+    assert not station.stale_text
+    assert station.fields.curve_kind.value is CurveKind.ZERO
+    assert tabs(station) == ["Quotes", "Rates by term"]
+    assert not bench.document.can_undo
+
+
+def test_a_draft_goes_with_the_book_that_it_belongs_to(station: CurveStation, bench: Bench) -> None:
+    choose(station.fields.curve_kind, "Bonds")
+    bench.open(a_fund())
+    station.refresh_now()
+    assert not station.stale_text
+    assert tabs(station) == ["Quotes", "Rates by term"]
+
+
+# What is shown
+
+
+def test_the_table_and_the_words_say_how_each_bond_fits(bonded: CurveStation, bench: Bench) -> None:
+    fit = bench.book.basis.curve_fit
+    assert fit is not None
+    worst = int(np.abs(fit.residual_bp).argmax())
+    table = bonded.bonds.table
+    assert shown(table, worst, "misfit_bp").replace("\N{MINUS SIGN}", "-") == f"{fit.residual_bp[worst]:+.2f}"
+    assert shown(table, 0, "given") == "yield"
+    assert f"Gilt {2031 + int(TERMS[worst])}" in bonded.bonds.words
+    assert f"misfit {fit.rmse_bp:.1f} bp over 10 bonds" in bonded.bonds.words
+    assert not bonded.misfit.isHidden()
+    (name, _), (_, misfit) = bonded.misfit.readings_at(float(bench.book.basis.quoted_bonds.term[worst]))
+    assert name == f"Gilt {2031 + int(TERMS[worst])}"
+    assert misfit.replace("\N{MINUS SIGN}", "-") == f"{fit.residual_bp[worst]:.2f}"
+
+
+def test_price_follows_from_yield_and_yield_from_price() -> None:
+    basis = with_bonds().basis
+    bonds = some_bonds()
+    found = bond_figures(basis, bonds, None)
+    # On a coupon date a yearly bond is worth Σ c/(1+y)^k + 100/(1+y)^n: no interest has accrued.
+    for row, (term, rate) in enumerate(zip(TERMS, YIELDS, strict=True)):
+        growth = (1.0 + rate) ** -np.arange(1, int(term) + 1)
+        assert found.price[row] == pytest.approx(2.5 * growth.sum() + 100.0 * growth[-1], abs=1e-9)
+    by_price = replace(bonds, price=found.price, bond_yield=np.full(len(bonds), np.nan))
+    assert bond_figures(basis, by_price, None).bond_yield == pytest.approx(YIELDS, abs=1e-12)
+
+
+def test_accrued_interest_is_between_clean_and_dirty() -> None:
+    basis = replace(with_bonds().basis, valuation_date=a_fund().basis.valuation_date.replace(month=9, day=30))
+    clean = some_bonds()
+    dirty = replace(clean, is_clean=np.zeros(len(clean), dtype=bool))
+    apart = bond_figures(basis, dirty, None).price - bond_figures(basis, clean, None).price
+    # 183 of the 366 days from 31 March 2031 to 31 March 2032 have passed.
+    assert apart == pytest.approx(np.full(len(clean), 2.5 * 183 / 366), abs=1e-9)
+
+
+def test_an_exact_fit_says_so_and_draws_no_rounding(bonded: CurveStation) -> None:
+    choose(bonded.fields.bond_fit, "Exact")
+    assert bonded.bonds.words == "The curve reprices all 10 bonds exactly."
+    assert bonded.misfit.isHidden()
+    assert not bonded.fields.interpolation.isHidden()
+    choose(bonded.fields.bond_fit, "Smooth: Nelson-Siegel")
+    assert bonded.fields.interpolation.isHidden()
+    assert not bonded.misfit.isHidden()
+
+
+def test_few_bonds_for_many_parameters_are_said() -> None:
+    few = with_bonds(bonds=some_bonds(TERMS[:7], YIELDS[:7])).basis
+    assert few.bonds is not None
+    assert few.curve_fit is not None
+    assert "7 bonds are few for 6 parameters" in fit_in_words(few.bonds, few.curve_fit, is_exact=False)
+    many = with_bonds(bond_fit=BondFit.NELSON_SIEGEL).basis
+    assert many.curve_fit is not None
+    assert "few" not in fit_in_words(some_bonds(), many.curve_fit, is_exact=False)
+
+
+def test_a_search_without_rest_is_said() -> None:
+    fit = with_bonds().basis.curve_fit
+    assert fit is not None
+    words = fit_in_words(some_bonds(), replace(fit, converged=False), is_exact=False)
+    assert "did not come to rest" in words
+
+
+# Editing
+
+
+def test_a_price_takes_the_place_of_the_yield(bonded: CurveStation, bench: Bench) -> None:
+    assert edit(bonded.bonds.table, 3, "price", "99.5")
+    bonds = bench.book.basis.bonds
+    assert bonds is not None
+    assert (bonds.price[3], np.isnan(bonds.bond_yield[3])) == (99.5, True)
+    assert shown(bonded.bonds.table, 3, "given") == "price"
+    assert bench.document.undo_text == "Change of the price of Gilt 2036"
+    assert edit(bonded.bonds.table, 3, "yield", "2.6")
+    bonds = bench.book.basis.bonds
+    assert bonds is not None
+    assert (np.isnan(bonds.price[3]), bonds.bond_yield[3]) == (True, 0.026)
+    bench.document.undo()
+    bonded.refresh_now()
+    assert shown(bonded.bonds.table, 3, "price") == "99.500"
+
+
+@pytest.mark.parametrize(
+    ("key", "text", "reason"),
+    [
+        ("maturity", "2030-01-01", "Gilt 2033, due 01/01/2030"),
+        ("maturity", "soon", "“soon” is not a date"),
+        ("coupon", "-1", "Gilt 2033, due 31/03/2033: The coupon is below 0"),
+        ("frequency", "3", "1, 2, 4 or 12 times"),
+        ("price", "0", "above 0"),
+        ("price_kind", "net", "neither clean nor dirty"),
+        ("yield", "-100", "Gilt 2033"),
+        ("name", "", "needs a name"),
+    ],
+)
+def test_what_no_bond_can_have_is_refused(
+    bonded: CurveStation, bench: Bench, key: str, text: str, reason: str
+) -> None:
+    before = bench.book
+    assert not edit(bonded.bonds.table, 0, key, text)
+    assert reason in bonded.stale_text
+    assert bench.book is before
+
+
+def test_two_bonds_of_one_day_are_named(bonded: CurveStation, bench: Bench) -> None:
+    assert edit(bonded.bonds.table, 1, "maturity", "2033-03-31")
+    before = bench.book
+    choose(bonded.fields.bond_fit, "Exact")
+    assert "Gilt 2033, due 31/03/2033; Gilt 2034, due 31/03/2033: Bonds mature on the same day" in (
+        bonded.stale_text
+    )
+    assert "Keep one of each such group" in bonded.stale_text
+    assert bench.book is before
+    assert bonded.fields.bond_fit.value is BondFit.SVENSSON
+
+
+def test_the_keyboard_adds_and_removes(bonded: CurveStation, bench: Bench, qtbot: QtBot) -> None:
+    bonded.activateWindow()
+    table = bonded.bonds.table
+    table.setFocus()
+    qtbot.waitUntil(table.hasFocus)
+    table.go_to(9)
+    before = bench.book.basis.curve.zero([5.0, 20.0])
+    QTest.keyClick(table, Qt.Key.Key_Insert)
+    bonds = bench.book.basis.bonds
+    assert bonds is not None
+    assert bonds.maturity[-1] == np.datetime64("2063-03-31")
+    assert bench.book.basis.curve.zero([5.0, 20.0]) == pytest.approx(before, abs=2e-4)
+    table.selectRow(0)
+    QTest.keyClick(table, Qt.Key.Key_Delete)
+    assert bench.book.basis.bonds == replace(
+        bonds,
+        names=bonds.names[1:],
+        **{
+            name: getattr(bonds, name)[1:]
+            for name in ("maturity", "coupon", "frequency", "price", "bond_yield", "is_clean")
+        },
+    )
+
+
+def test_a_fit_keeps_the_bonds_that_it_needs(bonded: CurveStation, bench: Bench) -> None:
+    bonded.bonds.table.selectAll()
+    bonded.bonds.remove()
+    assert "no bonds" in bonded.stale_text
+    assert len(bench.book.basis.bonds or ()) == 10
+
+
+def test_the_table_copies_to_a_spreadsheet_and_back(bonded: CurveStation, bench: Bench) -> None:
+    bonded.bonds.table.selectAll()
+    bonded.bonds.table.copy(exactly=True)
+    text = QGuiApplication.clipboard().text()
+    assert text.splitlines()[0].startswith("Bond\tMaturity\tCoupon (% a year)\tTimes (a year)")
+    put_on_clipboard(text)
+    bonded.bonds.replace_all()
+    after = bench.book.basis.bonds
+    assert after is not None
+    assert after.names == some_bonds().names
+    assert after.maturity.tolist() == some_bonds().maturity.tolist()
+    # Where both stand, the price counts: it gives the same yields.
+    assert bond_figures(bench.book.basis, after, None).bond_yield == pytest.approx(YIELDS, abs=1e-12)
+
+
+# Pasting
+
+
+def test_rows_without_headings_are_read_in_order(bonded: CurveStation, bench: Bench) -> None:
+    put_on_clipboard(as_cells(some_bonds(TERMS[:7], YIELDS[:7] + 0.001), headings=False))
+    bonded.bonds.replace_all()
+    bonds = bench.book.basis.bonds
+    assert bonds is not None
+    assert bonds.bond_yield == pytest.approx(YIELDS[:7] + 0.001)
+    assert bench.document.undo_text == "Pasted bonds"
+
+
+def test_prices_are_pasted_over_a_column(bonded: CurveStation, bench: Bench) -> None:
+    put_on_clipboard("99.1\n98.7")
+    bonded.bonds.table.go_to(2, 4)
+    bonded.bonds.table.paste()
+    bonds = bench.book.basis.bonds
+    assert bonds is not None
+    assert bonds.price[2:4].tolist() == [99.1, 98.7]
+    assert np.isnan(bonds.bond_yield[2:4]).all()
+    assert np.isnan(bonds.price[[1, 4]]).all()
+
+
+def test_every_bad_cell_is_named_and_nothing_is_pasted(bonded: CurveStation, bench: Bench) -> None:
+    before = bench.book
+    put_on_clipboard("Maturity\tCoupon\tPrice\n31/03/36\t2.5\t99\n2037-03-31\thigh\t#N/A\n2038-03-31\t2\t-4")
+    bonded.bonds.replace_all()
+    for part in (
+        "Nothing was pasted.",
+        "Row 2: “31/03/36” is no date with a four-figure year.",
+        "Row 3: “high” is no coupon.",
+        "Row 3: “#N/A” is no price above 0.",
+        "Row 4: “-4” is no price above 0.",
+    ):
+        assert part in bonded.stale_text
+    assert bench.book is before
+
+
+def test_a_bond_without_price_and_yield_is_named(bonded: CurveStation, bench: Bench) -> None:
+    before = bench.book
+    put_on_clipboard("Maturity\tCoupon\tYield\n2036-03-31\t2.5\t2.4\n2037-03-31\t2.5\t")
+    bonded.bonds.replace_all()
+    assert "Row 2: the price or yield of the bond is missing." in bonded.stale_text
+    assert bench.book is before
+
+
+def test_a_paste_on_what_follows_is_explained(bonded: CurveStation, bench: Bench) -> None:
+    put_on_clipboard("2.4")
+    bonded.bonds.table.go_to(0, 8)
+    bonded.bonds.table.paste()
+    assert "the others follow" in bonded.stale_text
+    assert not bench.document.can_undo
+
+
+def test_an_empty_clipboard_is_said(bonded: CurveStation) -> None:
+    put_on_clipboard("")
+    bonded.bonds.replace_all()
+    assert "nothing to paste" in bonded.stale_text
+
+
+def test_bonds_are_read_in_the_readers_locale(bonded: CurveStation, bench: Bench) -> None:
+    QLocale.setDefault(QLocale(QLocale.Language.German, QLocale.Country.Germany))
+    rows = [f"Bund {2033 + place}\t31.03.{2033 + place}\t2,5\t1\t9{place},25" for place in range(7)]
+    put_on_clipboard("\n".join(rows))
+    bonded.bonds.replace_all()
+    bonds = bench.book.basis.bonds
+    assert bonds is not None
+    assert bonds.maturity[0] == np.datetime64("2033-03-31")
+    assert bonds.price.tolist() == [90.25 + place for place in range(7)]
+    assert (bonds.coupon == 0.025).all()
