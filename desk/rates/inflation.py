@@ -10,7 +10,12 @@ What is assumed:
   year that is known already, because of the lag, has no deviation: the variance is that of the rest.
 - A collar holds for each whole year from today; a part of a year grows at the root of the year's expected
   factor. No year takes more than everything: an increase is never below -100 %.
+- A floor on the growth over the whole time takes that growth as lognormal about what the curve expects, its
+  logarithm with the variance of the years ahead.
 - Beyond `MOST_YEARS` the growth of the last year goes on.
+
+What is left out: the steps of an index that is published by the month, any seasonal pattern in it, and any
+correlation of inflation with nominal rates: the growth expected is taken as independent of discounting.
 
 References
 ----------
@@ -80,7 +85,7 @@ def expected_increase(
     means, deviations, floors, caps = _checked(mean, sd, floor, cap)
     below, above = floors - means, means - caps
     # Said from the nearest of mean, floor and cap, so that nothing large cancels.
-    with np.errstate(invalid="ignore"):  # branches that are not taken may have no floor or cap
+    with np.errstate(over="ignore", invalid="ignore"):  # branches that are not taken may have no floor or cap
         within = means + _normal_excess(below, deviations) - _normal_excess(above, deviations)
         from_floor = floors + _normal_excess(-below, deviations) - _normal_excess(above, deviations)
         from_cap = caps - _normal_excess(-above, deviations) + _normal_excess(below, deviations)
@@ -206,9 +211,9 @@ def floored_growth(growth: ArrayLike, *, log_sd: ArrayLike, least: ArrayLike) ->
     growths, deviations, floors, d = _floored(growth, log_sd, least)
     from scipy.special import ndtr
 
-    with np.errstate(invalid="ignore"):
+    with np.errstate(over="ignore", under="ignore", invalid="ignore"):
         under = np.where(np.isinf(d), -d, deviations - d)
-    return np.asarray(growths * ndtr(d) + floors * ndtr(under), dtype=np.float64)
+        return np.asarray(growths * ndtr(d) + floors * ndtr(under), dtype=np.float64)
 
 
 def floored_growth_slope(growth: ArrayLike, *, log_sd: ArrayLike, least: ArrayLike) -> FloatArray:
@@ -235,7 +240,7 @@ def _floored(
     growths, deviations, floors = np.broadcast_arrays(
         *(np.asarray(each, dtype=np.float64) for each in (growth, log_sd, least))
     )
-    with np.errstate(divide="ignore"):
+    with np.errstate(divide="ignore", over="ignore", under="ignore"):
         d = _scaled(np.log(growths) - np.log(floors), deviations) + 0.5 * deviations
     return growths, deviations, floors, d
 

@@ -15,6 +15,7 @@ from desk.rates.curve import DiscountCurve
 from desk.rates.day_count import DayCount, year_fraction
 from desk.valuation.credit import expected_rows
 from desk.valuation.floating import floating_interest, implied_current_rates, replicating_amounts
+from desk.valuation.indexing import grown
 from desk.valuation.linked import is_linked, linked_rows, no_inflation
 from desk.valuation.spread import solve_spreads
 
@@ -145,7 +146,7 @@ def price_holdings(holdings: Sequence[Holding], basis: Basis) -> PricedHoldings:
     ratio, growth = linked.ratio, linked.factor
     uplift = ratio[flows.holding] * growth
     if linked.is_any:
-        known, missed, accrued = known * uplift, missed * uplift, accrued * ratio
+        known, missed, accrued = grown(known, uplift), grown(missed, uplift), accrued * ratio
     stated = _stated(holdings, basis, accrued, ratio)
     is_deposit = np.array([holding.kind is HoldingKind.DEPOSIT for holding in holdings], dtype=np.bool_)
     quoted = is_deposit & ~np.isnan(stated.market)
@@ -162,7 +163,7 @@ def price_holdings(holdings: Sequence[Holding], basis: Basis) -> PricedHoldings:
         recovery_rate=np.array([holding.recovery_rate for holding in holdings], dtype=np.float64),
     )
     if expected is not None:
-        recovered = expected.recovered * uplift if linked.is_any else expected.recovered
+        recovered = grown(expected.recovered, uplift) if linked.is_any else expected.recovered
         payment = promised * expected.survival + recovered
         to_buyer = promised_to_buyer * expected.survival + recovered
         known = known * expected.survival + recovered

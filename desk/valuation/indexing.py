@@ -26,9 +26,19 @@ from desk.rates.inflation import (
     unknown_years,
 )
 
-__all__ = ["CollarTables", "IndexClasses", "index_factors", "linked_slope", "reindexed", "row_factors"]
+__all__ = [
+    "CollarTables",
+    "IndexClasses",
+    "grown",
+    "growth_deviation",
+    "index_factors",
+    "linked_slope",
+    "reindexed",
+    "row_factors",
+]
 
 _CELLS = 60_000  # years times classes of collars that are tabulated at once
+_MOST_DEVIATION = 1e100  # sums with it stay finite
 
 
 @dataclass(frozen=True, eq=False)
@@ -142,7 +152,7 @@ def reindexed(flows: PricedFlows, *, inflation: Inflation, curve: DiscountCurve)
     -------
     PricedFlows
         Real amounts, spreads and rows that follow no index stay. On the curve of `inflation` the amounts are
-        those of `flows`.
+        those of `flows`, to rounding.
     """
     if flows.real_amount is None or flows.index_class is None or not flows.indexations:
         return flows
@@ -152,12 +162,18 @@ def reindexed(flows: PricedFlows, *, inflation: Inflation, curve: DiscountCurve)
     rows = slice(None) if grows.all() else np.flatnonzero(grows)
     factor = row_factors(classes, flows.index_class[rows], flows.time[rows], inflation=inflation, curve=curve)
     amount = flows.amount.copy()
-    amount[rows] = flows.real_amount[rows] * factor
+    amount[rows] = grown(flows.real_amount[rows], factor)
     payment = flows.payment
     if payment is not None:
         payment = payment.copy()
         payment[rows] = amount[rows]
     return replace(flows, amount=amount, payment=payment)
+
+
+def grown(amount: FloatArray, factor: FloatArray) -> FloatArray:
+    """Amounts in today's money times their growth; infinite where no number is as large."""
+    with np.errstate(over="ignore", under="ignore", invalid="ignore"):
+        return np.asarray(amount * factor)
 
 
 def row_factors(
@@ -206,7 +222,7 @@ def row_factors(
             years = unknown_years(time[rows][floored], lag=lag[floored])
             growth[floored] = floored_growth(
                 growth[floored],
-                log_sd=inflation.volatility * np.sqrt(years),
+                log_sd=growth_deviation(inflation, years),
                 least=classes.least[own[floored]],
             )
         factor[rows] = growth
@@ -229,6 +245,12 @@ def _rows(
     rows = np.flatnonzero(grows & is_kind[of_row])
     if rows.size:
         yield rows
+
+
+def growth_deviation(inflation: Inflation, years: FloatArray) -> FloatArray:
+    """Standard deviation of the growth of the index over so many independent years, shape of `years`."""
+    with np.errstate(over="ignore"):
+        return np.asarray(np.minimum(inflation.volatility * np.sqrt(years), _MOST_DEVIATION))
 
 
 @dataclass(frozen=True, eq=False)
@@ -318,7 +340,7 @@ class CollarTables:
         log_index = known + curve.zero(ahead) * ahead
         return collared_growth(
             log_index if moves is None else log_index + moves,
-            sd=inflation.volatility * np.sqrt(np.diff(ahead, axis=-1)),
+            sd=growth_deviation(inflation, np.diff(ahead, axis=-1)),
             floor=self.floor[:, None],
             cap=self.cap[:, None],
         )
@@ -330,26 +352,21 @@ class CollarTables:
         return np.asarray(low + self.part * (flat[self.cell + 1] - low))
 
 
-def linked_slope(
-    growth: FloatArray, *, years: FloatArray, least: FloatArray, volatility: float
-) -> FloatArray:
-    """Derivative of the logarithm of linked growth by that of the growth of the index.
+def linked_slope(growth: FloatArray, *, log_sd: FloatArray, least: FloatArray) -> FloatArray:
+    """Derivative of the logarithm of floored growth by that of the growth of the index.
 
     Parameters
     ----------
     growth : ndarray, shape (n,)
         Expected of the index.
-    years : ndarray, shape (n,)
-        Of it that lie ahead.
+    log_sd : ndarray, shape (n,)
+        Standard deviation of its logarithm.
     least : ndarray, shape (n,)
         Least growth.
-    volatility : float
-        Of a year's inflation [1/year].
 
     Returns
     -------
     ndarray, shape (n,)
     """
-    log_sd = volatility * np.sqrt(years)
     slope = floored_growth_slope(growth, log_sd=log_sd, least=least)
     return np.asarray(slope * growth / floored_growth(growth, log_sd=log_sd, least=least))

@@ -10,7 +10,7 @@ import numpy as np
 from desk.book import Inflation, PricedFlows
 from desk.book.arrays import FloatArray, IntArray
 from desk.rates.inflation import floored_growth, growth_factors, log_growth, unknown_years
-from desk.valuation.indexing import CollarTables, IndexClasses, linked_slope
+from desk.valuation.indexing import CollarTables, IndexClasses, growth_deviation, linked_slope
 from desk.valuation.measures import BASIS_POINT, KEY_TERMS, key_rate_weights
 from desk.valuation.sums import blocks
 
@@ -144,15 +144,13 @@ def _linked_response(
     log = log_growth(
         rows.time[part][floored], curve=inflation.curve, recent_rate=inflation.recent_rate, lag=lag
     )
-    log_sd = inflation.volatility * np.sqrt(years[floored])
+    log_sd = growth_deviation(inflation, years[floored])
 
     def grown(move: FloatArray | float) -> FloatArray:
         return floored_growth(growth_factors(log + move), log_sd=log_sd, least=least[floored])
 
     slope = np.ones(years.size)
-    slope[floored] = linked_slope(
-        growth_factors(log), years=years[floored], least=least[floored], volatility=inflation.volatility
-    )
+    slope[floored] = linked_slope(growth_factors(log), log_sd=log_sd, least=least[floored])
     base = grown(0.0)
 
     def change(move: FloatArray) -> FloatArray:

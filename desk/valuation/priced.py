@@ -10,6 +10,7 @@ from numpy.typing import NDArray
 from desk.book import Book, Fault, FlowTable, PricedFlows, Severity, Side
 from desk.book.arrays import FloatArray, IntArray
 from desk.valuation.holdings import STATED_KINDS, PricedHoldings, price_holdings
+from desk.valuation.indexing import grown
 from desk.valuation.linked import TermsOfRows, terms_of_rows
 
 __all__ = ["PricedSide", "priced_flows"]
@@ -99,7 +100,7 @@ def _liabilities(book: Book) -> PricedSide:
         line_names=table.line_names,
         line=table.line[kept],
         time=time,
-        amount=amount if terms.factor is None else amount * terms.factor,
+        amount=amount if terms.factor is None else grown(amount, terms.factor),
         spread=spread + table.beta[kept] * basis.market_risk_premium,
         is_flow=np.ones(int(np.count_nonzero(kept)), dtype=np.bool_),
         real_amount=None if terms.index_class is None else amount,
@@ -130,7 +131,7 @@ def _assets(book: Book) -> PricedSide:
         return np.concatenate((np.concatenate((of_bonds, of_funds))[order], ready_made))
 
     real = table.amount[kept]
-    ready_made = real if terms.factor is None else real * terms.factor
+    ready_made = real if terms.factor is None else grown(real, terms.factor)
     spread = np.zeros(ready_made.size)
     if terms.spread is not None:
         spread = np.where(np.isnan(terms.spread), 0.0, terms.spread)

@@ -72,7 +72,8 @@ class LineStanding:
     market_value : float or None
         As the source states it, by its price if it states that [currency].
     flow_count : int
-        Flows after the valuation date, today's included.
+        Flows after the valuation date, today's included. The principal of a linked bond counts as a flow of
+        its own where it has a floor.
     spread_duration : float or None
         ``-(1/PV) dPV/ds`` for the spread s, the payments as projected today [years]; None where no spread
         plays a part: a fund, property or swap.

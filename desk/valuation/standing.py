@@ -10,6 +10,7 @@ from desk import __version__
 from desk.book import Book, HoldingKind, Inflation, PricedFlows, Provenance, Side
 from desk.book.arrays import FloatArray, IntArray
 from desk.rates.curve import DiscountCurve
+from desk.valuation.indexing import grown
 from desk.valuation.inflation_moves import InflationMoves, inflation_moves
 from desk.valuation.measures import (
     KEY_TERMS,
@@ -64,7 +65,7 @@ def stand(book: Book, *, progress: Callable[[float], None] | None = None) -> Sta
     Raises
     ------
     ValueError
-        If the basis gives no curve.
+        If the basis gives no curve, or states expected inflation that gives none.
     """
     report = progress or (lambda _: None)
     report(0.0)
@@ -308,7 +309,9 @@ def undiscounted_periods(
 def _counted(flows: PricedFlows, inflation_curve: DiscountCurve | None) -> FloatArray:
     """What each payment counts, in money or in today's money."""
     paid = flows.paid[flows.is_flow]
-    return paid if inflation_curve is None else paid * inflation_curve.discount(flows.time[flows.is_flow])
+    if inflation_curve is None:
+        return paid
+    return grown(paid, inflation_curve.discount(flows.time[flows.is_flow]))
 
 
 def _year(flows: PricedFlows) -> IntArray:

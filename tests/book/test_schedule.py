@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import calendar
+from dataclasses import replace
 from datetime import date, timedelta
 
 import numpy as np
@@ -91,6 +92,22 @@ def test_the_other_kinds() -> None:
     assert flows.date.tolist() == [date(2031, 6, 30), TODAY, date(2029, 1, 31)]
     assert flows.amount.tolist() == [50.0, 30.0, 100.0]
     assert flows.time[1] == 0.0
+
+
+def test_the_principal_of_a_linked_bond_is_a_row_of_its_own_where_it_has_a_floor() -> None:
+    """Before indexation it pays what a bond does; coupons and principal grow in different ways."""
+    bond = _bond(date(2027, 12, 31))
+    free = replace(bond, kind=HoldingKind.LINKED_BOND)
+    floored = replace(free, has_principal_floor=True)
+    zero = replace(floored, coupon=0.0)
+    flows = holding_flows([bond, free, floored, zero, bond], valuation_date=TODAY)
+    assert flows.holding.tolist() == [0, 0, 0, 1, 1, 1, 2, 2, 2, 2, 3, 4, 4, 4]
+    assert flows.amount.tolist() == [2.0, 2.0, 102.0] * 2 + [2.0, 2.0, 2.0, 100.0, 100.0, 2.0, 2.0, 102.0]
+    assert np.flatnonzero(flows.is_principal).tolist() == [9, 10]
+    assert flows.date[8] == flows.date[9] == np.datetime64("2027-12-31")
+    assert flows.outstanding.tolist() == [100.0] * 14
+    assert flows.running.rate.tolist() == [0.04, 0.04, 0.04, 0.0, 0.0, 0.04]
+    assert flows.running.row.tolist() == [0, 3, 6, 9, 10, 11]
 
 
 def test_what_has_matured_pays_nothing() -> None:

@@ -297,6 +297,35 @@ def test_hostile_inflation_gives_figures(
     assert found.key_assets.sum() == pytest.approx(found.assets_duration, rel=1e-9)
 
 
+@pytest.mark.parametrize("rate", [-0.999999, 0.0, 1e300])
+@pytest.mark.parametrize("recent", [None, -0.9999, 1e300])
+@pytest.mark.parametrize(
+    "kind",
+    [
+        Indexation(COLLARED, floor=-1e308, cap=1e308),
+        Indexation(COLLARED, floor=1e308),
+        Indexation(COLLARED, cap=-1e308, lag=1e4),
+        Indexation(RISING, rise=1e308),
+        Indexation(RISING, rise=-0.9999999999),
+        Indexation(LINKED, lag=1e6),
+        Indexation(LINKED, least=1e300),
+    ],
+)
+def test_absurd_figures_are_no_reason_to_fail(kind: Indexation, recent: float | None, rate: float) -> None:
+    """No warning and no error; the line that is sound keeps its value."""
+    table = FlowTable.build(
+        ["absurd"] * 5 + ["sound"], [1e-12, 30.0, 1e4, 1e300, 2.0, 2.0], [1.0, 1e300, 1.0, -1.0, 1e-300, 5.0]
+    )
+    terms = (LineTerms(Side.LIABILITIES, "absurd", kind), LineTerms(Side.LIABILITIES, "sound", rate=0.0))
+    for volatility in (0.0, 1e-300, 1e308):
+        inflation = Inflation(np.array([1.0]), np.array([rate]), volatility=volatility, recent=recent)
+        book = Book(replace(basis(), inflation=inflation), table, line_terms=terms)
+        absurd, sound = stand(book).lines
+        assert sound.measures.present_value == pytest.approx(5.0)
+        assert sound.inflation_dv01 == 0.0
+        assert absurd.flow_count == 5
+
+
 def test_quotes_that_give_no_curve() -> None:
     bad = Inflation(np.array([2.0, 1.0]), np.array([0.02, 0.02]))
     with pytest.raises(ValueError, match="`terms` must rise"):

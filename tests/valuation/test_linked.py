@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import math
+from collections.abc import Callable
 from dataclasses import replace
 from datetime import date, timedelta
 from typing import Any
@@ -19,6 +20,7 @@ from desk.book import (
     Indexation,
     IndexationKind,
     Inflation,
+    LiabilityMethod,
     LineTerms,
     PriceKind,
     Severity,
@@ -92,6 +94,43 @@ def test_lines_at_spreads_rates_and_indexations_of_their_own() -> None:
     assert spreads["With profits"] == pytest.approx(0.011 + 0.4 * 0.03)
     assert spreads["In payment"] is None  # a flat rate is another spread for each row
     assert spreads["Contributions"] == 0.02
+
+
+@pytest.mark.parametrize(
+    ("changes", "discounted"),
+    [
+        (
+            {"liability_method": LiabilityMethod.EXPECTED_RETURN, "expected_return": 0.06},
+            lambda t, _: 1.06**-t,
+        ),
+        (
+            {
+                "liability_method": LiabilityMethod.TERM_SPREADS,
+                "liability_terms": np.array([1.0, 11.0]),
+                "liability_spreads": np.array([0.01, 0.02]),
+            },
+            lambda t, p: p * math.exp(-t * (0.01 + 0.001 * (min(max(t, 1.0), 11.0) - 1.0))),
+        ),
+    ],
+)
+def test_bases_of_the_liabilities(
+    changes: dict[str, Any], discounted: Callable[[float, float], float]
+) -> None:
+    """The liability spread and beta count on top of each; a line's own terms stand in its place."""
+    book = _lines(LineTerms(Side.LIABILITIES, "Mixed", spread=0.05))
+    book = replace(book, basis=replace(book.basis, **changes))
+    table = book.liabilities
+    lines = {line.line: line.measures.present_value for line in stand(book).lines}
+    for number, name in enumerate(table.line_names):
+        total = 0.0
+        for row in np.flatnonzero((table.line == number) & (table.time > 0.0)):
+            time, beta = float(table.time[row]), float(table.beta[row])
+            factor = plain_discount(book, time)
+            own = factor * math.exp(-0.05 * time)
+            if name != "Mixed":
+                own = discounted(time, factor) * math.exp(-0.004 * time)
+            total += float(table.amount[row]) * own * math.exp(-beta * 0.03 * time)
+        assert lines[name] == pytest.approx(total, rel=1e-12)
 
 
 def test_fixed_terms_are_no_terms() -> None:
