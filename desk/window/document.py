@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Callable
-from dataclasses import dataclass, replace
+from dataclasses import replace
 from functools import partial
 from pathlib import Path
 from typing import Any
@@ -15,6 +15,7 @@ from desk.book import Book, Fault
 from desk.intake.records import Reading
 from desk.scenarios.records import Simulation
 from desk.valuation.records import Standing
+from desk.window.history import History
 from desk.window.jobs import Job, Jobs
 from desk.window.valued import Valued, changed_fields, is_outdated, reason, with_faults
 
@@ -25,17 +26,6 @@ STANDING_FIELDS = _VALUED | {"second_basis"}
 """Parts of a book that its standings follow from, on the first basis and on the second."""
 SIMULATION_FIELDS = _VALUED | {"rates_model", "risky_assets", "run", "scenario_set"}
 """Parts of a book that a simulation follows from."""
-
-_LONGEST_HISTORY = 200
-
-
-@dataclass(frozen=True, eq=False)
-class _Version:
-    """A book in the history; `text` says what edit led to it."""
-
-    text: str
-    book: Book
-    merge_key: object = None
 
 
 class Document(QObject):
@@ -105,9 +95,7 @@ class Document(QObject):
         self._wants_comparison = True
         self._simulation_faults: tuple[Fault, ...] = ()
         self.simulation: Simulation | None = None
-        self._history: list[_Version] = []
-        self._place = -1
-        self._saved: _Version | None = None
+        self._history = History()
         self._was_modified = False
         self._simulation_book: Book | None = None
         self._simulation_stale = False
@@ -118,7 +106,7 @@ class Document(QObject):
     @property
     def book(self) -> Book | None:
         """The book as edited."""
-        return self._history[self._place].book if self._history else None
+        return self._history.book
 
     @property
     def current_reading(self) -> Reading | None:
@@ -149,9 +137,7 @@ class Document(QObject):
         self.stop()
         self.source = reading
         self.path = reading.path
-        self._history = [_Version("", reading.book)]
-        self._place = 0
-        self._saved = self._history[0]
+        self._history.start(reading.book)
         self._first.forget()
         self._second.forget()
         self._wants_comparison = True
@@ -186,57 +172,43 @@ class Document(QObject):
             raise RuntimeError("there is no open book to edit")
         if not changed_fields(former, book):
             return
-        version = _Version(text, book, merge_key)
-        last = self._history[self._place]
-        merges = (
-            merge_key is not None
-            and last.merge_key == merge_key
-            and last.text == text
-            and last is not self._saved
-            and self._place == len(self._history) - 1
-        )
-        del self._history[self._place + (0 if merges else 1) :]
-        self._history.append(version)
-        del self._history[: -_LONGEST_HISTORY - 1]
-        self._place = len(self._history) - 1
+        self._history.add(text, book, merge_key=merge_key)
         self._book_replaced()
 
     @property
     def can_undo(self) -> bool:
         """Whether there is an edit to undo."""
-        return self._place > 0
+        return self._history.can_undo
 
     @property
     def can_redo(self) -> bool:
         """Whether there is an edit to do again."""
-        return 0 <= self._place < len(self._history) - 1
+        return self._history.can_redo
 
     @property
     def undo_text(self) -> str:
         """What would be undone; empty where nothing can be."""
-        return self._history[self._place].text if self.can_undo else ""
+        return self._history.undo_text
 
     @property
     def redo_text(self) -> str:
         """What would be done again; empty where nothing can be."""
-        return self._history[self._place + 1].text if self.can_redo else ""
+        return self._history.redo_text
 
     def undo(self) -> None:
         """Go back one edit."""
-        if self.can_undo:
-            self._place -= 1
+        if self._history.step(-1):
             self._book_replaced()
 
     def redo(self) -> None:
         """Go forward one edit."""
-        if self.can_redo:
-            self._place += 1
+        if self._history.step(1):
             self._book_replaced()
 
     @property
     def is_modified(self) -> bool:
         """Whether the book differs in its history from what was opened or last saved."""
-        return bool(self._history) and self._history[self._place] is not self._saved
+        return self._history.is_modified
 
     def mark_saved(self, path: Path, book: Book | None = None) -> None:
         """Note that a version of the book was saved to `path`.
@@ -247,12 +219,9 @@ class Document(QObject):
         book : Book, optional
             The version that was saved, where edits may have followed; by default the book as it stands.
         """
-        if not self._history:
+        if self.book is None:
             return
-        saved = self._history[self._place]
-        if book is not None:
-            saved = next((version for version in self._history if version.book is book), self._saved or saved)
-        self._saved = saved
+        self._history.mark_saved(book)
         self.path = path
         self._tell_history()
 
@@ -277,7 +246,9 @@ class Document(QObject):
             self.modified_changed.emit(self._was_modified)
 
     def _open_book(self) -> Book:
-        return self._history[self._place].book
+        book = self._history.book
+        assert book is not None
+        return book
 
     # What follows from the book
 

@@ -187,3 +187,20 @@ def test_a_book_whose_lines_differ_in_place_is_not_compared_line_by_line(
     values = station.lines.table.table_model.column_values("second_value")
     # The middle line alone is where it was.
     assert np.isnan(values).tolist() == [True, True, False, True, True]
+
+
+def test_nothing_is_cut_at_the_least_usual_size(station: StandingStation, bench: Bench, qtbot: QtBot) -> None:
+    """1280 by 720 less rail, headline and foot, with every page there can be."""
+    book = with_inflation()
+    show(bench, station, qtbot, replace(book, second_basis=replace(book.basis, liability_spread=0.02)))
+    tabs = station.pages.tabs
+    shown = sum(tabs.tabRect(place).width() for place in range(tabs.count()) if tabs.isTabVisible(place))
+    assert 0 < shown <= tabs.width()
+    assert all(tabs.isTabVisible(place) for place in range(tabs.count()))
+    form = station.basis_form
+    for button in (form.hold_button, form.swap_button, form.drop_button, station.lines.terms_button):
+        assert button.width() >= button.sizeHint().width()
+    for name in ("comparison", "inflation"):
+        station.pages.show_page(name)
+        table = station.comparison.table if name == "comparison" else station.inflation.totals
+        assert table.horizontalHeader().length() <= table.viewport().width()
