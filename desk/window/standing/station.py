@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from itertools import pairwise
 from typing import Any
 
 from PySide6.QtCore import Qt
@@ -106,12 +107,15 @@ class StandingStation(Station):
         self.money.currentIndexChanged.connect(lambda _: self._show_flows())
         self.money.hide()
         self.add_to_heading(self.money)
-        self.basis_form = BasisForm(self.form, document, theme_switch, lambda: self.step_wanted.emit("curve"))
-        self.basis_form.refused.connect(self._refuse)
-        self.liability_spread = self.basis_form.liability_spread
+        QWidget.setTabOrder(self.next_button, self.money)
+        # In this order the keyboard comes to them.
         self.set_pictures(self.flow_picture, self.key_rate_picture)
         self.set_table(self.pages, share=45)
         self.set_form_visible()
+        self.basis_form = BasisForm(self.form, document, theme_switch, lambda: self.step_wanted.emit("curve"))
+        self.basis_form.refused.connect(self._refuse)
+        self.basis_form.spreads.table.message.connect(self.message)
+        self.liability_spread = self.basis_form.liability_spread
 
     def _line_controls(self) -> tuple[QWidget, ...]:
         """What belongs to the page of lines alone."""
@@ -241,6 +245,10 @@ class StandingStation(Station):
                 self.inflation_picture = InflationPicture(self.theme_switch)
                 self.inflation_picture.message.connect(self.message)
                 self.pictures.addWidget(self.inflation_picture)
+                # It is made late: the keyboard comes to it after the picture that it stands beside.
+                made: tuple[QWidget, ...] = (self.inflation_picture.plot, self.inflation_picture.button)
+                for before, after in pairwise((self.key_rate_picture.button, *made)):
+                    QWidget.setTabOrder(before, after)
             self.inflation_picture.show_inflation(inflation, standing.currency)
         shows_inflation = wanted and self.inflation_picture is not None
         if self.flow_picture.isHidden() == shows_inflation:
