@@ -297,7 +297,7 @@ def _product(first: FloatArray, second: FloatArray) -> FloatArray:
     Where other work keeps the cores busy, waiting for a second thread takes longer than the product.
     """
     work = first.size * second.shape[1]
-    if work > _MOST_IN_PARTS:
+    if not 0 < work <= _MOST_IN_PARTS:
         return np.asarray(first @ second)
     found = np.empty((len(first), second.shape[1]))
     rows = max(1, len(first) * _ONE_PART // work)

@@ -10,7 +10,7 @@ import pytest
 
 from desk.book import Basis, CurveKind
 from desk.rates.compounding import Compounding, to_continuous
-from desk.rates.curve import Interpolation
+from desk.rates.curve import Curve, Interpolation
 from desk.rates.curve_error import CurveError
 from desk.rates.quotes import par_flows, swap_flows
 from desk.rates.smith_wilson import Extrapolation, SmithWilsonCurve
@@ -20,8 +20,15 @@ RATES = np.array([0.021, 0.022, 0.024, 0.027, 0.03, 0.032, 0.031])
 BASIS = Basis(date(2026, 6, 30), "EUR", TERMS, RATES)
 
 
+def _drawn(basis: Basis) -> Curve:
+    """The curve of a basis, one through terms."""
+    curve = basis.curve
+    assert isinstance(curve, Curve)
+    return curve
+
+
 def test_zero_rates_make_the_curve_themselves() -> None:
-    np.testing.assert_array_equal(BASIS.curve.zero_rates, to_continuous(RATES, Compounding.ANNUAL))
+    np.testing.assert_array_equal(_drawn(BASIS).zero_rates, to_continuous(RATES, Compounding.ANNUAL))
     np.testing.assert_allclose(BASIS.quoted_flows.values(BASIS.curve), BASIS.quoted_flows.target, rtol=1e-14)
 
 
@@ -40,7 +47,7 @@ def test_coupons_go_by_the_compounding(
 ) -> None:
     stated = replace(BASIS, compounding=compounding, interpolation=interpolation)
     for kind, make in ((CurveKind.PAR, par_flows), (CurveKind.SWAP, swap_flows)):
-        curve = replace(stated, curve_kind=kind).curve
+        curve = _drawn(replace(stated, curve_kind=kind))
         np.testing.assert_array_equal(curve.terms, TERMS)
         assert curve.interpolation is interpolation
         worth = make(TERMS, RATES, payments_per_year=per_year).values(curve)
@@ -80,19 +87,19 @@ def test_smith_wilson_goes_on_to_the_ultimate_rate(kind: CurveKind) -> None:
     assert abs(float(curve.instantaneous_forward(60.0)) - np.log(1.0345)) <= 1e-4
     liquid = basis.quoted_flows.liquid(20.0)
     np.testing.assert_allclose(liquid.values(curve), liquid.target, rtol=1e-12)
-    other = replace(basis, convergence_point=40.0, convergence_tolerance=1e-5).curve
+    other = _drawn(replace(basis, convergence_point=40.0, convergence_tolerance=1e-5))
     assert abs(float(other.instantaneous_forward(40.0)) - np.log(1.0345)) <= 1e-5
 
 
 @pytest.mark.parametrize("kind", [CurveKind.ZERO, CurveKind.PAR, CurveKind.SWAP])
 def test_quotes_beyond_the_last_liquid_point_are_left_out(kind: CurveKind) -> None:
     basis = replace(BASIS, curve_kind=kind)
-    cut = replace(basis, last_liquid_point=10.0).curve
-    short = replace(basis, terms=TERMS[:5], rates=RATES[:5]).curve
+    cut = _drawn(replace(basis, last_liquid_point=10.0))
+    short = _drawn(replace(basis, terms=TERMS[:5], rates=RATES[:5]))
     np.testing.assert_array_equal(cut.zero_rates, short.zero_rates)
     assert cut.last_term == 10.0
-    whole = replace(basis, last_liquid_point=30.0).curve
-    np.testing.assert_array_equal(whole.zero_rates, basis.curve.zero_rates)
+    whole = _drawn(replace(basis, last_liquid_point=30.0))
+    np.testing.assert_array_equal(whole.zero_rates, _drawn(basis).zero_rates)
 
 
 @pytest.mark.parametrize(

@@ -10,7 +10,7 @@ import pytest
 
 from desk.book import Basis, Book, FlowTable, Holding, HoldingKind, PricedFlows, Side
 from desk.rates.compounding import Compounding
-from desk.rates.curve import Interpolation
+from desk.rates.curve import Curve, Interpolation
 
 
 def _basis() -> Basis:
@@ -120,6 +120,7 @@ def test_the_basis_makes_its_curve() -> None:
     basis = replace(_basis(), compounding=Compounding.SEMI_ANNUAL, interpolation=Interpolation.LINEAR_ZERO)
     np.testing.assert_allclose(basis.curve.zero(1.0), 2.0 * np.log(1.01), rtol=1e-15)
     np.testing.assert_allclose(basis.curve.discount(10.0), 1.015**-20, rtol=1e-13)
+    assert isinstance(basis.curve, Curve)
     assert basis.curve.interpolation is Interpolation.LINEAR_ZERO
     assert basis.curve is basis.curve
 

@@ -156,6 +156,28 @@ def test_a_clean_price_and_its_accrued_interest() -> None:
     assert by_days.target[0] == pytest.approx(100.0 + 5.0 * 61.0 / 360.0, rel=1e-14)
 
 
+def test_each_price_is_clean_or_not() -> None:
+    today, maturity = date(2026, 3, 1), np.array(["2030-08-15", "2031-11-15"], dtype="datetime64[D]")
+    both = {
+        clean: bond_flows(maturity, [0.05, 0.03], prices=[99.0, 98.0], is_clean=clean, valuation_date=today)
+        for clean in (False, True)
+    }
+    mixed = bond_flows(
+        maturity, [0.05, 0.03], prices=[99.0, 98.0], is_clean=[True, False], valuation_date=today
+    )
+    np.testing.assert_array_equal(mixed.target, [both[True].target[0], both[False].target[1]])
+    assert both[True].target[0] > 99.0 == both[False].target[0]
+
+
+def test_some_of_the_instruments_in_another_order() -> None:
+    flows = par_flows([1.0, 2.0, 5.0, 10.0], [0.02, 0.03, 0.04, 0.05])
+    taken = flows.taken([3, 0, 2])
+    np.testing.assert_array_equal(taken.term, [10.0, 1.0, 5.0])
+    curve = flat_curve(0.03)
+    np.testing.assert_array_equal(taken.values(curve), flows.values(curve)[[3, 0, 2]])
+    np.testing.assert_array_equal(flows.taken([0, 1]).amount, flows.leading(2).amount)
+
+
 def test_terms_within_a_period_have_a_first_payment_in_proportion() -> None:
     flows = par_flows([0.25, 1.75], [0.04, 0.05], payments_per_year=1)
     np.testing.assert_allclose(flows.time, [0.25, 0.75, 1.75])

@@ -9,7 +9,7 @@ import pytest
 from scipy.optimize import minimize
 
 from desk.rates.curve_error import CurveError
-from desk.rates.fitting import fit_nelson_siegel, fit_svensson
+from desk.rates.fitting import fit_nelson_siegel, fit_svensson, measured_fit
 from desk.rates.parametric import NelsonSiegel, Svensson
 from desk.rates.quoted_flows import QuotedFlows, flow_yields
 from desk.rates.quotes import bond_flows
@@ -117,6 +117,39 @@ def test_one_bond_that_is_wrong_stands_out() -> None:
     assert int(np.argmax(np.abs(found.residual_bp))) == 17
 
 
+def test_the_level_stays_near_the_yields() -> None:
+    """Waves that no curve of the family has are not bought by one that runs off beyond the bonds."""
+    for seed in range(6):
+        random = np.random.default_rng(seed)
+        flows = _sheet(TREASURY, 60, random)
+        zero = TREASURY.zero(flows.time) + 0.002 * np.sin(flows.time / random.uniform(1.0, 4.0))
+        waved = replace(flows, target=flows.sums(flows.amount * np.exp(-zero * flows.time)))
+        yields = flow_yields(waved)
+        found = fit_svensson(waved)
+        assert isinstance(found.curve, Svensson)
+        assert yields.min() - 0.1 <= found.curve.level <= yields.max() + 0.1
+        assert np.abs(found.curve.zero([40.0, 100.0])).max() < 0.2
+        assert found.rmse_bp < 20.0
+
+
+def test_order_of_the_bonds_does_not_matter() -> None:
+    random = np.random.default_rng(12)
+    flows = _noisy(_sheet(TREASURY, 40, random), random)
+    order = random.permutation(40)
+    first, second = fit_svensson(flows), fit_svensson(flows.taken(order))
+    np.testing.assert_allclose(second.residual_bp, first.residual_bp[order], atol=1e-3)
+
+
+def test_any_curve_is_measured() -> None:
+    random = np.random.default_rng(13)
+    flows = _noisy(_sheet(TREASURY, 20, random), random)
+    used = np.arange(20) % 3 > 0
+    found = measured_fit(TREASURY, flows, is_used=used)
+    assert found.rmse_bp == pytest.approx(np.sqrt(np.mean(found.residual_bp[used] ** 2)))
+    assert found.largest_bp == np.abs(found.residual_bp[used]).max()
+    assert measured_fit(TREASURY, flows).is_used.all()
+
+
 class TestFaults:
     """Sheets that give no curve."""
 
@@ -144,6 +177,20 @@ class TestFaults:
             found = fit_svensson(wild)
             assert np.isfinite(found.residual_bp).all()
             assert found.rmse_bp > 100.0
+
+    def test_bonds_without_coupons(self) -> None:
+        terms = np.linspace(0.5, 30.0, 20)
+        flows = bond_flows(terms, np.zeros(20), yields=np.full(20, 0.03), frequency=1)
+        found = fit_svensson(flows)
+        assert found.largest_bp < 1e-3
+        np.testing.assert_allclose(found.curve.zero(terms), np.log(1.03), atol=1e-8)
+
+    def test_a_thousand_bonds(self) -> None:
+        random = np.random.default_rng(14)
+        flows = _noisy(_sheet(TREASURY, 1000, random), random)
+        found = fit_svensson(flows)
+        # Nearer to the prices than the curve they were drawn about.
+        assert found.rmse_bp < measured_fit(TREASURY, flows).rmse_bp * 1.001
 
     def test_bonds_that_all_mature_together(self) -> None:
         flows = bond_flows(np.full(7, 5.0), np.linspace(0.0, 0.06, 7), yields=np.full(7, 0.03))
