@@ -94,6 +94,7 @@ def read_basis_items(sheet: ItemSheet, *, first: BasisItems | None = None) -> Ba
     fit = sheet.choice("Bond fit", BondFit, "a bond fit")
     liability_fit = sheet.choice("Liability bond fit", BondFit, "a bond fit")
     method = sheet.choice("Liability basis", LiabilityMethod, "a liability basis")
+    premium = sheet.number("Market risk premium", "a rate a year", check_rates)
     by_bonds = kind is CurveKind.BONDS
     joined = kind in QUOTED_KINDS or BondFit.EXACT in (
         fit if by_bonds else None,
@@ -108,7 +109,7 @@ def read_basis_items(sheet: ItemSheet, *, first: BasisItems | None = None) -> Ba
         ),
         **_choice_or_usual(sheet, "Interpolation", Interpolation, "an interpolation", required=joined),
         "liability_spread": sheet.number("Liability spread", "a rate a year", check_rates, required=True),
-        "market_risk_premium": sheet.number("Market risk premium", "a rate a year", check_rates) or 0.0,
+        "market_risk_premium": 0.0 if premium is None else premium,
         **_curve_items(sheet, kind),
         **_formula_items(sheet, kind),
     }
@@ -282,14 +283,12 @@ def _formula_items(sheet: ItemSheet, kind: CurveKind | None) -> dict[str, Any]:
 
 def _inflation_items(sheet: ItemSheet) -> dict[str, Any]:
     """What is stated of expected inflation beside its curve."""
+    above = partial(check_rates, least=-np.inf)
+    volatility = sheet.number("Inflation volatility", "a volatility a year", check_not_negative, above)
+    recent = sheet.number("Recent inflation", "a rate a year", check_rates)
     return _stated(
-        volatility=sheet.number(
-            "Inflation volatility",
-            "a volatility a year",
-            check_not_negative,
-            partial(check_rates, least=-np.inf),
-        ),
-        recent=sheet.number("Recent inflation", "a rate a year", check_rates),
+        volatility=None if volatility is None else max(volatility, 0.0),
+        recent=None if recent is None else max(recent, -0.5),
         interpolation=sheet.choice("Inflation interpolation", Interpolation, "an interpolation"),
     )
 

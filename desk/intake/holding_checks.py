@@ -2,9 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Iterable
 from datetime import date
-from enum import StrEnum
 
 import numpy as np
 from numpy.typing import NDArray
@@ -15,13 +13,20 @@ from desk.intake.cells import Cells
 from desk.intake.checks import check_rates, check_size
 from desk.intake.columns import Kind
 from desk.intake.faults import FaultList
+from desk.intake.holding_columns import (
+    FLOATER,
+    LEFT_OUT,
+    LINKED,
+    SAYS_NOTHING,
+    USED,
+    USUAL,
+    WITH_SPREAD,
+    KindMasks,
+    YesNo,
+)
 from desk.intake.layout import Table, fold
 
 __all__ = [
-    "NEEDED",
-    "USED",
-    "KindMasks",
-    "YesNo",
     "check_annuities",
     "check_dates",
     "check_ex_dividend",
@@ -40,92 +45,11 @@ FloatArray = NDArray[np.float64]
 DayArray = NDArray[np.datetime64]
 
 
-class YesNo(StrEnum):
-    """An answer."""
-
-    YES = "yes"
-    NO = "no"
-
-
-_BOND, _ZERO, _BILL, _FLOATER = HoldingKind.BOND, HoldingKind.ZERO, HoldingKind.BILL, HoldingKind.FLOATER
-_LINKED = HoldingKind.LINKED_BOND
-_DEPOSIT, _TERM_DEPOSIT = HoldingKind.DEPOSIT, HoldingKind.TERM_DEPOSIT
-_STATED = (HoldingKind.FUND, HoldingKind.PROPERTY)
-_COUPONS = (_BOND, _LINKED, _FLOATER)
-_QUOTED = (_BOND, _LINKED, _ZERO, _BILL, _FLOATER)
-_SPREAD = (*_QUOTED, _TERM_DEPOSIT)
-_DATED = (*_SPREAD, *SWAP_KINDS)
-
-NEEDED: dict[str, tuple[HoldingKind, ...]] = {
-    "Nominal": (*_DATED, _DEPOSIT),
-    "Coupon": (_BOND, _LINKED, *SWAP_KINDS),
-    "Frequency": (*_COUPONS, *SWAP_KINDS),
-    "Maturity": _DATED,
-    "Market value": _STATED,
-}
-"""Kinds that cannot do without a column."""
-USED: dict[str, tuple[HoldingKind, ...]] = {
-    "Nominal": NEEDED["Nominal"],
-    "Coupon": (*NEEDED["Coupon"], _TERM_DEPOSIT),
-    "Frequency": (*NEEDED["Frequency"], _ZERO),
-    "Maturity": _DATED,
-    "Duration": _STATED,
-    "Start date": (*_COUPONS, _TERM_DEPOSIT, *SWAP_KINDS),
-    "First coupon": _COUPONS,
-    "Ex-dividend days": _COUPONS,
-    "Bought ex-dividend": _COUPONS,
-    "Amortisation": (_BOND, _FLOATER, *SWAP_KINDS),
-    "Price": _QUOTED,
-    "Price kind": _QUOTED,
-    "Discount rate": (_BILL,),
-    "Current rate": (_FLOATER, *SWAP_KINDS),
-    "Margin": (_FLOATER, *SWAP_KINDS),
-    "Floating frequency": SWAP_KINDS,
-    "Floating day count": SWAP_KINDS,
-    "Default rate": _SPREAD,
-    "Recovery rate": _SPREAD,
-    "Index lag (months)": (_LINKED,),
-    "Index ratio": (_LINKED,),
-    "Principal floor": (_LINKED,),
-}
-"""Kinds that have a use for a column; the columns that are not here are for every kind."""
-_LEFT_OUT = frozenset(
-    {"First coupon", "Amortisation", "Price", "Discount rate", "Default rate", "Principal floor"}
-)
-"""Columns that a holding of a kind without a use for them cannot even keep."""
-_SAYS_NOTHING = {
-    "Amortisation": "bullet",
-    "Price kind": "clean",
-    "Bought ex-dividend": "no",
-    "Principal floor": "no",
-}
-"""Words that stand for what holds anyway."""
-_USUAL = {"Index lag (months)": 3.0, "Index ratio": 1.0}
-"""Numbers that do."""
 _MOST_LAG_MONTHS = 60
 _MOST_EX_DAYS = 300
 _LOW_PRICE = 2.0
 """A price per 100 below this is rather a price per 1."""
 _CORRECT = "Correct the figure."
-
-
-class KindMasks:
-    """Masks of the holdings of some kinds.
-
-    Parameters
-    ----------
-    kinds : list of HoldingKind or None
-        Of each holding, None where it is not known.
-    """
-
-    def __init__(self, kinds: list[HoldingKind | None]) -> None:
-        codes = {kind: code for code, kind in enumerate(HoldingKind)}
-        self._code = np.array([-1 if kind is None else codes[kind] for kind in kinds], dtype=np.int64)
-        self._codes = codes
-
-    def among(self, kinds: Iterable[HoldingKind]) -> BoolArray:
-        """Which holdings are of one of some kinds."""
-        return np.isin(self._code, [self._codes[kind] for kind in kinds])
 
 
 def report_missing_columns(
@@ -212,7 +136,7 @@ def check_worth(
     with np.errstate(invalid="ignore"):
         apart = ~np.isnan(value) & (np.sign(nominal) * value <= 0.0) & (nominal != 0.0) & ~past
     cells["Market value"].each(
-        apart & kinds.among(_SPREAD),
+        apart & kinds.among(WITH_SPREAD),
         "the market value is {}, which no spread gives for this nominal",
         "a market value above 0 for a holding, below 0 for a debt",
         "Correct it, or leave it empty.",
@@ -348,7 +272,7 @@ def check_annuities(
     """Report annuities whose interest floats."""
     annuity = np.array([own is Amortisation.ANNUITY for own in amortisations], dtype=np.bool_)
     cells["Amortisation"].each(
-        annuity & kinds.among((_FLOATER, *SWAP_KINDS)),
+        annuity & kinds.among((FLOATER, *SWAP_KINDS)),
         "the amortisation is {}, which is for bonds alone",
         "bullet or level where interest floats",
         "Write bullet or level.",
@@ -369,7 +293,7 @@ def check_indexation(
     )
     cells["Index ratio"].each(none, "the index ratio is {}", "an index ratio above 0", _CORRECT)
     cells["Index ratio"].each(
-        far & kinds.among([_LINKED]),
+        far & kinds.among([LINKED]),
         "the index ratio is {}",
         "the reference index today over that of the base date, mostly from 0.9 to 5",
         "It counts as it stands; divide by the base index if it is the index itself.",
@@ -377,7 +301,7 @@ def check_indexation(
     )
     if not has_inflation:
         cells["Kind"].each(
-            kinds.among([_LINKED]),
+            kinds.among([LINKED]),
             "a linked bond needs expected inflation, which the book does not have",
             'a sheet "Inflation" with terms and rates',
             "Add the sheet; without it the bond cannot follow an index.",
@@ -393,8 +317,8 @@ def report_unused(
     for name, has_use in used.items():
         own = cells[name]
         flagged = own.filled & known & ~has_use
-        flagged &= ~((own.kinds == Kind.NUMBER) & ((own.values == 0.0) | (own.values == _USUAL.get(name))))
-        if (word := _SAYS_NOTHING.get(name)) is not None and flagged.any():
+        flagged &= ~((own.kinds == Kind.NUMBER) & ((own.values == 0.0) | (own.values == USUAL.get(name))))
+        if (word := SAYS_NOTHING.get(name)) is not None and flagged.any():
             texts = np.array([text.strip().casefold() == word for text in own.texts], dtype=np.bool_)
             place = np.flatnonzero(flagged & (own.kinds == Kind.TEXT))
             flagged[place[texts[own.values[place].astype(np.int64)]]] = False
@@ -404,7 +328,7 @@ def report_unused(
             (f"a {kinds[entry]} has no {name.lower()}" for entry in entries.tolist()),
             "an empty cell",
             "It is left out; remove it."
-            if name in _LEFT_OUT
+            if name in LEFT_OUT
             else "It is kept and not used; remove it if it is not wanted.",
             mild=True,
         )

@@ -12,10 +12,6 @@ from desk.intake.cells import Cells
 from desk.intake.checks import plain
 from desk.intake.faults import FaultList
 from desk.intake.holding_checks import (
-    NEEDED,
-    USED,
-    KindMasks,
-    YesNo,
     check_annuities,
     check_dates,
     check_ex_dividend,
@@ -28,6 +24,7 @@ from desk.intake.holding_checks import (
     report_twice,
     report_unused,
 )
+from desk.intake.holding_columns import NEEDED, USED, KindMasks, YesNo
 from desk.intake.layout import Table
 from desk.rates.day_count import DayCount
 

@@ -10,7 +10,7 @@ from desk.book import Basis, CurveBonds, Inflation, Notes
 from desk.intake.basis import BasisSheets
 from desk.intake.basis_items import QUOTED_KINDS
 from desk.intake.sheets import SHEETS
-from desk.report.book_sheets import items_sheet, table_sheet
+from desk.report.book_sheets import items_sheet, table_sheet, unless_zero
 from desk.report.plain_workbook import PlainSheet, Value, date_serials
 
 __all__ = ["basis_sheets"]
@@ -128,7 +128,7 @@ def _inflation_items(basis: Basis, first: Basis | None) -> dict[str, Value]:
         return dict.fromkeys(("Inflation volatility", "Recent inflation", "Inflation interpolation"))
     drawn = inflation.interpolation
     return {
-        "Inflation volatility": inflation.volatility or None,
+        "Inflation volatility": unless_zero(inflation.volatility),
         "Recent inflation": inflation.recent,
         "Inflation interpolation": None if drawn is Inflation.interpolation else str(drawn),
     }

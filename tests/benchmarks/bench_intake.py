@@ -90,7 +90,7 @@ def make_book(path: Path, rows: int, *, faults: bool) -> Path:
     )
 
 
-def _bare_read(path: Path) -> None:
+def bare_read(path: Path) -> None:
     from python_calamine import CalamineWorkbook
 
     workbook = CalamineWorkbook.from_path(path)
@@ -98,7 +98,7 @@ def _bare_read(path: Path) -> None:
         workbook.get_sheet_by_name(name).to_python(skip_empty_area=False)
 
 
-def _seconds(work: Callable[[], object]) -> float:
+def seconds(work: Callable[[], object]) -> float:
     start = time.perf_counter()
     work()
     return time.perf_counter() - start
@@ -113,8 +113,8 @@ def main(rows: int = 500_000) -> None:
             path = make_book(Path(folder) / f"faults_{faults}.xlsx", rows, faults=faults)
             bare, whole = [], []
             for _ in range(3):
-                bare.append(_seconds(partial(_bare_read, path)))
-                whole.append(_seconds(partial(read_workbook, path)))
+                bare.append(seconds(partial(bare_read, path)))
+                whole.append(seconds(partial(read_workbook, path)))
             count = len(read_workbook(path).faults)
             print(
                 f"{rows:,} rows, {count:,} faults: bare read {np.median(bare):.2f} s, "
