@@ -9,7 +9,7 @@ from pytestqt.qtbot import QtBot
 from desk.window.standing.pictures import FLOWS, FLOWS_IN_REAL
 from desk.window.standing.station import StandingStation
 from tests.window.benches import Bench, a_fund
-from tests.window.standing.books import column, show, with_inflation
+from tests.window.standing.books import INFLATION, column, show, with_inflation
 
 
 def test_without_inflation_nothing_of_it_is_shown(station: StandingStation) -> None:
@@ -75,7 +75,7 @@ def test_flows_are_shown_in_todays_money(station: StandingStation, bench: Bench,
     real = station.periods.table_model.column_values("liabilities")
     np.testing.assert_allclose(real, standing.inflation.real_periods.liabilities)
     # 100,000 a year in today's money, and 40,000 that lose what prices rise by.
-    factor = float(np.exp(-with_inflation().basis.inflation.curve.zero(1.0)))  # type: ignore[union-attr]
+    factor = float(INFLATION.curve.discount(1.0))
     assert real[0] == pytest.approx(100_000.0 + 40_000.0 * factor, rel=1e-6)
     station.money.setCurrentIndex(0)
     assert station.flow_picture.title == FLOWS
