@@ -9,6 +9,7 @@ from desk.rates.curve import Curve, Interpolation
 from desk.rates.curve_error import CurveError
 from desk.rates.quoted_flows import QuotedFlows, flow_yields
 from desk.rates.sensitivity import exponents
+from desk.rates.small_products import small_product
 
 __all__ = ["bootstrap"]
 
@@ -78,7 +79,7 @@ class _Equations:
         for place, factor in zip(found.place, found.factor, strict=True):
             cell = flows.instrument * len(found.by_rate) + place[self._time_of]
             by_number += np.bincount(cell, worth * factor[self._time_of], by_number.size)
-        slope = -by_number.reshape(count, -1) @ found.by_rate
+        slope = -small_product(by_number.reshape(count, -1), found.by_rate)
         return (flows.sums(worth) - flows.target) / self._scale, slope / self._scale[:, None]
 
 

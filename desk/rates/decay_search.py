@@ -12,6 +12,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from desk.rates.quoted_flows import QuotedFlows
+from desk.rates.small_products import small_product
 
 __all__ = ["Found", "nearest"]
 
@@ -31,7 +32,6 @@ _BETTER = 0.999  # of the sum of squares: with less gained, another round is not
 _HEATS = ((8, 6), (25, 3), (80, 3))
 _FINALISTS, _FINE_STEPS, _MORE_STEPS = 2, 15, 200
 _RIDGE = 1e-11
-_ONE_PART, _MOST_IN_PARTS = 200_000, 10_000_000  # multiplications
 _AT_REST = 1e-9  # of the sum of squares: less than that is not to be gained
 _NOTHING = 1e-26  # a sum of squares of rates that is rounding
 _LEAST_DAMPING, _MOST_DAMPING = 1e-11, 1e6
@@ -258,9 +258,9 @@ class _Thinned(_Errors):
         loadings = np.concatenate((np.ones((1, time.size)), tilt, tilt - left))
         # dimensions: level, slopes and curvatures of all decays, goal; bond
         columns = np.empty((len(loadings) + 1, count))
-        columns[:-1] = loadings[:, :count] * own_weight + _product(loadings[:, count:], weight.T)
+        columns[:-1] = loadings[:, :count] * own_weight + small_product(loadings[:, count:], weight.T)
         columns[-1] = goal
-        products = _product(columns, columns.T)
+        products = small_product(columns, columns.T)
 
         size = _DECAYS.size
         each = np.arange(size)
@@ -289,22 +289,6 @@ class _Thinned(_Errors):
         start[0, 0] = 0.5 * (self.low[0] + self.high[0])
         start[0, self.rates :] = np.log([1.0, 5.0][: self.humps])
         return start
-
-
-def _product(first: FloatArray, second: FloatArray) -> FloatArray:
-    """The product of two matrices, in parts so small that none is shared between threads.
-
-    Where other work keeps the cores busy, waiting for a second thread takes longer than the product.
-    """
-    work = first.size * second.shape[1]
-    if not 0 < work <= _MOST_IN_PARTS:
-        return np.asarray(first @ second)
-    found = np.empty((len(first), second.shape[1]))
-    rows = max(1, len(first) * _ONE_PART // work)
-    for start in range(0, len(first), rows):
-        part = slice(start, start + rows)
-        np.matmul(first[part], second, out=found[part])
-    return found
 
 
 def _lowest_of_three(values: FloatArray, axis: int) -> FloatArray:

@@ -14,6 +14,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from desk.rates.curve import Interpolation
+from desk.rates.small_products import small_product
 
 __all__ = ["Exponents", "exponents"]
 
@@ -147,7 +148,7 @@ def _monotone_convex(terms: FloatArray, rates: FloatArray, times: FloatArray) ->
         before[here] + length * (discrete[here] * part + excess),
         np.stack((here, here + count, here + 2 * count, here + 2 * count + 1)),
         np.stack((np.ones(times.size), length * by_mean, length * by_left, length * by_right)),
-        np.concatenate((before_by_rate, discrete_by_rate, node_by_discrete @ discrete_by_rate)),
+        np.concatenate((before_by_rate, discrete_by_rate, small_product(node_by_discrete, discrete_by_rate))),
     )
 
 

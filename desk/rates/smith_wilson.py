@@ -259,12 +259,12 @@ class _Fit:
     def smallest_alpha(self, convergence_point: float, tolerance: float) -> float:
         """The smallest alpha of six decimals that brings the gap within the tolerance."""
 
-        def keeps(millionths: int) -> bool:
-            return self.gap(millionths * _MILLIONTH, convergence_point) <= tolerance
+        def excess(millionths: int) -> float:
+            return self.gap(millionths * _MILLIONTH, convergence_point) - tolerance
 
-        high = _LOWEST_ALPHA
-        while not keeps(high):
-            high += _COARSE_STEP
+        high, at_low = _LOWEST_ALPHA, 0.0
+        while not (at_high := excess(high)) <= 0.0:
+            high, at_low = high + _COARSE_STEP, at_high
             if high > _HIGHEST_ALPHA:
                 raise CurveError(
                     f"no alpha brings the forward rate at {convergence_point:g} years within "
@@ -272,9 +272,22 @@ class _Fit:
                     "Set a later convergence point or a wider tolerance, or give alpha.",
                 )
         low = high - (_COARSE_STEP if high > _LOWEST_ALPHA else 1)
+        # By the line between the two ends (regula falsi), a little past where it meets 0, so that both ends
+        # close in; by halves where that does not get on.
+        halve = False
         while high - low > 1:
             middle = (low + high) // 2
-            low, high = (low, middle) if keeps(middle) else (middle, high)
+            if not halve and math.isfinite(at_low):
+                guess = low + (high - low) * at_low / (at_low - at_high)
+                aside = max(1.0, 0.002 * (high - low))
+                guess += aside if guess < middle else -aside
+                middle = min(max(round(guess), low + 1), high - 1)
+            width, found = high - low, excess(middle)
+            if found <= 0.0:
+                high, at_high = middle, found
+            else:
+                low, at_low = middle, found
+            halve = not halve and 2 * (high - low) > width
         return round(high * _MILLIONTH, 6)
 
 

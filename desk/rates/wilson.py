@@ -11,9 +11,13 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import NDArray
 
+from desk.rates.small_products import small_product
+
 __all__ = ["WilsonProducts", "WilsonSums"]
 
 FloatArray = NDArray[np.float64]
+
+_STRETCH = 200.0  # in the exponent: far from the largest float
 
 
 class WilsonProducts:
@@ -29,30 +33,63 @@ class WilsonProducts:
     Notes
     -----
     ``H(t, u) = α min(t, u) - ½ e^{-α|t - u|} + ½ e^{-α(t + u)}``. The products of the first part are those of
-    running sums and do not depend on α but for the factor; those of the second are carried on from one time
-    to the next; the third is a product of two numbers. So the work grows with p and not with its square.
+    running sums and do not depend on α but for the factor; those of the second are sums of what has gone
+    before, faded; the third is a product of two numbers. So the work grows with p and not with its square.
     """
 
     def __init__(self, time: FloatArray, amounts: FloatArray) -> None:
-        self._time, self._amounts = time, amounts
-        self._width = np.diff(time, prepend=0.0)
-        still_ahead = np.cumsum(amounts[:, ::-1], axis=1)[:, ::-1]
-        self._of_lesser = (still_ahead * self._width) @ still_ahead.T
-        self._of_same = amounts @ amounts.T
+        self._time = time
+        # dimensions: time, instrument; so that sums over what has gone before run along memory
+        self._amounts = np.ascontiguousarray(amounts.T)
+        # Most bonds pay on few of the days: products are summed over those.
+        own, self._place = np.nonzero(amounts)
+        self._paid = amounts[own, self._place][:, None]
+        self._first = np.flatnonzero(np.diff(own, prepend=-1))
+        self._is_sparse = self._first.size == len(amounts) and 4 * own.size <= amounts.size
+        # Room that every alpha uses again: to ask the system for it takes as long as the sums.
+        self._taken = np.empty((own.size if self._is_sparse else 0, len(amounts)))
+        self._room, self._grown = np.empty_like(self._amounts), np.empty_like(self._amounts)
+        still_ahead = np.cumsum(self._amounts[::-1], axis=0)[::-1]
+        self._of_lesser = self._product(np.cumsum(still_ahead * np.diff(time, prepend=0.0)[:, None], axis=0))
+        self._of_same = self._product(self._amounts)
+
+    def _product(self, by_time: FloatArray) -> FloatArray:
+        """Amounts of every instrument times columns by time, shape (p, m) into (m, m)."""
+        if self._is_sparse:
+            np.take(by_time, self._place, axis=0, out=self._taken)
+            np.multiply(self._taken, self._paid, out=self._taken)
+            return np.asarray(np.add.reduceat(self._taken, self._first, axis=0))
+        return small_product(self._amounts.T, by_time)
 
     def at(self, alpha: float) -> FloatArray:
         """The products, shape (m, m)."""
         with np.errstate(under="ignore"):
-            decay = np.exp(-alpha * self._width)
-            from_today = self._amounts @ np.exp(-alpha * self._time)
-            faded = np.empty_like(self._amounts.T)
-            running = np.zeros(len(self._amounts))
-            for k, amount in enumerate(self._amounts.T):
-                running = running * decay[k] + amount
-                faded[k] = running
-            earlier = self._amounts @ faded
+            from_today = np.exp(-alpha * self._time) @ self._amounts
+            earlier = self._product(self._faded(alpha))
         of_distance = earlier + earlier.T - self._of_same
         return np.asarray(alpha * self._of_lesser + 0.5 * (np.outer(from_today, from_today) - of_distance))
+
+    def _faded(self, alpha: float) -> FloatArray:
+        """``Σ_{u_j ≤ u_i} q_j e^{-α(u_i - u_j)}``, dimensions: time, instrument.
+
+        Sums of grown amounts, faded again, over stretches in which nothing can overflow.
+        """
+        grown = alpha * self._time
+        faded = self._room
+        carried = np.zeros(self._amounts.shape[1])
+        start = 0
+        while start < grown.size:
+            before = grown[start - 1] if start else grown[start]
+            end = max(start + 1, int(np.searchsorted(grown, before + _STRETCH)))
+            exponent = (grown[start:end] - before)[:, None]
+            part = self._grown[start:end]
+            np.multiply(self._amounts[start:end], np.exp(np.minimum(exponent, _STRETCH)), out=part)
+            part[0] += carried * np.exp(-np.maximum(exponent[0] - _STRETCH, 0.0))
+            np.cumsum(part, axis=0, out=faded[start:end])
+            faded[start:end] *= np.exp(-np.minimum(exponent, _STRETCH))
+            carried = faded[end - 1].copy()
+            start = end
+        return faded
 
 
 @dataclass(frozen=True, eq=False)
