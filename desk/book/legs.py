@@ -180,7 +180,6 @@ def _with_floored(legs: Legs, split: IntArray) -> Legs:
         of_leg,
         pays_coupons=np.zeros(split.size, dtype=np.bool_),
         rate=np.zeros(split.size),
-        ex_days=np.zeros_like(of_leg.ex_days),
     )
     repays = legs.repays.copy()
     repays[split] = False

@@ -5,8 +5,9 @@ from __future__ import annotations
 import numpy as np
 from numpy.typing import NDArray
 
-from desk.book import Book, PricedFlows, Side
+from desk.book import Book, Inflation, PricedFlows, Side
 from desk.book.arrays import FloatArray
+from desk.valuation.indexing import IndexClasses, row_factors
 from desk.valuation.measures import value_rows
 from desk.valuation.priced import priced_flows
 from desk.valuation.records import FlowDetail
@@ -42,7 +43,7 @@ def line_flows(book: Book, side: Side, line_number: int) -> FlowDetail:
     if not 0 <= line_number < len(flows.line_names):
         raise IndexError(f"`line_number` must be from 0 to {len(flows.line_names) - 1}, not {line_number}")
     kept = (flows.line == line_number) & (flows.is_flow | (flows.paid != 0.0))
-    real, factor = _indexed(flows, kept)
+    real, factor = _indexed(flows, kept, book.basis.inflation)
     rows = value_rows(flows.time[kept], flows.paid[kept], curve=book.basis.curve, spread=flows.spread[kept])
     return FlowDetail(
         date=priced.date[kept],
@@ -55,10 +56,12 @@ def line_flows(book: Book, side: Side, line_number: int) -> FlowDetail:
     )
 
 
-def _indexed(flows: PricedFlows, kept: NDArray[np.bool_]) -> tuple[FloatArray | None, FloatArray | None]:
-    """Real amounts and growth of the rows of a line that follows an index; None where it does not."""
+def _indexed(
+    flows: PricedFlows, kept: NDArray[np.bool_], inflation: Inflation | None
+) -> tuple[FloatArray | None, FloatArray | None]:
+    """Real amounts and growth of the rows of a line that grows; None where it does not."""
     if flows.real_amount is None or flows.index_class is None or not (flows.index_class[kept] >= 0).any():
         return None, None
-    real, paid = flows.real_amount[kept], flows.paid[kept]
-    grows = (flows.index_class[kept] >= 0) & (real != 0.0)
-    return real, np.divide(paid, real, out=np.ones(real.size), where=grows)
+    classes = IndexClasses.of(flows.indexations)
+    factor = row_factors(classes, flows.index_class[kept], flows.time[kept], inflation=inflation)
+    return flows.real_amount[kept], factor

@@ -357,14 +357,22 @@ def test_flat_curves_by_hand() -> None:
     np.testing.assert_allclose(detail.amount, detail.real_amount * detail.index_factor, rtol=1e-14)
 
 
-def test_only_a_linked_line_opens_with_real_amounts() -> None:
+def test_only_a_line_that_grows_opens_with_real_amounts() -> None:
     book = _lines(LineTerms(Side.LIABILITIES, "Mixed", Indexation(LINKED)))
     assert line_flows(book, Side.LIABILITIES, 0).real_amount is None
-    detail = line_flows(book, Side.LIABILITIES, 2)
-    assert detail.real_amount is not None
-    assert detail.index_factor is not None
-    np.testing.assert_array_equal(detail.real_amount, [40.0, 25.0])
-    np.testing.assert_allclose(detail.amount, detail.real_amount * detail.index_factor)
+    nothing = replace(book.liabilities, amount=np.where(book.liabilities.time == 2.2, 0.0, 40.0))
+    for table, real in ((book.liabilities, [40.0, 25.0]), (nothing, [0.0, 40.0])):
+        detail = line_flows(replace(book, liabilities=table), Side.LIABILITIES, 2)
+        assert detail.real_amount is not None
+        assert detail.index_factor is not None
+        expected = [growth(Indexation(LINKED), time, index(INFLATION), 0.0) for time in (2.2, 17.0)]
+        np.testing.assert_array_equal(detail.real_amount, real)
+        np.testing.assert_allclose(detail.index_factor, expected, rtol=1e-12)
+        np.testing.assert_allclose(detail.amount, detail.real_amount * detail.index_factor)
+    rising = _lines(LineTerms(Side.LIABILITIES, "Mixed", Indexation(RISING, rise=0.5)), inflation=None)
+    factor = line_flows(rising, Side.LIABILITIES, 2).index_factor
+    assert factor is not None
+    np.testing.assert_allclose(factor, [1.5**2.2, 1.5**17.0])
 
 
 def test_assets_of_many_kinds_keep_their_places() -> None:
