@@ -18,6 +18,8 @@ __all__ = ["BondFigures", "bond_figures", "fit_in_words"]
 
 _ROUNDS = 4
 _REST = 1e-13
+_POOR = 100.0
+"""A root mean square misfit above it is none that the same issuer's bonds have [basis points]."""
 
 
 @dataclass(frozen=True, eq=False)
@@ -112,6 +114,8 @@ def fit_in_words(bonds: CurveBonds, fit: CurveFit, *, is_exact: bool) -> str:
         f"Root mean square misfit {numbers.number(fit.rmse_bp, 1)} bp over {count} {plural}; the largest "
         f"{largest} bp, {name}."
     )
+    if fit.rmse_bp > _POOR:
+        text += " That is no fit: check the bonds furthest off."
     parameters = {NelsonSiegel: 4, Svensson: 6}.get(type(fit.curve), 0)
     if used < 2 * parameters - 2:
         text += f" {count} {plural} are few for {parameters} parameters: the curve may swing beside them."

@@ -9,6 +9,7 @@ from PySide6.QtWidgets import QVBoxLayout, QWidget
 
 from desk.book.arrays import FloatArray
 from desk.rates.compounding import Compounding, from_continuous
+from desk.rates.fitting import CurveFit
 from desk.window.curve.shown import Shown
 from desk.window.curve.words import stated_as
 from desk.window.parts import numbers
@@ -18,8 +19,13 @@ from desk.window.parts.theme import ThemeSwitch, keep_look
 
 __all__ = ["CurvePicture", "MisfitPicture", "reach"]
 
+_TITLE = "Zero rates, forward rates and discount factors"
 _MOST_BEYOND = 3.0
 """Shown at most this many times as far as the last term."""
+_LEAST_HEIGHT = 0.005
+"""Shown above and below a flat curve [1/year]."""
+_DIGITS = 10
+"""To which rates are drawn: beyond them there is only noise."""
 _USUAL_REACH = 40.0
 """Of a curve that nothing is extrapolated of, where the book has no later flow [years]."""
 
@@ -50,10 +56,25 @@ class _RoomyPicture(Picture):
         former.hide()
         former.deleteLater()
         self.set_lines(1)
+        self._is_flat = False
 
     def set_lines(self, count: int) -> None:
         """Give the sentence and the reading so many lines."""
         self._strip_room.setFixedHeight(count * self._strip.fontMetrics().height())
+
+    def _give_height(self, values: FloatArray, least: float) -> None:
+        """Show at least so much about values that hardly differ: what is flat is to look flat."""
+        low, high = float(values.min()), float(values.max())
+        if high - low < 0.1 * least:
+            self._is_flat = True
+            self.set_range(y=(low - least, high + least))
+        elif self._is_flat:
+            self._is_flat = False
+            self.set_range()
+
+
+def _without_noise(values: FloatArray) -> FloatArray:
+    return np.asarray(np.round(values, _DIGITS))
 
 
 class CurvePicture(_RoomyPicture):
@@ -64,7 +85,7 @@ class CurvePicture(_RoomyPicture):
     """
 
     def __init__(self, theme_switch: ThemeSwitch) -> None:
-        super().__init__("Zero rates, forward rates and discount factors", theme_switch)
+        super().__init__(_TITLE, theme_switch)
         self.set_right_axis("Discount factor", "", digits=4)
         self._shown: Shown | None = None
         self._other: Shown | None = None
@@ -78,6 +99,7 @@ class CurvePicture(_RoomyPicture):
         *,
         until: float,
         compounding: Compounding,
+        title: str = _TITLE,
         other: Shown | None = None,
         other_name: str = "",
     ) -> None:
@@ -89,6 +111,7 @@ class CurvePicture(_RoomyPicture):
         until : float
         compounding : Compounding
             How the rates are shown.
+        title : str
         other : Shown, optional
         other_name : str
             Stands before the names of its lines.
@@ -102,11 +125,7 @@ class CurvePicture(_RoomyPicture):
         self.set_lines(1 if other is None and shown.fit is None else 2)
         right = "Price index" if shown.is_index else "Discount factor"
         self.set_right_axis(right, "today 1" if shown.is_index else "", digits=4)
-        self.set_title(
-            "Expected inflation and the price index"
-            if shown.is_index
-            else "Zero rates, forward rates and discount factors"
-        )
+        self.set_title(title)
         self.set_axes(
             "Term", "years", "Rate", f"% a year, {stated_as(compounding)}", y_kind="rate", y_digits=3
         )
@@ -125,8 +144,12 @@ class CurvePicture(_RoomyPicture):
                 strong=False,
             )
             self.add_line(f"{other_name}: zero", at, other.zero(at, compounding), "what_if", dashed=True)
-        self.add_line("Forward", time, forward, "accent")
-        self.add_line("Zero", time, shown.zero(time, compounding), "rates")
+        zero = _without_noise(shown.zero(time, compounding))
+        self.add_line("Forward", time, _without_noise(forward), "accent")
+        self.add_line("Zero", time, zero, "rates")
+        self._give_height(
+            zero if other is None else np.append(zero, other.zero(time, compounding)), _LEAST_HEIGHT
+        )
         quotes = shown.quotes
         if quotes.term.size:
             order = np.argsort(quotes.term, kind="stable")
@@ -170,35 +193,44 @@ class MisfitPicture(_RoomyPicture):
     ) -> None:
         """Draw the zero rates of one curve less those of another, as `words` say, up to `until` [years]."""
         self._only("Zero rates")
+        self.set_range()
         self.set_title("Difference in zero rates")
         self.set_axes("Term", "years", "Difference", "bp", y_digits=1, with_zero=True)
         time = np.union1d(shown.times(until), other.times(until))
         apart = 1e4 * (shown.zero(time, compounding) - other.zero(time, compounding))
+        apart = _without_noise(apart)
         self.add_line("Zero rates", time, apart, "what_if")
+        self._give_height(np.append(apart, 0.0), 1.0)
         is_beyond = np.isfinite(shown.last_quoted) and shown.last_quoted < until
         self.shade_from(shown.last_quoted if is_beyond else None)
         most = int(np.abs(apart).argmax())
         where = numbers.years(float(time[most]), 1)
         largest = numbers.signed(float(apart[most]), 1)
-        self.set_range(x=(0.0, until))
         self.set_description(f"{words}: at most {largest} bp, at {where} years.")
 
-    def show_misfits(self, term: FloatArray, misfit_bp: FloatArray, names: Sequence[str], words: str) -> None:
-        """Draw the misfit of bonds at their maturities [years, basis points]."""
-        self._only("Misfit")
+    def show_misfits(self, term: FloatArray, fit: CurveFit, names: Sequence[str], words: str) -> None:
+        """Draw the misfit of bonds at their maturities [years]; those left out of the fit stand apart."""
+        self._only("Misfit", "Left out")
         self.shade_from(None)
         for at, name in zip(term.tolist(), names, strict=True):
             self._bond_names.setdefault(at, []).append(name)
         self.set_title("Misfit of each bond")
         self.set_axes("Maturity", "years", "Fitted less quoted yield", "bp", y_digits=2, with_zero=True)
         order = np.argsort(term, kind="stable")
-        self.add_dots("Misfit", term[order], misfit_bp[order], "rates")
         self.set_range(x=(0.0, 1.05 * float(term.max())))
+        used = fit.is_used[order]
+        self.add_dots("Misfit", term[order][used], fit.residual_bp[order][used], "rates")
+        if used.all():
+            self.remove("Left out")
+        else:
+            self.add_dots(
+                "Left out", term[order][~used], fit.residual_bp[order][~used], "ink_soft", symbol="x"
+            )
         self.set_description(words)
 
-    def _only(self, kept: str) -> None:
+    def _only(self, *kept: str) -> None:
         self._bond_names = {}
-        for name in set(self.names) - {kept}:
+        for name in set(self.names) - set(kept):
             self.remove(name)
 
     def readings_at(self, x: float) -> list[tuple[str, str]]:
@@ -216,6 +248,9 @@ def _sentence(shown: Shown, compounding: Compounding, until: float) -> str:
     last = shown.last_quoted
     if not np.isfinite(last):
         first = min(1.0, until)
+        ends = shown.zero([first, until], compounding)
+        if abs(ends[0] - ends[1]) < 1e-9:
+            return f"One rate for every term, {numbers.rate(float(ends[0]), 2, with_unit=True)}."
         return f"{what} from {_at(shown, first, compounding)} to {_at(shown, until, compounding)}."
     start = float(shown.quotes.term.min()) if shown.quotes.term.size else min(1.0, last)
     if start < last:

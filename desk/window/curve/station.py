@@ -269,7 +269,14 @@ class CurveStation(Station):
         compounding = self._compounding(shown)
         drawn = other.shown if other is not None else None
         name = other.short if other is not None else ""
-        self.picture.show_curve(shown, until=until, compounding=compounding, other=drawn, other_name=name)
+        self.picture.show_curve(
+            shown,
+            until=until,
+            compounding=compounding,
+            title=self.target.picture_title,
+            other=drawn,
+            other_name=name,
+        )
         self.rates.show_curve(shown, until=until, compounding=compounding, other=drawn, other_name=name)
         bonds = _bonds_of(basis, self.target.part)
         if other is not None:
@@ -282,7 +289,7 @@ class CurveStation(Station):
             )
         elif bonds is not None and _has_misfits(shown, len(bonds)) and shown.fit is not None:
             words = fit_in_words(bonds, shown.fit, is_exact=_is_exact(basis, self.target.part))
-            self.misfit.show_misfits(shown.quotes.term, shown.fit.residual_bp, bonds.names, words)
+            self.misfit.show_misfits(shown.quotes.term, shown.fit, bonds.names, words)
         else:
             self.misfit.hide()
             return

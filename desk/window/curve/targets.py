@@ -44,6 +44,18 @@ class Target:
         return (_SECOND_TITLES if self.is_second else _TITLES)[self.part]
 
     @property
+    def picture_title(self) -> str:
+        """The heading of its picture."""
+        if self.part is Part.INFLATION:
+            lines = "expected inflation and price index"
+        else:
+            lines = "zero rates, forward rates and discount factors"
+        if self == Target() or (self.part is Part.INFLATION and not self.is_second):
+            return lines[:1].upper() + lines[1:]
+        head = self.title.removesuffix(": inflation")
+        return f"{head}: {lines}"
+
+    @property
     def short(self) -> str:
         """Its name before that of a line in a picture."""
         name = _SHORT[self.part]

@@ -340,3 +340,25 @@ def test_bonds_are_read_in_the_readers_locale(bonded: CurveStation, bench: Bench
     assert bonds.maturity[0] == np.datetime64("2033-03-31")
     assert bonds.price.tolist() == [90.25 + place for place in range(7)]
     assert (bonds.coupon == 0.025).all()
+
+
+def test_bonds_beyond_the_last_liquid_point_stand_apart(bonded: CurveStation, bench: Bench) -> None:
+    bonded.fields.last_liquid_point.committed.emit(16.5)
+    fit = bench.book.basis.curve_fit
+    assert fit is not None
+    assert fit.is_used.tolist() == [True] * 8 + [False] * 2
+    assert set(bonded.misfit.names) == {"Misfit", "Left out"}
+    last = float(bench.book.basis.quoted_bonds.term[-1])
+    assert dict(bonded.misfit.readings_at(last)).keys() == {"Gilt 2061", "Left out"}
+    assert "over 8 bonds" in bonded.bonds.words
+    assert "extrapolated" in dict(bonded.picture.readings_at(18.0))
+
+
+def test_a_fit_that_is_none_says_so(bonded: CurveStation) -> None:
+    rows = [
+        f"B{place}\t{2033 + place}-03-31\t2\t1\t{price}"
+        for place, price in enumerate((3, 170, 20, 99, 300, 1, 90))
+    ]
+    put_on_clipboard("\n".join(rows))
+    bonded.bonds.replace_all()
+    assert "That is no fit: check the bonds furthest off." in bonded.bonds.words

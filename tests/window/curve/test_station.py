@@ -250,21 +250,21 @@ def test_compounding_says_what_the_figures_mean(station: CurveStation, bench: Be
     station.refresh_now()
     basis = bench.book.basis
     assert basis.rates.tolist() == a_fund().basis.rates.tolist()
-    assert basis.curve.zero_rates == pytest.approx(to_continuous(basis.rates, Compounding.QUARTERLY))
+    assert basis.curve.zero(basis.terms) == pytest.approx(to_continuous(basis.rates, Compounding.QUARTERLY))
     assert "compounded quarterly" in station.fields.compounding.hint
 
 
 def test_quotes_of_another_kind_give_another_curve(station: CurveStation, bench: Bench) -> None:
-    before = bench.book.basis.curve.zero_rates
+    before = bench.book.basis.curve.zero(bench.book.basis.terms)
     assert station.fields.payments.isHidden()
     station.fields.curve_kind.committed.emit(CurveKind.SWAP)
     station.fields.payments.committed.emit(2)
     station.refresh_now()
     basis = bench.book.basis
     assert (basis.curve_kind, basis.payments_per_year) == (CurveKind.SWAP, 2)
-    assert not np.allclose(basis.curve.zero_rates, before)
+    assert not np.allclose(basis.curve.zero(basis.terms), before)
     assert not station.fields.payments.isHidden()
-    assert shown(station, 3, "zero") == f"{100 * basis.curve.zero_rates[3]:.4f}"
+    assert shown(station, 3, "zero") == f"{100 * float(basis.curve.zero(basis.terms[3])):.4f}"
 
 
 def test_a_curve_goes_on_to_an_ultimate_forward_rate(station: CurveStation, bench: Bench) -> None:
