@@ -31,6 +31,7 @@ _BETTER = 0.999  # of the sum of squares: with less gained, another round is not
 # Steps, and how many of the starts go on after them.
 _HEATS = ((8, 6), (25, 3), (80, 3))
 _FINALISTS, _FINE_STEPS, _MORE_STEPS = 2, 15, 200
+_MORE_WORK = 2_000_000  # payments valued
 _RIDGE = 1e-11
 _AT_REST = 1e-9  # of the sum of squares: less than that is not to be gained
 _NOTHING = 1e-26  # a sum of squares of rates that is rounding
@@ -70,6 +71,12 @@ def nearest(flows: QuotedFlows, yields: FloatArray, humps: int) -> Found:
     humps : int
         1 for Nelson-Siegel, 2 for Svensson.
     """
+    # With absurd prices numbers may overflow; what comes of it is never better than anything else.
+    with np.errstate(over="ignore", under="ignore", invalid="ignore", divide="ignore"):
+        return _searched(flows, yields, humps)
+
+
+def _searched(flows: QuotedFlows, yields: FloatArray, humps: int) -> Found:
     worth = flows.amount * np.exp(-yields[flows.instrument] * flows.time)
     scale = flows.sums(worth * flows.time)  # price times duration
     levels = float(yields.min()) - _LEVEL_BEYOND, float(yields.max()) + _LEVEL_BEYOND
@@ -97,8 +104,9 @@ def nearest(flows: QuotedFlows, yields: FloatArray, humps: int) -> Found:
     moved = _descended(fine, _distinct(tried, costs)[:_FINALISTS], _FINE_STEPS)
     lowest = int(moved.cost.argmin())
     if not moved.at_rest[lowest]:
-        # Along the floor of a narrow valley.
-        moved, lowest = _descended(fine, moved.numbers[lowest : lowest + 1], _MORE_STEPS), 0
+        # Along the floor of a narrow valley, as far as there is time for.
+        steps = min(max(_MORE_WORK // flows.instrument.size, _FINE_STEPS), _MORE_STEPS)
+        moved, lowest = _descended(fine, moved.numbers[lowest : lowest + 1], steps), 0
     numbers = moved.numbers[lowest].copy()
     numbers[2 + humps :] = np.exp(numbers[2 + humps :])
     return Found(numbers, float(moved.cost[lowest]), bool(moved.at_rest[lowest]), moved.evaluations)
@@ -114,6 +122,7 @@ def _distinct(tried: FloatArray, costs: FloatArray) -> FloatArray:
     """The lowest few of the points, leaving out those at the same sum of squares."""
     order = np.argsort(costs, kind="stable")
     is_new = np.diff(costs[order], prepend=-np.inf) > 1e-6 * costs[order]
+    is_new[0] = True
     return tried[order[is_new]]
 
 
@@ -291,6 +300,12 @@ class _Thinned(_Errors):
         return start
 
 
+def _sum_of_squares(miss: FloatArray) -> FloatArray:
+    """By start; infinite where an error is not a number."""
+    total = np.sum(miss**2, axis=1)
+    return np.where(np.isnan(total), np.inf, total)
+
+
 def _lowest_of_three(values: FloatArray, axis: int) -> FloatArray:
     """Each value or the lower of its two neighbours along an axis."""
     along = np.moveaxis(values, axis, 0)
@@ -377,7 +392,7 @@ def _descended(errors: _Errors, starts: FloatArray, most_steps: int) -> _Moved:
     low, high = errors.low, errors.high
     numbers = np.clip(starts, low, high)
     miss, slope = errors.at(numbers)
-    cost = np.sum(miss**2, axis=1)
+    cost = _sum_of_squares(miss)
     damping = np.full(len(numbers), 1e-4)
     at_rest = cost <= _NOTHING
     diagonal = range(count)
@@ -403,7 +418,7 @@ def _descended(errors: _Errors, starts: FloatArray, most_steps: int) -> _Moved:
         ahead = np.clip(here + step / size, low, high)
         ahead_miss, ahead_slope = errors.at(ahead)
         evaluations += 1
-        ahead_cost = np.sum(ahead_miss**2, axis=1)
+        ahead_cost = _sum_of_squares(ahead_miss)
         before = cost[live]
         better = ahead_cost < before
         rows = live[better]

@@ -18,6 +18,8 @@ __all__ = ["CurveFit", "fit_nelson_siegel", "fit_svensson", "measured_fit"]
 
 FloatArray = NDArray[np.float64]
 
+_LARGEST_YIELD = 20.0  # 2000 % a year: beyond it numbers overflow before anything fits
+
 
 @dataclass(frozen=True, eq=False)
 class CurveFit:
@@ -116,7 +118,8 @@ def fit_svensson(flows: QuotedFlows) -> CurveFit:
     Raises
     ------
     CurveError
-        If there are fewer bonds than parameters (6; 4 for Nelson-Siegel) or a bond has no yield.
+        If there are fewer bonds than parameters (6; 4 for Nelson-Siegel), or a bond has no yield or one of
+        more than 2000 % a year.
 
     Notes
     -----
@@ -161,6 +164,13 @@ def _fitted(
             "the quote has no yield",
             "Correct its price or leave it out.",
             rows=np.flatnonzero(np.isnan(yields)).tolist(),
+        )
+    far = np.abs(yields) > _LARGEST_YIELD
+    if far.any():
+        raise CurveError(
+            f"the quote has a yield of {100.0 * yields[far][0]:,.0f} % a year",
+            "Correct its price or leave it out; a bond that is about to mature tells little of the curve.",
+            rows=np.flatnonzero(far).tolist(),
         )
     best = nearest(flows, yields, humps)
     curve = make(best.numbers)

@@ -169,6 +169,16 @@ class TestFaults:
             fit_svensson(replace(flows, target=target))
         assert caught.value.rows == (2,)
 
+    def test_a_yield_beyond_any_sense(self) -> None:
+        flows = _sheet(TREASURY, 12, np.random.default_rng(1))
+        target = flows.target.copy()
+        near = int(flows.term.argmin())
+        target[near] = 1e-6
+        for fit in (fit_nelson_siegel, fit_svensson):
+            with pytest.raises(CurveError, match="% a year") as caught:
+                fit(replace(flows, target=target))
+            assert caught.value.rows == (near,)
+
     def test_absurd_prices_end_in_a_curve_with_its_errors(self) -> None:
         random = np.random.default_rng(10)
         for _ in range(10):
