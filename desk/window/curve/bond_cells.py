@@ -13,7 +13,16 @@ from desk.book import CurveBonds
 from desk.window.curve.dates import read_dates
 from desk.window.parts import numbers
 
-__all__ = ["BOND_KEYS", "PastedBonds", "added", "merged_bonds", "read_bonds", "removed", "with_cell"]
+__all__ = [
+    "BOND_KEYS",
+    "PastedBonds",
+    "added",
+    "merged_bonds",
+    "no_bonds",
+    "read_bonds",
+    "removed",
+    "with_cell",
+]
 
 BOND_KEYS = ("name", "maturity", "coupon", "frequency", "price", "price_kind", "yield")
 """Columns of a bond that can be typed and pasted, in their order."""
@@ -76,6 +85,14 @@ class PastedBonds:
         more = len(self.faults) - _MOST_SHOWN
         tail = f" And {more} more." if more > 0 else ""
         return " ".join(self.faults[:_MOST_SHOWN]) + tail
+
+
+def no_bonds() -> CurveBonds:
+    """A sheet without a bond."""
+    none = np.zeros(0)
+    return CurveBonds(
+        (), np.zeros(0, "datetime64[D]"), none, np.zeros(0, np.int64), none, none, np.zeros(0, bool)
+    )
 
 
 def read_bonds(grid: Sequence[Sequence[str]], first: str = "name") -> PastedBonds:

@@ -11,11 +11,17 @@ from PySide6.QtCore import Qt
 from PySide6.QtGui import QGuiApplication
 
 from desk.book import CurveBonds
-from desk.window.curve.bond_cells import BOND_KEYS, merged_bonds, read_bonds, removed, with_cell
+from desk.window.curve.bond_cells import (
+    BOND_KEYS,
+    merged_bonds,
+    no_bonds,
+    read_bonds,
+    removed,
+    with_cell,
+)
 from desk.window.curve.bond_figures import BondFigures
 from desk.window.curve.headings import BOND_COLUMNS, HOW_BONDS
 from desk.window.curve.page import TablePage
-from desk.window.curve.starting import no_bonds
 from desk.window.parts import numbers
 from desk.window.parts.tables import parse_grid
 from desk.window.parts.theme import ThemeSwitch

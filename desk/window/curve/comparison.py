@@ -65,9 +65,7 @@ def choices_of(book: Book, target: Target, former: Former, pasted: Shown | None)
     """What a curve can be compared with now."""
     found = [Choice(None, "Nothing")]
     found += [
-        Choice(other, other.title)
-        for other in targets_of(book)
-        if other != target and _is_worth_it(book, target, other)
+        Choice(other, other.title) for other in targets_of(book) if other != target and _is_there(book, other)
     ]
     if former.of(target) is not None:
         found.append(Choice(FORMER, "Before the last change", "As this curve was before it changed last."))
@@ -78,11 +76,9 @@ def choices_of(book: Book, target: Target, former: Former, pasted: Shown | None)
     return tuple(found)
 
 
-def _is_worth_it(book: Book, target: Target, other: Target) -> bool:
+def _is_there(book: Book, other: Target) -> bool:
     basis = basis_of(book, other)
-    if basis is None or (other.part is Part.INFLATION and basis.inflation is None):
-        return False
-    return not (other.is_second and target == Target(other.part) and basis_of(book, target) is basis)
+    return basis is not None and (other.part is not Part.INFLATION or basis.inflation is not None)
 
 
 def compared(

@@ -15,9 +15,10 @@ from desk.rates.fitting import fit_nelson_siegel, fit_svensson
 from desk.rates.parametric import NelsonSiegel, Svensson
 from desk.rates.quotes import zero_flows
 from desk.rates.smith_wilson import Extrapolation
+from desk.window.curve.bond_cells import no_bonds
 from desk.window.curve.faults import QUOTED_KINDS
 
-__all__ = ["liability_start", "mean_time", "new_bond", "no_bonds", "source_of", "start"]
+__all__ = ["liability_start", "mean_time", "new_bond", "source_of", "start"]
 
 _STANDARD_TERMS = np.array([1.0, 2.0, 3.0, 4.0, 5.0, 7.0, 10.0, 15.0, 20.0, 25.0, 30.0])
 _FIT_TERMS = np.concatenate((np.arange(0.5, 10.0, 0.5), np.arange(10.0, 31.0, 2.5)))
@@ -49,14 +50,6 @@ _EMPTY: dict[str, Any] = {
 def source_of(basis: Basis) -> dict[str, Any]:
     """What the curve is made from, by field of `Basis`: to come back to it from another kind."""
     return {name: getattr(basis, name) for name in _SOURCE}
-
-
-def no_bonds() -> CurveBonds:
-    """A sheet without a bond."""
-    none = np.zeros(0)
-    return CurveBonds(
-        (), np.zeros(0, "datetime64[D]"), none, np.zeros(0, np.int64), none, none, np.zeros(0, bool)
-    )
 
 
 def mean_time(book: Book) -> float:

@@ -4,20 +4,17 @@ from __future__ import annotations
 
 from typing import Any
 
-import numpy as np
 from PySide6.QtCore import Qt
 from PySide6.QtGui import QGuiApplication, QResizeEvent
-from PySide6.QtWidgets import QStackedWidget, QWidget
+from PySide6.QtWidgets import QWidget
 
-from desk.book import Basis, BondFit, Book, CurveBonds, CurveKind, LiabilityMethod
+from desk.book import Basis, Book, CurveBonds, CurveKind, LiabilityMethod
 from desk.book.arrays import FloatArray
 from desk.intake.records import Reading
 from desk.rates.compounding import Compounding
 from desk.rates.curve import DiscountCurve
-from desk.rates.fitting import CurveFit
 from desk.window.curve.bond_cells import added
-from desk.window.curve.bond_figures import bond_figures, fit_in_words
-from desk.window.curve.bonds_page import BondsPage
+from desk.window.curve.bond_figures import fit_in_words
 from desk.window.curve.comparison import (
     PASTED,
     Compared,
@@ -27,23 +24,13 @@ from desk.window.curve.comparison import (
     read_pasted,
 )
 from desk.window.curve.editing import Editor
-from desk.window.curve.faults import QUOTED_KINDS, fault_of
+from desk.window.curve.faults import fault_of
 from desk.window.curve.fields import CurveFields
-from desk.window.curve.headings import (
-    HOW_INFLATION,
-    HOW_QUOTES,
-    HOW_SPREADS,
-    INFLATION_COLUMNS,
-    QUOTE_COLUMNS,
-    SPREAD_COLUMNS,
-)
-from desk.window.curve.pages import SomePages
+from desk.window.curve.pages import CurvePages
 from desk.window.curve.picture import CurvePicture, MisfitPicture, reach
-from desk.window.curve.quotes_page import QuotesPage
-from desk.window.curve.rates_page import RatesPage
 from desk.window.curve.shown import Shown, shown_of
-from desk.window.curve.starting import new_bond, no_bonds
-from desk.window.curve.targets import Part, Target, basis_of, targets_of
+from desk.window.curve.starting import new_bond
+from desk.window.curve.targets import Part, Target, basis_of, bonds_of, is_exact, targets_of
 from desk.window.curve.words import CURVE_KINDS, LIABILITY_METHODS, SHOWN_AS
 from desk.window.document import Document
 from desk.window.jobs import Jobs
@@ -85,15 +72,8 @@ class CurveStation(Station):
         self._refusal = ""
         self.picture = CurvePicture(theme_switch)
         self.misfit = MisfitPicture(theme_switch)
-        self.quotes = QuotesPage(theme_switch)
-        self.bonds = BondsPage(theme_switch)
-        self.rates = RatesPage(theme_switch)
-        self.pages = SomePages(theme_switch, name="Tables of the curve")
-        self.source = QStackedWidget()
-        self.source.addWidget(self.quotes)
-        self.source.addWidget(self.bonds)
-        self.pages.add("source", "Quotes", self.source)
-        self.pages.add("rates", "Rates by term", self.rates)
+        self.pages = CurvePages(theme_switch)
+        self.quotes, self.bonds, self.rates = self.pages.quotes, self.pages.bonds, self.pages.rates
         for teller in (self.picture, self.misfit, self.quotes, self.bonds, self.rates):
             teller.message.connect(self.message)
         for page in (self.quotes, self.bonds):
@@ -112,9 +92,7 @@ class CurveStation(Station):
 
     def home(self) -> QWidget:
         """The quotes or bonds, or what follows where there are none."""
-        if self.pages.current == "rates":
-            return self.rates.table
-        return self.bonds.table if self.source.currentWidget() is self.bonds else self.quotes.table
+        return self.pages.table
 
     def _make_form(self) -> None:
         form = self.form
@@ -236,7 +214,7 @@ class CurveStation(Station):
             self.former.note(target, shown)
         other = self._other(book)
         basis = self.editor.drafted
-        self._show_table(basis, shown)
+        self.pages.show_source(basis, target.part, shown, is_draft=self.editor.has_draft)
         if shown is None:
             self.picture.clear()
             self.misfit.hide()
@@ -278,7 +256,7 @@ class CurveStation(Station):
             other_name=name,
         )
         self.rates.show_curve(shown, until=until, compounding=compounding, other=drawn, other_name=name)
-        bonds = _bonds_of(basis, self.target.part)
+        bonds = bonds_of(basis, self.target.part)
         if other is not None:
             self.misfit.show_difference(
                 shown,
@@ -288,58 +266,22 @@ class CurveStation(Station):
                 compounding=compounding,
             )
         elif bonds is not None and _has_misfits(shown, len(bonds)) and shown.fit is not None:
-            words = fit_in_words(bonds, shown.fit, is_exact=_is_exact(basis, self.target.part))
+            words = fit_in_words(bonds, shown.fit, is_exact=is_exact(basis, self.target.part))
             self.misfit.show_misfits(shown.quotes.term, shown.fit, bonds.names, words)
         else:
             self.misfit.hide()
             return
         self.misfit.show()
 
-    def _show_table(self, basis: Basis, shown: Shown | None) -> None:
-        part = self.target.part
-        bonds = _bonds_of(basis, part)
-        curve = None if shown is None else shown.curve
-        source: QWidget | None = None
-        title = "Quotes"
-        if bonds is not None:
-            source, title = self.bonds, "Bonds"
-            fit: CurveFit | None = None if shown is None or self.editor.has_draft else shown.fit
-            words = "" if fit is None else fit_in_words(bonds, fit, is_exact=_is_exact(basis, part))
-            self.bonds.show_bonds(bonds, bond_figures(basis, bonds, fit), words)
-        elif part is Part.INFLATION:
-            source = self.quotes
-            self.quotes.set_kind(INFLATION_COLUMNS, "quote", "Expected inflation", HOW_INFLATION)
-            inflation, none = basis.inflation, np.zeros(0)
-            terms, rates = (none, none) if inflation is None else (inflation.terms, inflation.rates)
-            self.quotes.show_quotes(terms, rates, curve, is_index=True)
-        elif part is Part.LIABILITIES and basis.liability_method is LiabilityMethod.TERM_SPREADS:
-            source, title = self.quotes, "Spreads"
-            self.quotes.set_kind(SPREAD_COLUMNS, "spread", "Spreads of the liabilities", HOW_SPREADS)
-            self.quotes.show_quotes(basis.liability_terms, basis.liability_spreads, curve)
-        elif part is Part.CURVE and basis.curve_kind in QUOTED_KINDS:
-            source = self.quotes
-            self.quotes.set_kind(QUOTE_COLUMNS, "quote", "Quotes of the curve", HOW_QUOTES)
-            self.quotes.show_quotes(basis.terms, basis.rates, curve)
-        self._show_source(source, title)
-
-    def _show_source(self, source: QWidget | None, title: str) -> None:
-        """Offer the table of what the curve is made from; show it where it is another one than before."""
-        before = (self.pages.shown_keys, self.source.currentWidget())
-        self.pages.set_title("source", title)
-        self.pages.show_only(("rates",) if source is None else ("source", "rates"))
-        if source is not None:
-            self.source.setCurrentWidget(source)
-        if (self.pages.shown_keys, self.source.currentWidget()) != before:
-            self.pages.show_page("rates" if source is None else "source")
-
     def _tell(self, fault: str) -> None:
         """Say what is wrong, or what a draft waits for, where it is seen."""
         if self._refusal:
             self.show_stale("Close", self._close, text=self._refusal)
         elif self.editor.has_draft:
+            is_bare = not len(self.bonds.bonds)
             self.show_stale(
-                "Give it up",
-                self._discard,
+                "Paste bonds" if is_bare else "Give it up",
+                self.bonds.replace_all if is_bare else self._discard,
                 text=f"{self.editor.draft_fault} The former curve stays in use until then.",
             )
         elif fault:
@@ -394,8 +336,6 @@ class CurveStation(Station):
     def _on_kind(self, kind: CurveKind) -> None:
         name = next(choice.text for choice in CURVE_KINDS if choice.value is kind)
         self._finish(self.editor.choose_kind(kind, name[:1].casefold() + name[1:]))
-        if self.editor.has_draft:
-            self.bonds.table.setFocus()
 
     def _on_method(self, method: LiabilityMethod) -> None:
         name = next(choice.text for choice in LIABILITY_METHODS if choice.value is method)
@@ -455,23 +395,10 @@ class CurveStation(Station):
         self.pictures.setOrientation(Qt.Orientation.Vertical if upright else Qt.Orientation.Horizontal)
 
 
-def _bonds_of(basis: Basis, part: Part) -> CurveBonds | None:
-    """The bonds the curve is drawn through; None where it is made from something else."""
-    if part is Part.CURVE and basis.curve_kind is CurveKind.BONDS:
-        return basis.bonds if basis.bonds is not None else no_bonds()
-    if part is Part.LIABILITIES and basis.liability_method is LiabilityMethod.CORPORATE_BONDS:
-        return basis.liability_bonds if basis.liability_bonds is not None else no_bonds()
-    return None
-
-
 def _has_misfits(shown: Shown, count: int) -> bool:
     """Whether there is a misfit to be seen: an exact fit leaves only rounding."""
     fit = shown.fit
     return fit is not None and fit.residual_bp.size == count and fit.largest_bp >= _LEAST_SEEN
-
-
-def _is_exact(basis: Basis, part: Part) -> bool:
-    return (basis.bond_fit if part is Part.CURVE else basis.liability_fit) is BondFit.EXACT
 
 
 def _note(book: Book, target: Target) -> str:

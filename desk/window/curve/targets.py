@@ -5,9 +5,11 @@ from __future__ import annotations
 from dataclasses import dataclass, replace
 from enum import StrEnum
 
-from desk.book import Basis, Book
+from desk.book import Basis, BondFit, Book, CurveBonds, CurveKind, LiabilityMethod
+from desk.rates.smith_wilson import Extrapolation
+from desk.window.curve.bond_cells import no_bonds
 
-__all__ = ["Part", "Target", "basis_of", "targets_of", "with_basis"]
+__all__ = ["Part", "Target", "basis_of", "bonds_of", "is_exact", "targets_of", "with_basis"]
 
 
 class Part(StrEnum):
@@ -84,3 +86,19 @@ def with_basis(book: Book, target: Target, basis: Basis) -> Book:
     if second is not None and second.inflation == book.basis.inflation:
         second = replace(second, inflation=basis.inflation)
     return replace(book, basis=basis, second_basis=second)
+
+
+def bonds_of(basis: Basis, part: Part) -> CurveBonds | None:
+    """The bonds the curve is drawn through; None where it is made from something else."""
+    if part is Part.CURVE and basis.curve_kind is CurveKind.BONDS:
+        return basis.bonds if basis.bonds is not None else no_bonds()
+    if part is Part.LIABILITIES and basis.liability_method is LiabilityMethod.CORPORATE_BONDS:
+        return basis.liability_bonds if basis.liability_bonds is not None else no_bonds()
+    return None
+
+
+def is_exact(basis: Basis, part: Part) -> bool:
+    """Whether the curve reprices each of its bonds."""
+    if part is Part.LIABILITIES:
+        return basis.liability_fit is BondFit.EXACT
+    return basis.bond_fit is BondFit.EXACT or basis.extrapolation is Extrapolation.SMITH_WILSON

@@ -90,11 +90,38 @@ def test_bonds_can_be_gathered_one_by_one(station: CurveStation, bench: Bench) -
 
 def test_a_draft_can_be_given_up(station: CurveStation, bench: Bench) -> None:
     choose(station.fields.curve_kind, "Bonds")
+    put_on_clipboard(as_cells(some_bonds(TERMS[:3], YIELDS[:3])))
+    assert station.strip.button.text() == "Paste bonds"
+    station.strip.button.click()
+    assert station.bonds.table.table_model.rowCount() == 3
+    assert station.strip.button.text() == "Give it up"
     station.strip.button.click()
     assert not station.stale_text
     assert station.fields.curve_kind.value is CurveKind.ZERO
     assert tabs(station) == ["Quotes", "Rates by term"]
     assert not bench.document.can_undo
+
+
+def test_the_former_kind_chosen_again_gives_a_draft_up(station: CurveStation, bench: Bench) -> None:
+    choose(station.fields.curve_kind, "Bonds")
+    choose(station.fields.curve_kind, "Zero rates")
+    assert not station.stale_text
+    assert tabs(station) == ["Quotes", "Rates by term"]
+    assert not bench.document.can_undo
+
+
+def test_the_keyboard_goes_past_bonds_to_other_kinds(
+    station: CurveStation, bench: Bench, qtbot: QtBot
+) -> None:
+    station.activateWindow()
+    combo = station.fields.curve_kind.combo
+    combo.setFocus()
+    qtbot.waitUntil(combo.hasFocus)
+    for _ in range(4):
+        QTest.keyClick(combo, Qt.Key.Key_Down)
+    assert combo.hasFocus()
+    assert bench.book.basis.curve_kind is CurveKind.NELSON_SIEGEL
+    assert not station.stale_text
 
 
 def test_a_draft_goes_with_the_book_that_it_belongs_to(station: CurveStation, bench: Bench) -> None:

@@ -10,9 +10,8 @@ from hypothesis import given
 from hypothesis import strategies as st
 from PySide6.QtCore import QLocale
 
-from desk.window.curve.bond_cells import added, merged_bonds, read_bonds, removed, with_cell
+from desk.window.curve.bond_cells import added, merged_bonds, no_bonds, read_bonds, removed, with_cell
 from desk.window.curve.dates import read_dates
-from desk.window.curve.starting import no_bonds
 from tests.window.curve.books import some_bonds
 
 THE_DAY = date(2036, 3, 31)
