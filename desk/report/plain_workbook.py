@@ -143,19 +143,24 @@ def _write_sheet(part: IO[bytes], sheet: PlainSheet) -> None:
     part.write("".join(pieces).encode("utf-8"))
 
 
+_OPENED = tuple(f'" s="{style:d}"><v>' for style in Style)
+"""By `Style`: a cell of a number from after its address to its value. A large sheet has millions."""
+
+
 def _row(number: int, letters: Sequence[str], values: Sequence[Value], styles: Sequence[Style]) -> str:
-    cells = [f'<row r="{number}">']
+    row = str(number)
+    cells = ['<row r="', row, '">']
     for letter, value, style in zip(letters, values, styles, strict=True):
         if value is None:
             continue
         if isinstance(value, str):
             inner = _text(value, style)
             if inner:
-                cells.append(f'<c r="{letter}{number}"{inner}</c>')
+                cells += ('<c r="', letter, row, '"', inner, "</c>")
         elif isinstance(value, date):
-            cells.append(f'<c r="{letter}{number}" s="{Style.DATE:d}"><v>{date_serial(value):d}</v></c>')
+            cells += ('<c r="', letter, row, _OPENED[Style.DATE], str(date_serial(value)), "</v></c>")
         else:
-            cells.append(f'<c r="{letter}{number}" s="{style:d}"><v>{exact_number(value)}</v></c>')
+            cells += ('<c r="', letter, row, _OPENED[style], exact_number(value), "</v></c>")
     cells.append("</row>")
     return "".join(cells)
 

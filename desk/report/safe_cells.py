@@ -6,6 +6,7 @@ whole or not at all.
 
 from __future__ import annotations
 
+import math
 import os
 import re
 import secrets
@@ -91,7 +92,7 @@ def looks_like_formula(text: str) -> bool:
 def exact_number(value: float) -> str:
     """The shortest decimal that reads in again as the same float. Raises ValueError if it is not finite."""
     number = float(value)
-    if not np.isfinite(number):
+    if not math.isfinite(number):
         raise ValueError(f"a workbook holds no number that is {number}")
     exact = repr(number)
     return exact[:-2] if exact.endswith(".0") and number != 0 else exact

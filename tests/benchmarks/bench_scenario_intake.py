@@ -8,6 +8,7 @@ from __future__ import annotations
 
 import sys
 import tempfile
+from datetime import date
 from functools import partial
 from pathlib import Path
 
@@ -27,7 +28,7 @@ def make_book(path: Path, paths: int, nodes: int, *, unit: float, wrong: bool) -
     rates = unit * np.round(0.02 + 0.01 * rng.standard_normal((paths, nodes)), 6)
     if wrong:
         rates[::1000, nodes // 2] = 5.0
-    basis = Basis(np.datetime64("2026-09-30").item(), "EUR", np.array([10.0]), np.array([0.02]))
+    basis = Basis(date(2026, 9, 30), "EUR", np.array([10.0]), np.array([0.02]))
     flows = FlowTable.build(["Pensions"], [1.0], [1.0])
     book = Book(basis, flows, scenario_set=ScenarioSet(np.arange(1.0, nodes + 1.0), rates))
     return write_book(book, path)
