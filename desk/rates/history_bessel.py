@@ -37,7 +37,7 @@ _POLYNOMIALS = _expansion(_TERMS)
 
 
 def log_bessel_less_argument(order: float, argument: ArrayLike) -> FloatArray:
-    """``ln I_ν(z) - z`` for z > 0 and ν > -1, where neither the function nor its scaled form need fit a float.
+    """``ln I_ν(z) - z`` for z > 0 and ν > -1, also where the function itself would not fit a float.
 
     Parameters
     ----------

@@ -135,16 +135,18 @@ def _remarks(found: ResidualTests) -> tuple[str, ...]:
             "" if abs(found.skewness) < 0.3 else f", and they lean {'up' if found.skewness > 0 else 'down'}"
         )
         remarks.append(
-            f"The residuals are not normal (skewness {found.skewness:.2f}, kurtosis {found.kurtosis:.1f} against "
-            f"3): {tails} than the model says{lean}."
+            f"The residuals are not normal (skewness {found.skewness:.2f}, kurtosis {found.kurtosis:.1f} "
+            f"against 3): {tails} than the model says{lean}."
         )
     if found.ljung_box_p < _LEVEL:
         remarks.append(
             f"The residuals follow one another (autocorrelation {found.autocorrelation[0]:.2f} at the first "
-            "lag): the rate remembers more than where it last was, which a model of one factor does not allow for."
+            "lag): the rate remembers more than where it last was, which a model of one factor does not "
+            "allow for."
         )
     if found.squared_ljung_box_p < _LEVEL:
         remarks.append(
-            "Quiet and wild times come in stretches: the volatility was not the one number the model takes it for."
+            "Quiet and wild times come in stretches: the volatility was not the one number the model "
+            "takes it for."
         )
     return tuple(remarks)

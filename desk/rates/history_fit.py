@@ -207,21 +207,23 @@ def _verdict(
     remarks = []
     if speed <= slowest:
         remarks.append(
-            "The history shows no mean reversion: the estimate is 0, and there is no long-run rate to go back to."
+            "The history shows no mean reversion: the estimate is 0, and there is no long-run rate to go "
+            "back to."
         )
     else:
         if interval[0] <= slowest or not error > 0.0 or speed < _UNIT_ROOT_RATIO * error:
             remarks.append(
                 f"The mean reversion of {speed:.3f} a year (95 % interval {max(interval[0], 0.0):.3f} to "
-                f"{interval[1]:.3f}) cannot be told from 0: the estimate is less than {_UNIT_ROOT_RATIO} standard "
-                "errors from 0, which a random walk reaches once in twenty times. The long-run rate is no firmer."
+                f"{interval[1]:.3f}) cannot be told from 0: the estimate is less than {_UNIT_ROOT_RATIO} "
+                "standard errors from 0, which a random walk reaches once in twenty times. The long-run rate "
+                "is no firmer."
             )
         share = bias / speed
         much = "as large as the estimate itself" if share > 0.9 else f"{100.0 * share:.0f} % of the estimate"
         if share > 0.1 or bias > _PLAIN_LIMIT:
             remarks.append(
-                f"Estimates of mean reversion from {years:.0f} years come out too high by about {bias:.3f} a year, "
-                f"{much}."
+                f"Estimates of mean reversion from {years:.0f} years come out too high by about {bias:.3f} a "
+                f"year, {much}."
             )
     if tests.remarks:
         remarks.append(
@@ -229,7 +231,7 @@ def _verdict(
         )
     remarks.extend(tests.remarks)
     remarks.append(
-        "A history shows how the rate moved, not what the market pays for bearing that: the price of risk is left "
-        "at 0."
+        "A history shows how the rate moved, not what the market pays for bearing that: the price of "
+        "risk is left at 0."
     )
     return tuple(remarks)

@@ -29,10 +29,13 @@ LogLikelihood = Callable[[FloatArray], float]
 # a 95 % interval.
 HALF_CHI_SQUARE_95 = 1.9207294103470674
 
-_GRADIENT_STEP = 1e-4  # in units of the standard error
+_GRADIENT_STEP = 1e-3  # in units of the standard error
+_BEND_STEP = 0.05
 _HESSIAN_STEP = 0.02
-_ROUNDS = 3
-_FEW_TURNS = 300
+_MOST_TURNS, _MOST_TRIALS = 150, 14
+_LONGEST_STEP = 30.0
+_NEGLIGIBLE = 1e-9  # gain in log-likelihood that is not worth another turn
+_AT_REST = 1e-4  # twice the gain that a whole further step promises
 _WORST = 1e300  # stands for minus infinity, with which the search could not reckon
 
 
@@ -66,7 +69,7 @@ def maximise(
     upper: ArrayLike,
     information: bool = True,
 ) -> Maximum:
-    """Greatest value of a log-likelihood within bounds.
+    """Greatest value of a log-likelihood within bounds, by damped steps of Newton.
 
     Parameters
     ----------
@@ -78,8 +81,6 @@ def maximise(
     information : bool
         Leave the covariance out (all NaN) when false.
     """
-    from scipy.optimize import minimize
-
     low, high = np.asarray(lower, dtype=np.float64), np.asarray(upper, dtype=np.float64)
     point = np.clip(np.asarray(start, dtype=np.float64), low, high)
     unit = np.asarray(scale, dtype=np.float64)
@@ -88,37 +89,33 @@ def maximise(
         value = function(place)
         return value if math.isfinite(value) else -_WORST
 
-    value, converged = safe(point), False
-    for turn in range(_ROUNDS):
-        unit = _units(safe, point, unit, high - low)
-
-        def downhill(move: FloatArray, base: FloatArray = point, unit: FloatArray = unit) -> float:
-            return -safe(base + unit * move)
-
-        def slope(move: FloatArray, base: FloatArray = point, unit: FloatArray = unit) -> FloatArray:
-            place = base + unit * move
-            gradient = np.empty(place.size)
-            for index in range(place.size):
-                shift = np.zeros(place.size)
-                shift[index] = _GRADIENT_STEP * unit[index]
-                gradient[index] = (safe(place - shift) - safe(place + shift)) / (2.0 * _GRADIENT_STEP)
-            return np.clip(gradient, -1e100, 1e100)
-
-        found = minimize(
-            downhill,
-            np.zeros(point.size),
-            jac=slope,
-            method="L-BFGS-B",
-            bounds=list(zip((low - point) / unit, (high - point) / unit, strict=True)),
-            options={"maxiter": _FEW_TURNS, "ftol": 1e-14, "gtol": 1e-6, "maxls": 40},
-        )
-        gained = -float(found.fun) - value
-        if gained > 0.0:
-            point = np.clip(point + unit * found.x, low, high)
-            value += gained
-        if turn > 0 and gained < 1e-7:
+    unit = _units(safe, point, unit, high - low)
+    value, damping, converged = safe(point), 0.1, False
+    for _ in range(_MOST_TURNS):
+        slope, bend = _slopes(safe, point, unit, value)
+        # What would leave the bounds stays where it is.
+        free = np.flatnonzero(~(((point <= low) & (slope < 0.0)) | ((point >= high) & (slope > 0.0))))
+        if free.size == 0:
             converged = True
             break
+        root, turn = np.linalg.eigh(-bend[np.ix_(free, free)])
+        along = turn.T @ slope[free]
+        moved = False
+        for _ in range(_MOST_TRIALS):
+            step = np.zeros(point.size)
+            step[free] = turn @ (along / (np.abs(root) + damping))
+            trial = np.clip(point + unit * np.clip(step, -_LONGEST_STEP, _LONGEST_STEP), low, high)
+            tried = safe(trial)
+            if tried > value:
+                moved, gained = True, tried - value
+                point, value, damping = trial, tried, max(0.1 * damping, 1e-8)
+                break
+            damping = max(10.0 * damping, 1e-6)
+        if not moved or gained < _NEGLIGIBLE:
+            converged = float(np.max(along**2 / np.maximum(np.abs(root), 1e-3))) < _AT_REST
+            break
+        curved = -np.diag(bend)
+        unit = unit / np.sqrt(np.clip(np.where(curved > 0.0, curved, 1.0), 1e-2, 1e4))
     at_bound = (point <= low + 1e-9 * (high - low)) | (point >= high - 1e-9 * (high - low))
     covariance = np.full((point.size, point.size), np.nan)
     if information:
@@ -216,6 +213,26 @@ def _units(function: LogLikelihood, point: FloatArray, guess: FloatArray, widest
             if 0.7 < factor < 1.4:
                 break
     return unit
+
+
+def _slopes(
+    function: LogLikelihood, point: FloatArray, unit: FloatArray, here: float
+) -> tuple[FloatArray, FloatArray]:
+    """First and second derivatives in the units given: the second from one side, good enough for a search."""
+    size = point.size
+    slope, bend, aside = np.empty(size), np.empty((size, size)), np.empty(size)
+    shifts = np.diag(unit)
+    for index in range(size):
+        near, far = _GRADIENT_STEP * shifts[index], _BEND_STEP * shifts[index]
+        slope[index] = (function(point + near) - function(point - near)) / (2.0 * _GRADIENT_STEP)
+        aside[index] = function(point + far)
+        bend[index, index] = (aside[index] - 2.0 * here + function(point - far)) / _BEND_STEP**2
+    for row in range(size):
+        for column in range(row):
+            both = function(point + _BEND_STEP * (shifts[row] + shifts[column]))
+            crossed = (both - aside[row] - aside[column] + here) / _BEND_STEP**2
+            bend[row, column] = bend[column, row] = crossed
+    return np.clip(slope, -1e100, 1e100), np.clip(bend, -1e100, 1e100)
 
 
 def _hessian(

@@ -7,7 +7,7 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import ArrayLike, NDArray
 
-__all__ = ["RateHistory", "rate_history"]
+__all__ = ["RateHistory", "history_years", "rate_history"]
 
 FloatArray = NDArray[np.float64]
 
@@ -76,35 +76,54 @@ def rate_history(times: ArrayLike, rates: ArrayLike) -> RateHistory:
         If there are fewer than twelve rates, one is no number, two dates are equal or out of order, or the
         rate never moves.
     """
-    given, rate = np.asarray(times), np.array(rates, dtype=np.float64)
-    if rate.ndim != 1 or given.shape != rate.shape:
+    rate = np.array(rates, dtype=np.float64)
+    if rate.ndim != 1 or np.shape(times) != rate.shape:
         raise ValueError("`rates` must hold one rate a date, in one dimension")
-    if rate.size < _FEWEST_RATES:
+    years, remarks = history_years(times)
+    bad = np.flatnonzero(~np.isfinite(rate))
+    if bad.size:
+        raise ValueError(f"the rate in row {bad[0] + 1} of the history is missing or no number")
+    if np.ptp(rate) == 0.0:
+        raise ValueError("the rate never moves in the history: nothing can be estimated from it")
+    rate.flags.writeable = False
+    return RateHistory(years, rate, remarks)
+
+
+def history_years(times: ArrayLike) -> tuple[FloatArray, tuple[str, ...]]:
+    """Years from the first date of a history, shape (n,), read-only, and remarks on gaps and length.
+
+    Parameters
+    ----------
+    times : array_like, shape (n,)
+        Dates (datetime64, taken as Act/365 Fixed) or years.
+
+    Raises
+    ------
+    ValueError
+        If there are fewer than twelve, one is missing, or two are equal or out of order.
+    """
+    given = np.asarray(times)
+    if given.ndim != 1 or given.size < _FEWEST_RATES:
         raise ValueError(
-            f"the history is too short: {rate.size} rates, at least {_FEWEST_RATES} are needed for an estimate"
+            f"the history is too short: {given.size} dates; an estimate needs at least {_FEWEST_RATES}"
         )
     dated = np.issubdtype(given.dtype, np.datetime64)
     if dated:
         days = given.astype("datetime64[D]")
-        missing = np.isnat(days)
-        years = np.where(missing, np.nan, (days - days[0]).astype(np.float64) / _DAYS_A_YEAR)
+        years = np.where(np.isnat(days), np.nan, (days - days[0]).astype(np.float64) / _DAYS_A_YEAR)
     else:
         years = np.asarray(given, dtype=np.float64) - float(given[0])
-    for name, values in (("date", years), ("rate", rate)):
-        bad = np.flatnonzero(~np.isfinite(values))
-        if bad.size:
-            raise ValueError(f"the {name} in row {bad[0] + 1} of the history is missing or no number")
+    bad = np.flatnonzero(~np.isfinite(years))
+    if bad.size:
+        raise ValueError(f"the date in row {bad[0] + 1} of the history is missing or no number")
     step = np.diff(years)
     back = np.flatnonzero(step <= 0.0)
     if back.size:
         row = int(back[0]) + 1
         what = "has the same date as" if step[row - 1] == 0.0 else "comes before"
         raise ValueError(f"row {row + 1} of the history {what} row {row}: dates must rise, one rate a date")
-    if np.ptp(rate) == 0.0:
-        raise ValueError("the rate never moves in the history: nothing can be estimated from it")
-    for values in (years, rate):
-        values.flags.writeable = False
-    return RateHistory(years, rate, _remarks(given, step, dated))
+    years.flags.writeable = False
+    return years, _remarks(given, step, dated)
 
 
 def _remarks(given: NDArray[np.generic], step: FloatArray, dated: bool) -> tuple[str, ...]:
@@ -116,14 +135,14 @@ def _remarks(given: NDArray[np.generic], step: FloatArray, dated: bool) -> tuple
         where = f"{given[row]} to {given[row + 1]}" if dated else f"rows {row + 1} to {row + 2}"
         many = "one gap" if gaps.size == 1 else f"{gaps.size} gaps"
         remarks.append(
-            f"The history has {many} of more than {_GAP:g} times its usual step of {usual * _DAYS_A_YEAR:.0f} "
-            f"days, the longest from {where}: each is taken as one long step, which the model allows for, but "
-            "what happened within it is lost."
+            f"The history has {many} of more than {_GAP:g} times its usual step of "
+            f"{usual * _DAYS_A_YEAR:.0f} days, the longest from {where}: each is taken as one long step, "
+            "which the model allows for, but what happened within it is lost."
         )
     length = float(step.sum())
     if length < _SHORT_YEARS:
         remarks.append(
-            f"The history covers {length:.1f} years only: the speed of mean reversion cannot be told well from "
-            "less than some decades, however often the rate was noted."
+            f"The history covers {length:.1f} years only: the speed of mean reversion cannot be told well "
+            "from less than some decades, however often the rate was noted."
         )
     return tuple(remarks)

@@ -1,7 +1,7 @@
 """The square-root model of Cox, Ingersoll and Ross estimated from a history, by the exact law of each step.
 
-Over a step Δ the rate is ``c`` times a noncentral chi-square number with ``d = 4κθ/σ²`` degrees of freedom and
-noncentrality ``x e^{-κΔ}/c``, where ``c = σ² B(κ, Δ)/4`` (Cox, Ingersoll and Ross 1985, equation 18).
+Over a step Δ the rate is ``c`` times a noncentral chi-square number with ``d = 4κθ/σ²`` degrees of freedom
+and noncentrality ``x e^{-κΔ}/c``, where ``c = σ² B(κ, Δ)/4`` (Cox, Ingersoll and Ross 1985, equation 18).
 """
 
 from __future__ import annotations
@@ -52,9 +52,9 @@ def fit_square_root(times: ArrayLike, rates: ArrayLike) -> HistoryFit:
     if low.size:
         row, rate = int(low[0]), float(history.rate[low[0]])
         raise ValueError(
-            f"{low.size} of {history.rate.size} rates are 0 or negative (the first is {100.0 * rate:.4g} % in row "
-            f"{row + 1}), and the square-root model holds for rates above 0 alone: use the model of Vasicek, or "
-            "add a shift to all the rates"
+            f"{low.size} of {history.rate.size} rates are 0 or negative (the first is {100.0 * rate:.4g} % "
+            f"in row {row + 1}), and the square-root model holds for rates above 0 alone: use the model of "
+            "Vasicek, or add a shift to all the rates"
         )
     start, scale = _start(history)
     bounds = np.log([_SLOWEST, 1e-12, 1e-8]), np.log([FASTEST, 1e6, 1e4])
@@ -233,8 +233,8 @@ def _remarks(found: Maximum, pull: float, volatility: float) -> tuple[str, ...]:
     remarks = []
     if 2.0 * pull < volatility**2:
         remarks.append(
-            "At these values the rate can reach 0 (the condition of Feller, twice mean reversion times long-run "
-            "rate at least volatility squared, fails)."
+            "At these values the rate can reach 0 (the condition of Feller, twice mean reversion times "
+            "long-run rate at least volatility squared, fails)."
         )
     if not found.converged:
         remarks.append(
@@ -242,7 +242,7 @@ def _remarks(found: Maximum, pull: float, volatility: float) -> tuple[str, ...]:
         )
     if found.point[0] >= math.log(FASTEST) - 1e-6:
         remarks.append(
-            f"The mean reversion is at the fastest that is looked for, {FASTEST:g} a year: each rate has hardly "
-            "anything to do with the one before, and no model of this kind fits."
+            f"The mean reversion is at the fastest that is looked for, {FASTEST:g} a year: each rate has "
+            "hardly anything to do with the one before, and no model of this kind fits."
         )
     return tuple(remarks)

@@ -198,7 +198,7 @@ def _best_speed(history: RateHistory, stationary: bool) -> float:
 def _edge_remarks(speed: float) -> tuple[str, ...]:
     if speed >= FASTEST:
         return (
-            f"The mean reversion is at the fastest that is looked for, {FASTEST:g} a year: each rate has hardly "
-            "anything to do with the one before, and no model of this kind fits.",
+            f"The mean reversion is at the fastest that is looked for, {FASTEST:g} a year: each rate has "
+            "hardly anything to do with the one before, and no model of this kind fits.",
         )
     return ()

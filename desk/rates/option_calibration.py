@@ -1,7 +1,7 @@
 """Short-rate models fitted to today's curve and to quoted volatilities of caps, floors and swaptions.
 
-The curve is repriced whatever the parameters are; they are chosen so that the volatilities at which the model's
-prices hold are nearest to those quoted, by least squares.
+The curve is repriced whatever the parameters are; they are chosen so that the volatilities at which the
+model's prices hold are nearest to those quoted, by least squares.
 """
 
 from __future__ import annotations
@@ -25,8 +25,9 @@ FloatArray = NDArray[np.float64]
 
 _POOR_SHARE = 0.05  # of the mean quoted volatility: a root mean square residual above it is called poor
 _FAR_SHARE = 0.15
-_TURNS = 300
+_FEW_TURNS, _MOST_TURNS = 12, 100
 _LEAST_SINGULAR = 1e-5
+_NUMBERS = {1: "one constant", 2: "two constants", 4: "four constants", 5: "five constants"}
 
 
 @dataclass(frozen=True, eq=False)
@@ -199,8 +200,8 @@ def fit_volatilities(quotes: OptionQuotes, *, model: str = "hull-white") -> Vola
 
     Notes
     -----
-    Residuals count alike; where normal and lognormal quotes are mixed each is divided by the mean of its kind.
-    The best of a few starts is taken.
+    Residuals count alike; where normal and lognormal quotes are mixed each is divided by the mean of its
+    kind. The most promising of a few starts is followed to the end.
     """
     from scipy.optimize import least_squares
 
@@ -210,38 +211,42 @@ def fit_volatilities(quotes: OptionQuotes, *, model: str = "hull-white") -> Vola
     size = len(family.parameters)
     if quotes.count < size:
         raise ValueError(
-            f"{model} has {size} parameters and there are only {quotes.count} quotes: give at least {size}, or "
-            "choose a model of fewer parameters"
+            f"{model} has {size} parameters and there are only {quotes.count} quotes: give at least {size}, "
+            "or choose a model of fewer parameters"
         )
     unit = _kind_means(quotes)
+    nearby = [quotes.volatility]  # those of the point before, where the search for the next ones begins
 
     def residual(point: FloatArray) -> FloatArray:
-        found = quotes.volatilities(family.prices(quotes, point))
+        found = quotes.volatilities(family.prices(quotes, point), guess=nearby[0])
+        usable = np.isfinite(found) & (found > 0.0)
+        nearby[0] = np.where(usable, found, quotes.volatility)
         return np.asarray((np.where(np.isfinite(found), found, 10.0) - quotes.volatility) / unit)
 
     lower, upper = np.array(family.lower), np.array(family.upper)
-    fits = []
-    for start in family.starts(quotes, _normal_level(quotes)):
-        begin = np.clip(start, lower + 1e-9, upper - 1e-9)
-        fits.append(
-            least_squares(
-                residual,
-                begin,
-                bounds=(lower, upper),
-                x_scale="jac",
-                ftol=1e-13,
-                xtol=1e-12,
-                gtol=1e-12,
-                max_nfev=_TURNS,
-            )
+
+    def search(begin: FloatArray, turns: int) -> tuple[float, FloatArray, bool]:
+        found = least_squares(
+            residual,
+            begin,
+            bounds=(lower, upper),
+            x_scale="jac",
+            ftol=1e-10,
+            xtol=1e-10,
+            gtol=1e-14,
+            max_nfev=turns,
         )
-    best = min(fits, key=lambda fit: float(fit.cost))
-    point = _snapped(np.asarray(best.x), residual, lower, upper)
+        return float(found.cost), np.asarray(found.x), bool(found.success)
+
+    starts = family.starts(quotes, _normal_level(quotes))
+    first = [search(np.clip(start, lower + 1e-9, upper - 1e-9), _FEW_TURNS) for start in starts]
+    _, place, converged = min(first, key=lambda found: found[0])
+    if not converged:
+        _, place, converged = search(place, _MOST_TURNS)
+    point = _snapped(place, residual, lower, upper)
     left = residual(point)
     errors, determined = _errors(residual, point, left, lower, upper)
-    return _record(
-        model, family, quotes, point, errors, determined, left, unit, bool(best.success), (lower, upper)
-    )
+    return _record(model, family, quotes, point, errors, determined, left, unit, converged, (lower, upper))
 
 
 def _kind_means(quotes: OptionQuotes) -> FloatArray:
@@ -326,7 +331,7 @@ def _record(
     squares = float(np.sum((left * unit) ** 2))
     count = quotes.count
     spread = max(squares / count, 1e-40)
-    fit = VolatilityFit(
+    return VolatilityFit(
         model=model,
         parameters=family.parameters,
         errors=errors,
@@ -343,7 +348,6 @@ def _record(
         remarks=_remarks(model, family, quotes, point, determined, left, residual_bp, converged, bounds),
         **dict(zip(family.parameters, point.tolist(), strict=True)),
     )
-    return fit
 
 
 def _remarks(
@@ -361,15 +365,16 @@ def _remarks(
     share, worst = math.sqrt(float(np.mean(left**2))), int(np.argmax(np.abs(left)))
     if not math.isfinite(share) or share > _POOR_SHARE or float(np.abs(left[worst])) > _FAR_SHARE:
         remarks.append(
-            f"The fit is poor: the residuals are {100.0 * share:.0f} % of the mean quoted volatility (root mean "
-            f"square), the largest {residual_bp[worst]:+.0f} basis points for the {quotes.names[worst]}. A model of "
-            f"{len(family.parameters)} constant parameters cannot follow these quotes."
+            f"The fit is poor: the residuals are {100.0 * share:.0f} % of the mean quoted volatility (root "
+            f"mean square), the largest {residual_bp[worst]:+.0f} basis points for the "
+            f"{quotes.names[worst]}. This model, with {_NUMBERS[len(family.parameters)]}, cannot follow "
+            "these quotes."
         )
     values = dict(zip(family.parameters, point.tolist(), strict=True))
     if values.get("mean_reversion") == 0.0 or values.get("second_mean_reversion") == 0.0:
         remarks.append(
-            "A mean reversion is at its lower bound of 0: the quotes ask for volatilities that do not fall with the "
-            "term, and perhaps rise."
+            "A mean reversion is at its lower bound of 0: the quotes ask for volatilities that do not fall "
+            "with the term, and perhaps rise."
         )
     at_bound = [
         name.replace("_", " ")
@@ -380,8 +385,8 @@ def _remarks(
         remarks.append(f"At the bound of what is looked for: {', '.join(at_bound)}. The fit is an edge case.")
     if not determined:
         remarks.append(
-            "The quotes do not determine all the parameters: others fit as well. Give quotes of more expiries and "
-            "lengths, or choose a model of fewer parameters."
+            "The quotes do not determine all the parameters: others fit as well. Give quotes of more "
+            "expiries and lengths, or choose a model of fewer parameters."
         )
     if quotes.count == len(family.parameters):
         remarks.append("There are as many parameters as quotes: the residuals say nothing about the fit.")

@@ -14,7 +14,8 @@ FloatArray = NDArray[np.float64]
 BoolArray = NDArray[np.bool_]
 
 _ROOT_TWO_PI = 2.5066282746310002
-_TURNS = 200
+_TURNS = 100
+_CLOSE = 1e-12
 
 
 def forward_option(
@@ -151,7 +152,7 @@ def implied_volatility(
             stepped = volatility - (found - target) / slope
         inside = (stepped > low) & (stepped < high)
         following = np.where(inside, stepped, 0.5 * (low + high))
-        still = np.abs(following - volatility) > 1e-14 * volatility
+        still = np.abs(following - volatility) > _CLOSE * volatility
         volatility = following
         if not np.any(still & possible & ~at_least):
             break

@@ -11,6 +11,7 @@ import math
 from collections.abc import Sequence
 from dataclasses import dataclass
 from functools import cached_property
+from itertools import pairwise
 
 import numpy as np
 from numpy.typing import ArrayLike, NDArray
@@ -51,7 +52,7 @@ class OptionQuotesError(ValueError):
 class OptionQuotes:
     """Quotes with all that their prices need; made by `option_quotes`. Rows are quotes, m of them.
 
-    The options beneath a quote are the caplets of a cap, or one for a swaption. Unused places have `weight` 0.
+    The options beneath a quote are the caplets of a cap, or one for a swaption. Unused places have weight 0.
 
     Attributes
     ----------
@@ -126,8 +127,11 @@ class OptionQuotes:
         )
         return np.asarray(np.sum(np.where(self.weight > 0.0, self.weight * each, 0.0), axis=1))
 
-    def volatilities(self, price: ArrayLike) -> FloatArray:
-        """Volatilities of the quoted kind at which the prices hold, shape (m,); NaN where there is none."""
+    def volatilities(self, price: ArrayLike, *, guess: FloatArray | None = None) -> FloatArray:
+        """Volatilities of the quoted kind at which the prices hold, shape (m,); NaN where there is none.
+
+        `guess`, the quoted ones by default, only makes it faster.
+        """
         return implied_volatility(
             price,
             self.forward,
@@ -137,7 +141,7 @@ class OptionQuotes:
             call=self.call,
             normal=self.normal,
             shift=self.shift,
-            guess=self.volatility,
+            guess=self.volatility if guess is None else guess,
         )
 
 
@@ -226,7 +230,8 @@ def _row_faults(instrument: str, kind: str, row: dict[str, float]) -> list[str]:
     elif row["volatility"] > (0.5 if kind == "normal" else 10.0):
         unit = "a year (normal)" if kind == "normal" else "(lognormal)"
         faults.append(
-            f"the volatility is {100.0 * row['volatility']:g} % {unit}, beyond any sense; state it as a fraction."
+            f"the volatility is {100.0 * row['volatility']:g} % {unit}, beyond any sense; state it as a "
+            "fraction."
         )
     if not 0.0 < row["expiry"] <= _LONGEST:
         faults.append(f"the expiry is {row['expiry']:g}; it must be above 0 and at most {_LONGEST:g} years.")
@@ -325,14 +330,19 @@ def _shift_faults(quotes: OptionQuotes) -> list[tuple[int, str]]:
 
 
 def _arbitrage(quotes: OptionQuotes, frequency: FloatArray) -> list[tuple[int, str]]:
-    """Quotes that let money be made of nothing: caps worth less the longer they run, or worth more at a strike
-    that pays less."""
+    """Quotes that let money be made of nothing: caps worth less though they run longer, or at a strike that
+    pays more."""
     faults = []
     prices = quotes.prices(quotes.volatility)
     groups: dict[tuple[object, ...], list[int]] = {}
     for row, name in enumerate(quotes.instrument):
         if not quotes.swaption[row]:
-            key = ("term", name, round(float(quotes.strike[row]), 12), float(frequency[row]))
+            key: tuple[object, ...] = (
+                "term",
+                name,
+                round(float(quotes.strike[row]), 12),
+                float(frequency[row]),
+            )
             groups.setdefault(key, []).append(row)
         key = (
             "strike",
@@ -346,20 +356,22 @@ def _arbitrage(quotes: OptionQuotes, frequency: FloatArray) -> list[tuple[int, s
         by_term = key[0] == "term"
         place = quotes.expiry if by_term else np.where(quotes.call, -1.0, 1.0) * quotes.strike
         ordered = sorted(rows, key=lambda row: (float(place[row]), float(prices[row])))
-        for before, row in zip(ordered, ordered[1:], strict=False):
+        for before, row in pairwise(ordered):
             slack = 1e-9 * float(prices[before])
             if place[row] > place[before] and prices[row] < prices[before] - slack:
                 if by_term:
                     text = (
-                        f"at its volatility this {quotes.instrument[row]} to {quotes.expiry[row]:g} years is worth "
-                        f"{1e4 * prices[row]:.2f} basis points, less than the one to {quotes.expiry[before]:g} years in "
-                        f"quote {before + 1} ({1e4 * prices[before]:.2f}), though it insures more: one of the two is wrong."
+                        f"at its volatility this {quotes.instrument[row]} to {quotes.expiry[row]:g} years is "
+                        f"worth {1e4 * prices[row]:.2f} basis points, less than the one to "
+                        f"{quotes.expiry[before]:g} years in quote {before + 1} "
+                        f"({1e4 * prices[before]:.2f}), though it insures more: one of the two is wrong."
                     )
                 else:
                     text = (
-                        f"at its strike of {100.0 * quotes.strike[row]:.4g} % this {quotes.instrument[row]} pays more than "
-                        f"that of quote {before + 1} at {100.0 * quotes.strike[before]:.4g} %, yet by its volatility it is "
-                        "worth less: one of the two is wrong."
+                        f"at its strike of {100.0 * quotes.strike[row]:.4g} % this "
+                        f"{quotes.instrument[row]} pays more than that of quote {before + 1} at "
+                        f"{100.0 * quotes.strike[before]:.4g} %, yet by its volatility it is worth less: "
+                        "one of the two is wrong."
                     )
                 faults.append((row, text))
     return sorted(faults)

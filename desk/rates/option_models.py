@@ -4,14 +4,14 @@ A caplet is an option on a zero bond. For a swaption the bond prices at expiry a
 whose numeraire is the bond to expiry, so that today's curve enters only through forward prices ``Fᵢ``:
 ``P(T,Tᵢ) = Fᵢ exp(-βᵢ·z - ½|βᵢ|²)``, z standard normal. With one factor the swap is worth nothing at one z,
 and the price is a sum of normal probabilities (Jamshidian 1989). With two the same is done for each value of
-the first and integrated over it by Gauss-Hermite quadrature (Brigo and Mercurio 2006, theorem 4.2.3). The axes
-of z are turned so that the second is the one along which the swap moves: then the boundary of exercise hardly
-depends on the first, few points suffice, and a correlation of ±1 is nothing special.
+the first and integrated over it by Gauss-Hermite quadrature (Brigo and Mercurio 2006, theorem 4.2.3). The
+axes of z are turned so that the second is the one along which the swap moves: then the boundary of exercise
+hardly depends on the first, few points suffice, and a correlation of ±1 is nothing special.
 
 References
 ----------
-Jamshidian, F. (1989), An exact bond option formula, J. Finance 44. Brigo, D. and Mercurio, F. (2006), Interest
-Rate Models: Theory and Practice, sections 3.3.2 and 4.2.4.
+Jamshidian, F. (1989), An exact bond option formula, J. Finance 44. Brigo, D. and Mercurio, F. (2006),
+Interest Rate Models: Theory and Practice, sections 3.3.2 and 4.2.4.
 """
 
 from __future__ import annotations
@@ -79,7 +79,6 @@ def _caps(model: GaussianRates, quotes: OptionQuotes, rows: NDArray[np.bool_]) -
     growth = 1.0 + quotes.strike[rows][:, None] * accrual
     cash, bond = (entry[rows] for entry in quotes.discounts)
     bond = bond * growth
-    variance = np.zeros(start.shape)
     exposure = np.stack([first_integral(f.mean_reversion, time - start) for f in model.factors], axis=-1)
     variance = np.einsum("...i,...ij,...j", exposure, _covariances(model, start), exposure)
     deviation = np.sqrt(np.maximum(variance, 1e-300))
@@ -111,7 +110,7 @@ def _swaptions(model: GaussianRates, quotes: OptionQuotes, rows: NDArray[np.bool
     kept = ndtr(-sign * boundary)
     swapped = np.sum(amount * ndtr(-sign[..., None] * (boundary[..., None] + along)), axis=2)
     value = sign * (kept - swapped)
-    return np.maximum(base * (value @ weights), 0.0)
+    return np.asarray(np.maximum(base * (value @ weights), 0.0))
 
 
 def _loadings(

@@ -1,9 +1,9 @@
 """Prices of quoted caps, floors and swaptions under square-root rates, shifted to a curve or not.
 
 A bond at expiry falls as the factor rises, so that a swap is worth nothing at one value of the factor, and a
-swaption is a sum of probabilities of the noncentral chi-square law: Jamshidian, F. (1989), An exact bond option
-formula, J. Finance 44, with the bond options of Cox, Ingersoll and Ross (1985), equation 32; shifted as Brigo
-and Mercurio (2006), Interest Rate Models, section 3.9.
+swaption is a sum of probabilities of the noncentral chi-square law: Jamshidian, F. (1989), An exact bond
+option formula, J. Finance 44, with the bond options of Cox, Ingersoll and Ross (1985), equation 32; shifted
+as Brigo and Mercurio (2006), Interest Rate Models, section 3.9.
 """
 
 from __future__ import annotations
@@ -81,7 +81,7 @@ def _payers(
     bonds = payment * model.curve.discount(time)
     receiver = np.sum(bonds * below[:, 1:], axis=1) - base * below[:, 0]
     payer = receiver + base - np.sum(bonds, axis=1)
-    return np.maximum(np.where(call, payer, receiver), 0.0)
+    return np.asarray(np.maximum(np.where(call, payer, receiver), 0.0))
 
 
 def _limit(amount: FloatArray, exposure: FloatArray) -> FloatArray:
