@@ -180,12 +180,13 @@ def position(assets: tuple[FloatArray, FloatArray], liabilities: tuple[FloatArra
     assets, liabilities : (ndarray, ndarray)
         Times [years] and present values [currency] of the rows of each side.
     """
+    # Sums of products, not dot products: the same bits on any number of threads, and no waiting for them.
     with np.errstate(over="ignore", under="ignore", invalid="ignore"):
         worth, first, fall = [], [], []
         for time, value in (assets, liabilities):
             worth.append(float(value.sum()))
-            first.append(float(time @ value))
-            fall.append(float(-np.expm1(-BASIS_POINT * time) @ value))
+            first.append(float((time * value).sum()))
+            fall.append(float(-(np.expm1(-BASIS_POINT * time) * value).sum()))
         return Position(
             assets=worth[0],
             liabilities=worth[1],

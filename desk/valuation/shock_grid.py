@@ -21,6 +21,8 @@ __all__ = ["MOST_CELLS", "ShockGrid", "shock_grid"]
 MOST_CELLS = 250_000
 """Cells of the largest grid."""
 
+_HELD_AT_ONCE = 64  # scales of the second shock: the memory is that many times the rows
+
 
 @dataclass(frozen=True, eq=False)
 class ShockGrid:
@@ -109,7 +111,7 @@ def shock_grid(
     Notes
     -----
     Where each shock multiplies what a row is worth by a factor of its own, whatever the other does, all cells
-    are one product of matrices, ``Σ f(i, row) v(row) g(j, row)``; otherwise each cell is revalued by itself.
+    are sums of products, ``Σ f(i, row) v(row) g(j, row)``; otherwise each cell is revalued by itself.
     """
     report = progress or (lambda _: None)
     scales = [np.asarray(scale, dtype=np.float64).ravel() for scale in (first_scale, second_scale)]
@@ -125,7 +127,9 @@ def shock_grid(
         def part(done: float, begin: float = 0.5 * number) -> None:
             report(begin + 0.5 * done)
 
-        found = _separable(base, side, (first, second), effects) if _is_separable(side, effects) else None
+        found = (
+            _separable(base, side, (first, second), effects, part) if _is_separable(side, effects) else None
+        )
         values.append(
             _by_cell(base, side, (first, second), effects, faults, part) if found is None else found
         )
@@ -202,26 +206,39 @@ def _separable(
     side: SideBase,
     shocks: tuple[Shock, Shock],
     effects: Sequence[Sequence[Effects | None]],
+    progress: Callable[[float], None],
 ) -> FloatArray | None:
-    """All cells of one side by one product of matrices; None where a row of no value gains some."""
-    factors = []
+    """All cells of one side as sums of products; None where a row of no value gains some."""
     is_worth = side.value != 0.0
-    for shock, of_shock in zip(shocks, effects, strict=True):
-        factor = np.full((len(of_shock), side.value.size), np.nan)
-        for number, own in enumerate(of_shock):
-            if own is None:
-                continue
-            try:
-                after = side_after(base, side, shock, own, by_row=True)[1]
-            except CannotShock:
-                continue
-            if (after[~is_worth] != 0.0).any():
-                return None
-            with np.errstate(over="ignore", under="ignore", invalid="ignore", divide="ignore"):
-                factor[number] = np.where(is_worth, after / side.value, 1.0)
-        factors.append(factor)
-    with np.errstate(over="ignore", under="ignore", invalid="ignore"):
-        return np.asarray((factors[0] * side.value) @ factors[1].T)
+    found = np.full((len(effects[0]), len(effects[1])), np.nan)
+
+    def after(number: int, own: Effects | None) -> FloatArray | None:
+        if own is None:
+            return None
+        try:
+            return side_after(base, side, shocks[number], own, by_row=True)[1]
+        except CannotShock:
+            return None
+
+    with np.errstate(over="ignore", under="ignore", invalid="ignore", divide="ignore"):
+        for begin in range(0, found.shape[1], _HELD_AT_ONCE):
+            columns = slice(begin, begin + _HELD_AT_ONCE)
+            factor = np.full((found[:, columns].shape[1], side.value.size), np.nan)
+            for number, own in enumerate(effects[1][columns]):
+                values = after(1, own)
+                if values is not None:
+                    if values[~is_worth].any():
+                        return None
+                    factor[number] = np.where(is_worth, values / side.value, 1.0)
+            for row, own in enumerate(effects[0]):
+                progress((begin + factor.shape[0] * row / found.shape[0]) / found.shape[1])
+                values = after(0, own)
+                if values is not None:
+                    if values[~is_worth].any():
+                        return None
+                    # Not by a matrix product, whose bits may depend on the number of threads.
+                    found[row, columns] = np.einsum("n,jn->j", values, factor)
+    return found
 
 
 def _by_cell(

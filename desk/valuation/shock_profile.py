@@ -56,7 +56,7 @@ def _moments(side: SideBase, move: float) -> tuple[float, float]:
     """Present value and ``Σ t v`` of one side after a parallel move [basis points]."""
     with np.errstate(over="ignore", under="ignore", invalid="ignore"):
         value = side.value_by_time * np.exp(-BASIS_POINT * move * side.times)
-        return float(value.sum()), float(value @ side.times)
+        return float(value.sum()), float((value * side.times).sum())
 
 
 def _turns(base: ShockBase, move: FloatArray, gap: FloatArray) -> tuple[float, ...]:

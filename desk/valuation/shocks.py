@@ -299,27 +299,27 @@ def estimated_change(base: ShockBase, side: SideBase, effects: Effects) -> float
     with np.errstate(over="ignore", under="ignore", invalid="ignore"):
         if effects.curve is not None:
             moved = side.times * effects.curve.change(side.times, side.zero)
-            total += float(side.value_by_time @ (-moved + 0.5 * moved**2))
+            total += float((side.value_by_time * (-moved + 0.5 * moved**2)).sum())
         if _has_index(side, effects):
             discount = np.exp(-side.exponent)
             up, down = (
-                float(_amounts_after(base, side, effects, part=part) @ discount)
+                float((_amounts_after(base, side, effects, part=part) * discount).sum())
                 for part in (_INFLATION_STEP, -_INFLATION_STEP)
             )
             total += (up - down) / (2.0 * _INFLATION_STEP)
         if side is base.assets:
             if effects.spread is not None:
                 worth = flows.paid * np.exp(-side.exponent)
-                total -= float(worth @ (flows.time * effects.spread[flows.line]))
+                total -= float((worth * flows.time * effects.spread[flows.line]).sum())
             if effects.value is not None:
                 share = np.where(flows.is_flow, 0.0, effects.value[flows.line] - 1.0)
-                total += float(value @ share)
+                total += float((value * share).sum())
             return total
         if effects.amount is not None:
-            total += float(value @ (effects.amount[flows.line] - 1.0))
+            total += float((value * (effects.amount[flows.line] - 1.0)).sum())
         if effects.growth is not None:
-            total += float(value @ (effects.growth[flows.line] * flows.time))
+            total += float((value * effects.growth[flows.line] * flows.time).sum())
         if effects.later is not None:
             forward = base.book.basis.curve.forward(side.times, side.times)[side.place]
-            total -= float(value @ ((forward + flows.spread) * effects.later[flows.line]))
+            total -= float((value * (forward + flows.spread) * effects.later[flows.line]).sum())
     return total

@@ -69,7 +69,7 @@ class _Times:
         keys = np.bincount(self.lower, weights=value * self.below, minlength=count)
         keys[1:] += np.bincount(self.lower, weights=value * self.above, minlength=count)[:-1]
         years = np.bincount(self.year, weights=value, minlength=self.last_year)
-        sums = np.array([value.sum(), self.times @ value, self.fall @ value])
+        sums = np.array([value.sum(), (self.times * value).sum(), (self.fall * value).sum()])
         return sums, keys.astype(np.float64), years.astype(np.float64)
 
 
