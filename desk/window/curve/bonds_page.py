@@ -21,7 +21,7 @@ from desk.window.curve.bond_cells import (
 )
 from desk.window.curve.bond_figures import BondFigures
 from desk.window.curve.headings import BOND_COLUMNS, HOW_BONDS
-from desk.window.curve.page import TablePage
+from desk.window.curve.page import SORTED, TablePage
 from desk.window.parts import numbers
 from desk.window.parts.tables import parse_grid
 from desk.window.parts.theme import ThemeSwitch
@@ -160,6 +160,8 @@ class BondsPage(TablePage):
         is_whole = not len(self._bonds) or len(self.selected()) == len(self._bonds) > 1
         if is_whole and max(map(len, grid)) > 1:
             self.replace_all()
+        elif not self.is_in_order:
+            self.refused.emit(SORTED)
         else:
             self._paste(self._bonds, key, grid, max(row, 0), "Pasted into the bonds")
         return None

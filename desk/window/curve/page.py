@@ -13,7 +13,11 @@ from desk.window.parts.labels import ElidedLabel
 from desk.window.parts.tables import Table
 from desk.window.parts.theme import GAP, HALF, ThemeSwitch, keep_look, soft_font
 
-__all__ = ["TablePage"]
+__all__ = ["SORTED", "TablePage"]
+
+SORTED = (
+    "Nothing was pasted: the rows are sorted. Choose “Order as in the source” in the menu on the cells first."
+)
 
 
 class TablePage(QWidget):
@@ -80,6 +84,12 @@ class TablePage(QWidget):
         shortcut = QShortcut(QKeySequence(key), self.table)
         shortcut.setContext(Qt.ShortcutContext.WidgetShortcut)
         shortcut.activated.connect(act)
+
+    @property
+    def is_in_order(self) -> bool:
+        """Whether the rows stand in the order of the source, so that pasted ones go where they are seen."""
+        model = self.table.table_model
+        return all(model.source_row(row) == row for row in range(model.rowCount()))
 
     def selected(self) -> list[int]:
         """Source rows in which a cell is selected."""

@@ -122,7 +122,8 @@ class CurvePicture(_RoomyPicture):
             self.remove(name)
         self._shown, self._other, self._compounding, self._until = shown, other, compounding, until
         self._other_name = other_name
-        self.set_lines(1 if other is None and shown.fit is None else 2)
+        # Beside another picture there is less width.
+        self.set_lines(2 if other is not None or (shown.fit is not None and not shown.knots.size) else 1)
         right = "Price index" if shown.is_index else "Discount factor"
         self.set_right_axis(right, "today 1" if shown.is_index else "", digits=4)
         self.set_title(title)
@@ -270,7 +271,9 @@ def _sentence(shown: Shown, compounding: Compounding, until: float) -> str:
             f"{numbers.rate(float(end), with_unit=True)} at {numbers.integer(until)} years."
         )
     beyond = float(from_continuous(shown.curve.forward(last, last), compounding))
-    return f"{known}; beyond the last quote the forward rate stays at {numbers.rate(beyond, with_unit=True)}."
+    source = "quote" if shown.fit is None else "bond"
+    stays = numbers.rate(beyond, with_unit=True)
+    return f"{known}; beyond the last {source} the forward rate stays at {stays}."
 
 
 def _at(shown: Shown, term: float, compounding: Compounding) -> str:

@@ -13,7 +13,7 @@ from desk.book.arrays import FloatArray
 from desk.rates.curve import DiscountCurve
 from desk.window.curve.edits import merged, next_term, read_cells
 from desk.window.curve.headings import QUOTE_COLUMNS
-from desk.window.curve.page import TablePage
+from desk.window.curve.page import SORTED, TablePage
 from desk.window.parts import numbers
 from desk.window.parts.columns import Column
 from desk.window.parts.tables import parse_grid
@@ -157,6 +157,9 @@ class QuotesPage(TablePage):
         is_whole = not self._terms.size or len(self.selected()) == self._terms.size > 1
         if is_whole and max(map(len, grid)) > 1:
             self.replace_all()
+            return None
+        if not self.is_in_order:
+            self.refused.emit(SORTED)
             return None
         pasted = read_cells(grid, key)
         if pasted.faults:

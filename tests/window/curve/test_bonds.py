@@ -320,6 +320,19 @@ def test_prices_are_pasted_over_a_column(bonded: CurveStation, bench: Bench) -> 
     assert np.isnan(bonds.price[[1, 4]]).all()
 
 
+def test_nothing_is_pasted_over_some_of_sorted_rows(bonded: CurveStation, bench: Bench) -> None:
+    before = bench.book
+    bonded.bonds.table.sortByColumn(6, Qt.SortOrder.DescendingOrder)
+    put_on_clipboard("99.1\n98.7")
+    bonded.bonds.table.go_to(2, 4)
+    bonded.bonds.table.paste()
+    assert "the rows are sorted" in bonded.stale_text
+    assert bench.book is before
+    bonded.bonds.table.sortByColumn(-1, Qt.SortOrder.AscendingOrder)
+    bonded.bonds.table.paste()
+    assert bench.book is not before
+
+
 def test_every_bad_cell_is_named_and_nothing_is_pasted(bonded: CurveStation, bench: Bench) -> None:
     before = bench.book
     put_on_clipboard("Maturity\tCoupon\tPrice\n31/03/36\t2.5\t99\n2037-03-31\thigh\t#N/A\n2038-03-31\t2\t-4")

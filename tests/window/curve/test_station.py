@@ -177,6 +177,15 @@ def test_rows_are_pasted_over_as_one_step(station: CurveStation, bench: Bench) -
     assert bench.book.basis == a_fund().basis
 
 
+def test_nothing_is_pasted_over_some_of_sorted_rows(station: CurveStation, bench: Bench) -> None:
+    station.quotes.table.sortByColumn(1, Qt.SortOrder.DescendingOrder)
+    put_on_clipboard("2\t2.4")
+    station.quotes.table.go_to(1)
+    station.quotes.table.paste()
+    assert "the rows are sorted" in station.stale_text
+    assert not bench.document.can_undo
+
+
 def test_rows_beyond_the_last_are_added(station: CurveStation, bench: Bench) -> None:
     put_on_clipboard("10\t3.1\n20\t3.2\n30\t3.0")
     station.quotes.table.go_to(3)
