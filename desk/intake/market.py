@@ -158,7 +158,7 @@ def _tell_gaps(table: Table, columns: list[tuple[float, int]], rates: FloatArray
         missing = np.concatenate(([False], np.isnan(rates[:, number]), [False]))
         starts = np.flatnonzero(~missing[:-1] & missing[1:])
         ends = np.flatnonzero(missing[:-1] & ~missing[1:])
-        for start, end in zip(starts.tolist(), ends.tolist(), strict=True):
+        for start, end in zip(starts[:_MOST_TOLD].tolist(), ends[:_MOST_TOLD].tolist(), strict=True):
             count = end - start
             last = f"{column_letters(column)}{table.rows[end - 1] + 1}"
             faults.mild(
@@ -171,6 +171,8 @@ def _tell_gaps(table: Table, columns: list[tuple[float, int]], rates: FloatArray
                 row=int(table.rows[start]),
                 column=column,
             )
+        rest = starts[_MOST_TOLD:]
+        _tell_rest(Cells(table.sheet, column, table.rows, faults), rest, "begin a gap", mild=True)
 
 
 def read_scenario_set(table: Table, faults: FaultList) -> ScenarioSet | None:

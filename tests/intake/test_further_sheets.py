@@ -183,6 +183,20 @@ def test_a_set_in_the_wrong_unit_gives_a_bounded_list(tmp_path: Path) -> None:
     assert all("row 1001" in fault.found for fault in rest)
 
 
+def test_a_history_full_of_gaps_gives_a_bounded_list(tmp_path: Path) -> None:
+    days = np.arange("2025-01-01", "2026-03-01", dtype="M8[D]").astype(object).tolist()
+    rows: Rows = [
+        ["Date", 1, 2],
+        *([day, 0.02, 0.02 if place % 2 else None] for place, day in enumerate(days)),
+    ]
+    reading = read(sound_sheets() | {"Yield history": rows}, tmp_path)
+    assert reading.book is not None
+    gaps = (len(days) + 1) // 2
+    assert [fault.cell for fault in reading.faults[:2]] == ["C2", "C4"]
+    assert len(reading.faults) == 101
+    assert f"{gaps - 100} further cells of this column begin a gap" in reading.faults[-1].found
+
+
 def test_order_of_bonds_is_free(tmp_path: Path) -> None:
     sheets = by_bonds(Bond_fit="exact")
     sheets["Curve bonds"][1:] = sheets["Curve bonds"][:0:-1]
