@@ -64,7 +64,7 @@ class BondsPage(TablePage):
         self._bonds = no_bonds()
         self.table.table_model.commit = self._commit
         self.table.paste_callback = self._on_paste
-        self.add_button_ = self.add_button(
+        self.add_one_button = self.add_button(
             "Add a bond", "After the selected one, at par on the curve (Insert)", self.add
         )
         self.remove_button = self.add_button("Remove", "The selected bonds (Delete)", self.remove)

@@ -52,7 +52,7 @@ class QuotesPage(TablePage):
         self._noun = "quote"
         self.table.table_model.commit = self._commit
         self.table.paste_callback = self._on_paste
-        self.add_button_ = self.add_button(
+        self.add_one_button = self.add_button(
             "Add a quote", "After the selected one, on the curve (Insert)", self.add
         )
         self.remove_button = self.add_button("Remove", "The selected ones (Delete)", self.remove)
@@ -68,7 +68,7 @@ class QuotesPage(TablePage):
             self.table.set_columns(columns)
         self._noun = noun
         self.table.setAccessibleName(name)
-        self.add_button_.setText(f"Add a {noun}")
+        self.add_one_button.setText(f"Add a {noun}")
         self.table.empty_text = f"No {noun}s. Paste terms in years beside rates in percent, or add one."
         self.say(how)
 

@@ -70,6 +70,7 @@ class CurveStation(Station):
         self._shown_book: Book | None = None
         self._pasted: Shown | None = None
         self._refusal = ""
+        self._offered: dict[ChoiceField, tuple[Choice, ...]] = {}
         self.picture = CurvePicture(theme_switch)
         self.misfit = MisfitPicture(theme_switch)
         self.pages = CurvePages(theme_switch)
@@ -192,9 +193,9 @@ class CurveStation(Station):
 
     def _offer(self, field: ChoiceField, choices: tuple[Choice, ...], value: object) -> None:
         """Offer choices without disturbing those that are there already."""
-        if getattr(field, "offered", None) != choices:
+        if self._offered.get(field) != choices:
             field.set_choices(choices)
-            field.__dict__["offered"] = choices
+            self._offered[field] = choices
         field.set_value(value)
 
     def redraw(self) -> None:

@@ -379,7 +379,7 @@ def test_everything_has_a_name_for_a_reader_who_listens(station: CurveStation, b
         assert page.table.accessibleName()
     assert station.misfit.accessibleDescription() == station.misfit.description
     assert "Zero rates from" in station.picture.accessibleDescription()
-    assert station.bonds.add_button_.accessibleDescription().endswith("(Insert)")
+    assert station.bonds.add_one_button.accessibleDescription().endswith("(Insert)")
 
 
 def test_the_reading_line_moves_by_key(station: CurveStation) -> None:
