@@ -241,7 +241,7 @@ def test_a_book_that_is_not_there(run: Run, tmp_path: Path, name: str) -> None:
 
 def test_what_is_not_offered_is_refused(run: Run) -> None:
     """An unknown command, a missing book, a missing target."""
-    for arguments in (["shock", SOURCE], ["value"], ["report", SOURCE], ["--frob"]):
+    for arguments in (["shocks", SOURCE], ["value"], ["report", SOURCE], ["--frob"]):
         status, out, err = run(*arguments)
         assert (status, out) == (2, "")
         assert err.count("\n") == 1
@@ -351,7 +351,7 @@ def test_a_mistyped_command_is_said(run: Run, window: list[Path | None]) -> None
     status, out, err = run("vlaue")
     assert (status, out, window) == (2, "", [])
     assert "no file vlaue" in err
-    assert "check, value, simulate, report" in err
+    assert "check, value, shock, simulate, report" in err
 
 
 def test_without_a_display_the_window_says_why(

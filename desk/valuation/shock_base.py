@@ -10,6 +10,7 @@ from functools import cached_property
 from itertools import pairwise
 
 import numpy as np
+from numpy.typing import NDArray
 
 from desk.book import Book, Fault, HoldingKind, PricedFlows, Side
 from desk.book.arrays import FloatArray, IntArray
@@ -18,10 +19,22 @@ from desk.valuation.measures import BASIS_POINT, value_flows
 from desk.valuation.priced import priced_flows
 from desk.valuation.shock_records import Position
 
-__all__ = ["READY_MADE", "ShockBase", "SideBase", "position", "shock_base"]
+__all__ = ["READY_MADE", "ShockBase", "SideBase", "folded", "position", "shock_base"]
 
 READY_MADE = "flows"
 """The kind of a line that is no holding."""
+
+_VALUED = frozenset({HoldingKind.FUND.value, HoldingKind.PROPERTY.value})
+_WITHOUT_SPREAD = _VALUED | {
+    HoldingKind.DEPOSIT.value,
+    HoldingKind.PAYER_SWAP.value,
+    HoldingKind.RECEIVER_SWAP.value,
+}
+
+
+def folded(name: str) -> str:
+    """A name as it is compared: without case, blanks once."""
+    return " ".join(name.casefold().split())
 
 
 @dataclass(frozen=True, eq=False)
@@ -60,6 +73,31 @@ class SideBase:
     def place(self) -> IntArray:
         """Of each row among `times`, shape (n,)."""
         return self._unique[1]
+
+    @cached_property
+    def folded_names(self) -> NDArray[np.object_]:
+        """Names of the lines as they are compared, shape (k,)."""
+        return np.array([folded(name) for name in self.flows.line_names], dtype=object)
+
+    @cached_property
+    def kind_names(self) -> NDArray[np.object_]:
+        """`kinds`, shape (k,)."""
+        return np.array(self.kinds, dtype=object)
+
+    @cached_property
+    def is_ready_made(self) -> NDArray[np.bool_]:
+        """Which lines are no holdings, shape (k,)."""
+        return np.array([kind == READY_MADE for kind in self.kinds], dtype=np.bool_)
+
+    @cached_property
+    def has_value(self) -> NDArray[np.bool_]:
+        """Which lines are funds or property, shape (k,)."""
+        return np.array([kind in _VALUED for kind in self.kinds], dtype=np.bool_)
+
+    @cached_property
+    def has_spread(self) -> NDArray[np.bool_]:
+        """Which lines are discounted at a spread that can move, shape (k,)."""
+        return np.array([kind not in _WITHOUT_SPREAD for kind in self.kinds], dtype=np.bool_)
 
     @cached_property
     def zero(self) -> FloatArray:

@@ -3,27 +3,21 @@
 from __future__ import annotations
 
 import math
-from collections.abc import Callable, Iterable, Sequence
+from collections.abc import Callable, Sequence
 from dataclasses import dataclass
 
 import numpy as np
 from numpy.typing import NDArray
 
-from desk.book import Fault, HoldingKind, Severity
+from desk.book import Fault, Severity
 from desk.book.arrays import FloatArray
 from desk.book.shock import RATE_MOVES, Move, MoveKind, Shock
 from desk.valuation.measures import BASIS_POINT
 from desk.valuation.moved_curve import CurveMove, Knots
-from desk.valuation.shock_base import READY_MADE, ShockBase
+from desk.valuation.shock_base import ShockBase, SideBase, folded
 
 __all__ = ["CannotShock", "Effects", "effects_of", "shock_fault"]
 
-_VALUED = frozenset({HoldingKind.FUND.value, HoldingKind.PROPERTY.value})
-_WITHOUT_SPREAD = _VALUED | {
-    HoldingKind.DEPOSIT.value,
-    HoldingKind.PAYER_SWAP.value,
-    HoldingKind.RECEIVER_SWAP.value,
-}
 _ALL = ""
 
 
@@ -119,39 +113,36 @@ def effects_of(shock: Shock, base: ShockBase) -> Effects:
         return lines
 
     assets, liabilities = base.assets, base.liabilities
-    asset_names, kinds = assets.flows.line_names, np.array(assets.kinds, dtype=object)
     of_kind = _by_kind(shock.moves)
     arrays: dict[str, FloatArray] = {}
 
     for move in of_kind(MoveKind.SPREAD):
-        may = np.array([kind not in _WITHOUT_SPREAD for kind in kinds], dtype=np.bool_)
-        by_default = may & (kinds != READY_MADE)
-        lines = hit(move, _targets(move, asset_names, kinds, may, by_default), "holdings with a spread")
-        spread = arrays.setdefault("spread", np.zeros(len(asset_names)))
+        may = assets.has_spread
+        by_default = may & ~assets.is_ready_made
+        lines = hit(move, _targets(move, assets, may, by_default), "holdings with a spread")
+        spread = arrays.setdefault("spread", np.zeros(may.size))
         spread[lines] += BASIS_POINT * move.size
     for move in of_kind(MoveKind.VALUE):
-        may = np.array([kind in _VALUED for kind in kinds], dtype=np.bool_)
-        lines = hit(move, _targets(move, asset_names, kinds, may, may), "funds and property")
+        may = assets.has_value
+        lines = hit(move, _targets(move, assets, may, may), "funds and property")
         share = move.size
         if share < -1.0:
             tell("brings funds below zero", "a fall of at most 100 %", "They count as worth nothing.")
             share = -1.0
-        arrays.setdefault("value", np.ones(len(asset_names)))[lines] *= 1.0 + share
+        arrays.setdefault("value", np.ones(may.size))[lines] *= 1.0 + share
 
-    names = liabilities.flows.line_names
-    none = np.array([READY_MADE] * len(names), dtype=object)
-    all_lines = np.ones(len(names), dtype=np.bool_)
+    every = np.ones(len(liabilities.flows.line_names), dtype=np.bool_)
     for move in of_kind(MoveKind.AMOUNT, MoveKind.TIME, MoveKind.DECLINE):
-        lines = hit(move, _targets(move, names, none, all_lines, all_lines), "lines of liabilities")
+        lines = hit(move, _targets(move, liabilities, every, every), "lines of liabilities")
         if move.kind is MoveKind.AMOUNT:
-            arrays.setdefault("amount", np.ones(len(names)))[lines] *= 1.0 + move.size
+            arrays.setdefault("amount", np.ones(every.size))[lines] *= 1.0 + move.size
         elif move.kind is MoveKind.TIME:
-            arrays.setdefault("later", np.zeros(len(names)))[lines] += move.size
+            arrays.setdefault("later", np.zeros(every.size))[lines] += move.size
         elif move.size <= -1.0:
             left_out += 1
             tell("lets amounts decline by 100 % a year or more", "a share above -100 %", "It is left out.")
         else:
-            arrays.setdefault("growth", np.zeros(len(names)))[lines] += math.log1p(move.size)
+            arrays.setdefault("growth", np.zeros(every.size))[lines] += math.log1p(move.size)
 
     inflation_moves = of_kind(MoveKind.INFLATION)
     inflation = None
@@ -178,25 +169,17 @@ def _by_kind(moves: Sequence[Move]) -> Callable[..., list[Move]]:
     return lambda *kinds: [move for move in moves if move.kind in kinds]
 
 
-def _folded(text: str) -> str:
-    return " ".join(text.casefold().split())
-
-
 def _targets(
-    move: Move,
-    names: Iterable[str],
-    kinds: NDArray[np.object_],
-    may: NDArray[np.bool_],
-    by_default: NDArray[np.bool_],
+    move: Move, side: SideBase, may: NDArray[np.bool_], by_default: NDArray[np.bool_]
 ) -> NDArray[np.bool_]:
     """The lines that a move applies to: those of the name, else those of the kind, among those it may."""
-    wanted = _folded(move.target)
+    wanted = folded(move.target)
     if wanted == _ALL:
         return by_default
-    named = np.array([_folded(name) == wanted for name in names], dtype=np.bool_) & may
+    named = np.asarray(side.folded_names == wanted, dtype=np.bool_) & may
     if named.any():
         return named
-    return np.array([kind == wanted for kind in kinds], dtype=np.bool_) & by_default
+    return np.asarray(side.kind_names == wanted, dtype=np.bool_) & by_default
 
 
 def _curve_move(shock: Shock) -> CurveMove | None:

@@ -104,8 +104,8 @@ def test_rates_move_under_the_spreads(base: ShockBase) -> None:
     continuous = replace(basis(), compounding=Compounding.CONTINUOUS)
     higher = replace(continuous, rates=continuous.rates + 0.01)
     book = small_book()
-    found = run_shock(shock_base(replace(book, basis=continuous)), UP)
-    assert found.liabilities == pytest.approx(
+    parallel = run_shock(shock_base(replace(book, basis=continuous)), UP)
+    assert parallel.liabilities == pytest.approx(
         stand(replace(book, basis=higher)).liabilities.present_value, rel=1e-13
     )
 

@@ -7,7 +7,7 @@ to it; our book knows only the price they had today.
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from datetime import date, timedelta
 
 import numpy as np
@@ -78,7 +78,9 @@ def _bond(random: np.random.Generator, curves: TheirCurves, number: int) -> Held
         coupon = float(random.uniform(0.0, 0.07))
         # Ours pays nominal · coupon / frequency, whatever the days; so does their simple day count.
         bond = ql.FixedRateBond(0, nominal, dates, [coupon], ql.SimpleDayCounter())
-        extra = {"kind": HoldingKind.BOND, "coupon": coupon, "day_count": DayCount.THIRTY_360}
+        holding = Holding(
+            f"held {number}", HoldingKind.BOND, nominal, coupon, 12 // months, end, DayCount.THIRTY_360
+        )
     else:
         current, margin = float(random.uniform(0.0, 0.05)), float(random.uniform(-0.005, 0.02))
         index = ql.IborIndex(
@@ -89,20 +91,13 @@ def _bond(random: np.random.Generator, curves: TheirCurves, number: int) -> Held
         for when in list(dates)[:-1]:
             if when <= day(TODAY):
                 index.addFixing(when, current - margin, True)
-        extra = {
-            "kind": HoldingKind.FLOATER, "coupon": 0.0, "day_count": count, "start_date": begin,
-            "current_rate": current, "margin": margin,
-        }  # fmt: skip
+        holding = Holding(
+            f"held {number}", HoldingKind.FLOATER, nominal, 0.0, 12 // months, end, count,
+            start_date=begin, current_rate=current, margin=margin,
+        )  # fmt: skip
     bond.setPricingEngine(ql.DiscountingBondEngine(curves.discounting))
     curves.spread.setValue(spread)
-    holding = Holding(
-        name=f"held {number}",
-        nominal=nominal,
-        frequency=12 // months,
-        maturity=end,
-        market_value=bond.NPV(),
-        **extra,
-    )
+    holding = replace(holding, market_value=bond.NPV())
     return Held(bond, spread, holding)
 
 
