@@ -75,15 +75,16 @@ def test_text_names_sets_sources_and_bands(run: Run) -> None:
     assert CAUTION.split()[0] in out
 
 
-def test_sets_by_name_and_from_a_folder(run: Run, tmp_path: Path) -> None:
-    """In place of the book's; a set that is not there is told, the others are computed."""
+def test_sets_by_name_and_from_a_folder(run: Run, insurer: Book, tmp_path: Path) -> None:
+    """In place of those the book asks for, after its own; a set that is not there is told."""
     text = "# Set: House\n# Source: us\nShock,Move,Size\nSmall,parallel,5\nWild,parallel,-9000\n"
     (tmp_path / "house.csv").write_text(text, encoding="utf-8")
     status, out, err = run(
         "shock", SOURCE, "--json", "--set", "house", "--set", "Nothing", "--sets-from", tmp_path
     )
     assert status == 0
-    assert [shock["name"] for shock in json.loads(out)["shocks"]] == ["Small"]
+    names = [shock["name"] for shock in json.loads(out)["shocks"]]
+    assert names == [*(shock.name for shock in insurer.shocks), "Small"]
     lines = err.strip().split("\n")
     assert len(lines) == 2
     assert "'Nothing'" in lines[0]
@@ -131,7 +132,9 @@ def test_a_books_own_shocks_come_first(insurer: Book) -> None:
     table = tasks.shock(book)
     assert [result.name for result in table.results] == ["Mine", "Rates up", "Rates down"]
     assert table.provenance.settings == (("sets", "Solvency II rates"),)
-    assert tasks.shock(insurer).provenance.settings == (("sets", "usual for GBP"),)
+    usual = tasks.shock(replace(book, shock_settings=ShockSettings()))
+    assert usual.provenance.settings == (("sets", "usual for GBP"),)
+    assert "Steepener" in [result.name for result in usual.results]
     none = tasks.shock(
         replace(book, basis=replace(book.basis, currency="XTS"), shock_settings=ShockSettings())
     )
