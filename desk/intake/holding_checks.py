@@ -304,7 +304,7 @@ def check_indexation(
             kinds.among([LINKED]),
             "a linked bond needs expected inflation, which the book does not have",
             'a sheet "Inflation" with terms and rates',
-            "Add the sheet; without it the bond cannot follow an index.",
+            "The amounts count as they stand today; add the sheet.",
             mild=True,
         )
 

@@ -89,7 +89,7 @@ def read_line_terms(
             follows,
             "{} needs expected inflation, which the book does not have",
             'a sheet "Inflation" with terms and rates',
-            "Add the sheet; without it the line cannot follow an index.",
+            "The amounts count as they stand today; add the sheet.",
             mild=True,
         )
     _check_lines(cells["Line"], sides, names, lines)

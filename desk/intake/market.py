@@ -68,7 +68,8 @@ def read_volatilities(table: Table, faults: FaultList) -> Volatilities | None:
     frequency = check_frequencies(table, cells["Frequency"], frequency, every, "payment", faults)
     shift = np.where(np.isnan(shift), 0.0, shift)
     _check_twice(cells["Instrument"], list(zip(instruments, expiry, length, strike, kinds, strict=True)))
-    if faults.grave_count > before or np.isnan(expiry).any() or np.isnan(volatility).any():
+    unread = np.isnan(expiry) | np.isnan(volatility) | ~known
+    if faults.grave_count > before or unread.any():
         return None
     return Volatilities(
         tuple(own for own in instruments if own is not None),

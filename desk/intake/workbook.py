@@ -200,6 +200,12 @@ class _Reader:
         table = self.tables.get(name)
         return ItemSheet(table, self.faults) if table is not None and len(table.fields) == 2 else None
 
+    @property
+    def _has_inflation(self) -> bool:
+        """Whether there is expected inflation, or a sheet that is meant to hold it."""
+        table = self._used.get(FIRST.inflation)
+        return FIRST.inflation in self._found and (table is None or table.rows.size > 0)
+
     def name_of(self, name: str) -> str:
         """What the source calls a sheet of the book."""
         return self._found[name].name if name in self._found else name
@@ -233,7 +239,7 @@ class _Reader:
                 used["Holdings"],
                 faults,
                 valuation_date=valuation_date,
-                has_inflation=FIRST.inflation in self._found,
+                has_inflation=self._has_inflation,
             )
         asset_flows: FlowTable | None = FlowTable.empty()
         if "Asset flows" in used:
@@ -268,7 +274,7 @@ class _Reader:
                 used["Line terms"],
                 faults,
                 lines={Side.LIABILITIES: lines, Side.ASSETS: received},
-                has_inflation=FIRST.inflation in self._found,
+                has_inflation=self._has_inflation,
             )
         if "Shocks" in used:
             held = [holding.name for holding in holdings]

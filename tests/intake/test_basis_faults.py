@@ -159,6 +159,13 @@ CASES = [
     Spoilt("inflation in per cent", put("Inflation", "B2", 2.5), "Inflation!B2", "which is 250 %"),
     Spoilt("inflation volatility", item("Basis", "Inflation volatility", -0.1), "Basis!B12", "is -0.1"),
     Spoilt("inflation items alone", drop("Inflation"), "Basis!B12", "Inflation volatility is not used", MILD),
+    Spoilt(
+        "linked beside an empty sheet",
+        lambda s: s.update({"Inflation": [["Term", "Rate"]]}),
+        f"{LT}!C4",
+        "needs expected inflation",
+        MILD,
+    ),
     Spoilt("linked without", drop("Inflation"), f"{LT}!C4", "needs expected inflation", MILD),
     Spoilt(
         "linked bond without",

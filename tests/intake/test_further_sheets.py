@@ -281,3 +281,24 @@ def test_today_counts_as_past_for_a_bond_and_one_day_more_does_not(tmp_path: Pat
     book = book_of(sheets, tmp_path)
     assert book.basis.bonds is not None
     assert book.basis.bonds.maturity[0] == np.datetime64("2026-10-01")
+
+
+def _without(name: str, headings: set[object]) -> Sheets:
+    """The wide book with some columns of a sheet taken out."""
+    sheets = wide_sheets()
+    kept = [place for place, heading in enumerate(sheets[name][0]) if heading not in headings]
+    sheets[name] = [[row[place] for place in kept if place < len(row)] for row in sheets[name]]
+    return sheets
+
+
+@pytest.mark.parametrize("name", NOTED)
+def test_any_heading_may_be_missing(name: str, tmp_path: Path) -> None:
+    """The book is read to its end, and what is missing is said on that sheet."""
+    for heading in SHEETS[name].wanted:
+        if heading in wide_sheets()[name][0]:
+            reading = read(_without(name, {heading}), tmp_path)
+            assert f'the heading "{heading}" is missing' in [fault.found for fault in reading.grave]
+            assert {fault.sheet for fault in reading.grave} == {name}
+    reading = read(_without(name, set(SHEETS[name].optional)), tmp_path)
+    assert {fault.sheet for fault in reading.grave} <= {name}
+    assert (reading.book is None) == bool(reading.grave)
