@@ -28,15 +28,12 @@ from __future__ import annotations
 
 import math
 from collections.abc import Callable
-from typing import TYPE_CHECKING
 
 import numpy as np
 from numpy.typing import ArrayLike, NDArray
 
-if TYPE_CHECKING:
-    from scipy.sparse import csr_array
-
 from desk.rates.black_karasinski_grid import StateChain, StateFunction, fit_points, fitted
+from desk.rates.black_karasinski_lattice import ON_GRID, Lattice, LogRateLaw, operators
 from desk.rates.black_karasinski_walk import BlackKarasinskiWalk
 from desk.rates.curve import DiscountCurve
 from desk.rates.limits import first_integral
@@ -50,13 +47,10 @@ _REACH = 9.0
 # Points, and numbers of the state prices, beyond which a fit takes too long and too much memory.
 _MOST_POINTS = 6000
 _MOST_NUMBERS = 20_000_000
-_ON_GRID = 1e-9
-_ITERATIONS = 60
+# The farthest of ln r from α: rates 1e26 times as high.
+_FARTHEST = 60.0
 # Standard deviations of a step, and points, over which a payoff with kinks is integrated.
 _PAYOFF_REACH, _PAYOFF_POINTS = 8.0, 4001
-# Quadrature over the noise of a part of a step.
-_NODE, _WEIGHT = np.polynomial.hermite_e.hermegauss(12)
-_WEIGHT = _WEIGHT / _WEIGHT.sum()
 
 
 class BlackKarasinskiRates:
@@ -115,79 +109,36 @@ class BlackKarasinskiRates:
         self.mean_reversion, self.volatility, self.risk_price = mean_reversion, volatility, risk_price
         self.steps_per_year = int(steps_per_year)
         self._step = 1.0 / self.steps_per_year
-        count = max(1, math.ceil(horizon * self.steps_per_year - _ON_GRID))
+        self._law = LogRateLaw(mean_reversion, volatility, risk_price)
+        too_much = (
+            f"{horizon:g} years in {steps_per_year} steps a year are too much to be worked out: take a "
+            "shorter horizon, fewer steps, a smaller volatility, or a larger mean reversion"
+        )
+        if horizon * self.steps_per_year > _MOST_NUMBERS:
+            raise ValueError(too_much)
+        count = max(1, math.ceil(horizon * self.steps_per_year - ON_GRID))
         self.horizon = count * self._step
         low, high = self._span(self.horizon)
-        decay, noise = self._decay(self._step), self._noise(self._step)
+        if not max(-low, high) < _FARTHEST:
+            raise ValueError(too_much)
         try:
-            most = min(_MOST_POINTS, _MOST_NUMBERS // count)
-            self._chain = StateChain(low, high, decay=decay, noise=noise, most=most)
+            chain = StateChain(
+                low,
+                high,
+                decay=self._law.decay(self._step),
+                noise=self._law.noise(self._step),
+                most=min(_MOST_POINTS, _MOST_NUMBERS // count),
+            )
         except ValueError as problem:
-            raise ValueError(
-                f"{self.horizon:g} years in {self.steps_per_year} steps a year are too much to be worked out "
-                f"({problem}): take a shorter horizon, fewer steps, or a larger mean reversion"
-            ) from None
-        self._growth = np.exp(self._chain.point)
-        self._mean, self._back = _operators(*self._chain.bands())
-        self._level = np.empty(count)
-        self._price = np.empty((count + 1, self._chain.count))
-        self.fit_error = self._fit(np.asarray(np.arange(count + 1) * self._step, dtype=np.float64))
+            raise ValueError(too_much) from problem
+        self._lattice = Lattice(curve, self._law, chain, step=self._step, count=count)
+        self.fit_error = self._lattice.fit_error
         self._actual: FloatArray | None = None
-
-    def _decay(self, step: float) -> float:
-        return math.exp(-self.mean_reversion * step)
-
-    def _noise(self, step: float) -> float:
-        """Standard deviation of x after a time."""
-        return self.volatility * math.sqrt(float(first_integral(2.0 * self.mean_reversion, step)))
-
-    def _shift(self, step: float) -> float:
-        """Mean of x after a time under the real-world measure."""
-        return self.volatility * self.risk_price * float(first_integral(self.mean_reversion, step))
 
     def _span(self, time: float) -> tuple[float, float]:
         """Range of x that is at all likely under either measure."""
-        reach, shift = _REACH * self._noise(time), self._shift(time)
+        reach, shift = _REACH * self._law.noise(time), self._law.shift(time)
         return min(0.0, shift) - reach, max(0.0, shift) + reach
-
-    def _fit(self, node: FloatArray) -> float:
-        """Find α for every step; the largest relative error at the nodes."""
-        target = -self._curve.zero(node) * node
-        forward = -np.diff(target) / self._step
-        if not (np.isfinite(forward).all() and forward.min() > 0.0):
-            place = int(np.argmin(np.where(np.isfinite(forward), forward, -np.inf)))
-            raise ValueError(
-                f"the lognormal model needs forward rates above 0, but from {node[place]:g} to "
-                f"{node[place + 1]:g} years the curve's is {forward[place]:.4%}"
-            )
-        self._price[0] = 0.0
-        self._price[0, self._chain.start] = 1.0
-        half, worst = 0.5 * self._step * self._growth, 0.0
-        level = float(forward[0])
-        for step in range(forward.size):
-            price = self._price[step]
-            for _ in range(_ITERATIONS):
-                edge = np.exp(-level * half)
-                slope = -half * edge
-                after, after_slope = self._mean @ edge, self._mean @ slope
-                total = float(price @ (edge * after))
-                change = float(price @ (slope * after + edge * after_slope)) / total
-                gap = math.log(total) - float(target[step + 1])
-                move = gap / change
-                # ln of a mean of exponentials is convex in the level: only the first step can go too far.
-                level = level - move if move < level else 0.5 * level
-                if abs(move) <= 1e-15 * level or abs(gap) < 1e-15:
-                    break
-            else:
-                if not abs(gap) < 1e-11:
-                    raise ValueError(f"no rate level meets the curve at {node[step + 1]:g} years")
-            self._level[step] = math.log(level)
-            edge = np.exp(-level * half)
-            self._price[step + 1] = edge * (self._back @ (edge * price))
-            worst = max(
-                worst, abs(math.expm1(math.log(float(self._price[step + 1].sum())) - target[step + 1]))
-            )
-        return worst
 
     @property
     def curve(self) -> DiscountCurve:
@@ -235,10 +186,10 @@ class BlackKarasinskiRates:
 
     def _actual_discount(self) -> FloatArray:
         """``E[1/R]`` under the real-world measure at every node."""
-        _, back = _operators(*self._chain.bands(shift=self._shift(self._step)))
-        price, result = self._price[0], np.ones(self._level.size + 1)
-        for number in range(self._level.size):
-            edge = self._edge(number)
+        _, back = operators(*self._lattice.chain.bands(shift=self._law.shift(self._step)))
+        price, result = self._lattice.price[0], np.ones(self._lattice.level.size + 1)
+        for number in range(self._lattice.level.size):
+            edge = self._lattice.edge(number)
             price = edge * (back @ (edge * price))
             result[number + 1] = price.sum()
         return result
@@ -253,7 +204,7 @@ class BlackKarasinskiRates:
         """Number of the node at a time."""
         place = time * self.steps_per_year
         node = round(place) if math.isfinite(place) else -1
-        if abs(place - node) > _ON_GRID * max(1.0, place) or not 0 <= node <= self._level.size:
+        if abs(place - node) > ON_GRID * max(1.0, place) or not 0 <= node <= self._lattice.level.size:
             raise ValueError(
                 f"{time:g} years is no node of the model: nodes are {self.steps_per_year} a year up to its "
                 f"horizon of {self.horizon:g} years"
@@ -262,80 +213,11 @@ class BlackKarasinskiRates:
 
     def _node_level(self, node: int) -> float:
         """α at a node, halfway between those of the steps that meet there; today that of the curve."""
-        last = self._level.size - 1
+        last = self._lattice.level.size - 1
         if node == 0:
             today = float(self._curve.forward(0.0, 0.0))
-            return math.log(today) if today > 0.0 else float(self._level[0])
-        return 0.5 * float(self._level[node - 1] + self._level[min(node, last)])
-
-    def _edge(self, step: int, growth: FloatArray | None = None) -> FloatArray:
-        """d: what either end of a step takes off, at the points or where else ``e^x`` is given."""
-        part = 0.5 * self._step * math.exp(float(self._level[step]))
-        return np.asarray(np.exp(-part * (self._growth if growth is None else growth)))
-
-    def _sweep(
-        self, wanted: dict[int, FloatArray], time: FloatArray, amount: FloatArray
-    ) -> dict[int, FloatArray]:
-        """Values of flows due at or after each node, at the states x wanted there.
-
-        Amounts have shape (k, c), states (m,), values (m, c).
-        """
-        place = np.asarray(time * self.steps_per_year)
-        if time.size and not (np.isfinite(place).all() and place.max() <= self._level.size + _ON_GRID):
-            raise ValueError(
-                f"a flow is due after the model's horizon of {self.horizon:g} years: take a longer one"
-            )
-        nearest = np.rint(place)
-        whole = np.abs(place - nearest) <= _ON_GRID * np.maximum(1.0, place)
-        step = np.where(whole, nearest, np.floor(place)).astype(np.int64)
-        first = min(wanted)
-        order = np.argsort(step, kind="stable")
-        order = order[step[order] >= first]
-        top = max(int(step[order[-1]]) if order.size else first, max(wanted))
-        starts = np.searchsorted(step[order], np.arange(first, top + 2), side="left")
-        later: FloatArray = np.zeros((self._chain.count, amount.shape[1]))
-        found: dict[int, FloatArray] = {}
-        for number in range(top, first - 1, -1):
-            due = order[starts[number - first] : starts[number - first + 1]]
-            paid, between = amount[due[whole[due]]].sum(axis=0), due[~whole[due]]
-            # What is due within the step, at the node itself, and after the step.
-            fractions = self._fractions(number, time[between])
-            edge = self._edge(number)[:, None] if number < self._level.size else np.ones((1, 1))
-            ahead = edge * later
-            if number in wanted:
-                state = wanted[number]
-                growth = np.exp(state)
-                value = self._chain.rows(state) @ ahead
-                if number < self._level.size:
-                    value *= self._edge(number, growth)[:, None]
-                value += paid
-                if between.size:
-                    value += self._partial(number, time[between], state, growth) * fractions @ amount[between]
-                found[number] = value
-            if number > first:
-                later = edge * (self._mean @ ahead)
-                later += paid
-                if between.size:
-                    part = self._partial(number, time[between], self._chain.point, self._growth)
-                    later += part * fractions @ amount[between]
-        return found
-
-    def _partial(self, step: int, time: FloatArray, state: FloatArray, growth: FloatArray) -> FloatArray:
-        """Values at a node of 1 paid within the step that begins there, shape (m, k), before scaling."""
-        result = np.empty((state.size, time.size))
-        for column, one in enumerate(time.tolist()):
-            length = one - step * self._step
-            after = np.exp(self._decay(length) * state[:, None] + self._noise(length) * _NODE)
-            part = 0.5 * length * math.exp(float(self._level[step]))
-            result[:, column] = np.exp(-part * (growth[:, None] + after)) @ _WEIGHT
-        return result
-
-    def _fractions(self, step: int, time: FloatArray) -> FloatArray:
-        """Numbers near 1 with which `_partial` meets today's curve."""
-        if time.size == 0:
-            return time
-        model = self._price[step] @ self._partial(step, time, self._chain.point, self._growth)
-        return np.asarray(self._curve.discount(time) / model)
+            return math.log(today) if today > 0.0 else float(self._lattice.level[0])
+        return 0.5 * float(self._lattice.level[node - 1] + self._lattice.level[min(node, last)])
 
     def value_flows(self, nodes: ArrayLike, time: ArrayLike, amount: ArrayLike) -> list[StateFunction]:
         """The value, at each of several nodes, of the flows due at or after it as a function of the state.
@@ -372,7 +254,7 @@ class BlackKarasinskiRates:
         wanted = {number: fit_points(*ends) for number, ends in ranges.items()}
         times, place = np.unique(due, return_inverse=True)
         paid_in = np.bincount(place, weights=paid, minlength=times.size).astype(np.float64)
-        values = self._sweep(wanted, times, paid_in[:, None])
+        values = self._lattice.sweep(wanted, times, paid_in[:, None])
         made = {
             number: fitted(value[:, 0], *ranges[number], self._node_level(number))
             for number, value in values.items()
@@ -407,12 +289,12 @@ class BlackKarasinskiRates:
         """
         node, rate = self._node(time), np.asarray(state, dtype=np.float64)[0]
         end = np.asarray(maturity, dtype=np.float64)
-        if end.size and not end.min() >= time - _ON_GRID:
+        if end.size and not end.min() >= time - ON_GRID:
             raise ValueError("`maturity` must not be before `time`")
         if rate.size and not rate.min() > 0.0:
             raise ValueError("`state` must hold rates above 0")
         x = np.log(rate.ravel()) - self._node_level(node)
-        values = self._sweep({node: x}, end.ravel(), np.eye(end.size))[node]
+        values = self._lattice.sweep({node: x}, end.ravel(), np.eye(end.size))[node]
         return np.asarray(values.T.reshape(end.shape + rate.shape))
 
     def payoff_value(self, time: float, payoff: Callable[[FloatArray], FloatArray]) -> float:
@@ -431,16 +313,19 @@ class BlackKarasinskiRates:
         noise = np.linspace(-_PAYOFF_REACH, _PAYOFF_REACH, _PAYOFF_POINTS)
         weight = np.exp(-0.5 * noise**2)
         weight /= weight.sum()
-        edge = self._edge(node - 1)
+        edge = self._lattice.edge(node - 1)
         # A row a point: in parts, so that the memory stays small.
         total, group = 0.0, 64
-        scale = 0.5 * self._step * math.exp(float(self._level[node - 1]))
-        for start in range(0, self._chain.count, group):
+        scale = 0.5 * self._step * math.exp(float(self._lattice.level[node - 1]))
+        for start in range(0, self._lattice.chain.count, group):
             part = slice(start, start + group)
-            state = self._decay(self._step) * self._chain.point[part, None] + self._noise(self._step) * noise
+            state = (
+                self._law.decay(self._step) * self._lattice.chain.point[part, None]
+                + self._law.noise(self._step) * noise
+            )
             paid = payoff(np.exp(self._node_level(node) + state).reshape(1, -1)).reshape(state.shape)
             mean = (np.exp(-scale * np.exp(state)) * paid) @ weight
-            total += float((self._price[node - 1, part] * edge[part]) @ mean)
+            total += float((self._lattice.price[node - 1, part] * edge[part]) @ mean)
         return total
 
     def walk(
@@ -454,29 +339,17 @@ class BlackKarasinskiRates:
             If a step is not a whole number of steps of the grid.
         """
         parts = round(step * self.steps_per_year) if math.isfinite(step) else 0
-        if parts < 1 or abs(step * self.steps_per_year - parts) > _ON_GRID * parts:
+        if parts < 1 or abs(step * self.steps_per_year - parts) > ON_GRID * parts:
             raise ValueError(
                 f"`step` must be a whole number of the model's steps, {self.steps_per_year} a year"
             )
         return BlackKarasinskiWalk(
-            0.5 * self._step * np.exp(self._level),
-            np.array([self._node_level(node) for node in range(self._level.size + 1)]),
-            decay=self._decay(self._step),
-            shift=self._shift(self._step) if real_world else 0.0,
-            noise=self._noise(self._step),
+            0.5 * self._step * np.exp(self._lattice.level),
+            np.array([self._node_level(node) for node in range(self._lattice.level.size + 1)]),
+            decay=self._law.decay(self._step),
+            shift=self._law.shift(self._step) if real_world else 0.0,
+            noise=self._law.noise(self._step),
             parts=parts,
             size=size,
             rng=rng,
         )
-
-
-def _operators(weight: FloatArray, column: NDArray[np.intp]) -> tuple[csr_array, csr_array]:
-    """A banded matrix and its transpose."""
-    from scipy.sparse import csr_array
-
-    count, width = weight.shape
-    starts = np.arange(0, count * width + 1, width)
-    matrix = csr_array((weight.ravel(), column.ravel(), starts), shape=(count, count))
-    # Columns that were cut off at the ends stand there with weight 0.
-    matrix.sum_duplicates()
-    return matrix, csr_array(matrix.T)

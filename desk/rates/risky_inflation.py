@@ -27,7 +27,7 @@ from numpy.typing import ArrayLike, NDArray
 
 from desk.rates.curve import DiscountCurve
 from desk.rates.gaussian import RateFactor
-from desk.rates.limits import first_integral, product_integral, second_integral
+from desk.rates.limits import first_integral, mixed_integral, product_integral, second_integral
 
 __all__ = ["IndexLaw", "InflationFactor"]
 
@@ -159,3 +159,49 @@ class IndexLaw:
         level = level + 0.5 * self.variance(remaining) - self.covariance(remaining, lag)
         shape = level.shape
         return np.asarray(level), np.broadcast_to(-first_integral(self._speed, remaining), shape).copy()
+
+    def increase_law(
+        self, time: ArrayLike, start: ArrayLike, end: ArrayLike, maturity: ArrayLike
+    ) -> tuple[FloatArray, FloatArray, FloatArray]:
+        """The increase of the index between two later times, paid later still, as seen from `time`.
+
+        ``I(end)/I(start)`` is lognormal. Its mean under the measure of the bond that pays at `maturity` is
+        ``exp(level - exposure · x)``, so that times that bond it is what the increase is worth, and with the
+        variance of its logarithm it values a floor or a cap on the increase by Black's formula.
+
+        Parameters
+        ----------
+        time, start, end, maturity : array_like, shapes that broadcast
+            Rising [years].
+
+        Returns
+        -------
+        level, exposure, variance : ndarray, the broadcast shape
+            The exposure is to the inflation factor and not positive.
+
+        Raises
+        ------
+        ValueError
+            If the times do not rise.
+        """
+        now, first, last, paid = np.broadcast_arrays(
+            *(np.asarray(given, dtype=np.float64) for given in (time, start, end, maturity))
+        )
+        if np.any(first < now) or np.any(last < first) or np.any(paid < last):
+            raise ValueError("`time`, `start`, `end` and `maturity` must rise")
+        ahead, length = first - now, last - first
+        # With s to go until `start` the loading of the increase is e^{-a s} B(a, length), from then on B(a,
+        # s).
+        grown = first_integral(self._speed, length)
+        variance = self._variance * grown**2 * first_integral(2.0 * self._speed, ahead) + self.variance(
+            length
+        )
+        covariance = self.covariance(length, paid - last)
+        for weight, speed in self._links:
+            wait = paid - first
+            known = first_integral(speed, wait) * first_integral(self._speed, ahead)
+            known = known + np.exp(-speed * wait) * mixed_integral(self._speed, speed, ahead)
+            covariance = covariance + weight * grown * known
+        level = self.offset(last) - self.offset(first) + 0.5 * variance - covariance
+        exposure = -np.exp(-self._speed * ahead) * grown
+        return np.asarray(level), np.asarray(exposure), np.asarray(variance)
