@@ -197,7 +197,7 @@ def side_after(
             times, place = np.unique(time, return_inverse=True)
             zero = base.book.basis.curve.zero(times)
             moved = zero if effects.curve is None else zero + effects.curve.change(times, zero)
-            _check_sense(shock, times, moved)
+            _check_sense(shock, times, zero, moved)
             exponent = (moved[place] + flows.spread) * time
         elif change is not None:
             exponent = exponent + (change * side.times)[side.place]
@@ -226,20 +226,21 @@ def curve_change(side: SideBase, shock: Shock, move: CurveMove | None) -> FloatA
     if move is None:
         return None
     change = move.change(side.times, side.zero)
-    _check_sense(shock, side.times, side.zero + change)
+    _check_sense(shock, side.times, side.zero, side.zero + change)
     return change
 
 
-def _check_sense(shock: Shock, time: FloatArray, zero: FloatArray) -> None:
-    """Refuse discount factors that make no sense."""
-    exponent = zero * time
+def _check_sense(shock: Shock, time: FloatArray, before: FloatArray, zero: FloatArray) -> None:
+    """Refuse discount factors that make no sense, but for those that made none before the shock."""
+    allowed = np.minimum(before * time, 0.0) - np.log(_MOST_DISCOUNT)
     # Written so that a NaN fails too.
-    if exponent.size and not exponent.min() >= -np.log(_MOST_DISCOUNT):
-        worst = int(np.nanargmin(exponent)) if np.isfinite(exponent).any() else 0
+    senseless = ~(zero * time >= allowed)
+    if senseless.any():
+        first = int(np.argmax(senseless))
         raise CannotShock(
             shock_fault(
                 shock,
-                f"gives a zero rate of {zero[worst]:.2%} at {time[worst]:g} years",
+                f"gives a zero rate of {zero[first]:.2%} at {time[first]:g} years",
                 f"rates at which no discount factor is above {_MOST_DISCOUNT:g}",
                 "It is left out; state smaller moves or a floor.",
             )
