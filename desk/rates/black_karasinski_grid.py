@@ -1,9 +1,11 @@
 """Functions of one Gaussian state: on a chain of points that carries them through time, and as fitted series.
 
-References ---------- Trefethen, L.N. and Weideman, J.A.C. (2014), The exponentially convergent trapezoidal
-rule, SIAM Review 56. Trefethen, L.N. (2013), Approximation Theory and Approximation Practice, chapters 3
-(Chebyshev points) and 8 (convergence for functions that are analytic in a strip). Kress, R. (2014), Linear
-Integral Equations, chapter 12 (Nyström's interpolation). Chapters from memory.
+References
+----------
+Trefethen, L.N. and Weideman, J.A.C. (2014), The exponentially convergent trapezoidal rule, SIAM Review 56.
+Trefethen, L.N. (2013), Approximation Theory and Approximation Practice, chapters 3 (Chebyshev points) and 8
+(convergence for functions that are analytic in a strip). Kress, R. (2014), Linear Integral Equations, chapter
+12 (Nyström's interpolation). Chapters from memory.
 """
 
 from __future__ import annotations

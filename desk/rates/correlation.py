@@ -1,10 +1,11 @@
 """Correlation matrices: whether one is one, the nearest one where it is not, and roots of covariances.
 
-References ---------- Higham, N.J. (2002), Computing the nearest correlation matrix: a problem from finance,
-IMA Journal of Numerical Analysis 22. Rebonato, R. and Jäckel, P. (1999), The most general methodology to
-create a valid correlation matrix for risk management and option pricing purposes, Journal of Risk 2. Golub,
-G.H. and Van Loan, C.F. (2013), Matrix Computations, section 4.2 (Cholesky). The section numbers are from
-memory.
+References
+----------
+Higham, N.J. (2002), Computing the nearest correlation matrix: a problem from finance, IMA Journal of
+Numerical Analysis 22. Rebonato, R. and Jäckel, P. (1999), The most general methodology to create a valid
+correlation matrix for risk management and option pricing purposes, Journal of Risk 2. Golub, G.H. and Van
+Loan, C.F. (2013), Matrix Computations, section 4.2 (Cholesky). The section numbers are from memory.
 """
 
 from __future__ import annotations

@@ -1,14 +1,16 @@
 """Risky assets and inflation beside a rate model, in one exact joint law.
 
-A vector of assets held with dividends reinvested follows ``dS/S = (r + π) dt + σ dB`` with covariance ``σσᵀ
-dt``; π, the premium, counts under the real-world measure only. The excess ``ln(S_t/(S_0 R_t))`` is a Brownian
+A vector of assets held with dividends reinvested follows ``dS/S = (r + π) dt + σ dB`` with covariance
+``σσᵀ dt``; π, the premium, counts under the real-world measure only. The excess ``ln(S_t/(S_0 R_t))`` is a Brownian
 motion with drift whatever the rates do, and with Gaussian rates it is jointly normal with the factors and
 their integral: a step of a year is as right as a step of a day, and ``S_t/R_t`` has the mean S₀ under the
 pricing measure at every node.
 
-References ---------- Glasserman, P. (2003), Monte Carlo Methods in Financial Engineering, sections 3.2.3
-(several assets) and 3.3 (Gaussian rates). Brigo, D. and Mercurio, F. (2006), Interest Rate Models: Theory and
-Practice, appendix on equity with stochastic rates (place from memory).
+References
+----------
+Glasserman, P. (2003), Monte Carlo Methods in Financial Engineering, sections 3.2.3 (several assets) and 3.3
+(Gaussian rates). Brigo, D. and Mercurio, F. (2006), Interest Rate Models: Theory and Practice, appendix on
+equity with stochastic rates (place from memory).
 """
 
 from __future__ import annotations
@@ -345,7 +347,9 @@ class RiskyMarket:
         ValueError
             If there is no inflation, the times do not go together, or the rates have no such form.
 
-        Notes ----- Seen from today this is ``P(0,T) e^{i(T) T}`` to rounding. With an index observed earlier
+        Notes
+        -----
+        Seen from today this is ``P(0,T) e^{i(T) T}`` to rounding. With an index observed earlier
         it is ``P(0,T) e^{i(S) S}`` times a convexity that a curve alone does not know: 1 for independent
         rates, and for correlated ones with a lag of some months within a few parts in ten thousand of 1.
         """

@@ -9,12 +9,13 @@ rates and ``Y = ∫₀ᵀ x`` both normal,
 
 The rate less the inflation is then a Gaussian short rate in real terms.
 
-References ---------- Jarrow, R. and Yildirim, Y. (2003), Pricing treasury inflation protected securities and
-related derivatives using an HJM model, Journal of Financial and Quantitative Analysis 38: nominal and real
-rates Gaussian, here with an index that has no volatility of its own. Brigo, D. and Mercurio, F. (2006),
-Interest Rate Models: Theory and Practice, part on inflation, chapter on the model of Jarrow and Yildirim.
-Both named from memory; the formulas here are derived from the normal law above and checked by simulation and
-quadrature.
+References
+----------
+Jarrow, R. and Yildirim, Y. (2003), Pricing treasury inflation protected securities and related derivatives
+using an HJM model, Journal of Financial and Quantitative Analysis 38: nominal and real rates Gaussian, here
+with an index that has no volatility of its own. Brigo, D. and Mercurio, F. (2006), Interest Rate Models:
+Theory and Practice, part on inflation, chapter on the model of Jarrow and Yildirim. Both named from memory;
+the formulas here are derived from the normal law above and checked by simulation and quadrature.
 """
 
 from __future__ import annotations
