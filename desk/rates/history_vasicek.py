@@ -74,7 +74,12 @@ def fit_vasicek(times: ArrayLike, rates: ArrayLike, *, stationary: bool = False)
             0.01 * volatility,
         ]
     )
-    covariance = observed_covariance(log_likelihood, np.array(estimate), scale=guess)
+    # Where the mean reversion is held at 0 the likelihood still rises beyond: it has no error of its own.
+    free = np.arange(0 if best > 0.0 else 1, 3)
+    covariance = np.full((3, 3), np.nan)
+    covariance[np.ix_(free, free)] = observed_covariance(
+        log_likelihood, np.array(estimate), scale=guess, free=free
+    )
     spread = volatility / math.sqrt(2.0 * best) if best > 0.0 else math.inf
     slope = np.array([-0.5 * spread / best, 0.0, spread / volatility]) if best > 0.0 else np.zeros(3)
     return history_fit_record(

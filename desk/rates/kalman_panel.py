@@ -1,8 +1,9 @@
 """A panel of zero rates as a Gaussian state space: its exact log-likelihood, and the Kalman filter itself.
 
 The short rate is ``μ + Σ xᵢ`` with ``dxᵢ = (σᵢλᵢ - aᵢxᵢ) dt + σᵢ dWᵢ`` in the real world and without
-``σᵢλᵢ`` where bonds are priced, so that the zero rate to τ is ``μ + [Σ B(aᵢ,τ) xᵢ - ½V(τ)]/τ``. Each zero rate
-observed carries an independent normal error of one standard deviation; the factors begin in their stationary law.
+``σᵢλᵢ`` where bonds are priced, so that the zero rate to τ is ``μ + [Σ B(aᵢ,τ) xᵢ - ½V(τ)]/τ``. Each zero
+rate observed carries an independent normal error of one standard deviation; the factors begin in their
+stationary law.
 
 The log-likelihood needs no loop over dates: with the factors at all dates as one vector x,
 ``p(y) = p(y|x) p(x) / p(x|y)`` for every x, taken at the mean of ``p(x|y)``. The precision of that law is a
@@ -101,7 +102,8 @@ class PanelModel:
     @property
     def mean(self) -> FloatArray:
         """Long-run means of the factors in the real world, ``σᵢλᵢ/aᵢ``, shape (k,)."""
-        return np.array(self.volatility) * np.array(self.risk_price) / np.array(self.mean_reversion)
+        drift = np.array(self.volatility) * np.array(self.risk_price)
+        return np.asarray(drift / np.array(self.mean_reversion))
 
     def covariance(self, step: ArrayLike) -> FloatArray:
         """Covariance of what a step adds to the factors, the shape of `step` and (k, k)."""

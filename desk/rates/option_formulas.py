@@ -141,7 +141,8 @@ def implied_volatility(
     least, most = total(low), total(high)
     size = np.maximum(np.abs(target), 1e-300)
     possible = (target >= least - 1e-12 * size) & (target <= most)
-    at_least = target <= least
+    # The value of exercise up to rounding: any small volatility would do.
+    at_least = target - least <= 1e-13 * size
     for _ in range(_TURNS):
         found = total(volatility)
         above = found > target
@@ -150,7 +151,7 @@ def implied_volatility(
         slope = np.sum(np.where(used, weight * slopes, 0.0), axis=1)
         with np.errstate(divide="ignore", invalid="ignore", over="ignore"):
             stepped = volatility - (found - target) / slope
-        inside = (stepped > low) & (stepped < high)
+        inside = (stepped >= low) & (stepped <= high)
         following = np.where(inside, stepped, 0.5 * (low + high))
         still = np.abs(following - volatility) > _CLOSE * volatility
         volatility = following

@@ -31,6 +31,7 @@ __all__ = ["gaussian_option_prices"]
 FloatArray = NDArray[np.float64]
 
 _POINTS = 16
+_FURTHEST = 60.0  # standard deviations: beyond any chance
 _TURNS = 60
 
 
@@ -141,12 +142,13 @@ def _boundary(amount: FloatArray, along: FloatArray) -> FloatArray:
             worth = amount * np.exp(-np.clip(along * place[..., None], -300.0, 300.0))
             total = np.sum(worth, axis=-1)
             slope = np.sum(worth * along, axis=-1)
-            step = np.where(
-                (total > 0.0) & (slope > 0.0), np.log(np.maximum(total, 1e-300)) * total / slope, 0.0
-            )
-            step = np.clip(step, -20.0, 20.0)
-            place = np.clip(place + step, -60.0, 60.0)
-            if float(np.max(np.abs(step), initial=0.0)) < 1e-13:
+            # Without volatility the payments are worth what they are, whatever u is.
+            flat = np.where(total > 1.0, 2.0 * _FURTHEST, -2.0 * _FURTHEST)
+            moving = (total > 0.0) & (slope > 0.0)
+            step = np.where(moving, np.log(np.maximum(total, 1e-300)) * total / slope, flat)
+            following = np.clip(place + np.clip(step, -20.0, 20.0), -_FURTHEST, _FURTHEST)
+            moved, place = np.abs(following - place), following
+            if float(np.max(moved, initial=0.0)) < 1e-13:
                 break
     return place
 
