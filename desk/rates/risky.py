@@ -1,7 +1,7 @@
 """Risky assets and inflation beside a rate model, in one exact joint law.
 
-A vector of assets held with dividends reinvested follows ``dS/S = (r + π) dt + σ dB`` with covariance
-``σσᵀ dt``; π, the premium, counts under the real-world measure only. The excess ``ln(S_t/(S_0 R_t))`` is a Brownian
+A vector of assets held with dividends reinvested follows ``dS/S = (r + π) dt + σ dB`` with covariance ``σσᵀ
+dt``; π, the premium, counts under the real-world measure only. The excess ``ln(S_t/(S_0 R_t))`` is a Brownian
 motion with drift whatever the rates do, and with Gaussian rates it is jointly normal with the factors and
 their integral: a step of a year is as right as a step of a day, and ``S_t/R_t`` has the mean S₀ under the
 pricing measure at every node.
