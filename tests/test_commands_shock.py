@@ -100,8 +100,9 @@ def test_reaching_a_ratio(run: Run) -> None:
     assert reached["funding_ratio"] == 0.97
     assert len(reached["parallel"]) == 1
     assert reached["least_moves"][0]["distance"] > 0.0
+    assert reached["least_moves"][0]["covariance"].startswith("the rates model")
     status, out, _ = run("shock", SOURCE, "--reach", "0.97")
-    assert "standard deviations away" in out
+    assert "standard deviations away by the rates model" in out
     status, out, err = run("shock", SOURCE, "--reach", "77")
     assert status == 0
     assert "None was found." in out

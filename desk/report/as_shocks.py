@@ -104,6 +104,7 @@ def shocks_object(
             "parallel": [finite(scale) for scale in reached.parallel.scales],
             "least_moves": [
                 {
+                    "covariance": least.source,
                     "distance": finite(least.distance),
                     "moves": [
                         {"term": term, "move": finite(move)}
@@ -244,9 +245,7 @@ def _sources(found: ShockTable) -> list[str]:
     sources = dict.fromkeys(
         (result.set_name or result.name, result.source) for result in found.results if result.source
     )
-    return (
-        ["\n".join(f"{printable(name)}: {printable(source)}" for name, source in sources)] if sources else []
-    )
+    return ["\n".join(_wrapped(f"{printable(name)}: {printable(source)}") for name, source in sources)]
 
 
 def _reached(reached: Reached) -> str:
@@ -256,7 +255,8 @@ def _reached(reached: Reached) -> str:
         listed = ", ".join(grouped(scale, 2) for scale in reached.parallel.scales)
         lines.append(f"Parallel: {listed} basis points")
     for least in reached.least:
-        lines.append(f"Likeliest, {grouped(least.distance, 2)} standard deviations away:")
+        away = f"Likeliest, {grouped(least.distance, 2)} standard deviations away"
+        lines.append(_wrapped(f"{away} by {printable(least.source)}:"))
         moves = [] if least.shock is None else [m for m in least.shock.moves if m.kind is MoveKind.RATE]
         lines.append(
             table(

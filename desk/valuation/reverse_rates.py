@@ -105,6 +105,8 @@ class LeastMove:
         The move as a shock.
     result : ShockResult or None
         Both sides after it, fully revalued.
+    source : str
+        What the covariance comes from.
     fault : Fault or None
         Why there is none, in one line.
     """
@@ -116,6 +118,7 @@ class LeastMove:
     distance: float
     shock: Shock | None
     result: ShockResult | None
+    source: str
     fault: Fault | None = None
 
 
@@ -152,7 +155,7 @@ def covariance_of_model(
     growth = np.array([[float(first_integral(one + two, horizon)) for two in speed] for one in speed])
     state = model.correlation * np.outer(volatility, volatility) * growth
     matrix = loading @ state @ loading.T
-    return KeyRateCovariance(term, 0.5 * (matrix + matrix.T), f"the rates model, over {horizon:g} years")
+    return KeyRateCovariance(term, 0.5 * (matrix + matrix.T), f"the rates model, over {_years(horizon)}")
 
 
 def covariance_of_history(
@@ -202,8 +205,12 @@ def covariance_of_history(
     drift = moves.sum(axis=0) / years.sum()
     scaled = (moves - np.outer(years, drift)) / np.sqrt(years)[:, None]
     matrix = scaled.T @ scaled / (years.size - 1) * horizon
-    source = f"{rows.size:,} dates of the yield history, over {horizon:g} years"
+    source = f"{rows.size:,} dates of the yield history, over {_years(horizon)}"
     return KeyRateCovariance(term, 0.5 * (matrix + matrix.T), source)
+
+
+def _years(horizon: float) -> str:
+    return "a year" if horizon == 1.0 else f"{horizon:g} years"
 
 
 class _Surface:
@@ -300,7 +307,8 @@ def least_move(base: ShockBase, covariance: KeyRateCovariance, *, goal: Goal, le
     )
     shock = Shock(f"Least move, {float(np.linalg.norm(best)):.2f} standard deviations", moves)
     result = run_shock(base, shock, thresholds=base.book.shock_settings.thresholds)
-    return LeastMove(goal, level, covariance.terms, move, float(np.linalg.norm(best)), shock, result)
+    distance = float(np.linalg.norm(best))
+    return LeastMove(goal, level, covariance.terms, move, distance, shock, result, covariance.source)
 
 
 def _starts(surface: _Surface) -> Iterator[FloatArray]:
@@ -358,4 +366,4 @@ def _none(covariance: KeyRateCovariance, goal: Goal, level: float, found: str) -
     """No move does it."""
     fault = Fault(found, "a level that can be reached", "Choose another level, or let rates move more.")
     nothing = np.full(covariance.terms.size, np.nan)
-    return LeastMove(goal, level, covariance.terms, nothing, np.nan, None, None, fault)
+    return LeastMove(goal, level, covariance.terms, nothing, np.nan, None, None, covariance.source, fault)
