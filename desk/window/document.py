@@ -15,15 +15,19 @@ from desk.book import Book, Fault
 from desk.intake.records import Reading
 from desk.scenarios.records import Simulation
 from desk.valuation.records import Standing
+from desk.valuation.shock_records import ShockTable
 from desk.window.history import History
 from desk.window.jobs import Job, Jobs
 from desk.window.valued import Valued, changed_fields, is_outdated, reason, with_faults
+from desk.window.what_if import LiveWhatIf
 
 __all__ = ["Document", "changed_fields"]
 
 _VALUED = frozenset({"basis", "liabilities", "holdings", "asset_flows", "line_terms"})
 STANDING_FIELDS = _VALUED | {"second_basis"}
 """Parts of a book that its standings follow from, on the first basis and on the second."""
+SHOCK_FIELDS = _VALUED | {"shocks", "shock_settings"}
+"""Parts of a book that its table of shocks follows from."""
 SIMULATION_FIELDS = _VALUED | {"rates_model", "risky_assets", "run", "scenario_set"}
 """Parts of a book that a simulation follows from."""
 
@@ -42,10 +46,14 @@ class Document(QObject):
         The last run that came to its end.
     path : Path or None
         Where the book was opened from or last saved to.
+    shocks : Valued of ShockTable
+        The book under its shocks, once `request_shocks` asked for it.
+    what_if : LiveWhatIf
+        A shock that is tried out; it never changes the book.
 
     Signals
     -------
-    reading_changed, book_changed, standing_changed, simulation_changed, history_changed
+    reading_changed, book_changed, standing_changed, shocks_changed, simulation_changed, history_changed
         The attribute changed, or whether it is stale.
     modified_changed(bool)
     failed(str)
@@ -55,6 +63,7 @@ class Document(QObject):
     reading_changed = Signal()
     book_changed = Signal()
     standing_changed = Signal()
+    shocks_changed = Signal()
     simulation_changed = Signal()
     history_changed = Signal()
     modified_changed = Signal(bool)
@@ -67,12 +76,14 @@ class Document(QObject):
         *,
         value: Callable[..., Standing] | None = None,
         simulate: Callable[..., Simulation] | None = None,
+        shock: Callable[..., ShockTable] | None = None,
     ) -> None:
-        """Start empty; `value` and `simulate` stand in for the tasks of those names."""
+        """Start empty; `value`, `simulate` and `shock` stand in for the tasks of those names."""
         super().__init__(parent)
         self._jobs = jobs
         self._value = value or tasks.value
         self._simulate = simulate or tasks.simulate
+        self._shock = shock or tasks.shock
         self.reading: Reading | None = None
         self.source: Reading | None = None
         self.path: Path | None = None
@@ -92,6 +103,16 @@ class Document(QObject):
             on_changed=self.standing_changed.emit,
             on_failed=lambda why: self.failed.emit(f"The second basis could not be valued: {why}"),
         )
+        self.shocks = Valued(
+            jobs,
+            title="Shocking the book",
+            value=lambda: self._shock,
+            names=SHOCK_FIELDS,
+            on_changed=self.shocks_changed.emit,
+            on_failed=lambda why: self.failed.emit(f"The shocks came to nothing: {why}"),
+        )
+        self._shocks_asked: Book | None = None
+        self.what_if = LiveWhatIf(jobs, _VALUED, self)
         self._wants_comparison = True
         self._simulation_faults: tuple[Fault, ...] = ()
         self.simulation: Simulation | None = None
@@ -122,7 +143,9 @@ class Document(QObject):
             return ()
         if self.reading is not self.source:
             return self.reading.faults
-        further = dict.fromkeys((*self._first.faults, *self._second.faults, *self._simulation_faults))
+        further = dict.fromkeys(
+            (*self._first.faults, *self._second.faults, *self.shocks.faults, *self._simulation_faults)
+        )
         return (*self.reading.faults, *further)
 
     def open_reading(self, reading: Reading) -> None:
@@ -140,6 +163,9 @@ class Document(QObject):
         self._history.start(reading.book)
         self._first.forget()
         self._second.forget()
+        self.shocks.forget()
+        self._shocks_asked = None
+        self.what_if.forget()
         self._wants_comparison = True
         self.simulation = self._simulation_book = None
         self._simulation_faults = ()
@@ -148,6 +174,7 @@ class Document(QObject):
         self.reading_changed.emit()
         self.book_changed.emit()
         self.standing_changed.emit()
+        self.shocks_changed.emit()
         self.simulation_changed.emit()
         self._tell_history()
 
@@ -228,11 +255,13 @@ class Document(QObject):
     def _book_replaced(self) -> None:
         book = self._open_book()
         stale = (self.standing_is_stale, self.second_is_stale, self._simulation_stale)
-        had_second = self._second.standing is not None
+        had_second = self._second.result is not None
         self._simulation_stale = is_outdated(self._simulation_book, book, SIMULATION_FIELDS)
+        self.shocks.note(book)
         self._request_standings()
+        self.what_if.follow(book)
         self.book_changed.emit()
-        lost_second = had_second and self._second.standing is None
+        lost_second = had_second and self._second.result is None
         if (self.standing_is_stale, self.second_is_stale) != stale[:2] or lost_second:
             self.standing_changed.emit()
         if self._simulation_stale != stale[2]:
@@ -255,7 +284,7 @@ class Document(QObject):
     @property
     def standing(self) -> Standing | None:
         """Of the book, or of a former version of it while `standing_is_stale`."""
-        return self._first.standing
+        return self._first.result
 
     @property
     def standing_faults(self) -> tuple[Fault, ...]:
@@ -275,7 +304,7 @@ class Document(QObject):
     @property
     def second_standing(self) -> Standing | None:
         """On the second basis of the book, or of a former version of it while `second_is_stale`."""
-        return self._second.standing
+        return self._second.result
 
     @property
     def second_failure(self) -> str:
@@ -300,7 +329,7 @@ class Document(QObject):
     @property
     def comparison(self) -> Standing | None:
         """What the standing is compared with; None while it is compared with nothing."""
-        return self._second.standing if self.is_comparing else None
+        return self._second.result if self.is_comparing else None
 
     @property
     def comparison_is_current(self) -> bool:
@@ -337,6 +366,8 @@ class Document(QObject):
         """Cancel what runs for this book."""
         self._first.stop()
         self._second.stop()
+        self.shocks.stop()
+        self.what_if.stop()
         if self._simulating is not None:
             self._jobs.cancel(self._simulating)
         self._simulating = None
@@ -356,6 +387,15 @@ class Document(QObject):
             self._second.forget()
         else:
             self._second.follow(second, told)
+
+    def request_shocks(self, *, again: bool = False) -> None:
+        """See to it that the table of shocks comes to be that of the book; `again` after a failure."""
+        book = self.book
+        if book is None or (book is self._shocks_asked and not again):
+            return
+        self._shocks_asked = book
+        told = () if self.source is None else self.source.faults
+        self.shocks.follow(book, told)
 
     def run_simulation(self) -> Job:
         """Run the book's simulation; a run under way is cancelled for it.

@@ -162,7 +162,9 @@ class MainWindow(QMainWindow):
             document.reading_changed,
             document.book_changed,
             document.standing_changed,
+            document.shocks_changed,
             document.simulation_changed,
+            document.what_if.changed,
         ):
             signal.connect(self._note_states)
         self._note_states()
@@ -335,6 +337,10 @@ class MainWindow(QMainWindow):
                 notes["standing"] = ("could not be valued", "grave")
             elif document.standing is None or document.standing_is_stale:
                 notes["standing"] = ("being valued", "mild")
+            if document.what_if.is_on:
+                notes["shocks"] = ("what-if on", "what_if")
+            elif document.shocks.failure:
+                notes["shocks"] = ("could not be computed", "grave")
             if document.is_simulating:
                 notes["scenarios"] = ("running", "ink_soft")
             elif document.simulation is None:

@@ -203,6 +203,7 @@ class Station(QWidget):
             document.reading_changed,
             document.book_changed,
             document.standing_changed,
+            document.shocks_changed,
             document.simulation_changed,
         ):
             signal.connect(self.request_refresh)

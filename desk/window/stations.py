@@ -50,6 +50,12 @@ def _standing() -> type[Station]:
     return StandingStation
 
 
+def _shocks() -> type[Station]:
+    from desk.window.shocks.station import ShocksStation
+
+    return ShocksStation
+
+
 def _scenarios() -> type[Station]:
     from desk.window.scenarios.station import ScenariosStation
 
@@ -68,6 +74,7 @@ def all_stations() -> tuple[StationEntry, ...]:
         StationEntry(1, "intake", "Intake", "What was read, and what is wrong with it", _intake),
         StationEntry(2, "curve", "Curve", "The curve that everything is discounted on", _curve),
         StationEntry(3, "standing", "Standing", "What both sides are worth, and the gap", _standing),
+        StationEntry(4, "shocks", "Shocks", "What happens when markets move", _shocks),
         StationEntry(5, "scenarios", "Scenarios", "What rates may do, and what follows", _scenarios),
         StationEntry(8, "report", "Report", "The workbook for colleagues", _report),
     )

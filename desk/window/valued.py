@@ -1,15 +1,14 @@
-"""One standing that follows a book: the job that makes it, what it could not do, and whether it is stale."""
+"""What follows from a book: the job that makes it, what it could not do, and whether it is stale."""
 
 from __future__ import annotations
 
 from collections.abc import Callable
 from dataclasses import fields
 from functools import partial
-from typing import Any
+from typing import Any, Generic, Protocol, TypeVar
 
 from desk.book import Book, Fault
 from desk.report.said_once import further_faults
-from desk.valuation.records import Standing
 from desk.window.jobs import Job, Jobs
 
 __all__ = ["Valued", "changed_fields", "is_outdated", "reason", "with_faults"]
@@ -45,19 +44,27 @@ def reason(error: BaseException) -> str:
     return str(error).strip() or type(error).__name__
 
 
-class Valued:
-    """The standing of a book that changes.
+class _HasFaults(Protocol):
+    @property
+    def faults(self) -> tuple[Fault, ...]: ...
+
+
+Result = TypeVar("Result", bound=_HasFaults)
+
+
+class Valued(Generic[Result]):
+    """What is made of a book that changes: a standing, or a table of shocks.
 
     Attributes
     ----------
-    standing : Standing or None
+    result : Result or None
         Of the book, or of a former version of it while `is_stale`.
     faults : tuple of Fault
-        What the valuation could not do as asked, beside what was told before.
+        What could not be done as asked, beside what was told before.
     failure : str
-        Why the book as it stands could not be valued; empty where it could, or while it is being valued.
+        Why nothing could be made of the book as it stands; empty where it could, or while it is under way.
     is_stale : bool
-        Whether `standing` is that of a former version.
+        Whether `result` is that of a former version.
     """
 
     def __init__(
@@ -65,7 +72,7 @@ class Valued:
         jobs: Jobs,
         *,
         title: str,
-        value: Callable[[], Callable[..., Standing]],
+        value: Callable[[], Callable[..., Result]],
         names: frozenset[str],
         on_changed: Callable[[], None],
         on_failed: Callable[[str], None],
@@ -78,11 +85,11 @@ class Valued:
         title : str
             Of the job.
         value : callable
-            Gives the task that values a book.
+            Gives the task that makes the result of a book.
         names : frozenset of str
-            Parts of a book that its standing follows from.
+            Parts of a book that the result follows from.
         on_changed : callable
-            Called when a standing came, or failed to.
+            Called when a result came, or failed to.
         on_failed : callable
             Called with the reason, after `on_changed`.
         """
@@ -97,14 +104,14 @@ class Valued:
         self._of: Book | None = None
         self._job: Job | None = None
         self._job_book: Book | None = None
-        self.standing: Standing | None = None
+        self.result: Result | None = None
         self.faults: tuple[Fault, ...] = ()
         self.failure = ""
         self.is_stale = False
 
     @property
     def is_running(self) -> bool:
-        """Whether a valuation runs."""
+        """Whether a job is under way."""
         return self._job is not None
 
     def stop(self) -> None:
@@ -116,23 +123,29 @@ class Valued:
     def forget(self) -> None:
         """Cancel what runs and drop what there is."""
         self.stop()
-        self.standing = self._book = self._of = None
+        self.result = self._book = self._of = None
         self.faults = ()
         self.failure = ""
         self.is_stale = False
 
     def follow(self, book: Book, told: tuple[Fault, ...]) -> None:
-        """See to it that the standing comes to be that of `book`; faults `told` before are not repeated."""
+        """See to it that the result comes to be that of `book`; faults `told` before are not repeated."""
         self._book, self._told = book, told
         self.is_stale = is_outdated(self._of, book, self._names)
-        if self.standing is not None and not self.is_stale:
+        if self.result is not None and not self.is_stale:
             self.stop()
             self.failure = ""
         elif self._job is None or is_outdated(self._job_book, book, self._names):
             self.restart()
 
+    def note(self, book: Book) -> None:
+        """See whether the result is still that of `book`, without making another."""
+        self.is_stale = is_outdated(self._of, book, self._names)
+        if self._job is not None and is_outdated(self._job_book, book, self._names):
+            self.stop()
+
     def restart(self) -> None:
-        """Value the book once more."""
+        """Make it once more."""
         book = self._book
         if book is None:
             return
@@ -147,11 +160,11 @@ class Valued:
             exclusive_key=f"{self._title} of {id(self)}",
         )
 
-    def _done(self, book: Book, result: tuple[Standing, tuple[Fault, ...]]) -> None:
+    def _done(self, book: Book, result: tuple[Result, tuple[Fault, ...]]) -> None:
         if book is not self._job_book or self._book is None:
             return
         self._job = self._job_book = None
-        (self.standing, self.faults), self._of = result, book
+        (self.result, self.faults), self._of = result, book
         self.is_stale = is_outdated(book, self._book, self._names)
         self._on_changed()
 

@@ -64,7 +64,7 @@ def test_stations_are_made_when_they_are_first_shown(opened: Frame) -> None:
     assert opened.window.rail.button("intake").isChecked()
     assert not opened.window.rail.button("standing").isChecked()
     assert opened.settings.station == "intake"
-    opened.window.show_station("shocks")
+    opened.window.show_station("projection")
     assert opened.window.shown == "intake"
 
 
@@ -76,7 +76,7 @@ def test_the_keys_of_the_stations_are_their_numbers_among_all(opened: Frame, qtb
     QTest.keyClick(opened.window, Qt.Key.Key_3, Qt.KeyboardModifier.AltModifier)
     assert opened.window.shown == "standing"
     numbers = {entry.key: entry.number for entry in all_stations()}
-    assert numbers == {"intake": 1, "curve": 2, "standing": 3, "scenarios": 5, "report": 8}
+    assert numbers == {"intake": 1, "curve": 2, "standing": 3, "shocks": 4, "scenarios": 5, "report": 8}
 
 
 def test_f6_goes_round_rail_headline_station_and_foot(opened: Frame, qtbot: QtBot) -> None:

@@ -28,7 +28,7 @@ def test_every_picture_is_drawn_as_png_and_svg(tmp_path: Path) -> None:
     written = draw_all(reading, standing, simulation, tmp_path / "out")
     names = {path.name for path in written}
     assert len(names) == len(written)
-    assert {name.split("-")[0] for name in names} == {"curve", "standing", "scenarios"}
+    assert {name.split("-")[0] for name in names} == {"curve", "standing", "shocks", "scenarios"}
     assert {path.stem for path in written if path.suffix == ".png"} == {
         path.stem for path in written if path.suffix == ".svg"
     }
@@ -59,7 +59,7 @@ def test_the_window_is_drawn_at_every_station(tmp_path: Path) -> None:
     tasks.save_copy(model, book)
     written = draw_window(book, tmp_path / "out", size=QSize(1280, 720))
     assert [path.stem for path in written] == [
-        *("welcome", "intake", "curve", "standing", "scenarios", "report")
+        *("welcome", "intake", "curve", "standing", "shocks", "scenarios", "report")
     ]
     for path in written:
         image = QImage(str(path))
