@@ -15,6 +15,7 @@ from desk.rates.day_count import DayCount, year_fraction
 from desk.valuation.standing import stand
 
 __all__ = [
+    "TODAY",
     "VALUATION_DATE",
     "Flows",
     "bond",

@@ -6,8 +6,6 @@ what its commands print.
 Sources
 -------
 Zero rates and compounding: Hull, J.C., Options, Futures, and Other Derivatives, chapter 4.
-Monotone convex curve: Hagan, P.S. and West, G., "Interpolation Methods for Curve Construction", Applied
-Mathematical Finance 13(2), 2006, section 6.
 Durations, convexity, dispersion: Macaulay, F.R. (1938); Hicks, J.R. (1939); Fong, H.G. and Vasicek, O.A.,
 Journal of Finance 39(5), 1984.
 Key rates: Ho, T.S.Y., "Key Rate Durations", Journal of Fixed Income 2(2), 1992.
@@ -17,56 +15,33 @@ Gaussian rates: Hull, J.C. and White, A., "Pricing Interest-Rate-Derivative Secu
 Studies 3(4), 1990. Square-root rates: Cox, J.C., Ingersoll, J.E. and Ross, S.A., "A Theory of the Term
 Structure of Interest Rates", Econometrica 53, 1985.
 Coupons counted back from maturity, on the last day of a shorter month: common practice.
+Curves: see `tests.recomputed_curves`.
+Growth with a price index: normal yearly inflation for floors and caps (Bachelier, L., 1900) and lognormal
+growth for a floor on the whole (Black, F., Journal of Financial Economics 3, 1976), from memory.
 """
 
 from __future__ import annotations
 
 import calendar
-import json
 import math
-import os
-import subprocess
-import sys
-from collections.abc import Callable, Iterable, Sequence
+from collections.abc import Callable, Iterable
 from dataclasses import dataclass
-from datetime import date, datetime
+from datetime import date
 from functools import cache
-from pathlib import Path
 from typing import Any
 
-from openpyxl import load_workbook
+from tests.recomputed_cells import BOOKS, Workbook, as_date, opened, printed
+from tests.recomputed_curves import Curve, linear_zero, log_linear, monotone_convex, through_swaps
 
 __all__ = [
     "BOOKS", "KEYS", "POINT", "Curve", "Row", "Side", "Workbook", "bump", "close", "opened", "own_curve",
     "printed", "sides",
 ]  # fmt: skip
 
-ROOT = Path(__file__).resolve().parents[1]
-BOOKS = ("pension_fund", "life_insurer", "small_endowment")
 KEYS = (0.25, 0.5, 1, 2, 3, 5, 7, 10, 15, 20, 25, 30, 40, 50)
 POINT = 1e-4
 EXACT = 1e-9
 """Of the recomputation: both sides do the same sums in another order, in double precision."""
-
-Curve = Callable[[float], float]
-"""``-ln P(0, t)``."""
-
-
-@cache
-def printed(book: str, command: str) -> dict[str, Any]:
-    """What a command prints with ``--json``."""
-    done = subprocess.run(
-        [sys.executable, "-m", "desk", command, f"demo_books/{book}.xlsx", "--json"],
-        cwd=ROOT,
-        env={**os.environ, "PYTHONWARNINGS": "error"},
-        capture_output=True,
-        check=False,
-        text=True,
-        encoding="utf-8",
-    )
-    assert (done.returncode, done.stderr) == (0, "")
-    found: dict[str, Any] = json.loads(done.stdout)
-    return found
 
 
 @dataclass(frozen=True)
@@ -80,160 +55,25 @@ class Row:
     paid: bool = True
 
 
-@dataclass(frozen=True)
-class Workbook:
-    """The cells of a book that a valuation needs."""
-
-    basis: dict[str, Any]
-    model: dict[str, Any]
-    run: dict[str, Any]
-    quotes: list[tuple[float, float]]
-    liabilities: list[dict[str, Any]]
-    holdings: list[dict[str, Any]]
-    flows: list[dict[str, Any]]
-
-    @property
-    def today(self) -> date:
-        """The valuation date."""
-        return as_date(self.basis["Valuation date"])
-
-
-@cache
-def opened(book: str) -> Workbook:
-    """The cells of a demo book."""
-    file = load_workbook(ROOT / "demo_books" / f"{book}.xlsx", read_only=True, data_only=True)
-    sheets = {sheet.title: list(sheet.iter_rows(values_only=True)) for sheet in file.worksheets}
-    file.close()
-
-    def table(name: str) -> list[dict[str, Any]]:
-        headings, *rows = sheets.get(name, [()])
-        names = [str(heading) for heading in headings]
-        return [
-            dict(zip(names, row, strict=False)) for row in rows if any(value is not None for value in row)
-        ]
-
-    def items(name: str) -> dict[str, Any]:
-        return {row["Item"]: row["Value"] for row in table(name)}
-
-    quotes = [(float(row["Term"]), float(row["Rate"])) for row in table("Curve")]
-    return Workbook(
-        basis=items("Basis"),
-        model=items("Rates model"),
-        run=items("Run"),
-        quotes=quotes,
-        liabilities=table("Liabilities"),
-        holdings=table("Holdings"),
-        flows=table("Asset flows"),
-    )
-
-
-def as_date(value: Any) -> date:
-    """A date out of a cell."""
-    assert isinstance(value, datetime)
-    return value.date()
-
-
 # The curve ---------------------------------------------------------------------------------------------
 
 
-def curve_of(workbook: Workbook) -> Curve:
+@cache
+def curve_of(book: str) -> Curve:
     """``-ln P(0, t)`` of a book's basis."""
+    workbook = opened(book)
     periods = {"annual": 1, "semi-annual": 2, "quarterly": 4, "monthly": 12, "continuous": 0}[
         workbook.basis["Compounding"]
     ]
     terms = [term for term, _ in workbook.quotes]
     rates = [periods * math.log(1 + rate / periods) if periods else rate for _, rate in workbook.quotes]
-    draw = {"log-linear": log_linear, "linear-zero": linear_zero, "monotone-convex": monotone_convex}
-    return draw[workbook.basis["Interpolation"]](terms, rates)
-
-
-def log_linear(terms: Sequence[float], rates: Sequence[float]) -> Curve:
-    """Flat forwards; the last one goes on."""
-    times = [0.0, *terms]
-    logs = [0.0, *(term * rate for term, rate in zip(terms, rates, strict=True))]
-
-    def exponent(time: float) -> float:
-        right = next((n for n in range(1, len(times)) if time <= times[n]), len(times) - 1)
-        share = (time - times[right - 1]) / (times[right] - times[right - 1])
-        return logs[right - 1] + share * (logs[right] - logs[right - 1])
-
-    return exponent
-
-
-def linear_zero(terms: Sequence[float], rates: Sequence[float]) -> Curve:
-    """Straight lines in the zero rate; the forward at the last term goes on."""
-
-    def exponent(time: float) -> float:
-        if time <= terms[0]:
-            return rates[0] * time
-        if time > terms[-1]:
-            slope = (rates[-1] - rates[-2]) / (terms[-1] - terms[-2])
-            return rates[-1] * terms[-1] + (rates[-1] + terms[-1] * slope) * (time - terms[-1])
-        right = next(n for n in range(1, len(terms)) if time <= terms[n])
-        share = (time - terms[right - 1]) / (terms[right] - terms[right - 1])
-        return time * (rates[right - 1] + share * (rates[right] - rates[right - 1]))
-
-    return exponent
-
-
-def monotone_convex(terms: Sequence[float], rates: Sequence[float]) -> Curve:
-    """Hagan and West's forwards, integrated by Simpson's rule, which is exact for their parabolas."""
-    times = [0.0, *terms]
-    logs = [0.0, *(term * rate for term, rate in zip(terms, rates, strict=True))]
-    last = len(terms)
-    discrete = [math.nan] + [(logs[n] - logs[n - 1]) / (times[n] - times[n - 1]) for n in range(1, last + 1)]
-    assert min(discrete[1:]) > 0, "the bounds below are those for positive forwards"
-    forward = [0.0] * (last + 1)
-    for n in range(1, last):
-        before, after = times[n] - times[n - 1], times[n + 1] - times[n]
-        forward[n] = (before * discrete[n + 1] + after * discrete[n]) / (before + after)
-        forward[n] = min(max(forward[n], 0.0), 2 * min(discrete[n], discrete[n + 1]))
-    # The ends come from the forwards next to them as the paper has those, before they are bounded.
-    inner = [
-        ((times[n] - times[n - 1]) * discrete[n + 1] + (times[n + 1] - times[n]) * discrete[n])
-        / (times[n + 1] - times[n - 1])
-        for n in (1, last - 1)
+    draw = {"log-linear": log_linear, "linear-zero": linear_zero, "monotone-convex": monotone_convex}[
+        workbook.basis["Interpolation"]
     ]
-    forward[0] = min(max(1.5 * discrete[1] - 0.5 * inner[0], 0.0), 2 * discrete[1])
-    forward[last] = min(max(1.5 * discrete[last] - 0.5 * inner[1], 0.0), 2 * discrete[last])
-
-    def exponent(time: float) -> float:
-        if time > times[-1]:
-            return logs[-1] + forward[-1] * (time - times[-1])
-        n = next(n for n in range(1, last + 1) if time <= times[n])
-        excess, turn = shape(forward[n - 1] - discrete[n], forward[n] - discrete[n])
-        length = times[n] - times[n - 1]
-        at = (time - times[n - 1]) / length
-        area = sum(
-            (end - start) / 6 * (excess(start) + 4 * excess((start + end) / 2) + excess(end))
-            for start, end in ((0.0, min(at, turn)), (min(at, turn), at))
-        )
-        return logs[n - 1] + discrete[n] * (time - times[n - 1]) + length * area
-
-    return exponent
-
-
-def shape(left: float, right: float) -> tuple[Callable[[float], float], float]:
-    """g(x) of the paper between g(0) and g(1), and where its formula changes."""
-    if left == 0 and right == 0:
-        return (lambda x: 0.0), 1.0
-    if left * right < 0 and 0.5 * abs(left) <= abs(right) <= 2 * abs(left):
-        return (lambda x: left * (1 - 4 * x + 3 * x * x) + right * (3 * x * x - 2 * x)), 1.0
-    if left * right < 0 and abs(right) > 2 * abs(left):
-        turn = (right + 2 * left) / (right - left)
-        return (lambda x: left if x <= turn else left + (right - left) * ((x - turn) / (1 - turn)) ** 2), turn
-    if left * right < 0:
-        turn = 3 * right / (right - left)
-        return (lambda x: right + (left - right) * ((turn - x) / turn) ** 2 if x < turn else right), turn
-    turn = right / (left + right)
-    low = -left * right / (left + right)
-    return (
-        lambda x: (
-            low + (left - low) * ((turn - x) / turn) ** 2
-            if x <= turn and turn > 0
-            else low + (right - low) * ((x - turn) / (1 - turn)) ** 2
-        )
-    ), turn
+    if workbook.basis["Curve kind"] == "swap":
+        return through_swaps(workbook.quotes, periods, draw)
+    assert workbook.basis["Curve kind"] == "zero"
+    return draw(terms, rates)
 
 
 # Both sides --------------------------------------------------------------------------------------------
@@ -247,21 +87,104 @@ def years(workbook: Workbook, row: dict[str, Any]) -> float:
     return float(row["Year"])
 
 
-def promised(workbook: Workbook) -> tuple[list[str], list[Row]]:
+def spread_by_term(workbook: Workbook, time: float) -> float:
+    """What is added to the curve for liabilities, joined by lines and flat outside the terms."""
+    if workbook.basis.get("Liability basis") is None:
+        return 0.0
+    assert workbook.basis["Liability basis"] == "spread by term"
+    known = workbook.spreads
+    if time <= known[0][0] or time >= known[-1][0]:
+        return known[0][1] if time <= known[0][0] else known[-1][1]
+    right = next(n for n in range(1, len(known)) if time <= known[n][0])
+    (start, low), (end, high) = known[right - 1], known[right]
+    return float(low + (high - low) * (time - start) / (end - start))
+
+
+def promised(book: str) -> tuple[list[str], list[Row]]:
     """Lines of the liabilities and their rows: beta times the market risk premium over the spread."""
+    workbook = opened(book)
     names: list[str] = []
     rows = []
+    terms = {row["Line"]: row for row in workbook.terms}
+    assert all((row.get("Side") or "liabilities") == "liabilities" for row in workbook.terms)
     for row in workbook.liabilities:
         if row["Line"] not in names:
             names.append(row["Line"])
-        spread = workbook.basis["Liability spread"]
+        time = years(workbook, row)
+        spread = workbook.basis["Liability spread"] + spread_by_term(workbook, time)
         spread += (row.get("Beta") or 0.0) * workbook.basis["Market risk premium"]
-        rows.append(Row(names.index(row["Line"]), years(workbook, row), row["Amount"], spread))
+        amount = row["Amount"] * growth(book, terms.get(row["Line"], {}), time)
+        rows.append(Row(names.index(row["Line"]), time, amount, spread))
     return names, rows
 
 
-def held(workbook: Workbook, curve: Curve) -> tuple[list[str], list[Row]]:
+# What follows prices -----------------------------------------------------------------------------------
+
+
+@cache
+def price_index(book: str) -> Curve:
+    """Logarithm of the index expected at a time over today's; before today it grew at the recent rate."""
+    workbook = opened(book)
+    assert workbook.basis.get("Inflation interpolation") is None
+    terms, rates = zip(*workbook.inflation, strict=True)
+    ahead = log_linear(terms, [math.log1p(rate) for rate in rates])
+    recent = math.log1p(workbook.basis["Recent inflation"])
+    return lambda time: recent * time if time <= 0 else ahead(time)
+
+
+def growth(book: str, terms: dict[str, Any], time: float) -> float:
+    """How much an amount in today's money grows until it is paid."""
+    kind = terms.get("Indexation") or "fixed"
+    if kind == "fixed":
+        return 1.0
+    if kind == "rising":
+        return float((1 + terms["Rise"]) ** time)
+    if kind == "linked":
+        return math.exp(price_index(book)(time))
+    assert kind == "collared"
+    whole = math.floor(time)
+    total = math.prod(collared(book, year, terms["Floor"], terms["Cap"]) for year in range(whole))
+    return float(total * collared(book, whole, terms["Floor"], terms["Cap"]) ** (time - whole))
+
+
+@cache
+def collared(book: str, year: int, floor: float, cap: float) -> float:
+    """Expected factor of one year whose normal increase is held between a floor and a cap."""
+    index, deviation = price_index(book), float(opened(book).basis["Inflation volatility"])
+    mean = math.expm1(index(year + 1) - index(year))
+
+    def call(strike: float) -> float:
+        far = (mean - strike) / deviation
+        return (mean - strike) * normal(far) + deviation * math.exp(-far * far / 2) / math.sqrt(2 * math.pi)
+
+    return 1 + floor + call(floor) - call(cap)
+
+
+def normal(far: float) -> float:
+    """Distribution function of the standard normal law."""
+    return math.erfc(-far / math.sqrt(2)) / 2
+
+
+def linked_payments(book: str, holding: dict[str, Any]) -> Iterable[tuple[float, float]]:
+    """What a linked bond pays: that of a bond times its index ratio and the growth of the lagged index."""
+    workbook = opened(book)
+    index, ratio = price_index(book), float(holding["Index ratio"])
+    lag = holding["Index lag (months)"] / 12
+    maturity = (as_date(holding["Maturity"]) - workbook.today).days / 365
+    for time, amount in payments(workbook.today, {**holding, "Kind": "bond"}):
+        grown = math.exp(index(time - lag) - index(-lag))
+        yield time, amount * ratio * grown
+        if time == maturity and holding.get("Principal floor") == "yes":
+            # Beside the nominal, a put on the growth from today at the inverse of the index ratio.
+            deviation = workbook.basis["Inflation volatility"] * math.sqrt(max(time - lag, 0.0))
+            far = math.log(grown * ratio) / deviation + deviation / 2
+            put = normal(deviation - far) / ratio - grown * normal(-far)
+            yield time, holding["Nominal"] * ratio * put
+
+
+def held(book: str, curve: Curve) -> tuple[list[str], list[Row]]:
     """Holdings and ready-made flows, one line a holding."""
+    workbook = opened(book)
     names: list[str] = []
     rows: list[Row] = []
     for line, holding in enumerate(workbook.holdings):
@@ -269,11 +192,16 @@ def held(workbook: Workbook, curve: Curve) -> tuple[list[str], list[Row]]:
         market = holding.get("Market value")
         if holding["Kind"] == "deposit":
             rows.append(Row(line, 0.0, holding["Nominal"] if market is None else market, 0.0))
-        elif holding["Kind"] == "fund":
+        elif holding["Kind"] in ("fund", "property"):
             time = float(holding.get("Duration") or 0.0)
             rows.append(Row(line, time, float(market or 0.0) * math.exp(curve(time)), 0.0, paid=False))
         else:
-            own = list(payments(workbook.today, holding))
+            if holding["Kind"] == "linked bond":
+                own = list(linked_payments(book, holding))
+                market = real_price(book, holding) if holding.get("Price") is not None else market
+            else:
+                assert holding.get("Price") is None
+                own = list(payments(workbook.today, holding))
             spread = 0.0 if market is None else spread_for(own, float(market), curve)
             rows += [Row(line, time, amount, spread) for time, amount in own]
     ready = list(dict.fromkeys(row["Line"] for row in workbook.flows))
@@ -298,6 +226,23 @@ def payments(today: date, holding: dict[str, Any]) -> Iterable[tuple[float, floa
         month = maturity.year * 12 + maturity.month - 1 - back
         year, month = divmod(month, 12)
         when = date(year, month + 1, min(maturity.day, calendar.monthrange(year, month + 1)[1]))
+
+
+def real_price(book: str, holding: dict[str, Any]) -> float:
+    """Money for a clean price in real terms, with interest accrued by the days of the running period."""
+    today, frequency = opened(book).today, int(holding["Frequency"])
+    assert holding["Price kind"] == "clean"
+    maturity, ahead = as_date(holding["Maturity"]), as_date(holding["Maturity"])
+    back = 0
+    while True:
+        back += 12 // frequency
+        year, month = divmod(maturity.year * 12 + maturity.month - 1 - back, 12)
+        when = date(year, month + 1, min(maturity.day, calendar.monthrange(year, month + 1)[1]))
+        if when <= today:
+            break
+        ahead = when
+    accrued = 100 * holding["Coupon"] / frequency * ((today - when) / (ahead - when))
+    return float(holding["Nominal"] * holding["Index ratio"] * (holding["Price"] + accrued) / 100)
 
 
 def bisect(function: Callable[[float], float], low: float, high: float) -> float:
@@ -381,9 +326,8 @@ def bump(key: int) -> Callable[[float], float]:
 @cache
 def sides(book: str) -> tuple[Side, Side]:
     """Assets and liabilities of a demo book."""
-    workbook = opened(book)
-    curve = curve_of(workbook)
-    return Side(*held(workbook, curve), curve), Side(*promised(workbook), curve)
+    curve = curve_of(book)
+    return Side(*held(book, curve), curve), Side(*promised(book), curve)
 
 
 def close(found: Any, wanted: float, scale: float = 0.0) -> bool:
@@ -391,10 +335,11 @@ def close(found: Any, wanted: float, scale: float = 0.0) -> bool:
     return isinstance(found, int | float) and abs(found - wanted) <= EXACT * max(abs(wanted), scale)
 
 
-def own_curve(workbook: Workbook, *, real_world: bool = False) -> Curve:
+def own_curve(book: str, *, real_world: bool = False) -> Curve:
     """``-ln P(0, t)`` of the model: the book's for Hull and White, its own for Cox, Ingersoll and Ross."""
+    workbook = opened(book)
     if workbook.model["Model"] == "hull-white":
-        return curve_of(workbook)
+        return curve_of(book)
     assert workbook.model["Model"] == "cir"
     speed, level, volatility, start = (
         workbook.model[item] for item in ("Mean reversion", "Long-run rate", "Volatility", "Starting rate")

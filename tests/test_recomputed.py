@@ -142,7 +142,7 @@ def test_a_run_says_what_it_was(book: str) -> None:
 def test_discount_factors_and_present_values_on_the_models_own_curve(book: str) -> None:
     """The curve's figures are exact; under the pricing measure the means of the paths are near them."""
     stated, workbook = printed(book, "simulate"), opened(book)
-    curve = own_curve(workbook)
+    curve = own_curve(book)
     pricing = workbook.run["Measure"] == "pricing"
     for row in stated["savings_account"]:
         wanted = math.exp(-curve(row["year"]))
@@ -178,7 +178,7 @@ def test_gaussian_rates_follow_their_laws(book: str) -> None:
     stated, workbook = printed(book, "simulate"), opened(book)
     assert stated["measure"] == "pricing"
     speed, volatility = workbook.model["Mean reversion"], workbook.model["Volatility"]
-    curve, count = own_curve(workbook), stated["paths"]
+    curve, count = own_curve(book), stated["paths"]
 
     def exposure(time: float) -> float:
         return float(-math.expm1(-speed * time) / speed)
@@ -223,7 +223,7 @@ def test_square_root_rates_follow_their_laws() -> None:
     volatility, start = workbook.model["Volatility"], workbook.model["Starting rate"]
     speed = workbook.model["Mean reversion"] - volatility * workbook.model["Risk price"]
     level, count = pull / speed, stated["paths"]
-    expected = own_curve(workbook, real_world=True)
+    expected = own_curve("small_endowment", real_world=True)
     for row in stated["savings_account"][1:]:
         wanted = math.exp(-expected(row["year"]))
         assert abs(row["mean_discount"] - wanted) <= ERRORS * row["mean_discount_se"]
