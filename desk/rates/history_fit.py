@@ -20,8 +20,12 @@ FloatArray = NDArray[np.float64]
 # Fastest mean reversion looked for [1/year]: beyond it a rate forgets where it was within days.
 FASTEST = 200.0
 # The 5 % point of the t-ratio of a random walk's slope with a constant, many observations: -2.86. Fuller, W.
-# (1976), Introduction to Statistical Time Series, table 8.5.2 (from memory).
+# (1976), Introduction to Statistical Time Series, table 8.5.2 (from memory). In terms of the likelihood, half
+# its square.
 _UNIT_ROOT_RATIO = 2.86
+# The stationary likelihood has no value at 0. With an interval that ends this close to 0, in shares of the
+# estimate, its shape is that of the conditional one, and the ratio to the standard error serves.
+_NEAR_SHARE = 0.2
 _PROFILE_POINTS = 25
 _PLAIN_LIMIT = 0.5  # 1/year: of the bias, from which it is called large
 
@@ -166,7 +170,11 @@ def history_fit_record(
     heights = np.array([log_likelihood if place == speed else profile(float(place)) for place in places])
     steps = history.step.size
     bias = mean_reversion_bias(speed, step=history.years / steps, steps=steps)
-    verdict = _verdict(speed, speed_error, slowest, interval, bias, history.years, tests)
+    if likelihood == "stationary":
+        slow = speed < _UNIT_ROOT_RATIO * speed_error and interval[0] < _NEAR_SHARE * speed
+    else:
+        slow = log_likelihood - profile(slowest) < 0.5 * _UNIT_ROOT_RATIO**2
+    verdict = _verdict(speed, slow, slowest, interval, bias, history.years, tests)
     return HistoryFit(
         model=model,
         likelihood=likelihood,
@@ -197,7 +205,7 @@ def history_fit_record(
 
 def _verdict(
     speed: float,
-    error: float,
+    slow: bool,
     slowest: float,
     interval: tuple[float, float],
     bias: float,
@@ -211,12 +219,11 @@ def _verdict(
             "back to."
         )
     else:
-        if interval[0] <= slowest or not error > 0.0 or speed < _UNIT_ROOT_RATIO * error:
+        if slow:
             remarks.append(
                 f"The mean reversion of {speed:.3f} a year (95 % interval {max(interval[0], 0.0):.3f} to "
-                f"{interval[1]:.3f}) cannot be told from 0: the estimate is less than {_UNIT_ROOT_RATIO} "
-                "standard errors from 0, which a random walk reaches once in twenty times. The long-run rate "
-                "is no firmer."
+                f"{interval[1]:.3f}) cannot be told from 0: rates that go back to no level at all give as "
+                "high an estimate in more than one history of twenty. The long-run rate is no firmer."
             )
         share = bias / speed
         much = "as large as the estimate itself" if share > 0.9 else f"{100.0 * share:.0f} % of the estimate"

@@ -32,7 +32,7 @@ HALF_CHI_SQUARE_95 = 1.9207294103470674
 _GRADIENT_STEP = 1e-3  # in units of the standard error
 _BEND_STEP = 0.05
 _HESSIAN_STEP = 0.02
-_MOST_TURNS, _MOST_TRIALS = 150, 14
+_MOST_TURNS, _MOST_TRIALS = 80, 14
 _LONGEST_STEP = 30.0
 _NEGLIGIBLE = 1e-9  # gain in log-likelihood that is not worth another turn
 _AT_REST = 1e-4  # twice the gain that a whole further step promises
@@ -181,7 +181,8 @@ def profile_interval(
     from scipy.optimize import brentq
 
     def excess(place: float) -> float:
-        return profile(place) - highest + HALF_CHI_SQUARE_95
+        # By definition at the best; a search that found a little less there must not upset the signs.
+        return HALF_CHI_SQUARE_95 if place == best else profile(place) - highest + HALF_CHI_SQUARE_95
 
     ends = []
     for sign, bound in ((-1.0, lower), (1.0, upper)):

@@ -7,7 +7,7 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import ArrayLike, NDArray
 
-__all__ = ["RateHistory", "history_years", "rate_history"]
+__all__ = ["RateHistory", "history_years", "rate_history", "scale_remarks"]
 
 FloatArray = NDArray[np.float64]
 
@@ -15,6 +15,7 @@ _FEWEST_RATES = 12
 _DAYS_A_YEAR = 365.0
 _GAP = 5.0  # times the usual step
 _SHORT_YEARS = 10.0
+_LARGEST_RATE = 1000.0
 
 
 @dataclass(frozen=True, eq=False)
@@ -85,8 +86,27 @@ def rate_history(times: ArrayLike, rates: ArrayLike) -> RateHistory:
         raise ValueError(f"the rate in row {bad[0] + 1} of the history is missing or no number")
     if np.ptp(rate) == 0.0:
         raise ValueError("the rate never moves in the history: nothing can be estimated from it")
+    remarks = (*remarks, *scale_remarks(rate))
     rate.flags.writeable = False
     return RateHistory(years, rate, remarks)
+
+
+def scale_remarks(rate: FloatArray) -> tuple[str, ...]:
+    """A remark where rates look like per cent; NaN is passed over.
+
+    Raises
+    ------
+    ValueError
+        If a rate is beyond 1000, a hundred thousand per cent.
+    """
+    size = np.abs(rate[np.isfinite(rate)])
+    if float(size.max()) > _LARGEST_RATE:
+        raise ValueError(f"a rate of {float(size.max()):.3g} in the history is beyond any sense")
+    if float(np.median(size)) > 0.5:
+        return (
+            "The rates look like per cent: they are taken as fractions, 0.05 being five per cent a year.",
+        )
+    return ()
 
 
 def history_years(times: ArrayLike) -> tuple[FloatArray, tuple[str, ...]]:

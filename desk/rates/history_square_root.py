@@ -187,10 +187,13 @@ class _Profile:
         self._history = history
         self._bounds = bounds
         self._known = {float(math.exp(best.point[0])): best.point[1:]}
+        self._values: dict[float, float] = {}
         error = np.sqrt(np.maximum(np.diag(best.covariance)[1:], 1e-12))
         self._scale = np.where(np.isfinite(error), error, 0.1)
 
     def __call__(self, speed: float) -> float:
+        if speed in self._values:
+            return self._values[speed]
         nearest = min(self._known, key=lambda known: abs(known - speed))
 
         def log_likelihood(point: FloatArray) -> float:
@@ -208,6 +211,7 @@ class _Profile:
             information=False,
         )
         self._known[speed] = found.point
+        self._values[speed] = found.value
         return found.value
 
 

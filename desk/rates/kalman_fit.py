@@ -11,7 +11,7 @@ from numpy.typing import ArrayLike, NDArray
 
 from desk.rates.history_diagnostics import ResidualTests, residual_tests
 from desk.rates.history_likelihood import Maximum, delta_error, maximise
-from desk.rates.history_series import history_years
+from desk.rates.history_series import history_years, scale_remarks
 from desk.rates.kalman_panel import PanelModel, YieldPanel, kalman_filter, panel_log_likelihood, panel_states
 
 __all__ = ["PanelFit", "fit_yield_panel", "yield_panel"]
@@ -129,6 +129,7 @@ def yield_panel(times: ArrayLike, terms: ArrayLike, rates: ArrayLike) -> tuple[Y
         raise ValueError(f"there is no rate at all for the term of {term[bare[0]]:g} years: leave it out")
     if all(np.ptp(rate[seen, column]) == 0.0 for column, seen in enumerate(quoted.T)):
         raise ValueError("the rates never move in the history: nothing can be estimated from it")
+    remarks = (*remarks, *scale_remarks(rate))
     missing = int(np.count_nonzero(~quoted))
     if missing:
         remarks = (*remarks, f"{missing} of {rate.size} quotes are missing; the filter goes on without them.")

@@ -1,7 +1,7 @@
 """Speed of estimating models: from histories, from option quotes and from panels of yields.
 
-Prints each time, and as a multiple of one evaluation of the likelihood, or of the prices, that it maximises or
-fits. Run it as ``python tests/benchmarks/bench_calibration.py``.
+Prints each time, and as a multiple of one evaluation of the likelihood or of the prices. Run it as
+``python tests/benchmarks/bench_calibration.py``.
 """
 
 from __future__ import annotations
@@ -59,7 +59,7 @@ def _histories() -> None:
     times = np.arange(MONTHS) / 12.0
     history = rate_history(times, rates)
     pulls = {"mean_reversion": 0.3, "pull": 0.012}
-    once = _best(lambda: vasicek_log_likelihood(history, volatility=0.012, **pulls))
+    once = _best(lambda: vasicek_log_likelihood(history, mean_reversion=0.3, pull=0.012, volatility=0.012))
     _say(f"Vasicek, {MONTHS} months", _best(lambda: fit_vasicek(times, rates)), once)
     once = _best(lambda: square_root_log_likelihood(history, volatility=0.06, **pulls))
     _say(f"square root, {MONTHS} months", _best(lambda: fit_square_root(times, rates)), once)
@@ -118,9 +118,8 @@ def _panels() -> None:
     rates = constant + np.array(states) @ loading.T + 5e-4 * random.standard_normal((months, terms.size))
     panel = YieldPanel(np.arange(months) / 12.0, terms, rates)
     once = _best(lambda: panel_log_likelihood(panel, model))
-    print(
-        f"filter date by date: {_best(lambda: kalman_filter(panel, model)) / once:.0f} times the band likelihood"
-    )
+    filtered = _best(lambda: kalman_filter(panel, model))
+    print(f"filter date by date: {filtered / once:.0f} times the band likelihood")
     for factors in (1, 2):
         whole = _best(lambda f=factors: fit_yield_panel(panel.time, terms, rates, factors=f), 2)  # type: ignore[misc]  # bound for this turn
         _say(f"{factors} factors to {months} months of {terms.size} yields", whole, once)

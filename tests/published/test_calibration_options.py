@@ -200,9 +200,9 @@ def _two(
 @pytest.mark.parametrize("kind", ["one factor", "two factors", "square root"])
 def test_caps_against_quantlibs_options_on_bonds(kind: str) -> None:
     """QuantLib 1.44, discountBondOption of HullWhite, G2 and CoxIngersollRoss: a caplet from t to T at
-    strike K is ``1 + Kδ`` puts on the bond to T at ``1/(1 + Kδ)``. 200 random caps of two to six years: 1e-10,
-    and for the square root 1e-8 with yearly payments: where little time or volatility makes the noncentrality
-    exceed about a thousand, that library's chi-square goes astray (it gives negative prices)."""
+    strike K is ``1 + Kδ`` puts on the bond to T at ``1/(1 + Kδ)``. 200 random caps of two to six years:
+    1e-10, and for the square root 1e-8 with yearly payments: where little time or volatility makes the
+    noncentrality exceed about a thousand, that library's chi-square goes astray (negative prices)."""
     random = np.random.default_rng(11)
     for _ in range(CASES):
         rate, strike = random.uniform(0.005, 0.06), random.uniform(0.005, 0.06)

@@ -212,6 +212,31 @@ def test_rates_without_memory() -> None:
     fit = fit_vasicek(np.arange(120.0), rates)
     assert fit.mean_reversion > 1.0
     assert all(math.isfinite(value) for value in (fit.volatility, fit.long_run_rate, fit.log_likelihood))
+    assert not any("cannot be told from 0" in remark for remark in fit.remarks)
+
+
+@pytest.mark.parametrize(
+    "rates",
+    [
+        0.03 + 0.01 * (-1.0) ** np.arange(60),
+        np.append(np.full(59, 0.02), 0.021),
+        np.where(np.arange(60) == 30, 5.0, 0.03 + 1e-4 * np.cos(np.arange(60))),
+        1e-12 * (2.0 + np.cos(np.arange(60))),
+        1e-3 * 1.1 ** np.arange(60),
+    ],
+    ids=["alternating", "one move", "one outlier", "next to nothing", "growth"],
+)
+def test_odd_histories_give_finite_figures(rates: FloatArray) -> None:
+    for fit in (fit_vasicek(np.arange(60.0), rates), fit_square_root(np.arange(60.0), rates)):
+        assert all(map(math.isfinite, (fit.mean_reversion, fit.volatility, fit.log_likelihood, fit.bias)))
+        low, high = fit.mean_reversion_interval
+        assert 0.0 <= low <= fit.mean_reversion <= high
+        assert np.isfinite(fit.profile_log_likelihood).all()
+
+
+def test_rates_in_per_cent_are_remarked_on() -> None:
+    path = _vasicek_path(np.full(150, 1 / 12), 0.5, 3.0, 1.0, 13)
+    assert any("look like per cent" in remark for remark in fit_vasicek(np.arange(151) / 12, path).remarks)
 
 
 def test_gaps_and_short_histories_are_remarked_on() -> None:
@@ -233,6 +258,7 @@ def test_gaps_and_short_histories_are_remarked_on() -> None:
         (np.arange(20.0), np.append(np.arange(19.0), np.nan), "rate in row 20"),
         (np.full(20, np.datetime64("NaT")), np.arange(20.0), "date in row 1"),
         (np.arange(20.0), np.zeros((20, 2)), "one rate a date"),
+        (np.arange(20.0), 1e200 * np.arange(20.0), "beyond any sense"),
     ],
 )
 def test_faulty_histories(times: FloatArray, rates: FloatArray, said: str) -> None:

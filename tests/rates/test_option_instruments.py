@@ -259,9 +259,7 @@ def test_standard_errors_hold_in_repeated_samples() -> None:
     )
     found, stated = [], []
     for _ in range(60):
-        noisy = replace(
-            quotes, volatility=np.asarray(clean + 2e-4 * random.standard_normal(clean.size), dtype=np.float64)
-        )
+        noisy = replace(quotes, volatility=clean + 2e-4 * random.standard_normal(clean.size))
         fit = fit_volatilities(noisy)
         found.append([fit.mean_reversion, fit.volatility])
         stated.append(fit.errors)
@@ -271,7 +269,7 @@ def test_standard_errors_hold_in_repeated_samples() -> None:
 
 def test_a_poor_fit_says_so() -> None:
     quotes = _swaptions()
-    volatility = 0.008 * (1.0 + 0.5 * (np.arange(16) % 2))
+    volatility = np.tile([0.008, 0.012], 8)
     fit = fit_volatilities(replace(quotes, volatility=volatility))
     assert "The fit is poor" in fit.remarks[0]
     assert "payer swaption" in fit.remarks[0]
