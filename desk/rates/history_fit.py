@@ -69,10 +69,10 @@ class HistoryFit:
     profile_mean_reversion, profile_log_likelihood : ndarray, shape (k,)
         The log-likelihood at these speeds, greatest over the other parameters.
     bias : float
-        By how much the estimate of mean reversion is expected to be too high [1/year]; see
+        By how much the estimate of mean reversion is expected to be too high [1/year], or NaN; see
         `mean_reversion_bias`.
     corrected_mean_reversion : float
-        The estimate less that bias, at least 0 [1/year].
+        The estimate less that bias, at least 0 [1/year]; the estimate itself where the bias is unknown.
     tests : ResidualTests
     remarks : tuple of str
         What a user should know before relying on it, each a sentence; the verdict first.
@@ -112,9 +112,12 @@ def mean_reversion_bias(mean_reversion: float, *, step: float, steps: int) -> fl
     Tang, C.Y. and Chen, S.X. (2009), Parameter estimation and bias correction for diffusion processes, J.
     Econometrics 149, theorem 3.1.1 (from memory; the tests confirm it by simulation). They find the same
     leading term for the square-root model. Close to a random walk it falls short; see Yu, J. (2012), Bias in
-    the estimation of the mean reversion parameter in continuous time models, J. Econometrics 169.
+    the estimation of the mean reversion parameter in continuous time models, J. Econometrics 169. Where most
+    of the way back is made within one step (κΔ above 1) the formula says nothing, and NaN is given.
     """
-    growth = math.exp(min(mean_reversion * step, 20.0))
+    if mean_reversion * step > 1.0:
+        return math.nan
+    growth = math.exp(mean_reversion * step)
     return (2.5 + growth + 0.5 * growth**2) / (steps * step)
 
 
@@ -170,7 +173,9 @@ def history_fit_record(
     heights = np.array([log_likelihood if place == speed else profile(float(place)) for place in places])
     steps = history.step.size
     bias = mean_reversion_bias(speed, step=history.years / steps, steps=steps)
-    if likelihood == "stationary":
+    if speed >= 0.99 * FASTEST:
+        slow = False
+    elif likelihood == "stationary":
         slow = speed < _UNIT_ROOT_RATIO * speed_error and interval[0] < _NEAR_SHARE * speed
     else:
         slow = log_likelihood - profile(slowest) < 0.5 * _UNIT_ROOT_RATIO**2
@@ -197,7 +202,7 @@ def history_fit_record(
         profile_mean_reversion=places,
         profile_log_likelihood=heights,
         bias=bias,
-        corrected_mean_reversion=max(speed - bias, 0.0),
+        corrected_mean_reversion=max(speed - bias, 0.0) if math.isfinite(bias) else speed,
         tests=tests,
         remarks=(*verdict, *remarks, *history.remarks),
     )

@@ -228,7 +228,12 @@ def test_rates_without_memory() -> None:
 )
 def test_odd_histories_give_finite_figures(rates: FloatArray) -> None:
     for fit in (fit_vasicek(np.arange(60.0), rates), fit_square_root(np.arange(60.0), rates)):
-        assert all(map(math.isfinite, (fit.mean_reversion, fit.volatility, fit.log_likelihood, fit.bias)))
+        assert all(
+            map(
+                math.isfinite,
+                (fit.mean_reversion, fit.volatility, fit.log_likelihood, fit.corrected_mean_reversion),
+            )
+        )
         low, high = fit.mean_reversion_interval
         assert 0.0 <= low <= fit.mean_reversion <= high
         assert np.isfinite(fit.profile_log_likelihood).all()
