@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from collections.abc import Mapping
 from dataclasses import dataclass
 
 import numpy as np
@@ -196,9 +197,14 @@ def _position(assets: FloatArray, liabilities: FloatArray) -> Position:
 
 
 def curve_moves(
-    *, level: float = 0.0, slope: float = 0.0, bend: float = 0.0, term: float = 10.0
+    *,
+    level: float = 0.0,
+    slope: float = 0.0,
+    bend: float = 0.0,
+    term: float = 10.0,
+    by_term: Mapping[float, float] | None = None,
 ) -> tuple[Move, ...]:
-    """Moves of a curve by its level, slope and bend about a term.
+    """Moves of a curve by its level, slope and bend about a term, and by the rates at single terms.
 
     Parameters
     ----------
@@ -210,11 +216,14 @@ def curve_moves(
         The rate at the term up by it; at 0 and at twice the term and beyond down by it [basis points].
     term : float
         Above 0 [years].
+    by_term : mapping of float to float, optional
+        Terms [years] and moves there [basis points], joined by lines, flat outside them.
 
     Returns
     -------
     tuple of Move
-        Those that are not 0.
+        Those that are not 0. Bend and moves by term are both lines between terms: their sum is one between
+        the terms of both.
 
     Raises
     ------
@@ -228,8 +237,12 @@ def curve_moves(
         moves.append(Move(MoveKind.PARALLEL, level))
     if slope:
         moves.append(Move(MoveKind.TWIST, slope, term))
-    if bend:
-        moves.extend(
-            Move(MoveKind.RATE, size, at) for size, at in ((-bend, 0.0), (bend, term), (-bend, 2 * term))
-        )
+    bent = {0.0: -bend, term: bend, 2 * term: -bend} if bend else {}
+    parts = [part for part in (bent, dict(by_term or {})) if any(part.values())]
+    terms = sorted({at for part in parts for at in part})
+    sizes = np.zeros(len(terms))
+    for part in parts:
+        known = sorted(part)
+        sizes += np.interp(terms, known, [part[at] for at in known])
+    moves.extend(Move(MoveKind.RATE, size, at) for size, at in zip(sizes.tolist(), terms, strict=True))
     return tuple(moves)

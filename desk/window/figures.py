@@ -7,6 +7,7 @@ from collections.abc import Sequence
 from dataclasses import dataclass, replace
 
 from desk.valuation.records import Standing
+from desk.valuation.shock_records import Position
 from desk.window.parts import numbers
 from desk.window.parts.numbers import Scale
 
@@ -33,6 +34,8 @@ class Figure:
         nothing.
     change_in_words : str
         The same for a reader who listens.
+    change_role : str
+        Of the change in the theme.
     """
 
     key: str
@@ -43,6 +46,7 @@ class Figure:
     series: str = ""
     change: str = ""
     change_in_words: str = ""
+    change_role: str = "ink"
 
 
 def _shared_scale(values: Sequence[float]) -> tuple[Scale, int]:
@@ -71,7 +75,21 @@ def _sign_note(value: float, below: str, none: str, above: str) -> str:
     return below if value < 0 else above if value > 0 else none
 
 
-_COMPARED_WITH = "the second basis"
+@dataclass(frozen=True)
+class _Against:
+    """What a change is against, in words."""
+
+    short: str
+    long: str
+    same: str
+    same_in_words: str
+    role: str
+
+
+_SECOND = _Against(
+    "vs second", "on the second basis", "as on the second", "the same as on the second basis", "ink"
+)
+_WHAT_IF = _Against("what-if", "before the what-if", "as before", "unchanged by the what-if", "what_if")
 
 _KEYS = ("assets", "liabilities", "surplus", "funding_ratio", "duration_gap", "dv01_gap")
 _LABELS = ("Assets", "Liabilities", "Surplus", "Funding ratio", "Duration gap", "DV01 gap")
@@ -90,7 +108,14 @@ def _raw(standing: Standing) -> tuple[float, ...]:
     )
 
 
-def _compared(figure: Figure, now: float, other: float, factor: float, digits: int, unit: str) -> Figure:
+def _raw_moved(position: Position) -> tuple[float, ...]:
+    """The same of a book that is moved."""
+    return tuple(getattr(position, key) for key in _KEYS)
+
+
+def _compared(
+    figure: Figure, now: float, other: float, factor: float, digits: int, unit: str, against: _Against
+) -> Figure:
     """A figure with how far it is from `other`, both divided by `factor`."""
     change = (now - other) / factor
     if not math.isfinite(change):
@@ -101,15 +126,18 @@ def _compared(figure: Figure, now: float, other: float, factor: float, digits: i
     is_none = not text.startswith((numbers.MINUS, "+"))
     return replace(
         figure,
-        change="as on the second" if is_none else f"{text} vs second",
-        change_in_words=f"the same as on {_COMPARED_WITH}"
-        if is_none
-        else f"{words} {more} on {_COMPARED_WITH}",
+        change=against.same if is_none else f"{text} {against.short}",
+        change_in_words=against.same_in_words if is_none else f"{words} {more} {against.long}",
+        change_role=against.role,
     )
 
 
 def figures_of(
-    standing: Standing | None, currency: str = "", *, compared_with: Standing | None = None
+    standing: Standing | None,
+    currency: str = "",
+    *,
+    compared_with: Standing | None = None,
+    moved: Position | None = None,
 ) -> tuple[Figure, ...]:
     """The six key figures of a standing; without one, what they will be.
 
@@ -120,6 +148,8 @@ def figures_of(
         Of the book, where there is no standing yet.
     compared_with : Standing, optional
         On the second basis: each figure is told with how far it is above or below that one's.
+    moved : Position, optional
+        What a what-if makes of the book: its figures are shown, with how far they are from those before it.
     """
     if standing is None:
         units = (currency, currency, currency, "", "years", currency)
@@ -127,15 +157,16 @@ def figures_of(
             Figure(key, label, numbers.NOT_AVAILABLE, unit, "", mark)
             for key, label, unit, mark in zip(_KEYS, _LABELS, units, _MARKS, strict=True)
         )
-    raw = _raw(standing)
-    sides = raw[:2]
-    scale, digits = _shared_scale(sides)
+    before = _raw(standing)
+    raw = before if moved is None else _raw_moved(moved)
+    scale, digits = _shared_scale(before[:2])
+    # While the hand moves, the scale stays.
     gap_scale = numbers.scale_for(standing.dv01_gap)
     shown = [_money(value, standing.currency, scale, digits) for value in raw[:3]]
-    ratio, gap = standing.funding_ratio, standing.duration_gap
+    ratio, gap = raw[3], raw[4]
     shown.append((numbers.number(100 * ratio, 1) if math.isfinite(ratio) else UNKNOWN, "%"))
     shown.append((numbers.years(gap) if math.isfinite(gap) else UNKNOWN, "years"))
-    dv01, dv01_unit = _money(standing.dv01_gap, standing.currency, gap_scale, 2)
+    dv01, dv01_unit = _money(raw[5], standing.currency, gap_scale, 2)
     shown.append((dv01, f"{dv01_unit} a bp"))
     made = tuple(
         Figure(key, label, value, unit, note, mark)
@@ -143,15 +174,19 @@ def figures_of(
             _KEYS, _LABELS, shown, _notes(standing), _MARKS, strict=True
         )
     )
-    if compared_with is None:
+    if moved is not None:
+        other, against = before, _WHAT_IF
+    elif compared_with is not None:
+        other, against = _raw(compared_with), _SECOND
+    else:
         return made
     factors = (scale.factor,) * 3 + (0.01, 1.0, gap_scale.factor)
     places = (digits if scale.word else 0,) * 3 + (1, 2, 2 if gap_scale.word else 0)
     told_units = (*(figure.unit for figure in made[:3]), "percentage points", "years", made[5].unit)
     return tuple(
-        _compared(figure, now, other, factor, place, unit)
-        for figure, now, other, factor, place, unit in zip(
-            made, raw, _raw(compared_with), factors, places, told_units, strict=True
+        _compared(figure, now, then, factor, place, unit, against)
+        for figure, now, then, factor, place, unit in zip(
+            made, raw, other, factors, places, told_units, strict=True
         )
     )
 

@@ -115,7 +115,7 @@ class FigureButton(QAbstractButton):
         painter.end()
 
     def _paint_note(self, painter: QPainter, theme: Theme, place: QRect, metrics: QFontMetrics) -> None:
-        plain = theme.ink if self._figure.change else theme.ink_soft
+        plain = theme.text(self._figure.change_role) if self._figure.change else theme.ink_soft
         painter.setPen(theme.text("mild") if self._state else plain)
         flat = int(Qt.AlignmentFlag.AlignLeft | Qt.AlignmentFlag.AlignVCenter)
         painter.drawText(place, flat, metrics.elidedText(self.note, _RIGHT, place.width()))
@@ -184,7 +184,12 @@ class Headline(QWidget):
             button.clicked.connect(lambda _=False, key=figure.key: self.opened.emit(key))
             self._buttons[figure.key] = button
             row.addWidget(button, 3)
-        for signal in (document.book_changed, document.standing_changed, document.history_changed):
+        for signal in (
+            document.book_changed,
+            document.standing_changed,
+            document.history_changed,
+            document.what_if.changed,
+        ):
             signal.connect(self.refresh)
         theme_switch.changed.connect(lambda _: self.update())
         self.refresh()
@@ -225,19 +230,27 @@ class Headline(QWidget):
             "out of date": "Out of date: being valued again…" if document.is_valuing else "Out of date",
         }.get(state, self._compared_text() if book is not None else "")
         self._state.set_text(told)
-        is_mild = bool(state or (document.is_comparing and document.second_failure))
+        second_failed = document.is_comparing and document.second_failure and not document.what_if.is_on
+        is_mild = bool(state or second_failed)
         keep_look(self._state, "grave" if document.standing_failure else "mild" if is_mild else "soft")
         self._state.style().unpolish(self._state)
         self._state.style().polish(self._state)
         currency = book.basis.currency if book is not None else ""
         compared_with = document.comparison if document.comparison_is_current else None
-        for figure in figures_of(document.standing, currency, compared_with=compared_with):
+        frame = document.what_if.frame
+        moved = frame.position if frame is not None and not document.standing_is_stale else None
+        for figure in figures_of(document.standing, currency, compared_with=compared_with, moved=moved):
             self._buttons[figure.key].show_figure(figure, state)
             self._buttons[figure.key].setEnabled(book is not None)
 
     def _compared_text(self) -> str:
         """What the figures are, where there is nothing to say against them."""
         document = self._document
+        what_if = document.what_if
+        if what_if.is_on:
+            if what_if.frame is not None:
+                return "With the what-if"
+            return "The what-if cannot be shown" if what_if.failure else "The what-if is being made ready…"
         if not document.is_comparing:
             return "Figures are up to date"
         if document.second_failure:

@@ -34,6 +34,7 @@ class _Engine:
     book: Book
     what_if: WhatIf
     frame_ms: float
+    before: Frame
 
 
 class LiveWhatIf(QObject):
@@ -100,6 +101,11 @@ class LiveWhatIf(QObject):
     def engine(self) -> WhatIf | None:
         """The book, ready to be moved."""
         return None if self._engine is None else self._engine.what_if
+
+    @property
+    def before(self) -> Frame | None:
+        """The book before anything is tried out; None while it is not ready."""
+        return None if self._engine is None else self._engine.before
 
     @property
     def is_threaded(self) -> bool:
@@ -277,7 +283,7 @@ def _made_ready(book: Book, *, progress: Callable[[float], None], cancel: thread
         except CannotShock:
             what_if.frame(Shock(WHAT_IF, _PROBE.moves[:1]))
         took.append(1e3 * (time.perf_counter() - start))
-    return _Engine(book, what_if, min(took))
+    return _Engine(book, what_if, min(took), what_if.frame(Shock(WHAT_IF, ())))
 
 
 def _framed(

@@ -44,7 +44,8 @@ def _profile_sentence(profile: ParallelProfile, currency: str) -> str:
     worst = int(np.argmin(profile.surplus))
     at = numbers.signed(float(profile.move[worst]), 0)
     sign = "above" if gap[0] > 0.0 else "below"
-    return f"The duration gap stays {sign} 0; least at {at} bp: {amount(float(profile.surplus[worst]), currency)}."
+    least = amount(float(profile.surplus[worst]), currency)
+    return f"The duration gap stays {sign} 0; least at {at} bp: {least}."
 
 
 class MovedCurvePicture(Picture):

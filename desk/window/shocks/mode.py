@@ -31,6 +31,8 @@ class Mode(QObject):
     form : Form
     pictures : tuple of Picture
     table : QWidget
+    controls : tuple of QWidget
+        Beside the tabs while the mode is shown.
     share : int
         Part of the height that the table takes, in percent.
     """
@@ -49,6 +51,7 @@ class Mode(QObject):
             layout.setContentsMargins(0, 0, 0, 0)
         self.pictures: tuple[Picture, ...] = ()
         self.table: QWidget = QWidget()
+        self.controls: tuple[QWidget, ...] = ()
 
     @property
     def document(self) -> Document:

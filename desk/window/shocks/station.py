@@ -12,8 +12,8 @@ from desk.book import Shock
 from desk.window.document import Document
 from desk.window.jobs import Jobs
 from desk.window.parts.theme import GAP, HALF, WIDE, ThemeSwitch
-from desk.window.shocks.modes import MODES
 from desk.window.shocks.mode import Mode
+from desk.window.shocks.modes import MODES
 from desk.window.station import Station
 
 __all__ = ["ShocksStation"]
@@ -54,12 +54,11 @@ class ShocksStation(Station):
         self.words.setTextFormat(Qt.TextFormat.PlainText)
         self.words.setAccessibleName("What the shocks say")
         self.words.setContentsMargins(WIDE, 0, WIDE, HALF)
-        row = QHBoxLayout()
-        row.setContentsMargins(GAP, 0, WIDE, HALF)
-        row.addWidget(self.tabs)
-        row.addStretch(1)
         self._bar = QWidget()
-        self._bar.setLayout(row)
+        self._row = QHBoxLayout(self._bar)
+        self._row.setContentsMargins(GAP, 0, WIDE, HALF)
+        self._row.addWidget(self.tabs)
+        self._row.addStretch(1)
         column = self.layout()
         if isinstance(column, QVBoxLayout):
             column.insertWidget(1, self._bar)
@@ -102,6 +101,9 @@ class ShocksStation(Station):
             self._tables.addWidget(mode.table)
             mode.form.hide()
             self.form.add_widget(mode.form)
+            for control in mode.controls:
+                control.hide()
+                self._row.addWidget(control)
         return self._modes[key]
 
     def show_mode(self, key: str) -> None:
@@ -123,18 +125,24 @@ class ShocksStation(Station):
         if former is not mode:
             if former is not None:
                 former.leave()
-                former.form.hide()
-                for picture in former.pictures:
-                    picture.hide()
+                for part in (former.form, *former.pictures, *former.controls):
+                    part.hide()
             self._shown = key
             self._tables.setCurrentWidget(mode.table)
-            mode.form.show()
-            for picture in mode.pictures:
-                picture.show()
+            for part in (mode.form, *mode.pictures, *mode.controls):
+                part.show()
             self.main.setSizes([10 * (100 - mode.share), 10 * mode.share])
-            self.pictures.setSizes([self.pictures.width()] * self.pictures.count())
-            self.choose_sizes(self.chosen_sizes)
+            self.share_pictures()
         self._show()
+
+    def share_pictures(self) -> None:
+        """Equal shares for the pictures that are seen, unless the reader chose others."""
+        self.pictures.setSizes([self.pictures.width()] * self.pictures.count())
+
+    def refresh_shown(self) -> None:
+        """Bring the mode that is shown up to date at once: an edit was made in it."""
+        self._show()
+        self._say_what_is_stale()
 
     def _step(self, step: int) -> None:
         count = self.tabs.count()
