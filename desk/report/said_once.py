@@ -14,6 +14,11 @@ _AFTER_TODAY = ("a date after the valuation date", "years above 0")
 _COUNT = re.compile(r"([\d,]+) flows? falls? on or before the valuation date")
 _MATURED = re.compile(r"has maturity (\d{4}-\d{2}-\d{2})")
 _HORIZON = re.compile(r"the horizon of \d+ years? goes beyond")
+_NO_SUCH_LINE = re.compile(r"terms for a line (['\"])(.*)\1$", re.DOTALL)
+_LONGEST_NAME = 60
+"""Characters of a line's name that the reading repeats."""
+_NO_INFLATION = ", and no expected inflation"
+_OF_FLOWS = ("Liabilities", "Asset flows")
 
 
 def further_faults(told: Iterable[Fault], found: Iterable[Fault]) -> tuple[Fault, ...]:
@@ -31,7 +36,8 @@ def further_faults(told: Iterable[Fault], found: Iterable[Fault]) -> tuple[Fault
     tuple of Fault
         Without those that are in `told`, those that stand twice, and those that say of a sheet or a holding
         what `told` says of its cells: flows that are past, holdings that have matured, a horizon beyond the
-        last flow. A book that was changed since it was read has other counts and dates, and keeps them.
+        last flow, terms of lines that are not there or follow prices of which nothing is expected. A book
+        that was changed since it was read has other counts and dates, and keeps them.
     """
     before = list(told)
     seen = set(before)
@@ -52,4 +58,9 @@ def _is_told(fault: Fault, told: list[Fault]) -> bool:
         return any(other.expected in _AFTER_TODAY and matured[1] in other.found for other in places)
     if horizon := _HORIZON.match(fault.found):
         return any(other.found.startswith(horizon[0]) for other in places)
+    terms = [other for other in told if other.sheet == "Line terms" and other.cell]
+    if line := _NO_SUCH_LINE.match(fault.found):
+        return any(f'are of the line "{line[2][:_LONGEST_NAME]}"' in other.found for other in terms)
+    if fault.found.endswith(_NO_INFLATION) and fault.sheet in _OF_FLOWS:
+        return any("needs expected inflation" in other.found for other in terms)
     return False
