@@ -23,9 +23,9 @@ from desk.rates.compounding import Compounding, from_continuous, to_continuous
 from desk.rates.curve import DiscountCurve
 from desk.valuation.measures import BASIS_POINT
 
-__all__ = ["CurveMove", "Knots", "MovedCurve", "PlainMoves"]
+__all__ = ["DECAY", "CurveMove", "Knots", "MovedCurve", "PlainMoves"]
 
-_DECAY = 4.0  # years: how fast short moves fade and long ones grow, d368 Annex 2
+DECAY = 4.0  # years: how fast short moves fade and long ones grow, d368 Annex 2
 _STEP = 1e-6  # years, over which an instantaneous forward rate is taken
 
 
@@ -103,7 +103,7 @@ class PlainMoves:
         """The moves at times [1/year]."""
         size = np.full(np.shape(time), self.parallel)
         if self.short or self.long:
-            fading = np.exp(-time / _DECAY)
+            fading = np.exp(-time / DECAY)
             size += self.short * fading + self.long * (1.0 - fading)
         for term, most in self.twists:
             size += most * (np.minimum(time / term, 2.0) - 1.0)
