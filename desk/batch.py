@@ -175,14 +175,17 @@ def demonstrate(path: Path, folder: Path) -> tuple[Reading, Standing, Simulation
     if book.rates_model is not None:
         with ProgressLine("Simulating") as progress:
             simulation = tasks.simulate(book, progress=progress)
-    _say(as_text.standing_text(standing, title=book.basis.title))
+    second = _on_second_basis(book)
+    _say(as_text.standing_text(standing, title=book.basis.title, book=book, second=second))
     if simulation is not None:
         _say("")
         _say(as_text.simulation_text(simulation, currency=book.basis.currency))
     folder.mkdir(parents=True, exist_ok=True)
     target = folder / f"{path.stem}_report.xlsx"
     with ProgressLine("Writing") as progress:
-        tasks.report(reading, target, standing=standing, simulation=simulation, progress=progress)
+        tasks.report(
+            reading, target, standing=standing, simulation=simulation, second=second, progress=progress
+        )
     _say(f"\nThe report is in {target}")
     return reading, standing, simulation
 
@@ -242,12 +245,24 @@ def _value(options: argparse.Namespace) -> int:
     _insist_on(book, model=False)
     with ProgressLine("Valuing") as progress:
         standing = tasks.value(book, progress=progress)
-    _complain_of(further_faults(reading.faults, standing.faults))
+    second = _on_second_basis(book)
+    found = standing.faults if second is None else (*standing.faults, *second.faults)
+    _complain_of(further_faults(reading.faults, found))
     if options.json:
-        _say(as_json.text(as_json.standing_object(standing, reading.faults)))
+        _say(as_json.text(as_json.standing_object(standing, reading.faults, book=book, second=second)))
     else:
-        _say(as_text.standing_text(standing, title=book.basis.title))
+        _say(as_text.standing_text(standing, title=book.basis.title, book=book, second=second))
     return DONE
+
+
+def _on_second_basis(book: Book) -> Standing | None:
+    """The standing on the second basis, if the book has one that gives a curve."""
+    other = book.on_second_basis
+    if other is None:
+        return None
+    _insist_on(other, model=False, sheet="Second basis")
+    with ProgressLine("Valuing on the second basis") as progress:
+        return tasks.value(other, progress=progress)
 
 
 def _shock(options: argparse.Namespace) -> int:
@@ -347,9 +362,10 @@ def _report(options: argparse.Namespace) -> int:
         raise BadRequest([fault])
     reading, book = read_usable(options.book)
     _insist_on(book, model=book.rates_model is not None)
+    second = _on_second_basis(book)
     try:
         with ProgressLine("Reporting") as progress:
-            written = tasks.report(reading, options.out, progress=progress)
+            written = tasks.report(reading, options.out, second=second, progress=progress)
     except OSError as error:
         reason = error.strerror or str(error)
         if error.errno not in _NO_PLACE_TO_WRITE:
@@ -407,7 +423,7 @@ def _volatility_faults(stated: RatesModel | None, drawn: RatesModel | None) -> t
     )
 
 
-def _insist_on(book: Book, *, model: bool) -> None:
+def _insist_on(book: Book, *, model: bool, sheet: str = "Basis") -> None:
     """Raise BadRequest where the basis gives no curve, or the model, if it is needed, cannot be drawn."""
     from desk.intake.checks import plain
     from desk.intake.items import missing_items
@@ -424,14 +440,15 @@ def _insist_on(book: Book, *, model: bool) -> None:
             )
             for item in missing
         )
+    wanted = "a curve"
     try:
-        sheet = "Basis"
-        _ = book.basis.curve
+        _ = book.basis.curve, book.basis.liability_spread_at([1.0])
+        if book.basis.inflation is not None:
+            _ = book.basis.inflation.curve
         if model:
-            sheet = "Rates model"
+            sheet, wanted = "Rates model", "a model that can be drawn"
             rate_model(book)
     except ValueError as error:
-        wanted = "a curve" if sheet == "Basis" else "a model that can be drawn"
         raise BadRequest([Fault(plain(error), wanted, "Mend it in the book.", sheet=sheet)]) from error
 
 

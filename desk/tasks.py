@@ -407,6 +407,7 @@ def report(
     *,
     standing: Standing | None = None,
     simulation: Simulation | None = None,
+    second: Standing | None = None,
     progress: Progress | None = None,
     cancel: CancelToken | None = None,
 ) -> Path:
@@ -422,6 +423,8 @@ def report(
         The workbook to write; it is written whole or not at all.
     standing, simulation : optional
         Results of this book, where they are there already.
+    second : Standing, optional
+        On the second basis of the book. A second basis that gives no curve is said so in the report.
     progress, cancel : optional
         See `read`.
 
@@ -451,7 +454,9 @@ def report(
     if simulation is None and reading.book.rates_model is not None:
         simulation = simulate(reading.book, progress=_part(watched, 0.1, 0.6), cancel=cancel)
         start = 0.6
-    written = write_report(reading, standing, simulation, path, progress=_part(watched, start, 1.0))
+    written = write_report(
+        reading, standing, simulation, path, second=second, progress=_part(watched, start, 1.0)
+    )
     watched(1.0)
     return written
 

@@ -6,12 +6,18 @@ A number that is not finite becomes None, which JSON writes as ``null``.
 from __future__ import annotations
 
 import json
-import math
-from collections.abc import Iterable, Sequence
+from collections.abc import Iterable
 from typing import Any
 
-from desk.book import Fault
+from desk.book import Book, Fault
 from desk.intake.records import Reading
+from desk.report.basis_objects import (
+    curve_object,
+    inflation_object,
+    liability_basis_object,
+    line_objects,
+)
+from desk.report.plain_numbers import plain_number, plain_rows
 from desk.report.said_once import further_faults
 from desk.scenarios.records import Distribution, NodeSummary, Simulation
 from desk.valuation.records import LineStanding, Measures, Standing
@@ -87,48 +93,92 @@ def check_object(reading: Reading) -> dict[str, Any]:
     }
 
 
-def standing_object(standing: Standing, faults: Iterable[Fault] = ()) -> dict[str, Any]:
+def standing_object(
+    standing: Standing,
+    faults: Iterable[Fault] = (),
+    *,
+    book: Book | None = None,
+    second: Standing | None = None,
+) -> dict[str, Any]:
     """A standing.
 
     Parameters
     ----------
     standing : Standing
     faults : iterable of Fault
-        Those of the reading; the standing's own are added where they say something new.
+        Those of the reading; the standings' own are added where they say something new.
+    book : Book, optional
+        That was valued. With it the curve, the basis of the liabilities and the terms of the lines are said;
+        without it they are None.
+    second : Standing, optional
+        On the second basis of the book.
 
     Returns
     -------
     dict
-        Rates and durations in years or per year, amounts in the book's currency, nothing rounded.
+        Rates and durations in years or per year, amounts in the book's currency, nothing rounded. The keys
+        are the same for every book; what a book does not have is None. Under ``second_basis`` stand the keys
+        of a standing but for the faults, and ``differences``: the first basis less the second.
     """
+    found = _position(standing, book)
+    found["second_basis"] = None
+    told = _together(faults, standing.faults)
+    if second is not None:
+        found["second_basis"] = {
+            **_position(second, None if book is None else book.on_second_basis),
+            "differences": _differences(standing, second),
+        }
+        told = (*told, *further_faults(told, second.faults))
+    found["faults"] = [fault_object(fault) for fault in told]
+    return found
+
+
+def _position(standing: Standing, book: Book | None) -> dict[str, Any]:
+    """A standing on one basis, without its faults."""
     keys = standing.key_rates
     periods = standing.periods
+    further = line_objects(book, standing)
     return {
         "valuation_date": standing.valuation_date.isoformat(),
         "currency": standing.currency,
         "assets": _measures(standing.assets),
         "liabilities": _measures(standing.liabilities),
-        "surplus": _number(standing.surplus),
-        "funding_ratio": _number(standing.funding_ratio),
-        "duration_gap": _number(standing.duration_gap),
-        "dv01_gap": _number(standing.dv01_gap),
+        "surplus": plain_number(standing.surplus),
+        "funding_ratio": plain_number(standing.funding_ratio),
+        "duration_gap": plain_number(standing.duration_gap),
+        "dv01_gap": plain_number(standing.dv01_gap),
         "redington": {condition.name: bool(condition.holds) for condition in standing.redington},
-        "key_rates": _rows(
+        "key_rates": plain_rows(
             term=keys.term,
             assets=keys.assets,
             liabilities=keys.liabilities,
             dv01_assets=keys.dv01_assets,
             dv01_liabilities=keys.dv01_liabilities,
         ),
-        "lines": [_line(line) for line in standing.lines],
-        "periods": _rows(
+        "lines": [_line(line) | of_line for line, of_line in zip(standing.lines, further, strict=True)],
+        "periods": plain_rows(
             year=periods.year,
             assets=periods.assets,
             liabilities=periods.liabilities,
             net=periods.net,
             cumulative=periods.cumulative,
         ),
-        "faults": [fault_object(fault) for fault in _together(faults, standing.faults)],
+        "curve": None if book is None else curve_object(book.basis),
+        "liability_basis": None if book is None else liability_basis_object(book.basis, standing),
+        "inflation": inflation_object(standing.inflation),
+    }
+
+
+def _differences(first: Standing, second: Standing) -> dict[str, Any]:
+    """Each figure on the first basis less that on the second."""
+
+    def less(of: Any, other: Any, names: Iterable[str]) -> dict[str, float | int | None]:
+        return {name: plain_number(getattr(of, name) - getattr(other, name)) for name in names}
+
+    return {
+        "assets": less(first.assets, second.assets, MEASURE_NAMES),
+        "liabilities": less(first.liabilities, second.liabilities, MEASURE_NAMES),
+        **less(first, second, ("surplus", "funding_ratio", "duration_gap", "dv01_gap")),
     }
 
 
@@ -171,19 +221,9 @@ def _together(told: Iterable[Fault], found: Iterable[Fault]) -> tuple[Fault, ...
     return (*told, *further_faults(told, found))
 
 
-def _number(value: Any) -> float | int | None:
-    """A plain finite number, or None."""
-    if value is None:
-        return None
-    plain = value.item() if hasattr(value, "item") else value
-    if isinstance(plain, int):
-        return int(plain)
-    return float(plain) if math.isfinite(plain) else None
-
-
 def _measures(measures: Measures) -> dict[str, float | int | None]:
     """The measures of one side."""
-    return {name: _number(getattr(measures, name)) for name in MEASURE_NAMES}
+    return {name: plain_number(getattr(measures, name)) for name in MEASURE_NAMES}
 
 
 def _line(line: LineStanding) -> dict[str, Any]:
@@ -191,20 +231,12 @@ def _line(line: LineStanding) -> dict[str, Any]:
     return {
         "side": line.side.value,
         "line": line.line,
-        "present_value": _number(line.measures.present_value),
-        "effective_duration": _number(line.measures.effective_duration),
-        "spread": _number(line.spread),
-        "spread_duration": _number(line.spread_duration),
-        "expected_credit_loss": _number(line.expected_credit_loss),
+        "present_value": plain_number(line.measures.present_value),
+        "effective_duration": plain_number(line.measures.effective_duration),
+        "spread": plain_number(line.spread),
+        "spread_duration": plain_number(line.spread_duration),
+        "expected_credit_loss": plain_number(line.expected_credit_loss),
     }
-
-
-def _rows(**columns: Sequence[Any] | Any) -> list[dict[str, float | int | None]]:
-    """Columns of one length as one object a row."""
-    return [
-        {name: _number(value) for name, value in zip(columns, row, strict=True)}
-        for row in zip(*columns.values(), strict=True)
-    ]
 
 
 def _summary(summary: NodeSummary, **further: Any) -> list[dict[str, float | int | None]]:
@@ -212,19 +244,19 @@ def _summary(summary: NodeSummary, **further: Any) -> list[dict[str, float | int
     percentiles = {
         percentile_name(level): summary.percentile[:, index] for index, level in enumerate(summary.levels)
     }
-    return _rows(year=summary.year, mean=summary.mean, sd=summary.sd, **percentiles, **further)
+    return plain_rows(year=summary.year, mean=summary.mean, sd=summary.sd, **percentiles, **further)
 
 
 def _distribution(side: Distribution) -> dict[str, float | int | None]:
     """The pathwise present value of one side."""
     percentiles = {
-        percentile_name(level): _number(value)
+        percentile_name(level): plain_number(value)
         for level, value in zip(side.levels, side.percentile, strict=True)
     }
     return {
-        "mean": _number(side.mean),
-        "se": _number(side.se),
-        "sd": _number(side.sd),
+        "mean": plain_number(side.mean),
+        "se": plain_number(side.se),
+        "sd": plain_number(side.sd),
         **percentiles,
-        "curve": _number(side.curve),
+        "curve": plain_number(side.curve),
     }

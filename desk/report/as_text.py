@@ -2,15 +2,15 @@
 
 from __future__ import annotations
 
-import math
 import textwrap
-import unicodedata
-from collections.abc import Callable, Iterable, Sequence
+from collections.abc import Callable, Sequence
 
 import numpy as np
 
-from desk.book import Fault, Severity
+from desk.book import Book, Fault, Severity
 from desk.intake.records import Reading
+from desk.report.basis_text import basis_text, comparison_text, inflation_text
+from desk.report.text_tables import MISSING, grouped, percent, printable, table
 from desk.report.wording import CAUTION, MEASURES, QUANTILE_METHOD, SIDE_NAMES
 from desk.scenarios.records import NodeSummary, Simulation
 from desk.valuation.records import LineStanding, Periods, Standing
@@ -29,57 +29,6 @@ __all__ = [
 LINES_SHOWN = 20
 LONGEST_NAME = 32
 LINE_WIDTH = 96
-_MISSING = "n/a"
-
-
-def printable(text: str) -> str:
-    """`text` on one line, with characters that would move the cursor shown as U+FFFD."""
-    return "".join(
-        letter if letter.isprintable() else " " if letter.isspace() else "\ufffd" for letter in text
-    )
-
-
-def grouped(value: float | None, places: int = 0) -> str:
-    """A number with grouped thousands and a true minus sign; ``n/a`` where there is none."""
-    if value is None or not math.isfinite(value):
-        return _MISSING
-    text = f"{value:,.{places}f}"
-    if text.startswith("-"):
-        # A negative number that is shown as zero has no sign.
-        text = f"−{text[1:]}" if text.strip("-0.,") else text[1:]
-    return text
-
-
-def percent(value: float | None, places: int = 3) -> str:
-    """A rate in per cent, without the sign for it."""
-    return grouped(None if value is None else 100.0 * value, places)
-
-
-def table(headings: Sequence[str], rows: Iterable[Sequence[str]], *, left: int = 1) -> str:
-    """A table in columns.
-
-    Parameters
-    ----------
-    headings : sequence of str
-        One a column; a line feed divides a heading into the name and the unit below it.
-    rows : iterable of sequences of str
-    left : int
-        How many columns, from the first, are set flush left; the others are set flush right.
-
-    Returns
-    -------
-    str
-        Without a line feed at the end.
-    """
-    tall = max(heading.count("\n") for heading in headings) + 1
-    parts = [[""] * (tall - 1 - heading.count("\n")) + heading.split("\n") for heading in headings]
-    head = [tuple(column[line] for column in parts) for line in range(tall)]
-    body = [tuple(row) for row in rows]
-    widths = [max(_width(row[number]) for row in (*head, *body)) for number in range(len(headings))]
-    rule = "─" * (sum(widths) + 2 * (len(widths) - 1))
-    return "\n".join(
-        [*(_row(row, widths, left) for row in head), rule, *(_row(row, widths, left) for row in body)]
-    )
 
 
 def fault_line(fault: Fault) -> str:
@@ -107,20 +56,35 @@ def check_text(reading: Reading) -> str:
     return f"{name}: {counts}. It holds {holds}.\nContents {book.digest}"
 
 
-def standing_text(standing: Standing, *, title: str = "") -> str:
-    """A standing as tables."""
+def standing_text(
+    standing: Standing, *, title: str = "", book: Book | None = None, second: Standing | None = None
+) -> str:
+    """A standing as tables.
+
+    Parameters
+    ----------
+    standing : Standing
+    title : str
+    book : Book, optional
+        That was valued: its curve and the basis of its liabilities are told then.
+    second : Standing, optional
+        On the second basis of the book, told beside the first.
+    """
     currency = printable(standing.currency)
     head = f"Standing at {standing.valuation_date.isoformat()}, amounts in {currency}"
     blocks = [
         f"{printable(title)}\n{head}" if title else head,
         _headline(standing, currency),
+        *([] if book is None else [basis_text(book, standing)]),
         _sides(standing, currency),
-        _redington(standing),
-        _key_rates(standing, currency),
-        _lines(standing, currency),
-        _periods(standing.periods, currency),
-        _wrapped(CAUTION),
     ]
+    if second is not None:
+        other = None if book is None else book.on_second_basis
+        blocks.append(comparison_text(standing, second, other, currency))
+    blocks += [_redington(standing), _key_rates(standing, currency)]
+    if standing.inflation is not None:
+        blocks.append(inflation_text(standing.inflation, currency))
+    blocks += [_lines(standing, currency), _periods(standing.periods, currency), _wrapped(CAUTION)]
     return "\n\n".join(blocks)
 
 
@@ -232,7 +196,7 @@ def _lines(standing: Standing, currency: str) -> str:
         for line in shown:
             name = printable(line.line)
             cut = name if len(name) <= LONGEST_NAME else f"{name[: LONGEST_NAME - 1]}…"
-            spread = _MISSING if line.spread is None else grouped(10_000.0 * line.spread, 1)
+            spread = MISSING if line.spread is None else grouped(10_000.0 * line.spread, 1)
             rows.append(
                 (
                     side_name,
@@ -331,7 +295,7 @@ def _repricing(simulation: Simulation, shown: Sequence[int]) -> str:
                 grouped(error, 6),
                 grouped(check.expected_discount[row], 6),
                 grouped(check.curve_discount[row], 6),
-                grouped(away / error, 2) if error > 0.0 else _MISSING,
+                grouped(away / error, 2) if error > 0.0 else MISSING,
             )
         )
     headings = (
@@ -369,20 +333,3 @@ def _wrapped(text: str) -> str:
 def _count(number: int, thing: str) -> str:
     """A number of things in words."""
     return f"{number:,} {thing}" if number == 1 else f"{number:,} {thing}s"
-
-
-def _width(text: str) -> int:
-    """Columns that a text takes in a terminal."""
-    return sum(
-        0 if unicodedata.combining(letter) else 2 if unicodedata.east_asian_width(letter) in "WF" else 1
-        for letter in text
-    )
-
-
-def _row(cells: Sequence[str], widths: Sequence[int], left: int) -> str:
-    """One row of a table."""
-    parts = []
-    for number, (cell, width) in enumerate(zip(cells, widths, strict=True)):
-        space = " " * (width - _width(cell))
-        parts.append(cell + space if number < left else space + cell)
-    return "  ".join(parts).rstrip()

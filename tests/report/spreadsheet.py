@@ -125,6 +125,16 @@ def _count_if(area: Any, wanted: Any) -> int:
     return sum(1 for value in np.asarray(area, dtype=object).tolist() if value == wanted)
 
 
+def _index(area: Any, place: float) -> Any:
+    assert 1 <= place <= len(area)
+    return area[int(place) - 1]
+
+
+def _match(wanted: float, area: Any, kind: int) -> int:
+    assert kind == 1
+    return int(np.searchsorted(np.asarray(area, dtype=float), wanted, side="right"))
+
+
 def _normal(value: float) -> float:
     return 0.5 * math.erfc(-value / math.sqrt(2.0))
 
@@ -139,6 +149,12 @@ _FUNCTIONS: dict[str, Any] = {
     "EXP": np.exp,
     "LN": lambda value: math.log(value),
     "ABS": lambda value: np.abs(value),
+    "INDEX": _index,
+    "INT": lambda value: math.floor(value),
+    "MATCH": _match,
+    "MIN": lambda *values: min(values),
+    "PI": lambda: math.pi,
+    "SQRT": lambda value: math.sqrt(value),
     "MAX": lambda *values: max(values),
     "AND": lambda *values: all(values),
     "IF": lambda condition, one, other: one if condition else other,

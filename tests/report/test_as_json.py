@@ -26,7 +26,8 @@ def test_standing_has_the_keys_of_the_contract() -> None:
     found = as_json.standing_object(examples.standing(), examples.reading().faults)
     assert set(found) == {
         "valuation_date", "currency", "assets", "liabilities", "surplus", "funding_ratio", "duration_gap",
-        "dv01_gap", "redington", "key_rates", "lines", "periods", "faults",
+        "dv01_gap", "redington", "key_rates", "lines", "periods", "faults", "curve", "liability_basis",
+        "inflation", "second_basis",
     }  # fmt: skip
     assert set(found["assets"]) == set(found["liabilities"]) == MEASURES
     assert found["redington"] == {
@@ -38,7 +39,7 @@ def test_standing_has_the_keys_of_the_contract() -> None:
     assert len(found["key_rates"]) == 14
     line_keys = {
         "side", "line", "present_value", "effective_duration", "spread", "spread_duration",
-        "expected_credit_loss",
+        "expected_credit_loss", "inflation_dv01", "indexation", "discounting",
     }  # fmt: skip
     assert all(set(row) == line_keys for row in found["lines"])
     assert [row["side"] for row in found["lines"]] == ["assets"] * 6 + ["liabilities"] * 4

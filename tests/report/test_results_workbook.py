@@ -284,7 +284,7 @@ def test_too_many_rows_are_summed_by_line_and_year(tmp_path: Path, monkeypatch: 
     assert sheet.value(*MASTER) == "OK"
 
 
-@pytest.mark.parametrize("kind", list(CurveKind))
+@pytest.mark.parametrize("kind", [CurveKind.ZERO, CurveKind.PAR, CurveKind.SWAP])
 @pytest.mark.parametrize("by_method", [False, True])
 def test_any_curve_is_recomputed(tmp_path: Path, kind: CurveKind, by_method: bool) -> None:
     """Zero rates of quotes that are solved for together agree with their discount factors."""

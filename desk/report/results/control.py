@@ -15,17 +15,18 @@ from desk.intake.records import Reading
 from desk.report.results.checks import TOLERANCE, Checks
 from desk.report.results.flows import FlowSheet
 from desk.report.results.key_rates import key_rate_chart
+from desk.report.results.periods import flow_chart
 from desk.report.results.plan import FIRST_ROW, HEADING_ROW, Block, Formula, SheetPlan
 from desk.report.results.runs import run_label
-from desk.report.results.standing import flow_chart
 from desk.report.said_once import further_faults
-from desk.report.wording import CAUTION, MEASURES, QUANTILE_METHOD
+from desk.report.wording import CAUTION, MEASURES, QUANTILE_METHOD, liability_words
 from desk.scenarios.records import Simulation
 from desk.valuation.records import Standing
 
 __all__ = ["MASTER_CHECK_AREA", "plan_faults", "plan_provenance", "plan_summary"]
 
 FAULT_CAP = 10_000
+_NOTHING = (None, "", "")
 NOTE_WIDTH = 112  # characters of the small print that fit beside the pictures
 MASTER_CHECK_AREA = "Summary!$B$3"
 
@@ -39,6 +40,7 @@ def plan_summary(
     recomputed: dict[str, str],
     checks: Checks,
     charts_from: dict[str, SheetPlan],
+    compared: Standing | None = None,
 ) -> SheetPlan:
     """The first sheet: the position, whether the workbook agrees with the program, and how to read it."""
     currency = standing.currency
@@ -88,6 +90,7 @@ def plan_summary(
             ],
         )
     row = _notes(plan, row + 1, [condition.statement for condition in standing.redington]) - 1
+    row = _bases(plan, row + 2, reading, standing, compared, currency) - 1
     row += 2
     for part in textwrap.wrap(CAUTION, NOTE_WIDTH - 10):
         plan.put(row, 1, part, "caution")
@@ -96,6 +99,57 @@ def plan_summary(
     row = _signatures(plan, row + 1)
     _pictures(plan, standing, charts_from)
     return plan
+
+
+def _bases(
+    plan: SheetPlan, row: int, reading: Reading, standing: Standing, compared: Standing | None, currency: str
+) -> int:
+    """What liabilities are discounted on, expected inflation, and the second basis; returns the row after."""
+    rows: list[list[tuple[Any, str, str]]] = []
+    if reading.book is not None:
+        basis = reading.book.basis
+        rows.append([("Curve", "text", "text"), _NOTHING, (basis.curve_kind.value, "reported", "word")])
+        rows.append([("Liabilities on", "text", "text"), _NOTHING, (liability_words(basis), "note", "text")])
+    if standing.inflation is not None:
+        told = standing.inflation
+        rows.append(
+            [
+                ("Inflation duration", "text", "text"),
+                ("years", "text", "text"),
+                (told.assets_duration, "reported", "years"),
+                (told.liabilities_duration, "reported", "years"),
+            ]
+        )
+        rows.append(
+            [
+                ("Inflation DV01, a rise", "text", "text"),
+                (currency, "text", "text"),
+                (told.dv01_assets, "reported", "money"),
+                (told.dv01_liabilities, "reported", "money"),
+            ]
+        )
+    if compared is not None:
+        rows.append(
+            [
+                ("Surplus on the second basis", "text", "text"),
+                (currency, "text", "text"),
+                (compared.surplus, "reported", "money"),
+            ]
+        )
+        rows.append(
+            [
+                ("Funding ratio on the second basis", "text", "text"),
+                ("share", "text", "text"),
+                (compared.funding_ratio, "reported", "share"),
+            ]
+        )
+    plan.headings(["Basis", "Unit", "Assets, or the whole", "Liabilities"], row=row, left=2)
+    rate = [("Single equivalent rate of the liabilities", "text", "text"), ("a year", "text", "text")]
+    rows.insert(2, [*rate, _NOTHING, (standing.liabilities.equivalent_rate, "reported", "rate")])
+    for cells in rows:
+        row += 1
+        plan.table_row(row, 1, cells)
+    return row + 1
 
 
 def _headline(plan: SheetPlan, standing: Standing, recomputed: dict[str, str], currency: str) -> int:
@@ -191,19 +245,29 @@ def _signatures(plan: SheetPlan, row: int) -> int:
 
 def _pictures(plan: SheetPlan, standing: Standing, charts_from: dict[str, SheetPlan]) -> None:
     """Flows and key rates, drawn from their own sheets."""
-    charts = [key_rate_chart(charts_from["Key rates"], standing)]
+    charts = [key_rate_chart(charts_from["Key rates"], standing.key_rates, standing.currency)]
     if charts_from["Periods"].charts:
-        charts.insert(0, flow_chart(charts_from["Periods"], standing))
+        charts.insert(0, flow_chart(charts_from["Periods"], standing.periods, standing.currency))
     for number, chart in enumerate(charts):
         chart.width, chart.height = 16, 9
         plan.charts.append((chart, f"I{HEADING_ROW + 19 * number}"))
 
 
-def plan_faults(reading: Reading, standing: Standing, simulation: Simulation | None) -> SheetPlan:
+def plan_faults(
+    reading: Reading,
+    standing: Standing,
+    simulation: Simulation | None,
+    *,
+    second: Standing | None = None,
+) -> SheetPlan:
     """Everything that was found wrong, and what was done about it."""
     told = reading.faults
     of_standing = further_faults(told, standing.faults)
     sources: list[tuple[str, Sequence[Fault]]] = [("Reading", told), ("Valuation", of_standing)]
+    if second is not None:
+        of_second = further_faults((*told, *of_standing), second.faults)
+        sources.append(("Second basis", of_second))
+        of_standing = (*of_standing, *of_second)
     if simulation is not None:
         sources.append(("Simulation", further_faults((*told, *of_standing), simulation.faults)))
     faults = [(source, fault) for source, found in sources for fault in found]

@@ -16,9 +16,11 @@ from numpy.typing import NDArray
 from desk.book import PricedFlows, Side
 from desk.book.arrays import FloatArray
 from desk.rates.curve import DiscountCurve
+from desk.report.results.further_columns import FurtherColumns
+from desk.report.results.naming import FIRST, Naming
 from desk.report.results.plan import FIRST_ROW, HEADING_ROW, Block, Formula, SheetPlan, column_letter
 
-__all__ = ["ROW_CAP", "FlowSheet", "plan_flows"]
+__all__ = ["COLUMNS", "PAID", "ROW_CAP", "FlowSheet", "further_columns", "plan_flows"]
 
 ROW_CAP = 20_000
 SHEET_NAMES = {Side.ASSETS: "Asset flows", Side.LIABILITIES: "Liabilities"}
@@ -51,6 +53,8 @@ class FlowSheet:
     Attributes
     ----------
     plan : SheetPlan
+    prefix : str
+        How the names of its columns begin.
     names : dict of str to str
         Names that the workbook defines, each with the area it stands for.
     is_by_row : bool
@@ -63,19 +67,34 @@ class FlowSheet:
         Of each line, the sum of its rows' present values without their signs [currency].
     has_paid : bool
         Whether the column of what is paid stands there; else it is the amount.
+    follows_inflation : bool
+        Whether the columns of growth with expected inflation stand there.
     """
 
     plan: SheetPlan
+    prefix: str
     names: dict[str, str]
     is_by_row: bool
     rows_before: int
     reported_value: float
     line_size: FloatArray
     has_paid: bool
+    follows_inflation: bool = False
+
+
+def further_columns(flows: PricedFlows) -> FurtherColumns:
+    """The place of further columns, none yet."""
+    return FurtherColumns(len(COLUMNS) + 1 + (flows.payment is not None))
 
 
 def plan_flows(
-    flows: PricedFlows, dates: NDArray[np.datetime64], curve: DiscountCurve, *, currency: str
+    flows: PricedFlows,
+    dates: NDArray[np.datetime64],
+    curve: DiscountCurve,
+    *,
+    currency: str,
+    further: FurtherColumns | None = None,
+    naming: Naming = FIRST,
 ) -> FlowSheet:
     """Plan the sheet of one side.
 
@@ -85,6 +104,9 @@ def plan_flows(
     dates : ndarray of datetime64[D], shape (n,)
     curve : DiscountCurve
     currency : str
+    further : FurtherColumns, optional
+        Left out where rows are summed up.
+    naming : Naming
 
     Returns
     -------
@@ -94,13 +116,14 @@ def plan_flows(
     zero = curve.zero(flows.time)
     value = flows.amount * np.exp(-(zero + flows.spread) * flows.time)
     year = np.maximum(np.ceil(flows.time - _YEAR_SLACK), 1.0)
+    own = further if further is not None and by_row else further_columns(flows)
     if by_row:
-        block = _row_block(flows, dates, zero=zero, value=value, year=year)
+        block = _row_block(flows, dates, zero=zero, value=value, year=year, further=own)
     else:
         block = _summed_block(flows, value=value, year=year)
-    plan = _plan(flows, block, currency=currency, by_row=by_row)
+    plan = _plan(flows, block, currency=currency, by_row=by_row, further=own, naming=naming)
     last = FIRST_ROW + max(block.count, 1) - 1
-    prefix = flows.side.value
+    prefix = naming.prefix(flows.side)
     names = {
         f"{prefix}_{name}": plan.area(number, FIRST_ROW, last)
         for number, name in enumerate(COLUMNS, start=1)
@@ -110,19 +133,34 @@ def plan_flows(
     names[f"{prefix}_{PAID}"] = (
         plan.area(len(COLUMNS) + 1, FIRST_ROW, last) if has_paid else names[f"{prefix}_amount"]
     )
+    names |= {
+        f"{prefix}_{column.name}": plan.area(number, FIRST_ROW, last)
+        for number, column in enumerate(own.columns, start=own.first)
+        if column.name
+    }
     size = np.bincount(flows.line, weights=np.abs(value), minlength=len(flows.line_names))
     return FlowSheet(
         plan,
+        prefix,
         names,
         by_row,
         len(flows),
         float(value.sum()),
         line_size=size.astype(np.float64),
         has_paid=has_paid,
+        follows_inflation=any(column.name == "inflation_rise" for column in own.columns),
     )
 
 
-def _plan(flows: PricedFlows, block: Block, *, currency: str, by_row: bool) -> SheetPlan:
+def _plan(
+    flows: PricedFlows,
+    block: Block,
+    *,
+    currency: str,
+    by_row: bool,
+    further: FurtherColumns,
+    naming: Naming,
+) -> SheetPlan:
     """Title, headings and the row of sums."""
     what = "Payments promised" if flows.side is Side.LIABILITIES else "Payments of the assets"
     if by_row:
@@ -138,7 +176,10 @@ def _plan(flows: PricedFlows, block: Block, *, currency: str, by_row: bool) -> S
     has_paid = flows.payment is not None
     if has_paid:
         note += " Floating interest counts at the fixed amounts that are worth it on any curve."
-    plan = SheetPlan(SHEET_NAMES[flows.side], f"{what} after the valuation date", note, block=block)
+    if further.amount is not None:
+        note += " Amounts that grow are those in today's money times their growth."
+    name, title = SHEET_NAMES[flows.side], f"{what} after the valuation date"
+    plan = SheetPlan(naming.sheet(name), naming.title(title), note, block=block)
     plan.widths = dict(
         enumerate(
             (26.0, 7.0, 12.0, 11.0, 7.0, 9.0, 17.0, 11.0, 11.0, 13.0, 17.0, 19.0, 20.0, 17.0, 13.0, 17.0),
@@ -164,8 +205,12 @@ def _plan(flows: PricedFlows, block: Block, *, currency: str, by_row: bool) -> S
             f"Present value, reported [{currency}]",
             f"Difference [{currency}]",
             *([f"Paid, as projected [{currency}]"] if has_paid else []),
+            *(column.heading for column in further.columns),
         ]
     )
+    plan.widths |= {
+        number: column.width for number, column in enumerate(further.columns, start=further.first)
+    }
     last = FIRST_ROW + max(block.count, 1) - 1
     plan.put(HEADING_ROW - 1, 6, "Sum", "text")
     summed = ("amount", "value", "timed", "timed_twice", "reported", "difference", PAID)
@@ -175,6 +220,11 @@ def _plan(flows: PricedFlows, block: Block, *, currency: str, by_row: bool) -> S
             form = "tiny" if name == "difference" else "money"
             total = Formula(f"=SUM({letter}{FIRST_ROW}:{letter}{last})")
             plan.put(HEADING_ROW - 1, number, total, "live", form)
+    for number, column in enumerate(further.columns, start=further.first):
+        if column.is_summed:
+            letter = column_letter(number)
+            total = Formula(f"=SUM({letter}{FIRST_ROW}:{letter}{last})")
+            plan.put(HEADING_ROW - 1, number, total, "live", column.form)
     if not block.count:
         plan.put(FIRST_ROW, 1, "This side has no flows.", "note")
     return plan
@@ -207,6 +257,7 @@ def _row_block(
     zero: FloatArray,
     value: FloatArray,
     year: FloatArray,
+    further: FurtherColumns,
 ) -> Block:
     """One row a flow, with formulas."""
     has_paid = flows.payment is not None
@@ -225,8 +276,15 @@ def _row_block(
             value.tolist(),
             flows.paid.tolist(),
         )
-        for row, cells in enumerate(zip(*columns, strict=True), start=FIRST_ROW):
+        for number, cells in enumerate(zip(*columns, strict=True)):
+            row = FIRST_ROW + number
             line, date, time, year_number, payment, amount, rate, spread, worth, paid = cells
+            if further.amount is not None:
+                amount = further.amount(row, number)
+            if further.spread is not None:
+                spread = further.spread(row, number)
+            if further.paid is not None:
+                paid = further.paid(row, number)
             yield (
                 names[line - 1],
                 line,
@@ -244,15 +302,19 @@ def _row_block(
                 worth,
                 Formula(f"=K{row}-N{row}"),
                 *([paid] if has_paid else []),
+                *(column.cells(row, number) for column in further.columns),
             )
 
     inputs, live = "input", "live"
     roles = (
-        *("text", "text", inputs, inputs, "reported", "reported", inputs, inputs, inputs),
+        *("text", "text", inputs, inputs, "reported", "reported"),
+        *(inputs if further.amount is None else live, inputs, inputs if further.spread is None else live),
         *(live, live, live, live, "reported", live),
         *(("reported",) if has_paid else ()),
     )
-    return Block(FIRST_ROW, len(flows), roles, _FORMS[: len(roles)], rows)
+    forms = (*_FORMS[: len(roles)], *(column.form for column in further.columns))
+    roles = (*roles, *(column.role for column in further.columns))
+    return Block(FIRST_ROW, len(flows), roles, forms, rows)
 
 
 def _summed_block(flows: PricedFlows, *, value: FloatArray, year: FloatArray) -> Block:

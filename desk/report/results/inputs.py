@@ -5,9 +5,7 @@ from __future__ import annotations
 from collections.abc import Iterator, Sequence
 from typing import Any
 
-import numpy as np
-
-from desk.book import Basis, Book, CurveKind, Holding, HoldingKind
+from desk.book import Basis, BondFit, Book, CurveKind, Holding, HoldingKind
 from desk.book.arrays import FloatArray
 from desk.rates.compounding import to_continuous
 from desk.rates.smith_wilson import Extrapolation
@@ -15,16 +13,23 @@ from desk.report.results.charts import Column, lines
 from desk.report.results.checks import Checks
 from desk.report.results.flows import ROW_CAP
 from desk.report.results.look import ASSETS, LIABILITIES, SURPLUS
+from desk.report.results.naming import FIRST, Naming
 from desk.report.results.plan import FIRST_ROW, HEADING_ROW, Block, Formula, SheetPlan
 from desk.report.results.standing import size_of_line
+from desk.valuation.prices import HoldingPrice
 from desk.valuation.records import LineStanding
 
-__all__ = ["plan_basis", "plan_curve", "plan_holdings"]
-
-SHORTEST_GRID, LONGEST_GRID = 10, 100
+__all__ = ["plan_basis", "plan_holdings"]
 
 
-def plan_basis(book: Book, curve_plan: SheetPlan, checks: Checks) -> SheetPlan:
+def plan_basis(
+    book: Book,
+    curve_plan: SheetPlan,
+    checks: Checks,
+    *,
+    naming: Naming = FIRST,
+    names: dict[str, str] | None = None,
+) -> SheetPlan:
     """The basis, the model and the run, the quotes, and pictures of the curve.
 
     Parameters
@@ -34,13 +39,15 @@ def plan_basis(book: Book, curve_plan: SheetPlan, checks: Checks) -> SheetPlan:
         The sheet that the pictures are drawn from, see `plan_curve`.
     checks : Checks
         Gains the check of this sheet.
+    naming : Naming
+    names : dict of str to str, optional
+        Gains the names of the liability spread and the market risk premium.
     """
     basis = book.basis
     plan = SheetPlan(
-        "Basis and curve",
-        "Basis and curve",
-        f"Beyond {basis.last_quoted_term or 0.0:g} years the curve goes on {_goes_on(basis)}. "
-        "Rates inside the program are continuously compounded.",
+        naming.sheet("Basis and curve"),
+        naming.title("Basis and curve"),
+        f"{_goes_on(basis)} Rates inside the program are continuously compounded.",
         title_rows="1:3",
     )
     plan.widths = {1: 27.0, 2: 38.0, 3: 17.0, 4: 3.0} | dict.fromkeys(range(5, 13), 12.5)
@@ -48,17 +55,21 @@ def plan_basis(book: Book, curve_plan: SheetPlan, checks: Checks) -> SheetPlan:
     plan.put(HEADING_ROW, 3, "Unit", "heading_unit")
     periods = ""
     row = FIRST_ROW
-    for label, value, unit, form in _items(book):
+    for label, value, unit, form in _items(book, with_model=not naming.is_second):
         plan.put(row, 1, label, "text")
         place = plan.put(row, 2, value, "input", form)
         plan.put(row, 3, unit or None, "unit")
         if label == "Compounding periods a year":
             periods = place.split("!")[1]
+        name = {"Liability spread": "liability_spread", "Market risk premium": "market_risk_premium"}
+        if names is not None and label in name:
+            names[naming.name(name[label])] = place
         row += 1
-    _quotes(plan, basis, periods, checks)
+    if basis.terms.size:
+        _quotes(plan, basis, periods, checks, naming)
     below = max(row, FIRST_ROW + basis.terms.size) + 1
     plan.put(below, 1, "Curve", "title")
-    first, last = FIRST_ROW + 1, max(curve_plan.cells)
+    first, last = FIRST_ROW + 1, max(row for row, cells in curve_plan.cells.items() if 1 in cells)
     along = curve_plan.area(1, first, last)
     zero = Column("Zero rate", curve_plan.area(2, first, last), ASSETS)
     forward = Column("Forward rate, half a year", curve_plan.area(3, first, last), LIABILITIES, "sysDash")
@@ -78,12 +89,17 @@ def plan_basis(book: Book, curve_plan: SheetPlan, checks: Checks) -> SheetPlan:
 
 def _goes_on(basis: Basis) -> str:
     """How the curve goes on beyond its last term, in words."""
+    if basis.last_quoted_term is None:
+        return "The curve holds as it is stated for every term."
+    how = "as its interpolation says"
     if basis.extrapolation is Extrapolation.SMITH_WILSON:
-        return "by Smith and Wilson's method to the ultimate forward rate"
-    return "as its interpolation says"
+        how = "by Smith and Wilson's method to the ultimate forward rate"
+    elif basis.curve_kind is CurveKind.BONDS and basis.bond_fit is not BondFit.EXACT:
+        how = "by its formula"
+    return f"Beyond {basis.last_quoted_term:g} years the curve goes on {how}."
 
 
-def _items(book: Book) -> list[tuple[str, Any, str, str]]:
+def _items(book: Book, *, with_model: bool) -> list[tuple[str, Any, str, str]]:
     """Label, value, unit and format of each item of the basis, the model and the run."""
     basis, model, run = book.basis, book.rates_model, book.run
     items: list[tuple[str, Any, str, str]] = [
@@ -95,11 +111,12 @@ def _items(book: Book) -> list[tuple[str, Any, str, str]]:
         ("Compounding periods a year", basis.compounding.per_year, "0 = continuous", "whole"),
         ("Interpolation", basis.interpolation.value, "", "word"),
         ("Day count", basis.day_count.value, "", "word"),
+        ("Liability basis", basis.liability_method.value, "", "word"),
         ("Liability spread", basis.liability_spread, "a year, continuous", "rate"),
         ("Market risk premium", basis.market_risk_premium, "a year, per beta", "rate"),
         *_curve_items(basis),
     ]
-    if model is not None:
+    if model is not None and with_model:
         items.append(("Rates model", model.name.value, "", "word"))
         for label, value in (
             ("Mean reversion", model.mean_reversion),
@@ -126,8 +143,16 @@ def _items(book: Book) -> list[tuple[str, Any, str, str]]:
 
 def _curve_items(basis: Basis) -> Iterator[tuple[str, Any, str, str]]:
     """How the curve is built and goes on, where the basis says something of it."""
-    if basis.curve_kind is not CurveKind.ZERO:
+    if basis.curve_kind in (CurveKind.PAR, CurveKind.SWAP):
         yield "Payments a year", basis.quote_payments, "", "whole"
+    if basis.curve_kind is CurveKind.BONDS:
+        yield "Bond fit", basis.bond_fit.value, "", "word"
+    if basis.curve_kind is CurveKind.FLAT:
+        yield "Flat rate", basis.flat_rate, "a year", "rate"
+    if basis.expected_return is not None:
+        yield "Expected return", basis.expected_return, "a year", "rate"
+    if basis.inflation is not None:
+        yield "Inflation volatility", basis.inflation.volatility, "a year", "rate"
     if basis.last_liquid_point is not None:
         yield "Last liquid point", basis.last_liquid_point, "years", "years"
     if basis.extrapolation is Extrapolation.SMITH_WILSON:
@@ -138,7 +163,7 @@ def _curve_items(basis: Basis) -> Iterator[tuple[str, Any, str, str]]:
         yield "Convergence tolerance", basis.convergence_tolerance, "a year", "rate"
 
 
-def _quotes(plan: SheetPlan, basis: Basis, periods: str, checks: Checks) -> None:
+def _quotes(plan: SheetPlan, basis: Basis, periods: str, checks: Checks, naming: Naming) -> None:
     """The quotes with their conversion to continuous rates and discount factors."""
     plan.headings(
         [
@@ -181,68 +206,7 @@ def _quotes(plan: SheetPlan, basis: Basis, periods: str, checks: Checks) -> None
             ],
         )
     area = plan.mark_checks(12, FIRST_ROW, FIRST_ROW + basis.terms.size - 1)
-    checks.add_column("Quotes whose discount factor differs", plan, area)
-
-
-def plan_curve(basis: Basis, *, last_time: float, checks: Checks) -> SheetPlan:
-    """The curve by half-years.
-
-    Parameters
-    ----------
-    basis : Basis
-    last_time : float
-        Of the last flow of either side [years].
-    checks : Checks
-        Gains the check of this sheet.
-    """
-    plan = SheetPlan(
-        "Curve by term",
-        "Curve by term",
-        "Zero and forward rates are continuously compounded; a forward rate is that of the half-year before "
-        "the term.",
-    )
-    plan.widths = dict.fromkeys(range(1, 9), 16.0)
-    plan.headings(
-        [
-            "Term [years]",
-            "Zero rate, reported [a year]",
-            "Forward rate, reported [a year]",
-            "Forward rate, recomputed [a year]",
-            "Discount factor, reported",
-            "Discount factor, recomputed",
-            "Difference",
-            "Check",
-        ],
-        left=0,
-    )
-    end = int(np.clip(np.ceil(max(last_time, float(basis.terms[-1]))), SHORTEST_GRID, LONGEST_GRID))
-    terms = np.arange(0.0, end + 0.25, 0.5)
-    zero, discount = basis.curve.zero(terms), basis.curve.discount(terms)
-    forward = basis.curve.forward(np.maximum(terms - 0.5, 0.0), terms)
-    for offset in range(terms.size):
-        row = FIRST_ROW + offset
-        ahead: list[tuple[Any, str, str]] = [(None, "", ""), (None, "", "")]
-        away = f"=ABS(E{row}-F{row})"
-        if offset:
-            live = Formula(f"=LN(F{row - 1}/F{row})/(A{row}-A{row - 1})")
-            ahead = [(float(forward[offset]), "reported", "rate"), (live, "live", "rate")]
-            away += f"+ABS(C{row}-D{row})"
-        plan.table_row(
-            row,
-            1,
-            [
-                (float(terms[offset]), "reported", "term"),
-                (float(zero[offset]), "reported", "rate"),
-                *ahead,
-                (float(discount[offset]), "reported", "factor"),
-                (Formula(f"=EXP(-B{row}*A{row})"), "live", "factor"),
-                (Formula(away), "live", "tiny"),
-                (Formula(f'=IF(G{row}<=check_tolerance,"OK","CHECK")'), "check", "text"),
-            ],
-        )
-    area = plan.mark_checks(8, FIRST_ROW, FIRST_ROW + terms.size - 1)
-    checks.add_column("Terms of the curve that differ", plan, area)
-    return plan
+    checks.add_column(naming.figure("Quotes whose discount factor differs"), plan, area)
 
 
 def plan_holdings(
@@ -252,6 +216,7 @@ def plan_holdings(
     line_size: FloatArray,
     currency: str,
     checks: Checks,
+    prices: Sequence[HoldingPrice] = (),
 ) -> SheetPlan:
     """What is held, with the spread and the value of each holding.
 
@@ -265,6 +230,8 @@ def plan_holdings(
     currency : str
     checks : Checks
         Gains the check of this sheet.
+    prices : sequence of HoldingPrice
+        Of the holdings, where prices in real terms are to be shown.
     """
     shown = min(len(holdings), ROW_CAP)
     note = (
@@ -274,7 +241,7 @@ def plan_holdings(
     if shown < len(holdings):
         note = f"The first {shown:,} of {len(holdings):,} holdings. {note}"
     plan = SheetPlan("Holdings", "Holdings", note)
-    terms = _terms(holdings[:shown])
+    terms = [*_terms(holdings[:shown]), *_real_terms(holdings[:shown], prices)]
     widths = (28, 13, 14, 9, 15, 10, 11, 12, 15, 11, 11, 11, 15, 15, 11, 9, 15, 11, 15)
     plan.widths = dict(enumerate((*widths, *[12] * len(terms)), start=1))
     unit = f"[{currency}]"
@@ -373,10 +340,17 @@ def _terms(holdings: Sequence[Holding]) -> list[tuple[str, str, list[Any]]]:
         ("Floating day count", "text", "floating_day_count"),
         ("Default rate [a year]", "rate", "default_rate"),
         ("Recovery rate [share]", "share", "recovery_rate"),
+        ("Index ratio", "factor", "index_ratio"),
+        ("Index lag [months]", "whole", "index_lag_months"),
+        ("Principal floor", "text", "has_principal_floor"),
     ):
         values = [getattr(holding, name) for holding in holdings]
         if name == "price_kind":
             stated = [holding.price is not None for holding in holdings]
+        elif name in ("index_ratio", "index_lag_months", "has_principal_floor"):
+            stated = [holding.kind is HoldingKind.LINKED_BOND for holding in holdings]
+            if name == "has_principal_floor":
+                values = ["yes" if value else "no" for value in values]
         else:
             stated = [value != getattr(usual, name) for value in values]
         if any(stated):
@@ -385,4 +359,25 @@ def _terms(holdings: Sequence[Holding]) -> list[tuple[str, str, list[Any]]]:
                 for value, is_stated in zip(values, stated, strict=True)
             ]
             terms.append((heading, form, shown))
+    return terms
+
+
+def _real_terms(
+    holdings: Sequence[Holding], prices: Sequence[HoldingPrice]
+) -> list[tuple[str, str, list[Any]]]:
+    """Heading, format and values of what linked bonds are in real terms."""
+    if not prices:
+        return []
+    linked = [holding.kind is HoldingKind.LINKED_BOND for holding in holdings]
+    terms: list[tuple[str, str, list[Any]]] = []
+    for heading, form, name in (
+        ("Clean price in real terms [per 100]", "years", "clean_price"),
+        ("Real yield [a year]", "rate", "real_yield"),
+        ("Real modified duration [years]", "years", "real_modified_duration"),
+    ):
+        values = [
+            float(getattr(price, name)) if is_own else None
+            for price, is_own in zip(prices[: len(holdings)], linked, strict=True)
+        ]
+        terms.append((heading, form, values))
     return terms

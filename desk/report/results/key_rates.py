@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import math
 from collections.abc import Sequence
+from dataclasses import dataclass
 from typing import Any
 
 import numpy as np
@@ -15,9 +16,9 @@ from desk.report.results.flows import FlowSheet
 from desk.report.results.look import ASSETS, LIABILITIES, SURPLUS
 from desk.report.results.plan import FIRST_ROW, Formula, SheetPlan
 from desk.report.wording import SIDE_NAMES
-from desk.valuation.records import Standing
+from desk.valuation.records import KeyRates, Standing
 
-__all__ = ["key_rate_chart", "plan_key_rates"]
+__all__ = ["key_rate_chart", "plan_inflation_key_rates", "plan_key_rates"]
 
 
 _SUMMED = [(letter, "years" if letter in "BCGH" else "money2") for letter in "BCDEFGHIJ"]
@@ -29,19 +30,121 @@ _SEGMENT_HEADINGS = (
 )
 
 
+@dataclass(frozen=True)
+class _Rates:
+    """Whose key rates a sheet shows.
+
+    Attributes
+    ----------
+    sheet, note, chart : str
+        Name of the sheet, its note, title of its picture.
+    figure : str
+        What the durations add up to.
+    keys : KeyRates
+    durations : dict of Side to float
+        Of both sides [years].
+    times : dict of str to str
+        By side, the name of the column of times at which its rows are moved; empty where none is.
+    rises : bool
+        Whether a DV01 is a rise in value and not a fall.
+    is_live : bool
+    """
+
+    sheet: str
+    note: str
+    chart: str
+    figure: str
+    keys: KeyRates
+    durations: dict[Side, float]
+    times: dict[str, str]
+    rises: bool
+    is_live: bool
+
+
 def plan_key_rates(
     standing: Standing, sheets: dict[Side, FlowSheet], recomputed: dict[str, str], checks: Checks
 ) -> SheetPlan:
     """Key-rate durations and DV01 of both sides, recomputed from the rows between each two keys."""
-    keys = standing.key_rates
-    count = keys.term.size
-    is_live = all(sheet.is_by_row for sheet in sheets.values())
-    unit = f"[{standing.currency}]"
-    note = (
-        "A key rate moves the zero rates about its term by a triangle, flat before the first and after the "
-        "last key. Durations add up to the effective duration."
+    rates = _Rates(
+        sheet="Key rates",
+        note="A key rate moves the zero rates about its term by a triangle, flat before the first and after "
+        "the last key. Durations add up to the effective duration.",
+        chart="DV01 by key rate",
+        figure="effective duration",
+        keys=standing.key_rates,
+        durations={
+            Side.ASSETS: standing.assets.effective_duration,
+            Side.LIABILITIES: standing.liabilities.effective_duration,
+        },
+        times={side.value: f"{side.value}_time" for side in Side},
+        rises=False,
+        is_live=all(sheet.is_by_row for sheet in sheets.values()),
     )
-    plan = SheetPlan("Key rates", "Key rates", note)
+    return _plan(rates, standing, recomputed, checks)
+
+
+def plan_inflation_key_rates(
+    standing: Standing,
+    sheets: dict[Side, FlowSheet],
+    recomputed: dict[str, str],
+    checks: Checks,
+    *,
+    is_plain: bool,
+) -> SheetPlan:
+    """Key rates of expected inflation, recomputed where every row follows the index up and down.
+
+    Parameters
+    ----------
+    standing : Standing
+        That follows expected inflation.
+    sheets : dict of Side to FlowSheet
+    recomputed : dict of str to str
+        Addresses of the recomputed present values.
+    checks : Checks
+        Gains the checks of this sheet.
+    is_plain : bool
+        Whether no row has a floor or a cap.
+    """
+    inflation = standing.inflation
+    assert inflation is not None
+    note = (
+        "A key rate moves expected inflation about its term by a triangle, nominal rates unchanged. DV01 is "
+        "the rise in value for +1 basis point. Durations add up to the inflation duration."
+    )
+    if not is_plain:
+        note += " Rows have floors or caps, so single keys are values here."
+    rates = _Rates(
+        sheet="Inflation key rates",
+        note=note,
+        chart="Inflation DV01 by key rate",
+        figure="inflation duration",
+        keys=KeyRates(
+            inflation.term,
+            inflation.key_assets,
+            inflation.key_liabilities,
+            inflation.key_dv01_assets,
+            inflation.key_dv01_liabilities,
+        ),
+        durations={
+            Side.ASSETS: inflation.assets_duration,
+            Side.LIABILITIES: inflation.liabilities_duration,
+        },
+        times={
+            side.value: f"{side.value}_inflation_years" if sheet.follows_inflation else ""
+            for side, sheet in sheets.items()
+        },
+        rises=True,
+        is_live=is_plain and all(sheet.is_by_row for sheet in sheets.values()),
+    )
+    return _plan(rates, standing, recomputed, checks)
+
+
+def _plan(rates: _Rates, standing: Standing, recomputed: dict[str, str], checks: Checks) -> SheetPlan:
+    """The sheet."""
+    keys, is_live = rates.keys, rates.is_live
+    count = keys.term.size
+    unit = f"[{standing.currency}]"
+    plan = SheetPlan(rates.sheet, rates.sheet, rates.note)
     plan.widths = dict.fromkeys(range(1, 15), 15.0)
     plan.headings(
         [
@@ -78,42 +181,40 @@ def plan_key_rates(
             ],
         )
         if is_live:
-            _recompute_key(plan, row, work + 1 + offset, standing, recomputed)
+            _recompute_key(plan, row, work + 1 + offset, rates, recomputed)
     sums = [(Formula(f"=SUM({letter}{first}:{letter}{last})"), "live", form) for letter, form in _SUMMED]
     plan.table_row(last + 1, 1, [("Sum", "text", "text"), *sums[: 9 if is_live else 5]])
-    for side, letter, measures in (
-        ("assets", "B", standing.assets),
-        ("liabilities", "C", standing.liabilities),
-    ):
+    for side, letter in ((Side.ASSETS, "B"), (Side.LIABILITIES, "C")):
         checks.add(
-            f"{side.capitalize()}: key-rate durations add up to the effective duration",
+            f"{SIDE_NAMES[side]}: key-rate durations add up to the {rates.figure}",
             sheet=plan.name,
             unit="years",
             form="years",
-            reported=measures.effective_duration,
+            reported=rates.durations[side],
             formula=f"='{plan.name}'!${letter}${last + 1}",
         )
     if is_live:
-        checks.add_column("Key rates that differ", plan, plan.mark_checks(13, first, last))
-        _segments(plan, work, keys.term.tolist())
-    plan.charts.append((key_rate_chart(plan, standing), f"A{last + 4}"))
+        figure = "Inflation key rates that differ" if rates.rises else "Key rates that differ"
+        checks.add_column(figure, plan, plan.mark_checks(13, first, last))
+        _segments(plan, work, rates)
+    chart = key_rate_chart(plan, keys, standing.currency, title=rates.chart)
+    plan.charts.append((chart, f"A{last + 4}"))
     return plan
 
 
 def _recompute_key(
-    plan: SheetPlan, row: int, segment: int, standing: Standing, recomputed: dict[str, str]
+    plan: SheetPlan, row: int, segment: int, rates: _Rates, recomputed: dict[str, str]
 ) -> None:
     """The recomputed figures of one key: what the rows before it and after it give to it."""
     cells: list[tuple[Any, str, str]] = []
     durations, dv01s = [], []
     for side, columns, reported in (
-        ("assets", ("C", "D", "E", "F"), ("B", "D")),
-        ("liabilities", ("G", "H", "I", "J"), ("C", "E")),
+        (Side.ASSETS, ("C", "D", "E", "F"), ("B", "D")),
+        (Side.LIABILITIES, ("G", "H", "I", "J"), ("C", "E")),
     ):
         before, after, dv01_before, dv01_after = columns
-        measures = standing.assets if side == "assets" else standing.liabilities
-        is_plain = math.isfinite(measures.effective_duration)
-        worth = recomputed[f"{side}_present_value"]
+        is_plain = math.isfinite(rates.durations[side])
+        worth = recomputed[f"{side.value}_present_value"]
         formula = Formula(f"=({after}{segment}+{before}{segment + 1})/{worth}")
         durations.append((formula if is_plain else None, reported[0]))
         dv01s.append((Formula(f"={dv01_after}{segment}+{dv01_before}{segment + 1}"), reported[1]))
@@ -133,8 +234,9 @@ def _recompute_key(
     plan.table_row(row, 7, cells)
 
 
-def _segments(plan: SheetPlan, work: int, terms: Sequence[float]) -> None:
+def _segments(plan: SheetPlan, work: int, rates: _Rates) -> None:
     """Workings: the rows between each two keys, shared out to the key before and the key after."""
+    terms: Sequence[float] = rates.keys.term.tolist()
     headings = ["From [years]", "To, not included [years]"]
     headings += [f"{side}: {heading}" for side in SIDE_NAMES.values() for heading in _SEGMENT_HEADINGS]
     plan.put(work - 1, 1, "Workings: rows between two keys", "title")
@@ -148,7 +250,10 @@ def _segments(plan: SheetPlan, work: int, terms: Sequence[float]) -> None:
         cells: list[tuple[Any, str, str]] = [(start, "reported", "term")]
         cells.append(("and later", "reported", "word") if is_last else (terms[segment], "reported", "term"))
         for side in SIDE_NAMES:
-            time, value = f"{side.value}_time", f"{side.value}_value"
+            time, value = rates.times[side.value], f"{side.value}_value"
+            if not time:
+                cells += [(0.0, "reported", "money2")] * 4
+                continue
             inside = f"({time}>=A{row})" if is_last else f"({time}>=A{row})*({time}<B{row})"
             # Share of the move of the key after and of the key before that reaches each row.
             after, before = f"({time}-A{row})/(B{row}-A{row})", f"(B{row}-{time})/(B{row}-A{row})"
@@ -162,19 +267,18 @@ def _segments(plan: SheetPlan, work: int, terms: Sequence[float]) -> None:
                 cells.append((Formula(text), "live", "money2"))
             for share in shares:
                 # Within the exponent, because the share of a row far outside would carry EXP over its end.
-                text = (
-                    f"=SUMPRODUCT({value}*(1-EXP(-basis_point*{inside}*{time}*{share})))" if share else "=0"
-                )
+                move = f"basis_point*{inside}*{time}*{share}"
+                change = f"(EXP({move})-1)" if rates.rises else f"(1-EXP(-{move}))"
+                text = f"=SUMPRODUCT({value}*{change})" if share else "=0"
                 cells.append((Formula(text), "live", "money2"))
         plan.table_row(row, 1, cells)
 
 
-def key_rate_chart(plan: SheetPlan, standing: Standing) -> Any:
-    """DV01 of both sides and the gap by key rate, drawn from the sheet of key rates."""
-    keys = standing.key_rates
+def key_rate_chart(plan: SheetPlan, keys: KeyRates, currency: str, *, title: str = "DV01 by key rate") -> Any:
+    """DV01 of both sides and the gap by key rate, drawn from a sheet of key rates."""
     first, last = FIRST_ROW, FIRST_ROW + keys.term.size - 1
     largest = float(np.nanmax(np.abs([keys.dv01_assets, keys.dv01_liabilities])))
-    number_format, unit = money_axis(largest, standing.currency)
+    number_format, unit = money_axis(largest, currency)
     return bars(
         [
             Column("Assets", plan.area(4, first, last), ASSETS),
@@ -182,7 +286,7 @@ def key_rate_chart(plan: SheetPlan, standing: Standing) -> Any:
             Column("Gap", plan.area(6, first, last), SURPLUS),
         ],
         plan.area(1, first, last),
-        title="DV01 by key rate",
+        title=title,
         across="Key rate [years]",
         upward=f"DV01 [{unit}]",
         number_format=number_format,

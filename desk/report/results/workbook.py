@@ -4,28 +4,33 @@ from __future__ import annotations
 
 from collections.abc import Callable
 from contextlib import suppress
+from dataclasses import dataclass
 from datetime import UTC, datetime
 from pathlib import Path
 from typing import TYPE_CHECKING, Any
 from zipfile import ZIP_DEFLATED, ZipFile
 
-import numpy as np
-
 from desk.book import Book, Side
 from desk.intake.records import Reading
 from desk.report.results.checks import Checks
+from desk.report.results.comparison import plan_comparison, plan_no_comparison
 from desk.report.results.control import MASTER_CHECK_AREA, plan_faults, plan_provenance, plan_summary
-from desk.report.results.flows import FlowSheet, plan_flows
-from desk.report.results.inputs import plan_basis, plan_curve, plan_holdings
-from desk.report.results.key_rates import plan_key_rates
+from desk.report.results.inputs import plan_holdings
+from desk.report.results.key_rates import plan_inflation_key_rates, plan_key_rates
+from desk.report.results.liability_basis import plan_line_terms
 from desk.report.results.look import Styles
+from desk.report.results.naming import FIRST, SECOND
+from desk.report.results.periods import plan_periods
 from desk.report.results.plan import MASTER_CHECK, SheetPlan, widen, write_sheet
+from desk.report.results.position import Position, plan_position
 from desk.report.results.runs import plan_present_values, plan_savings_account, plan_short_rate
-from desk.report.results.standing import check_measures, plan_lines, plan_periods
+from desk.report.results.standing import plan_lines
 from desk.report.safe_cells import clean_text, write_whole
 from desk.scenarios.records import Simulation
-from desk.valuation.priced import priced_flows
+from desk.valuation.linked import is_linked
+from desk.valuation.prices import HoldingPrice, holding_prices
 from desk.valuation.records import Standing
+from desk.valuation.standing import stand
 
 if TYPE_CHECKING:
     from openpyxl import Workbook
@@ -39,6 +44,7 @@ def write_report(
     simulation: Simulation | None,
     path: Path,
     *,
+    second: Standing | None = None,
     progress: Callable[[float], None] | None = None,
     written_at: datetime | None = None,
 ) -> Path:
@@ -53,6 +59,8 @@ def write_report(
         None leaves its sheets out, and the summary says so.
     path : Path
         The workbook to write.
+    second : Standing, optional
+        On the second basis of the book; where the book has one it is valued if this is left out.
     progress : callable, optional
         Called with the part done, from 0 to 1; it may stop the work by raising.
     written_at : datetime, optional
@@ -75,37 +83,51 @@ def write_report(
     report = progress or (lambda _: None)
     report(0.0)
     plans, names = plan_sheets(
-        reading, reading.book, standing, simulation, written_at=written_at or datetime.now(UTC)
+        reading,
+        reading.book,
+        standing,
+        simulation,
+        second=second,
+        written_at=written_at or datetime.now(UTC),
     )
     report(0.1)
     return write_whole(path, lambda target: _write(plans, names, target, report))
 
 
 def plan_sheets(
-    reading: Reading, book: Book, standing: Standing, simulation: Simulation | None, *, written_at: datetime
+    reading: Reading,
+    book: Book,
+    standing: Standing,
+    simulation: Simulation | None,
+    *,
+    second: Standing | None = None,
+    written_at: datetime,
 ) -> tuple[list[SheetPlan], dict[str, str]]:
-    """All sheets in their order, and the names that the workbook defines."""
+    """All sheets in their order, and the names that the workbook defines; see `write_report`."""
     checks = Checks()
-    sheets: dict[Side, FlowSheet] = {}
-    last_time = largest = 0.0
-    for side in Side:
-        priced = priced_flows(book, side)
-        sheets[side] = plan_flows(priced.flows, priced.date, book.basis.curve, currency=standing.currency)
-        largest = max(largest, float(np.abs(priced.flows.amount).sum()))
-        last_time = max(last_time, float(priced.flows.time.max(initial=0.0)))
-    recomputed = check_measures(standing, sheets, checks)
-    curve = plan_curve(book.basis, last_time=last_time, checks=checks)
-    basis = plan_basis(book, curve, checks)
+    first = plan_position(book, standing, FIRST, checks)
+    sheets, recomputed = first.sheets, first.recomputed
     holdings = plan_holdings(
         book.holdings,
         standing.lines,
         line_size=sheets[Side.ASSETS].line_size,
         currency=standing.currency,
         checks=checks,
+        prices=_linked_prices(book),
     )
     lines = plan_lines(standing, sheets, checks)
     key_rates = plan_key_rates(standing, sheets, recomputed, checks)
     periods = plan_periods(standing, checks)
+    terms = plan_line_terms(book, standing)
+    further = [] if terms is None else [terms]
+    after: list[SheetPlan] = []
+    if standing.inflation is not None and first.growth is not None:
+        after.append(
+            plan_inflation_key_rates(standing, sheets, recomputed, checks, is_plain=first.growth.is_plain)
+        )
+        if all(sheet.is_by_row for sheet in sheets.values()):
+            after.append(plan_periods(standing, checks, is_real=True))
+    compared, of_second = _second_basis(book, standing, second, first, checks)
     summary = plan_summary(
         reading,
         standing,
@@ -114,23 +136,64 @@ def plan_sheets(
         recomputed=recomputed,
         checks=checks,
         charts_from={plan.name: plan for plan in (periods, key_rates)},
+        compared=compared.standing,
     )
     plans = [
-        *(summary, basis, curve, sheets[Side.LIABILITIES].plan, holdings, sheets[Side.ASSETS].plan),
-        *(lines, key_rates, periods),
+        *(summary, *first.before, *further, sheets[Side.LIABILITIES].plan, holdings),
+        *(sheets[Side.ASSETS].plan, lines, key_rates, periods, *after, *compared.plans),
     ]
     if simulation is not None:
         plans.append(plan_savings_account(simulation))
         plans.append(plan_short_rate(simulation))
         plans.append(plan_present_values(simulation, currency=standing.currency))
     plans.append(checks.plan())
-    plans.append(plan_faults(reading, standing, simulation))
+    plans.append(plan_faults(reading, standing, simulation, second=compared.standing))
     plans.append(plan_provenance(reading, standing, simulation, written_at=written_at))
+    names = checks.names() | {MASTER_CHECK: MASTER_CHECK_AREA} | first.names
+    largest = first.largest
+    if of_second is not None:
+        names |= of_second.names
+        largest = max(largest, of_second.largest)
     widen(plans, largest)
-    names = checks.names() | {MASTER_CHECK: MASTER_CHECK_AREA}
-    for sheet in sheets.values():
-        names |= sheet.names
     return plans, names
+
+
+@dataclass(frozen=True)
+class _Compared:
+    """What the second basis brings to the report."""
+
+    plans: tuple[SheetPlan, ...] = ()
+    standing: Standing | None = None
+
+
+def _second_basis(
+    book: Book, standing: Standing, second: Standing | None, first: Position, checks: Checks
+) -> tuple[_Compared, Position | None]:
+    """The sheets of the second basis, where the book has one that gives a curve."""
+    other = book.on_second_basis
+    if other is None:
+        return _Compared(), None
+    if second is None:
+        try:
+            second = stand(other)
+        except ValueError as error:
+            return _Compared((plan_no_comparison(f"{error}"),)), None
+    position = plan_position(other, second, SECOND, checks)
+    comparison = plan_comparison(
+        standing,
+        second,
+        (book.basis, other.basis),
+        position.sheets,
+        (first.recomputed, position.recomputed),
+        checks,
+    )
+    flows = (position.sheets[side].plan for side in (Side.LIABILITIES, Side.ASSETS))
+    return _Compared((comparison, *position.before, *flows), second), position
+
+
+def _linked_prices(book: Book) -> tuple[HoldingPrice, ...]:
+    """Prices of the holdings, where one of them follows an index; they are shown in real terms."""
+    return holding_prices(book) if any(is_linked(holding) for holding in book.holdings) else ()
 
 
 def _write(

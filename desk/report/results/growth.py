@@ -1,0 +1,458 @@
+"""The sheet of expected inflation: quotes, index factors, how lines grow, and the years of collared growth.
+
+The columns by which rows of flows grow stand with `desk.report.results.growth_columns`.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Mapping
+from dataclasses import dataclass
+from typing import Any
+
+import numpy as np
+
+from desk.book import Indexation, IndexationKind, Inflation, PricedFlows, Side
+from desk.rates.compounding import Compounding, to_continuous
+from desk.rates.inflation import log_growth, unknown_years
+from desk.report.results.checks import Checks
+from desk.report.results.naming import Naming
+from desk.report.results.plan import FIRST_ROW, HEADING_ROW, Formula, SheetPlan
+from desk.report.wording import SIDE_NAMES
+from desk.valuation.indexing import CollarTables, IndexClasses
+
+__all__ = ["COLLAR_ROWS", "ClassPlace", "Growth", "plan_growth"]
+
+COLLAR_ROWS = 4_000
+"""Years of collared growth that are shown one by one; above it the growth of such rows is a value."""
+_GRID_YEARS = 100
+_NO_DEVIATION = "1E-30"
+_NEAR = 1e-9
+
+
+@dataclass(frozen=True)
+class ClassPlace:
+    """Where one way to grow stands.
+
+    Attributes
+    ----------
+    number : int
+        From 1.
+    indexation : Indexation
+    rise, lag, least : str
+        Addresses of its terms.
+    years : int
+        Of the table of a collared one; 0 where there is none.
+    log, log_up, slope : str
+        Areas of the table: logarithm of growth, that for +1 basis point, its slope.
+    """
+
+    number: int
+    indexation: Indexation
+    rise: str
+    lag: str
+    least: str
+    years: int = 0
+    log: str = ""
+    log_up: str = ""
+    slope: str = ""
+
+
+@dataclass(frozen=True)
+class Growth:
+    """The sheet and what rows of flows need of it.
+
+    Attributes
+    ----------
+    plan : SheetPlan
+    naming : Naming
+    inflation : Inflation or None
+    classes : dict of Side to tuple of ClassPlace
+        In the order of the classes of the side.
+    names : dict of str to str
+        Names that the workbook defines.
+    is_live : bool
+        Whether all growth is recomputed.
+    is_smooth : bool
+        Whether the durations have one value: without deviation they jump where a floor or cap is met.
+    """
+
+    plan: SheetPlan
+    naming: Naming
+    inflation: Inflation | None
+    classes: Mapping[Side, tuple[ClassPlace, ...]]
+    names: Mapping[str, str]
+    is_live: bool
+    is_smooth: bool
+
+    @property
+    def is_plain(self) -> bool:
+        """Whether every class follows the index up and down or rises: no floor and no cap."""
+        return all(
+            place.indexation.kind is not IndexationKind.COLLARED and place.indexation.least is None
+            for places in self.classes.values()
+            for place in places
+        )
+
+
+def plan_growth(
+    inflation: Inflation | None, flows: Mapping[Side, PricedFlows], naming: Naming, checks: Checks
+) -> Growth | None:
+    """Plan the sheet; None where nothing grows and no inflation is expected.
+
+    Parameters
+    ----------
+    inflation : Inflation or None
+    flows : mapping of Side to PricedFlows
+    naming : Naming
+    checks : Checks
+        Gains the checks of this sheet.
+    """
+    if inflation is None and not any(side.indexations for side in flows.values()):
+        return None
+    note = (
+        "The index expected at a term is today's times (1 + rate) to the power of the term. A lagged index "
+        "is known until it has taken notice of today."
+        if inflation is not None
+        else "The basis states no expected inflation: only fixed rises count."
+    )
+    plan = SheetPlan(
+        naming.sheet("Expected inflation"), naming.title("Expected inflation"), note, title_rows="1:3"
+    )
+    plan.widths = (
+        {1: 17.0} | dict.fromkeys(range(2, 9), 14.0) | {9: 16.0} | dict.fromkeys(range(10, 18), 14.0)
+    )
+    names: dict[str, str] = {}
+    row = FIRST_ROW
+    if inflation is not None:
+        row = _quotes(plan, inflation, naming, names, checks)
+    classes, row = _classes(plan, flows, row)
+    is_live, is_smooth = True, True
+    if inflation is not None:
+        classes, is_live, is_smooth = _collars(plan, inflation, flows, classes, naming, checks, row)
+    return Growth(plan, naming, inflation, classes, names, is_live, is_smooth)
+
+
+def _quotes(
+    plan: SheetPlan, inflation: Inflation, naming: Naming, names: dict[str, str], checks: Checks
+) -> int:
+    """Quotes, index factors and what else is stated; returns the row after them."""
+    plan.headings(
+        [
+            "Quotes: term [years]",
+            "Rate as stated [a year]",
+            "Continuous, reported [a year]",
+            "Continuous, recomputed [a year]",
+            "Index expected, reported [today = 1]",
+            "Index expected, recomputed [today = 1]",
+            "Difference",
+            "Check",
+        ],
+        left=0,
+    )
+    plan.headings(["Item", "Value", "Unit"], column=10)
+    stated = inflation.recent is not None
+    items: list[tuple[str, Any, str, str]] = [
+        ("Interpolation", inflation.interpolation.value, "", "word"),
+        ("Volatility", inflation.volatility, "a year", "rate"),
+        ("Recent inflation", inflation.recent if stated else "start of the curve", "a year", "rate"),
+    ]
+    for offset, (label, value, unit, form) in enumerate(items):
+        plan.put(FIRST_ROW + offset, 10, label, "text")
+        place = plan.put(FIRST_ROW + offset, 11, value, "input", form)
+        plan.put(FIRST_ROW + offset, 12, unit or None, "unit")
+        if label == "Volatility":
+            names[naming.name("inflation_volatility")] = place
+    at = FIRST_ROW + len(items)
+    plan.put(at, 10, "Recent, continuous", "text")
+    live = Formula(f"=LN(1+K{at - 1})") if stated else None
+    value = live if live is not None else inflation.recent_rate
+    names[naming.name("inflation_recent")] = plan.put(at, 11, value, "live" if stated else "input", "rate")
+    plan.put(at, 12, "a year", "unit")
+    continuous = to_continuous(inflation.rates, Compounding.ANNUAL)
+    with np.errstate(over="ignore", divide="ignore"):
+        index = 1.0 / inflation.curve.discount(inflation.terms)
+    for offset in range(inflation.terms.size):
+        row = FIRST_ROW + offset
+        plan.table_row(
+            row,
+            1,
+            [
+                (float(inflation.terms[offset]), "input", "term"),
+                (float(inflation.rates[offset]), "input", "rate"),
+                (float(continuous[offset]), "reported", "rate"),
+                (Formula(f"=LN(1+B{row})"), "live", "rate"),
+                (float(index[offset]), "reported", "factor"),
+                (Formula(f"=EXP(D{row}*A{row})"), "live", "factor"),
+                (Formula(f"=ABS(C{row}-D{row})+ABS(E{row}-F{row})"), "live", "tiny"),
+                (
+                    Formula(f'=IF(G{row}<=check_tolerance*MAX(1,ABS(E{row})),"OK","CHECK")'),
+                    "check",
+                    "text",
+                ),
+            ],
+        )
+    last = FIRST_ROW + inflation.terms.size - 1
+    area = plan.mark_checks(8, FIRST_ROW, last)
+    checks.add_column(naming.figure("Quotes of inflation that differ"), plan, area)
+    row = _grid(plan, inflation, max(last, at) + 2, naming, checks)
+    return row + 1
+
+
+def _grid(plan: SheetPlan, inflation: Inflation, row: int, naming: Naming, checks: Checks) -> int:
+    """The index expected by whole years; returns the row after it."""
+    end = int(np.clip(np.ceil(inflation.terms[-1]), 10, _GRID_YEARS))
+    years = np.arange(0.0, end + 1.0)
+    zero = inflation.curve.zero(years)
+    with np.errstate(over="ignore", divide="ignore"):
+        index = 1.0 / inflation.curve.discount(years)
+    plan.put(row, 1, "Index by year", "title")
+    plan.headings(
+        [
+            "Term [years]",
+            "Expected inflation to then, continuous [a year]",
+            "Index expected, reported [today = 1]",
+            "Index expected, recomputed [today = 1]",
+            "Inflation of the year, recomputed",
+            "Difference",
+            "Check",
+        ],
+        row=row + 1,
+        left=0,
+    )
+    first = row + 2
+    for offset in range(years.size):
+        at = first + offset
+        over_year = Formula(f"=D{at}/D{at - 1}-1") if offset else None
+        plan.table_row(
+            at,
+            1,
+            [
+                (float(years[offset]), "reported", "term"),
+                (float(zero[offset]), "input", "rate"),
+                (float(index[offset]), "reported", "factor"),
+                (Formula(f"=EXP(B{at}*A{at})"), "live", "factor"),
+                (over_year, "live", "rate"),
+                (Formula(f"=ABS(C{at}-D{at})"), "live", "tiny"),
+                (
+                    Formula(f'=IF(F{at}<=check_tolerance*MAX(1,ABS(C{at})),"OK","CHECK")'),
+                    "check",
+                    "text",
+                ),
+            ],
+        )
+    last = first + years.size - 1
+    area = plan.mark_checks(7, first, last)
+    checks.add_column(naming.figure("Years of the index that differ"), plan, area)
+    return last + 1
+
+
+def _classes(
+    plan: SheetPlan, flows: Mapping[Side, PricedFlows], row: int
+) -> tuple[dict[Side, tuple[ClassPlace, ...]], int]:
+    """Every way to grow with its terms; returns the row after them."""
+    found: dict[Side, tuple[ClassPlace, ...]] = dict.fromkeys(flows, ())
+    if not any(side.indexations for side in flows.values()):
+        return found, row
+    # The headings of the sheet stand at the top where there are no quotes.
+    at = row + 1 if row > FIRST_ROW else HEADING_ROW
+    if row > FIRST_ROW:
+        plan.put(row, 1, "How amounts in today's money grow", "title")
+    plan.headings(
+        ["Number", "Kind", "Rise [a year]", "Floor [a year]", "Cap [a year]", "Lag [years]", "Least growth",
+         "Side"],
+        row=at,
+    )  # fmt: skip
+    number = 0
+    for side, own in flows.items():
+        places = []
+        for indexation in own.indexations:
+            number += 1
+            line = at + number
+            plan.table_row(
+                line,
+                1,
+                [
+                    (number, "reported", "whole"),
+                    (indexation.kind.value, "text", "text"),
+                    (indexation.rise if indexation.kind is IndexationKind.RISING else None, "input", "rate"),
+                    (indexation.floor, "input", "rate"),
+                    (indexation.cap, "input", "rate"),
+                    (indexation.lag if indexation.follows_index else None, "input", "years"),
+                    (indexation.least, "input", "factor"),
+                    (SIDE_NAMES[side], "text", "text"),
+                ],
+            )
+            rise, lag, least = (plan.address(line, column) for column in (3, 6, 7))
+            places.append(ClassPlace(number, indexation, rise, lag, least))
+        found[side] = tuple(places)
+    return found, at + number + 2
+
+
+def _collars(
+    plan: SheetPlan,
+    inflation: Inflation,
+    flows: Mapping[Side, PricedFlows],
+    classes: dict[Side, tuple[ClassPlace, ...]],
+    naming: Naming,
+    checks: Checks,
+    row: int,
+) -> tuple[dict[Side, tuple[ClassPlace, ...]], bool, bool]:
+    """The years of every collared class; returns the classes, and whether all is live and smooth."""
+    years: dict[tuple[Side, int], int] = {}
+    is_smooth = True
+    for side, own in flows.items():
+        for number, place in enumerate(classes[side]):
+            if place.indexation.kind is IndexationKind.COLLARED and own.index_class is not None:
+                time = own.time[own.index_class == number]
+                if time.size:
+                    years[side, number] = max(int(np.ceil(time.max())), 1)
+            is_smooth &= _is_smooth(place.indexation, inflation, own)
+    rows = sum(count + 1 for count in years.values())
+    if rows > COLLAR_ROWS:
+        plan.put(
+            row, 1, f"{rows:,} years of collared growth, too many to recompute one by one: it is a value.",
+            "note",
+        )  # fmt: skip
+        checks.left_out.append(naming.figure("Collared growth is not recomputed: it takes too many years."))
+        return classes, False, is_smooth
+    if not years:
+        return classes, True, is_smooth
+    plan.put(row, 1, "Collared growth by year", "title")
+    plan.headings(
+        [
+            "Number",
+            "Year",
+            "Years of the index ahead",
+            "Expected inflation to then, continuous [a year]",
+            "ln of the index",
+            "Deviation of the year",
+            "Increase of the index in the year",
+            "Increase expected between floor and cap",
+            "ln of the growth",
+            "Growth, reported",
+            "Difference",
+            "Check",
+            "Increase of the index, +1 basis point",
+            "Increase expected, +1 basis point",
+            "ln of the growth, +1 basis point",
+            "Slope of ln of the growth [years]",
+        ],
+        row=row + 1,
+        left=0,
+    )
+    at = row + 2
+    first = at
+    classes = {side: tuple(places) for side, places in classes.items()}
+    for (side, number), count in years.items():
+        places = list(classes[side])
+        places[number] = _collar(plan, inflation, places[number], count, at, naming)
+        classes[side] = tuple(places)
+        at += count + 1
+    area = plan.mark_checks(12, first, at - 1)
+    checks.add_column(naming.figure("Years of collared growth that differ"), plan, area)
+    return classes, True, is_smooth
+
+
+def _is_smooth(indexation: Indexation, inflation: Inflation, flows: PricedFlows) -> bool:
+    """Whether growth has one slope everywhere."""
+    if inflation.volatility > 0.0 or not flows.time.size:
+        return True
+    if indexation.kind is IndexationKind.COLLARED:
+        ends = np.arange(0.0, min(float(np.ceil(flows.time.max())), 1000.0) + 1.0)
+        log = log_growth(ends, curve=inflation.curve, recent_rate=inflation.recent_rate, lag=indexation.lag)
+        mean = np.expm1(np.diff(log))
+        edges = [edge for edge in (indexation.floor, indexation.cap) if edge is not None]
+        return all(bool((np.abs(mean - edge) > _NEAR).all()) for edge in edges)
+    if indexation.least:
+        log = log_growth(
+            flows.time, curve=inflation.curve, recent_rate=inflation.recent_rate, lag=indexation.lag
+        )
+        return bool((np.abs(log - np.log(indexation.least)) > _NEAR).all())
+    return True
+
+
+def _collar(
+    plan: SheetPlan, inflation: Inflation, place: ClassPlace, count: int, first: int, naming: Naming
+) -> ClassPlace:
+    """The years of one collared class."""
+    own = place.indexation
+    recent, volatility = naming.name("inflation_recent"), naming.name("inflation_volatility")
+    lag = place.lag.rsplit("!", 1)[1]
+    class_row = lag.rsplit("$", 1)[1]
+    floor = f"MAX($D${class_row},-1)" if own.floor is not None else "-1"
+    cap = f"MAX($E${class_row},-1)" if own.cap is not None else ""
+    ends = np.arange(count + 1.0)
+    ahead = unknown_years(ends, lag=own.lag)
+    zero = inflation.curve.zero(ahead)
+    growth = np.exp(_log_factors(inflation, own, count))
+
+    def expected(mean: str, deviation: str) -> str:
+        size = f"MAX({deviation},{_NO_DEVIATION})"
+        text = f"{mean}+{_excess(floor, mean, deviation, size)}"
+        held = f"MAX({floor},{text}" + (f"-{_excess(mean, cap, deviation, size)}" if cap else "") + ")"
+        return f"MIN({cap},{held})" if cap else held
+
+    for offset in range(count + 1):
+        row, before = first + offset, first + offset - 1
+        cells: list[tuple[Any, str, str]] = [
+            (place.number, "reported", "whole"),
+            (offset, "reported", "whole"),
+            (Formula(f"=MAX(B{row}-{lag},0)"), "live", "years"),
+            (float(zero[offset]), "input", "rate"),
+            (Formula(f"={recent}*MIN(B{row},{lag})+D{row}*C{row}"), "live", "factor"),
+        ]
+        if offset:
+            cells += [
+                (Formula(f"={volatility}*SQRT(C{row}-C{before})"), "live", "rate"),
+                (Formula(f"=EXP(E{row}-E{before})-1"), "live", "rate"),
+                (Formula("=" + expected(f"G{row}", f"F{row}")), "live", "rate"),
+                (Formula(f"=I{before}+LN(MAX(1+H{row},1E-300))"), "live", "factor"),
+            ]
+        else:
+            cells += [(None, "", "")] * 3 + [(0.0, "reported", "factor")]
+        cells += [
+            (float(growth[offset]), "reported", "factor"),
+            (Formula(f"=J{row}-EXP(I{row})"), "live", "tiny"),
+            (Formula(f'=IF(ABS(K{row})<=check_tolerance*MAX(1,J{row}),"OK","CHECK")'), "check", "text"),
+        ]
+        if offset:
+            size = f"MAX(F{row},{_NO_DEVIATION})"
+            above = f"NORMSDIST(({cap}-G{row})/{size})" if cap else "1"
+            inside = f"({above}-NORMSDIST(({floor}-G{row})/{size}))"
+            cells += [
+                (Formula(f"=(1+G{row})*EXP(basis_point*(C{row}-C{before}))-1"), "live", "rate"),
+                (Formula("=" + expected(f"M{row}", f"F{row}")), "live", "rate"),
+                (Formula(f"=O{before}+LN(MAX(1+N{row},1E-300))"), "live", "factor"),
+                (
+                    Formula(f"=P{before}+{inside}*(1+G{row})/MAX(1+H{row},1E-300)*(C{row}-C{before})"),
+                    "live",
+                    "years",
+                ),
+            ]
+        else:
+            cells += [(None, "", "")] * 2 + [(0.0, "reported", "factor"), (0.0, "reported", "years")]
+        plan.table_row(row, 1, cells)
+    last = first + count
+    log, log_up, slope = (plan.area(column, first, last) for column in (9, 15, 16))
+    return ClassPlace(
+        place.number, own, place.rise, place.lag, place.least, count, log=log, log_up=log_up, slope=slope
+    )
+
+
+def _excess(high: str, low: str, deviation: str, size: str) -> str:
+    """Expected excess of `high` over `low`, one of which is normal: Bachelier's formula."""
+    distance = f"({high}-{low})"
+    scaled = f"({distance}/{size})"
+    return f"({distance}*NORMSDIST{scaled}+{deviation}*EXP(-0.5*{scaled}*{scaled})/SQRT(2*PI()))"
+
+
+def _log_factors(inflation: Inflation, indexation: Indexation, count: int) -> np.ndarray:
+    """Logarithm of collared growth to the end of each year, as the program has it."""
+    classes = IndexClasses.of((indexation,))
+    (tables,) = CollarTables.of(classes, np.zeros(1, dtype=np.int64), np.array([float(count)]))
+    table = tables.grown(inflation, inflation.curve).log_factor[0]
+    if table.size >= count + 1:
+        return np.asarray(table[: count + 1])
+    # Beyond the years that are told apart the growth of the last goes on.
+    beyond = np.arange(1, count + 2 - table.size)
+    return np.concatenate((table, table[-1] + beyond * (table[-1] - table[-2])))
