@@ -15,7 +15,8 @@ __all__ = ["with_day_count"]
 def with_day_count(book: Book, day_count: DayCount) -> Book:
     """The book with another day count: its dates come to lie at other times.
 
-    Flows stated by year keep their times. Dates of holdings are turned into times when they are valued.
+    Flows stated by year keep their times. Dates of holdings are turned into times when they are valued. A
+    second basis is restated with the first: the two are compared on the same flows.
     """
     today = np.datetime64(book.basis.valuation_date, "D")
 
@@ -25,9 +26,11 @@ def with_day_count(book: Book, day_count: DayCount) -> Book:
             return flows
         return replace(flows, time=np.where(dated, year_fraction(today, flows.date, day_count), flows.time))
 
+    second = book.second_basis
     return replace(
         book,
         basis=replace(book.basis, day_count=day_count),
+        second_basis=None if second is None else replace(second, day_count=day_count),
         liabilities=restated(book.liabilities),
         asset_flows=restated(book.asset_flows),
     )

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from dataclasses import replace
 from datetime import date
 
 import numpy as np
@@ -33,3 +34,12 @@ def test_there_and_back_is_where_it_was() -> None:
     book = a_book()
     there = with_day_count(book, DayCount.THIRTY_360)
     assert with_day_count(there, DayCount.ACT_365F).digest == book.digest
+
+
+def test_the_second_basis_keeps_the_day_count_of_the_first() -> None:
+    first = a_book().basis
+    book = replace(a_book(), second_basis=replace(first, liability_spread=0.01))
+    restated = with_day_count(book, DayCount.ACT_360)
+    assert restated.second_basis == replace(first, liability_spread=0.01, day_count=DayCount.ACT_360)
+    assert restated.basis.day_count is DayCount.ACT_360
+    assert with_day_count(restated, first.day_count) == book
