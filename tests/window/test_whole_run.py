@@ -89,7 +89,10 @@ def test_window_and_commands_give_the_same_figures(
     assert main(["simulate", str(book), "--json"]) == 0
     simulated = json.loads(capsys.readouterr().out)
     faults = document.reading.faults
-    shown = standing_object(document.standing, faults), simulation_object(document.simulation, faults)
+    shown = (
+        standing_object(document.standing, faults, book=document.book, second=document.second_standing),
+        simulation_object(document.simulation, faults),
+    )
     assert json.loads(json.dumps(shown)) == [valued, simulated]
 
     assert main(["report", str(book), "--out", str(by_command)]) == 0
