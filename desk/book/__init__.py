@@ -10,7 +10,7 @@ from desk.book.inflation import Indexation, IndexationKind, Inflation, LineTerms
 from desk.book.market import Instrument, ScenarioSet, Volatilities, VolatilityKind, YieldHistory
 from desk.book.model import History, ModelName, RatesModel, RiskyAssets
 from desk.book.provenance import Provenance
-from desk.book.run import Measure, Run
+from desk.book.run import Bridge, Measure, Run, Sampling
 from desk.book.shock import Move, MoveKind, Shock, ShockSettings
 
 __all__ = [
@@ -18,6 +18,7 @@ __all__ = [
     "Basis",
     "BondFit",
     "Book",
+    "Bridge",
     "CurveBonds",
     "CurveKind",
     "CurveParameters",
@@ -43,6 +44,7 @@ __all__ = [
     "RatesModel",
     "RiskyAssets",
     "Run",
+    "Sampling",
     "ScenarioSet",
     "Severity",
     "Shock",
