@@ -2,7 +2,9 @@
 
 Block i holds a fixed number of paths and draws from its own generator, seeded by (seed, i); its last paths
 are thrown away where a run wants fewer. So a path depends on the seed, its own number and the steps before
-it, and on nothing else: not on how many paths, threads or reported times a run has.
+it, and on nothing else: not on how many paths, threads or reported times a run has. Paths of a
+variance-reduced run depend on its settings too, and still not on the number of threads; see
+`desk.scenarios.sampling`.
 """
 
 from __future__ import annotations
@@ -15,14 +17,16 @@ from collections.abc import Callable, Iterator, Sequence
 from concurrent.futures import Future, ThreadPoolExecutor, wait
 from dataclasses import dataclass
 from functools import cached_property, partial
-from typing import TypeVar
+from typing import TypeVar, cast
 
 import numpy as np
 
 from desk.book.arrays import FloatArray
-from desk.rates.short_rate import ShortRateModel, Walk
+from desk.rates.short_rate import Walk
+from desk.scenarios.drawn_model import DrawnModel
+from desk.scenarios.sampling import Replicates
 
-__all__ = ["BLOCK_PATHS", "GENERATOR", "Block", "Crew", "Plan", "block_generator", "default_threads"]
+__all__ = ["BLOCK_PATHS", "GENERATOR", "Block", "Crew", "Paths", "Plan", "block_generator", "default_threads"]
 
 Result = TypeVar("Result")
 
@@ -57,24 +61,49 @@ class Plan:
 
     Attributes
     ----------
-    model : ShortRateModel
+    model : DrawnModel
     paths, steps_per_year, steps, seed : int
         `steps` is the length of every path.
     real_world : bool
         Whether factors earn their price of risk.
+    replicates : Replicates or None
+        None where paths are drawn independently of each other. Otherwise they hold `paths` paths in all.
+    market : RiskyMarket or None
+        The model with what is drawn beside it; its paths of rates are those of the model alone.
+    nodes : ndarray, shape (steps + 1,), optional
+        Where they are not evenly spaced [years].
+    reported : tuple of int, optional
+        The steps a run reports; the whole years when left out.
     """
 
-    model: ShortRateModel
+    model: DrawnModel
     paths: int
     steps_per_year: int
     steps: int
     seed: int
     real_world: bool
+    replicates: Replicates | None = None
+    market: RiskyMarket | None = None
+    nodes: FloatArray | None = None
+    reported: tuple[int, ...] | None = None
 
     @cached_property
     def time(self) -> FloatArray:
         """The nodes [years], shape (steps + 1,)."""
-        return np.arange(self.steps + 1) / self.steps_per_year
+        return np.arange(self.steps + 1) / self.steps_per_year if self.nodes is None else self.nodes
+
+    @property
+    def reported_steps(self) -> Sequence[int]:
+        """The steps a run reports, without step 0."""
+        if self.reported is not None:
+            return self.reported
+        return range(self.steps_per_year, self.steps + 1, self.steps_per_year)
+
+    @cached_property
+    def index_offset(self) -> FloatArray:
+        """What is added to the integral of the inflation factor to give ``ln I(t)/I(0)``, shape (steps + 1,)."""
+        law = None if self.market is None else self.market.index
+        return np.zeros(self.steps + 1) if law is None else law.offset(self.time)
 
     @cached_property
     def account_offset(self) -> FloatArray:
@@ -89,13 +118,84 @@ class Plan:
     @property
     def blocks(self) -> int:
         """Number of blocks."""
-        return -(-self.paths // BLOCK_PATHS)
+        return -(-self.paths // BLOCK_PATHS) if self.replicates is None else self.replicates.blocks
 
-    def rounds(self, nodes: Sequence[int]) -> Iterator[Sequence[int]]:
-        """The nodes in groups whose samples fit into a modest memory."""
-        rows = max(1, _SAMPLE_BYTES // (16 * self.paths))
+    def columns(self, index: int) -> slice:
+        """The paths of a block."""
+        if self.replicates is not None:
+            return self.replicates.columns(index)
+        return slice(index * BLOCK_PATHS, min((index + 1) * BLOCK_PATHS, self.paths))
+
+    def generator(self, index: int) -> np.random.Generator:
+        """What a block draws from."""
+        if self.replicates is None:
+            return block_generator(self.seed, index)
+        source = self.replicates.source(
+            index, self.model, steps_per_year=self.steps_per_year, steps=self.steps
+        )
+        # It offers what walks ask of a generator, by which they are typed.
+        return cast(np.random.Generator, source)
+
+    def walk(self, index: int) -> Walk | GaussianMarketWalk | IndependentMarketWalk:
+        """The paths of a block, at time 0."""
+        if isinstance(self.model, GivenRates):
+            columns = self.columns(index)
+            if self.market is None:
+                return self.model.walk_of(columns)
+            generators = block_generator(self.seed, index).spawn(1 + self.market.asset_count)[1:]
+            return GivenMarketWalk(
+                self.model.walk_of(columns),
+                self.market,
+                np.diff(self.time),
+                real_world=self.real_world,
+                generators=generators,
+            )
+        step = 1.0 / self.steps_per_year
+        # Whole blocks are drawn, whatever part of the last is wanted: fewer numbers would be other numbers.
+        columns = self.columns(index)
+        size = BLOCK_PATHS if self.replicates is None else columns.stop - columns.start
+        if self.market is None:
+            return self.model.walk(step, size, self.generator(index), real_world=self.real_world)
+        others = None
+        if self.replicates is not None:
+            others = block_generator(self.seed, index).spawn(1 + self.market.asset_count)
+        return self.market.walk(
+            step, size, self.generator(index), real_world=self.real_world, others=others
+        )
+
+    def rounds(self, nodes: Sequence[int], *, quantities: int = 2) -> Iterator[Sequence[int]]:
+        """The nodes in groups whose samples, of so many quantities, fit into a modest memory."""
+        rows = max(1, _SAMPLE_BYTES // (8 * quantities * self.paths))
         for start in range(0, len(nodes), rows):
             yield nodes[start : start + rows]
+
+
+@dataclass(frozen=True, eq=False)
+class Paths:
+    """Where the paths of a block are; every array is overwritten by the next step.
+
+    Attributes
+    ----------
+    columns : slice
+        Their place among the paths of the run.
+    state : ndarray, shape (n, m)
+        The rate factors.
+    integral : ndarray, shape (m,)
+        Of their sum.
+    factors : ndarray, shape (n, m) or (n + 1, m)
+        The rate factors, and after them that of inflation where it is drawn.
+    excess : ndarray, shape (k, m)
+        ``ln(S_t/(S_0 R_t))`` of every risky asset.
+    index_integral : ndarray, shape (m,) or (0,)
+        Of the inflation factor; empty where it is not drawn.
+    """
+
+    columns: slice
+    state: FloatArray
+    integral: FloatArray
+    factors: FloatArray
+    excess: FloatArray
+    index_integral: FloatArray
 
 
 class Block:
@@ -115,13 +215,23 @@ class Block:
 
     def __init__(self, plan: Plan, index: int) -> None:
         self._plan = plan
-        self.columns = slice(index * BLOCK_PATHS, min((index + 1) * BLOCK_PATHS, plan.paths))
-        self._width = self.columns.stop - self.columns.start
-        self._walk: Walk = plan.model.walk(
-            1.0 / plan.steps_per_year,
-            BLOCK_PATHS,
-            block_generator(plan.seed, index),
-            real_world=plan.real_world,
+        self.columns = plan.columns(index)
+        self._walk = plan.walk(index)
+        width = self.columns.stop - self.columns.start
+        walk = self._walk
+        state = walk.state[:, :width]
+        inflates = plan.market is not None and plan.market.index is not None
+        if isinstance(walk, (GaussianMarketWalk, IndependentMarketWalk, GivenMarketWalk)):
+            factors, excess, index = walk.factors, walk.excess, walk.inflation_integral
+        else:
+            factors, excess, index = walk.state, np.empty((0, width)), np.empty(0)
+        self._paths = Paths(
+            self.columns,
+            state,
+            walk.integral[:width],
+            factors[:, :width],
+            excess[:, :width],
+            index[:width] if inflates else np.empty(0),
         )
         self._step = 0
 
@@ -131,8 +241,11 @@ class Block:
         log_account: FloatArray,
         rate: FloatArray,
         *,
-        visit: Callable[[int, FloatArray, FloatArray, slice], None] | None = None,
+        visit: Callable[[int, Paths], None] | None = None,
         crew: Crew,
+        excess: FloatArray | None = None,
+        log_index: FloatArray | None = None,
+        until: int | None = None,
     ) -> None:
         """Go on to the last of `nodes`, and write down what is found at each.
 
@@ -143,25 +256,37 @@ class Block:
         log_account, rate : ndarray, shape (k, paths)
             Receive ``ln R_t`` and ``r(t)`` in this block's columns.
         visit : callable, optional
-            Called at every step with its number, the factors, the integral of their sum, and the columns.
+            Called at every step with its number and the paths.
         crew : Crew
             Told of the steps made, and asked whether to stop.
+        excess : ndarray, shape (k, assets, paths), optional
+            Receives ``ln(S_t/(S_0 R_t))``.
+        log_index : ndarray, shape (k, paths), optional
+            Receives ``ln I(t)/I(0)``.
+        until : int, optional
+            The step to go on to, where it is not the last of `nodes`.
         """
-        plan, width = self._plan, self._width
+        plan, paths = self._plan, self._paths
         rows = {step: row for row, step in enumerate(nodes)}
-        state, integral = self._walk.state[:, :width], self._walk.integral[:width]
         reported = self._step
-        for _ in self._walk.run(nodes[-1] - self._step):
+        last = nodes[-1] if until is None else until
+        for _ in self._walk.run(last - self._step):
             self._step += 1
             row = rows.get(self._step)
             if row is not None:
-                np.add(integral, plan.account_offset[self._step], out=log_account[row, self.columns])
+                np.add(paths.integral, plan.account_offset[self._step], out=log_account[row, self.columns])
                 short = rate[row, self.columns]
-                np.add(state[0], plan.rate_offset[self._step], out=short)
-                for factor in state[1:]:
+                np.add(paths.state[0], plan.rate_offset[self._step], out=short)
+                for factor in paths.state[1:]:
                     short += factor
+                if excess is not None:
+                    excess[row, :, self.columns] = paths.excess
+                if log_index is not None:
+                    np.add(
+                        paths.index_integral, plan.index_offset[self._step], out=log_index[row, self.columns]
+                    )
             if visit is not None:
-                visit(self._step, state, integral, self.columns)
+                visit(self._step, paths)
             if self._step - reported >= plan.steps_per_year:
                 crew.add(self._step - reported)
                 reported = self._step
