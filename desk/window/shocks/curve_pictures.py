@@ -81,6 +81,9 @@ def _curve_sentence(rates: MovedRates) -> str:
     move: FloatArray = rates.move_bp
     if not np.any(move):
         return "The curve is not moved."
-    widest = int(np.abs(move).argmax())
-    term = numbers.exact(float(rates.time[widest]))
-    return f"Widest move at {term} years: {numbers.signed(float(move[widest]), 1)} bp."
+    if np.ptp(move) < 1e-6:
+        return f"All zero rates move by {numbers.signed(float(move[0]), 1)} bp."
+    widest = int(np.abs(rates.term_move_bp).argmax())
+    term = numbers.exact(float(rates.term[widest]))
+    size = numbers.signed(float(rates.term_move_bp[widest]), 1)
+    return f"Widest of the key rates at {term} years: {size} bp."

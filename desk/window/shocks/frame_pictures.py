@@ -36,8 +36,7 @@ class YearsPicture(Picture):
             self.add_line(f"{name}, what-if", edges, steps, "what_if", stepped=True)
         change = after.change
         self.set_description(
-            f"With the what-if: assets {_signed(change.assets, currency)}, liabilities "
-            f"{_signed(change.liabilities, currency)}."
+            f"Assets {_signed(change.assets, currency)}, liabilities {_signed(change.liabilities, currency)}."
         )
 
 

@@ -7,10 +7,11 @@ from dataclasses import dataclass
 
 from desk.book import Book, Move, MoveKind, Shock
 from desk.valuation.what_if import curve_moves
+from desk.window.parts.numbers import MINUS, exact
 from desk.window.shocks.wording import size_from, targets_of
 from desk.window.what_if import WHAT_IF
 
-__all__ = ["HANDLES", "TERMS", "Handle", "handles_of", "shock_of"]
+__all__ = ["HANDLES", "TERMS", "Handle", "handles_of", "places_words", "shock_of"]
 
 TERMS = (1.0, 2.0, 5.0, 10.0, 20.0, 30.0)
 """Whose rates have a handle each [years]."""
@@ -108,6 +109,16 @@ def handles_of(book: Book) -> frozenset[str]:
         found.add("spread")
     found |= {"fund", "property"} & set(targets_of(book, MoveKind.VALUE))
     return frozenset(found)
+
+
+def places_words(places: Mapping[str, float]) -> str:
+    """Where the handles stand, in a line; empty where all stand at nothing."""
+    moved = [(handle, places.get(handle.key, 0.0)) for handle in HANDLES]
+    return ", ".join(
+        f"{handle.label} {'+' if value > 0.0 else ''}{exact(value).replace('-', MINUS)} {handle.unit}"
+        for handle, value in moved
+        if value
+    )
 
 
 def shock_of(places: Mapping[str, float], *, name: str = WHAT_IF) -> Shock:

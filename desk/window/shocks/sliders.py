@@ -2,27 +2,27 @@
 
 from __future__ import annotations
 
-from PySide6.QtCore import QSignalBlocker, Qt, Signal
-from PySide6.QtGui import QKeyEvent, QPainter, QPaintEvent, QPen, QWheelEvent
+from PySide6.QtCore import QPointF, QSignalBlocker, Qt, Signal
+from PySide6.QtGui import QKeyEvent, QMouseEvent, QPainter, QPaintEvent, QPen, QValidator, QWheelEvent
 from PySide6.QtWidgets import (
     QAbstractSpinBox,
     QDoubleSpinBox,
     QHBoxLayout,
     QLabel,
     QSlider,
-    QStyle,
-    QStyleOptionSlider,
     QWidget,
 )
 
-from desk.window.parts.numbers import shown_locale
-from desk.window.parts.theme import HALF, STEP, keep_look
+from desk.window.parts import numbers
+from desk.window.parts.theme import HALF, LIGHT, STEP, keep_look
 from desk.window.shocks.hand import Handle
 
 __all__ = ["HandleRow"]
 
-_LABEL = 22 * STEP
-_BOX = 15 * STEP
+_LABEL = 21 * STEP
+_BOX = 12 * STEP
+_KNOB = 6.0
+"""Half the width of the handle [px]."""
 _FINE = 1
 _COARSE = {"bp": 25, "%": 5}
 
@@ -47,28 +47,60 @@ class _Slider(QSlider):
             return
         super().keyPressEvent(event)
 
-    def paintEvent(self, event: QPaintEvent) -> None:
-        """With a mark where nothing is moved."""
-        option = QStyleOptionSlider()
-        self.initStyleOption(option)
-        groove = self.style().subControlRect(
-            QStyle.ComplexControl.CC_Slider, option, QStyle.SubControl.SC_SliderGroove, self
-        )
-        handle = self.style().subControlRect(
-            QStyle.ComplexControl.CC_Slider, option, QStyle.SubControl.SC_SliderHandle, self
-        )
-        room = groove.width() - handle.width()
-        x = (
-            groove.left()
-            + handle.width() // 2
-            + QStyle.sliderPositionFromValue(self.minimum(), self.maximum(), 0, room)
-        )
+    def paintEvent(self, _event: QPaintEvent) -> None:
+        """A hairline with a mark at nothing, filled from there to where the handle stands."""
         painter = QPainter(self)
-        painter.setPen(QPen(self.palette().placeholderText().color(), 1))
-        middle = self.height() // 2
-        painter.drawLine(x, middle - 9, x, middle + 9)
+        painter.setRenderHint(QPainter.RenderHint.Antialiasing)
+        palette = self.palette()
+        middle = self.height() / 2
+        nothing, here = self._x_of(0), self._x_of(self.value())
+        painter.setPen(QPen(palette.placeholderText().color(), 1))
+        painter.drawLine(QPointF(_KNOB, middle), QPointF(self.width() - _KNOB, middle))
+        painter.drawLine(QPointF(nothing, middle - _KNOB), QPointF(nothing, middle + _KNOB))
+        colour = LIGHT.fill("what_if") if self.isEnabled() else palette.mid().color()
+        if self.value():
+            painter.setPen(QPen(colour, 3))
+            painter.drawLine(QPointF(nothing, middle), QPointF(here, middle))
+        has_focus = self.hasFocus()
+        frame = palette.highlight() if has_focus else palette.placeholderText()
+        painter.setPen(QPen(frame.color(), 2.0 if has_focus else 1.0))
+        painter.setBrush(colour if self.value() else palette.base().color())
+        painter.drawEllipse(QPointF(here, middle), _KNOB - 1.0, _KNOB - 1.0)
         painter.end()
-        super().paintEvent(event)
+
+    def _x_of(self, value: int) -> float:
+        room = self.width() - 2 * _KNOB
+        share = (value - self.minimum()) / max(self.maximum() - self.minimum(), 1)
+        return _KNOB + share * room
+
+    def _value_at(self, x: float) -> int:
+        room = max(self.width() - 2 * _KNOB, 1)
+        share = min(max((x - _KNOB) / room, 0.0), 1.0)
+        return round(self.minimum() + share * (self.maximum() - self.minimum()))
+
+    def mousePressEvent(self, event: QMouseEvent) -> None:
+        """Take the handle to where the pointer is."""
+        if event.button() is Qt.MouseButton.LeftButton:
+            self.setSliderDown(True)
+            self.setValue(self._value_at(event.position().x()))
+            event.accept()
+        else:
+            event.ignore()
+
+    def mouseMoveEvent(self, event: QMouseEvent) -> None:
+        """Follow the pointer."""
+        if self.isSliderDown():
+            self.setValue(self._value_at(event.position().x()))
+
+    def mouseReleaseEvent(self, event: QMouseEvent) -> None:
+        """Let go."""
+        if event.button() is Qt.MouseButton.LeftButton:
+            self.setSliderDown(False)
+
+    def mouseDoubleClickEvent(self, _event: QMouseEvent) -> None:
+        """Back to nothing."""
+        self.setSliderDown(False)
+        self.setValue(0)
 
 
 class _Box(QDoubleSpinBox):
@@ -80,6 +112,29 @@ class _Box(QDoubleSpinBox):
             super().wheelEvent(event)
         else:
             event.ignore()
+
+    def textFromValue(self, value: float) -> str:
+        """The shortest text, with a true minus."""
+        return numbers.exact(round(value, 4)).replace("-", numbers.MINUS)
+
+    def valueFromText(self, text: str) -> float:
+        """As it is written in the locale, with any minus."""
+        value = numbers.parse_number(text)
+        return self.value() if value is None else value
+
+    def validate(self, text: str, place: int) -> tuple[QValidator.State, str, int]:
+        """Anything may be typed; what is no number changes nothing."""
+        value = numbers.parse_number(text)
+        inside = value is not None and self.minimum() <= value <= self.maximum()
+        state = QValidator.State.Acceptable if inside else QValidator.State.Intermediate
+        return state, text, place
+
+    def fixup(self, text: str) -> str:
+        """What is too much is the most; what is no number is what was."""
+        value = numbers.parse_number(text)
+        if value is None:
+            return self.textFromValue(self.value())
+        return self.textFromValue(min(max(value, self.minimum()), self.maximum()))
 
 
 class HandleRow(QWidget):
@@ -113,7 +168,6 @@ class HandleRow(QWidget):
         self.slider.setAccessibleName(name)
         self.slider.setAccessibleDescription(handle.explanation)
         self.box = _Box()
-        self.box.setLocale(shown_locale())
         self.box.setButtonSymbols(QAbstractSpinBox.ButtonSymbols.NoButtons)
         self.box.setDecimals(1)
         self.box.setRange(handle.least, handle.most)

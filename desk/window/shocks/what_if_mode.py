@@ -17,11 +17,10 @@ from desk.window.parts.tables import Column, Table
 from desk.window.shocks.curve_pictures import MovedCurvePicture
 from desk.window.shocks.edits import free_name, name_fault, with_added
 from desk.window.shocks.frame_pictures import GapPicture, YearsPicture
-from desk.window.shocks.hand import HANDLES, handles_of, shock_of
+from desk.window.shocks.hand import HANDLES, handles_of, places_words, shock_of
 from desk.window.shocks.mode import Mode
 from desk.window.shocks.moved import moved_rates
 from desk.window.shocks.sliders import HandleRow
-from desk.window.shocks.wording import moves_words
 from desk.window.standing.wording import amount
 
 if TYPE_CHECKING:
@@ -45,6 +44,7 @@ class LinesTable(Table):
             empty_text="The book is being made ready.",
         )
         self._currency = ""
+        self._digits = 0
 
     @staticmethod
     def _make(currency: str) -> tuple[Column, ...]:
@@ -63,6 +63,12 @@ class LinesTable(Table):
             self._currency = currency
             self.set_columns(self._make(currency))
         self.set_rows(rows)
+        # Widths follow only when figures grow by a digit: they stand still under the hand.
+        largest = float(np.nanmax(np.abs(rows["change"]), initial=0.0))
+        digits = len(f"{largest:.0f}")
+        if digits > self._digits:
+            self._digits = digits
+            self.fit_columns()
 
 
 class WhatIfMode(Mode):
@@ -154,7 +160,7 @@ class WhatIfMode(Mode):
         elif what_if.is_preparing:
             text = "The book is being made ready."
         elif what_if.is_on and what_if.shock is not None:
-            text = f"{moves_words(what_if.shock.moves)}."
+            text = f"{places_words(self.places)}."
         else:
             text = "Pull a slider or type a number. The book stays as it is."
         self.state.setText(well_broken(text))
@@ -234,9 +240,13 @@ class WhatIfMode(Mode):
 
     # What the hand does
 
+    @property
+    def places(self) -> dict[str, float]:
+        """Where the handles stand; one that the book does not have counts for nothing."""
+        return {key: row.value for key, row in self.rows.items() if not row.isHidden()}
+
     def _on_moved(self) -> None:
-        # A handle that the book does not have stands at 0.
-        self.document.what_if.move(shock_of({key: row.value for key, row in self.rows.items()}))
+        self.document.what_if.move(shock_of(self.places))
 
     def put_back(self) -> None:
         """Put the what-if back."""
@@ -275,6 +285,6 @@ class WhatIfMode(Mode):
         self.name.hide()
         self.keep_button.show()
         self.keep_button.setFocus(Qt.FocusReason.OtherFocusReason)
-        kept = shock_of({key: row.value for key, row in self.rows.items()}, name=name.strip())
+        kept = shock_of(self.places, name=name.strip())
         self.edit(f"What-if kept as {kept.name}", with_added(book, kept))
         self.message(f"Kept as the shock {kept.name}; it stands among all shocks.")
