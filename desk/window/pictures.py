@@ -91,29 +91,44 @@ def draw_all(reading: Reading, standing: Standing, simulation: Simulation | None
 
 
 def _draw_station(station: Station, jobs: Jobs, folder: Path) -> list[Path]:
-    """The pictures of one station."""
-    from desk.window.parts.plots import Picture
-
+    """The pictures of one station, also those that stand on parts of it that are not seen at first."""
     station.setAttribute(Qt.WidgetAttribute.WA_DontShowOnScreen)
     station.show()
     station.refresh_now()
     _wait(lambda: not jobs.running)
+    written: list[Path] = []
+    drawn: set[str] = set()
+    for view in (None, *station.views()):
+        if view is not None:
+            view()
+            _wait(lambda: not jobs.running)
+            station.refresh_now()
+            _settle()
+        written += _draw_seen(station, folder, drawn)
+    return written
+
+
+def _draw_seen(station: Station, folder: Path, drawn: set[str]) -> list[Path]:
+    """The pictures of a station that are seen now and were not `drawn` under that name before."""
+    from desk.window.parts.plots import Picture
+
     written = []
     for picture in [one for one in station.findChildren(Picture) if one.isVisible()]:
-        # On its own it has the same shape whatever room the station would have given it.
-        picture.setParent(None)
-        picture.setAttribute(Qt.WidgetAttribute.WA_DontShowOnScreen)
+        name = re.sub(r"[^a-z0-9]+", "-", picture.title.casefold()).strip("-") or "picture"
+        if name in drawn:
+            continue
+        drawn.add(name)
+        # It has the same shape whatever room the station gives it. It stays where it is: one that is taken
+        # out could not be shown again, and one that is destroyed may take the next one with it.
+        former = picture.size()
         picture.resize(_SIZE)
-        picture.show()
         _settle()
         picture.settle()
-        name = re.sub(r"[^a-z0-9]+", "-", picture.title.casefold()).strip("-") or "picture"
         for ending in ("png", "svg"):
             path = folder / f"{station.key}-{name}.{ending}"
             picture.save(path)
             written.append(path)
-        picture.close()
-        picture.deleteLater()
+        picture.resize(former)
     return written
 
 

@@ -208,6 +208,10 @@ class Station(QWidget):
         ):
             signal.connect(self.request_refresh)
 
+    def views(self) -> tuple[Callable[[], object], ...]:
+        """What brings pictures into view that are not seen at first, one after the other: for a batch."""
+        return ()
+
     # Filling it
 
     def set_pictures(self, *pictures: QWidget, upright: bool = False) -> None:

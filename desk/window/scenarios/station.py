@@ -4,6 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Callable
 from dataclasses import replace
+from functools import partial
 
 from PySide6.QtCore import QSignalBlocker, Qt, QTimer
 from PySide6.QtGui import QKeySequence, QShortcut
@@ -301,6 +302,10 @@ class ScenariosStation(Station):
                 self.pictures.setStretchFactor(self.pictures.count() - 1, 1)
                 picture.hide()
         return self._values_pictures
+
+    def views(self) -> tuple[Callable[[], object], ...]:
+        """The short rate and the present values."""
+        return tuple(partial(self.quantity.setCurrentIndex, place) for place in range(1, len(_QUANTITIES)))
 
     @property
     def shown_quantity(self) -> str:

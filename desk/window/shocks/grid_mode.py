@@ -2,13 +2,14 @@
 
 from __future__ import annotations
 
+from collections.abc import Callable
 from dataclasses import dataclass
 from functools import partial
 from typing import TYPE_CHECKING
 
 import numpy as np
 from PySide6.QtCore import Qt
-from PySide6.QtWidgets import QWidget
+from PySide6.QtWidgets import QHBoxLayout, QWidget
 
 from desk import tasks
 from desk.book import Book, Move, MoveKind, Shock
@@ -19,6 +20,7 @@ from desk.window.parts import numbers
 from desk.window.parts.fields import Choice, ChoiceField, Combo, IntegerField, NumberField
 from desk.window.parts.labels import well_broken
 from desk.window.parts.tables import Column, Table
+from desk.window.parts.theme import GAP
 from desk.window.shocks.hand import handles_of
 from desk.window.shocks.heat_picture import HeatPicture
 from desk.window.shocks.mode import Mode
@@ -108,8 +110,14 @@ class _AxisFields:
         self.high = NumberField("To", low=-10_000.0, high=10_000.0)
         self.steps = IntegerField("Sizes", low=2, high=MOST_STEPS)
         self.steps.set_value(21)
-        for field in (self.which, self.low, self.high, self.steps):
-            form.add(field)
+        form.add(self.which)
+        range_row = QWidget()
+        across = QHBoxLayout(range_row)
+        across.setContentsMargins(0, 0, 0, 0)
+        across.setSpacing(GAP)
+        for field, share in ((self.low, 3), (self.high, 3), (self.steps, 2)):
+            across.addWidget(field, share, Qt.AlignmentFlag.AlignTop)
+        form.add_widget(range_row)
         for field, what in ((self.low, "from"), (self.high, "to"), (self.steps, "sizes")):
             field.set_hint("")
             field.editor.setAccessibleName(f"{heading}, {what}")
@@ -288,7 +296,7 @@ class GridMode(Mode):
         if which == 0:
             thresholds = book.shock_settings.thresholds
             level = thresholds[-1] if thresholds else 1.0
-            value, kind, unit = grid.funding_ratio, "rate", "%"
+            value, kind, unit = grid.funding_ratio, "rate", "ratio, %"
             level_text = numbers.ratio(level)
         else:
             base = table.base.surplus if table is not None and which == 2 else 0.0
@@ -296,9 +304,7 @@ class GridMode(Mode):
             level_text = "no surplus" if which == 1 else "no change"
 
         def text(number: float) -> str:
-            if kind == "rate":
-                return f"funding ratio {numbers.ratio(number)}"
-            return f"{_SHOWN[which].casefold()} {amount(number, currency)}"
+            return numbers.ratio(number) if kind == "rate" else amount(number, currency)
 
         self.heat.show_grid(
             grid.first_scale,
@@ -407,9 +413,8 @@ def _titled(axis: Axis) -> str:
     return text if len(text) <= 48 else f"{text[:47]}…"
 
 
-def _grid_sentence(value: FloatArray, text: object) -> str:
+def _grid_sentence(value: FloatArray, text: Callable[[float], str]) -> str:
     known = value[np.isfinite(value)]
-    if not known.size or not callable(text):
+    if not known.size:
         return "No cell could be computed."
-    low, high = str(text(float(known.min()))), str(text(float(known.max())))
-    return f"From {low} to {high.rsplit('ratio ', 1)[-1].rsplit('surplus ', 1)[-1]}."
+    return f"From {text(float(known.min()))} to {text(float(known.max()))}."

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import math
+from collections.abc import Callable
 
 import numpy as np
 import pyqtgraph as pg
@@ -20,6 +21,7 @@ __all__ = ["HeatPicture", "contour_path", "shade_of"]
 
 _BELOW, _ABOVE = "liabilities", "assets"
 _CELLS = "cells"
+_TODAY = "today"
 
 
 def shade_of(theme: Theme, part: float) -> QColor:
@@ -152,7 +154,7 @@ class HeatPicture(Picture):
     def __init__(self, theme_switch: ThemeSwitch) -> None:
         self._cells: _Cells | None = None
         self._at = (0, 0)
-        self._text = str
+        self._text: Callable[[float], str] = str
         self._level_text = ""
         super().__init__("Two moves together", theme_switch)
         self._cross = pg.InfiniteLine(0, angle=0)
@@ -170,7 +172,7 @@ class HeatPicture(Picture):
         axes: tuple[tuple[str, str], tuple[str, str]],
         level: float,
         level_text: str,
-        text: object,
+        text: Callable[[float], str],
         sentence: str,
     ) -> None:
         """Draw a grid.
@@ -192,11 +194,13 @@ class HeatPicture(Picture):
         self.clear()
         (x_label, x_unit), (y_label, y_unit) = axes
         self.set_axes(x_label, x_unit, y_label, y_unit)
-        self._text = text  # type: ignore[assignment]  # a callable that writes a value
+        self._text = text
         self._level_text = level_text
         self._cells = self._put(_Cells(), 0)
         self._cells.set(x, y, value, level)
         self._cells.line.setZValue(20)
+        if x[0] <= 0.0 <= x[-1] and y[0] <= 0.0 <= y[-1]:
+            self.add_dots(_TODAY, [0.0], [0.0], "ink", symbol="x")
         up = _edges(y)
         self.set_range(x=(float(_edges(x)[0]), float(_edges(x)[-1])), y=(float(up[0]), float(up[-1])))
         self.set_description(sentence)
@@ -214,11 +218,12 @@ class HeatPicture(Picture):
     def _head(self) -> None:
         super()._head()
         theme = self._theme
+        today = f"&nbsp;&nbsp; <b>×</b>&nbsp;{_TODAY}" if _TODAY in self._series else ""
         below, above = (shade_of(theme, part).name() for part in (-0.8, 0.8))
         self._key.setText(
             f'<span style="color:{below}">■</span>&nbsp;below&nbsp;&nbsp; '
             f'<span style="color:{above}">■</span>&nbsp;above&nbsp;&nbsp; '
-            f"<b>—</b>&nbsp;{self._level_text}"
+            f"<b>—</b>&nbsp;{self._level_text}{today}"
         )
         self._key.setVisible(bool(self._level_text) and self._cells is not None)
 

@@ -2,7 +2,10 @@
 
 from __future__ import annotations
 
+from typing import Any
+
 from desk.valuation.shock_records import Position
+from desk.window.parts import numbers
 from desk.window.parts.tables import Column, Table
 from desk.window.parts.theme import ThemeSwitch
 
@@ -40,15 +43,24 @@ class PositionTable(Table):
         if before is None or after is None:
             self.set_rows({column.key: () for column in self.table_model.columns})
             return
-        old = [getattr(before, key) * factor for key, _, _, factor in _ROWS]
-        new = [getattr(after, key) * factor for key, _, _, factor in _ROWS]
-        self.set_rows(
-            {
-                "name": [name for _, name, _, _ in _ROWS],
-                "unit": [unit or currency for _, _, unit, _ in _ROWS],
-                "before": old,
-                "after": new,
-                "change": [two - one for one, two in zip(old, new, strict=True)],
-            }
-        )
+        rows = [self._row(before, after, currency, *row) for row in _ROWS]
+        keys = [column.key for column in self.table_model.columns]
+        self.set_rows({key: [row[key] for row in rows] for key in keys})
         self.fit_columns()
+
+    @staticmethod
+    def _row(
+        before: Position, after: Position, currency: str, key: str, name: str, unit: str, factor: float
+    ) -> dict[str, Any]:
+        old, new = float(getattr(before, key)), float(getattr(after, key))
+        if not unit:
+            # One scale for both, so that they can be subtracted by eye, with four figures at least.
+            scale = numbers.scale_for([old / 10.0, new / 10.0])
+            unit, factor = numbers.unit_with_scale(currency, scale), 1.0 / scale.factor
+        return {
+            "name": name,
+            "unit": unit,
+            "before": factor * old,
+            "after": factor * new,
+            "change": factor * (new - old),
+        }

@@ -146,7 +146,6 @@ class ReverseMode(Mode):
             hint="The surplus to reach; 0 for none left.",
         )
         self.surplus.set_value(0.0)
-        form.add_heading("Along which move")
         self.along = ChoiceField("Move", (Choice(_PARALLEL, "A parallel move"),))
         combo = self.along.combo
         combo.setSizeAdjustPolicy(combo.SizeAdjustPolicy.AdjustToMinimumContentsLengthWithIcon)
@@ -160,7 +159,10 @@ class ReverseMode(Mode):
             hint="Over which the rates move so much.",
         )
         self.horizon.set_value(1.0)
-        for field in (self.goal, self.ratio, self.surplus, self.along, self.horizon):
+        for field in (self.goal, self.ratio, self.surplus):
+            form.add(field)
+        form.add_heading("Along which move")
+        for field in (self.along, self.horizon):
             form.add(field)
         self.goal.committed.connect(lambda _: self._show_fields())
         self.along.committed.connect(lambda _: self._show_fields())

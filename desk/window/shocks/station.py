@@ -4,7 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Callable
 
-from PySide6.QtCore import Qt
+from PySide6.QtCore import Qt, QTimer
 from PySide6.QtGui import QKeyEvent, QKeySequence, QShortcut
 from PySide6.QtWidgets import QHBoxLayout, QLabel, QStackedWidget, QTabBar, QVBoxLayout, QWidget
 
@@ -12,6 +12,7 @@ from desk.book import Shock
 from desk.window.document import Document
 from desk.window.jobs import Jobs
 from desk.window.parts.theme import GAP, HALF, WIDE, ThemeSwitch
+from desk.window.shocks.grid_mode import GridMode
 from desk.window.shocks.mode import Mode
 from desk.window.shocks.modes import MODES
 from desk.window.station import Station
@@ -132,7 +133,8 @@ class ShocksStation(Station):
             for part in (mode.form, *mode.pictures, *mode.controls):
                 part.show()
             self.main.setSizes([10 * (100 - mode.share), 10 * mode.share])
-            self.share_pictures()
+            # What was hidden has no width yet.
+            QTimer.singleShot(0, self, self.share_pictures)
         self._show()
 
     def share_pictures(self) -> None:
@@ -156,6 +158,22 @@ class ShocksStation(Station):
     def home(self) -> QWidget | None:
         """What matters most in the mode shown."""
         return self.mode.home() if self.mode is not None else None
+
+    def views(self) -> tuple[Callable[[], object], ...]:
+        """The worst shock, and two moves together."""
+        return (self._show_worst, self._show_grid)
+
+    def _show_worst(self) -> None:
+        table = self.document.shocks.result
+        if table is not None and table.results:
+            worst = min(table.results, key=lambda result: result.change_in_surplus)
+            self.open_shock(worst.shock)
+
+    def _show_grid(self) -> None:
+        self.show_mode("grid")
+        mode = self.mode_of("grid")
+        if isinstance(mode, GridMode):
+            mode.run()
 
     # What it says
 

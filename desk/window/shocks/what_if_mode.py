@@ -6,7 +6,7 @@ from typing import TYPE_CHECKING, Any
 
 import numpy as np
 from PySide6.QtCore import Qt, QTimer
-from PySide6.QtWidgets import QLabel, QWidget
+from PySide6.QtWidgets import QHBoxLayout, QLabel, QPushButton, QWidget
 
 from desk.book import Book
 from desk.valuation.shock_effects import CannotShock
@@ -14,6 +14,7 @@ from desk.window.parts import numbers
 from desk.window.parts.fields import Combo, TextField
 from desk.window.parts.labels import well_broken
 from desk.window.parts.tables import Column, Table
+from desk.window.parts.theme import GAP
 from desk.window.shocks.curve_pictures import MovedCurvePicture
 from desk.window.shocks.edits import free_name, name_fault, with_added
 from desk.window.shocks.frame_pictures import GapPicture, YearsPicture
@@ -102,9 +103,18 @@ class WhatIfMode(Mode):
 
     def _make_form(self) -> None:
         form = self.form
-        self.back_button = form.add_button("Put it back", self.put_back)
+        self.back_button = QPushButton("Put it back")
         self.back_button.setToolTip("Nothing is moved any more (Escape)")
-        self.keep_button = form.add_button("Keep as a shock…", self.ask_name)
+        self.keep_button = QPushButton("Keep…")
+        self.keep_button.setAccessibleName("Keep as a shock")
+        buttons = QWidget()
+        row = QHBoxLayout(buttons)
+        row.setContentsMargins(0, 0, 0, 0)
+        row.setSpacing(GAP)
+        for button, act in ((self.back_button, self.put_back), (self.keep_button, self.ask_name)):
+            button.clicked.connect(lambda _=False, act=act: act())
+            row.addWidget(button, 1)
+        form.add_widget(buttons)
         self.keep_button.setToolTip("As a shock of your own; the book's shocks are all that changes")
         self.name = TextField("Name of the shock", hint="Return keeps it.", check=self._check_name)
         self.name.committed.connect(self._keep)
@@ -117,10 +127,10 @@ class WhatIfMode(Mode):
         for handle in HANDLES:
             if handle.group not in self._headings:
                 self._headings[handle.group] = form.add_heading(handle.group)
-            row = HandleRow(handle)
-            row.moved.connect(lambda _: self._on_moved())
-            form.add_widget(row)
-            self.rows[handle.key] = row
+            made = HandleRow(handle)
+            made.moved.connect(lambda _: self._on_moved())
+            form.add_widget(made)
+            self.rows[handle.key] = made
 
     # Showing
 

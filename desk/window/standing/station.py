@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from collections.abc import Callable
 from itertools import pairwise
 from typing import Any
 
@@ -259,6 +260,12 @@ class StandingStation(Station):
         # Equal shares for the two that are seen, unless the reader chose others.
         self.pictures.setSizes([self.pictures.width()] * self.pictures.count())
         self.choose_sizes(self.chosen_sizes)
+
+    def views(self) -> tuple[Callable[[], object], ...]:
+        """Inflation, where the book has it."""
+        if not self.pages.has_page("inflation"):
+            return ()
+        return (lambda: self.pages.show_page("inflation"),)
 
     def show_rows(self, key: str) -> None:
         """Show the rows that make up a figure of the headline.
