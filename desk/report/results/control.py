@@ -18,10 +18,12 @@ from desk.report.results.key_rates import key_rate_chart
 from desk.report.results.periods import flow_chart
 from desk.report.results.plan import FIRST_ROW, HEADING_ROW, Block, Formula, SheetPlan
 from desk.report.results.runs import run_label
+from desk.report.results.shocks import shock_notes, worst_of
 from desk.report.said_once import further_faults
 from desk.report.wording import CAUTION, MEASURES, QUANTILE_METHOD, liability_words
 from desk.scenarios.records import Simulation
 from desk.valuation.records import Standing
+from desk.valuation.shock_records import ShockTable
 
 __all__ = ["MASTER_CHECK_AREA", "plan_faults", "plan_provenance", "plan_summary"]
 
@@ -41,6 +43,7 @@ def plan_summary(
     checks: Checks,
     charts_from: dict[str, SheetPlan],
     compared: Standing | None = None,
+    shocks: ShockTable | None = None,
 ) -> SheetPlan:
     """The first sheet: the position, whether the workbook agrees with the program, and how to read it."""
     currency = standing.currency
@@ -58,7 +61,7 @@ def plan_summary(
     plan.put(3, 2, Formula(f'=IF(COUNTIF({area},"OK")=ROWS({area}),"OK","CHECK")'), "check")
     plan.mark_checks(2, 3, 3)
     plan.headings(["Headline", "Unit", "Reported", "Recomputed", "Difference", "Tolerance", "Check"], left=2)
-    row = _headline(plan, standing, recomputed, currency) + 1
+    row = _headline(plan, standing, recomputed, currency, shocks) + 1
     plan.headings(["Measure", "Unit", "Assets", "Liabilities"], row=row, left=2)
     for wording in MEASURES:
         row += 1
@@ -95,7 +98,7 @@ def plan_summary(
     for part in textwrap.wrap(CAUTION, NOTE_WIDTH - 10):
         plan.put(row, 1, part, "caution")
         row += 1
-    row = _how_to_read(plan, row + 1, reading, simulation, sheets)
+    row = _how_to_read(plan, row + 1, reading, simulation, sheets, shocks)
     row = _signatures(plan, row + 1)
     _pictures(plan, standing, charts_from)
     return plan
@@ -152,8 +155,14 @@ def _bases(
     return row + 1
 
 
-def _headline(plan: SheetPlan, standing: Standing, recomputed: dict[str, str], currency: str) -> int:
-    """The six headline figures; returns the row after them."""
+def _headline(
+    plan: SheetPlan,
+    standing: Standing,
+    recomputed: dict[str, str],
+    currency: str,
+    shocks: ShockTable | None,
+) -> int:
+    """The six headline figures, and the worst that a shock does; returns the row after them."""
     figures: list[tuple[str, str, str, float, str]] = [
         ("Assets", currency, "money", standing.assets.present_value, "assets_present_value"),
         ("Liabilities", currency, "money", standing.liabilities.present_value, "liabilities_present_value"),
@@ -162,6 +171,9 @@ def _headline(plan: SheetPlan, standing: Standing, recomputed: dict[str, str], c
         ("Duration gap", "years", "years", standing.duration_gap, "duration_gap"),
         ("DV01 gap", currency, "money", standing.dv01_gap, "dv01_gap"),
     ]
+    if shocks is not None and shocks.results:
+        worst = worst_of(shocks).surplus
+        figures.append(("Least surplus after a shock", currency, "money", worst, "least_surplus"))
     row = FIRST_ROW
     for label, unit, form, value, key in figures:
         cells: list[tuple[Any, str, str]] = [
@@ -192,6 +204,7 @@ def _how_to_read(
     reading: Reading,
     simulation: Simulation | None,
     sheets: dict[Side, FlowSheet],
+    shocks: ShockTable | None,
 ) -> int:
     """Notes on colours, signs and what is not recomputed; returns the row after them."""
     plan.put(row, 1, "How to read this workbook", "heading_left")
@@ -215,6 +228,7 @@ def _how_to_read(
         notes.append(f"{why}: those sheets are left out.")
     else:
         notes.append(f"Simulated: {run_label(simulation)}. {QUANTILE_METHOD}")
+    notes += shock_notes(shocks)
     notes += [
         f"{sheet.plan.name}: {sheet.rows_before:,} flows are summed by line and year."
         for sheet in sheets.values()
@@ -259,6 +273,7 @@ def plan_faults(
     simulation: Simulation | None,
     *,
     second: Standing | None = None,
+    shocks: ShockTable | None = None,
 ) -> SheetPlan:
     """Everything that was found wrong, and what was done about it."""
     told = reading.faults
@@ -268,6 +283,10 @@ def plan_faults(
         of_second = further_faults((*told, *of_standing), second.faults)
         sources.append(("Second basis", of_second))
         of_standing = (*of_standing, *of_second)
+    if shocks is not None:
+        of_shocks = further_faults((*told, *of_standing), shocks.faults)
+        sources.append(("Shocks", of_shocks))
+        of_standing = (*of_standing, *of_shocks)
     if simulation is not None:
         sources.append(("Simulation", further_faults((*told, *of_standing), simulation.faults)))
     faults = [(source, fault) for source, found in sources for fault in found]
@@ -293,7 +312,12 @@ def plan_faults(
 
 
 def plan_provenance(
-    reading: Reading, standing: Standing, simulation: Simulation | None, *, written_at: datetime
+    reading: Reading,
+    standing: Standing,
+    simulation: Simulation | None,
+    *,
+    shocks: ShockTable | None = None,
+    written_at: datetime,
 ) -> SheetPlan:
     """Where every figure comes from."""
     import numpy
@@ -313,6 +337,11 @@ def plan_provenance(
         ("Valuation date", standing.valuation_date.isoformat()),
         *((f"Valuation: {name.replace('_', ' ')}", value) for name, value in standing.provenance.settings),
     ]
+    if shocks is not None:
+        items += [
+            ("Shocks: SHA-256 of the book's contents", shocks.provenance.book_digest),
+            *((f"Shocks: {name}", value) for name, value in shocks.provenance.settings),
+        ]
     if simulation is not None:
         items += [
             ("Simulation: SHA-256 of the book's contents", simulation.provenance.book_digest),

@@ -118,6 +118,8 @@ class SheetPlan:
         Addresses of cells that hold the word of a check.
     page_breaks : list of int
         Rows after which a new page begins.
+    whole_numbers : list of (str, int, int)
+        Addresses of cells that take a whole number alone, with the least and the most.
     """
 
     name: str
@@ -132,6 +134,7 @@ class SheetPlan:
     is_one_page: bool = False
     check_columns: list[str] = field(default_factory=list)
     page_breaks: list[int] = field(default_factory=list)
+    whole_numbers: list[tuple[str, int, int]] = field(default_factory=list)
 
     def put(self, row: int, column: int, value: Any, role: str = "reported", form: str = "text") -> str:
         """Plan a cell and return its absolute address, with the sheet's name."""
@@ -235,6 +238,7 @@ def write_sheet(
     if plan.block is not None:
         _write_block(sheet, plan.block, styles, last, progress)
     _mark_failures(sheet, plan.check_columns)
+    _hold_to_whole_numbers(sheet, plan.whole_numbers)
     for row in plan.page_breaks:
         sheet.row_breaks.append(Break(id=row))
     for chart, anchor in plan.charts:
@@ -314,6 +318,21 @@ def _write_block(
         sheet.append(row)
         if number % 500 == 0:
             progress(number / block.count)
+
+
+def _hold_to_whole_numbers(sheet: Worksheet, cells: Iterable[tuple[str, int, int]]) -> None:
+    """Refuse whatever else is typed into cells that choose by number."""
+    from openpyxl.worksheet.datavalidation import DataValidation
+
+    for address, least, most in cells:
+        rule = DataValidation(
+            type="whole", operator="between", formula1=str(least), formula2=str(most), allow_blank=False
+        )
+        rule.errorTitle, rule.error = "No such number", f"A whole number from {least} to {most}."
+        rule.showErrorMessage = True
+        rule.add(address)
+        # A write-only sheet has the list and not the method.
+        sheet.data_validations.append(rule)
 
 
 def _mark_failures(sheet: Worksheet, areas: Iterable[str]) -> None:

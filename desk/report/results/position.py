@@ -6,7 +6,7 @@ from dataclasses import dataclass, field
 
 import numpy as np
 
-from desk.book import Book, Side
+from desk.book import Book, PricedFlows, Side
 from desk.report.results.bonds import plan_bonds
 from desk.report.results.checks import Checks
 from desk.report.results.curve import plan_curve
@@ -33,6 +33,7 @@ class Position:
     before : list of SheetPlan
         Basis, curve and what belongs to them, in their order.
     sheets : dict of Side to FlowSheet
+    flows : dict of Side to PricedFlows
     growth : Growth or None
     recomputed : dict of str to str
         Addresses of recomputed figures; those of inflation begin with ``inflation_``.
@@ -44,6 +45,7 @@ class Position:
 
     before: list[SheetPlan]
     sheets: dict[Side, FlowSheet]
+    flows: dict[Side, PricedFlows]
     growth: Growth | None
     recomputed: dict[str, str]
     names: dict[str, str] = field(default_factory=dict)
@@ -133,4 +135,4 @@ def plan_position(book: Book, standing: Standing, naming: Naming, checks: Checks
     for sheet in sheets.values():
         names |= sheet.names
     largest = max(float(np.abs(own.amount).sum()) for own in flows.values())
-    return Position(before, sheets, growth, recomputed, names, largest)
+    return Position(before, sheets, flows, growth, recomputed, names, largest)

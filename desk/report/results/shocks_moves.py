@@ -86,8 +86,8 @@ def plan_moves(found: ShockTable) -> tuple[SheetPlan, list[MoveRows], dict[str, 
     """
     count = sum(len(result.shock.moves) for result in found.results)
     note = (
-        "The moves of one shock happen together. Sizes of rates are of zero rates compounded as it says; moves "
-        "of one kind at several terms are joined by straight lines, flat outside them."
+        "The moves of one shock happen together. Sizes of rates are of zero rates compounded as it says; "
+        "moves of one kind at several terms are joined by straight lines, flat outside them."
     )
     if count > MOVE_CAP:
         note = f"The shocks that make up the first {MOVE_CAP:,} of {count:,} moves. {note}"
@@ -186,7 +186,7 @@ def shift_formula(shock: Shock, place: MoveRows, row: int) -> Formula | None:
     """
     if not any(move.kind in RATE_MOVES for move in shock.moves):
         return Formula("=0")
-    if not place.rows or MoveKind.LEAST in place.rows and _least_sign(place) == 0:
+    if not place.rows or (MoveKind.LEAST in place.rows and _least_sign(place) == 0):
         return None
     text = _shift(shock, place, row)
     return Formula(text) if len(text) <= LONGEST_FORMULA else None

@@ -24,12 +24,14 @@ from desk.report.results.periods import plan_periods
 from desk.report.results.plan import MASTER_CHECK, SheetPlan, widen, write_sheet
 from desk.report.results.position import Position, plan_position
 from desk.report.results.runs import plan_present_values, plan_savings_account, plan_short_rate
+from desk.report.results.shocks import plan_shocks
 from desk.report.results.standing import plan_lines
 from desk.report.safe_cells import clean_text, write_whole
 from desk.scenarios.records import Simulation
 from desk.valuation.linked import is_linked
 from desk.valuation.prices import HoldingPrice, holding_prices
 from desk.valuation.records import Standing
+from desk.valuation.shock_records import ShockTable
 from desk.valuation.standing import stand
 
 if TYPE_CHECKING:
@@ -45,6 +47,7 @@ def write_report(
     path: Path,
     *,
     second: Standing | None = None,
+    shocks: ShockTable | None = None,
     progress: Callable[[float], None] | None = None,
     written_at: datetime | None = None,
 ) -> Path:
@@ -61,6 +64,8 @@ def write_report(
         The workbook to write.
     second : Standing, optional
         On the second basis of the book; where the book has one it is valued if this is left out.
+    shocks : ShockTable, optional
+        None, or one without results, leaves its sheets out, and the summary says so.
     progress : callable, optional
         Called with the part done, from 0 to 1; it may stop the work by raising.
     written_at : datetime, optional
@@ -88,6 +93,7 @@ def write_report(
         standing,
         simulation,
         second=second,
+        shocks=shocks,
         written_at=written_at or datetime.now(UTC),
     )
     report(0.1)
@@ -101,6 +107,7 @@ def plan_sheets(
     simulation: Simulation | None,
     *,
     second: Standing | None = None,
+    shocks: ShockTable | None = None,
     written_at: datetime,
 ) -> tuple[list[SheetPlan], dict[str, str]]:
     """All sheets in their order, and the names that the workbook defines; see `write_report`."""
@@ -127,6 +134,17 @@ def plan_sheets(
         )
         if all(sheet.is_by_row for sheet in sheets.values()):
             after.append(plan_periods(standing, checks, is_real=True))
+    shocked = None
+    if shocks is not None and shocks.results:
+        shocked = plan_shocks(
+            shocks,
+            flows=first.flows,
+            sheets=sheets,
+            recomputed=recomputed,
+            curve=book.basis.curve,
+            checks=checks,
+        )
+        recomputed = recomputed | {"least_surplus": shocked.least_surplus}
     compared, of_second = _second_basis(book, standing, second, first, checks)
     summary = plan_summary(
         reading,
@@ -137,19 +155,24 @@ def plan_sheets(
         checks=checks,
         charts_from={plan.name: plan for plan in (periods, key_rates)},
         compared=compared.standing,
+        shocks=shocks,
     )
     plans = [
         *(summary, *first.before, *further, sheets[Side.LIABILITIES].plan, holdings),
         *(sheets[Side.ASSETS].plan, lines, key_rates, periods, *after, *compared.plans),
     ]
+    if shocked is not None:
+        plans += shocked.sheets
     if simulation is not None:
         plans.append(plan_savings_account(simulation))
         plans.append(plan_short_rate(simulation))
         plans.append(plan_present_values(simulation, currency=standing.currency))
     plans.append(checks.plan())
-    plans.append(plan_faults(reading, standing, simulation, second=compared.standing))
-    plans.append(plan_provenance(reading, standing, simulation, written_at=written_at))
+    plans.append(plan_faults(reading, standing, simulation, second=compared.standing, shocks=shocks))
+    plans.append(plan_provenance(reading, standing, simulation, shocks=shocks, written_at=written_at))
     names = checks.names() | {MASTER_CHECK: MASTER_CHECK_AREA} | first.names
+    if shocked is not None:
+        names |= shocked.names
     largest = first.largest
     if of_second is not None:
         names |= of_second.names

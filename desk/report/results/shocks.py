@@ -1,0 +1,340 @@
+"""The sheets of shocks: what each does to both sides, what it is made of, and its revaluation."""
+
+from __future__ import annotations
+
+import math
+from dataclasses import dataclass
+from typing import Any
+
+import numpy as np
+
+from desk.book import PricedFlows, Side
+from desk.rates.curve import DiscountCurve
+from desk.report.results.charts import Column, bars, money_axis
+from desk.report.results.checks import Checks
+from desk.report.results.flows import FlowSheet
+from desk.report.results.look import QUIET, SURPLUS
+from desk.report.results.plan import FIRST_ROW, Formula, SheetPlan
+from desk.report.results.shocks_moves import plan_moves
+from desk.report.results.shocks_profile import gap_turns_text, plan_profile
+from desk.report.results.shocks_rates import plan_rates, plan_recomputed, terms_of
+from desk.valuation.shock_records import ShockResult, ShockTable, band_name
+
+__all__ = ["SHOCKS_SHEET", "ShockPlans", "plan_shocks", "shock_notes", "worst_of"]
+
+SHOCKS_SHEET = "Shocks"
+CHART_CAP = 30
+"""Shocks that a picture shows; more would be too narrow to read."""
+FIRST_RESULT = FIRST_ROW + 1
+"""Row of the first shock; the one before holds where the book stands."""
+_MONEY = (
+    "assets", "liabilities", "surplus", "funding_ratio", "change_in_assets", "change_in_liabilities",
+    "change_in_surplus", "change_in_funding_ratio", "estimated_change_in_assets",
+    "estimated_change_in_liabilities", "estimated_change_in_surplus",
+)  # fmt: skip
+
+
+@dataclass(frozen=True)
+class ShockPlans:
+    """The planned sheets of shocks.
+
+    Attributes
+    ----------
+    sheets : list of SheetPlan
+        In their order.
+    names : dict of str to str
+        Names that the workbook defines.
+    least_surplus : str
+        Address of the least surplus after a shock, recomputed.
+    """
+
+    sheets: list[SheetPlan]
+    names: dict[str, str]
+    least_surplus: str
+
+
+def plan_shocks(
+    found: ShockTable,
+    *,
+    flows: dict[Side, PricedFlows],
+    sheets: dict[Side, FlowSheet],
+    recomputed: dict[str, str],
+    curve: DiscountCurve,
+    checks: Checks,
+) -> ShockPlans:
+    """Plan every sheet of shocks.
+
+    Parameters
+    ----------
+    found : ShockTable
+        With at least one result.
+    flows : dict of Side to PricedFlows
+    sheets : dict of Side to FlowSheet
+    recomputed : dict of str to str
+        Addresses of recomputed figures of the standing: see `desk.report.results.standing.check_measures`.
+    curve : DiscountCurve
+        Before any shock.
+    checks : Checks
+        Gains the checks of these sheets.
+    """
+    terms, reason = terms_of(found, flows, sheets, curve)
+    if reason:
+        checks.left_out.append(reason)
+    moves, places, names = plan_moves(found)
+    plan = _plan_results(found, reason=reason, recomputed=recomputed, checks=checks)
+    names |= _names(plan, found)
+    planned = [plan, moves]
+    if terms is not None:
+        rates, own = plan_rates(found, terms, flows, sheets, places, checks)
+        names |= own
+        one, own = plan_recomputed(
+            found, terms, shocks_sheet=plan.name, first_result=FIRST_RESULT, reason=reason, checks=checks
+        )
+        names |= own
+        planned += [rates, one]
+    planned.append(plan_profile(found, terms, checks))
+    least = checks.add(
+        "Least surplus after a shock",
+        sheet=plan.name,
+        unit=found.currency,
+        form="money2",
+        reported=min(result.surplus for result in found.results),
+        formula=f"=MIN({plan.area(18, FIRST_RESULT, _last(found))})",
+        scale="MAX(shock_base_assets,shock_base_liabilities)",
+    )
+    return ShockPlans(planned, names, least)
+
+
+def worst_of(found: ShockTable) -> ShockResult:
+    """The shock after which the surplus is least."""
+    return min(found.results, key=lambda result: result.surplus)
+
+
+def shock_notes(found: ShockTable | None) -> list[str]:
+    """What the summary says of shocks.
+
+    Parameters
+    ----------
+    found : ShockTable or None
+
+    Returns
+    -------
+    list of str
+        One paragraph each.
+    """
+    if found is None or not found.results:
+        return ["No shocks were computed: those sheets are left out."]
+    worst = worst_of(found)
+    after = f"the surplus is least, {_grouped(worst.surplus)} {found.currency}"
+    if math.isfinite(worst.funding_ratio):
+        after += f", and the funding ratio {100.0 * worst.funding_ratio:.2f} %"
+    whole = f"{worst.set_name}: {worst.name}" if worst.set_name else worst.name
+    notes = [f"Of {len(found.results):,} shocks, {after}, after “{whole}”."]
+    ratios = [result.funding_ratio for result in found.results]
+    if found.thresholds and all(math.isfinite(ratio) for ratio in ratios):
+        listed = ", ".join(
+            f"{sum(ratio < threshold for ratio in ratios)} below {100.0 * threshold:g} %"
+            for threshold in found.thresholds
+        )
+        notes[0] += f" Funding ratios by threshold: {listed}."
+    notes.append(gap_turns_text(found.profile))
+    return notes
+
+
+def _grouped(figure: float) -> str:
+    return f"{figure:,.0f}".replace("-", "−")
+
+
+def _last(found: ShockTable) -> int:
+    """Row of the last shock."""
+    return FIRST_RESULT + len(found.results) - 1
+
+
+def _names(plan: SheetPlan, found: ShockTable) -> dict[str, str]:
+    """Names that the workbook defines for the sheet of results."""
+    names = {
+        "shock_base_assets": plan.address(FIRST_ROW, 4),
+        "shock_base_liabilities": plan.address(FIRST_ROW, 5),
+    }
+    if found.thresholds:
+        first = _last(found) + 3
+        names["shock_thresholds"] = plan.area(2, first, first + len(found.thresholds) - 1)
+        names["shock_words"] = plan.area(4, first, first + len(found.thresholds))
+    return names
+
+
+def _plan_results(found: ShockTable, *, reason: str, recomputed: dict[str, str], checks: Checks) -> SheetPlan:
+    """The sheet of results."""
+    unit = f"[{found.currency}]"
+    note = (
+        "Every shock is a full revaluation of both sides from where the book stands. The estimate beside it "
+        "is by duration and convexity."
+    )
+    plan = SheetPlan(SHOCKS_SHEET, "Shocks: both sides after each", f"{note} {reason}" if reason else note)
+    plan.widths = {1: 9.0, 2: 36.0, 3: 25.0} | dict.fromkeys(range(4, 21), 15.0)
+    plan.widths |= {7: 10.0, 11: 10.0, 16: 10.0, 17: 10.0, 20: 11.0, 21: 8.0, 22: 60.0}
+    plan.headings(
+        [
+            "Shock number",
+            "Shock",
+            "Set",
+            f"Assets {unit}",
+            f"Liabilities {unit}",
+            f"Surplus {unit}",
+            "Funding ratio",
+            f"Change in assets {unit}",
+            f"Change in liabilities {unit}",
+            f"Change in surplus {unit}",
+            "Change in funding ratio",
+            f"Assets, estimated change {unit}",
+            f"Liabilities, estimated change {unit}",
+            f"Surplus, estimated change {unit}",
+            f"Full less estimated change {unit}",
+            "Verdict, reported",
+            "Verdict",
+            f"Surplus, recomputed {unit}",
+            f"Change in surplus, recomputed {unit}",
+            f"Difference {unit}",
+            "Check",
+            "Source",
+        ],
+        left=0,
+    )
+    for column in (2, 3, 22):
+        plan.put(4, column, plan.cells[4][column].value, "heading_left")
+    base = found.base
+    figures = ((base.assets, "money"), (base.liabilities, "money"), (base.surplus, "money"))
+    plan.table_row(
+        FIRST_ROW,
+        2,
+        [
+            ("As it stands", "text", "text"),
+            ("", "text", "text"),
+            *((figure, "reported", form) for figure, form in figures),
+            (base.funding_ratio, "reported", "share"),
+        ],
+    )
+    if found.thresholds and math.isfinite(base.funding_ratio):
+        plan.put(FIRST_ROW, 17, Formula(_verdict(FIRST_ROW)), "live", "text")
+    plan.put(FIRST_ROW, 18, Formula(f"=D{FIRST_ROW}-E{FIRST_ROW}"), "live", "money")
+    for number, result in enumerate(found.results, start=1):
+        _result_row(plan, FIRST_RESULT + number - 1, number, result, found)
+    last = _last(found)
+    checks.add_column("Shocks whose figures differ", plan, plan.mark_checks(21, FIRST_RESULT, last))
+    for name, column in (("assets", 4), ("liabilities", 5)):
+        address = recomputed.get(f"{name}_present_value", "")
+        if address:
+            checks.add(
+                f"{name.capitalize()} before shocks are those of the standing",
+                sheet=plan.name,
+                unit=found.currency,
+                form="money2",
+                reported=getattr(base, name),
+                formula=f"={address}",
+                scale=f"SUMPRODUCT(ABS({name}_value))",
+            )
+            checks.add(
+                f"{name.capitalize()} before shocks, as this sheet shows them",
+                sheet=plan.name,
+                unit=found.currency,
+                form="money2",
+                reported=getattr(base, name),
+                formula=f"={plan.address(FIRST_ROW, column)}",
+            )
+    below = _thresholds(plan, last + 2, found)
+    _chart(plan, below, found)
+    return plan
+
+
+def _verdict(row: int) -> str:
+    """Formula of the word for a funding ratio."""
+    return f"=INDEX(shock_words,1+SUMPRODUCT((G{row}<shock_thresholds)*1))"
+
+
+def _result_row(plan: SheetPlan, row: int, number: int, result: ShockResult, found: ShockTable) -> None:
+    """One shock."""
+    has_ratio = math.isfinite(result.funding_ratio) and math.isfinite(found.base.funding_ratio)
+    base = f"${FIRST_ROW}"
+    forms = ["share" if "ratio" in name else "money" for name in _MONEY]
+    away = (
+        f"=ABS(F{row}-R{row})+ABS(J{row}-S{row})+ABS(H{row}-(D{row}-D{base}))+ABS(I{row}-(E{row}-E{base}))"
+        f"+ABS(N{row}-(L{row}-M{row}))"
+    )
+    agree = [f"T{row}<=check_tolerance*MAX(1,ABS(D{row})+ABS(E{row}),ABS(L{row})+ABS(M{row}))"]
+    if has_ratio:
+        agree.append(
+            f"ABS(G{row}-D{row}/E{row})+ABS(K{row}-G{row}+G{base})<=check_tolerance*MAX(1,ABS(G{row}))"
+        )
+    verdict: list[tuple[Any, str, str]] = [("", "text", "text"), ("", "text", "text")]
+    if found.thresholds and has_ratio:
+        word = band_name(result.band, found.thresholds)
+        verdict = [(word, "reported", "word"), (Formula(_verdict(row)), "live", "text")]
+        agree.append(f"P{row}=Q{row}")
+    plan.table_row(
+        row,
+        1,
+        [
+            (number, "text", "whole"),
+            (result.name, "text", "text"),
+            (result.set_name or "Own", "text", "text"),
+            *((getattr(result, name), "reported", form) for name, form in zip(_MONEY, forms, strict=True)),
+            (Formula(f"=J{row}-N{row}"), "live", "money"),
+            *verdict,
+            (Formula(f"=D{row}-E{row}"), "live", "money"),
+            (Formula(f"=R{row}-R{base}"), "live", "money"),
+            (Formula(away), "live", "tiny"),
+            (Formula(f'=IF(AND({",".join(agree)}),"OK","CHECK")'), "check", "text"),
+            (result.source or "The book's own", "text", "text"),
+        ],
+    )
+
+
+def _thresholds(plan: SheetPlan, row: int, found: ShockTable) -> int:
+    """Thresholds as cells that may be changed; returns the row after them."""
+    if not found.thresholds:
+        plan.put(row, 2, "The book states no thresholds: there is no verdict.", "note")
+        return row + 2
+    plan.headings(["Funding ratio, at least"], row=row, column=2, left=1)
+    plan.put(row, 3, "Shocks below it", "heading")
+    plan.put(row, 4, "Verdict", "heading_left")
+    area = f"G{FIRST_RESULT}:G{_last(found)}"
+    count = len(found.thresholds)
+    for offset, threshold in enumerate(found.thresholds, start=1):
+        at = row + offset
+        plan.put(at, 2, threshold, "input", "share")
+        plan.put(at, 3, Formula(f"=SUMPRODUCT(({area}<B{at})*1)"), "live", "whole")
+        plan.put(at, 4, band_name(offset - 1, found.thresholds), "text")
+    plan.put(row + count + 1, 2, "below the last", "text")
+    plan.put(row + count + 1, 4, band_name(count, found.thresholds), "text")
+    return row + count + 3
+
+
+def _chart(plan: SheetPlan, row: int, found: ShockTable) -> None:
+    """Change in surplus by shock, full and estimated."""
+    shown = min(len(found.results), CHART_CAP)
+    last = FIRST_RESULT + shown - 1
+    changes = [
+        (result.change_in_surplus, result.estimated_change_in_surplus) for result in found.results[:shown]
+    ]
+    number_format, unit = money_axis(float(np.nanmax(np.abs(changes))), found.currency)
+    title = "Change in surplus by shock"
+    if shown < len(found.results):
+        title += f", the first {shown}"
+    chart = bars(
+        [
+            Column("Fully revalued", plan.area(10, FIRST_RESULT, last), SURPLUS),
+            Column("Estimated by duration and convexity", plan.area(14, FIRST_RESULT, last), QUIET),
+        ],
+        plan.area(2, FIRST_RESULT, last),
+        title=title,
+        across="Shock",
+        upward=f"Change in surplus [{unit}]",
+        number_format=number_format,
+    )
+    chart.type = "bar"
+    # The first shock stands at the top, and the scale of amounts stays at the foot.
+    chart.x_axis.scaling.orientation = "maxMin"
+    chart.y_axis.crosses = "max"
+    chart.width, chart.height = 24, min(26, 5 + round(0.75 * shown))
+    plan.charts.append((chart, f"B{row}"))
+    plan.page_breaks.append(row - 1)

@@ -1,0 +1,441 @@
+"""The sheets that revalue both sides under each shock: shifts by term, and one shock at a time."""
+
+from __future__ import annotations
+
+from collections.abc import Iterator, Sequence
+from dataclasses import dataclass
+from typing import Any
+
+import numpy as np
+from numpy.typing import NDArray
+
+from desk.book import PricedFlows, Side
+from desk.book.arrays import FloatArray
+from desk.book.shock import MoveKind, Shock
+from desk.rates.curve import DiscountCurve
+from desk.report.results.checks import Checks
+from desk.report.results.flows import FlowSheet
+from desk.report.results.plan import FIRST_ROW, HEADING_ROW, Block, Formula, SheetPlan, column_letter
+from desk.report.results.shocks_moves import MoveRows, shift_formula
+from desk.report.results.standing import LIVE_WORK
+from desk.valuation.moved_curve import CurveMove
+from desk.valuation.shock_records import ShockTable
+
+__all__ = ["RATES_SHEET", "RECOMPUTED_SHEET", "Terms", "plan_rates", "plan_recomputed", "terms_of"]
+
+RATES_SHEET, RECOMPUTED_SHEET = "Shock rates", "Shock recomputed"
+SHIFT_CAP = 120_000
+"""Shifts that are listed: terms times shocks."""
+_NEAR = 1e-9
+"""Times nearer to each other than this are one term [years]."""
+_FIRST_SHIFT = 8
+_OF_SIDE = {
+    Side.ASSETS: (MoveKind.SPREAD, MoveKind.VALUE),
+    Side.LIABILITIES: (MoveKind.AMOUNT, MoveKind.TIME, MoveKind.DECLINE),
+}
+
+
+@dataclass(frozen=True, eq=False)
+class Terms:
+    """The terms at which either side has flows, u of them, and the shocks that are revalued there.
+
+    Attributes
+    ----------
+    time : ndarray, shape (u,)
+        Rising [years].
+    zero : ndarray, shape (u,)
+        Continuous zero rates before any shock [1/year].
+    has_flows : dict of Side to ndarray of bool, shape (u,)
+    count : int
+        How many of the shocks are revalued, from the first.
+    revalued : dict of Side to tuple of bool
+        Whether the moves of each of these shocks, as far as they touch a side, are moves of rates alone.
+    """
+
+    time: FloatArray
+    zero: FloatArray
+    has_flows: dict[Side, NDArray[np.bool_]]
+    count: int
+    revalued: dict[Side, tuple[bool, ...]]
+
+    @property
+    def last_row(self) -> int:
+        """Of the terms on the sheet of rates."""
+        return FIRST_ROW + self.time.size - 1
+
+
+def terms_of(
+    found: ShockTable, flows: dict[Side, PricedFlows], sheets: dict[Side, FlowSheet], curve: DiscountCurve
+) -> tuple[Terms | None, str]:
+    """The terms at which shocks are revalued.
+
+    Parameters
+    ----------
+    found : ShockTable
+    flows : dict of Side to PricedFlows
+    sheets : dict of Side to FlowSheet
+    curve : DiscountCurve
+
+    Returns
+    -------
+    terms : Terms or None
+        None where too much would have to be recomputed.
+    reason : str
+        What is left out, and why; empty for nothing.
+    """
+    summed = [sheet for sheet in sheets.values() if not sheet.is_by_row]
+    if summed:
+        return None, (
+            f"Shocks are not recomputed: {max(sheet.rows_before for sheet in summed):,} flows of one side "
+            "are too many to show one by one."
+        )
+    every = np.sort(np.concatenate([flows[side].time for side in Side]))
+    if not every.size:
+        return None, "Shocks are not recomputed: the book has no flows."
+    time = every[np.concatenate(([True], np.diff(every) > _NEAR))]
+    has_flows: dict[Side, NDArray[np.bool_]] = {}
+    work = 0
+    for side in Side:
+        place = np.searchsorted(time, flows[side].time, side="right") - 1
+        own = np.zeros(time.size, dtype=np.bool_)
+        own[place] = True
+        has_flows[side] = own
+        work += int(own.sum()) * len(flows[side])
+    if work > LIVE_WORK:
+        return None, (
+            f"Shocks are not recomputed: {time.size:,} different terms with {every.size:,} flows would cost "
+            "a spreadsheet too much."
+        )
+    count = min(len(found.results), SHIFT_CAP // time.size)
+    reason = ""
+    if count < len(found.results):
+        reason = (
+            f"The first {count:,} of {len(found.results):,} shocks are recomputed: a shift at each of "
+            f"{time.size:,} terms is listed for no more than {SHIFT_CAP:,} in all."
+        )
+    shocks = [result.shock for result in found.results[:count]]
+    revalued = {side: tuple(_by_rates(shock, flows[side]) for shock in shocks) for side in Side}
+    return Terms(time, curve.zero(time), has_flows, count, revalued), reason
+
+
+def _by_rates(shock: Shock, flows: PricedFlows) -> bool:
+    """Whether a side is moved by rates alone."""
+    other = _OF_SIDE[flows.side]
+    if flows.index_class is not None and bool((flows.index_class >= 0).any()):
+        other = (*other, MoveKind.INFLATION)
+    return not any(move.kind in other for move in shock.moves)
+
+
+def plan_rates(
+    found: ShockTable,
+    terms: Terms,
+    flows: dict[Side, PricedFlows],
+    sheets: dict[Side, FlowSheet],
+    places: Sequence[MoveRows],
+    checks: Checks,
+) -> tuple[SheetPlan, dict[str, str]]:
+    """Plan the sheet of shifts by term; also gives the names that the workbook defines.
+
+    The values of both sides by term are sums over the sheets of flows.
+    """
+    last = terms.last_row
+    shocks = [result.shock for result in found.results[: terms.count]]
+    is_live = [
+        shift_formula(shock, place, last) is not None for shock, place in zip(shocks, places, strict=False)
+    ]
+    note = (
+        "What each shock adds to the continuous zero rate at every term at which there are flows, and what "
+        "the flows of that term are worth before. A shock's number stands above its column."
+    )
+    if not all(is_live):
+        listed = ", ".join(str(number) for number, live in enumerate(is_live, start=1) if not live)
+        note += f" Shifts with formulas too long to follow are values: {listed}."
+    plan = SheetPlan(RATES_SHEET, "Shock rates: shifts by term", note)
+    unit = f"[{found.currency}]"
+    plan.widths = {1: 11.0, 2: 11.0, 3: 11.0, 4: 12.0, 5: 11.0, 6: 17.0, 7: 17.0}
+    plan.widths |= dict.fromkeys(range(_FIRST_SHIFT, _FIRST_SHIFT + terms.count), 15.0)
+    plan.headings(
+        [
+            "Term [years]",
+            "Flows from [years]",
+            "To, not included [years]",
+            "Zero rate before [a year]",
+            "Fading of short moves",
+            f"Assets of the term {unit}",
+            f"Liabilities of the term {unit}",
+            *(f"{shock.name} [a year]" for shock in shocks),
+        ],
+        left=0,
+    )
+    plan.put(HEADING_ROW - 1, 5, "Sum", "text")
+    for column in (6, 7):
+        letter = column_letter(column)
+        total = Formula(f"=SUM({letter}{FIRST_ROW}:{letter}{last})")
+        plan.put(HEADING_ROW - 1, column, total, "live", "money")
+    for number in range(1, terms.count + 1):
+        plan.put(HEADING_ROW - 1, _FIRST_SHIFT + number - 1, number, "text", "whole")
+    plan.frozen = f"B{FIRST_ROW}"
+    roles = (
+        *("reported", "reported", "reported", "reported", "live", "live", "live"),
+        *("live" if live else "reported" for live in is_live),
+    )
+    forms = ("years", "years", "years", "rate", "factor", "money2", "money2", *("rate",) * terms.count)
+    plan.block = Block(
+        FIRST_ROW,
+        terms.time.size,
+        roles,
+        forms,
+        lambda: _rate_rows(terms, sheets, shocks, places, is_live),
+    )
+    for side, letter in ((Side.ASSETS, "F"), (Side.LIABILITIES, "G")):
+        name = side.value
+        checks.add(
+            f"{name.capitalize()}: values by term add up to the present value",
+            sheet=plan.name,
+            unit=found.currency,
+            form="money2",
+            reported=sheets[side].reported_value,
+            formula=f"='{plan.name}'!${letter}${HEADING_ROW - 1}",
+            scale=f"SUMPRODUCT(ABS({name}_value))",
+        )
+    return plan, {
+        "shock_term": plan.area(1, FIRST_ROW, last),
+        "shock_assets": plan.area(6, FIRST_ROW, last),
+        "shock_liabilities": plan.area(7, FIRST_ROW, last),
+    }
+
+
+def _rate_rows(
+    terms: Terms,
+    sheets: dict[Side, FlowSheet],
+    shocks: Sequence[Shock],
+    places: Sequence[MoveRows],
+    is_live: Sequence[bool],
+) -> Iterator[Sequence[Any]]:
+    """One row a term."""
+    shifts = [None if live else _shift_at(shock, terms) for shock, live in zip(shocks, is_live, strict=True)]
+    middle = 0.5 * (terms.time[:-1] + terms.time[1:])
+    start = np.concatenate(([0.0], middle))
+    end = np.concatenate((middle, [terms.time[-1] + 1.0]))
+    for number in range(terms.time.size):
+        row = FIRST_ROW + number
+        worth = [
+            Formula(
+                f"=SUMPRODUCT(({prefix}_time>=B{row})*({prefix}_time<C{row})*{prefix}_value)"
+                if terms.has_flows[side][number]
+                else "=0"
+            )
+            for side, prefix in ((side, sheets[side].prefix) for side in (Side.ASSETS, Side.LIABILITIES))
+        ]
+        yield (
+            float(terms.time[number]),
+            float(start[number]),
+            float(end[number]),
+            float(terms.zero[number]),
+            Formula(f"=EXP(-A{row}/shock_decay)"),
+            *worth,
+            *(
+                shift_formula(shock, place, row) if shift is None else float(shift[number])
+                for shock, place, shift in zip(shocks, places, shifts, strict=False)
+            ),
+        )
+
+
+def _shift_at(shock: Shock, terms: Terms) -> FloatArray:
+    """What a shock adds to the continuous zero rates at the terms."""
+    move = CurveMove.of_shock(shock)
+    return np.zeros(terms.time.size) if move is None else move.change(terms.time, terms.zero)
+
+
+def plan_recomputed(
+    found: ShockTable,
+    terms: Terms,
+    *,
+    shocks_sheet: str,
+    first_result: int,
+    reason: str,
+    checks: Checks,
+) -> tuple[SheetPlan, dict[str, str]]:
+    """Plan the sheet that revalues both sides, of every shock at once and of one chosen shock term by term.
+
+    Parameters
+    ----------
+    found : ShockTable
+    terms : Terms
+    shocks_sheet : str
+        Name of the sheet of reported figures.
+    first_result : int
+        Its row of the first shock.
+    reason : str
+        What is left out.
+    checks : Checks
+        Gains the checks of this sheet.
+
+    Returns
+    -------
+    plan : SheetPlan
+    names : dict of str to str
+        Names that the workbook defines.
+    """
+    unit = f"[{found.currency}]"
+    note = (
+        "Each side after a shock = sum over the terms of its value before × EXP(−shift × term). A side whose "
+        "own values, spreads, amounts or times a shock moves as well is reported and not recomputed."
+    )
+    plan = SheetPlan(
+        RECOMPUTED_SHEET, "Shock recomputed: both sides revalued", f"{reason} {note}" if reason else note
+    )
+    plan.widths = {1: 11.0, 2: 36.0} | dict.fromkeys(range(3, 10), 18.0) | {10: 9.0}
+    plan.headings(
+        [
+            "Shock number",
+            "Shock",
+            f"Assets, reported {unit}",
+            f"Assets, recomputed {unit}",
+            f"Difference {unit}",
+            f"Liabilities, reported {unit}",
+            f"Liabilities, recomputed {unit}",
+            f"Difference {unit}",
+            f"Surplus, recomputed {unit}",
+            "Check",
+        ],
+        left=0,
+    )
+    plan.put(HEADING_ROW, 2, "Shock", "heading_left")
+    for offset in range(terms.count):
+        _recomputed_row(plan, offset, found, terms, f"'{shocks_sheet}'!", first_result + offset)
+    last = FIRST_ROW + terms.count - 1
+    compared = sum(any(terms.revalued[side][offset] for side in Side) for offset in range(terms.count))
+    area = plan.mark_checks(10, FIRST_ROW, last)
+    checks.add(
+        "Shocks that agree when revalued",
+        sheet=plan.name,
+        unit="rows",
+        form="whole",
+        reported=compared,
+        formula=f'=COUNTIF({area},"OK")',
+    )
+    return plan, _chosen(plan, last + 2, found, terms, shocks_sheet, first_result)
+
+
+def _recomputed_row(
+    plan: SheetPlan, offset: int, found: ShockTable, terms: Terms, place: str, reported: int
+) -> None:
+    """Both sides after one shock."""
+    row = FIRST_ROW + offset
+    cells: list[tuple[Any, str, str]] = [
+        (offset + 1, "text", "whole"),
+        (found.results[offset].name, "text", "text"),
+    ]
+    letter = column_letter(_FIRST_SHIFT + offset)
+    area = f"'{RATES_SHEET}'!${letter}${FIRST_ROW}:${letter}${terms.last_row}"
+    limits = []
+    for side, source, start in ((Side.ASSETS, "D", "C"), (Side.LIABILITIES, "E", "F")):
+        cells.append((Formula(f"={place}${source}${reported}"), "live", "money2"))
+        if terms.revalued[side][offset]:
+            name, away = f"shock_{side.value}", chr(ord(start) + 2)
+            cells += [
+                (Formula(f"=SUMPRODUCT({name}*EXP(-{area}*shock_term))"), "live", "money2"),
+                (Formula(f"={start}{row}-{chr(ord(start) + 1)}{row}"), "live", "tiny"),
+            ]
+            limits.append(f"ABS({away}{row})<=check_tolerance*MAX(1,ABS({start}{row}),{_gross(side)})")
+        else:
+            cells += [("not by rates alone", "note", "text"), (None, "text", "text")]
+    if len(limits) == len(Side):
+        cells.append((Formula(f"=D{row}-G{row}"), "live", "money2"))
+    else:
+        cells.append((None, "text", "text"))
+    if limits:
+        cells.append((Formula(f'=IF(AND({",".join(limits)}),"OK","CHECK")'), "check", "text"))
+    else:
+        cells.append(("none", "note", "text"))
+    plan.table_row(row, 1, cells)
+
+
+def _gross(side: Side) -> str:
+    """Size of a side that the tolerance is a part of: little may be left of its rows."""
+    return f"shock_gross_{side.value}"
+
+
+def _chosen(
+    plan: SheetPlan, row: int, found: ShockTable, terms: Terms, shocks_sheet: str, first_result: int
+) -> dict[str, str]:
+    """One chosen shock, term by term; gives the names that the workbook defines."""
+    unit = f"[{found.currency}]"
+    names: dict[str, str] = {}
+    plan.put(row, 1, "One shock, term by term", "title")
+    plan.put(row + 1, 1, "Number", "text")
+    both = [all(terms.revalued[side][number] for side in Side) for number in range(terms.count)]
+    worst = min(
+        range(terms.count), key=lambda number: (not both[number], found.results[number].change_in_surplus)
+    )
+    plan.whole_numbers.append((f"C{row + 1}", 1, terms.count))
+    names["shock_chosen"] = plan.put(row + 1, 3, worst + 1, "input", "whole")
+    plan.put(row + 1, 2, f"Type a number from 1 to {terms.count}", "text")
+    last = FIRST_ROW + terms.count - 1
+    plan.put(row + 2, 2, "Shock", "text")
+    plan.put(row + 2, 3, Formula(f"=INDEX(B{FIRST_ROW}:B{last},shock_chosen)"), "live", "text")
+    first, after = row + 9, row + 9 + terms.time.size - 1
+    for offset, (label, letter, source) in enumerate(
+        (("Assets", "F", "D"), ("Liabilities", "H", "E")), start=3
+    ):
+        area = f"'{shocks_sheet}'!${source}${first_result}:${source}${first_result + terms.count - 1}"
+        plan.table_row(
+            row + offset,
+            2,
+            [
+                (f"{label} after the moves of rates {unit}", "text", "text"),
+                (Formula(f"=SUM({letter}{first}:{letter}{after})"), "live", "money2"),
+                ("Reported, all moves", "text", "text"),
+                (Formula(f"=INDEX({area},shock_chosen)"), "live", "money2"),
+                (Formula(f"=E{row + offset}-C{row + offset}"), "live", "money2"),
+            ],
+        )
+    plan.put(row + 3, 7, "Reported less revalued: what other moves do", "note")
+    plan.table_row(
+        row + 5,
+        2,
+        [
+            (f"Surplus after the moves of rates {unit}", "text", "text"),
+            (Formula(f"=C{row + 3}-C{row + 4}"), "live", "money2"),
+        ],
+    )
+    for offset, side in enumerate(Side):
+        plan.put(row + 6, 2 + 2 * offset, f"{side.value.capitalize()}, rows without their signs", "text")
+        total = Formula(f"=SUMPRODUCT(ABS({side.value}_value))")
+        names[_gross(side)] = plan.put(row + 6, 3 + 2 * offset, total, "live", "money2")
+    plan.headings(
+        [
+            "Term [years]",
+            "Zero rate before [a year]",
+            "Shift [a year]",
+            "Zero rate after [a year]",
+            f"Assets before {unit}",
+            f"Assets after {unit}",
+            f"Liabilities before {unit}",
+            f"Liabilities after {unit}",
+        ],
+        row=row + 8,
+        left=0,
+    )
+    end = column_letter(_FIRST_SHIFT + terms.count - 1)
+    begin = column_letter(_FIRST_SHIFT)
+
+    def rows() -> Iterator[Sequence[Any]]:
+        for number in range(terms.time.size):
+            own, there = first + number, FIRST_ROW + number
+            source = f"'{RATES_SHEET}'!"
+            yield (
+                Formula(f"={source}$A${there}"),
+                Formula(f"={source}$D${there}"),
+                Formula(f"=INDEX({source}${begin}${there}:${end}${there},shock_chosen)"),
+                Formula(f"=B{own}+C{own}"),
+                Formula(f"={source}$F${there}"),
+                Formula(f"=E{own}*EXP(-C{own}*A{own})"),
+                Formula(f"={source}$G${there}"),
+                Formula(f"=G{own}*EXP(-C{own}*A{own})"),
+            )
+
+    forms = ("years", "rate", "rate", "rate", "money2", "money2", "money2", "money2")
+    plan.block = Block(first, terms.time.size, ("live",) * len(forms), forms, rows)
+    return names
