@@ -22,6 +22,9 @@ class ModelName(StrEnum):
     GAUSSIAN_2 = "gaussian-2"
     CIR = "cir"
     CIR_SHIFTED = "cir-shifted"
+    BLACK_KARASINSKI = "black-karasinski"
+    OUTSIDE = "outside"
+    """No model: the book's own set of scenarios."""
 
 
 @dataclass(frozen=True)
@@ -34,13 +37,27 @@ class RatesModel:
     mean_reversion, second_mean_reversion : float or None
         Speeds of reversion [1/year].
     volatility, second_volatility : float or None
-        Absolute for Gaussian models [1/year per root year]; for square-root models the coefficient of √r.
+        Absolute for Gaussian models [1/year per root year]; for square-root models the coefficient of √r; for
+        black-karasinski of ln r [1/root year].
     long_run_rate, starting_rate : float or None
         Continuously compounded [1/year]; needed by vasicek and cir, which make their own curve.
     factor_correlation : float or None
         Between the two factors of gaussian-2.
     risk_price : float
         Price of risk λ of the first factor: under the real-world measure its drift gains σλ.
+    second_risk_price : float
+        Of the second factor of gaussian-2.
+    inflation_mean_reversion : float or None
+        Speed of reversion of the inflation factor [1/year].
+    inflation_volatility : float or None
+        Of the inflation factor [1/year per root year]; None where inflation is not drawn.
+    inflation_rate_correlation : float or None
+        Of the inflation factor with the first rate factor; None counts as 0.
+    inflation_risk_price : float
+        Price of risk of the inflation factor.
+    mend_correlation : bool
+        Whether correlations of the risky assets that contradict one another are to be replaced by the
+        nearest ones that do not.
     """
 
     name: ModelName
@@ -52,6 +69,12 @@ class RatesModel:
     second_volatility: float | None = None
     factor_correlation: float | None = None
     risk_price: float = 0.0
+    second_risk_price: float = 0.0
+    inflation_mean_reversion: float | None = None
+    inflation_volatility: float | None = None
+    inflation_rate_correlation: float | None = None
+    inflation_risk_price: float = 0.0
+    mend_correlation: bool = False
 
 
 @dataclass(frozen=True, eq=False)

@@ -22,8 +22,11 @@ from typing import TypeVar, cast
 import numpy as np
 
 from desk.book.arrays import FloatArray
+from desk.rates.risky import RiskyMarket
+from desk.rates.risky_walk import GaussianMarketWalk, IndependentMarketWalk
 from desk.rates.short_rate import Walk
 from desk.scenarios.drawn_model import DrawnModel
+from desk.scenarios.given import GivenMarketWalk, GivenRates
 from desk.scenarios.sampling import Replicates
 
 __all__ = ["BLOCK_PATHS", "GENERATOR", "Block", "Crew", "Paths", "Plan", "block_generator", "default_threads"]
@@ -101,7 +104,7 @@ class Plan:
 
     @cached_property
     def index_offset(self) -> FloatArray:
-        """What is added to the integral of the inflation factor to give ``ln I(t)/I(0)``, shape (steps + 1,)."""
+        """What is added to the integral of the inflation factor to give ``ln I/I(0)``, shape (steps + 1,)."""
         law = None if self.market is None else self.market.index
         return np.zeros(self.steps + 1) if law is None else law.offset(self.time)
 
@@ -156,12 +159,7 @@ class Plan:
         size = BLOCK_PATHS if self.replicates is None else columns.stop - columns.start
         if self.market is None:
             return self.model.walk(step, size, self.generator(index), real_world=self.real_world)
-        others = None
-        if self.replicates is not None:
-            others = block_generator(self.seed, index).spawn(1 + self.market.asset_count)
-        return self.market.walk(
-            step, size, self.generator(index), real_world=self.real_world, others=others
-        )
+        return self.market.walk(step, size, self.generator(index), real_world=self.real_world)
 
     def rounds(self, nodes: Sequence[int], *, quantities: int = 2) -> Iterator[Sequence[int]]:
         """The nodes in groups whose samples, of so many quantities, fit into a modest memory."""
@@ -216,23 +214,17 @@ class Block:
     def __init__(self, plan: Plan, index: int) -> None:
         self._plan = plan
         self.columns = plan.columns(index)
-        self._walk = plan.walk(index)
-        width = self.columns.stop - self.columns.start
-        walk = self._walk
+        self._walk = walk = plan.walk(index)
+        width: int = self.columns.stop - self.columns.start
         state = walk.state[:, :width]
-        inflates = plan.market is not None and plan.market.index is not None
+        factors: FloatArray = state
+        excess: FloatArray = np.empty((0, width))
+        integral: FloatArray = np.empty(0)
         if isinstance(walk, (GaussianMarketWalk, IndependentMarketWalk, GivenMarketWalk)):
-            factors, excess, index = walk.factors, walk.excess, walk.inflation_integral
-        else:
-            factors, excess, index = walk.state, np.empty((0, width)), np.empty(0)
-        self._paths = Paths(
-            self.columns,
-            state,
-            walk.integral[:width],
-            factors[:, :width],
-            excess[:, :width],
-            index[:width] if inflates else np.empty(0),
-        )
+            factors, excess = walk.factors[:, :width], walk.excess[:, :width]
+            if plan.market is not None and plan.market.index is not None:
+                integral = walk.inflation_integral[:width]
+        self._paths = Paths(self.columns, state, walk.integral[:width], factors, excess, integral)
         self._step = 0
 
     def advance(

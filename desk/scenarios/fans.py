@@ -9,7 +9,7 @@ from functools import partial
 import numpy as np
 
 from desk.book.arrays import FloatArray, owned_floats
-from desk.rates.short_rate import ShortRateModel
+from desk.scenarios.drawn_model import DrawnModel
 from desk.scenarios.draws import Block, Crew, Plan, default_threads
 from desk.scenarios.summaries import sorted_quantile
 
@@ -38,7 +38,7 @@ class Fan:
 
 
 def percentile_fan(
-    model: ShortRateModel,
+    model: DrawnModel,
     *,
     paths: int,
     steps_per_year: int,
@@ -55,7 +55,7 @@ def percentile_fan(
 
     Parameters
     ----------
-    model : ShortRateModel
+    model : DrawnModel
     paths, steps_per_year, steps, seed : int
     levels : sequence of float
         Between 0 and 100.

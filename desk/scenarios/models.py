@@ -5,18 +5,31 @@ from __future__ import annotations
 import math
 
 from desk.book import Book, ModelName, RatesModel
-from desk.rates.gaussian import gaussian_2, ho_lee, hull_white, vasicek
-from desk.rates.short_rate import ShortRateModel
+from desk.rates.black_karasinski import BlackKarasinskiRates
+from desk.rates.gaussian import GaussianRates, RateFactor, ho_lee, hull_white, vasicek
 from desk.rates.square_root import SquareRootRates
+from desk.scenarios.drawn_model import DrawnModel
+from desk.scenarios.given import GivenRates
 
 __all__ = ["rate_model"]
 
 
-def rate_model(book: Book) -> ShortRateModel:
+# Steps a year on which the lognormal model is worked out, at least.
+_LEAST_STEPS = 12
+
+
+def rate_model(book: Book, *, last_flow: float = 0.0) -> DrawnModel:
     """The short-rate model of a book.
 
     Vasicek and Cox-Ingersoll-Ross (``cir``) make their own curve; the other models are fitted to the curve of
     the book's basis.
+
+    Parameters
+    ----------
+    book : Book
+    last_flow : float
+        When the last flow that is to be valued falls due [years]: the lognormal model is worked out up to it,
+        or up to the horizon of the run where that is later.
 
     Raises
     ------
@@ -41,14 +54,18 @@ def rate_model(book: Book) -> ShortRateModel:
                 risk_price=risk_price,
             )
         case ModelName.GAUSSIAN_2:
-            return gaussian_2(
+            correlation = _Item(stated, "factor_correlation", least=-1.0, most=1.0).value()
+            return GaussianRates(
                 book.basis.curve,
-                mean_reversion=speed.value(),
-                volatility=volatility.value(),
-                second_mean_reversion=_Item(stated, "second_mean_reversion", least=0.0).value(),
-                second_volatility=_Item(stated, "second_volatility", least=0.0).value(),
-                factor_correlation=_Item(stated, "factor_correlation", least=-1.0, most=1.0).value(),
-                risk_price=risk_price,
+                (
+                    RateFactor(speed.value(), volatility.value(), risk_price),
+                    RateFactor(
+                        _Item(stated, "second_mean_reversion", least=0.0).value(),
+                        _Item(stated, "second_volatility", least=0.0).value(),
+                        _Item(stated, "second_risk_price").value(),
+                    ),
+                ),
+                [[1.0, correlation], [correlation, 1.0]],
             )
         case ModelName.VASICEK:
             return vasicek(
@@ -67,6 +84,21 @@ def rate_model(book: Book) -> ShortRateModel:
                 curve=book.basis.curve if stated.name is ModelName.CIR_SHIFTED else None,
                 risk_price=risk_price,
             )
+        case ModelName.BLACK_KARASINSKI:
+            yearly = book.run.steps_per_year
+            return BlackKarasinskiRates(
+                book.basis.curve,
+                mean_reversion=speed.value(),
+                volatility=volatility.value(),
+                horizon=max(float(book.run.horizon_years), last_flow),
+                # Every step of the run is a whole number of the model's.
+                steps_per_year=yearly * -(-_LEAST_STEPS // yearly),
+                risk_price=risk_price,
+            )
+        case ModelName.OUTSIDE:
+            if book.scenario_set is None:
+                raise ValueError("the sheet Scenario set is missing: the outside model is the set it holds")
+            return GivenRates(book.scenario_set, book.basis.curve)
 
 
 class _Item:
@@ -100,4 +132,5 @@ _TITLES = {
     "second_volatility": "Second volatility",
     "factor_correlation": "Factor correlation",
     "risk_price": "Risk price",
+    "second_risk_price": "Second risk price",
 }

@@ -10,9 +10,8 @@ from __future__ import annotations
 import numpy as np
 
 from desk.book import PricedFlows
-from desk.book.arrays import FloatArray
-from desk.scenarios.draws import Plan
-from desk.scenarios.surfaces import Surface, fit_surface
+from desk.scenarios.drawn_model import Worth, paying_steps, worth_by_step
+from desk.scenarios.draws import Paths, Plan
 
 __all__ = ["PathValues", "curve_value"]
 
@@ -40,7 +39,7 @@ class PathValues:
 
     def __init__(self, plan: Plan, sides: tuple[PricedFlows, ...]) -> None:
         self._plan = plan
-        self._visits: dict[int, list[tuple[int, Surface]]] = {}
+        self._visits: dict[int, list[tuple[int, Worth]]] = {}
         self.value = np.zeros((len(sides), plan.paths))
         self.surface_error = 0.0
         for side, flows in enumerate(sides):
@@ -51,32 +50,27 @@ class PathValues:
         plan, model = self._plan, self._plan.model
         times, place = np.unique(flows.time, return_inverse=True)
         amounts = np.bincount(place, weights=flows.spread_discounted, minlength=times.size)
-        steps = np.searchsorted(plan.time, times, side="right") - 1
+        steps = paying_steps(model, plan.time, times)
         # Before the first step the rate is known: these values are those of the curve.
         early = steps == 0
         self.value[side] = float(np.sum(amounts[early] * model.curve.discount(times[early])))
         times, amounts, steps = times[~early], amounts[~early], steps[~early]
         if times.size == 0:
             return
-        level, exposure = model.bond_terms(plan.time[steps], times)
-        weight = amounts * np.exp(level)
-        starts = np.flatnonzero(np.diff(steps, prepend=-1))
-        for start, end in zip(starts, [*starts[1:], steps.size], strict=True):
-            step = int(steps[start])
-            low, high = model.state_range(float(plan.time[step]), real_world=plan.real_world)
-            surface = fit_surface(weight[start:end], exposure[start:end], low, high)
-            self.surface_error = max(self.surface_error, surface.error)
-            self._visits.setdefault(step, []).append((side, surface))
+        found = worth_by_step(model, plan.time, steps, times, amounts, real_world=plan.real_world)
+        for step, worth in found:
+            self.surface_error = max(self.surface_error, worth.error)
+            self._visits.setdefault(step, []).append((side, worth))
 
-    def visit(self, step: int, state: FloatArray, integral: FloatArray, columns: slice) -> None:
+    def visit(self, step: int, paths: Paths) -> None:
         """Add what falls due from this step to the next; see `desk.scenarios.draws.Block.advance`."""
         due = self._visits.get(step)
         if due is None:
             return
-        discount = integral + self._plan.account_offset[step]
+        discount = paths.integral + self._plan.account_offset[step]
         np.negative(discount, out=discount)
         np.exp(discount, out=discount)
-        for side, surface in due:
-            worth = surface(state)
-            worth *= discount
-            self.value[side, columns] += worth
+        for side, worth in due:
+            value = worth(paths.state)
+            value *= discount
+            self.value[side, paths.columns] += value

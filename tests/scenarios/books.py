@@ -7,8 +7,11 @@ from datetime import date
 import numpy as np
 
 from desk.book import Basis, Book, FlowTable, Measure, ModelName, PricedFlows, RatesModel, Run, Side
+from desk.rates.short_rate import ShortRateModel
+from desk.scenarios.drawn_model import affine
+from desk.scenarios.models import rate_model
 
-__all__ = ["ALL_MODELS", "NO_FLOWS", "assets", "book", "liabilities", "priced"]
+__all__ = ["AFFINE", "ALL_MODELS", "NO_FLOWS", "affine_model", "assets", "book", "liabilities", "priced"]
 
 BASIS = Basis(
     date(2026, 1, 1),
@@ -55,7 +58,20 @@ ALL_MODELS: dict[ModelName, RatesModel] = {
         starting_rate=0.02,
         risk_price=0.4,
     ),
+    ModelName.BLACK_KARASINSKI: RatesModel(
+        ModelName.BLACK_KARASINSKI, mean_reversion=0.08, volatility=0.22, risk_price=0.2
+    ),
 }
+
+
+AFFINE = tuple(name for name in ALL_MODELS if name is not ModelName.BLACK_KARASINSKI)
+
+
+def affine_model(settings: Book) -> ShortRateModel:
+    """The model of a book that has bonds in closed form."""
+    model = affine(rate_model(settings))
+    assert model is not None
+    return model
 
 
 def book(

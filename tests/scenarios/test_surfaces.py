@@ -6,9 +6,8 @@ import numpy as np
 import pytest
 
 from desk.book import ModelName
-from desk.scenarios.models import rate_model
 from desk.scenarios.surfaces import Surface, fit_surface, flow_surfaces
-from tests.scenarios.books import ALL_MODELS, book
+from tests.scenarios.books import AFFINE, ALL_MODELS, affine_model, book
 
 
 def direct(weight: np.ndarray, exposure: np.ndarray, state: np.ndarray) -> np.ndarray:
@@ -19,10 +18,10 @@ def gross(surface: Surface, state: np.ndarray) -> np.ndarray:
     return direct(np.abs(surface.weight), surface.exposure, state)
 
 
-@pytest.mark.parametrize("name", ALL_MODELS)
+@pytest.mark.parametrize("name", AFFINE)
 @pytest.mark.parametrize("time", [0.25, 5.0, 40.0])
 def test_flows_of_every_model(name: ModelName, time: float) -> None:
-    model = rate_model(book(ALL_MODELS[name]))
+    model = affine_model(book(ALL_MODELS[name]))
     due = np.arange(1, 721) / 12.0
     amount = np.linspace(1.0, 4.0, 720)
     low, high = model.state_range(time)
@@ -87,7 +86,7 @@ def test_the_degree_grows_with_the_range_and_the_error_does_not(halves: float) -
 
 
 def test_nodes_with_few_flows_or_none() -> None:
-    model = rate_model(book(ALL_MODELS[ModelName.HULL_WHITE]))
+    model = affine_model(book(ALL_MODELS[ModelName.HULL_WHITE]))
     state = np.array([[-0.01, 0.0, 0.02]])
     for due in (np.zeros(0), np.array([1.0]), np.arange(1.0, 7.0)):
         surfaces = flow_surfaces(

@@ -1,0 +1,169 @@
+"""What a run of a book draws: its model, what stands beside it, its nodes, and whether it fits in memory."""
+
+from __future__ import annotations
+
+import math
+from dataclasses import dataclass
+
+import numpy as np
+
+from desk.book import Book, Fault, Measure, PricedFlows, Severity
+from desk.rates.black_karasinski import BlackKarasinskiRates
+from desk.rates.correlation import MendedCorrelation
+from desk.scenarios.draws import BLOCK_PATHS, Plan
+from desk.scenarios.given import GivenRates
+from desk.scenarios.market import beside_rates
+from desk.scenarios.models import rate_model
+from desk.scenarios.sampling import replicates_of, sampling_faults
+
+__all__ = ["MOST_BYTES", "PlannedRun", "check_fits", "planned_run", "run_bytes"]
+
+MOST_BYTES = 2_000_000_000
+"""What a run may take of an office machine's memory."""
+
+# Numbers a path: present values of both sides and the surplus, and what summing up a node takes beside the
+# samples themselves, as measured.
+_SUMMED = 7
+_SLACK = 1e-9
+
+
+@dataclass(frozen=True, eq=False)
+class PlannedRun:
+    """A run that is to be drawn.
+
+    Attributes
+    ----------
+    plan : Plan
+    mended : MendedCorrelation or None
+        See `desk.scenarios.market.Beside`.
+    faults : tuple of Fault
+        What cannot be drawn as stated, all mild.
+    """
+
+    plan: Plan
+    mended: MendedCorrelation | None
+    faults: tuple[Fault, ...]
+
+
+def planned_run(book: Book, *sides: PricedFlows) -> PlannedRun:
+    """What a run of a book draws.
+
+    Parameters
+    ----------
+    book : Book
+    sides : PricedFlows
+        The flows that are to be valued: some models must know how far they reach.
+
+    Raises
+    ------
+    ValueError
+        If the book has no rates model, an item of it, of the basis or of the risky assets will not do, or
+        the run would not fit into memory.
+    """
+    run = book.run
+    last = max((float(flows.time.max()) for flows in sides if len(flows)), default=0.0)
+    model = rate_model(book, last_flow=last)
+    beside = beside_rates(book, model)
+    faults = list(beside.faults)
+    if isinstance(model, GivenRates):
+        reported = _reported(model, run.horizon_years)
+        plan = Plan(
+            model=model,
+            paths=min(run.paths, model.paths),
+            steps_per_year=model.mean_steps_per_year,
+            steps=model.nodes.size - 1,
+            seed=run.seed,
+            real_world=run.measure is Measure.REAL_WORLD,
+            market=beside.market,
+            nodes=model.nodes,
+            reported=reported,
+        )
+        faults += _set_faults(model, book)
+    else:
+        plan = Plan(
+            model=model,
+            paths=run.drawn_paths,
+            steps_per_year=run.steps_per_year,
+            steps=run.horizon_years * run.steps_per_year,
+            seed=run.seed,
+            real_world=run.measure is Measure.REAL_WORLD,
+            replicates=replicates_of(run, block_paths=BLOCK_PATHS),
+            market=beside.market,
+        )
+        faults += sampling_faults(run, model)
+    check_fits(plan)
+    return PlannedRun(plan, beside.mended, tuple(faults))
+
+
+def _reported(model: GivenRates, horizon: int) -> tuple[int, ...]:
+    """The steps of a set that are reported: whole years where it has them all, else every node."""
+    end = min(float(horizon), float(model.nodes[-1]))
+    years = np.arange(1.0, math.floor(end + _SLACK) + 1.0)
+    near = np.minimum(np.searchsorted(model.nodes, years - _SLACK), model.nodes.size - 1)
+    if years.size and np.all(np.abs(model.nodes[near] - years) <= _SLACK):
+        return tuple(near.tolist())
+    inside = np.flatnonzero(model.nodes <= horizon + _SLACK)[1:]
+    return tuple(inside.tolist()) or (1,)
+
+
+def _set_faults(model: GivenRates, book: Book) -> list[Fault]:
+    """Where a set does not reach as far as the run asks."""
+    faults = []
+    if model.paths < book.run.paths:
+        faults.append(
+            Fault(
+                found=f"the set holds {model.paths:,} paths, fewer than the {book.run.paths:,} of the run",
+                expected="as many paths as the run takes",
+                mend="Set Paths to those of the set, or leave it: all paths of the set are taken.",
+                sheet="Scenario set",
+                severity=Severity.MILD,
+            )
+        )
+    if model.nodes[-1] < book.run.horizon_years - _SLACK:
+        faults.append(
+            Fault(
+                found=f"the set ends after {model.nodes[-1]:g} years, before the horizon of "
+                f"{book.run.horizon_years} years",
+                expected="nodes up to the horizon",
+                mend="Add nodes, or leave it: later flows are discounted from the last node on by the "
+                "book's curve.",
+                sheet="Scenario set",
+                severity=Severity.MILD,
+            )
+        )
+    return faults
+
+
+def run_bytes(plan: Plan) -> int:
+    """About how much memory a run takes beside the book [bytes].
+
+    All paths are kept where they are, with the samples of one node and the present values; horizon and steps
+    a year do not count.
+    """
+    return plan.paths * 8 * _numbers(plan)
+
+
+def _numbers(plan: Plan) -> int:
+    """Numbers a path."""
+    beside = 0
+    if plan.market is not None:
+        inflates = plan.market.index is not None
+        # Where each is, and its sample; the total of the assets, and a collar's increase and growth.
+        beside = 2 * plan.market.asset_count + 2 + 5 * inflates
+    walked = plan.model.factor_count + 1 + 2 * isinstance(plan.model, BlackKarasinskiRates)
+    return walked + 2 + _SUMMED + beside
+
+
+def check_fits(plan: Plan, *, most: int = MOST_BYTES) -> None:
+    """Raise ValueError, saying what would fit, where a run would take more memory than `most` bytes."""
+    needed = run_bytes(plan)
+    if needed <= most:
+        return
+    fits = most // (8 * _numbers(plan))
+    digits = 10 ** max(0, len(str(fits)) - 2)
+    assets = 0 if plan.market is None else plan.market.asset_count
+    beside = f" with {assets} risky assets" if assets > 1 else " with a risky asset" if assets else ""
+    raise ValueError(
+        f"{plan.paths:,} paths{beside} would take about {needed / 1e9:.1f} GB of memory, more than the "
+        f"{most / 1e9:.1f} GB that a run may take: set Paths to at most {fits // digits * digits:,}"
+    )
