@@ -76,6 +76,8 @@ class HistoryFit:
     tests : ResidualTests
     remarks : tuple of str
         What a user should know before relying on it, each a sentence; the verdict first.
+    is_clear_of_zero : bool
+        Whether the mean reversion can be told from 0 at 5 %.
     """
 
     model: str
@@ -103,6 +105,7 @@ class HistoryFit:
     tests: ResidualTests
     remarks: tuple[str, ...]
     risk_price: float = 0.0
+    is_clear_of_zero: bool = True
 
 
 def mean_reversion_bias(mean_reversion: float, *, step: float, steps: int) -> float:
@@ -205,6 +208,7 @@ def history_fit_record(
         corrected_mean_reversion=max(speed - bias, 0.0) if math.isfinite(bias) else speed,
         tests=tests,
         remarks=(*verdict, *remarks, *history.remarks),
+        is_clear_of_zero=not (at_bound or slow),
     )
 
 
