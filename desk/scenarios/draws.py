@@ -27,6 +27,7 @@ from desk.rates.risky_walk import GaussianMarketWalk, IndependentMarketWalk
 from desk.rates.short_rate import Walk
 from desk.scenarios.drawn_model import DrawnModel
 from desk.scenarios.given import GivenMarketWalk, GivenRates
+from desk.scenarios.normals import NormalSource
 from desk.scenarios.sampling import Replicates
 
 __all__ = ["BLOCK_PATHS", "GENERATOR", "Block", "Crew", "Paths", "Plan", "block_generator", "default_threads"]
@@ -129,15 +130,11 @@ class Plan:
             return self.replicates.columns(index)
         return slice(index * BLOCK_PATHS, min((index + 1) * BLOCK_PATHS, self.paths))
 
-    def generator(self, index: int) -> np.random.Generator:
-        """What a block draws from."""
+    def generator(self, index: int) -> np.random.Generator | NormalSource:
+        """What a block draws from; either offers what walks ask of a generator, by which they are typed."""
         if self.replicates is None:
             return block_generator(self.seed, index)
-        source = self.replicates.source(
-            index, self.model, steps_per_year=self.steps_per_year, steps=self.steps
-        )
-        # It offers what walks ask of a generator, by which they are typed.
-        return cast(np.random.Generator, source)
+        return self.replicates.source(index, self.model, steps_per_year=self.steps_per_year, steps=self.steps)
 
     def walk(self, index: int) -> Walk | GaussianMarketWalk | IndependentMarketWalk:
         """The paths of a block, at time 0."""
@@ -158,8 +155,15 @@ class Plan:
         columns = self.columns(index)
         size = BLOCK_PATHS if self.replicates is None else columns.stop - columns.start
         if self.market is None:
-            return self.model.walk(step, size, self.generator(index), real_world=self.real_world)
-        return self.market.walk(step, size, self.generator(index), real_world=self.real_world)
+            generator = cast(np.random.Generator, self.generator(index))
+            return self.model.walk(step, size, generator, real_world=self.real_world)
+        source, others = self.generator(index), None
+        if isinstance(source, NormalSource):
+            sources = source.beside(self.market.asset_count, inflates=self.market.index is not None)
+            others = cast(list[np.random.Generator], sources)
+        return self.market.walk(
+            step, size, cast(np.random.Generator, source), real_world=self.real_world, others=others
+        )
 
     def rounds(self, nodes: Sequence[int], *, quantities: int = 2) -> Iterator[Sequence[int]]:
         """The nodes in groups whose samples, of so many quantities, fit into a modest memory."""

@@ -34,7 +34,7 @@ from desk.book import Bridge, Sampling
 from desk.book.arrays import FloatArray
 from desk.scenarios.normals_directions import directions
 
-__all__ = ["MOST_DIMENSIONS", "BlockNormals", "NormalSource", "Segment", "sobol_directions"]
+__all__ = ["MOST_DIMENSIONS", "BlockNormals", "NormalSource", "PairedSource", "Segment", "sobol_directions"]
 
 MOST_DIMENSIONS = 21_201
 """Dimensions for which Joe and Kuo's direction numbers are published."""
@@ -106,6 +106,7 @@ class BlockNormals:
         self.segments, self.sampling, self.bridge, self.matching = segments, sampling, bridge, matching
         self._seed, self._block = seed, block
         self._sources: list[NormalSource] = []
+        self._coefficients: dict[int, FloatArray] = {}
 
     def source(self, rows: int, length: int, *, leading: int | None = None) -> NormalSource:
         """A further source; all that a block needs are asked for before the first number is drawn.
@@ -131,10 +132,16 @@ class BlockNormals:
 
     def coefficients(self, number: int) -> FloatArray:
         """Normals from Sobol points for the directions of a source, shape (rows, directions, width)."""
+        if not self._coefficients:
+            self._draw_coefficients()
+        return self._coefficients[number]
+
+    def _draw_coefficients(self) -> None:
         total = sum(source.rows for source in self._sources)
         places: list[tuple[float, int, int, int]] = []
         for source in self._sources:
             count = sobol_directions(source.length, total)
+            self._coefficients[source.number] = np.empty((source.rows, count, self.width))
             # The part of the integral over a step that the ends do not tell carries 1/(4 n²) of what the
             # ends do, which is what the directions from about √(2n) on carry.
             later = (2.0 * source.length) ** 0.5
@@ -144,17 +151,13 @@ class BlockNormals:
                 for direction in range(count)
             ]
         places.sort()
-        mine = [(place, entry[2:]) for place, entry in enumerate(places) if entry[1] == number]
-        own = self._sources[number]
-        found = np.empty((own.rows, sobol_directions(own.length, total), self.width))
         for segment in self.segments:
-            points = self._points(segment, len(places), [place for place, _ in mine])
-            for normals, (_, (row, direction)) in zip(points, mine, strict=True):
-                found[row, direction, segment.columns] = normals
-        return found
+            points = self._points(segment, len(places))
+            for normals, (_, number, row, direction) in zip(points, places, strict=True):
+                self._coefficients[number][row, direction, segment.columns] = normals
 
-    def _points(self, segment: Segment, dimensions: int, wanted: list[int]) -> FloatArray:
-        """Normals along the wanted dimensions, shape (len(wanted), paths of the segment)."""
+    def _points(self, segment: Segment, dimensions: int) -> FloatArray:
+        """Normals from Sobol points, shape (dimensions, paths of the segment)."""
         from scipy.special import ndtri
         from scipy.stats import qmc
 
@@ -170,7 +173,7 @@ class BlockNormals:
         else:
             # A first call for a number that is no power of two would warn of lost balance.
             points = np.concatenate([engine.random(1), engine.random(count - 1)])
-        return np.asarray(ndtri(np.ascontiguousarray(points.T[wanted]) + _HALF_CELL))
+        return np.asarray(ndtri(np.ascontiguousarray(points.T) + _HALF_CELL))
 
 
 class NormalSource:
@@ -203,9 +206,12 @@ class NormalSource:
             raise AttributeError(name)
         return getattr(self._rng, name)
 
-    def spawn(self, count: int) -> list[NormalSource]:
-        """Sources for what is drawn beside, one row a step each."""
-        return [self._block.source(1, self._block.steps) for _ in range(count)]
+    def beside(self, assets: int, *, inflates: bool) -> list[NormalSource | PairedSource]:
+        """Sources for what is drawn beside the rates: inflation and each of so many risky assets."""
+        steps, block = self._block.steps, self._block
+        rows = 1 if inflates else 0
+        inflation = PairedSource(block.source(rows, steps), block.source(rows, steps))
+        return [inflation, *(block.source(1, steps) for _ in range(assets))]
 
     def standard_normal(self, size: Any = None, *, out: FloatArray | None = None) -> Any:
         """The next numbers, into `out`: step by step, within a step row by row, within a row path by path."""
@@ -276,6 +282,19 @@ class NormalSource:
             part = basis[:, start : start + len(drawn)]
             for row in range(self.rows):
                 self._moved[row] -= np.einsum("dk,ks->ds", part, drawn[:, row])
+
+
+class PairedSource:
+    """Two sources that are drawn from in turn: those of a factor and of its integral."""
+
+    def __init__(self, first: NormalSource, second: NormalSource) -> None:
+        self._turn, self._other = first, second
+
+    def standard_normal(self, *, out: FloatArray) -> FloatArray:
+        """The next numbers of the source whose turn it is, into `out`."""
+        self._turn.standard_normal(out=out)
+        self._turn, self._other = self._other, self._turn
+        return out
 
 
 def _match(rows: FloatArray) -> None:

@@ -151,7 +151,13 @@ def _numbers(plan: Plan) -> int:
         # Where each is, and its sample; the total of the assets, and a collar's increase and growth.
         beside = 2 * plan.market.asset_count + 2 + 5 * inflates
     walked = plan.model.factor_count + 1 + 2 * isinstance(plan.model, BlackKarasinskiRates)
-    return walked + 2 + _SUMMED + beside
+    sobol = 0
+    if plan.replicates is not None:
+        rows = plan.model.factor_count + 1
+        if plan.market is not None:
+            rows += plan.market.asset_count + 2 * (plan.market.index is not None)
+        sobol = plan.replicates.kept_numbers(plan.steps, rows)
+    return walked + 2 + _SUMMED + beside + sobol
 
 
 def check_fits(plan: Plan, *, most: int = MOST_BYTES) -> None:

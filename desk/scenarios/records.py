@@ -6,6 +6,7 @@ from dataclasses import dataclass
 
 from desk.book import Fault, Measure, Provenance
 from desk.book.arrays import FloatArray, IntArray
+from desk.scenarios.sampling_records import Convergence, SamplingGain
 
 __all__ = ["ClosedForm", "Distribution", "Histogram", "NodeSummary", "Repricing", "Simulation"]
 
@@ -37,9 +38,13 @@ class NodeSummary:
     levels : tuple of float, length m
         Percentiles.
     percentile, percentile_low, percentile_high : ndarray, shape (n, m)
-        Order statistics, and the 95 % interval of each from order statistics.
+        Order statistics, and the 95 % interval of each: from order statistics, or from the replicates of a
+        variance-reduced run.
     histograms : tuple of Histogram, length n
         One a year.
+    percentile_se : ndarray, shape (n, m)
+    tail_mean, tail_mean_se : ndarray, shape (n, m)
+        Mean of the values at and below each percentile under 50, at and above each other one.
     """
 
     year: FloatArray
@@ -52,6 +57,9 @@ class NodeSummary:
     percentile_low: FloatArray
     percentile_high: FloatArray
     histograms: tuple[Histogram, ...]
+    percentile_se: FloatArray
+    tail_mean: FloatArray
+    tail_mean_se: FloatArray
 
 
 @dataclass(frozen=True)
@@ -65,6 +73,8 @@ class ClosedForm:
     mean, sd : ndarray
         Of ``R_t``.
     percentile : ndarray, shape (n, m)
+    tail_mean : ndarray, shape (n, m)
+        As in `NodeSummary`.
     """
 
     log_mean: FloatArray
@@ -72,6 +82,7 @@ class ClosedForm:
     mean: FloatArray
     sd: FloatArray
     percentile: FloatArray
+    tail_mean: FloatArray
 
 
 @dataclass(frozen=True)
@@ -113,6 +124,8 @@ class Distribution:
     below_zero, below_zero_se : float
         Share of paths with a value below 0.
     histogram : Histogram
+    percentile_se, tail_mean, tail_mean_se : ndarray, shape (m,)
+        As in `NodeSummary`.
     """
 
     name: str
@@ -127,6 +140,9 @@ class Distribution:
     below_zero: float
     below_zero_se: float
     histogram: Histogram
+    percentile_se: FloatArray
+    tail_mean: FloatArray
+    tail_mean_se: FloatArray
 
 
 @dataclass(frozen=True)
@@ -152,6 +168,12 @@ class Simulation:
         ``R_t`` of the first paths at the reported years, for pictures.
     faults : tuple of Fault
     provenance : Provenance
+    convergence : tuple of Convergence
+        The headline figures after part of the paths.
+    gains : tuple of SamplingGain
+        Of a variance-reduced run, for the same figures; empty for a plain one.
+    replicates : int
+        Independent ones among which the paths are shared equally; 1 for a plain run.
     """
 
     model: str
@@ -168,3 +190,6 @@ class Simulation:
     sample_paths: FloatArray
     faults: tuple[Fault, ...]
     provenance: Provenance
+    convergence: tuple[Convergence, ...] = ()
+    gains: tuple[SamplingGain, ...] = ()
+    replicates: int = 1

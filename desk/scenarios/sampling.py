@@ -15,7 +15,7 @@ import numpy as np
 from desk.book import Bridge, Fault, Run, Sampling, Severity
 from desk.rates.black_karasinski import BlackKarasinskiRates
 from desk.rates.gaussian import GaussianRates
-from desk.scenarios.normals import BlockNormals, NormalSource, Segment
+from desk.scenarios.normals import BlockNormals, NormalSource, Segment, sobol_directions
 
 __all__ = ["Replicates", "replicates_of", "sampling_faults"]
 
@@ -81,6 +81,10 @@ class Replicates:
                 start - replicate * self.paths,
                 slice(start - columns.start, end - columns.start),
             )
+
+    def kept_numbers(self, steps: int, rows: int) -> int:
+        """Numbers a path that are kept from its beginning to its end, of so many rows of normals a step."""
+        return rows * sobol_directions(steps, rows) if self.sampling is Sampling.SOBOL else 0
 
     def source(self, index: int, model: object, *, steps_per_year: int, steps: int) -> NormalSource:
         """What a block's walk of the rates draws from, in place of a generator.

@@ -10,28 +10,22 @@ from functools import partial
 import numpy as np
 
 from desk import __version__
-from desk.book import Book, Fault, Measure, PricedFlows, Provenance, Severity
+from desk.book import Book, Fault, PricedFlows, Provenance, Run, Sampling, Severity
 from desk.book.arrays import FloatArray, owned_floats
+from desk.scenarios.convergence import converging, headline_figures, sampling_gain
 from desk.scenarios.draws import BLOCK_PATHS, GENERATOR, Block, Crew, Plan, default_threads
-from desk.scenarios.models import rate_model
 from desk.scenarios.pathwise import PathValues, curve_value
+from desk.scenarios.plans import planned_run
 from desk.scenarios.records import (
     ClosedForm,
     Distribution,
-    Histogram,
     NodeSummary,
     Repricing,
     Simulation,
 )
-from desk.scenarios.summaries import (
-    QUANTILE_RULE,
-    Moments,
-    histogram,
-    moments,
-    quantile_interval,
-    rank_interval,
-    sorted_quantile,
-)
+from desk.scenarios.replicates import Sample, Summing
+from desk.scenarios.sampling_records import Convergence, SamplingGain
+from desk.scenarios.summaries import QUANTILE_RULE, Moments
 
 __all__ = ["simulate"]
 
@@ -72,27 +66,20 @@ def simulate(
         If the book has no rates model, or an item of it or of the basis will not do.
     """
     run = book.run
-    model = rate_model(book)
-    plan = Plan(
-        model=model,
-        paths=run.paths,
-        steps_per_year=run.steps_per_year,
-        steps=run.horizon_years * run.steps_per_year,
-        seed=run.seed,
-        real_world=run.measure is Measure.REAL_WORLD,
-    )
+    planned = planned_run(book, assets, liabilities)
+    plan = planned.plan
     # Values too large for a float are reported as a fault, not as a warning.
     with np.errstate(over="ignore", invalid="ignore", under="ignore", divide="ignore"):
         values = PathValues(plan, (assets, liabilities))
         collected = _collect(plan, values, run.percentiles, progress, threads or default_threads())
-        year = np.arange(run.horizon_years + 1, dtype=np.float64)
+        year = plan.time[[0, *plan.reported_steps]]
         present_value = _present_values(plan, (assets, liabilities), collected.sides, run.percentiles)
         result = Simulation(
             model=str(book.rates_model.name) if book.rates_model is not None else "",
             measure=run.measure,
-            paths=run.paths,
-            steps_per_year=run.steps_per_year,
-            horizon_years=run.horizon_years,
+            paths=plan.paths,
+            steps_per_year=plan.steps_per_year,
+            horizon_years=math.ceil(year[-1]),
             seed=run.seed,
             savings_account=_node_summary(year, collected.accounts, run.percentiles),
             short_rate=_node_summary(year, collected.rates, run.percentiles),
@@ -100,13 +87,16 @@ def simulate(
             repricing=_repricing(plan, year, collected.discounts),
             present_value=present_value,
             sample_paths=owned_floats(np.exp(collected.shown)),
-            faults=_faults(run.horizon_years, (assets, liabilities), collected),
+            faults=(*planned.faults, *_faults(run.horizon_years, (assets, liabilities), collected)),
             provenance=Provenance(
                 book_digest=book.digest,
                 program_version=__version__,
                 settings=_settings(book, values.surface_error),
                 seed=run.seed,
             ),
+            convergence=tuple(collected.convergence),
+            gains=tuple(collected.gains),
+            replicates=1 if plan.replicates is None else plan.replicates.count,
         )
     if progress is not None:
         progress(1.0)
@@ -114,25 +104,16 @@ def simulate(
 
 
 @dataclass(frozen=True)
-class _Sample:
-    """One quantity at one node, summed up; the intervals hold one pair a level."""
-
-    moments: Moments
-    percentile: FloatArray
-    interval: tuple[tuple[float, float], ...]
-    histogram: Histogram
-    below_zero: float
-
-
-@dataclass(frozen=True)
 class _Collected:
     """Everything the paths are drawn for, by year from 0; `sides` holds assets, liabilities, surplus."""
 
-    accounts: list[_Sample]
-    rates: list[_Sample]
+    accounts: list[Sample]
+    rates: list[Sample]
     discounts: list[Moments]
-    sides: list[_Sample]
+    sides: list[Sample]
     shown: FloatArray
+    convergence: list[Convergence]
+    gains: list[SamplingGain]
 
 
 def _collect(
@@ -147,15 +128,16 @@ def _collect(
     Only the samples of the years in hand are kept, and the present values: memory does not grow with the
     horizon.
     """
-    years = plan.steps // plan.steps_per_year
-    nodes = range(plan.steps_per_year, plan.steps + 1, plan.steps_per_year)
+    nodes = plan.reported_steps
+    years = len(nodes)
     groups = list(plan.rounds(nodes))
     today = float(plan.model.curve.forward(0.0, 0.0))
-    accounts, rates = [_certain(1.0, levels, plan.paths)], [_certain(today, levels, plan.paths)]
+    replicates = 1 if plan.replicates is None else plan.replicates.count
+    summing_up = Summing(levels, plan.paths, replicates)
+    accounts, rates = [summing_up.certain(1.0)], [summing_up.certain(today)]
     discounts = [Moments(1.0, 0.0, 0.0, 0.0)]
     shown = np.zeros((min(_SHOWN, plan.paths), years + 1))
-    ranks = [rank_interval(plan.paths, level / 100.0) for level in levels]
-    sum_up = partial(_sum_up, levels=levels, ranks=ranks)
+    account_at_end = np.empty(plan.paths)
     drawing = float(plan.blocks * plan.steps)
     summing = _SUMMING * drawing / (years + 1)
     with Crew(threads, drawing * (1.0 + _SUMMING), progress) as crew:
@@ -165,14 +147,25 @@ def _collect(
             log_account, rate = buffer[0, : len(group)], buffer[1, : len(group)]
             crew.grouped(blocks, partial(_advance, group, log_account, rate, values, crew))
             shown[:, len(accounts) : len(accounts) + len(group)] = log_account[:, : len(shown)].T
-            found = crew.run([partial(_sum_up_account, row, sum_up) for row in log_account])
+            if group is groups[-1]:
+                np.exp(log_account[-1], out=account_at_end)
+            found = crew.run([partial(summing_up.account, row) for row in log_account])
             accounts += [sample for sample, _ in found]
             discounts += [discount for _, discount in found]
-            rates += crew.run([partial(sum_up, row) for row in rate])
+            rates += crew.run([partial(summing_up.sample, row) for row in rate])
             crew.add(summing * len(group))
+        if nodes[-1] < plan.steps:
+            # A set may go on beyond what is reported: its rates discount flows until its end.
+            crew.grouped(blocks, partial(_finish, plan.steps, values, crew))
         surplus = values.value[0] - values.value[1]
-        sides = crew.run([partial(sum_up, row) for row in (*values.value, surplus)])
-    return _Collected(accounts, rates, discounts, sides, shown)
+        figures = headline_figures(account_at_end, (*values.value, surplus))
+        matched = plan.replicates is not None and plan.replicates.matching
+        part = partial(converging, replicates=replicates, is_matched=matched)
+        convergence = crew.run([partial(part, figure) for figure in figures])
+        gain = partial(sampling_gain, replicates=replicates)
+        gains = crew.run([partial(gain, figure) for figure in figures]) if replicates > 1 else []
+        sides = crew.run([partial(summing_up.sample, row) for row in (*values.value, surplus)])
+    return _Collected(accounts, rates, discounts, sides, shown, convergence, gains)
 
 
 def _advance(
@@ -186,38 +179,12 @@ def _advance(
     block.advance(group, log_account, rate, visit=values.visit, crew=crew)
 
 
-def _sum_up(row: FloatArray, *, levels: Sequence[float], ranks: Sequence[tuple[int, int]]) -> _Sample:
-    """Sum up one sample; `row` is left sorted."""
-    found = moments(row)
-    row.sort()
-    return _Sample(
-        moments=found,
-        percentile=sorted_quantile(row, [level / 100.0 for level in levels]),
-        interval=tuple(quantile_interval(row, pair) for pair in ranks),
-        histogram=histogram(row),
-        below_zero=float(np.searchsorted(row, 0.0, side="left")) / row.size,
-    )
+def _finish(step: int, values: PathValues, crew: Crew, block: Block) -> None:
+    nothing = np.empty((0, 0))
+    block.advance((), nothing, nothing, visit=values.visit, crew=crew, until=step)
 
 
-def _sum_up_account(row: FloatArray, sum_up: Callable[[FloatArray], _Sample]) -> tuple[_Sample, Moments]:
-    """Sum up ``R_t`` and ``1/R_t`` from ``ln R_t``; `row` is overwritten."""
-    discount = moments(np.exp(-row))
-    np.exp(row, out=row)
-    return sum_up(row), discount
-
-
-def _certain(value: float, levels: Sequence[float], paths: int) -> _Sample:
-    """The sample of a quantity that is known."""
-    return _Sample(
-        moments=Moments(value, 0.0, 0.0, 0.0),
-        percentile=np.full(len(levels), value),
-        interval=((value, value),) * len(levels),
-        histogram=histogram(np.full(paths, value)),
-        below_zero=float(value < 0.0),
-    )
-
-
-def _node_summary(year: FloatArray, samples: list[_Sample], levels: tuple[float, ...]) -> NodeSummary:
+def _node_summary(year: FloatArray, samples: list[Sample], levels: tuple[float, ...]) -> NodeSummary:
     intervals = np.array([sample.interval for sample in samples])
     return NodeSummary(
         year=owned_floats(year),
@@ -230,24 +197,33 @@ def _node_summary(year: FloatArray, samples: list[_Sample], levels: tuple[float,
         percentile_low=owned_floats(intervals[:, :, 0]),
         percentile_high=owned_floats(intervals[:, :, 1]),
         histograms=tuple(sample.histogram for sample in samples),
+        percentile_se=owned_floats([sample.percentile_se for sample in samples]),
+        tail_mean=owned_floats([sample.tail_mean for sample in samples]),
+        tail_mean_se=owned_floats([sample.tail_mean_se for sample in samples]),
     )
 
 
 def _closed_form(plan: Plan, year: FloatArray, levels: tuple[float, ...]) -> ClosedForm | None:
-    from scipy.special import ndtri
+    from scipy.special import ndtr, ndtri
 
     law = plan.model.account_law(year, real_world=plan.real_world)
     if law is None:
         return None
     mean, variance = law
     level = mean + 0.5 * variance
-    normal = np.asarray(ndtri(np.asarray(levels) / 100.0), dtype=np.float64)
+    share = np.asarray(levels) / 100.0
+    normal = np.asarray(ndtri(share), dtype=np.float64)
+    deviation = np.sqrt(variance)[:, None]
+    # E[R; R <= q] = E[R] Φ(z - s) for the quantile q with normal z: below a percentile, or above it.
+    upper = share >= 0.5
+    part = ndtr(np.where(upper, deviation - normal, normal - deviation)) / np.where(upper, 1.0 - share, share)
     return ClosedForm(
         log_mean=owned_floats(mean),
         log_variance=owned_floats(variance),
         mean=owned_floats(np.exp(level)),
         sd=owned_floats(np.exp(level) * np.sqrt(np.expm1(variance))),
-        percentile=owned_floats(np.exp(mean[:, None] + np.sqrt(variance)[:, None] * normal)),
+        percentile=owned_floats(np.exp(mean[:, None] + deviation * normal)),
+        tail_mean=owned_floats(np.exp(level)[:, None] * part),
     )
 
 
@@ -262,7 +238,7 @@ def _repricing(plan: Plan, year: FloatArray, discounts: list[Moments]) -> Repric
 
 
 def _present_values(
-    plan: Plan, sides: tuple[PricedFlows, PricedFlows], samples: list[_Sample], levels: tuple[float, ...]
+    plan: Plan, sides: tuple[PricedFlows, PricedFlows], samples: list[Sample], levels: tuple[float, ...]
 ) -> tuple[Distribution, ...]:
     assets, liabilities = (curve_value(plan, flows) for flows in sides)
     names = ("assets", "liabilities", "surplus")
@@ -278,18 +254,16 @@ def _present_values(
             percentile_high=owned_floats([high for _, high in sample.interval]),
             curve=curve,
             below_zero=sample.below_zero,
-            below_zero_se=_share_error(sample.below_zero, plan.paths),
+            below_zero_se=sample.below_zero_se,
             histogram=sample.histogram,
+            percentile_se=owned_floats(sample.percentile_se),
+            tail_mean=owned_floats(sample.tail_mean),
+            tail_mean_se=owned_floats(sample.tail_mean_se),
         )
         for name, sample, curve in zip(
             names, samples, (assets, liabilities, assets - liabilities), strict=True
         )
     )
-
-
-def _share_error(share: float, paths: int) -> float:
-    """Standard error of a share of the paths; NaN for one path, as for every other figure."""
-    return math.sqrt(share * (1.0 - share) / paths) if paths > 1 else math.nan
 
 
 def _faults(horizon: int, sides: tuple[PricedFlows, PricedFlows], collected: _Collected) -> tuple[Fault, ...]:
@@ -329,8 +303,21 @@ def _settings(book: Book, surface_error: float) -> tuple[tuple[str, str], ...]:
         ("steps_per_year", str(run.steps_per_year)),
         ("measure", str(run.measure)),
         ("percentiles", " ".join(f"{level:g}" for level in run.percentiles)),
+        *_sampling_settings(run),
         ("generator", GENERATOR),
         ("block_paths", str(BLOCK_PATHS)),
         ("quantile_rule", f"Hyndman-Fan {QUANTILE_RULE}"),
         ("surface_error", f"{surface_error:.1e}"),
     )
+
+
+def _sampling_settings(run: Run) -> tuple[tuple[str, str], ...]:
+    """How a variance-reduced run is drawn."""
+    if not run.is_reduced:
+        return ()
+    stated = [("sampling", str(run.sampling)), ("replicates", str(run.replicates))]
+    if run.sampling is Sampling.SOBOL:
+        stated.append(("bridge", str(run.bridge)))
+    if run.matching:
+        stated.append(("moment_matching", "by row of normals, within a replicate and block"))
+    return tuple(stated)

@@ -16,10 +16,13 @@ __all__ = [
     "Moments",
     "histogram",
     "moments",
+    "quantile_error",
     "quantile_interval",
     "rank_confidence",
     "rank_interval",
     "sorted_quantile",
+    "tail_mean",
+    "tail_mean_error",
 ]
 
 QUANTILE_RULE = 7
@@ -177,6 +180,100 @@ def quantile_interval(ordered: FloatArray, ranks: tuple[int, int]) -> tuple[floa
     low = float(ordered[lower - 1]) if lower >= 1 else math.nan
     high = float(ordered[upper - 1]) if upper <= ordered.size else math.nan
     return low, high
+
+
+def quantile_error(ordered: FloatArray, share: Sequence[float] | FloatArray) -> FloatArray:
+    """Standard errors of the quantiles of a sorted sample of independent values.
+
+    Half the way between the quantiles at ``p ± √(p(1 - p)/n)``; NaN where one of them is beyond the sample.
+    Woodruff, R.S. (1952), Confidence intervals for medians and other position measures, J. American
+    Statistical Association 47.
+
+    Parameters
+    ----------
+    ordered : ndarray, shape (n,)
+    share : array_like, shape (m,)
+
+    Returns
+    -------
+    ndarray, shape (m,)
+    """
+    shares, count = np.asarray(share, dtype=np.float64), ordered.shape[-1]
+    reach = np.sqrt(shares * (1.0 - shares) / count)
+    low, high = shares - reach, shares + reach
+    inside = (low * count >= 1.0) & ((1.0 - high) * count >= 1.0)
+    ends = sorted_quantile(ordered, np.clip(np.concatenate([low, high]), 0.0, 1.0))
+    half = 0.5 * (ends[..., shares.size :] - ends[..., : shares.size])
+    return np.asarray(np.where(inside, half, np.nan))
+
+
+def tail_mean(ordered: FloatArray, share: float) -> FloatArray:
+    """Mean of the share of a sorted sample at and beyond a quantile, also called expected shortfall.
+
+    At and below the quantile where `share` is under a half, at and above it otherwise. With ``k`` the whole
+    part of ``n p`` the lower one is ``(x₁ + … + x_k + (np - k) x_{k+1})/(np)``. Acerbi, C. and Tasche, D.
+    (2002), On the coherence of expected shortfall, J. Banking and Finance 26, definition 2.6 and section 4.
+
+    Parameters
+    ----------
+    ordered : ndarray, shape (..., n)
+        Sorted along the last axis, n at least 1.
+    share : float
+        Between 0 and 1.
+
+    Returns
+    -------
+    ndarray, shape (...)
+    """
+    tail, weight = _tail(ordered, share)
+    return np.asarray(np.sum(tail * weight, axis=-1))
+
+
+def tail_mean_error(ordered: FloatArray, share: float) -> float:
+    """Standard error of `tail_mean` of independent values; NaN where fewer than two are in the tail.
+
+    ``√([v + (1 - p)(m - q)²]/(n p))`` with p the share in the tail, v its variance, m its mean and q the
+    quantile. Manistre, B.J. and Hancock, G.H. (2005), Variance of the CTE estimator, North American Actuarial
+    Journal 9(2).
+
+    Parameters
+    ----------
+    ordered : ndarray, shape (n,)
+        Sorted.
+    share : float
+        Between 0 and 1.
+    """
+    part = min(share, 1.0 - share)
+    inside = part * ordered.size
+    if inside < 2.0:
+        return math.nan
+    tail, weight = _tail(ordered, share)
+    parts = tail - float(sorted_quantile(ordered, share))
+    reach = float(np.abs(parts).max())
+    if reach == 0.0 or not math.isfinite(reach):
+        return 0.0 if reach == 0.0 else math.nan
+    # In units of the largest part squares of any sample fit a float.
+    parts /= reach
+    mean = float(np.sum(parts * weight))
+    parts -= mean
+    parts *= parts
+    spread = float(np.sum(parts * weight)) + (1.0 - part) * mean**2
+    return reach * math.sqrt(spread / inside)
+
+
+def _tail(ordered: FloatArray, share: float) -> tuple[FloatArray, FloatArray]:
+    """The values of a tail, the one it holds a part of last, and their weights, which sum to 1."""
+    count, lower = ordered.shape[-1], share < 0.5
+    inside = count * (share if lower else 1.0 - share)
+    # A share that is a round decimal must hold whole values although its float does not.
+    nearest = round(inside)
+    whole = nearest if abs(inside - nearest) <= 4.0 * np.finfo(float).eps * count else math.floor(inside)
+    size = min(whole + 1, count)
+    tail = ordered[..., :size] if lower else ordered[..., count - size :][..., ::-1]
+    weight = np.full(size, 1.0)
+    if size > whole:
+        weight[-1] = max(inside - whole, 0.0)
+    return tail, weight / weight.sum()
 
 
 def histogram(ordered: FloatArray) -> Histogram:

@@ -13,7 +13,9 @@ from desk.scenarios.summaries import histogram
 
 def a_law(log_mean: float, log_variance: float) -> ClosedForm:
     empty = owned_floats([0.0])
-    return ClosedForm(owned_floats([log_mean]), owned_floats([log_variance]), empty, empty, empty[:, None])
+    return ClosedForm(
+        owned_floats([log_mean]), owned_floats([log_variance]), empty, empty, *[empty[:, None]] * 2
+    )
 
 
 def test_a_histograms_area_is_one_whatever_its_widths() -> None:
