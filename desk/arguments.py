@@ -10,13 +10,14 @@ from typing import Any, NoReturn
 
 from desk import __version__
 from desk.book import Fault, ModelName
+from desk.book.market import CalibrationSource
 from desk.book.run import MOST_PATHS
 from desk.report.as_text import printable
 from desk.terminal import complain
 
 __all__ = ["COMMANDS", "LIMITS", "parser", "range_faults", "target_fault"]
 
-COMMANDS = ("check", "value", "shock", "simulate", "report")
+COMMANDS = ("check", "value", "shock", "simulate", "calibrate", "report")
 
 LIMITS = {"paths": (1, MOST_PATHS), "years": (1, 200), "steps": (1, 366), "seed": (0, 2**53)}
 """Sensible range of each number that a command takes."""
@@ -80,6 +81,20 @@ def parser() -> argparse.ArgumentParser:
     simulate.add_argument(
         "--model", type=_model, metavar="NAME", help=f"rates model in place of the book's: {names}"
     )
+    calibrate = command("calibrate", "Fit a short-rate model to data of the book; the book stays as it is.")
+    calibrate.add_argument(
+        "--to",
+        type=_source,
+        required=True,
+        metavar="DATA",
+        help=f"what it is fitted to: {', '.join(CalibrationSource)}",
+    )
+    calibrate.add_argument(
+        "--model", type=_model, metavar="NAME", help="the model; without it the book's, or the usual one"
+    )
+    calibrate.add_argument(
+        "--save", type=Path, metavar="FILE.xlsx", help="also write a copy of the book with the fitted model"
+    )
     report = command("report", "Write the report as a workbook.", has_json=False)
     report.add_argument("--out", type=Path, required=True, metavar="FILE.xlsx", help="the workbook to write")
     return whole
@@ -131,6 +146,15 @@ def _model(text: str) -> ModelName:
         raise argparse.ArgumentTypeError(f'"{text}" is no model; the models are {names}') from None
 
 
+def _source(text: str) -> CalibrationSource:
+    """Data that a model can be fitted to, by their name."""
+    try:
+        return CalibrationSource(text)
+    except ValueError:
+        names = ", ".join(CalibrationSource)
+        raise argparse.ArgumentTypeError(f'"{text}" is no data to fit to; there are {names}') from None
+
+
 def range_faults(options: argparse.Namespace) -> Iterable[Fault]:
     """What is wrong with the numbers that a command was given."""
     for name, (low, high) in LIMITS.items():
@@ -143,16 +167,18 @@ def range_faults(options: argparse.Namespace) -> Iterable[Fault]:
             )
 
 
-def target_fault(target: Path, source: Path) -> Fault | None:
-    """What is wrong with the place a report is to go to."""
+def target_fault(target: Path, source: Path, *, option: str = "--out") -> Fault | None:
+    """What is wrong with the place that `option` says a workbook is to go to."""
     if target.suffix.lower() != ".xlsx":
-        return Fault(f"--out is {target}", "a name that ends in .xlsx", "Name a workbook.")
+        return Fault(f"{option} is {target}", "a name that ends in .xlsx", "Name a workbook.")
     if target.is_dir():
-        return Fault(f"--out is {target}, a folder", "a file", "Name a file in it.")
+        return Fault(f"{option} is {target}, a folder", "a file", "Name a file in it.")
     if target.exists() and not target.is_file():
-        return Fault(f"--out is {target}, a device or a pipe", "a file", "Name a file.")
+        return Fault(f"{option} is {target}, a device or a pipe", "a file", "Name a file.")
     if not target.absolute().parent.is_dir():
-        return Fault(f"--out is {target}", "a folder that exists", "Make the folder first.")
+        return Fault(f"{option} is {target}", "a folder that exists", "Make the folder first.")
     if target.exists() and source.exists() and target.samefile(source):
-        return Fault("--out is the book itself", "another file", "Name another file: the book is not lost.")
+        return Fault(
+            f"{option} is the book itself", "another file", "Name another file: the book is not lost."
+        )
     return None

@@ -1,4 +1,4 @@
-"""The commands: check, value, shock, simulate and report, without a window.
+"""The commands: check, value, shock, simulate, calibrate and report, without a window.
 
 Exit status: 0 done; 1 the program failed; 2 the book or the arguments are at fault, said on standard
 error in one line a fault. With ``--json`` standard output is one JSON object and nothing else.
@@ -96,6 +96,10 @@ def _ended_by_signals() -> Iterator[None]:
 
 class _CannotWrite(Exception):
     """Standard output takes nothing more."""
+
+
+class _NotWritten(Exception):
+    """A file cannot be written, for no reason that lies in its place."""
 
 
 def run_guarded(work: Callable[[], int]) -> int:
@@ -221,6 +225,9 @@ def _command(given: Sequence[str]) -> int:
         return AT_FAULT
     try:
         return _ACTIONS[options.command](options)
+    except _NotWritten as error:
+        complain(as_text.printable(f"{error}"))
+        return FAILED
     except BadRequest as bad:
         if not isinstance(bad, _Reported):
             for fault in bad.faults:
@@ -355,6 +362,39 @@ def _simulate(options: argparse.Namespace) -> int:
     return DONE
 
 
+def _calibrate(options: argparse.Namespace) -> int:
+    """A short-rate model fitted to data of the book."""
+    from desk.report import as_calibration
+    from desk.scenarios.calibration_records import CalibrationError
+
+    saved: Path | None = options.save
+    fault = None if saved is None else target_fault(saved, options.book, option="--save")
+    if fault is not None:
+        raise BadRequest([fault])
+    reading, book = read_usable(options.book)
+    try:
+        with ProgressLine("Fitting") as progress:
+            found = tasks.calibrate(book, source=options.to, model=options.model, progress=progress)
+    except CalibrationError as error:
+        raise BadRequest(error.faults) from error
+    if saved is not None:
+        if found.model is None:
+            raise BadRequest([Fault(found.obstacle, "a model that can be used", "Leave --save out.")])
+        with_model = replace(book, rates_model=found.model)
+        try:
+            _write_to(saved, "--save", "book", lambda: tasks.save_copy(with_model, saved))
+        except ValueError as error:
+            raise BadRequest([Fault(f"{error}", "a book that a workbook can hold", "Mend it.")]) from error
+    if options.json:
+        plain = as_calibration.calibration_object(found, reading.faults)
+        _say(as_json.text(plain | {"saved": None if saved is None else str(saved)}))
+        return DONE
+    _say(as_calibration.calibration_text(found, title=book.basis.title))
+    if saved is not None:
+        _say(f"\nThe book with the fitted model is in {as_text.printable(str(saved))}")
+    return DONE
+
+
 def _report(options: argparse.Namespace) -> int:
     """The report as a workbook."""
     fault = target_fault(options.out, options.book)
@@ -363,18 +403,27 @@ def _report(options: argparse.Namespace) -> int:
     reading, book = read_usable(options.book)
     _insist_on(book, model=book.rates_model is not None)
     second = _on_second_basis(book)
+    with ProgressLine("Reporting") as progress:
+        written = _write_to(
+            options.out,
+            "--out",
+            "report",
+            lambda: tasks.report(reading, options.out, second=second, progress=progress),
+        )
+    _say(f"The report is in {written}")
+    return DONE
+
+
+def _write_to(target: Path, option: str, what: str, write: Callable[[], Path]) -> Path:
+    """Where `write` has written; a place that it cannot write to is a fault of the option that names it."""
     try:
-        with ProgressLine("Reporting") as progress:
-            written = tasks.report(reading, options.out, second=second, progress=progress)
+        return write()
     except OSError as error:
         reason = error.strerror or str(error)
         if error.errno not in _NO_PLACE_TO_WRITE:
-            complain(as_text.printable(f"{options.out}: the report cannot be written: {reason}."))
-            return FAILED
-        fault = Fault(f"--out is {options.out}: {reason}", "a place that can be written to", "Name another.")
+            raise _NotWritten(f"{target}: the {what} cannot be written: {reason}.") from error
+        fault = Fault(f"{option} is {target}: {reason}", "a place that can be written to", "Name another.")
         raise BadRequest([fault]) from error
-    _say(f"The report is in {written}")
-    return DONE
 
 
 _ACTIONS: dict[str, Callable[[argparse.Namespace], int]] = {
@@ -382,6 +431,7 @@ _ACTIONS: dict[str, Callable[[argparse.Namespace], int]] = {
     "value": _value,
     "shock": _shock,
     "simulate": _simulate,
+    "calibrate": _calibrate,
     "report": _report,
 }
 

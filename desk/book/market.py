@@ -10,7 +10,18 @@ from numpy.typing import NDArray
 
 from desk.book.arrays import FloatArray, owned_dates, owned_floats, same_fields
 
-__all__ = ["Instrument", "ScenarioSet", "Volatilities", "VolatilityKind", "YieldHistory"]
+__all__ = ["CalibrationSource", "Instrument", "ScenarioSet", "Volatilities", "VolatilityKind", "YieldHistory"]
+
+
+class CalibrationSource(StrEnum):
+    """The data of the book that a model is fitted to."""
+
+    HISTORY = "history"
+    """Of short rates."""
+    VOLATILITIES = "volatilities"
+    """Quoted, of caps, floors and swaptions, with today's curve."""
+    YIELDS = "yields"
+    """A history of zero rates at several terms."""
 
 
 class Instrument(StrEnum):

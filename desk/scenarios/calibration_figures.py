@@ -150,11 +150,14 @@ def _judged_volatilities(fit: VolatilityFit, unit: FloatArray) -> tuple[bool, st
     if not np.isfinite(part).all():
         return True, "The fit is poor: some prices of the model belong to no volatility at all."
     share, worst = float(np.sqrt(np.mean(part**2))), int(np.argmax(np.abs(part)))
-    size = f"{fit.rmse_bp:.1f} basis points (root mean square), {100.0 * share:.1f} % of the mean quote"
+    size = f"{100.0 * share:.1f} % of the mean quote"
+    if np.ptp(unit) == 0.0:
+        # Normal and lognormal volatilities have no basis points in common.
+        size = f"{fit.rmse_bp:.1f} basis points (root mean square), {size}"
     if share > _POOR_SHARE or abs(part[worst]) > _FAR_SHARE:
         return True, (
-            f"The fit is poor: the residuals are {size}, the largest {fit.residual_bp[worst]:+.0f} for the "
-            f"{fit.instruments[worst]}."
+            f"The fit is poor: the residuals are {size}, the largest {fit.residual_bp[worst]:+.0f} basis "
+            f"points for the {fit.instruments[worst]}."
         )
     if not fit.converged:
         return True, f"The fit is provisional: its search did not come to rest; the residuals are {size}."

@@ -3,20 +3,22 @@
 from __future__ import annotations
 
 from dataclasses import dataclass
-from enum import StrEnum
+from typing import TYPE_CHECKING
 
 import numpy as np
 from numpy.typing import NDArray
 
 from desk.book import Fault, ModelName, RatesModel
 from desk.book.arrays import FloatArray
-from desk.book.market import Volatilities, YieldHistory
+from desk.book.market import CalibrationSource, Volatilities, YieldHistory
 from desk.book.model import History
-from desk.rates.history_diagnostics import ResidualTests
-from desk.rates.history_fit import HistoryFit
-from desk.rates.kalman_fit import PanelFit
-from desk.rates.option_calibration import VolatilityFit
-from desk.rates.option_instruments import OptionQuotes
+
+if TYPE_CHECKING:
+    from desk.rates.history_diagnostics import ResidualTests
+    from desk.rates.history_fit import HistoryFit
+    from desk.rates.kalman_fit import PanelFit
+    from desk.rates.option_calibration import VolatilityFit
+    from desk.rates.option_instruments import OptionQuotes
 
 __all__ = [
     "Calibration",
@@ -26,17 +28,6 @@ __all__ = [
     "HistoryBand",
     "Profile",
 ]
-
-
-class CalibrationSource(StrEnum):
-    """The data of the book that a model is fitted to."""
-
-    HISTORY = "history"
-    """Of short rates."""
-    VOLATILITIES = "volatilities"
-    """Quoted, of caps, floors and swaptions, with today's curve."""
-    YIELDS = "yields"
-    """A history of zero rates at several terms."""
 
 
 class CalibrationError(ValueError):
