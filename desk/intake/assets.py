@@ -19,8 +19,16 @@ _LEAST_EIGENVALUE = -1e-10
 """Of a correlation matrix whose entries are rounded to what a float holds."""
 
 
-def read_risky_assets(table: Table, faults: FaultList) -> RiskyAssets | None:
-    """The risky assets; None where a row could not be read or there is none."""
+def read_risky_assets(table: Table, faults: FaultList, *, mend: bool = False) -> RiskyAssets | None:
+    """The risky assets; None where a row could not be read or there is none.
+
+    Parameters
+    ----------
+    table : Table
+    faults : FaultList
+    mend : bool
+        Whether correlations that contradict one another are to be mended: then they are a mild fault.
+    """
     before = len(faults)
     sheet, rows = table.sheet, table.rows
     if not rows.size:
@@ -57,10 +65,14 @@ def read_risky_assets(table: Table, faults: FaultList) -> RiskyAssets | None:
     if len(faults) == before or np.abs(joint).max() <= 1.0:
         least = float(np.linalg.eigvalsh((joint + joint.T) / 2.0)[0])
         if least < _LEAST_EIGENVALUE:
-            faults.add(
+            add = faults.mild if mend else faults.add
+            add(
                 f"the correlations contradict each other: the least eigenvalue is {least:.3g}",
                 "correlations, those with the rates included, that can hold together",
-                "Move the strongest ones towards 0.",
+                "The nearest ones that do are taken in a simulation."
+                if mend
+                else "Move the strongest ones towards 0, or set Mend correlation to yes in the sheet Rates "
+                "model.",
                 sheet=sheet.name,
                 row=table.heading_row,
                 column=table.fields["Rates"],

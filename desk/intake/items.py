@@ -5,12 +5,13 @@ from __future__ import annotations
 import math
 import re
 from itertools import pairwise
+from typing import Any
 
 import numpy as np
 from numpy.typing import NDArray
 
-from desk.book import Measure, ModelName, RatesModel, Run, ShockSettings
-from desk.book.run import MOST_PATHS
+from desk.book import Bridge, Measure, ModelName, RatesModel, Run, Sampling, ShockSettings
+from desk.book.run import MOST_PATHS, MOST_REPLICATES
 from desk.intake.cells import Cells
 from desk.intake.checks import (
     check_correlations,
@@ -20,6 +21,7 @@ from desk.intake.checks import (
     some,
 )
 from desk.intake.columns import Kind
+from desk.intake.holding_columns import YesNo
 from desk.intake.item_sheet import Check, ItemSheet
 
 __all__ = ["MODEL_ITEMS", "missing_items", "read_rates_model", "read_run", "read_shock_settings"]
@@ -34,8 +36,11 @@ MODEL_ITEMS: dict[ModelName, tuple[str, ...]] = {
     ),
     ModelName.CIR: ("Mean reversion", "Volatility", "Long-run rate", "Starting rate"),
     ModelName.CIR_SHIFTED: ("Mean reversion", "Volatility", "Long-run rate", "Starting rate"),
+    ModelName.BLACK_KARASINSKI: ("Mean reversion", "Volatility"),
+    ModelName.OUTSIDE: (),
 }
 """The items that each model needs."""
+_OF_INFLATION = ("Inflation mean reversion", "Inflation rate correlation", "Inflation risk price")
 _SQUARE_ROOT = (ModelName.CIR, ModelName.CIR_SHIFTED)
 
 
@@ -73,8 +78,13 @@ def read_rates_model(sheet: ItemSheet) -> RatesModel | None:
         "factor_correlation": number("Factor correlation", "a correlation", check_correlations),
     }
     risk_price = _or_zero(sheet.number("Risk price", "a price of risk", _check_price))
+    second_price = sheet.number("Second risk price", "a price of risk", _check_price)
+    inflation = _inflation_items(sheet)
+    mend = sheet.choice("Mend correlation", YesNo, "an answer")
     if name is None:
         return None
+    if second_price is not None and name is not ModelName.GAUSSIAN_2:
+        _not_used(sheet, "Second risk price", f"the model {name} has no second factor")
     if name in _SQUARE_ROOT:
         if model["mean_reversion"] == 0.0:
             sheet.fault(
@@ -96,14 +106,46 @@ def read_rates_model(sheet: ItemSheet) -> RatesModel | None:
                 )
     for item, value in zip(sheet_parameters(), model.values(), strict=True):
         if value is not None and item not in needs:
-            sheet.fault(
-                item,
-                f"the model {name} has no {item.lower()}",
-                "no value",
-                "It is kept and not used; remove it if it is not wanted.",
-                mild=True,
-            )
-    return RatesModel(name=name, risk_price=risk_price, **model)
+            _not_used(sheet, item, f"the model {name} has no {item.lower()}")
+    return RatesModel(
+        name=name,
+        risk_price=risk_price,
+        second_risk_price=_or_zero(second_price),
+        mend_correlation=mend is YesNo.YES,
+        inflation_risk_price=_or_zero(inflation.pop("inflation_risk_price")),
+        **model,
+        **inflation,
+    )
+
+
+def _not_used(sheet: ItemSheet, item: str, found: str) -> None:
+    """Say that an item is stated for nothing."""
+    sheet.fault(item, found, "no value", "It is kept and not used; remove it if it is not wanted.", mild=True)
+
+
+def _inflation_items(sheet: ItemSheet) -> dict[str, float | None]:
+    """How the inflation factor moves, by field; the factor is drawn where its volatility is stated."""
+    volatility = sheet.number(
+        "Inflation factor volatility", "a volatility a year", check_not_negative, check_rates_above
+    )
+    stated = {
+        "inflation_volatility": volatility,
+        "inflation_mean_reversion": sheet.number(
+            "Inflation mean reversion",
+            "a speed of reversion a year",
+            _check_reversion,
+            required=volatility is not None,
+        ),
+        "inflation_rate_correlation": sheet.number(
+            "Inflation rate correlation", "a correlation", check_correlations
+        ),
+        "inflation_risk_price": sheet.number("Inflation risk price", "a price of risk", _check_price),
+    }
+    if "Inflation factor volatility" not in sheet.rows:
+        for item, value in zip(_OF_INFLATION, list(stated.values())[1:], strict=True):
+            if value is not None:
+                _not_used(sheet, item, "no Inflation factor volatility is stated: inflation is not drawn")
+    return stated
 
 
 def missing_items(model: RatesModel) -> tuple[str, ...]:
@@ -143,7 +185,31 @@ def read_run(sheet: ItemSheet) -> Run:
         seed=sheet.whole("Seed", "seed", least=0, most=2**53, instead=default.seed),
         measure=measure or default.measure,
         percentiles=_percentiles(sheet, default.percentiles),
+        **_sampling(sheet, default),
     )
+
+
+def _sampling(sheet: ItemSheet, default: Run) -> dict[str, Any]:
+    """How the paths are drawn, by field; none of it need be stated."""
+    sampling = sheet.choice("Sampling", Sampling, "a way of drawing") or default.sampling
+    bridge = sheet.choice("Bridge", Bridge, "an order of the directions of a path")
+    matching = sheet.choice("Moment matching", YesNo, "an answer") is YesNo.YES
+    is_reduced = matching or sampling is not Sampling.PLAIN
+    replicates = default.replicates
+    if sheet.states("Replicates"):
+        replicates = sheet.whole(
+            "Replicates", "number of replicates", least=2, most=MOST_REPLICATES, instead=replicates
+        )
+        if not is_reduced:
+            _not_used(sheet, "Replicates", "paths drawn plainly have no replicates")
+    if bridge is not None and sampling is not Sampling.SOBOL:
+        _not_used(sheet, "Bridge", f"paths drawn by {sampling} sampling have no bridge")
+    return {
+        "sampling": sampling,
+        "bridge": bridge or default.bridge,
+        "matching": matching,
+        "replicates": replicates,
+    }
 
 
 def _percentiles(sheet: ItemSheet, default: tuple[float, ...]) -> tuple[float, ...]:

@@ -175,6 +175,8 @@ SHEETS: dict[str, SheetLayout] = {
             items=(
                 *("Model", "Mean reversion", "Volatility", "Long-run rate", "Starting rate"),
                 *("Second mean reversion", "Second volatility", "Factor correlation", "Risk price"),
+                *("Second risk price", "Inflation mean reversion", "Inflation factor volatility"),
+                *("Inflation rate correlation", "Inflation risk price", "Mend correlation"),
             ),
         ),
         SheetLayout(
@@ -186,7 +188,10 @@ SHEETS: dict[str, SheetLayout] = {
         SheetLayout(
             "Run",
             _PAIR,
-            items=("Paths", "Horizon (years)", "Steps a year", "Seed", "Measure", "Percentiles"),
+            items=(
+                *("Paths", "Horizon (years)", "Steps a year", "Seed", "Measure", "Percentiles"),
+                *("Sampling", "Bridge", "Moment matching", "Replicates"),
+            ),
             spread=True,
         ),
         SheetLayout("History", ("Date", "Short rate")),

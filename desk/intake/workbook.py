@@ -250,7 +250,10 @@ class _Reader:
         if (sheet := self._item_sheet("Rates model")) is not None:
             parts["rates_model"] = read_rates_model(sheet)
         if "Risky assets" in used:
-            parts["risky_assets"] = read_risky_assets(used["Risky assets"], faults)
+            model = parts.get("rates_model")
+            parts["risky_assets"] = read_risky_assets(
+                used["Risky assets"], faults, mend=model is not None and model.mend_correlation
+            )
         if (sheet := self._item_sheet("Run")) is not None:
             parts["run"] = read_run(sheet)
             if liabilities is not None and asset_flows is not None:

@@ -19,6 +19,7 @@ from desk.book import (
     RatesModel,
     RiskyAssets,
     Run,
+    Sampling,
 )
 from desk.book.holding import SWAP_KINDS
 from desk.intake.basis import FIRST, SECOND
@@ -110,6 +111,12 @@ def _rates_model(model: RatesModel) -> dict[str, Value]:
         "Second volatility": model.second_volatility,
         "Factor correlation": model.factor_correlation,
         "Risk price": model.risk_price,
+        "Second risk price": unless_zero(model.second_risk_price),
+        "Inflation mean reversion": model.inflation_mean_reversion,
+        "Inflation factor volatility": model.inflation_volatility,
+        "Inflation rate correlation": model.inflation_rate_correlation,
+        "Inflation risk price": unless_zero(model.inflation_risk_price),
+        "Mend correlation": "yes" if model.mend_correlation else None,
     }
 
 
@@ -121,6 +128,10 @@ def _run(run: Run) -> dict[str, Value]:
         "Seed": run.seed,
         "Measure": str(run.measure),
         "Percentiles": "; ".join(repr(float(level)).removesuffix(".0") for level in run.percentiles),
+        "Sampling": None if run.sampling is Sampling.PLAIN else str(run.sampling),
+        "Bridge": None if run.bridge is Run().bridge else str(run.bridge),
+        "Moment matching": "yes" if run.matching else None,
+        "Replicates": None if run.replicates == Run().replicates else run.replicates,
     }
 
 

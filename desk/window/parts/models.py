@@ -13,6 +13,8 @@ MODEL_TITLES = {
     ModelName.GAUSSIAN_2: "Gaussian, two factors",
     ModelName.CIR: "Cox-Ingersoll-Ross",
     ModelName.CIR_SHIFTED: "Cox-Ingersoll-Ross, shifted",
+    ModelName.BLACK_KARASINSKI: "Black-Karasinski",
+    ModelName.OUTSIDE: "Scenarios from outside",
 }
 
 

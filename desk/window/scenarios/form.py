@@ -25,6 +25,10 @@ _WHAT = {
     ModelName.GAUSSIAN_2: f"Two factors, so that short and long rates need not move together. {_FITTED}",
     ModelName.CIR: f"A rate that never turns negative and moves less when it is low. {_OWN}",
     ModelName.CIR_SHIFTED: f"A square-root factor and a shift that varies with time. {_FITTED}",
+    ModelName.BLACK_KARASINSKI: "A rate that stays above 0 and moves in proportion to itself. Reprices the "
+    "book's curve exactly; forward rates must be above 0.",
+    ModelName.OUTSIDE: "The paths in the sheet Scenario set, taken as they are. They need not reprice the "
+    "book's curve: see the check.",
 }
 _MEASURES = (
     Choice(Measure.PRICING, "Pricing", "For values: what flows are worth. It is no forecast of rates."),
