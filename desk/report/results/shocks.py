@@ -85,7 +85,7 @@ def plan_shocks(
     names |= _names(plan, found)
     planned = [plan, moves]
     if terms is not None:
-        rates, own = plan_rates(found, terms, flows, sheets, places, checks)
+        rates, own = plan_rates(found, terms, sheets, places, checks)
         names |= own
         one, own = plan_recomputed(
             found, terms, shocks_sheet=plan.name, first_result=FIRST_RESULT, reason=reason, checks=checks

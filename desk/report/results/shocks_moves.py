@@ -6,17 +6,22 @@ from collections.abc import Iterator, Sequence
 from dataclasses import dataclass, field
 
 from desk.book.shock import RATE_MOVES, Move, MoveKind, Shock
-from desk.rates.compounding import Compounding
 from desk.report.results.plan import FIRST_ROW, Formula, SheetPlan
 from desk.valuation.moved_curve import DECAY
 from desk.valuation.shock_records import ShockTable
 
-__all__ = ["MOVES_SHEET", "MoveRows", "plan_moves", "shift_formula", "size_unit"]
+__all__ = [
+    "MOVES_SHEET",
+    "MoveRows",
+    "joined_formula",
+    "joined_kinds",
+    "plan_moves",
+    "shift_formula",
+    "size_unit",
+]
 
 MOVES_SHEET = "Shock moves"
 MOVE_CAP = 20_000
-LONGEST_FORMULA = 215
-"""Characters of a formula that a reviewer can still follow; a longer one is given as a value."""
 _SIZE, _TERM, _SLOPE, _LENGTH = "E", "G", "H", "I"
 _JOINED = (MoveKind.RATE, MoveKind.RELATIVE, MoveKind.LEAST, MoveKind.FLOOR)
 _SHARES = (MoveKind.RELATIVE, MoveKind.VALUE, MoveKind.AMOUNT)
@@ -167,7 +172,35 @@ def _move_row(
     )
 
 
-def shift_formula(shock: Shock, place: MoveRows, row: int) -> Formula | None:
+def joined_kinds(place: MoveRows) -> list[MoveKind]:
+    """The kinds of move of a shock that stand at several terms: each has a column of workings."""
+    return [kind for kind, rows in place.rows.items() if kind in _JOINED and len(rows) > 1]
+
+
+def joined_formula(place: MoveRows, kind: MoveKind, row: int) -> Formula:
+    """Straight lines between the terms of a kind of move, flat outside them.
+
+    Parameters
+    ----------
+    place : MoveRows
+    kind : MoveKind
+        One of `joined_kinds`.
+    row : int
+        Of the sheet of rates, whose column A holds the term.
+
+    Notes
+    -----
+    Between two terms the way gone is ``(|t - x₁| - |t - x₂| + x₂ - x₁) / 2``, held at its ends outside: no
+    search is needed, and every spreadsheet can do it.
+    """
+    rows = place.rows[kind]
+    slope, length = _area(_SLOPE, rows[:-1]), _area(_LENGTH, rows[:-1])
+    start, end = _area(_TERM, rows[:-1]), _area(_TERM, rows[1:])
+    gone = f"ABS($A{row}-{start})-ABS($A{row}-{end})+{length}"
+    return Formula(f"={_cell(_SIZE, rows[0])}+SUMPRODUCT({slope}*({gone}))/2")
+
+
+def shift_formula(shock: Shock, place: MoveRows, row: int, workings: dict[MoveKind, str]) -> Formula | None:
     """The shift of the continuous zero rate at one term, from the moves as they are listed.
 
     Parameters
@@ -178,18 +211,39 @@ def shift_formula(shock: Shock, place: MoveRows, row: int) -> Formula | None:
     row : int
         Of the sheet of rates, whose columns hold the term (A), the zero rate (D) and the fading of short
         moves (E).
+    workings : dict of MoveKind to str
+        Columns of the same sheet that hold the size of the moves that stand at several terms.
 
     Returns
     -------
     Formula or None
-        None where it would be too long to follow, or the moves are not listed.
+        None where the moves are not listed, or least sizes are up at one term and down at another.
     """
     if not any(move.kind in RATE_MOVES for move in shock.moves):
         return Formula("=0")
     if not place.rows or (MoveKind.LEAST in place.rows and _least_sign(place) == 0):
         return None
-    text = _shift(shock, place, row)
-    return Formula(text) if len(text) <= LONGEST_FORMULA else None
+    size = "+".join(_plain_parts(place, row, workings))
+    size = f"({size})*basis_point" if size else ""
+    before, per_year = f"$D{row}", shock.compounding.per_year
+    if per_year:
+        before = f"(EXP($D{row})-1)" if per_year == 1 else f"{per_year}*(EXP($D{row}/{per_year})-1)"
+    if MoveKind.RELATIVE in place.rows:
+        own = f"{_joined(place, MoveKind.RELATIVE, row, workings)}*MAX({before},0)"
+        if MoveKind.LEAST in place.rows:
+            chosen = "MAX" if _least_sign(place) > 0 else "MIN"
+            own = f"{chosen}({own},{_joined(place, MoveKind.LEAST, row, workings)}*basis_point)"
+        size = f"{size}+{own}" if size else own
+    has_floor = MoveKind.FLOOR in place.rows
+    if not (per_year or has_floor):
+        return Formula(f"={size}")
+    after = f"{before}+{size}" if size else before
+    if has_floor:
+        floor = f"{_joined(place, MoveKind.FLOOR, row, workings)}*basis_point"
+        after = f"MAX({after},MIN({floor},{before}))"
+    if per_year:
+        after = f"LN(1+{after})" if per_year == 1 else f"{per_year}*LN(1+({after})/{per_year})"
+    return Formula(f"={after}-$D{row}")
 
 
 def _least_sign(place: MoveRows) -> int:
@@ -200,36 +254,7 @@ def _least_sign(place: MoveRows) -> int:
     return -1 if all(size < 0.0 for size in sizes) else 0
 
 
-def _shift(shock: Shock, place: MoveRows, row: int) -> str:
-    """The formula of the shift, however long."""
-    plain = "+".join(_plain_parts(place, row))
-    size = f"({plain})*basis_point" if plain else ""
-    per_year = shock.compounding.per_year
-    is_continuous = shock.compounding is Compounding.CONTINUOUS
-    if is_continuous:
-        before = f"$D{row}"
-    else:
-        before = f"(EXP($D{row})-1)" if per_year == 1 else f"{per_year}*(EXP($D{row}/{per_year})-1)"
-    if MoveKind.RELATIVE in place.rows:
-        own = f"({_knots(place, MoveKind.RELATIVE, row)})*MAX({before},0)"
-        if MoveKind.LEAST in place.rows:
-            chosen = "MAX" if _least_sign(place) > 0 else "MIN"
-            own = f"{chosen}({own},({_knots(place, MoveKind.LEAST, row)})*basis_point)"
-        size = f"{size}+{own}" if size else own
-    has_floor = MoveKind.FLOOR in place.rows
-    if is_continuous and not has_floor:
-        return f"={size or '0'}"
-    after = f"{before}+{size}" if size else before
-    if has_floor:
-        floor = f"({_knots(place, MoveKind.FLOOR, row)})*basis_point"
-        after = f"MAX({after},MIN({floor},{before}))"
-    if is_continuous:
-        return f"={after}-$D{row}"
-    grown = f"LN(1+{after})" if per_year == 1 else f"{per_year}*LN(1+({after})/{per_year})"
-    return f"={grown}-$D{row}"
-
-
-def _plain_parts(place: MoveRows, row: int) -> Iterator[str]:
+def _plain_parts(place: MoveRows, row: int, workings: dict[MoveKind, str]) -> Iterator[str]:
     """The parts of the shift that depend on the term alone [basis points]."""
     for kind, factor in (
         (MoveKind.PARALLEL, ""),
@@ -241,22 +266,12 @@ def _plain_parts(place: MoveRows, row: int) -> Iterator[str]:
     for at in place.rows.get(MoveKind.TWIST, ()):
         yield f"{_cell(_SIZE, at)}*(MIN($A{row}/{_cell(_TERM, at)},2)-1)"
     if MoveKind.RATE in place.rows:
-        yield _knots(place, MoveKind.RATE, row)
+        yield _joined(place, MoveKind.RATE, row, workings)
 
 
-def _knots(place: MoveRows, kind: MoveKind, row: int) -> str:
-    """Straight lines between the terms of a kind of move, flat outside them.
-
-    Between two terms the way gone is ``(|t - x₁| - |t - x₂| + x₂ - x₁) / 2``, held at its ends outside.
-    """
-    rows = place.rows[kind]
-    first = _cell(_SIZE, rows[0])
-    if len(rows) == 1:
-        return first
-    slope, length = _area(_SLOPE, rows[:-1]), _area(_LENGTH, rows[:-1])
-    start, end = _area(_TERM, rows[:-1]), _area(_TERM, rows[1:])
-    gone = f"ABS($A{row}-{start})-ABS($A{row}-{end})+{length}"
-    return f"{first}+SUMPRODUCT({slope}*({gone}))/2"
+def _joined(place: MoveRows, kind: MoveKind, row: int, workings: dict[MoveKind, str]) -> str:
+    """Size of a kind of move at the term of a row: its own cell, or the column of workings."""
+    return f"${workings[kind]}{row}" if kind in workings else _cell(_SIZE, place.rows[kind][0])
 
 
 def _cell(letter: str, row: int) -> str:

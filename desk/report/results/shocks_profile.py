@@ -26,7 +26,8 @@ def gap_turns_text(profile: ParallelProfile) -> str:
     if not profile.gap_turns:
         return (
             f"The duration gap keeps its sign for parallel moves from {low} to {high} basis points: the "
-            "surplus rises or falls all the way."
+            f"surplus {'rises' if profile.surplus[-1] > profile.surplus[0] else 'falls'} with rates all the "
+            "way."
         )
     listed = ", ".join(f"{move:+,.1f}".replace("-", "−") for move in profile.gap_turns)
     return (

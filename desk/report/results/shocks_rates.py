@@ -16,7 +16,7 @@ from desk.rates.curve import DiscountCurve
 from desk.report.results.checks import Checks
 from desk.report.results.flows import FlowSheet
 from desk.report.results.plan import FIRST_ROW, HEADING_ROW, Block, Formula, SheetPlan, column_letter
-from desk.report.results.shocks_moves import MoveRows, shift_formula
+from desk.report.results.shocks_moves import MoveRows, joined_formula, joined_kinds, shift_formula, size_unit
 from desk.report.results.standing import LIVE_WORK
 from desk.valuation.moved_curve import CurveMove
 from desk.valuation.shock_records import ShockTable
@@ -126,10 +126,53 @@ def _by_rates(shock: Shock, flows: PricedFlows) -> bool:
     return not any(move.kind in other for move in shock.moves)
 
 
+@dataclass(frozen=True)
+class _Shifts:
+    """How the columns of shifts are made.
+
+    Attributes
+    ----------
+    shocks : list of Shock
+    places : sequence of MoveRows
+        Of these shocks, and maybe of more.
+    workings : list of dict of MoveKind to str
+        Of each shock, the columns that hold what its moves at several terms come to.
+    is_live : list of bool
+        Whether the shift is a formula.
+    """
+
+    shocks: list[Shock]
+    places: Sequence[MoveRows]
+    workings: list[dict[MoveKind, str]]
+    is_live: list[bool]
+
+    @property
+    def columns(self) -> list[tuple[int, MoveKind]]:
+        """The columns of workings in their order: which shock, from 0, and of what kind of move."""
+        return [(number, kind) for number, own in enumerate(self.workings) for kind in own]
+
+
+def _shifts(found: ShockTable, terms: Terms, places: Sequence[MoveRows]) -> _Shifts:
+    """Give every kind of move that stands at several terms a column, after those of the shifts."""
+    shocks = [result.shock for result in found.results[: terms.count]]
+    column = _FIRST_SHIFT + terms.count
+    workings: list[dict[MoveKind, str]] = []
+    for place, _ in zip(places, shocks, strict=False):
+        own = {}
+        for kind in joined_kinds(place):
+            own[kind] = column_letter(column)
+            column += 1
+        workings.append(own)
+    is_live = [
+        shift_formula(shock, place, FIRST_ROW, own) is not None
+        for shock, place, own in zip(shocks, places, workings, strict=False)
+    ]
+    return _Shifts(shocks, places, workings, is_live)
+
+
 def plan_rates(
     found: ShockTable,
     terms: Terms,
-    flows: dict[Side, PricedFlows],
     sheets: dict[Side, FlowSheet],
     places: Sequence[MoveRows],
     checks: Checks,
@@ -139,21 +182,19 @@ def plan_rates(
     The values of both sides by term are sums over the sheets of flows.
     """
     last = terms.last_row
-    shocks = [result.shock for result in found.results[: terms.count]]
-    is_live = [
-        shift_formula(shock, place, last) is not None for shock, place in zip(shocks, places, strict=False)
-    ]
+    shifts = _shifts(found, terms, places)
+    columns = shifts.columns
     note = (
         "What each shock adds to the continuous zero rate at every term at which there are flows, and what "
         "the flows of that term are worth before. A shock's number stands above its column."
     )
-    if not all(is_live):
-        listed = ", ".join(str(number) for number, live in enumerate(is_live, start=1) if not live)
-        note += f" Shifts with formulas too long to follow are values: {listed}."
+    if not all(shifts.is_live):
+        listed = ", ".join(str(number) for number, live in enumerate(shifts.is_live, start=1) if not live)
+        note += f" The shifts of these shocks are values, not formulas: {listed}."
     plan = SheetPlan(RATES_SHEET, "Shock rates: shifts by term", note)
     unit = f"[{found.currency}]"
     plan.widths = {1: 11.0, 2: 11.0, 3: 11.0, 4: 12.0, 5: 11.0, 6: 17.0, 7: 17.0}
-    plan.widths |= dict.fromkeys(range(_FIRST_SHIFT, _FIRST_SHIFT + terms.count), 15.0)
+    plan.widths |= dict.fromkeys(range(_FIRST_SHIFT, _FIRST_SHIFT + terms.count + len(columns)), 15.0)
     plan.headings(
         [
             "Term [years]",
@@ -163,7 +204,8 @@ def plan_rates(
             "Fading of short moves",
             f"Assets of the term {unit}",
             f"Liabilities of the term {unit}",
-            *(f"{shock.name} [a year]" for shock in shocks),
+            *(f"{shock.name} [a year]" for shock in shifts.shocks),
+            *(f"Workings of {number + 1}: {kind.value} [{size_unit(kind)}]" for number, kind in columns),
         ],
         left=0,
     )
@@ -177,15 +219,16 @@ def plan_rates(
     plan.frozen = f"B{FIRST_ROW}"
     roles = (
         *("reported", "reported", "reported", "reported", "live", "live", "live"),
-        *("live" if live else "reported" for live in is_live),
+        *("live" if live else "reported" for live in shifts.is_live),
+        *("live",) * len(columns),
     )
-    forms = ("years", "years", "years", "rate", "factor", "money2", "money2", *("rate",) * terms.count)
+    forms = (
+        *("years", "years", "years", "rate", "factor", "money2", "money2"),
+        *("rate",) * terms.count,
+        *("share" if kind is MoveKind.RELATIVE else "years" for _, kind in columns),
+    )
     plan.block = Block(
-        FIRST_ROW,
-        terms.time.size,
-        roles,
-        forms,
-        lambda: _rate_rows(terms, sheets, shocks, places, is_live),
+        FIRST_ROW, terms.time.size, roles, forms, lambda: _rate_rows(terms, sheets, shifts, columns)
     )
     for side, letter in ((Side.ASSETS, "F"), (Side.LIABILITIES, "G")):
         name = side.value
@@ -206,14 +249,14 @@ def plan_rates(
 
 
 def _rate_rows(
-    terms: Terms,
-    sheets: dict[Side, FlowSheet],
-    shocks: Sequence[Shock],
-    places: Sequence[MoveRows],
-    is_live: Sequence[bool],
+    terms: Terms, sheets: dict[Side, FlowSheet], shifts: _Shifts, columns: Sequence[tuple[int, MoveKind]]
 ) -> Iterator[Sequence[Any]]:
     """One row a term."""
-    shifts = [None if live else _shift_at(shock, terms) for shock, live in zip(shocks, is_live, strict=True)]
+    each = list(zip(shifts.shocks, shifts.places, shifts.workings, strict=False))
+    given = [
+        None if live else _shift_at(shock, terms)
+        for shock, live in zip(shifts.shocks, shifts.is_live, strict=True)
+    ]
     middle = 0.5 * (terms.time[:-1] + terms.time[1:])
     start = np.concatenate(([0.0], middle))
     end = np.concatenate((middle, [terms.time[-1] + 1.0]))
@@ -235,9 +278,10 @@ def _rate_rows(
             Formula(f"=EXP(-A{row}/shock_decay)"),
             *worth,
             *(
-                shift_formula(shock, place, row) if shift is None else float(shift[number])
-                for shock, place, shift in zip(shocks, places, shifts, strict=False)
+                shift_formula(shock, place, row, own) if values is None else float(values[number])
+                for (shock, place, own), values in zip(each, given, strict=True)
             ),
+            *(joined_formula(shifts.places[at], kind, row) for at, kind in columns),
         )
 
 

@@ -19,6 +19,7 @@ from desk.report.results.plan import SheetPlan
 from desk.report.wording import CAUTION
 from desk.scenarios.records import Simulation
 from desk.valuation.records import Standing
+from desk.valuation.shock_records import ShockTable
 from desk.window.dialogs import Dialogs
 from desk.window.document import Document
 from desk.window.jobs import Job, Jobs
@@ -50,17 +51,21 @@ def _lay_out(
     reading: Reading,
     standing: Standing,
     simulation: Simulation | None,
+    shocks: ShockTable | None,
     *,
     progress: Callable[[float], None],
-    cancel: object,
+    cancel: tasks.CancelToken,
 ) -> list[SheetPlan]:
     from desk.report.results.workbook import plan_sheets
 
-    del cancel
     progress(0.0)
     if reading.book is None:
         raise ValueError("`reading` must have a book")
-    plans, _ = plan_sheets(reading, reading.book, standing, simulation, written_at=datetime.now(UTC))
+    if shocks is None:
+        shocks = tasks.shock(reading.book, progress=lambda part: progress(0.5 * part), cancel=cancel)
+    plans, _ = plan_sheets(
+        reading, reading.book, standing, simulation, shocks=shocks, written_at=datetime.now(UTC)
+    )
     progress(1.0)
     return plans
 
@@ -184,7 +189,7 @@ class ReportStation(Station):
             self._laid_out = wanted
             self.jobs.start(
                 "Laying out the report",
-                partial(_lay_out, reading, standing, simulation),
+                partial(_lay_out, reading, standing, simulation, self._fresh_shocks()),
                 on_done=partial(self._show_plans, wanted),
                 on_failed=self._on_layout_failed,
                 exclusive_key=f"pages of {id(self)}",
@@ -193,6 +198,10 @@ class ReportStation(Station):
     def _fresh_simulation(self) -> Simulation | None:
         document = self.document
         return None if document.simulation_is_stale else document.simulation
+
+    def _fresh_shocks(self) -> ShockTable | None:
+        shocks = self.document.shocks
+        return None if shocks.is_stale else shocks.result
 
     def _await_standing(self) -> None:
         failure = self.document.standing_failure
@@ -351,7 +360,14 @@ class ReportStation(Station):
         simulation = self._fresh_simulation()
         self._writing = self.jobs.start(
             f"Writing {path.name}",
-            partial(self._report, reading, path, standing=standing, simulation=simulation),
+            partial(
+                self._report,
+                reading,
+                path,
+                standing=standing,
+                simulation=simulation,
+                shocks=self._fresh_shocks(),
+            ),
             on_done=partial(self._on_written, reading, standing, simulation),
             on_failed=partial(self._on_failed, path),
             on_cancelled=partial(self._on_cancelled, path),

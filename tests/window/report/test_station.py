@@ -39,6 +39,7 @@ class FakeReport:
         *,
         standing: object,
         simulation: object,
+        shocks: object,
         progress: Callable[[float], None],
         cancel: threading.Event,
     ) -> Path:
@@ -47,7 +48,9 @@ class FakeReport:
                 raise Cancelled
         if self.error is not None:
             raise self.error
-        self.given.append({"book": reading.book, "standing": standing, "simulation": simulation})
+        self.given.append(
+            {"book": reading.book, "standing": standing, "simulation": simulation, "shocks": shocks}
+        )
         path.write_text("a report", encoding="utf-8")
         return path
 
@@ -107,6 +110,16 @@ def test_the_pages_are_those_of_the_book(bench: Bench, qtbot: QtBot) -> None:
     assert bench.station.preview.shown[0] == "Liabilities"
 
 
+def test_shocks_have_their_sheets(bench: Bench, qtbot: QtBot) -> None:
+    _open(bench, qtbot)
+    names = list(bench.station.sheets.table_model.column_values("sheet"))
+    assert {"Shocks", "Shock moves", "Shock rates", "Shock recomputed", "Parallel moves"} <= set(names)
+    bench.document.request_shocks()
+    qtbot.waitUntil(lambda: bench.document.shocks.result is not None and not bench.jobs.running)
+    _write(bench, qtbot)
+    assert bench.report.given[0]["shocks"] is bench.document.shocks.result
+
+
 def test_a_run_brings_its_sheets(bench: Bench, qtbot: QtBot) -> None:
     _open(bench, qtbot, model=True)
     assert bench.station.run_button.isVisible()
@@ -127,6 +140,7 @@ def test_the_report_is_written_with_the_results_at_hand(bench: Bench, qtbot: QtB
     assert given["book"] is bench.document.book
     assert given["standing"] is bench.document.standing
     assert given["simulation"] is None
+    assert given["shocks"] is None
     model = bench.station.runs.table_model
     assert model.rowCount() == 1
     assert model.column_values("file")[0] == "fund_report.xlsx"
