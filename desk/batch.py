@@ -21,7 +21,7 @@ from typing import TYPE_CHECKING
 
 from desk import tasks
 from desk.arguments import COMMANDS, parser, range_faults, target_fault
-from desk.book import Book, Fault, RatesModel, Run, Severity
+from desk.book import Book, Fault, RatesModel, Severity
 from desk.intake.records import Reading
 from desk.report import as_json, as_text
 from desk.report.said_once import further_faults
@@ -439,13 +439,12 @@ _ACTIONS: dict[str, Callable[[argparse.Namespace], int]] = {
 def _with_options(book: Book, options: argparse.Namespace) -> Book:
     """The book with the settings that the command names in place of its own."""
     run = book.run
-    run = Run(
+    run = replace(
+        run,
         paths=run.paths if options.paths is None else options.paths,
         horizon_years=run.horizon_years if options.years is None else options.years,
         steps_per_year=run.steps_per_year if options.steps is None else options.steps,
         seed=run.seed if options.seed is None else options.seed,
-        measure=run.measure,
-        percentiles=run.percentiles,
     )
     model = book.rates_model
     if options.model is not None:

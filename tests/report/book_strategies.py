@@ -25,7 +25,7 @@ from desk.book import (
     Run,
 )
 from desk.book.holding import SWAP_KINDS
-from desk.book.run import MOST_PATHS
+from desk.book.run import MOST_PATHS, MOST_REPLICATES, Bridge, Sampling
 from desk.intake.sheets import SHEETS, find_known, fold
 from desk.rates.day_count import TIME_COUNTS, DayCount, year_fraction
 from tests.report.basis_strategies import TODAY, bases, maybe, names, rates
@@ -199,6 +199,10 @@ def books(draw: st.DrawFn) -> Book:
             seed=draw(st.integers(0, 2**53)),
             measure=draw(st.sampled_from(Measure)),
             percentiles=tuple(sorted(draw(st.sets(st.floats(1e-3, 99.9), min_size=1, max_size=7)))),
+            sampling=draw(st.sampled_from(Sampling)),
+            bridge=draw(st.sampled_from(Bridge)),
+            matching=draw(st.booleans()),
+            replicates=draw(st.integers(2, MOST_REPLICATES)),
         ),
         history=None
         if not history_days
