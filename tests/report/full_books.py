@@ -105,7 +105,7 @@ def full_book() -> Book:
         "Own rate",
         "Lagged",
     )
-    count = 160
+    count = 48
     time = np.concatenate(([0.25, 1.0, 2.0, 50.0, 61.5], generator.uniform(0.02, 58.0, count - 5)))
     lines = [names[number % len(names)] for number in range(count)]
     liabilities = FlowTable.build(

@@ -108,7 +108,7 @@ def plan_bonds(
                 cells.append((Formula(f"=(M{at}-L{at})/basis_point"), "live", "years"))
                 # A yield is one if it gives the price back.
                 away += f"+ABS(I{at}-SUMPRODUCT({mine}*EXP(-L{at}*{time})))"
-                away += f"+ABS(K{at}-SUMPRODUCT({mine}*EXP(-M{at}*{time})))+ABS(N{at}-O{at})*basis_point"
+                away += f"+ABS(K{at}-SUMPRODUCT({mine}*EXP(-M{at}*{time})))+ABS(N{at}-O{at})*100*basis_point"
             plan.put(at, 16, Formula(f"={away}"), "live", "tiny")
             plan.put(at, 17, Formula(f'=IF(P{at}<=check_tolerance*MAX(1,ABS(I{at})),"OK","CHECK")'), "check")
         else:

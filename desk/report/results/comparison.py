@@ -69,7 +69,7 @@ def plan_comparison(
         title_rows="1:3",
     )
     plan.widths = (
-        {1: 42.0, 2: 13.0} | dict.fromkeys(range(3, 9), 19.0) | {9: 10.0} | dict.fromkeys(range(10, 15), 14.0)
+        {1: 42.0, 2: 13.0} | dict.fromkeys(range(3, 9), 19.0) | {9: 10.0} | dict.fromkeys(range(10, 15), 17.0)
     )
     plan.headings(
         [
@@ -137,16 +137,17 @@ def _figure(
         (values[0] - values[1] if is_plain else None, "reported", form),
     ]
     if is_plain and all(places):
-        size = f"MAX(1,ABS(C{row})+ABS(D{row}))"
+        # Each figure has the tolerance of its own check.
+        limits = [place.replace("$E$", "$G$") for place in places]
+        agree = (
+            f"AND(ABS(C{row}-F{row})<={limits[0]},ABS(D{row}-G{row})<={limits[1]},"
+            f"ABS(E{row}-H{row})<={limits[0]}+{limits[1]})"
+        )
         cells += [
             (Formula(f"={places[0]}"), "live", form),
             (Formula(f"={places[1]}"), "live", form),
             (Formula(f"=F{row}-G{row}"), "live", form),
-            (
-                Formula(f'=IF(ABS(E{row}-H{row})<=2*check_tolerance*{size},"OK","CHECK")'),
-                "check",
-                "text",
-            ),
+            (Formula(f'=IF({agree},"OK","CHECK")'), "check", "text"),
         ]
     else:
         live = Formula(f'=IF(ABS(E{row}-(C{row}-D{row}))<=check_tolerance*MAX(1,ABS(C{row})),"OK","CHECK")')

@@ -26,7 +26,7 @@ COLLAR_ROWS = 4_000
 """Years of collared growth that are shown one by one; above it the growth of such rows is a value."""
 _GRID_YEARS = 100
 _NO_DEVIATION = "1E-30"
-_NEAR = 1e-9
+_NEAR, _LEAST_DEVIATION = 1e-9, 1e-5
 
 
 @dataclass(frozen=True)
@@ -354,21 +354,22 @@ def _collars(
 
 
 def _is_smooth(indexation: Indexation, inflation: Inflation, flows: PricedFlows) -> bool:
-    """Whether growth has one slope everywhere."""
-    if inflation.volatility > 0.0 or not flows.time.size:
+    """Whether growth has one slope everywhere, and rounding does not show in it."""
+    deviation = inflation.volatility
+    if deviation > _LEAST_DEVIATION or not flows.time.size:
         return True
+    last = float(flows.time.max())
     if indexation.kind is IndexationKind.COLLARED:
-        ends = np.arange(0.0, min(float(np.ceil(flows.time.max())), 1000.0) + 1.0)
-        log = log_growth(ends, curve=inflation.curve, recent_rate=inflation.recent_rate, lag=indexation.lag)
-        mean = np.expm1(np.diff(log))
+        ends = np.arange(0.0, min(float(np.ceil(last)), 1000.0) + 1.0)
         edges = [edge for edge in (indexation.floor, indexation.cap) if edge is not None]
-        return all(bool((np.abs(mean - edge) > _NEAR).all()) for edge in edges)
-    if indexation.least:
-        log = log_growth(
-            flows.time, curve=inflation.curve, recent_rate=inflation.recent_rate, lag=indexation.lag
-        )
-        return bool((np.abs(log - np.log(indexation.least)) > _NEAR).all())
-    return True
+    elif indexation.least:
+        ends, edges = flows.time, [float(np.log(indexation.least))]
+        deviation *= float(np.sqrt(last))
+    else:
+        return True
+    log = log_growth(ends, curve=inflation.curve, recent_rate=inflation.recent_rate, lag=indexation.lag)
+    level = np.expm1(np.diff(log)) if indexation.kind is IndexationKind.COLLARED else log
+    return all(bool((np.abs(level - edge) > _NEAR + 10.0 * deviation).all()) for edge in edges)
 
 
 def _collar(

@@ -60,7 +60,7 @@ def add_growth(further: FurtherColumns, flows: PricedFlows, growth: Growth, *, c
     )  # fmt: skip
     further.add(
         FurtherColumn(
-            "growth_number", "Growth [number; 0 = none]", "reported", "whole",
+            "growth_number", "Growth number [0 = none]", "reported", "whole",
             lambda row, number: places[of_row[number]].number if of_row[number] >= 0 else 0, width=11.0,
         )
     )  # fmt: skip
