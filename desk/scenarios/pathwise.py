@@ -42,6 +42,7 @@ class PathValues:
         self._visits: dict[int, list[tuple[int, Worth]]] = {}
         self.value = np.zeros((len(sides), plan.paths))
         self.surface_error = 0.0
+        self.revalued = ""
         for side, flows in enumerate(sides):
             self._add(side, flows)
 

@@ -23,7 +23,7 @@ MOST_BYTES = 2_000_000_000
 
 # Numbers a path: present values of both sides and the surplus, and what summing up a node takes beside the
 # samples themselves, as measured.
-_SUMMED = 7
+_SUMMED = 8
 _SLACK = 1e-9
 
 

@@ -3,10 +3,14 @@
 from __future__ import annotations
 
 from dataclasses import dataclass
+from typing import TYPE_CHECKING
 
 from desk.book import Fault, Measure, Provenance
 from desk.book.arrays import FloatArray, IntArray
 from desk.scenarios.sampling_records import Convergence, SamplingGain
+
+if TYPE_CHECKING:
+    from desk.scenarios.market_records import Diagnostics, IndexSummary, RiskySummary
 
 __all__ = ["ClosedForm", "Distribution", "Histogram", "NodeSummary", "Repricing", "Simulation"]
 
@@ -174,6 +178,11 @@ class Simulation:
         Of a variance-reduced run, for the same figures; empty for a plain one.
     replicates : int
         Independent ones among which the paths are shared equally; 1 for a plain run.
+    risky : RiskySummary or None
+        None where the book has no risky assets.
+    index : IndexSummary or None
+        None where inflation is not drawn.
+    diagnostics : Diagnostics or None
     """
 
     model: str
@@ -193,3 +202,6 @@ class Simulation:
     convergence: tuple[Convergence, ...] = ()
     gains: tuple[SamplingGain, ...] = ()
     replicates: int = 1
+    risky: RiskySummary | None = None
+    index: IndexSummary | None = None
+    diagnostics: Diagnostics | None = None

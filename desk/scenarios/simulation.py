@@ -10,16 +10,18 @@ from functools import partial
 import numpy as np
 
 from desk import __version__
-from desk.book import Book, Fault, PricedFlows, Provenance, Run, Sampling, Severity
+from desk.book import Book, Fault, PricedFlows, Provenance, RiskyAssets, Run, Sampling, Severity
 from desk.book.arrays import FloatArray, owned_floats
 from desk.scenarios.convergence import converging, headline_figures, sampling_gain
-from desk.scenarios.draws import BLOCK_PATHS, GENERATOR, Block, Crew, Plan, default_threads
+from desk.scenarios.diagnostics import RatePairs, diagnostics
+from desk.scenarios.draws import BLOCK_PATHS, GENERATOR, Block, Crew, Paths, Plan, default_threads
+from desk.scenarios.market_samples import MarketSamples
+from desk.scenarios.node_summaries import lognormal_form, node_summary
 from desk.scenarios.pathwise import PathValues, curve_value
 from desk.scenarios.plans import planned_run
 from desk.scenarios.records import (
     ClosedForm,
     Distribution,
-    NodeSummary,
     Repricing,
     Simulation,
 )
@@ -71,7 +73,9 @@ def simulate(
     # Values too large for a float are reported as a fault, not as a warning.
     with np.errstate(over="ignore", invalid="ignore", under="ignore", divide="ignore"):
         values = PathValues(plan, (assets, liabilities))
-        collected = _collect(plan, values, run.percentiles, progress, threads or default_threads())
+        collected = _collect(
+            plan, book.risky_assets, values, run.percentiles, progress, threads or default_threads()
+        )
         year = plan.time[[0, *plan.reported_steps]]
         present_value = _present_values(plan, (assets, liabilities), collected.sides, run.percentiles)
         result = Simulation(
@@ -81,8 +85,8 @@ def simulate(
             steps_per_year=plan.steps_per_year,
             horizon_years=math.ceil(year[-1]),
             seed=run.seed,
-            savings_account=_node_summary(year, collected.accounts, run.percentiles),
-            short_rate=_node_summary(year, collected.rates, run.percentiles),
+            savings_account=node_summary(year, collected.accounts, run.percentiles),
+            short_rate=node_summary(year, collected.rates, run.percentiles),
             closed_form=_closed_form(plan, year, run.percentiles),
             repricing=_repricing(plan, year, collected.discounts),
             present_value=present_value,
@@ -97,6 +101,9 @@ def simulate(
             convergence=tuple(collected.convergence),
             gains=tuple(collected.gains),
             replicates=1 if plan.replicates is None else plan.replicates.count,
+            risky=collected.beside.risky(year, planned.mended),
+            index=collected.beside.index(year, values.revalued),
+            diagnostics=diagnostics(plan, collected.pairs, year),
         )
     if progress is not None:
         progress(1.0)
@@ -114,10 +121,13 @@ class _Collected:
     shown: FloatArray
     convergence: list[Convergence]
     gains: list[SamplingGain]
+    beside: MarketSamples
+    pairs: RatePairs
 
 
 def _collect(
     plan: Plan,
+    assets: RiskyAssets | None,
     values: PathValues,
     levels: Sequence[float],
     progress: Callable[[float], None] | None,
@@ -130,10 +140,12 @@ def _collect(
     """
     nodes = plan.reported_steps
     years = len(nodes)
-    groups = list(plan.rounds(nodes))
+    groups = list(plan.rounds(nodes, quantities=MarketSamples.quantities(plan)))
     today = float(plan.model.curve.forward(0.0, 0.0))
     replicates = 1 if plan.replicates is None else plan.replicates.count
     summing_up = Summing(levels, plan.paths, replicates)
+    beside, pairs = MarketSamples(plan, assets, summing_up, len(groups[0])), RatePairs(plan)
+    visit = partial(_visit, (values, pairs))
     accounts, rates = [summing_up.certain(1.0)], [summing_up.certain(today)]
     discounts = [Moments(1.0, 0.0, 0.0, 0.0)]
     shown = np.zeros((min(_SHOWN, plan.paths), years + 1))
@@ -145,7 +157,8 @@ def _collect(
         buffer = np.empty((2, len(groups[0]), plan.paths))
         for group in groups:
             log_account, rate = buffer[0, : len(group)], buffer[1, : len(group)]
-            crew.grouped(blocks, partial(_advance, group, log_account, rate, values, crew))
+            crew.grouped(blocks, partial(_advance, group, log_account, rate, beside, visit, crew))
+            beside.gather(log_account, crew)
             shown[:, len(accounts) : len(accounts) + len(group)] = log_account[:, : len(shown)].T
             if group is groups[-1]:
                 np.exp(log_account[-1], out=account_at_end)
@@ -156,7 +169,7 @@ def _collect(
             crew.add(summing * len(group))
         if nodes[-1] < plan.steps:
             # A set may go on beyond what is reported: its rates discount flows until its end.
-            crew.grouped(blocks, partial(_finish, plan.steps, values, crew))
+            crew.grouped(blocks, partial(_finish, plan.steps, visit, crew))
         surplus = values.value[0] - values.value[1]
         figures = headline_figures(account_at_end, (*values.value, surplus))
         matched = plan.replicates is not None and plan.replicates.matching
@@ -165,66 +178,42 @@ def _collect(
         gain = partial(sampling_gain, replicates=replicates)
         gains = crew.run([partial(gain, figure) for figure in figures]) if replicates > 1 else []
         sides = crew.run([partial(summing_up.sample, row) for row in (*values.value, surplus)])
-    return _Collected(accounts, rates, discounts, sides, shown, convergence, gains)
+    return _Collected(accounts, rates, discounts, sides, shown, convergence, gains, beside, pairs)
+
+
+def _visit(observers: Sequence[PathValues | RatePairs], step: int, paths: Paths) -> None:
+    for observer in observers:
+        observer.visit(step, paths)
 
 
 def _advance(
     group: Sequence[int],
     log_account: FloatArray,
     rate: FloatArray,
-    values: PathValues,
+    beside: MarketSamples,
+    visit: Callable[[int, Paths], None],
     crew: Crew,
     block: Block,
 ) -> None:
-    block.advance(group, log_account, rate, visit=values.visit, crew=crew)
-
-
-def _finish(step: int, values: PathValues, crew: Crew, block: Block) -> None:
-    nothing = np.empty((0, 0))
-    block.advance((), nothing, nothing, visit=values.visit, crew=crew, until=step)
-
-
-def _node_summary(year: FloatArray, samples: list[Sample], levels: tuple[float, ...]) -> NodeSummary:
-    intervals = np.array([sample.interval for sample in samples])
-    return NodeSummary(
-        year=owned_floats(year),
-        mean=owned_floats([sample.moments.mean for sample in samples]),
-        mean_se=owned_floats([sample.moments.mean_se for sample in samples]),
-        sd=owned_floats([sample.moments.sd for sample in samples]),
-        sd_se=owned_floats([sample.moments.sd_se for sample in samples]),
-        levels=levels,
-        percentile=owned_floats([sample.percentile for sample in samples]),
-        percentile_low=owned_floats(intervals[:, :, 0]),
-        percentile_high=owned_floats(intervals[:, :, 1]),
-        histograms=tuple(sample.histogram for sample in samples),
-        percentile_se=owned_floats([sample.percentile_se for sample in samples]),
-        tail_mean=owned_floats([sample.tail_mean for sample in samples]),
-        tail_mean_se=owned_floats([sample.tail_mean_se for sample in samples]),
+    block.advance(
+        group,
+        log_account,
+        rate,
+        visit=visit,
+        crew=crew,
+        excess=beside.excess,
+        log_index=beside.log_index,
     )
+
+
+def _finish(step: int, visit: Callable[[int, Paths], None], crew: Crew, block: Block) -> None:
+    nothing = np.empty((0, 0))
+    block.advance((), nothing, nothing, visit=visit, crew=crew, until=step)
 
 
 def _closed_form(plan: Plan, year: FloatArray, levels: tuple[float, ...]) -> ClosedForm | None:
-    from scipy.special import ndtr, ndtri
-
     law = plan.model.account_law(year, real_world=plan.real_world)
-    if law is None:
-        return None
-    mean, variance = law
-    level = mean + 0.5 * variance
-    share = np.asarray(levels) / 100.0
-    normal = np.asarray(ndtri(share), dtype=np.float64)
-    deviation = np.sqrt(variance)[:, None]
-    # E[R; R <= q] = E[R] Φ(z - s) for the quantile q with normal z: below a percentile, or above it.
-    upper = share >= 0.5
-    part = ndtr(np.where(upper, deviation - normal, normal - deviation)) / np.where(upper, 1.0 - share, share)
-    return ClosedForm(
-        log_mean=owned_floats(mean),
-        log_variance=owned_floats(variance),
-        mean=owned_floats(np.exp(level)),
-        sd=owned_floats(np.exp(level) * np.sqrt(np.expm1(variance))),
-        percentile=owned_floats(np.exp(mean[:, None] + deviation * normal)),
-        tail_mean=owned_floats(np.exp(level)[:, None] * part),
-    )
+    return None if law is None else lognormal_form(*law, levels)
 
 
 def _repricing(plan: Plan, year: FloatArray, discounts: list[Moments]) -> Repricing:
@@ -281,7 +270,7 @@ def _faults(horizon: int, sides: tuple[PricedFlows, PricedFlows], collected: _Co
             )
         )
     samples = (*collected.accounts, *collected.rates, *collected.sides)
-    if not all(math.isfinite(sample.moments.mean) for sample in samples):
+    if not all(math.isfinite(sample.moments.mean) for sample in samples) or not collected.beside.is_finite:
         faults.append(
             Fault(
                 found="some values along the paths are too large for the computer's numbers",
