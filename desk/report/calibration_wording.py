@@ -51,17 +51,13 @@ class FigureWording:
 _RATE = "% a year"
 _WORDING = {
     "mean_reversion": FigureWording(
-        "Mean reversion", "a year", "Part of the distance to its level that a rate makes up in a year."
+        "Mean reversion", "a year", "Part of the way to its level made up in a year."
     ),
     "volatility": FigureWording(
-        "Volatility", _RATE, "Standard deviation of a year's move of the short rate.", is_rate=True
+        "Volatility", _RATE, "Deviation of a year's move of the short rate.", is_rate=True
     ),
-    "long_run_rate": FigureWording(
-        "Long-run rate", _RATE, "Level that the rate goes back to, continuously compounded.", is_rate=True
-    ),
-    "starting_rate": FigureWording(
-        "Starting rate", _RATE, "Short rate at the last date, continuously compounded.", is_rate=True
-    ),
+    "long_run_rate": FigureWording("Long-run rate", _RATE, "Level that the rate goes back to.", is_rate=True),
+    "starting_rate": FigureWording("Starting rate", _RATE, "Short rate at the last date.", is_rate=True),
     "second_mean_reversion": FigureWording("Second mean reversion", "a year", "Of the second factor."),
     "second_volatility": FigureWording("Second volatility", _RATE, "Of the second factor.", is_rate=True),
     "factor_correlation": FigureWording("Factor correlation", "", "Between the moves of the two factors."),
@@ -73,18 +69,16 @@ _WORDING = {
         "Real-world long-run rate", _RATE, "Level that the rate goes back to in the real world.", is_rate=True
     ),
     "measurement_error": FigureWording(
-        "Error of a yield", _RATE, "Standard deviation of what the factors leave unexplained.", is_rate=True
+        "Error of a yield", _RATE, "Deviation of what is left unexplained.", is_rate=True
     ),
-    "half_life": FigureWording(
-        "Half-life", "years", "Time in which half the distance to its level is made up."
-    ),
+    "half_life": FigureWording("Half-life", "years", "Time to make up half the way to its level."),
     "stationary_deviation": FigureWording(
-        "Long-run deviation", _RATE, "Standard deviation of the rate in the long run.", is_rate=True
+        "Long-run deviation", _RATE, "Deviation of the rate in the long run.", is_rate=True
     ),
     "corrected_mean_reversion": FigureWording(
         "Mean reversion less its bias",
         "a year",
-        "The estimate less what estimates from as many years come out too high by.",
+        "Less what such estimates are too high by.",
     ),
 }
 _ROOT_VOLATILITY = FigureWording(
@@ -132,7 +126,7 @@ def residual_lines(tests: ResidualTests) -> Sequence[ResidualLine]:
             "Ljung-Box",
             tests.ljung_box,
             tests.ljung_box_p,
-            "Residuals follow one another: one factor is few.",
+            "Residuals follow one another: the rate has more memory.",
         ),
         ResidualLine(
             "Ljung-Box of squares",

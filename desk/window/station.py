@@ -141,6 +141,8 @@ class Station(QWidget):
         self._is_outdated = True
         self._waits_to_go_home = False
         self._focus_left: QWidget | None = None
+        self._instead: QWidget | None = None
+        self._put_away: list[QWidget] = []
         self._refreshing = QTimer(self, singleShot=True, interval=0)
         self._refreshing.timeout.connect(self.refresh_now)
 
@@ -237,6 +239,35 @@ class Station(QWidget):
         place = self._heading_row.count() - 1
         self._heading_row.insertWidget(place, widget, 0, Qt.AlignmentFlag.AlignVCenter)
 
+    def show_instead(self, page: QWidget) -> None:
+        """Put a page in the place of everything under the heading, until `show_again`."""
+        if self._instead is not None:
+            return
+        column = self.layout()
+        if isinstance(column, QVBoxLayout) and column.indexOf(page) < 0:
+            column.addWidget(page, 1)
+        self._instead = page
+        own = [self.strip, self._stack]
+        for place in range(2, self._heading_row.count()):
+            item = self._heading_row.itemAt(place)
+            widget = None if item is None else item.widget()
+            if widget is not None:
+                own.append(widget)
+        self._put_away = [part for part in own if not part.isHidden()]
+        for part in self._put_away:
+            part.hide()
+        page.show()
+
+    def show_again(self) -> None:
+        """Show the station's own again."""
+        if self._instead is None:
+            return
+        self._instead.hide()
+        self._instead = None
+        for part in self._put_away:
+            part.show()
+        self.request_refresh()
+
     def set_next(self, key: str, title: str, purpose: str) -> None:
         """Offer the station that the work goes on to, while this one has something to show."""
         self._next = key
@@ -279,7 +310,9 @@ class Station(QWidget):
     def focus_home(self) -> None:
         """Give the keyboard to what the reader came for: the step an empty station offers, or `home`."""
         target = self.empty.button if self.is_empty else self.home()
-        if target is not None and target.isVisible() and target.isEnabled():
+        if self._instead is not None:
+            focus_first(self._instead)
+        elif target is not None and target.isVisible() and target.isEnabled():
             target.setFocus(Qt.FocusReason.ShortcutFocusReason)
         else:
             focus_first(self)

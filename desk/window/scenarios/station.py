@@ -28,6 +28,7 @@ from desk.window.parts.boxes import TickBox
 from desk.window.parts.fields import Combo
 from desk.window.parts.labels import well_broken
 from desk.window.parts.theme import STEP, WIDE, ThemeSwitch, keep_look
+from desk.window.scenarios.fitting_door import FittingDoor
 from desk.window.scenarios.form import RunForm
 from desk.window.scenarios.pictures import FanPicture, HistogramPicture, ValuesPicture
 from desk.window.scenarios.tables import PercentilesTable, RepricingTable, ValuesTable, run_sentence
@@ -78,6 +79,7 @@ class ScenariosStation(Station):
             cancel=document.cancel_simulation,
         )
         self._make_controls()
+        self.fitting = FittingDoor(self)
         self.fan = FanPicture(theme_switch)
         self.histogram = HistogramPicture(theme_switch)
         self.percentiles = PercentilesTable(theme_switch)
@@ -200,6 +202,8 @@ class ScenariosStation(Station):
 
     def refresh(self) -> None:
         """Show the run of the open book, and say where it is stale."""
+        if self.fitting.follow():
+            return
         document = self.document
         book = document.book
         if book is None:
