@@ -64,7 +64,8 @@ def read_shocks(
     targets = cells["Applies to"].texts_of("what the move applies to", required=False)
     sources = cells["Source"].texts_of("a source", required=False)
     sets = cells["Set"].texts_of("a set", required=False)
-    compoundings = cells["Compounding"].choices(Compounding, "a compounding", required=False)
+    stated = cells["Compounding"].choices(Compounding, "a compounding", required=False)
+    compoundings = [each or "" for each in stated]
 
     cells["Shock"].each(
         ~states,
@@ -108,9 +109,7 @@ def read_shocks(
         check_together(cells, members, kinds, term)
         source = _one_of(cells["Source"], members, sources, "source")
         moves = _moves(cells["Term"], members, kinds, size, term, targets)
-        compounding = _one_of(
-            cells["Compounding"], members, [each or "" for each in compoundings], "compounding"
-        )
+        compounding = _one_of(cells["Compounding"], members, compoundings, "compounding")
         shocks.append(
             Shock(
                 name,
