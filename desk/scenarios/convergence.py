@@ -10,7 +10,7 @@ from enum import Enum, auto
 import numpy as np
 
 from desk.book.arrays import FloatArray, owned_floats, owned_integers
-from desk.scenarios.replicates import replicate_error, student_reach
+from desk.scenarios.replicates import replicate_error, replicate_quantile, student_reach
 from desk.scenarios.sampling_records import Convergence, SamplingGain
 from desk.scenarios.summaries import quantile_error, quantile_interval, rank_interval, sorted_quantile
 
@@ -93,8 +93,9 @@ def converging(headline: Headline, *, replicates: int = 1, is_matched: bool = Fa
         if chosen.size > 1 and (not rows or chosen.size > rows[-1][0]):
             rows.append((chosen.size, *_estimate(chosen, headline.statistic, is_plain=replicates == 1)))
     if not rows:
-        value = float(_statistic(headline.values, headline.statistic))
-        rows.append((headline.values.size, value, math.nan, math.nan, math.nan))
+        (only,) = headline.values
+        value = float(only < 0.0) if headline.statistic is Statistic.BELOW_ZERO else float(only)
+        rows.append((1, value, math.nan, math.nan, math.nan))
     columns = list(zip(*rows, strict=True))
     return Convergence(
         headline.figure, headline.is_money, owned_integers(columns[0]), *map(owned_floats, columns[1:])
@@ -113,26 +114,23 @@ def _first_part(values: FloatArray, part: int, replicates: int, is_matched: bool
     return apart[:, : 2 * (apart.shape[1] // (2 * part))]
 
 
-def _statistic(values: FloatArray, statistic: Statistic) -> FloatArray:
-    """Along the last axis."""
-    match statistic:
-        case Statistic.MEAN:
-            return np.asarray(values.mean(axis=-1))
-        case Statistic.LOW_QUANTILE:
-            return np.asarray(sorted_quantile(np.sort(values, axis=-1), [_LOW_SHARE])[..., 0])
-        case Statistic.BELOW_ZERO:
-            return np.asarray(np.count_nonzero(values < 0.0, axis=-1) / values.shape[-1])
+def _mean(values: FloatArray, statistic: Statistic) -> FloatArray:
+    """Of the values, or of what is 1 below 0 and 0 otherwise, along the last axis."""
+    if statistic is Statistic.MEAN:
+        return np.asarray(values.mean(axis=-1))
+    return np.asarray(np.count_nonzero(values < 0.0, axis=-1) / values.shape[-1])
 
 
 def _estimate(
     values: FloatArray, statistic: Statistic, *, is_plain: bool
 ) -> tuple[float, float, float, float]:
     """A figure, its standard error and its interval."""
-    whole = values if is_plain else np.ravel(values)
     if is_plain:
-        return _plain_estimate(whole, statistic)
-    value = float(_statistic(whole, statistic))
-    error = float(replicate_error(_statistic(values, statistic), value))
+        return _plain_estimate(values, statistic)
+    if statistic is Statistic.LOW_QUANTILE:
+        return replicate_quantile(values, np.sort(values, axis=None), _LOW_SHARE)
+    means = _mean(values, statistic)
+    value, error = float(means.mean()), float(replicate_error(means))
     reach = student_reach(len(values)) * error
     return value, error, value - reach, value + reach
 
@@ -150,7 +148,7 @@ def _plain_estimate(values: FloatArray, statistic: Statistic) -> tuple[float, fl
             value, error = _quantile_and_error(ordered)
             return value, error, *quantile_interval(ordered, rank_interval(count, _LOW_SHARE))
         case Statistic.BELOW_ZERO:
-            share = float(_statistic(values, statistic))
+            share = float(_mean(values, statistic))
             return share, math.sqrt(share * (1.0 - share) / count), *_share_interval(share, count)
 
 

@@ -1,11 +1,18 @@
 """Samples of one run summed up, with errors that are right whether or not the paths are independent.
 
 Paths of a variance-reduced run depend on each other within a replicate, and the replicates are independent.
-Every figure is that of all paths together; its error comes from how far the same figure of each replicate is
-from it, and its interval from Student's law with one degree of freedom less than there are replicates.
-Asmussen, S. and Glynn, P.W. (2007), Stochastic Simulation, section III.5 (sectioning); Nakayama, M.K. (2014),
-Confidence intervals for quantiles using sectioning when applying variance-reduction techniques, ACM
-Transactions on Modeling and Computer Simulation 24(4).
+Every figure is that of all paths together. Each is a mean over the paths, or moves as one does, and the means
+of the replicates tell its error:
+
+* a standard deviation as the mean of the squares about the mean does;
+* the quantile at p as the share of paths at or under it does: from the error of that share to either side of
+  p the quantile is read again. Woodruff, R.S. (1952), Confidence intervals for medians and other position
+  measures, J. American Statistical Association 47;
+* a tail mean m at the quantile q as ``q + mean (x - q)⁺/p`` does, which q does not move to first order.
+  Rockafellar, R.T. and Uryasev, S. (2000), Optimization of conditional value-at-risk, J. Risk 2(3).
+
+Intervals are those of Student's law with one degree of freedom less than there are replicates. Asmussen, S.
+and Glynn, P.W. (2007), Stochastic Simulation, section III.5.
 """
 
 from __future__ import annotations
@@ -30,7 +37,14 @@ from desk.scenarios.summaries import (
     tail_mean_error,
 )
 
-__all__ = ["Sample", "Summing", "replicate_error", "student_reach"]
+__all__ = [
+    "Sample",
+    "Summing",
+    "replicate_error",
+    "replicate_quantile",
+    "replicate_tail_error",
+    "student_reach",
+]
 
 
 @dataclass(frozen=True)
@@ -68,18 +82,46 @@ def student_reach(replicates: int) -> float:
     return float(stdtrit(replicates - 1, 0.975))
 
 
-def replicate_error(results: FloatArray, whole: FloatArray | float) -> FloatArray:
-    """Standard error of a figure of all paths from the same figure of each replicate.
+def replicate_error(means: FloatArray) -> FloatArray:
+    """Standard error of the mean of replicates.
 
     Parameters
     ----------
-    results : ndarray, shape (r, ...)
+    means : ndarray, shape (r, ...)
         Of each of r replicates.
-    whole : ndarray, shape (...)
-        Of all paths together.
     """
-    count = len(results)
-    return np.asarray(np.sqrt(np.sum((results - whole) ** 2, axis=0) / (count * (count - 1.0))))
+    return np.asarray(means.std(axis=0, ddof=1) / math.sqrt(len(means)))
+
+
+def replicate_quantile(
+    apart: FloatArray, ordered: FloatArray, share: float
+) -> tuple[float, float, float, float]:
+    """A quantile of all paths, its standard error and its 95 % interval.
+
+    Parameters
+    ----------
+    apart : ndarray, shape (r, n)
+        The values of each replicate.
+    ordered : ndarray, shape (r n,)
+        All of them, sorted.
+    share : float
+        Between 0 and 1.
+    """
+    value = float(sorted_quantile(ordered, share))
+    under = np.count_nonzero(apart <= value, axis=1) / apart.shape[1]
+    # Shares that are all alike leave the quantile free between two neighbours.
+    error = max(float(replicate_error(under)), 1.0 / ordered.size)
+    reach = student_reach(len(apart)) * error
+    places = np.clip(share + np.array([-error, error, -reach, reach]), 0.0, 1.0)
+    first, last, low, high = sorted_quantile(ordered, places).tolist()
+    return value, 0.5 * (last - first), low, high
+
+
+def replicate_tail_error(apart: FloatArray, value: float, share: float) -> float:
+    """Standard error of the mean of the values at and beyond the quantile `value` at `share`."""
+    lower = share < 0.5
+    beyond = np.minimum(apart - value, 0.0) if lower else np.maximum(apart - value, 0.0)
+    return float(replicate_error(beyond.mean(axis=1))) / (share if lower else 1.0 - share)
 
 
 class Summing:
@@ -103,7 +145,6 @@ class Summing:
         self.replicates = replicates
         self._shares = np.asarray(self.levels) / 100.0
         self._ranks = [rank_interval(paths, share) for share in self._shares] if replicates == 1 else []
-        self._reach = student_reach(replicates) if replicates > 1 else math.nan
 
     def moments(self, row: FloatArray) -> Moments:
         """Mean and standard deviation of a sample, shape (paths,), in the order of the paths."""
@@ -111,24 +152,21 @@ class Summing:
         if self.replicates == 1:
             return whole
         apart = row.reshape(self.replicates, -1)
-        deviation = apart.std(axis=1, ddof=1)
-        return Moments(
-            whole.mean,
-            float(replicate_error(apart.mean(axis=1), whole.mean)),
-            whole.sd,
-            float(replicate_error(deviation, whole.sd)),
-        )
+        error = float(replicate_error(apart.mean(axis=1)))
+        parts = apart - whole.mean
+        reach = max(float(parts.max()), -float(parts.min()))
+        if not (math.isfinite(reach) and whole.sd > 0.0):
+            return Moments(whole.mean, error, whole.sd, whole.sd_se)
+        # In units of the largest part squares of any sample fit a float.
+        parts /= reach
+        parts *= parts
+        spread = reach * float(replicate_error(parts.mean(axis=1)))
+        return Moments(whole.mean, error, whole.sd, 0.5 * spread / (whole.sd / reach))
 
     def sample(self, row: FloatArray) -> Sample:
-        """Sum up a sample, shape (paths,), in the order of the paths; `row` is left sorted."""
+        """Sum up a sample, shape (paths,), in the order of the paths, in which it is not left."""
         found = self.moments(row)
-        apart = None
-        if self.replicates > 1:
-            apart = row.reshape(self.replicates, -1)
-            apart.sort(axis=1)
-            apart_percentile = sorted_quantile(apart, self._shares)
-            apart_tail = np.stack([tail_mean(apart, share) for share in self._shares], axis=1)
-            apart_below = np.count_nonzero(apart < 0.0, axis=1) / apart.shape[1]
+        apart = row.copy().reshape(self.replicates, -1) if self.replicates > 1 else None
         row.sort()
         percentile = sorted_quantile(row, self._shares)
         tail = np.array([float(tail_mean(row, share)) for share in self._shares])
@@ -136,21 +174,24 @@ class Summing:
         if apart is None:
             error = quantile_error(row, self._shares)
             interval = tuple(quantile_interval(row, pair) for pair in self._ranks)
-            tail_error = np.array([tail_mean_error(row, share) for share in self._shares])
+            tail_error = [tail_mean_error(row, share) for share in self._shares]
             below_error = math.sqrt(below * (1.0 - below) / row.size) if row.size > 1 else math.nan
         else:
-            error = replicate_error(apart_percentile, percentile)
-            reach = self._reach * error
-            interval = tuple(zip((percentile - reach).tolist(), (percentile + reach).tolist(), strict=True))
-            tail_error = replicate_error(apart_tail, tail)
-            below_error = float(replicate_error(apart_below, below))
+            quantiles = [replicate_quantile(apart, row, share) for share in self._shares]
+            error = np.array([one[1] for one in quantiles])
+            interval = tuple((low, high) for _, _, low, high in quantiles)
+            tail_error = [
+                replicate_tail_error(apart, value, share)
+                for value, share in zip(percentile.tolist(), self._shares.tolist(), strict=True)
+            ]
+            below_error = float(replicate_error(np.count_nonzero(apart < 0.0, axis=1) / apart.shape[1]))
         return Sample(
             moments=found,
             percentile=percentile,
             percentile_se=error,
             interval=interval,
             tail_mean=tail,
-            tail_mean_se=tail_error,
+            tail_mean_se=np.array(tail_error),
             histogram=histogram(row),
             below_zero=below,
             below_zero_se=below_error,
