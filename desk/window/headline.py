@@ -191,8 +191,11 @@ class Headline(QWidget):
             document.what_if.changed,
         ):
             signal.connect(self.refresh)
-        theme_switch.changed.connect(lambda _: self.update())
+        theme_switch.changed.connect(self._on_theme)
         self.refresh()
+
+    def _on_theme(self, _theme: Theme) -> None:
+        self.update()
 
     @property
     def buttons(self) -> tuple[FigureButton, ...]:

@@ -50,11 +50,22 @@ def keys(stations: tuple[StationEntry, ...]) -> str:
         ("Ctrl+Z, Ctrl+Shift+Z", "Undo and redo"),
         ("Ctrl+C, Ctrl+Shift+C", "In a table: copy as shown, or with full precision"),
         ("Ctrl+V", "In a table that takes it: paste from a spreadsheet"),
-        ("Insert, Delete", "In the quotes of the curve: add and remove"),
+        ("Ctrl+Return", "In the lines of Standing: the terms of the line"),
+        (
+            "Insert, Delete",
+            "In quotes of the curve, spreads by term, shocks of your own and their moves: add and remove",
+        ),
+        ("Ctrl+Tab", "In Standing and Shocks: the next of the tabs"),
+        ("↑ ↓", "In the picture of shocks: from one to the next; in that of two moves: along the second"),
+        ("0", "In a slider of the what-if: back to nothing"),
         ("Return", "In a table: open the row, or edit the cell"),
         ("← →", "In a picture: read the values along the axis"),
         ("+ − 0", "In a picture: closer, further, the whole"),
-        ("Escape", "In a field: take the entry back; in the flows of a line: back to the lines"),
+        (
+            "Escape",
+            "In a field: take the entry back; in the flows of a line: back to the lines; in Shocks: put the "
+            "what-if back",
+        ),
         ("Ctrl+Q", "Quit"),
     ]
     rows = "".join(

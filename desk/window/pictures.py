@@ -27,6 +27,7 @@ from desk.window.stations import all_stations
 
 if TYPE_CHECKING:
     from desk.window.main_window import MainWindow
+    from desk.window.parts.plots import Picture
     from desk.window.station import Station
 
 __all__ = ["draw_all", "draw_window", "main"]
@@ -75,60 +76,67 @@ def draw_all(reading: Reading, standing: Standing, simulation: Simulation | None
                 document.run_simulation()
             _wait(lambda: not jobs.running)
             written: list[Path] = []
-            drawn: list[Station] = []  # pyqtgraph does not bear that one is collected while the next is made
+            stations: list[Station] = []
+            taken: list[Picture] = []
             for entry in all_stations():
                 if entry.key == "scenarios" and simulation is None:
                     continue
                 station = entry.load()(document, jobs, switch)
-                drawn.append(station)
-                written += _draw_station(station, jobs, folder)
-                station.close()
-                station.deleteLater()
+                stations.append(station)
+                written += _draw_station(station, jobs, folder, taken)
+                station.hide()
+            for drawn in (*taken, *stations):
+                drawn.close()
+                drawn.deleteLater()
         finally:
             document.stop()
             jobs.shutdown()
         return written
 
 
-def _draw_station(station: Station, jobs: Jobs, folder: Path) -> list[Path]:
-    """The pictures of one station, also those that stand on parts of it that are not seen at first."""
+def _draw_station(station: Station, jobs: Jobs, folder: Path, taken: list[Picture]) -> list[Path]:
+    """The pictures of one station, also those on parts of it that are not seen at first.
+
+    They are `taken` out of it, and live on: pyqtgraph does not bear that one is destroyed while the next one
+    is made, and the station goes on to show and to hide them.
+    """
+    from desk.window.parts.plots import Picture
+
     station.setAttribute(Qt.WidgetAttribute.WA_DontShowOnScreen)
     station.show()
     station.refresh_now()
     _wait(lambda: not jobs.running)
     written: list[Path] = []
-    drawn: set[str] = set()
+    names: set[str] = set()
+    own: list[Picture] = []
     for view in (None, *station.views()):
         if view is not None:
             view()
             _wait(lambda: not jobs.running)
             station.refresh_now()
             _settle()
-        written += _draw_seen(station, folder, drawn)
-    return written
-
-
-def _draw_seen(station: Station, folder: Path, drawn: set[str]) -> list[Path]:
-    """The pictures of a station that are seen now and were not `drawn` under that name before."""
-    from desk.window.parts.plots import Picture
-
-    written = []
-    for picture in [one for one in station.findChildren(Picture) if one.isVisible()]:
-        name = re.sub(r"[^a-z0-9]+", "-", picture.title.casefold()).strip("-") or "picture"
-        if name in drawn:
-            continue
-        drawn.add(name)
-        # It has the same shape whatever room the station gives it. It stays where it is: one that is taken
-        # out could not be shown again, and one that is destroyed may take the next one with it.
-        former = picture.size()
-        picture.resize(_SIZE)
-        _settle()
-        picture.settle()
-        for ending in ("png", "svg"):
-            path = folder / f"{station.key}-{name}.{ending}"
-            picture.save(path)
-            written.append(path)
-        picture.resize(former)
+        found = [one for one in station.findChildren(Picture) if one.isVisible()]
+        for picture in found:
+            # On its own it has the same shape whatever room the station would have given it.
+            picture.setParent(None)
+            picture.setAttribute(Qt.WidgetAttribute.WA_DontShowOnScreen)
+            picture.resize(_SIZE)
+            picture.show()
+        own += found
+        for picture in own:
+            name = re.sub(r"[^a-z0-9]+", "-", picture.title.casefold()).strip("-") or "picture"
+            if not picture.isVisible() or name in names:
+                continue
+            names.add(name)
+            _settle()
+            picture.settle()
+            for ending in ("png", "svg"):
+                path = folder / f"{station.key}-{name}.{ending}"
+                picture.save(path)
+                written.append(path)
+    for picture in own:
+        picture.hide()
+    taken += own
     return written
 
 

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from dataclasses import dataclass, field
+from functools import lru_cache
 
 from PySide6.QtCore import QObject, Qt, Signal
 from PySide6.QtGui import QColor, QFont, QPalette
@@ -72,12 +73,21 @@ def mixed(one: QColor, other: QColor, part: float) -> QColor:
 
 def legible(colour: QColor, ground: QColor, ratio: float) -> QColor:
     """The tint or shade of `colour` nearest to it whose contrast with `ground` is at least `ratio`."""
+    parts = ((each.redF(), each.greenF(), each.blueF()) for each in (colour, ground))
+    return QColor.fromRgbF(*_legible(*parts, ratio))
+
+
+_Parts = tuple[float, float, float]
+
+
+@lru_cache(maxsize=512)
+def _legible(colour_parts: _Parts, ground_parts: _Parts, ratio: float) -> _Parts:
+    """Asked for with every frame of a what-if."""
+    colour, ground = QColor.fromRgbF(*colour_parts), QColor.fromRgbF(*ground_parts)
     end = QColor("white") if _luminance(ground) < 0.18 else QColor("black")
-    for step in range(101):
-        candidate = mixed(colour, end, step / 100)
-        if contrast(candidate, ground) >= ratio:
-            return candidate
-    return end
+    steps = (mixed(colour, end, step / 100) for step in range(101))
+    found = next((each for each in steps if contrast(each, ground) >= ratio), end)
+    return found.redF(), found.greenF(), found.blueF()
 
 
 @dataclass(frozen=True, eq=False)

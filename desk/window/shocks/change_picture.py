@@ -18,6 +18,7 @@ from desk.window.parts.plot_parts import pen
 from desk.window.parts.plot_series import Bars
 from desk.window.parts.plots import Picture
 from desk.window.parts.theme import STEP, ThemeSwitch, soft_font
+from desk.window.shocks.wording import short
 from desk.window.standing.wording import amount
 
 __all__ = ["ChangePicture", "RowBars"]
@@ -280,4 +281,4 @@ def _sentence(table: ShockTable) -> str:
     worst = min(table.results, key=lambda result: result.change_in_surplus)
     if worst.change_in_surplus >= 0.0:
         return "No shock takes anything off the surplus."
-    return f"Largest loss: {worst.name}, {amount(worst.change_in_surplus, table.currency)}."
+    return f"Largest loss: {short(worst.name)}, {amount(worst.change_in_surplus, table.currency)}."

@@ -316,7 +316,11 @@ class GridMode(Mode):
             text=text,
             sentence=_grid_sentence(value, text),
         )
-        self.heat.set_title(f"{_SHOWN[which]} under {asked.first.label} and {asked.second.label}")
+        names = " and ".join(
+            axis.label.casefold() if axis.shock.set_name == "standard" else f"“{axis.label}”"
+            for axis in (asked.first, asked.second)
+        )
+        self.heat.set_title(f"{_SHOWN[which]} under {names}")
         self.values.show_values(asked, grid, value, unit, kind=kind)
 
     def words(self) -> str:

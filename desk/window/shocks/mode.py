@@ -100,4 +100,8 @@ class Mode(QObject):
         return self.table
 
     def leave(self) -> None:
-        """Another mode is shown, or the book was closed."""
+        """Another mode is shown, or the book was closed: then there is no table of shocks either."""
+
+    def take_back(self) -> bool:
+        """Escape: take back what was begun here; whether anything was."""
+        return False

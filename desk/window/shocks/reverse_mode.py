@@ -26,6 +26,7 @@ from desk.window.shocks.mode import Mode
 from desk.window.shocks.moved import moved_rates
 from desk.window.shocks.moves_tables import TermsTable
 from desk.window.shocks.position_table import PositionTable
+from desk.window.shocks.wording import short
 from desk.window.standing.wording import amount
 from desk.window.valued import is_outdated, reason
 
@@ -74,7 +75,7 @@ def answer_words(found: ReverseResult | LeastMove, along: str | Shock, currency:
         times = numbers.number(found.scales[0], 3)
         others = [numbers.number(scale, 3) for scale in found.scales[1:3]]
         also = f" (so do {' and '.join(others)} times it)" if others else ""
-        head = f"{times} times “{along.name}” brings {what}{also}"
+        head = f"{times} times “{short(along.name)}” brings {what}{also}"
     else:
         size = numbers.signed(found.scales[0], 1)
         others = [numbers.signed(scale, 1) for scale in found.scales[1:3]]

@@ -75,6 +75,7 @@ class _SetBox(QWidget):
 
 
 def _shorter(source: str, most: int = 90) -> str:
+    source = source[:1].upper() + source[1:]
     return source if len(source) <= most else source[: source.rfind(" ", 0, most)].rstrip(",") + "…"
 
 

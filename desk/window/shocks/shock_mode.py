@@ -20,7 +20,7 @@ from desk.window.shocks.edits import name_fault, own_copy, shock_fault, with_add
 from desk.window.shocks.mode import Mode
 from desk.window.shocks.moved import MovedRates, moved_rates
 from desk.window.shocks.moves_tables import MovesTable, TermsTable
-from desk.window.shocks.wording import KINDS, in_short, targets_of, verdict_of
+from desk.window.shocks.wording import KINDS, in_short, short, targets_of, verdict_of
 from desk.window.standing.wording import amount
 
 if TYPE_CHECKING:
@@ -200,7 +200,7 @@ class ShockMode(Mode):
         fault = shock_fault(shock)
         if result is None:
             waits = self.document.shocks.is_running
-            return fault or ("" if waits else f"“{shock.name}” could not be computed.")
+            return fault or ("" if waits else f"“{short(shock.name)}” could not be computed.")
         change = result.change_in_surplus
         verb = "adds" if change >= 0.0 else "takes"
         end = "to the surplus" if change >= 0.0 else "off the surplus"
@@ -208,7 +208,8 @@ class ShockMode(Mode):
         estimate = amount(abs(result.estimated_change_in_surplus), table.currency)
         verdict = verdict_of(result.funding_ratio, result.band, table.thresholds)
         ratio = numbers.ratio(result.funding_ratio)
-        return f"“{shock.name}” {verb} {size} {end} (estimated {estimate}): funding ratio {ratio}, {verdict}."
+        head = f"“{short(shock.name)}” {verb} {size} {end} (estimated {estimate})"
+        return f"{head}: funding ratio {ratio}, {verdict}."
 
     def home(self) -> QWidget:
         """The moves."""

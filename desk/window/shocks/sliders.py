@@ -19,7 +19,7 @@ from desk.window.shocks.hand import Handle
 
 __all__ = ["HandleRow"]
 
-_LABEL = 21 * STEP
+_LABEL = 23 * STEP
 _BOX = 12 * STEP
 _KNOB = 6.0
 """Half the width of the handle [px]."""

@@ -234,8 +234,8 @@ class ShocksStation(Station):
         self.words.setVisible(bool(words))
 
     def _show_none(self, text: str, button: str = "", act: Callable[[], object] | None = None) -> None:
-        if self.mode is not None:
-            self.mode.leave()
+        for mode in self._modes.values():
+            mode.leave()
         self._bar.hide()
         self.words.hide()
         self.hide_stale()
@@ -271,7 +271,9 @@ class ShocksStation(Station):
             self._show()
 
     def keyPressEvent(self, event: QKeyEvent) -> None:
-        """Escape puts a what-if back."""
+        """Escape takes back what was begun, and after that puts a what-if back."""
+        if event.key() == Qt.Key.Key_Escape and self.mode is not None and self.mode.take_back():
+            return
         if event.key() == Qt.Key.Key_Escape and self.document.what_if.is_on:
             self.document.what_if.put_back()
             self.message.emit("The what-if is put back.")

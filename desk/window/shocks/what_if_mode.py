@@ -117,7 +117,6 @@ class WhatIfMode(Mode):
         form.add_widget(buttons)
         self.keep_button.setToolTip("As a shock of your own; the book's shocks are all that changes")
         self.name = TextField("Name of the shock", hint="Return keeps it.", check=self._check_name)
-        self.name.committed.connect(self._keep)
         self.name.line.returnPressed.connect(self._on_return)
         form.add(self.name)
         self.name.hide()
@@ -280,17 +279,15 @@ class WhatIfMode(Mode):
         return "" if book is None else name_fault(book, text)
 
     def _on_return(self) -> None:
-        """Keep it under the name suggested, which counts as no entry."""
-        if not self.name.problem and self.name.isVisible():
-            self._keep(self.name.value)
-
-    def _keep(self, name: str) -> None:
+        """Keep it under the name that stands there; leaving the field keeps nothing."""
         book, shock = self.document.book, self.document.what_if.shock
         if book is None or shock is None or self.name.isHidden():
             return
+        name = self.name.line.text()
+        self.name.line.setModified(False)
         fault = name_fault(book, name)
+        self.name.set_problem(fault)
         if fault:
-            self.name.set_problem(fault)
             return
         self.name.hide()
         self.keep_button.show()
@@ -298,3 +295,12 @@ class WhatIfMode(Mode):
         kept = shock_of(self.places, name=name.strip())
         self.edit(f"What-if kept as {kept.name}", with_added(book, kept))
         self.message(f"Kept as the shock {kept.name}; it stands among all shocks.")
+
+    def take_back(self) -> bool:
+        """Stop asking for a name; whether one was asked for."""
+        if self.name.isHidden():
+            return False
+        self.name.hide()
+        self.keep_button.show()
+        self.keep_button.setFocus(Qt.FocusReason.OtherFocusReason)
+        return True

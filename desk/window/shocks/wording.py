@@ -20,6 +20,7 @@ __all__ = [
     "kind_named",
     "moves_words",
     "set_words",
+    "short",
     "shown_size",
     "size_from",
     "table_words",
@@ -176,6 +177,11 @@ def in_short(shock: Shock) -> str:
     return ", ".join(parts) or "nothing"
 
 
+def short(name: str, most: int = 60) -> str:
+    """A name in a sentence: its beginning, where it is long."""
+    return name if len(name) <= most else f"{name[: most - 1].rstrip()}…"
+
+
 def set_words(result: ShockResult) -> str:
     """The set of a shock; the user's own are said to be."""
     return result.set_name or "own"
@@ -229,10 +235,10 @@ def table_words(table: ShockTable) -> str:
             else ""
         )
         head = (
-            f"Worst of {of}: {worst.name} takes {amount(-worst.change_in_surplus, currency)} off the "
+            f"Worst of {of}: {short(worst.name)} takes {amount(-worst.change_in_surplus, currency)} off the "
             f"surplus{ratio}."
         )
     tail = ""
     if best is not worst and best.change_in_surplus > 0.0:
-        tail = f" Best: {best.name} adds {amount(best.change_in_surplus, currency)}."
+        tail = f" Best: {short(best.name)} adds {amount(best.change_in_surplus, currency)}."
     return head + tail
