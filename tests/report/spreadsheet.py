@@ -74,8 +74,14 @@ class Spreadsheet:
             return 0.0 if value is None else value
         key = f"{sheet}!{text}"
         if key not in self._areas:
-            assert left == right, "the report uses columns only"
-            self._areas[key] = _column([self._cell(sheet, row, left) for row in range(top, bottom + 1)])
+            assert left == right or top == bottom, "the report uses columns, and rows to choose from"
+            self._areas[key] = _column(
+                [
+                    self._cell(sheet, row, column)
+                    for row in range(top, bottom + 1)
+                    for column in range(left, right + 1)
+                ]
+            )
         return self._areas[key]
 
 
@@ -152,7 +158,7 @@ _FUNCTIONS: dict[str, Any] = {
     "INDEX": _index,
     "INT": lambda value: math.floor(value),
     "MATCH": _match,
-    "MIN": lambda *values: min(values),
+    "MIN": lambda *values: min(*values),
     "PI": lambda: math.pi,
     "SQRT": lambda value: math.sqrt(value),
     "MAX": lambda *values: max(values),

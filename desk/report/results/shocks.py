@@ -14,8 +14,8 @@ from desk.report.results.charts import Column, bars, money_axis
 from desk.report.results.checks import Checks
 from desk.report.results.flows import FlowSheet
 from desk.report.results.look import QUIET, SURPLUS
-from desk.report.results.plan import FIRST_ROW, Formula, SheetPlan
-from desk.report.results.shocks_moves import plan_moves
+from desk.report.results.plan import FIRST_ROW, HEADING_ROW, Formula, SheetPlan
+from desk.report.results.shocks_moves import flush_left, plan_moves
 from desk.report.results.shocks_profile import gap_turns_text, plan_profile
 from desk.report.results.shocks_rates import plan_rates, plan_recomputed, terms_of
 from desk.valuation.shock_records import ShockResult, ShockTable, band_name
@@ -27,11 +27,16 @@ CHART_CAP = 30
 """Shocks that a picture shows; more would be too narrow to read."""
 FIRST_RESULT = FIRST_ROW + 1
 """Row of the first shock; the one before holds where the book stands."""
-_MONEY = (
-    "assets", "liabilities", "surplus", "funding_ratio", "change_in_assets", "change_in_liabilities",
-    "change_in_surplus", "change_in_funding_ratio", "estimated_change_in_assets",
-    "estimated_change_in_liabilities", "estimated_change_in_surplus",
-)  # fmt: skip
+_FIGURES = (
+    "assets",
+    "liabilities",
+    "surplus",
+    "funding_ratio",
+    "change_in_assets",
+    "change_in_liabilities",
+    "change_in_surplus",
+    "change_in_funding_ratio",
+)
 
 
 @dataclass(frozen=True)
@@ -99,7 +104,7 @@ def plan_shocks(
         unit=found.currency,
         form="money2",
         reported=min(result.surplus for result in found.results),
-        formula=f"=MIN({plan.area(18, FIRST_RESULT, _last(found))})",
+        formula=f"=MIN({plan.area(14, FIRST_RESULT, _last(found))})",
         scale="MAX(shock_base_assets,shock_base_liabilities)",
     )
     return ShockPlans(planned, names, least)
@@ -158,8 +163,8 @@ def _names(plan: SheetPlan, found: ShockTable) -> dict[str, str]:
     }
     if found.thresholds:
         first = _last(found) + 3
-        names["shock_thresholds"] = plan.area(2, first, first + len(found.thresholds) - 1)
-        names["shock_words"] = plan.area(4, first, first + len(found.thresholds))
+        names["shock_thresholds"] = plan.area(3, first, first + len(found.thresholds) - 1)
+        names["shock_words"] = plan.area(5, first, first + len(found.thresholds))
     return names
 
 
@@ -167,12 +172,17 @@ def _plan_results(found: ShockTable, *, reason: str, recomputed: dict[str, str],
     """The sheet of results."""
     unit = f"[{found.currency}]"
     note = (
-        "Every shock is a full revaluation of both sides from where the book stands. The estimate beside it "
-        "is by duration and convexity."
+        "Every shock is a full revaluation of both sides from where the book stands. The estimate below is "
+        "by duration and convexity."
     )
-    plan = SheetPlan(SHOCKS_SHEET, "Shocks: both sides after each", f"{note} {reason}" if reason else note)
-    plan.widths = {1: 9.0, 2: 36.0, 3: 25.0} | dict.fromkeys(range(4, 21), 15.0)
-    plan.widths |= {7: 10.0, 11: 10.0, 16: 10.0, 17: 10.0, 20: 11.0, 21: 8.0, 22: 60.0}
+    plan = SheetPlan(
+        SHOCKS_SHEET,
+        "Shocks: both sides after each",
+        f"{note} {reason}" if reason else note,
+        title_rows="1:3",
+    )
+    plan.widths = {1: 8.0, 2: 34.0, 3: 24.0} | dict.fromkeys(range(4, 17), 15.0)
+    plan.widths |= {7: 10.0, 11: 10.0, 12: 11.0, 13: 9.0, 16: 11.0, 17: 8.0}
     plan.headings(
         [
             "Shock number",
@@ -186,41 +196,36 @@ def _plan_results(found: ShockTable, *, reason: str, recomputed: dict[str, str],
             f"Change in liabilities {unit}",
             f"Change in surplus {unit}",
             "Change in funding ratio",
-            f"Assets, estimated change {unit}",
-            f"Liabilities, estimated change {unit}",
-            f"Surplus, estimated change {unit}",
-            f"Full less estimated change {unit}",
             "Verdict, reported",
             "Verdict",
             f"Surplus, recomputed {unit}",
             f"Change in surplus, recomputed {unit}",
             f"Difference {unit}",
             "Check",
-            "Source",
         ],
         left=0,
     )
-    for column in (2, 3, 22):
-        plan.put(4, column, plan.cells[4][column].value, "heading_left")
+    flush_left(plan, HEADING_ROW, (2, 3, 12, 13))
     base = found.base
     figures = ((base.assets, "money"), (base.liabilities, "money"), (base.surplus, "money"))
     plan.table_row(
         FIRST_ROW,
-        2,
+        1,
         [
-            ("As it stands", "text", "text"),
+            ("", "text", "text"),
+            ("As it stands", "unit", "text"),
             ("", "text", "text"),
             *((figure, "reported", form) for figure, form in figures),
             (base.funding_ratio, "reported", "share"),
         ],
     )
     if found.thresholds and math.isfinite(base.funding_ratio):
-        plan.put(FIRST_ROW, 17, Formula(_verdict(FIRST_ROW)), "live", "text")
-    plan.put(FIRST_ROW, 18, Formula(f"=D{FIRST_ROW}-E{FIRST_ROW}"), "live", "money")
+        plan.put(FIRST_ROW, 13, Formula(_verdict(FIRST_ROW)), "live", "text")
+    plan.put(FIRST_ROW, 14, Formula(f"=D{FIRST_ROW}-E{FIRST_ROW}"), "live", "money")
     for number, result in enumerate(found.results, start=1):
         _result_row(plan, FIRST_RESULT + number - 1, number, result, found)
     last = _last(found)
-    checks.add_column("Shocks whose figures differ", plan, plan.mark_checks(21, FIRST_RESULT, last))
+    checks.add_column("Shocks whose figures differ", plan, plan.mark_checks(17, FIRST_RESULT, last))
     for name, column in (("assets", 4), ("liabilities", 5)):
         address = recomputed.get(f"{name}_present_value", "")
         if address:
@@ -233,16 +238,19 @@ def _plan_results(found: ShockTable, *, reason: str, recomputed: dict[str, str],
                 formula=f"={address}",
                 scale=f"SUMPRODUCT(ABS({name}_value))",
             )
-            checks.add(
-                f"{name.capitalize()} before shocks, as this sheet shows them",
-                sheet=plan.name,
-                unit=found.currency,
-                form="money2",
-                reported=getattr(base, name),
-                formula=f"={plan.address(FIRST_ROW, column)}",
-            )
+        checks.add(
+            f"{name.capitalize()} before shocks, as the sheet shows them",
+            sheet=plan.name,
+            unit=found.currency,
+            form="money2",
+            reported=getattr(base, name),
+            formula=f"={plan.address(FIRST_ROW, column)}",
+        )
     below = _thresholds(plan, last + 2, found)
-    _chart(plan, below, found)
+    estimates = below + 2
+    below = _estimates(plan, below, found, checks)
+    below = _sources(plan, below, found)
+    _chart(plan, below, estimates, found)
     return plan
 
 
@@ -255,36 +263,30 @@ def _result_row(plan: SheetPlan, row: int, number: int, result: ShockResult, fou
     """One shock."""
     has_ratio = math.isfinite(result.funding_ratio) and math.isfinite(found.base.funding_ratio)
     base = f"${FIRST_ROW}"
-    forms = ["share" if "ratio" in name else "money" for name in _MONEY]
-    away = (
-        f"=ABS(F{row}-R{row})+ABS(J{row}-S{row})+ABS(H{row}-(D{row}-D{base}))+ABS(I{row}-(E{row}-E{base}))"
-        f"+ABS(N{row}-(L{row}-M{row}))"
-    )
-    agree = [f"T{row}<=check_tolerance*MAX(1,ABS(D{row})+ABS(E{row}),ABS(L{row})+ABS(M{row}))"]
+    forms = ["share" if "ratio" in name else "money" for name in _FIGURES]
+    away = f"=ABS(F{row}-N{row})+ABS(J{row}-O{row})+ABS(H{row}-(D{row}-D{base}))+ABS(I{row}-(E{row}-E{base}))"
+    agree = [f"P{row}<=check_tolerance*MAX(1,ABS(D{row})+ABS(E{row}),ABS(D{base})+ABS(E{base}))"]
     if has_ratio:
-        agree.append(
-            f"ABS(G{row}-D{row}/E{row})+ABS(K{row}-G{row}+G{base})<=check_tolerance*MAX(1,ABS(G{row}))"
-        )
+        ratios = f"ABS(G{row}-D{row}/E{row})+ABS(K{row}-G{row}+G{base})"
+        agree.append(f"{ratios}<=check_tolerance*MAX(1,ABS(G{row}))")
     verdict: list[tuple[Any, str, str]] = [("", "text", "text"), ("", "text", "text")]
     if found.thresholds and has_ratio:
         word = band_name(result.band, found.thresholds)
-        verdict = [(word, "reported", "word"), (Formula(_verdict(row)), "live", "text")]
-        agree.append(f"P{row}=Q{row}")
+        verdict = [(word, "unit", "text"), (Formula(_verdict(row)), "live", "text")]
+        agree.append(f"L{row}=M{row}")
     plan.table_row(
         row,
         1,
         [
             (number, "text", "whole"),
-            (result.name, "text", "text"),
-            (result.set_name or "Own", "text", "text"),
-            *((getattr(result, name), "reported", form) for name, form in zip(_MONEY, forms, strict=True)),
-            (Formula(f"=J{row}-N{row}"), "live", "money"),
+            (result.name, "unit", "text"),
+            (result.set_name or "Own", "unit", "text"),
+            *((getattr(result, name), "reported", form) for name, form in zip(_FIGURES, forms, strict=True)),
             *verdict,
             (Formula(f"=D{row}-E{row}"), "live", "money"),
-            (Formula(f"=R{row}-R{base}"), "live", "money"),
+            (Formula(f"=N{row}-N{base}"), "live", "money"),
             (Formula(away), "live", "tiny"),
             (Formula(f'=IF(AND({",".join(agree)}),"OK","CHECK")'), "check", "text"),
-            (result.source or "The book's own", "text", "text"),
         ],
     )
 
@@ -294,23 +296,88 @@ def _thresholds(plan: SheetPlan, row: int, found: ShockTable) -> int:
     if not found.thresholds:
         plan.put(row, 2, "The book states no thresholds: there is no verdict.", "note")
         return row + 2
-    plan.headings(["Funding ratio, at least"], row=row, column=2, left=1)
-    plan.put(row, 3, "Shocks below it", "heading")
-    plan.put(row, 4, "Verdict", "heading_left")
+    plan.headings(["Thresholds", "Funding ratio, at least", "Shocks below it", "Verdict"], row=row, column=2)
+    flush_left(plan, row, (2, 5))
     area = f"G{FIRST_RESULT}:G{_last(found)}"
     count = len(found.thresholds)
     for offset, threshold in enumerate(found.thresholds, start=1):
         at = row + offset
-        plan.put(at, 2, threshold, "input", "share")
-        plan.put(at, 3, Formula(f"=SUMPRODUCT(({area}<B{at})*1)"), "live", "whole")
-        plan.put(at, 4, band_name(offset - 1, found.thresholds), "text")
-    plan.put(row + count + 1, 2, "below the last", "text")
-    plan.put(row + count + 1, 4, band_name(count, found.thresholds), "text")
+        plan.put(at, 2, f"Threshold {offset}", "unit")
+        plan.put(at, 3, threshold, "input", "share")
+        if all(math.isfinite(result.funding_ratio) for result in found.results):
+            plan.put(at, 4, Formula(f"=SUMPRODUCT(({area}<C{at})*1)"), "live", "whole")
+        plan.put(at, 5, band_name(offset - 1, found.thresholds), "unit")
+    plan.put(row + count + 1, 2, "Below the last", "unit")
+    plan.put(row + count + 1, 3, "", "text")
+    plan.put(row + count + 1, 4, "", "text")
+    plan.put(row + count + 1, 5, band_name(count, found.thresholds), "unit")
     return row + count + 3
 
 
-def _chart(plan: SheetPlan, row: int, found: ShockTable) -> None:
-    """Change in surplus by shock, full and estimated."""
+def _estimates(plan: SheetPlan, row: int, found: ShockTable, checks: Checks) -> int:
+    """What duration and convexity tell of each shock, beside its full change; returns the row after."""
+    unit = f"[{found.currency}]"
+    plan.put(row, 1, "Estimates by duration and convexity, beside full revaluation", "title")
+    row += 1
+    plan.headings(
+        [
+            "Shock number",
+            "Shock",
+            "Set",
+            f"Estimated change in assets {unit}",
+            f"Estimated change in liabilities {unit}",
+            f"Estimated change in surplus {unit}",
+            "",
+            f"Assets: full less estimated {unit}",
+            f"Liabilities: full less estimated {unit}",
+            f"Surplus: full less estimated {unit}",
+            "Check",
+        ],
+        row=row,
+        left=0,
+    )
+    flush_left(plan, row, (2, 3))
+    first = row + 1
+    for number, result in enumerate(found.results, start=1):
+        at, full = row + number, FIRST_RESULT + number - 1
+        limit = f"check_tolerance*MAX(1,ABS(D{at})+ABS(E{at}))"
+        plan.table_row(
+            at,
+            1,
+            [
+                (number, "text", "whole"),
+                (result.name, "unit", "text"),
+                (result.set_name or "Own", "unit", "text"),
+                (result.estimated_change_in_assets, "reported", "money"),
+                (result.estimated_change_in_liabilities, "reported", "money"),
+                (result.estimated_change_in_surplus, "reported", "money"),
+                ("", "text", "text"),
+                (Formula(f"=H{full}-D{at}"), "live", "money"),
+                (Formula(f"=I{full}-E{at}"), "live", "money"),
+                (Formula(f"=J{full}-F{at}"), "live", "money"),
+                (Formula(f'=IF(ABS(F{at}-(D{at}-E{at}))<={limit},"OK","CHECK")'), "check", "text"),
+            ],
+        )
+    last = first + len(found.results) - 1
+    checks.add_column("Estimates that do not add up", plan, plan.mark_checks(11, first, last))
+    plan.page_breaks.append(row - 2)
+    return last + 2
+
+
+def _sources(plan: SheetPlan, row: int, found: ShockTable) -> int:
+    """Where each set, or shock of the book's own, comes from; returns the row after them."""
+    plan.headings(["Set or own shock", "", "Source"], row=row, column=2)
+    flush_left(plan, row, (2, 4))
+    sources = dict.fromkeys(
+        (result.set_name or result.name, result.source or "The book's own") for result in found.results
+    )
+    for at, (name, source) in enumerate(sources, start=row + 1):
+        plan.table_row(at, 2, [(name, "unit", "text"), ("", "text", "text"), (source, "unit", "text")])
+    return row + len(sources) + 2
+
+
+def _chart(plan: SheetPlan, row: int, first: int, found: ShockTable) -> None:
+    """Change in surplus by shock, full and estimated, at a row; the first estimate stands in row `first`."""
     shown = min(len(found.results), CHART_CAP)
     last = FIRST_RESULT + shown - 1
     changes = [
@@ -323,7 +390,7 @@ def _chart(plan: SheetPlan, row: int, found: ShockTable) -> None:
     chart = bars(
         [
             Column("Fully revalued", plan.area(10, FIRST_RESULT, last), SURPLUS),
-            Column("Estimated by duration and convexity", plan.area(14, FIRST_RESULT, last), QUIET),
+            Column("Estimated by duration and convexity", plan.area(6, first, first + shown - 1), QUIET),
         ],
         plan.area(2, FIRST_RESULT, last),
         title=title,

@@ -6,13 +6,14 @@ from collections.abc import Iterator, Sequence
 from dataclasses import dataclass, field
 
 from desk.book.shock import RATE_MOVES, Move, MoveKind, Shock
-from desk.report.results.plan import FIRST_ROW, Formula, SheetPlan
+from desk.report.results.plan import FIRST_ROW, HEADING_ROW, Formula, SheetPlan
 from desk.valuation.moved_curve import DECAY
 from desk.valuation.shock_records import ShockTable
 
 __all__ = [
     "MOVES_SHEET",
     "MoveRows",
+    "flush_left",
     "joined_formula",
     "joined_kinds",
     "plan_moves",
@@ -54,6 +55,12 @@ class MoveRows:
         """Remember the row of a move."""
         self.rows.setdefault(move.kind, []).append(row)
         self.moves.setdefault(move.kind, []).append(move)
+
+
+def flush_left(plan: SheetPlan, row: int, columns: Sequence[int]) -> None:
+    """Move headings to the left of their columns, with room between them and figures before."""
+    for column in columns:
+        plan.put(row, column, plan.cells[row][column].value, "heading_unit")
 
 
 def size_unit(kind: MoveKind) -> str:
@@ -116,8 +123,7 @@ def plan_moves(found: ShockTable) -> tuple[SheetPlan, list[MoveRows], dict[str, 
         ],
         left=0,
     )
-    for column in (2, 3, 4, 6, 10, 11, 12):
-        plan.put(4, column, plan.cells[4][column].value, "heading_left")
+    flush_left(plan, HEADING_ROW, (2, 3, 4, 6, 10, 11, 12))
     places: list[MoveRows] = []
     row = FIRST_ROW
     for number, result in enumerate(found.results, start=1):
@@ -132,10 +138,10 @@ def plan_moves(found: ShockTable) -> tuple[SheetPlan, list[MoveRows], dict[str, 
             place.add(move, row)
             row += 1
     places += [MoveRows() for _ in range(len(found.results) - len(places))]
-    plan.put(row + 1, 2, "Years over which short moves fade", "text")
+    plan.put(row + 1, 2, "Years over which short moves fade", "unit")
     address = plan.put(row + 1, 5, DECAY, "input", "term")
-    plan.put(row + 1, 6, "years", "text")
-    plan.put(row + 1, 12, "Basel Committee, Interest rate risk in the banking book, 2016, Annex 2", "text")
+    plan.put(row + 1, 6, "years", "unit")
+    plan.put(row + 1, 12, "Basel Committee, Interest rate risk in the banking book, 2016, Annex 2", "unit")
     return plan, places, {"shock_decay": address}
 
 
@@ -143,7 +149,9 @@ def _move_row(
     plan: SheetPlan, row: int, number: int, shock: Shock, move: Move, following: Move | None
 ) -> None:
     """One move."""
-    form = "share" if move.kind in (*_SHARES, MoveKind.DECLINE) else "term"
+    form = "whole" if move.size == round(move.size) else "years2"
+    if move.kind in (*_SHARES, MoveKind.DECLINE):
+        form = "share"
     target = move.target or _MOVED.get(move.kind, "All rates" if move.term is None else "Rates")
     joined = (
         move.kind in _JOINED
@@ -157,17 +165,17 @@ def _move_row(
         1,
         [
             (number, "text", "whole"),
-            (shock.name, "text", "text"),
-            (shock.set_name or "Own", "text", "text"),
-            (move.kind.value, "text", "text"),
+            (shock.name, "unit", "text"),
+            (shock.set_name or "Own", "unit", "text"),
+            (move.kind.value, "unit", "text"),
             (move.size, "input", form),
-            (size_unit(move.kind), "text", "text"),
+            (size_unit(move.kind), "unit", "text"),
             (move.term, "input", "term"),
             (Formula(f"={step}") if joined else None, "live", "years"),
             (Formula(f"={_TERM}{row + 1}-{_TERM}{row}") if joined else None, "live", "term"),
-            (target, "text", "text"),
-            (shock.compounding.value, "text", "text"),
-            (shock.source or "The book's own", "text", "text"),
+            (target, "unit", "text"),
+            (shock.compounding.value, "unit", "text"),
+            (shock.source or "The book's own", "unit", "text"),
         ],
     )
 

@@ -54,7 +54,7 @@ def plan_profile(found: ShockTable, terms: Terms | None, checks: Checks) -> Shee
         "Parallel moves: the surplus against a move of all rates",
         f"All continuous zero rates move together. {gap_turns_text(profile)}",
     )
-    plan.widths = {1: 10.0} | dict.fromkeys(range(2, 14), 16.0) | {6: 10.0, 7: 10.0, 12: 12.0, 13: 9.0}
+    plan.widths = {1: 14.0} | dict.fromkeys(range(2, 14), 16.0) | {6: 10.0, 7: 10.0, 12: 12.0, 13: 9.0}
     plan.headings(
         [
             "Move [basis points]",

@@ -16,7 +16,14 @@ from desk.rates.curve import DiscountCurve
 from desk.report.results.checks import Checks
 from desk.report.results.flows import FlowSheet
 from desk.report.results.plan import FIRST_ROW, HEADING_ROW, Block, Formula, SheetPlan, column_letter
-from desk.report.results.shocks_moves import MoveRows, joined_formula, joined_kinds, shift_formula, size_unit
+from desk.report.results.shocks_moves import (
+    MoveRows,
+    flush_left,
+    joined_formula,
+    joined_kinds,
+    shift_formula,
+    size_unit,
+)
 from desk.report.results.standing import LIVE_WORK
 from desk.valuation.moved_curve import CurveMove
 from desk.valuation.shock_records import ShockTable
@@ -107,6 +114,8 @@ def terms_of(
             "a spreadsheet too much."
         )
     count = min(len(found.results), SHIFT_CAP // time.size)
+    if not count:
+        return None, f"Shocks are not recomputed: {time.size:,} different terms are too many to list."
     reason = ""
     if count < len(found.results):
         reason = (
@@ -345,7 +354,7 @@ def plan_recomputed(
         ],
         left=0,
     )
-    plan.put(HEADING_ROW, 2, "Shock", "heading_left")
+    flush_left(plan, HEADING_ROW, (2,))
     for offset in range(terms.count):
         _recomputed_row(plan, offset, found, terms, f"'{shocks_sheet}'!", first_result + offset)
     last = FIRST_ROW + terms.count - 1
@@ -369,7 +378,7 @@ def _recomputed_row(
     row = FIRST_ROW + offset
     cells: list[tuple[Any, str, str]] = [
         (offset + 1, "text", "whole"),
-        (found.results[offset].name, "text", "text"),
+        (found.results[offset].name, "unit", "text"),
     ]
     letter = column_letter(_FIRST_SHIFT + offset)
     area = f"'{RATES_SHEET}'!${letter}${FIRST_ROW}:${letter}${terms.last_row}"
@@ -415,39 +424,48 @@ def _chosen(
     )
     plan.whole_numbers.append((f"C{row + 1}", 1, terms.count))
     names["shock_chosen"] = plan.put(row + 1, 3, worst + 1, "input", "whole")
-    plan.put(row + 1, 2, f"Type a number from 1 to {terms.count}", "text")
+    plan.put(row + 1, 2, f"Type a number from 1 to {terms.count}", "unit")
     last = FIRST_ROW + terms.count - 1
-    plan.put(row + 2, 2, "Shock", "text")
+    plan.put(row + 2, 2, "Shock", "unit")
     plan.put(row + 2, 3, Formula(f"=INDEX(B{FIRST_ROW}:B{last},shock_chosen)"), "live", "text")
+    plan.headings(
+        [
+            "Side",
+            f"After the moves of rates {unit}",
+            f"Reported, all moves {unit}",
+            f"What other moves do {unit}",
+            f"Before, rows without their signs {unit}",
+        ],
+        row=row + 3,
+        column=2,
+    )
+    flush_left(plan, row + 3, (2,))
     first, after = row + 9, row + 9 + terms.time.size - 1
-    for offset, (label, letter, source) in enumerate(
-        (("Assets", "F", "D"), ("Liabilities", "H", "E")), start=3
+    for at, side, letter, source in (
+        (row + 4, Side.ASSETS, "F", "D"),
+        (row + 5, Side.LIABILITIES, "H", "E"),
     ):
         area = f"'{shocks_sheet}'!${source}${first_result}:${source}${first_result + terms.count - 1}"
         plan.table_row(
-            row + offset,
+            at,
             2,
             [
-                (f"{label} after the moves of rates {unit}", "text", "text"),
+                (side.value.capitalize(), "unit", "text"),
                 (Formula(f"=SUM({letter}{first}:{letter}{after})"), "live", "money2"),
-                ("Reported, all moves", "text", "text"),
                 (Formula(f"=INDEX({area},shock_chosen)"), "live", "money2"),
-                (Formula(f"=E{row + offset}-C{row + offset}"), "live", "money2"),
+                (Formula(f"=D{at}-C{at}"), "live", "money2"),
             ],
         )
-    plan.put(row + 3, 7, "Reported less revalued: what other moves do", "note")
+        total = Formula(f"=SUMPRODUCT(ABS({side.value}_value))")
+        names[_gross(side)] = plan.put(at, 6, total, "live", "money2")
     plan.table_row(
-        row + 5,
+        row + 6,
         2,
         [
-            (f"Surplus after the moves of rates {unit}", "text", "text"),
-            (Formula(f"=C{row + 3}-C{row + 4}"), "live", "money2"),
+            ("Surplus", "unit", "text"),
+            *((Formula(f"={letter}{row + 4}-{letter}{row + 5}"), "live", "money2") for letter in "CDE"),
         ],
     )
-    for offset, side in enumerate(Side):
-        plan.put(row + 6, 2 + 2 * offset, f"{side.value.capitalize()}, rows without their signs", "text")
-        total = Formula(f"=SUMPRODUCT(ABS({side.value}_value))")
-        names[_gross(side)] = plan.put(row + 6, 3 + 2 * offset, total, "live", "money2")
     plan.headings(
         [
             "Term [years]",

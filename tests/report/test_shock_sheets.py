@@ -1,0 +1,483 @@
+"""The sheets of shocks: reported as the task reports them, revalued by their own formulas."""
+
+from __future__ import annotations
+
+import re
+import zipfile
+from dataclasses import replace
+from pathlib import Path
+from typing import Any
+from xml.etree import ElementTree
+
+import numpy as np
+import pytest
+
+from desk import tasks
+from desk.book import Book, FlowTable, Move, MoveKind, Shock, ShockSettings
+from desk.rates.compounding import Compounding
+from desk.report.results import flows, shocks_rates
+from desk.report.results.workbook import write_report
+from desk.valuation.moved_curve import CurveMove
+from desk.valuation.shock_records import ShockTable, band_name
+from tests.report import examples
+from tests.report.full_books import full_book
+from tests.report.spreadsheet import FUNCTION_CALL, FUNCTION_NAMES, Spreadsheet
+
+SHEETS = ["Shocks", "Shock moves", "Shock rates", "Shock recomputed", "Parallel moves"]
+MASTER = ("Summary", "B3")
+FIRST = 6
+"""Row of the first shock on the sheet of shocks."""
+OWN = (
+    Shock(examples.HOSTILE, (Move(MoveKind.TWIST, 45.0, 8.0), Move(MoveKind.PARALLEL, -12.5))),
+    Shock(
+        "Out of order",
+        (Move(MoveKind.RATE, 80.0, 20.0), Move(MoveKind.RATE, -40.0, 2.0), Move(MoveKind.RATE, 15.0, 7.5)),
+        source="an invented rule, Article 7",
+    ),
+    Shock(
+        "Shares with a least size and floors",
+        (
+            Move(MoveKind.RELATIVE, 0.4, 1.0),
+            Move(MoveKind.RELATIVE, 0.2, 15.0),
+            Move(MoveKind.LEAST, 90.0, 1.0),
+            Move(MoveKind.LEAST, 40.0, 30.0),
+            Move(MoveKind.SHORT, -250.0),
+            Move(MoveKind.FLOOR, -50.0, 0.0),
+            Move(MoveKind.FLOOR, 60.0, 25.0),
+        ),
+        compounding=Compounding.SEMI_ANNUAL,
+    ),
+    Shock("Markets fall", (Move(MoveKind.VALUE, -0.3), Move(MoveKind.SPREAD, 75.0, target="bond"))),
+    Shock("Lives are longer", (Move(MoveKind.DECLINE, 0.004), Move(MoveKind.PARALLEL, -30.0))),
+    Shock("Later, and more", (Move(MoveKind.TIME, 0.5), Move(MoveKind.AMOUNT, 0.1, target="Pensions"))),
+    Shock(
+        "Everywhere", (Move(MoveKind.PARALLEL, -60.0), Move(MoveKind.VALUE, -0.1), Move(MoveKind.TIME, 1.0))
+    ),
+)
+
+
+def shocked_book(of: Book | None = None, shocks: tuple[Shock, ...] = OWN) -> Book:
+    """A book that asks for own shocks and prescribed sets of every kind."""
+    sets = ("Basel 2016", "EU 2024/856", "Solvency II rates", "Sensitivities in accounts")
+    settings = ShockSettings(sets=sets, thresholds=(1.1, 0.9))
+    return replace(of or examples.book(), rates_model=None, shocks=shocks, shock_settings=settings)
+
+
+def write(of: Book, path: Path, found: ShockTable | None = None) -> Spreadsheet:
+    """The report of a book under its shocks, opened."""
+    found = found or tasks.shock(of)
+    return Spreadsheet(write_report(examples.reading(of), tasks.value(of), None, path, shocks=found))
+
+
+@pytest.fixture(scope="module")
+def path(tmp_path_factory: pytest.TempPathFactory) -> Path:
+    """The report of the example."""
+    target = tmp_path_factory.mktemp("shocks") / "report.xlsx"
+    write(shocked_book(), target)
+    return target
+
+
+@pytest.fixture(scope="module")
+def found() -> ShockTable:
+    """What the report must hold."""
+    return tasks.shock(shocked_book())
+
+
+@pytest.fixture
+def sheet(path: Path) -> Spreadsheet:
+    """The report, opened."""
+    return Spreadsheet(path)
+
+
+def failures(sheet: Spreadsheet) -> list[tuple[str, str]]:
+    """Every cell that says that something is wrong."""
+    return [(name, at) for name, at, _ in sheet.formulas() if sheet.value(name, at) in ("CHECK", "#VALUE!")]
+
+
+def test_every_formula_of_the_report_agrees(sheet: Spreadsheet) -> None:
+    """All checks say OK, no formula fails, and the sheets stand in their order before the checks."""
+    names = sheet.book.sheetnames
+    assert names[names.index("Shocks") : names.index("Checks")] == SHEETS
+    assert failures(sheet) == []
+    assert sheet.value(*MASTER) == "OK"
+
+
+def test_every_figure_is_that_of_the_task(sheet: Spreadsheet, found: ShockTable) -> None:
+    """Bit for bit, in the order asked for, each with its set."""
+    page = sheet.book["Shocks"]
+    names = (
+        *("assets", "liabilities", "surplus", "funding_ratio", "change_in_assets"),
+        *("change_in_liabilities", "change_in_surplus", "change_in_funding_ratio"),
+    )
+    last = FIRST + len(found.results) - 1
+    rows = list(page.iter_rows(min_row=FIRST, max_row=last, values_only=True))
+    assert [row[1] for row in rows] == [result.name for result in found.results]
+    assert [row[2] for row in rows] == [result.set_name or "Own" for result in found.results]
+    assert [row[3:11] for row in rows] == [
+        tuple(getattr(result, name) for name in names) for result in found.results
+    ]
+    assert [row[11] for row in rows] == [band_name(result.band, found.thresholds) for result in found.results]
+    base = [cell.value for cell in page[FIRST - 1]][3:7]
+    assert base == [
+        found.base.assets, found.base.liabilities, found.base.surplus, found.base.funding_ratio,
+    ]  # fmt: skip
+    start = next(row[0].row for row in page.iter_rows(min_row=last + 1) if row[0].value == "Shock number")
+    estimates = list(
+        page.iter_rows(min_row=(start or 0) + 1, max_row=(start or 0) + len(rows), values_only=True)
+    )
+    assert [row[3:6] for row in estimates] == [
+        (
+            result.estimated_change_in_assets,
+            result.estimated_change_in_liabilities,
+            result.estimated_change_in_surplus,
+        )
+        for result in found.results
+    ]
+    text = {cell.value for row in page.iter_rows() for cell in row}
+    assert {result.source for result in found.results if result.source} <= text
+
+
+def test_the_profile_is_that_of_the_task(sheet: Spreadsheet, found: ShockTable) -> None:
+    """Every parallel move with both sides, the tangent, the ratio and the gap."""
+    profile = found.profile
+    rows = list(sheet.book["Parallel moves"].iter_rows(min_row=5, max_col=7, values_only=True))
+    figures = np.array(rows[: profile.move.size], dtype=float)
+    expected = (
+        *(profile.move, profile.assets, profile.liabilities, profile.surplus, profile.tangent),
+        *(profile.funding_ratio, profile.duration_gap),
+    )
+    np.testing.assert_array_equal(figures, np.stack(expected, axis=1))
+    assert "duration gap" in str(sheet.book["Parallel moves"]["A2"].value)
+
+
+def test_moves_are_listed_with_their_units(sheet: Spreadsheet, found: ShockTable) -> None:
+    """Every move of every shock, with size, term and what it applies to."""
+    listed = [
+        (row[0], row[3], row[4], row[6])
+        for row in sheet.book["Shock moves"].iter_rows(min_row=5, values_only=True)
+        if row[0] is not None
+    ]
+    expected = [
+        (number, move.kind.value, move.size, move.term)
+        for number, result in enumerate(found.results, start=1)
+        for move in result.shock.moves
+    ]
+    assert sorted(listed, key=str) == sorted(expected, key=str)
+    units = {row[3]: row[5] for row in sheet.book["Shock moves"].iter_rows(min_row=5, values_only=True)}
+    assert units["parallel"] == "basis points"
+    assert units["value"] == "share"
+    assert units["time"] == "years"
+    targets = [row[9] for row in sheet.book["Shock moves"].iter_rows(min_row=5, values_only=True)]
+    assert {"Pensions", "bond", "Funds and property", "All rates"} <= set(targets)
+
+
+def test_shifts_are_formulas_and_those_of_the_curve_move(sheet: Spreadsheet, found: ShockTable) -> None:
+    """Every shock's shift at every term, computed from the sheet of moves, is the program's."""
+    page = sheet.book["Shock rates"]
+    curve = shocked_book().basis.curve
+    rows = range(5, page.max_row + 1, 7)
+    time = np.array([float(page.cell(row, 1).value) for row in rows])
+    zero = curve.zero(time)
+    for number, result in enumerate(found.results):
+        cells = [page.cell(row, 8 + number) for row in rows]
+        assert all(cell.data_type == "f" for cell in cells)
+        live = [float(sheet.value("Shock rates", cell.coordinate)) for cell in cells]
+        move = CurveMove.of_shock(result.shock)
+        expected = np.zeros(time.size) if move is None else move.change(time, zero)
+        np.testing.assert_allclose(live, expected, rtol=0.0, atol=1e-15)
+
+
+def _random_shock(generator: np.random.Generator, number: int) -> Shock:
+    """Moves of rates of several kinds, at one term or many, in any order."""
+    moves = [
+        Move(kind, float(generator.uniform(-200.0, 200.0)))
+        for kind in (MoveKind.PARALLEL, MoveKind.SHORT, MoveKind.LONG)
+        if generator.random() < 0.4
+    ]
+    if generator.random() < 0.4:
+        moves.append(Move(MoveKind.TWIST, float(generator.uniform(-80, 80)), float(generator.uniform(1, 20))))
+    for kind, most in ((MoveKind.RATE, 150.0), (MoveKind.RELATIVE, 0.5), (MoveKind.FLOOR, 100.0)):
+        if generator.random() < 0.6:
+            terms = generator.choice(np.arange(0.5, 60.0, 0.5), int(generator.integers(1, 6)), replace=False)
+            moves += [Move(kind, float(generator.uniform(-most, most)), float(term)) for term in terms]
+    if any(move.kind is MoveKind.RELATIVE for move in moves):
+        sign = 1.0 if generator.random() < 0.5 else -1.0
+        moves += [Move(MoveKind.LEAST, sign * 60.0, 1.0), Move(MoveKind.LEAST, sign * 20.0, 30.0)]
+    order = generator.permutation(len(moves))
+    kinds = list(Compounding)
+    return Shock(
+        f"Random {number}",
+        tuple(moves[place] for place in order) or (Move(MoveKind.PARALLEL, 1.0),),
+        compounding=kinds[int(generator.integers(len(kinds)))],
+    )
+
+
+def test_random_shocks_are_revalued(tmp_path: Path) -> None:
+    """Sixty shocks of any shape: the formulas agree with the program on both sides."""
+    generator = np.random.default_rng(77)
+    shocks = tuple(_random_shock(generator, number) for number in range(60))
+    few = FlowTable.build(["A"] * 12, generator.uniform(0.1, 58.0, 12), [1e6] * 12)
+    book = replace(examples.book(), liabilities=few, holdings=(), rates_model=None, shocks=shocks)
+    book = replace(book, shock_settings=ShockSettings(sets=("None such",)))
+    found = tasks.shock(book)
+    assert len(found.results) > 55
+    sheet = write(book, tmp_path / "report.xlsx", found)
+    page = sheet.book["Shock recomputed"]
+    for number, result in enumerate(found.results):
+        row = 5 + number
+        assert page.cell(row, 2).value == result.name
+        live = [sheet.value("Shock recomputed", f"{letter}{row}") for letter in "DGI"]
+        after = [result.assets, result.liabilities, result.surplus]
+        np.testing.assert_allclose(live, after, rtol=1e-12)
+    assert failures(sheet) == []
+
+
+@pytest.mark.parametrize(
+    ("name", "address"),
+    [
+        ("Shocks", "D7"),
+        ("Shocks", "F9"),
+        ("Shocks", "G8"),
+        ("Shocks", "I7"),
+        ("Shocks", "J10"),
+        ("Shocks", "K6"),
+        ("Shocks", "D5"),
+        ("Shock moves", "E6"),
+        ("Shock moves", "G8"),
+        ("Shock rates", "A40"),
+        ("Shock rates", "D30"),
+        ("Parallel moves", "B9"),
+        ("Parallel moves", "E20"),
+        ("Liabilities", "G9"),
+        ("Asset flows", "D14"),
+    ],
+)
+def test_a_wrong_figure_is_caught(sheet: Spreadsheet, name: str, address: str) -> None:
+    """A small part more on one cell turns the workbook's check."""
+    cell = sheet.book[name][address]
+    assert isinstance(cell.value, int | float)
+    assert cell.value
+    cell.value = cell.value * 1.001
+    assert sheet.value(*MASTER) == "CHECK"
+
+
+def test_a_wrong_estimate_and_a_wrong_verdict_are_caught(path: Path, found: ShockTable) -> None:
+    """Estimates add up, and a verdict is what the thresholds make it."""
+    last = FIRST + len(found.results) - 1
+    for column, below in ((6, True), (12, False)):
+        sheet = Spreadsheet(path)
+        page = sheet.book["Shocks"]
+        row = FIRST
+        if below:
+            row = 1 + next(
+                row[0].row or 0 for row in page.iter_rows(min_row=last + 1) if row[0].value == "Shock number"
+            )
+        cell = page.cell(row, column)
+        cell.value = cell.value * 1.001 if below else "another"
+        assert sheet.value(*MASTER) == "CHECK"
+
+
+def test_other_thresholds_give_other_verdicts(sheet: Spreadsheet, found: ShockTable) -> None:
+    """The thresholds are cells to be changed; verdicts and counts follow."""
+    page = sheet.book["Shocks"]
+    row = next(row[1].row or 0 for row in page.iter_rows(min_row=FIRST) if row[1].value == "Thresholds")
+    assert [page.cell(row + 1, 3).value, page.cell(row + 2, 3).value] == [1.1, 0.9]
+    page.cell(row + 1, 3).value, page.cell(row + 2, 3).value = 10.0, 9.0
+    verdicts = [sheet.value("Shocks", f"M{FIRST + number}") for number in range(len(found.results))]
+    assert set(verdicts) == {"poor"}
+    assert sheet.value("Shocks", f"D{row + 1}") == len(found.results)
+
+
+def test_one_shock_is_chosen_and_revalued_term_by_term(path: Path, found: ShockTable) -> None:
+    """Whichever is chosen, the sums over the terms are what the shock was reported to do by rates alone."""
+    for number in (3, 4, len(found.results)):
+        sheet = Spreadsheet(path)
+        place = sheet.book.defined_names["shock_chosen"].attr_text.rsplit("!", 1)[1].replace("$", "")
+        page = sheet.book["Shock recomputed"]
+        row = page[place].row
+        page[place].value = number
+        result = found.results[number - 1]
+        assert sheet.value("Shock recomputed", f"C{row + 1}") == result.name
+        by_rates = replace(
+            result.shock, moves=tuple(move for move in result.shock.moves if move.kind in RATES)
+        )
+        expected = (found.base.assets, found.base.liabilities)
+        if by_rates.moves:
+            alone = tasks.shock(
+                replace(shocked_book(shocks=(by_rates,)), shock_settings=ShockSettings(("x",)))
+            )
+            expected = (alone.results[0].assets, alone.results[0].liabilities)
+        live = [sheet.value("Shock recomputed", f"C{row + offset}") for offset in (3, 4)]
+        np.testing.assert_allclose(live, expected, rtol=1e-12)
+        other = sheet.value("Shock recomputed", f"E{row + 3}")
+        assert other == pytest.approx(result.assets - expected[0], abs=1e-5)
+
+
+RATES = frozenset(MoveKind) - {
+    MoveKind.INFLATION, MoveKind.SPREAD, MoveKind.VALUE, MoveKind.AMOUNT, MoveKind.TIME, MoveKind.DECLINE,
+}  # fmt: skip
+
+
+def test_a_side_that_is_not_moved_by_rates_alone_is_not_recomputed(sheet: Spreadsheet) -> None:
+    """It is reported, and its cell says so; the other side is recomputed."""
+    cells = {
+        row[1]: row[2:10]
+        for row in sheet.book["Shock recomputed"].iter_rows(min_row=5, max_row=11, values_only=True)
+    }
+    assert cells["Markets fall"][1] == "not by rates alone"
+    assert str(cells["Markets fall"][4]).startswith("=SUMPRODUCT(")
+    assert str(cells["Lives are longer"][1]).startswith("=SUMPRODUCT(")
+    assert cells["Lives are longer"][4] == "not by rates alone"
+    assert cells["Everywhere"][7] == "none"
+
+
+def test_the_summary_and_the_provenance_tell_of_shocks(sheet: Spreadsheet, found: ShockTable) -> None:
+    """The worst shock by name, how many fall below each threshold, and where the sets come from."""
+    text = " ".join(str(row[0].value) for row in sheet.book["Summary"].iter_rows(max_col=1))
+    worst = min(found.results, key=lambda result: result.surplus)
+    assert worst.name in text
+    below = sum(result.funding_ratio < 1.1 for result in found.results)
+    assert f"{below} below 110 %" in text
+    rows = {row[0].value: row for row in sheet.book["Summary"].iter_rows(min_row=5, max_row=12)}
+    reported = rows["Least surplus after a shock"]
+    assert reported[2].value == worst.surplus
+    assert sheet.value("Summary", f"D{reported[0].row}") == pytest.approx(worst.surplus, rel=1e-12)
+    items = {row[0].value: row[1].value for row in sheet.book["Provenance"].iter_rows(min_row=5, max_col=2)}
+    assert items["Shocks: sets"] == ", ".join(shocked_book().shock_settings.sets)
+    assert "2015/35" in items["Shocks: set Solvency II rates"]
+    assert items["Shocks: SHA-256 of the book's contents"] == shocked_book().digest
+
+
+def test_formulas_keep_to_a_few_plain_functions(sheet: Spreadsheet) -> None:
+    """No nested IF, no volatile function, nothing that a reviewer cannot follow; names stay text."""
+    for name, _, text in sheet.formulas():
+        if name in SHEETS:
+            called = FUNCTION_CALL.findall(text)
+            assert set(called) <= FUNCTION_NAMES
+            assert called.count("IF") <= 1
+            assert len(text) < 220
+    cell = sheet.book["Shocks"][f"B{FIRST}"]
+    assert (cell.value, cell.data_type) == (examples.HOSTILE, "s")
+    cell = sheet.book["Shock rates"]["H4"]
+    assert cell.data_type != "f"
+
+
+CHART = "{http://schemas.openxmlformats.org/drawingml/2006/chart}"
+
+
+def test_charts_show_the_changes_and_the_profile(path: Path) -> None:
+    """Bars by shock, full and estimated, and the surplus with its tangent over the whole scale."""
+    with zipfile.ZipFile(path) as archive:
+        found = [
+            ElementTree.fromstring(archive.read(name))
+            for name in archive.namelist()
+            if re.fullmatch(r"xl/charts/chart\d+\.xml", name)
+        ]
+    titled: dict[str, Any] = {}
+    for chart in found:
+        words = [str(node.text) for node in chart.iter() if node.tag.endswith("}t")]
+        titled[words[0]] = chart
+    bars = titled["Change in surplus by shock"]
+    assert len(list(bars.iter(f"{CHART}ser"))) == 2
+    lines = titled["Surplus by parallel move of all rates"]
+    assert [node.get("val") for node in lines.iter(f"{CHART}min")] == ["-300"]
+    assert all(node.get("val") == "0" for node in lines.iter(f"{CHART}smooth"))
+
+
+def test_without_shocks_their_sheets_are_left_out(tmp_path: Path) -> None:
+    """The summary says so, what was wrong stands among the faults, and all else stands."""
+    book = replace(examples.book(), rates_model=None, shock_settings=ShockSettings(sets=("None such",)))
+    found = tasks.shock(book)
+    assert found.results == ()
+    for shocks in (found, None):
+        target = write_report(
+            examples.reading(book), tasks.value(book), None, tmp_path / "r.xlsx", shocks=shocks
+        )
+        sheet = Spreadsheet(target)
+        assert not set(SHEETS) & set(sheet.book.sheetnames)
+        text = " ".join(str(row[0].value) for row in sheet.book["Summary"].iter_rows(max_col=1))
+        assert "No shocks were computed" in text
+        told = [str(row[4].value) for row in sheet.book["Faults"].iter_rows(min_row=5)]
+        assert any("None such" in line for line in told) == (shocks is not None)
+        assert sheet.value(*MASTER) == "OK"
+
+
+def test_a_shock_that_cannot_be_computed_is_among_the_faults(tmp_path: Path) -> None:
+    """The others stand, and the fault says while doing what it was met."""
+    bad = Shock("No sense", (Move(MoveKind.PARALLEL, -1e6),))
+    sheet = write(shocked_book(shocks=(bad, *OWN[:1])), tmp_path / "r.xlsx")
+    told = {str(row[4].value): row[3].value for row in sheet.book["Faults"].iter_rows(min_row=5)}
+    assert [met for line, met in told.items() if "No sense" in line] == ["Shocks"]
+    assert sheet.book["Shocks"][f"B{FIRST}"].value == examples.HOSTILE
+    assert sheet.value(*MASTER) == "OK"
+
+
+@pytest.mark.parametrize("without", ["liabilities", "assets"])
+def test_an_empty_side_is_shocked(tmp_path: Path, without: str) -> None:
+    """Without liabilities there is no ratio and no verdict; nothing fails."""
+    book = shocked_book()
+    if without == "liabilities":
+        book = replace(book, liabilities=FlowTable.empty())
+    else:
+        book = replace(book, holdings=(), asset_flows=FlowTable.empty())
+    sheet = write(book, tmp_path / "r.xlsx")
+    assert failures(sheet) == []
+    assert sheet.value(*MASTER) == "OK"
+    if without == "liabilities":
+        assert sheet.book["Shocks"][f"G{FIRST}"].value == "n/a"
+        assert sheet.book["Shocks"][f"M{FIRST}"].value in (None, "")
+
+
+def test_inflation_is_reported_and_not_recomputed(tmp_path: Path) -> None:
+    """A side that follows the index is not moved by rates alone."""
+    book = shocked_book(full_book(), (Shock("Prices", (Move(MoveKind.INFLATION, 50.0),)), OWN[1]))
+    book = replace(book, shock_settings=ShockSettings(sets=("None such",)), second_basis=None)
+    sheet = write(book, tmp_path / "r.xlsx")
+    page = sheet.book["Shock recomputed"]
+    assert page["B5"].value == "Prices"
+    assert page["G5"].value == "not by rates alone"
+    assert sheet.value("Shock recomputed", "J6") == "OK"
+    assert sheet.value(*MASTER) == "OK"
+
+
+def test_times_that_are_all_but_equal_are_one_term(tmp_path: Path) -> None:
+    """A tenth times three and three tenths differ by rounding alone: no flow is counted twice."""
+    book = replace(
+        shocked_book(), liabilities=FlowTable.build(["A"] * 3, [0.1 * 3, 0.3, 7.0], [1e6, 1e6, 2e6])
+    )
+    sheet = write(book, tmp_path / "r.xlsx")
+    times = [row[0] for row in sheet.book["Shock rates"].iter_rows(min_row=5, max_col=1, values_only=True)]
+    assert sum(abs(time - 0.3) < 1e-6 for time in times) == 1
+    assert failures(sheet) == []
+
+
+def test_too_many_shifts_are_cut_and_said(tmp_path: Path, monkeypatch: pytest.MonkeyPatch) -> None:
+    """The first shocks are recomputed, all are reported, and the sheets say so."""
+    book = shocked_book()
+    monkeypatch.setattr(shocks_rates, "SHIFT_CAP", 1_000)
+    sheet = write(book, tmp_path / "r.xlsx")
+    for name in ("Shocks", "Shock recomputed"):
+        assert re.search(r"The first \d of \d+ shocks are recomputed", str(sheet.book[name]["A2"].value))
+    assert failures(sheet) == []
+    assert sheet.value(*MASTER) == "OK"
+
+
+@pytest.mark.parametrize("cap", ["rows", "terms", "shifts"])
+def test_where_nothing_is_recomputed_it_is_said(
+    tmp_path: Path, monkeypatch: pytest.MonkeyPatch, cap: str
+) -> None:
+    """Too many flows, or terms, for a spreadsheet: reported figures stand alone with the reason."""
+    if cap == "rows":
+        monkeypatch.setattr(flows, "ROW_CAP", 60)
+        monkeypatch.setattr("desk.report.results.position.ROW_CAP", 60)
+    elif cap == "terms":
+        monkeypatch.setattr(shocks_rates, "LIVE_WORK", 100)
+    else:
+        monkeypatch.setattr(shocks_rates, "SHIFT_CAP", 10)
+    sheet = write(shocked_book(), tmp_path / "r.xlsx")
+    assert not {"Shock rates", "Shock recomputed"} & set(sheet.book.sheetnames)
+    assert "not recomputed" in str(sheet.book["Shocks"]["A2"].value)
+    labels = " ".join(str(row[0].value) for row in sheet.book["Checks"].iter_rows(min_row=7))
+    assert "Shocks are not recomputed" in labels
+    assert failures(sheet) == []
+    assert sheet.value(*MASTER) == "OK"
