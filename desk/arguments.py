@@ -81,6 +81,15 @@ def parser() -> argparse.ArgumentParser:
     simulate.add_argument(
         "--model", type=_model, metavar="NAME", help=f"rates model in place of the book's: {names}"
     )
+    simulate.add_argument(
+        "--paths-out",
+        type=Path,
+        metavar="FILE",
+        help="also write every path, by year, to FILE.xlsx or FILE.csv.gz",
+    )
+    simulate.add_argument(
+        "--every-step", action="store_true", help="with --paths-out: every step of the paths, not the years"
+    )
     calibrate = command("calibrate", "Fit a short-rate model to data of the book; the book stays as it is.")
     calibrate.add_argument(
         "--to",
@@ -167,10 +176,15 @@ def range_faults(options: argparse.Namespace) -> Iterable[Fault]:
             )
 
 
-def target_fault(target: Path, source: Path, *, option: str = "--out") -> Fault | None:
-    """What is wrong with the place that `option` says a workbook is to go to."""
-    if target.suffix.lower() != ".xlsx":
-        return Fault(f"{option} is {target}", "a name that ends in .xlsx", "Name a workbook.")
+def target_fault(
+    target: Path, source: Path, *, option: str = "--out", endings: tuple[str, ...] = (".xlsx",)
+) -> Fault | None:
+    """What is wrong with the place that `option` says a workbook, or another file, is to go to."""
+    if not target.name.lower().endswith(endings):
+        wanted = f"a name that ends in {' or '.join(endings)}"
+        return Fault(
+            f"{option} is {target}", wanted, f"Name a {'workbook' if len(endings) == 1 else 'file'}."
+        )
     if target.is_dir():
         return Fault(f"{option} is {target}, a folder", "a file", "Name a file in it.")
     if target.exists() and not target.is_file():

@@ -328,7 +328,7 @@ def _reach(book: Book, level: float) -> Reached:
 
 def _simulate(options: argparse.Namespace) -> int:
     """A run."""
-    faults = list(range_faults(options))
+    faults = [*range_faults(options), *_paths_faults(options)]
     try:
         reading, book = read_usable(options.book)
     except BadRequest as bad:
@@ -350,16 +350,49 @@ def _simulate(options: argparse.Namespace) -> int:
     stated = book.rates_model
     book = _with_options(book, options)
     _insist_on(book, model=True)
+    saved: Path | None = options.paths_out
+    if saved is not None:
+        # Before the run: what stands in the way is told at once.
+        _write_paths(book, saved, every_step=options.every_step)
     with ProgressLine("Simulating") as progress:
         simulation = tasks.simulate(book, progress=progress)
     told = (*reading.faults, *_volatility_faults(stated, book.rates_model))
     _complain_of((*told[len(reading.faults) :], *further_faults(reading.faults, simulation.faults)))
     if options.json:
-        _say(as_json.text(as_json.simulation_object(simulation, told)))
-    else:
-        title, currency = book.basis.title, book.basis.currency
-        _say(as_text.simulation_text(simulation, currency=currency, title=title))
+        plain = as_json.simulation_object(simulation, told)
+        _say(as_json.text(plain if saved is None else plain | {"paths_out": str(saved)}))
+        return DONE
+    title, currency = book.basis.title, book.basis.currency
+    _say(as_text.simulation_text(simulation, currency=currency, title=title))
+    if saved is not None:
+        _say(f"\nThe paths are in {as_text.printable(str(saved))}")
     return DONE
+
+
+def _paths_faults(options: argparse.Namespace) -> Iterable[Fault]:
+    """What is wrong with where the paths are to go."""
+    from desk.report.scenario_export import ENDINGS
+
+    if options.paths_out is None:
+        if options.every_step:
+            yield Fault("--every-step is given without --paths-out", "both", "Name a file, or leave it out.")
+        return
+    fault = target_fault(options.paths_out, options.book, option="--paths-out", endings=ENDINGS)
+    if fault is not None:
+        yield fault
+
+
+def _write_paths(book: Book, target: Path, *, every_step: bool) -> None:
+    """Write the paths of the book's run."""
+
+    def write() -> Path:
+        with ProgressLine("Writing the paths") as progress:
+            return tasks.export_scenarios(book, target, every_step=every_step, progress=progress)
+
+    try:
+        _write_to(target, "--paths-out", "file of paths", write)
+    except ValueError as error:
+        raise BadRequest([Fault(f"{error}", "paths that the file can hold", "Ask for fewer.")]) from error
 
 
 def _calibrate(options: argparse.Namespace) -> int:

@@ -351,7 +351,7 @@ def test_a_mistyped_command_is_said(run: Run, window: list[Path | None]) -> None
     status, out, err = run("vlaue")
     assert (status, out, window) == (2, "", [])
     assert "no file vlaue" in err
-    assert "check, value, shock, simulate, report" in err
+    assert "check, value, shock, simulate, calibrate, report" in err
 
 
 def test_without_a_display_the_window_says_why(

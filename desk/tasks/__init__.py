@@ -9,6 +9,7 @@ from __future__ import annotations
 from desk.tasks.calibration import calibrate
 from desk.tasks.results import read, report, save_copy, simulate, value
 from desk.tasks.running import Cancelled, CancelToken, Progress
+from desk.tasks.scenarios import curve_at, export_scenarios, paths_of
 from desk.tasks.shocks import grid, least_move, reverse, shock, shock_sets, shocks_of
 
 __all__ = [
@@ -16,8 +17,11 @@ __all__ = [
     "Cancelled",
     "Progress",
     "calibrate",
+    "curve_at",
+    "export_scenarios",
     "grid",
     "least_move",
+    "paths_of",
     "read",
     "report",
     "reverse",
