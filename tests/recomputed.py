@@ -30,12 +30,12 @@ from datetime import date
 from functools import cache
 from typing import Any
 
-from tests.recomputed_cells import BOOKS, Workbook, as_date, opened, printed
+from tests.recomputed_cells import BOOKS, SECOND, Workbook, as_date, opened, printed
 from tests.recomputed_curves import Curve, linear_zero, log_linear, monotone_convex, through_swaps
 
 __all__ = [
-    "BOOKS", "KEYS", "POINT", "Curve", "Row", "Side", "Workbook", "bump", "close", "opened", "own_curve",
-    "printed", "sides",
+    "BOOKS", "KEYS", "POINT", "SECOND", "Curve", "Row", "Side", "Workbook", "bump", "close", "grown_sides",
+    "opened", "own_curve", "price_index", "printed", "sides",
 ]  # fmt: skip
 
 KEYS = (0.25, 0.5, 1, 2, 3, 5, 7, 10, 15, 20, 25, 30, 40, 50)
@@ -53,6 +53,10 @@ class Row:
     amount: float
     spread: float
     paid: bool = True
+
+
+Move = tuple[int | None, float]
+"""A key of expected inflation, None for all together, and by how much it is moved [a year]."""
 
 
 # The curve ---------------------------------------------------------------------------------------------
@@ -100,7 +104,7 @@ def spread_by_term(workbook: Workbook, time: float) -> float:
     return float(low + (high - low) * (time - start) / (end - start))
 
 
-def promised(book: str) -> tuple[list[str], list[Row]]:
+def promised(book: str, move: Move | None = None) -> tuple[list[str], list[Row]]:
     """Lines of the liabilities and their rows: beta times the market risk premium over the spread."""
     workbook = opened(book)
     names: list[str] = []
@@ -113,7 +117,7 @@ def promised(book: str) -> tuple[list[str], list[Row]]:
         time = years(workbook, row)
         spread = workbook.basis["Liability spread"] + spread_by_term(workbook, time)
         spread += (row.get("Beta") or 0.0) * workbook.basis["Market risk premium"]
-        amount = row["Amount"] * growth(book, terms.get(row["Line"], {}), time)
+        amount = row["Amount"] * growth(book, terms.get(row["Line"], {}), time, move)
         rows.append(Row(names.index(row["Line"]), time, amount, spread))
     return names, rows
 
@@ -122,17 +126,25 @@ def promised(book: str) -> tuple[list[str], list[Row]]:
 
 
 @cache
-def price_index(book: str) -> Curve:
+def price_index(book: str, move: Move | None = None) -> Curve:
     """Logarithm of the index expected at a time over today's; before today it grew at the recent rate."""
     workbook = opened(book)
     assert workbook.basis.get("Inflation interpolation") is None
     terms, rates = zip(*workbook.inflation, strict=True)
     ahead = log_linear(terms, [math.log1p(rate) for rate in rates])
     recent = math.log1p(workbook.basis["Recent inflation"])
-    return lambda time: recent * time if time <= 0 else ahead(time)
+    height = (lambda time: 0.0) if move is None else shape_of(move)
+    return lambda time: recent * time if time <= 0 else ahead(time) + height(time) * time
 
 
-def growth(book: str, terms: dict[str, Any], time: float) -> float:
+def shape_of(move: Move) -> Callable[[float], float]:
+    """By how much the expected inflation to a time is moved."""
+    key, size = move
+    part = (lambda time: 1.0) if key is None else bump(key)
+    return lambda time: size * part(time)
+
+
+def growth(book: str, terms: dict[str, Any], time: float, move: Move | None = None) -> float:
     """How much an amount in today's money grows until it is paid."""
     kind = terms.get("Indexation") or "fixed"
     if kind == "fixed":
@@ -140,17 +152,17 @@ def growth(book: str, terms: dict[str, Any], time: float) -> float:
     if kind == "rising":
         return float((1 + terms["Rise"]) ** time)
     if kind == "linked":
-        return math.exp(price_index(book)(time))
+        return math.exp(price_index(book, move)(time))
     assert kind == "collared"
     whole = math.floor(time)
-    total = math.prod(collared(book, year, terms["Floor"], terms["Cap"]) for year in range(whole))
-    return float(total * collared(book, whole, terms["Floor"], terms["Cap"]) ** (time - whole))
+    total = math.prod(collared(book, year, terms["Floor"], terms["Cap"], move) for year in range(whole))
+    return float(total * collared(book, whole, terms["Floor"], terms["Cap"], move) ** (time - whole))
 
 
 @cache
-def collared(book: str, year: int, floor: float, cap: float) -> float:
+def collared(book: str, year: int, floor: float, cap: float, move: Move | None = None) -> float:
     """Expected factor of one year whose normal increase is held between a floor and a cap."""
-    index, deviation = price_index(book), float(opened(book).basis["Inflation volatility"])
+    index, deviation = price_index(book, move), float(opened(book).basis["Inflation volatility"])
     mean = math.expm1(index(year + 1) - index(year))
 
     def call(strike: float) -> float:
@@ -165,10 +177,12 @@ def normal(far: float) -> float:
     return math.erfc(-far / math.sqrt(2)) / 2
 
 
-def linked_payments(book: str, holding: dict[str, Any]) -> Iterable[tuple[float, float]]:
+def linked_payments(
+    book: str, holding: dict[str, Any], move: Move | None = None
+) -> Iterable[tuple[float, float]]:
     """What a linked bond pays: that of a bond times its index ratio and the growth of the lagged index."""
     workbook = opened(book)
-    index, ratio = price_index(book), float(holding["Index ratio"])
+    index, ratio = price_index(book, move), float(holding["Index ratio"])
     lag = holding["Index lag (months)"] / 12
     maturity = (as_date(holding["Maturity"]) - workbook.today).days / 365
     for time, amount in payments(workbook.today, {**holding, "Kind": "bond"}):
@@ -328,6 +342,22 @@ def sides(book: str) -> tuple[Side, Side]:
     """Assets and liabilities of a demo book."""
     curve = curve_of(book)
     return Side(*held(book, curve), curve), Side(*promised(book), curve)
+
+
+def grown_sides(book: str, move: Move) -> tuple[Side, Side]:
+    """Both sides with amounts as they would be on moved expected inflation; spreads stay."""
+    curve, still = curve_of(book), sides(book)[0]
+    linked = {
+        line: holding
+        for line, holding in enumerate(opened(book).holdings)
+        if holding["Kind"] == "linked bond"
+    }
+    rows = [row for row in still.rows if row.line not in linked]
+    for line, holding in linked.items():
+        spread = next(row.spread for row in still.rows if row.line == line)
+        rows += [Row(line, time, amount, spread) for time, amount in linked_payments(book, holding, move)]
+    rows.sort(key=lambda row: row.line)
+    return Side(still.names, rows, curve), Side(*promised(book, move), curve)
 
 
 def close(found: Any, wanted: float, scale: float = 0.0) -> bool:

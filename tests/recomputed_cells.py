@@ -14,9 +14,10 @@ from typing import Any
 
 from openpyxl import load_workbook
 
-__all__ = ["BOOKS", "Workbook", "as_date", "opened", "printed"]
+__all__ = ["BOOKS", "ROOT", "SECOND", "Workbook", "as_date", "opened", "printed"]
 
 ROOT = Path(__file__).resolve().parents[1]
+SECOND = " on its second basis"
 BOOKS = ("pension_fund", "life_insurer", "small_endowment")
 
 
@@ -24,7 +25,7 @@ BOOKS = ("pension_fund", "life_insurer", "small_endowment")
 def printed(book: str, command: str) -> dict[str, Any]:
     """What a command prints with ``--json``."""
     done = subprocess.run(
-        [sys.executable, "-m", "desk", command, f"demo_books/{book}.xlsx", "--json"],
+        [sys.executable, "-m", "desk", command, str(ROOT / "demo_books" / f"{book}.xlsx"), "--json"],
         cwd=ROOT,
         env={**os.environ, "PYTHONWARNINGS": "error"},
         capture_output=True,
@@ -60,8 +61,9 @@ class Workbook:
 
 @cache
 def opened(book: str) -> Workbook:
-    """The cells of a demo book."""
-    file = load_workbook(ROOT / "demo_books" / f"{book}.xlsx", read_only=True, data_only=True)
+    """The cells of a demo book, or of one at a path; with `SECOND` after it, those of its second basis."""
+    path, is_second = book.removesuffix(SECOND), book.endswith(SECOND)
+    file = load_workbook(ROOT / "demo_books" / f"{path}.xlsx", read_only=True, data_only=True)
     sheets = {sheet.title: list(sheet.iter_rows(values_only=True)) for sheet in file.worksheets}
     file.close()
 
@@ -78,16 +80,29 @@ def opened(book: str) -> Workbook:
     def pairs(name: str, second: str = "Rate") -> list[tuple[float, float]]:
         return [(float(row["Term"]), float(row[second])) for row in table(name)]
 
+    def of_basis(name: str) -> str:
+        return f"Second {name[0].lower()}{name[1:]}" if is_second else name
+
+    basis = items("Basis")
+    inflation = "Inflation"
+    if is_second:
+        # Date, currency and day count are those of the first basis; so is inflation, unless it is stated.
+        shared = ["Valuation date", "Currency", "Day count"]
+        if "Second inflation" in sheets:
+            inflation = "Second inflation"
+        else:
+            shared += ["Inflation volatility", "Recent inflation"]
+        basis = {item: basis[item] for item in shared if item in basis} | items("Second basis")
     return Workbook(
-        basis=items("Basis"),
+        basis=basis,
         model=items("Rates model"),
         run=items("Run"),
-        quotes=pairs("Curve"),
+        quotes=pairs(of_basis("Curve")),
         liabilities=table("Liabilities"),
         holdings=table("Holdings"),
         flows=table("Asset flows"),
-        spreads=pairs("Liability spreads", "Spread"),
-        inflation=pairs("Inflation"),
+        spreads=pairs(of_basis("Liability spreads"), "Spread"),
+        inflation=pairs(inflation),
         terms=table("Line terms"),
     )
 

@@ -8,6 +8,7 @@ from typing import Any
 
 import numpy as np
 import pytest
+from openpyxl.utils import get_column_letter
 
 from desk import tasks
 from desk.book import Book, HoldingKind, Indexation, IndexationKind, LiabilityMethod, LineTerms, Side
@@ -56,13 +57,12 @@ def failed(sheet: Spreadsheet) -> list[tuple[str, str]]:
 
 def place(sheet: Spreadsheet, name: str, heading: str, *, row: int = 4) -> str:
     """Letter of the column under a heading."""
-    cells = [
-        cell.column_letter
-        for cell in sheet.book[name][row]
+    (place,) = [
+        number
+        for number, cell in enumerate(sheet.book[name][row], start=1)
         if str(cell.value).replace("\u00a0", " ") == heading
     ]
-    assert len(cells) == 1, (heading, [cell.value for cell in sheet.book[name][row]])
-    return str(cells[0])
+    return get_column_letter(place)
 
 
 def find_row(sheet: Spreadsheet, name: str, label: str, *, column: int = 1) -> int:
