@@ -176,7 +176,9 @@ def _collect(
         part = partial(converging, replicates=replicates, is_matched=matched)
         convergence = crew.run([partial(part, figure) for figure in figures])
         gain = partial(sampling_gain, replicates=replicates)
-        gains = crew.run([partial(gain, figure) for figure in figures]) if replicates > 1 else []
+        found_gains = crew.run([partial(gain, figure) for figure in figures]) if replicates > 1 else []
+        # A figure that is the same on every path has no variance to lessen.
+        gains = [found for found in found_gains if found.plain_se > 0.0]
         sides = crew.run([partial(summing_up.sample, row) for row in (*values.value, surplus)])
     return _Collected(accounts, rates, discounts, sides, shown, convergence, gains, beside, pairs)
 
