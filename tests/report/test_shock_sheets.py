@@ -58,7 +58,7 @@ OWN = (
 
 def shocked_book(of: Book | None = None, shocks: tuple[Shock, ...] = OWN) -> Book:
     """A book that asks for own shocks and prescribed sets of every kind."""
-    sets = ("Basel 2016", "EU 2024/856", "Solvency II rates", "Sensitivities in accounts")
+    sets = ("EU 2024/856", "Solvency II rates")
     settings = ShockSettings(sets=sets, thresholds=(1.1, 0.9))
     return replace(of or examples.book(), rates_model=None, shocks=shocks, shock_settings=settings)
 
@@ -176,7 +176,7 @@ def test_shifts_are_formulas_and_those_of_the_curve_move(sheet: Spreadsheet, fou
     page = sheet.book["Shock rates"]
     curve = shocked_book().basis.curve
     rows = range(5, page.max_row + 1, 7)
-    time = np.array([float(page.cell(row, 1).value) for row in rows])
+    time = np.array([sheet.value("Shock rates", f"A{row}") for row in rows], dtype=float)
     zero = curve.zero(time)
     for number, result in enumerate(found.results):
         cells = [page.cell(row, 8 + number) for row in rows]
@@ -257,7 +257,7 @@ def test_a_wrong_figure_is_caught(sheet: Spreadsheet, name: str, address: str) -
     cell = sheet.book[name][address]
     assert isinstance(cell.value, int | float)
     assert cell.value
-    cell.value = cell.value * 1.001
+    cell.value = 1.001 * float(cell.value)
     assert sheet.value(*MASTER) == "CHECK"
 
 
@@ -273,7 +273,7 @@ def test_a_wrong_estimate_and_a_wrong_verdict_are_caught(path: Path, found: Shoc
                 row[0].row or 0 for row in page.iter_rows(min_row=last + 1) if row[0].value == "Shock number"
             )
         cell = page.cell(row, column)
-        cell.value = cell.value * 1.001 if below else "another"
+        cell.value = 1.001 * float(str(cell.value)) if below else "another"
         assert sheet.value(*MASTER) == "CHECK"
 
 
@@ -344,7 +344,7 @@ def test_the_summary_and_the_provenance_tell_of_shocks(sheet: Spreadsheet, found
     assert sheet.value("Summary", f"D{reported[0].row}") == pytest.approx(worst.surplus, rel=1e-12)
     items = {row[0].value: row[1].value for row in sheet.book["Provenance"].iter_rows(min_row=5, max_col=2)}
     assert items["Shocks: sets"] == ", ".join(shocked_book().shock_settings.sets)
-    assert "2015/35" in items["Shocks: set Solvency II rates"]
+    assert "2015/35" in str(items["Shocks: set Solvency II rates"])
     assert items["Shocks: SHA-256 of the book's contents"] == shocked_book().digest
 
 
@@ -446,8 +446,9 @@ def test_times_that_are_all_but_equal_are_one_term(tmp_path: Path) -> None:
         shocked_book(), liabilities=FlowTable.build(["A"] * 3, [0.1 * 3, 0.3, 7.0], [1e6, 1e6, 2e6])
     )
     sheet = write(book, tmp_path / "r.xlsx")
-    times = [row[0] for row in sheet.book["Shock rates"].iter_rows(min_row=5, max_col=1, values_only=True)]
-    assert sum(abs(time - 0.3) < 1e-6 for time in times) == 1
+    page = sheet.book["Shock rates"]
+    times = np.array([page.cell(row, 1).value for row in range(5, page.max_row + 1)], dtype=float)
+    assert (np.abs(times - 0.3) < 1e-6).sum() == 1
     assert failures(sheet) == []
 
 
