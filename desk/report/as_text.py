@@ -2,7 +2,6 @@
 
 from __future__ import annotations
 
-import textwrap
 from collections.abc import Callable, Sequence
 
 import numpy as np
@@ -10,12 +9,21 @@ import numpy as np
 from desk.book import Book, Fault, Severity
 from desk.intake.records import Reading
 from desk.report.basis_text import basis_text, comparison_text, inflation_text
-from desk.report.text_tables import MISSING, grouped, percent, printable, table
+from desk.report.text_tables import (
+    LINE_WIDTH,
+    MISSING,
+    grouped,
+    percent,
+    printable,
+    table,
+    wrapped,
+)
 from desk.report.wording import CAUTION, MEASURES, QUANTILE_METHOD, SIDE_NAMES
 from desk.scenarios.records import NodeSummary, Simulation
 from desk.valuation.records import LineStanding, Periods, Standing
 
 __all__ = [
+    "LINE_WIDTH",
     "check_text",
     "fault_line",
     "grouped",
@@ -28,7 +36,6 @@ __all__ = [
 
 LINES_SHOWN = 20
 LONGEST_NAME = 32
-LINE_WIDTH = 96
 
 
 def fault_line(fault: Fault) -> str:
@@ -84,7 +91,7 @@ def standing_text(
     blocks += [_redington(standing), _key_rates(standing, currency)]
     if standing.inflation is not None:
         blocks.append(inflation_text(standing.inflation, currency))
-    blocks += [_lines(standing, currency), _periods(standing.periods, currency), _wrapped(CAUTION)]
+    blocks += [_lines(standing, currency), _periods(standing.periods, currency), wrapped(CAUTION)]
     return "\n\n".join(blocks)
 
 
@@ -103,8 +110,8 @@ def simulation_text(simulation: Simulation, *, currency: str, title: str = "") -
         "Check of the mean of 1/R against the curve\n" + _repricing(simulation, shown),
         "Short rate, continuously compounded [% a year]\n" + _summary(simulation.short_rate, shown, percent),
         "Present values along the paths\n" + _distributions(simulation, printable(currency)),
-        _wrapped(QUANTILE_METHOD),
-        _wrapped(CAUTION),
+        wrapped(QUANTILE_METHOD),
+        wrapped(CAUTION),
     ]
     return "\n\n".join(blocks)
 
@@ -147,7 +154,7 @@ def _redington(standing: Standing) -> str:
         )
         for condition in standing.redington
     ]
-    statements = [_wrapped(condition.statement) for condition in standing.redington]
+    statements = [wrapped(condition.statement) for condition in standing.redington]
     return "\n".join([table(("Redington's conditions", "Assets", "Liabilities", ""), rows), *statements])
 
 
@@ -323,11 +330,6 @@ def _distributions(simulation: Simulation, currency: str) -> str:
     rows.append(("Share below 0 [%]", *(percent(side.below_zero, 2) for side in sides)))
     rows.append(("Its standard error [%]", *(percent(side.below_zero_se, 2) for side in sides)))
     return table((f"Present value [{currency}]", *(side.name.capitalize() for side in sides)), rows)
-
-
-def _wrapped(text: str) -> str:
-    """Prose in lines that a terminal can hold."""
-    return textwrap.fill(text, LINE_WIDTH)
 
 
 def _count(number: int, thing: str) -> str:

@@ -7,8 +7,8 @@ import numpy as np
 from desk.book import Basis, Book
 from desk.book.curve_source import CurveBonds
 from desk.rates.fitting import CurveFit
-from desk.report.text_tables import grouped, percent, printable, table
-from desk.report.wording import MEASURES, SIDE_NAMES, liability_words
+from desk.report.text_tables import grouped, percent, printable, table, wrapped
+from desk.report.wording import MEASURES, SIDE_NAMES, liability_words, within_a_sentence
 from desk.valuation.records import InflationStanding, Standing
 
 __all__ = ["basis_text", "comparison_text", "inflation_text"]
@@ -21,7 +21,7 @@ def basis_text(book: Book, standing: Standing) -> str:
     """The curve and what liabilities are discounted on."""
     basis = book.basis
     lines = [
-        f"Curve: {basis.curve_kind}. Liabilities are discounted on {liability_words(basis)}.",
+        wrapped(f"Curve: {basis.curve_kind}. Liabilities are discounted on {liability_words(basis)}."),
         "Single equivalent rate of the liabilities: "
         f"{percent(standing.liabilities.equivalent_rate)} % a year.",
     ]
@@ -105,7 +105,7 @@ def comparison_text(first: Standing, second: Standing, second_book: Book | None,
         for wording in MEASURES:
             unit = currency if wording.unit == "currency" else wording.unit
             add(
-                f"{name}: {wording.label[0].lower()}{wording.label[1:]}".replace("dV01", "DV01"),
+                f"{name}: {within_a_sentence(wording.label)}",
                 unit,
                 getattr(of_first, wording.name),
                 getattr(of_second, wording.name),
@@ -118,8 +118,8 @@ def comparison_text(first: Standing, second: Standing, second_book: Book | None,
     headings = ("Two bases", "Unit", "First", "Second", "First less second")
     words = ""
     if second_book is not None:
-        words = (
-            f"\nOn the second basis liabilities are discounted on {liability_words(second_book.basis)}; "
+        words = "\n" + wrapped(
+            f"On the second basis liabilities are discounted on {liability_words(second_book.basis)}; "
             f"curve: {second_book.basis.curve_kind}."
         )
     return table(headings, rows, left=2) + words

@@ -3,12 +3,19 @@
 from __future__ import annotations
 
 import math
+import textwrap
 import unicodedata
 from collections.abc import Iterable, Sequence
 
-__all__ = ["MISSING", "grouped", "percent", "printable", "table"]
+__all__ = ["LINE_WIDTH", "MISSING", "grouped", "percent", "printable", "table", "wrapped"]
 
 MISSING = "n/a"
+LINE_WIDTH = 96
+
+
+def wrapped(text: str) -> str:
+    """Prose in lines that a terminal can hold."""
+    return textwrap.fill(text, LINE_WIDTH)
 
 
 def printable(text: str) -> str:

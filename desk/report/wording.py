@@ -15,6 +15,7 @@ __all__ = [
     "MeasureWording",
     "indexation_words",
     "liability_words",
+    "within_a_sentence",
 ]
 
 CAUTION = (
@@ -68,6 +69,11 @@ MEASURES = (
     MeasureWording("dispersion", "Dispersion", "years²", "years2"),
     MeasureWording("dv01", "DV01", "currency", "money"),
 )
+
+
+def within_a_sentence(label: str) -> str:
+    """The label of a measure after other words; a name keeps its capital."""
+    return label if label.startswith(("Macaulay", "DV01")) else label[0].lower() + label[1:]
 
 
 def liability_words(basis: Basis) -> str:

@@ -12,7 +12,7 @@ from desk.report.results.flows import ROW_CAP, FlowSheet
 from desk.report.results.naming import SECOND
 from desk.report.results.plan import FIRST_ROW, Block, Formula, SheetPlan
 from desk.report.results.standing import LIVE_WORK, size_of_line
-from desk.report.wording import MEASURES, SIDE_NAMES, liability_words
+from desk.report.wording import MEASURES, SIDE_NAMES, liability_words, within_a_sentence
 from desk.valuation.records import LineStanding, Standing
 
 __all__ = ["plan_comparison", "plan_no_comparison"]
@@ -94,14 +94,11 @@ def _figures(first: Standing, second: Standing) -> Iterator[tuple[str, str, str,
         for wording in MEASURES:
             unit = first.currency if wording.unit == "currency" else wording.unit.removeprefix("% ")
             form = "money2" if wording.kind == "money" else wording.kind
-            label = wording.label if wording.label.isupper() else wording.label[0].lower() + wording.label[1:]
-            if wording.name == "dv01":
-                label = wording.label
             values = tuple(
                 float(getattr(getattr(standing, side.value), wording.name)) for standing in (first, second)
             )
             yield (
-                f"{SIDE_NAMES[side]}: {label}",
+                f"{SIDE_NAMES[side]}: {within_a_sentence(wording.label)}",
                 unit,
                 form,
                 (values[0], values[1]),
