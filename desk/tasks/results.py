@@ -157,6 +157,7 @@ def report(
         If `cancel` was set before the work was done.
     """
     from desk.report.results.workbook import write_report
+    from desk.scenarios.calibration import calibrations
 
     if reading.book is None:
         raise ValueError("`reading` must have a book: its faults stand in the way")
@@ -170,6 +171,8 @@ def report(
         start = 0.6
     if shocks is None:
         shocks = shock(reading.book, progress=part_of(watch, start, start + 0.05), cancel=cancel)
+    start += 0.05
+    fits = calibrations(reading.book, progress=part_of(watch, start, start + 0.1))
     written = write_report(
         reading,
         standing,
@@ -177,7 +180,8 @@ def report(
         path,
         second=second,
         shocks=shocks,
-        progress=part_of(watch, start + 0.05, 1.0),
+        fits=fits,
+        progress=part_of(watch, start + 0.1, 1.0),
     )
     watch(1.0)
     return written

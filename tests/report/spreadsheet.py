@@ -167,5 +167,13 @@ _FUNCTIONS: dict[str, Any] = {
     "NORMSDIST": _normal,
 }
 
+_FUNCTIONS |= {
+    "SLOPE": lambda after, before: float(np.polyfit(before, after, 1)[0]),
+    "INTERCEPT": lambda after, before: float(np.polyfit(before, after, 1)[1]),
+    "STEYX": lambda after, before: math.sqrt(
+        float(np.sum((after - np.polyval(np.polyfit(before, after, 1), before)) ** 2)) / (len(after) - 2)
+    ),
+}
+
 FUNCTION_NAMES = frozenset(_FUNCTIONS) - {"__builtins__"}
 FUNCTION_CALL = re.compile(r"([A-Z][A-Z0-9.]*)\(")

@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Callable
+from collections.abc import Callable, Sequence
 from contextlib import suppress
 from dataclasses import dataclass
 from datetime import UTC, datetime
@@ -10,8 +10,9 @@ from pathlib import Path
 from typing import TYPE_CHECKING, Any
 from zipfile import ZIP_DEFLATED, ZipFile
 
-from desk.book import Book, Side
+from desk.book import Book, Fault, Side
 from desk.intake.records import Reading
+from desk.report.results.calibration import plan_calibrations
 from desk.report.results.checks import Checks
 from desk.report.results.comparison import plan_comparison, plan_no_comparison
 from desk.report.results.control import MASTER_CHECK_AREA, plan_faults, plan_provenance, plan_summary
@@ -27,6 +28,7 @@ from desk.report.results.runs import plan_present_values, plan_savings_account, 
 from desk.report.results.shocks import plan_shocks
 from desk.report.results.standing import plan_lines
 from desk.report.safe_cells import clean_text, write_whole
+from desk.scenarios.calibration_records import Calibration
 from desk.scenarios.records import Simulation
 from desk.valuation.linked import is_linked
 from desk.valuation.prices import HoldingPrice, holding_prices
@@ -39,6 +41,8 @@ if TYPE_CHECKING:
 
 __all__ = ["plan_sheets", "write_report"]
 
+Fits = tuple[Sequence[Calibration], Sequence[Fault]]
+
 
 def write_report(
     reading: Reading,
@@ -48,6 +52,7 @@ def write_report(
     *,
     second: Standing | None = None,
     shocks: ShockTable | None = None,
+    fits: Fits = ((), ()),
     progress: Callable[[float], None] | None = None,
     written_at: datetime | None = None,
 ) -> Path:
@@ -66,6 +71,8 @@ def write_report(
         On the second basis of the book; where the book has one it is valued if this is left out.
     shocks : ShockTable, optional
         None, or one without results, leaves its sheets out, and the summary says so.
+    fits : tuple
+        Models fitted to data of the book, and faults of data that none could be fitted to.
     progress : callable, optional
         Called with the part done, from 0 to 1; it may stop the work by raising.
     written_at : datetime, optional
@@ -94,6 +101,7 @@ def write_report(
         simulation,
         second=second,
         shocks=shocks,
+        fits=fits,
         written_at=written_at or datetime.now(UTC),
     )
     report(0.1)
@@ -108,6 +116,7 @@ def plan_sheets(
     *,
     second: Standing | None = None,
     shocks: ShockTable | None = None,
+    fits: Fits = ((), ()),
     written_at: datetime,
 ) -> tuple[list[SheetPlan], dict[str, str]]:
     """All sheets in their order, and the names that the workbook defines; see `write_report`."""
@@ -146,6 +155,7 @@ def plan_sheets(
         )
         recomputed = recomputed | {"least_surplus": shocked.least_surplus}
     compared, of_second = _second_basis(book, standing, second, first, checks)
+    fitted = plan_calibrations(*fits, checks)
     summary = plan_summary(
         reading,
         standing,
@@ -163,6 +173,7 @@ def plan_sheets(
     ]
     if shocked is not None:
         plans += shocked.sheets
+    plans += fitted
     if simulation is not None:
         plans.append(plan_savings_account(simulation))
         plans.append(plan_short_rate(simulation))
