@@ -195,7 +195,8 @@ def test_each_station_offers_the_next(opened: MainWindow, qtbot: QtBot) -> None:
     opened.show_station(KEYS[0])
     for key, after in pairwise(KEYS):
         button = opened.station(key).next_button
-        assert button.isVisible()
+        # Shocks come a moment after the station is shown.
+        qtbot.waitUntil(button.isVisible, timeout=20_000)
         button.click()
         assert opened.shown == after
     assert not opened.station(KEYS[-1]).next_button.isVisible()

@@ -82,9 +82,12 @@ def answer_words(found: ReverseResult | LeastMove, along: str | Shock, currency:
         also = f" (so does one of {' and '.join(others)} bp)" if others else ""
         head = f"A parallel move of {size} bp brings {what}{also}"
     result = found.result
+    # What the search leaves of nothing is nothing.
+    is_none = abs(result.surplus) < 1e-9 * max(abs(result.assets), abs(result.liabilities))
+    surplus = 0.0 if is_none else result.surplus
     return (
         f"{head}: assets {amount(result.assets, currency)}, liabilities "
-        f"{amount(result.liabilities, currency)}, surplus {amount(result.surplus, currency)}."
+        f"{amount(result.liabilities, currency)}, surplus {amount(surplus, currency)}."
     )
 
 
@@ -119,7 +122,7 @@ class ReverseMode(Mode):
         split.setHandleWidth(GAP)
         for table in (self.position, self.terms):
             split.addWidget(table)
-        split.setSizes([600, 400])
+        split.setSizes([640, 350])
         self.table = split
         for teller in (*self.pictures, self.terms, self.position):
             teller.message.connect(station.message)

@@ -3,12 +3,11 @@
 from __future__ import annotations
 
 from PySide6.QtCore import QPointF, QSignalBlocker, Qt, Signal
-from PySide6.QtGui import QKeyEvent, QMouseEvent, QPainter, QPaintEvent, QPen, QValidator, QWheelEvent
+from PySide6.QtGui import QKeyEvent, QMouseEvent, QPainter, QPaintEvent, QPen, QWheelEvent
 from PySide6.QtWidgets import (
-    QAbstractSpinBox,
-    QDoubleSpinBox,
     QHBoxLayout,
     QLabel,
+    QLineEdit,
     QSlider,
     QWidget,
 )
@@ -103,38 +102,59 @@ class _Slider(QSlider):
         self.setValue(0)
 
 
-class _Box(QDoubleSpinBox):
-    """A number that the wheel leaves alone."""
+class _Box(QLineEdit):
+    """A number within limits; Up and Down step it, and Escape takes an entry back.
 
-    def wheelEvent(self, event: QWheelEvent) -> None:
-        """Turn only with the keyboard in it."""
-        if self.hasFocus():
-            super().wheelEvent(event)
+    Signals
+    -------
+    valueChanged(float)
+    """
+
+    valueChanged = Signal(float)
+
+    def __init__(self, low: float, high: float) -> None:
+        super().__init__()
+        self._low, self._high = low, high
+        self._value = 0.0
+        self.setAlignment(Qt.AlignmentFlag.AlignRight)
+        self.editingFinished.connect(self._on_finished)
+        self._show()
+
+    def value(self) -> float:
+        """The number that was taken last."""
+        return self._value
+
+    def setValue(self, value: float) -> None:
+        """Take a number; what is too much is the most."""
+        value = min(max(value, self._low), self._high)
+        changed = value != self._value
+        self._value = value
+        self._show()
+        if changed:
+            self.valueChanged.emit(value)
+
+    def _show(self) -> None:
+        self.setText(numbers.exact(round(self._value, 4)).replace("-", numbers.MINUS))
+        self.setModified(False)
+
+    def _on_finished(self) -> None:
+        if not self.isModified():
+            return
+        text = self.text().strip()
+        # Nothing is nothing moved; what is no number changes nothing.
+        value = numbers.parse_number(text) if text else 0.0
+        self.setValue(self._value if value is None else value)
+
+    def keyPressEvent(self, event: QKeyEvent) -> None:
+        """Step, or take the entry back."""
+        steps = {Qt.Key.Key_Up: 1, Qt.Key.Key_Down: -1, Qt.Key.Key_PageUp: 10, Qt.Key.Key_PageDown: -10}
+        if event.key() in steps:
+            self._on_finished()
+            self.setValue(self._value + steps[Qt.Key(event.key())])
+        elif event.key() == Qt.Key.Key_Escape and self.isModified():
+            self._show()
         else:
-            event.ignore()
-
-    def textFromValue(self, value: float) -> str:
-        """The shortest text, with a true minus."""
-        return numbers.exact(round(value, 4)).replace("-", numbers.MINUS)
-
-    def valueFromText(self, text: str) -> float:
-        """As it is written in the locale, with any minus."""
-        value = numbers.parse_number(text)
-        return self.value() if value is None else value
-
-    def validate(self, text: str, place: int) -> tuple[QValidator.State, str, int]:
-        """Anything may be typed; what is no number changes nothing."""
-        value = numbers.parse_number(text)
-        inside = value is not None and self.minimum() <= value <= self.maximum()
-        state = QValidator.State.Acceptable if inside else QValidator.State.Intermediate
-        return state, text, place
-
-    def fixup(self, text: str) -> str:
-        """What is too much is the most; what is no number is what was."""
-        value = numbers.parse_number(text)
-        if value is None:
-            return self.textFromValue(self.value())
-        return self.textFromValue(min(max(value, self.minimum()), self.maximum()))
+            super().keyPressEvent(event)
 
 
 class HandleRow(QWidget):
@@ -144,7 +164,7 @@ class HandleRow(QWidget):
     ----------
     handle : Handle
     slider : QSlider
-    box : QDoubleSpinBox
+    box : QLineEdit
         It takes more than the slider reaches.
 
     Signals
@@ -167,13 +187,7 @@ class HandleRow(QWidget):
         self.slider.setPageStep(_COARSE[handle.unit])
         self.slider.setAccessibleName(name)
         self.slider.setAccessibleDescription(handle.explanation)
-        self.box = _Box()
-        self.box.setButtonSymbols(QAbstractSpinBox.ButtonSymbols.NoButtons)
-        self.box.setDecimals(1)
-        self.box.setRange(handle.least, handle.most)
-        self.box.setSingleStep(_FINE)
-        self.box.setAlignment(Qt.AlignmentFlag.AlignRight)
-        self.box.setKeyboardTracking(False)
+        self.box = _Box(handle.least, handle.most)
         self.box.setFixedWidth(_BOX)
         self.box.setAccessibleName(f"{name}, number")
         self.box.setAccessibleDescription(handle.explanation)

@@ -64,6 +64,7 @@ class ShocksStation(Station):
         if isinstance(column, QVBoxLayout):
             column.insertWidget(1, self._bar)
             column.insertWidget(2, self.words)
+        self._last_stop: QWidget = self.tabs
         self._tables = QStackedWidget()
         self.set_pictures()
         self.set_table(self._tables, share=44)
@@ -105,7 +106,22 @@ class ShocksStation(Station):
             for control in mode.controls:
                 control.hide()
                 self._row.addWidget(control)
+            self._put_in_order(mode)
         return self._modes[key]
+
+    def _put_in_order(self, mode: Mode) -> None:
+        """The keyboard comes to a mode made late where the others are, and not after the foot."""
+        window = self.window()
+        chain = [window]
+        while (following := chain[-1].nextInFocusChain()) is not None and following is not window:
+            chain.append(following)
+        for part in (*mode.controls, *mode.pictures, mode.table, mode.form):
+            for widget in chain:
+                inside = part is widget or part.isAncestorOf(widget)
+                takes = bool(widget.focusPolicy() & Qt.FocusPolicy.TabFocus) and widget.focusProxy() is None
+                if inside and takes:
+                    QWidget.setTabOrder(self._last_stop, widget)
+                    self._last_stop = widget
 
     def show_mode(self, key: str) -> None:
         """Show a mode.
