@@ -13,8 +13,8 @@ from openpyxl.utils import get_column_letter
 from desk import tasks
 from desk.book import Book, HoldingKind, Indexation, IndexationKind, LiabilityMethod, LineTerms, Side
 from desk.report.results import bonds as bond_sheet
+from desk.report.results import collars, flows
 from desk.report.results import curve as curve_sheet
-from desk.report.results import flows, growth
 from desk.report.results.workbook import write_report
 from desk.valuation.prices import holding_prices
 from tests.report import examples
@@ -267,7 +267,7 @@ def test_linked_bonds_show_their_terms_and_real_prices(sheet: Spreadsheet) -> No
 
 def test_what_is_too_much_to_recompute_is_said(tmp_path: Path, monkeypatch: pytest.MonkeyPatch) -> None:
     """Values in the place of formulas, and the rest still agrees."""
-    monkeypatch.setattr(growth, "COLLAR_ROWS", 10)
+    monkeypatch.setattr(collars, "COLLAR_ROWS", 10)
     monkeypatch.setattr(bond_sheet, "BOND_WORK", 10)
     monkeypatch.setattr(curve_sheet, "WILSON_WORK", 10)
     sheet = write(full_book(), tmp_path / "report.xlsx")

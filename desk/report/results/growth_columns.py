@@ -12,8 +12,9 @@ import numpy as np
 
 from desk.book import IndexationKind, PricedFlows
 from desk.rates.inflation import unknown_years
+from desk.report.results.collars import ClassPlace
 from desk.report.results.further_columns import FurtherColumn, FurtherColumns
-from desk.report.results.growth import ClassPlace, Growth
+from desk.report.results.growth import Growth
 from desk.report.results.plan import Formula
 from desk.valuation.indexing import IndexClasses, row_factors
 
