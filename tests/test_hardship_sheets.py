@@ -187,3 +187,16 @@ def test_many_shocks_are_all_computed(tmp_path: Path, capsys: pytest.CaptureFixt
     assert [row["name"] for row in found["shocks"]][: len(wanted)] == wanted
     nothing = next(row for row in found["shocks"] if row["name"] == "Shock 48")
     assert nothing["change_in_surplus"] == pytest.approx(0.0, abs=1e-9 * nothing["assets"])
+
+
+def test_an_empty_sheet_is_one_fault(tmp_path: Path, capsys: pytest.CaptureFixture[str]) -> None:
+    """Whichever it is: none is told twice."""
+    sheets = wide_sheets()
+    emptied = ("Second basis", "Shocks", "Volatilities", "Yield history", "Line terms", "Liability spreads")
+    for name in emptied:
+        sheets[name] = []
+    path = save(sheets, tmp_path / "book.xlsx")
+    assert entry.main(["check", str(path)]) == 2
+    lines = capsys.readouterr().err.splitlines()
+    for name in emptied:
+        assert sum(line.startswith(f"{name}: the sheet is empty") for line in lines) == 1

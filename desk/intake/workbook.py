@@ -145,7 +145,7 @@ class _Reader:
                 self._items[names.items] = read_basis_items(sheet)
         unused = self._unused()
         for name in SHEETS:
-            if name not in self.tables:
+            if name not in (*self.tables, FIRST.items, SECOND.items):
                 self._lay_out(name, unused.get(name))
 
     def _unused(self) -> dict[str, str]:
