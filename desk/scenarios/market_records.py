@@ -88,6 +88,9 @@ class IndexSummary:
         pricing measure the price of a linked zero bond, ``P(0,t)`` times the expected index.
     revalued : str
         Which flows follow the index along the paths, and how.
+    matches_today : bool
+        Whether the mean present values of the run should be those on the curve: false where floors and caps
+        on the growth are valued with the inflation factor's own volatility.
     """
 
     index: NodeSummary
@@ -97,6 +100,7 @@ class IndexSummary:
     mean_discounted_se: FloatArray
     expected_discounted: FloatArray
     revalued: str
+    matches_today: bool
 
 
 @dataclass(frozen=True)

@@ -139,7 +139,7 @@ class MarketSamples:
             counted=NOT_COUNTED,
         )
 
-    def index(self, year: FloatArray, revalued: str) -> IndexSummary | None:
+    def index(self, year: FloatArray, revalued: str, *, matches_today: bool) -> IndexSummary | None:
         """The price index; None where inflation is not drawn."""
         market, levels = self._plan.market, self._summing.levels
         if self.log_index is None or market is None or market.index is None or market.inflation is None:
@@ -156,6 +156,7 @@ class MarketSamples:
             mean_discounted_se=owned_floats([found.mean_se for found in self._discounted]),
             expected_discounted=owned_floats(_linked_bond(self._plan, market.inflation, year, grown)),
             revalued=revalued,
+            matches_today=matches_today,
         )
 
 

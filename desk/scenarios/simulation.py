@@ -72,7 +72,7 @@ def simulate(
     plan = planned.plan
     # Values too large for a float are reported as a fault, not as a warning.
     with np.errstate(over="ignore", invalid="ignore", under="ignore", divide="ignore"):
-        values = PathValues(plan, (assets, liabilities))
+        values = PathValues(plan, (assets, liabilities), book.basis.inflation)
         collected = _collect(
             plan, book.risky_assets, values, run.percentiles, progress, threads or default_threads()
         )
@@ -102,7 +102,7 @@ def simulate(
             gains=tuple(collected.gains),
             replicates=1 if plan.replicates is None else plan.replicates.count,
             risky=collected.beside.risky(year, planned.mended),
-            index=collected.beside.index(year, values.revalued),
+            index=collected.beside.index(year, values.revalued, matches_today=values.held_rows == 0),
             diagnostics=diagnostics(plan, collected.pairs, year),
         )
     if progress is not None:

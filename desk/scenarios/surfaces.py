@@ -28,7 +28,7 @@ from desk.scenarios.chebyshev import (
     to_coefficients,
 )
 
-__all__ = ["Surface", "fit_surface", "flow_surfaces"]
+__all__ = ["Surface", "fit_surface", "flow_surfaces", "series_degree"]
 
 # Most columns worked on at a time: four arrays of them stay in a core's own cache.
 _CHUNK = 12_000
@@ -210,7 +210,7 @@ def _fit_nodes(
         steepest = np.abs(slopes).max(axis=1).tolist()
     degrees = []
     for row, slope in enumerate(steepest):
-        degree = _degree(slope, tolerance) if usable[row] else 0
+        degree = series_degree(slope, tolerance) if usable[row] else 0
         flows = weight.shape[1] - firsts[row]
         degrees.append(degree if flows > _FEW and degree < min(_MOST_DEGREE, 4 * flows) else 0)
     fitted = [row for row, degree in enumerate(degrees) if degree]
@@ -285,7 +285,7 @@ def _fit_two_factors(
     if float((exposure @ half).max()) > _STEEP:
         tilt = sizes @ exposure / gross
     slopes = (exposure - tilt) * -half
-    counts = [_degree(float(steepest), tolerance) + 1 for steepest in np.abs(slopes).max(axis=0)]
+    counts = [series_degree(float(steepest), tolerance) + 1 for steepest in np.abs(slopes).max(axis=0)]
     if max(counts) > _MOST_DEGREE or math.prod(counts) > 4 * weight.size:
         return direct
     # dimensions: flows by points, one a factor; the points of the fit first, then those of the check
@@ -303,7 +303,7 @@ def _fit_two_factors(
     return Surface(weight, exposure, low, high, tilt, coefficient, float(error.max()))
 
 
-def _degree(slope: float, tolerance: float) -> int:
+def series_degree(slope: float, tolerance: float) -> int:
     """Degree beyond which the Chebyshev series of ``exp(slope · y)`` is below `tolerance` of its least value.
 
     The coefficients are ``2 Iₙ(slope) <= 2 (slope/2)ⁿ e^slope/n!`` (NIST Digital Library of Mathematical
