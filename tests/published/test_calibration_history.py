@@ -9,9 +9,58 @@ import pytest
 
 from desk.rates.history_square_root import fit_square_root
 from desk.rates.history_vasicek import fit_vasicek
-from tests.published.bill_rates import BILL_RATES
+from tests.published.open_rates import bill_rates, bill_returns, corporate_yields
 
+BILL_RATES = bill_rates()
 QUARTERS = 0.25 * np.arange(BILL_RATES.size)
+
+
+@pytest.mark.parametrize(
+    ("rates", "count", "ends", "expected", "near"),
+    [
+        (
+            0.12 * bill_returns(),
+            1109,
+            (0.0264, 0.0216),
+            (0.9758743, 0.0007898031, 0.2930575, 0.03273704, 0.02329662, 0.02331767, 3983.396),
+            (9.76e-7, 7.9e-10, 2.93e-7, 3.27e-8, 2.33e-8, 2.33e-8, 3.98e-3),
+        ),
+        (
+            0.01 * corporate_yields(),
+            1200,
+            (0.0535, 0.0402),
+            (0.9980157, 0.0001030251, 0.02383497, 0.05192077, 0.006072804, 0.006077875, 5909.203),
+            (9.98e-7, 1.03e-10, 2.38e-8, 5.19e-8, 6.07e-9, 6.08e-9, 5.91e-3),
+        ),
+    ],
+    ids=["bills by month", "corporate yields by month"],
+)
+def test_vasicek_on_nine_decades_by_month(
+    rates: np.ndarray[tuple[int], np.dtype[np.float64]],
+    count: int,
+    ends: tuple[float, float],
+    expected: tuple[float, ...],
+    near: tuple[float, ...],
+) -> None:
+    """Open data of `arch`, dt 1/12: slope and intercept of the regression of each rate on the one before, then
+    κ, θ, σ by maximum likelihood and with the degrees of freedom of the regression, and the log-likelihood.
+    Computed by a separate least-squares script, cross-checked with the least squares of statsmodels; Brigo and
+    Mercurio (2006), section 3.2.1."""
+    assert rates.size == count
+    assert (rates[0], rates[-1]) == pytest.approx(ends, abs=1e-12)
+    fit = fit_vasicek(np.arange(count) / 12.0, rates)
+    slope = math.exp(-fit.mean_reversion / 12.0)
+    found = (
+        slope,
+        fit.long_run_rate * (1.0 - slope),
+        fit.mean_reversion,
+        fit.long_run_rate,
+        fit.volatility,
+        fit.volatility * math.sqrt((count - 1.0) / (count - 3.0)),
+        fit.log_likelihood,
+    )
+    for value, wanted, tolerance in zip(found, expected, near, strict=True):
+        assert value == pytest.approx(wanted, abs=tolerance)
 
 
 def test_vasicek_given_the_first_rate() -> None:
