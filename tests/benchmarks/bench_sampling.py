@@ -1,8 +1,8 @@
 """What each way of drawing gains in variance and costs in time, on the demo books.
 
 Run as a script: ``python tests/benchmarks/bench_sampling.py [BOOK ...]``. Every run has 16 replicates of
-1,024 paths. Gains are variances of plain sampling over those of the run, for as many paths; "a second" divides
-by how much longer the run takes than a plain one, in turn with which it is timed.
+1,024 paths. Gains are variances of plain sampling over those of the run, for as many paths; "a second"
+divides by how much longer the run takes than a plain one, in turn with which it is timed.
 """
 
 from __future__ import annotations
