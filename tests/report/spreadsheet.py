@@ -4,7 +4,9 @@ from __future__ import annotations
 
 import math
 import re
+from functools import lru_cache
 from pathlib import Path
+from types import CodeType
 from typing import Any
 
 import numpy as np
@@ -54,7 +56,7 @@ class Spreadsheet:
         return self._known[key]
 
     def _evaluate(self, sheet: str, formula: Any) -> Any:
-        expression = "".join(_python(token) for token in Tokenizer(str(formula)).items)
+        expression = _compiled(str(formula))
         try:
             return eval(expression, dict(_FUNCTIONS), {"R": lambda text: self._refer(sheet, text)})
         except (ArithmeticError, TypeError, ValueError):
@@ -89,6 +91,12 @@ def _column(values: list[Any]) -> Any:
     if all(value is None or isinstance(value, int | float) for value in values):
         return np.array([0.0 if value is None else float(value) for value in values])
     return np.array(values, dtype=object)
+
+
+@lru_cache(maxsize=200_000)
+def _compiled(formula: str) -> CodeType:
+    """A formula, ready to be evaluated: tests open the same workbook again and again."""
+    return compile("".join(_python(token) for token in Tokenizer(formula).items), formula, "eval")
 
 
 def _python(token: Token) -> str:
