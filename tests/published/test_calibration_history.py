@@ -42,10 +42,10 @@ def test_vasicek_on_nine_decades_by_month(
     expected: tuple[float, ...],
     near: tuple[float, ...],
 ) -> None:
-    """Open data of `arch`, dt 1/12: slope and intercept of the regression of each rate on the one before, then
-    κ, θ, σ by maximum likelihood and with the degrees of freedom of the regression, and the log-likelihood.
-    Computed by a separate least-squares script, cross-checked with the least squares of statsmodels; Brigo and
-    Mercurio (2006), section 3.2.1."""
+    """Open data of `arch`, dt 1/12: slope and intercept of the regression of each rate on the one before,
+    then κ, θ, σ by maximum likelihood and with the degrees of freedom of the regression, and the
+    log-likelihood. Computed by a separate least-squares script, cross-checked with the least squares of
+    statsmodels; Brigo and Mercurio (2006), section 3.2.1."""
     assert rates.size == count
     assert (rates[0], rates[-1]) == pytest.approx(ends, abs=1e-12)
     fit = fit_vasicek(np.arange(count) / 12.0, rates)

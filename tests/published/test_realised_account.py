@@ -14,9 +14,9 @@ from tests.published.open_rates import bill_returns
 
 
 def test_bills_rolled_over_for_ninety_two_years() -> None:
-    """Open data of `arch`, one-month bills July 1926 to November 2018 [per cent a month]: 1 rolled over becomes
-    20.76787186, its logarithm 3.03340717, which is 3.336778 % a year effective. The product of (1 + RF/100), by
-    a separate script. A step of the set is a month, its rate the continuous one of that month."""
+    """Open data of `arch`, one-month bills July 1926 to November 2018 [per cent a month]: 1 rolled over
+    becomes 20.76787186, its logarithm 3.03340717, which is 3.336778 % a year effective. The product of
+    (1 + RF/100), by a separate script. A step of the set is a month, at the continuous rate of that month."""
     monthly = bill_returns()
     node = np.arange(1, monthly.size + 1) / 12.0
     rate = 12.0 * np.log1p(monthly / 100.0)
