@@ -11,6 +11,7 @@ from typing import Any
 
 from desk.book import Book, Fault
 from desk.intake.records import Reading
+from desk.report.as_sampling import sampling_object
 from desk.report.basis_objects import (
     curve_object,
     inflation_object,
@@ -211,6 +212,7 @@ def simulation_object(simulation: Simulation, faults: Iterable[Fault] = ()) -> d
         ),
         "short_rate": _summary(simulation.short_rate),
         "present_value": {side.name: _distribution(side) for side in simulation.present_value},
+        "sampling": sampling_object(simulation),
         "faults": [fault_object(fault) for fault in _together(faults, simulation.faults)],
     }
 

@@ -8,6 +8,7 @@ import numpy as np
 
 from desk.book import Book, Fault, Severity
 from desk.intake.records import Reading
+from desk.report.as_sampling import sampling_text
 from desk.report.basis_text import basis_text, comparison_text, inflation_text
 from desk.report.text_tables import (
     LINE_WIDTH,
@@ -110,6 +111,7 @@ def simulation_text(simulation: Simulation, *, currency: str, title: str = "") -
         "Check of the mean of 1/R against the curve\n" + _repricing(simulation, shown),
         "Short rate, continuously compounded [% a year]\n" + _summary(simulation.short_rate, shown, percent),
         "Present values along the paths\n" + _distributions(simulation, printable(currency)),
+        sampling_text(simulation, currency=currency),
         wrapped(QUANTILE_METHOD),
         wrapped(CAUTION),
     ]

@@ -132,7 +132,11 @@ def _estimate(
     means = _mean(values, statistic)
     value, error = float(means.mean()), float(replicate_error(means))
     reach = student_reach(len(values)) * error
-    return value, error, value - reach, value + reach
+    low, high = value - reach, value + reach
+    if statistic is Statistic.BELOW_ZERO:
+        # Replicates that are all alike do not make a chance certain.
+        low, high = (max(low, 0.0), min(high, 1.0)) if error > 0.0 else _share_interval(value, values.size)
+    return value, error, low, high
 
 
 def _plain_estimate(values: FloatArray, statistic: Statistic) -> tuple[float, float, float, float]:

@@ -98,7 +98,7 @@ def test_simulation_has_the_keys_of_the_contract() -> None:
     found = as_json.simulation_object(run, examples.reading().faults)
     assert set(found) == {
         "paths", "steps_per_year", "seed", "measure", "model", "savings_account", "short_rate",
-        "present_value", "faults",
+        "present_value", "sampling", "faults",
     }  # fmt: skip
     account = {"year", "mean", "sd", "mean_discount", "mean_discount_se", "curve_discount"} | PERCENTILES
     assert all(set(row) == account for row in found["savings_account"])

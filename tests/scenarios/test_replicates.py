@@ -172,3 +172,13 @@ def test_a_run_without_any_error_left_has_an_infinite_gain() -> None:
     assert gain.gain == math.inf
     nothing = sampling_gain(Headline("", np.ones(64), Statistic.MEAN, False), replicates=4)
     assert math.isnan(nothing.gain)
+
+
+def test_a_chance_is_never_certain() -> None:
+    """Of 1,024 paths none is below 0: Wilson's interval, ``z²/(n + z²)`` above."""
+    for replicates in (1, REPLICATES):
+        headline = Headline("", np.abs(antithetic(1)), Statistic.BELOW_ZERO, False)
+        settled = converging(headline, replicates=replicates)
+        square = float(ndtri(0.975)) ** 2
+        assert (settled.value[-1], settled.low[-1]) == (0.0, pytest.approx(0.0, abs=1e-15))
+        assert settled.high[-1] == pytest.approx(square / (1024 + square))
