@@ -390,8 +390,9 @@ class Document(QObject):
 
     def request_shocks(self, *, again: bool = False) -> None:
         """See to it that the table of shocks comes to be that of the book; `again` after a failure."""
-        book = self.book
-        if book is None or (book is self._shocks_asked and not again):
+        book, shocks = self.book, self.shocks
+        answered = shocks.is_running or shocks.failure or (shocks.result is not None and not shocks.is_stale)
+        if book is None or (book is self._shocks_asked and answered and not again):
             return
         self._shocks_asked = book
         told = () if self.source is None else self.source.faults

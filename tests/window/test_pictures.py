@@ -6,12 +6,13 @@ from dataclasses import replace
 from pathlib import Path
 from xml.etree import ElementTree
 
+import numpy as np
 import pytest
 from PySide6.QtCore import QSize
 from PySide6.QtGui import QImage
 
 from desk import tasks
-from desk.book import Run
+from desk.book import Inflation, Run
 from desk.window.pictures import draw_all, draw_window, main
 from tests.window.frame import a_book, a_reading
 
@@ -39,6 +40,26 @@ def test_every_picture_is_drawn_as_png_and_svg(tmp_path: Path) -> None:
             assert _colours(image) > 10, f"{path.name} is empty"
         else:
             assert ElementTree.parse(path).getroot().tag.endswith("svg")
+
+
+def test_pictures_on_further_parts_of_a_station_are_drawn_too(tmp_path: Path) -> None:
+    inflation = Inflation(np.array([1.0, 10.0]), np.array([0.02, 0.02]))
+    plain = a_book()
+    book = replace(plain, basis=replace(plain.basis, inflation=inflation))
+    written = draw_all(a_reading(book), tasks.value(book), None, tmp_path)
+    names = {path.stem for path in written}
+    assert "standing-inflation-dv01-by-key-rate" in names
+    assert {
+        "shocks-change-in-surplus-by-shock",
+        "shocks-surplus-against-a-parallel-move",
+        "shocks-the-curve-before-and-after",
+        "shocks-funding-ratio-under-all-rates-and-slope",
+    } <= names
+    for path in written:
+        if path.suffix == ".png":
+            image = QImage(str(path))
+            assert (image.width(), image.height()) == (1920, 1080), path.name
+            assert _colours(image) > 10, f"{path.name} is empty"
 
 
 def test_without_a_simulation_its_pictures_are_left_out(tmp_path: Path) -> None:

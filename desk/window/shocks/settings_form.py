@@ -151,8 +151,12 @@ class SettingsForm(QObject):
             each.deleteLater()
         self._sets = tasks.shock_sets(self._currency).sets
         self._boxes = [_SetBox(own) for own in self._sets]
+        before: QWidget = self.usual_button
         for each in self._boxes:
             self._column.addWidget(each)
+            # It is made late: the keyboard comes to it after what stands over it.
+            QWidget.setTabOrder(before, each.box)
+            before = each.box
             each.box.toggled.connect(lambda _=False: self._on_ticked())
 
     # Editing

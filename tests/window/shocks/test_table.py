@@ -290,6 +290,24 @@ def test_an_edit_is_followed_at_once_and_a_former_run_cancelled(
     document.stop()
 
 
+def test_what_an_edit_elsewhere_stopped_is_asked_for_again(
+    bench: Bench, station: ShocksStation, qtbot: QtBot
+) -> None:
+    document = bench.document
+    document.edit("First", replace(bench.book, shocks=(FALL,)))
+    station.refresh_now()
+    assert document.shocks.is_running
+    station.hide()
+    document.edit("Second", replace(bench.book, shocks=()))
+    document.undo()
+    assert not document.shocks.is_running
+    station.show()
+    assert document.shocks.is_running
+    settled(bench, station, qtbot)
+    assert not document.shocks.is_stale
+    assert column(_mode(station).results, "set").count("own") == 1
+
+
 def test_a_failure_is_told_with_a_way_to_try_again(bench: Bench, bare: ShocksStation, qtbot: QtBot) -> None:
     def failing(_book: Book, **_: object) -> ShockTable:
         raise ValueError("no such thing")
