@@ -150,6 +150,25 @@ def test_the_profile_is_that_of_the_task(sheet: Spreadsheet, found: ShockTable) 
     assert "duration gap" in str(sheet.book["Parallel moves"]["A2"].value)
 
 
+@pytest.mark.parametrize("is_swapped", [False, True])
+def test_where_the_surplus_turns_is_said(tmp_path: Path, is_swapped: bool) -> None:
+    """Payments about those of the other side: the surplus is least, or greatest, where the gap is nil."""
+    about = FlowTable.build(["Early", "Late"], [2.0, 25.0], [1.2e6, 1e6])
+    middle = FlowTable.build(["Middle"], [12.0], [2e6])
+    sides = (middle, about) if is_swapped else (about, middle)
+    book = replace(shocked_book(shocks=OWN[:1]), holdings=(), asset_flows=sides[0], liabilities=sides[1])
+    found = tasks.shock(replace(book, shock_settings=ShockSettings(sets=("None such",))))
+    turn = found.profile.gap_turns[0]
+    at = np.argmax if is_swapped else np.argmin
+    assert abs(found.profile.move[at(found.profile.surplus)] - turn) <= 10.0
+    sheet = write(book, tmp_path / "r.xlsx", found)
+    word = "greatest" if is_swapped else "least"
+    said = f"{turn:+,.1f} (the surplus is {word} there)".replace("-", "−")
+    assert said in str(sheet.book["Parallel moves"]["A2"].value)
+    text = " ".join(str(row[0].value) for row in sheet.book["Summary"].iter_rows(max_col=1))
+    assert said in text
+
+
 def test_moves_are_listed_with_their_units(sheet: Spreadsheet, found: ShockTable) -> None:
     """Every move of every shock, with size, term and what it applies to."""
     listed = [

@@ -22,18 +22,31 @@ PROFILE_SHEET = "Parallel moves"
 
 def gap_turns_text(profile: ParallelProfile) -> str:
     """Where the duration gap changes its sign, in words."""
-    low, high = (f"{move:+,.0f}".replace("-", "−") for move in (profile.move[0], profile.move[-1]))
+    low, high = _signed(profile.move[0]), _signed(profile.move[-1])
     if not profile.gap_turns:
         return (
             f"The duration gap keeps its sign for parallel moves from {low} to {high} basis points: the "
             f"surplus {'rises' if profile.surplus[-1] > profile.surplus[0] else 'falls'} with rates all the "
             "way."
         )
-    listed = ", ".join(f"{move:+,.1f}".replace("-", "−") for move in profile.gap_turns)
-    return (
-        f"The duration gap changes its sign, and the surplus turns, at a parallel move of {listed} basis "
-        "points."
+    listed = ", ".join(
+        f"{_signed(move, 1)} (the surplus is {_extreme(profile, move)} there)" for move in profile.gap_turns
     )
+    return f"The duration gap changes its sign at a parallel move in basis points of {listed}."
+
+
+def _signed(figure: float, digits: int = 0) -> str:
+    """A figure with its sign, a true minus."""
+    return f"{figure:+,.{digits}f}".replace("-", "−")
+
+
+def _extreme(profile: ParallelProfile, turn: float) -> str:
+    """Whether the surplus is least or greatest where the gap changes its sign.
+
+    The surplus falls with rates while the gap is positive, so it is least where the gap comes from above 0.
+    """
+    before = profile.duration_gap[profile.move < turn]
+    return "least" if before.size and before[-1] > 0.0 else "greatest"
 
 
 def plan_profile(found: ShockTable, terms: Terms | None, checks: Checks) -> SheetPlan:
