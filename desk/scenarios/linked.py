@@ -93,12 +93,11 @@ class LinkedFlows:
         order = np.argsort(steps[~early], kind="stable")
         step, time = steps[~early][order], rows.time[~early][order]
         seen, amount = observed[~early][order], rows.expected[~early][order]
-        starts = np.flatnonzero(np.diff(step, prepend=-1)).tolist()
-        for start, end in zip(starts, [*starts[1:], step.size], strict=True):
-            part = slice(start, end)
-            worth = self._worth(int(step[start]), time[part], seen[part], amount[part])
+        for number in np.unique(step).tolist():
+            part = slice(*np.searchsorted(step, [number, number + 1]).tolist())
+            worth = self._worth(number, time[part], seen[part], amount[part])
             self.error = max(self.error, worth.error)
-            self._visits[int(step[start])] = worth
+            self._visits[number] = worth
 
     def _worth(self, step: int, time: FloatArray, seen: FloatArray, amount: FloatArray) -> Worth:
         """What flows are worth at a node per unit of the index there, as a function of all factors."""

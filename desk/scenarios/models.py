@@ -10,8 +10,9 @@ from desk.rates.gaussian import GaussianRates, RateFactor, ho_lee, hull_white, v
 from desk.rates.square_root import SquareRootRates
 from desk.scenarios.drawn_model import DrawnModel
 from desk.scenarios.given import GivenRates
+from desk.scenarios.suggestions import MODEL_ITEMS
 
-__all__ = ["rate_model"]
+__all__ = ["missing_titles", "rate_model"]
 
 
 # Steps a year on which the lognormal model is worked out, at least.
@@ -99,6 +100,11 @@ def rate_model(book: Book, *, last_flow: float = 0.0) -> DrawnModel:
             if book.scenario_set is None:
                 raise ValueError("the sheet Scenario set is missing: the outside model is the set it holds")
             return GivenRates(book.scenario_set, book.basis.curve)
+
+
+def missing_titles(stated: RatesModel) -> tuple[str, ...]:
+    """The items that a model needs and does not state, as the workbook names them."""
+    return tuple(_TITLES[field] for field in MODEL_ITEMS[stated.name] if getattr(stated, field) is None)
 
 
 class _Item:

@@ -3,11 +3,12 @@
 from __future__ import annotations
 
 import math
+from collections.abc import Sequence
 from dataclasses import dataclass
 
 import numpy as np
 
-from desk.book import Book, Fault, Measure, PricedFlows, Severity
+from desk.book import Book, Fault, IndexationKind, Measure, PricedFlows, Severity
 from desk.rates.black_karasinski import BlackKarasinskiRates
 from desk.rates.correlation import MendedCorrelation
 from desk.scenarios.draws import BLOCK_PATHS, Plan
@@ -91,7 +92,7 @@ def planned_run(book: Book, *sides: PricedFlows) -> PlannedRun:
             market=beside.market,
         )
         faults += sampling_faults(run, model)
-    check_fits(plan)
+    check_fits(plan, collars=_collars(plan, sides))
     return PlannedRun(plan, beside.mended, tuple(faults))
 
 
@@ -134,22 +135,44 @@ def _set_faults(model: GivenRates, book: Book) -> list[Fault]:
     return faults
 
 
-def run_bytes(plan: Plan) -> int:
+def _collars(plan: Plan, sides: Sequence[PricedFlows]) -> int:
+    """Collared growths that are kept along the paths."""
+    if plan.market is None or plan.market.index is None:
+        return 0
+    return sum(
+        len(
+            {
+                (each.lag, each.floor, each.cap)
+                for each in flows.indexations
+                if each.kind is IndexationKind.COLLARED
+            }
+        )
+        for flows in sides
+    )
+
+
+def run_bytes(plan: Plan, *, collars: int = 0) -> int:
     """About how much memory a run takes beside the book [bytes].
 
     All paths are kept where they are, with the samples of one node and the present values; horizon and steps
     a year do not count.
+
+    Parameters
+    ----------
+    plan : Plan
+    collars : int
+        Kinds of collared growth that are followed along the paths.
     """
-    return plan.paths * 8 * _numbers(plan)
+    return plan.paths * 8 * _numbers(plan, collars)
 
 
-def _numbers(plan: Plan) -> int:
+def _numbers(plan: Plan, collars: int) -> int:
     """Numbers a path."""
     beside = 0
     if plan.market is not None:
         inflates = plan.market.index is not None
-        # Where each is, and its sample; the total of the assets, and a collar's increase and growth.
-        beside = 2 * plan.market.asset_count + 2 + 5 * inflates
+        # Where each is, and its sample; the total of the assets; the growth of a collar in the last years.
+        beside = 2 * plan.market.asset_count + 1 + 4 * inflates + 6 * collars
     walked = plan.model.factor_count + 1 + 2 * isinstance(plan.model, BlackKarasinskiRates)
     sobol = 0
     if plan.replicates is not None:
@@ -160,12 +183,12 @@ def _numbers(plan: Plan) -> int:
     return walked + 2 + _SUMMED + beside + sobol
 
 
-def check_fits(plan: Plan, *, most: int = MOST_BYTES) -> None:
+def check_fits(plan: Plan, *, collars: int = 0, most: int = MOST_BYTES) -> None:
     """Raise ValueError, saying what would fit, where a run would take more memory than `most` bytes."""
-    needed = run_bytes(plan)
+    needed = run_bytes(plan, collars=collars)
     if needed <= most:
         return
-    fits = most // (8 * _numbers(plan))
+    fits = most // (8 * _numbers(plan, collars))
     digits = 10 ** max(0, len(str(fits)) - 2)
     assets = 0 if plan.market is None else plan.market.asset_count
     beside = f" with {assets} risky assets" if assets > 1 else " with a risky asset" if assets else ""
