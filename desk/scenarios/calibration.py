@@ -151,7 +151,7 @@ def calibrate(book: Book, *, source: CalibrationSource, model: ModelName | None 
         raise CalibrationError(
             (
                 Fault(
-                    f"the model {name} cannot be fitted to {_WORDS[source]}",
+                    f"the model {name} cannot be fitted to the {_WORDS[source]}",
                     f"one of {listed}",
                     "Choose one of these models.",
                     sheet,

@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import math
 import re
+from datetime import datetime
 from functools import lru_cache
 from pathlib import Path
 from types import CodeType
@@ -16,6 +17,9 @@ from openpyxl.formula.tokenizer import Token
 from openpyxl.utils import range_boundaries
 
 __all__ = ["Spreadsheet"]
+
+_DAY_ZERO = datetime(1899, 12, 30)
+"""A date is the number of days since then, after February 1900."""
 
 
 class Spreadsheet:
@@ -73,6 +77,8 @@ class Spreadsheet:
         left, top, right, bottom = (int(bound or 0) for bound in range_boundaries(text))
         if ":" not in text:
             value = self._cell(sheet, top, left)
+            if isinstance(value, datetime):
+                return float((value - _DAY_ZERO).total_seconds()) / 86_400.0
             return 0.0 if value is None else value
         key = f"{sheet}!{text}"
         if key not in self._areas:

@@ -217,7 +217,7 @@ def test_without_data_the_sheet_is_named() -> None:
 
 def test_a_model_that_does_not_go_with_the_data(full: Book) -> None:
     (line,) = fault_of(full, VOLATILITIES, ModelName.VASICEK)
-    assert "vasicek cannot be fitted to quoted volatilities" in line
+    assert "vasicek cannot be fitted to the quoted volatilities" in line
     assert "hull-white" in line
 
 

@@ -44,9 +44,10 @@ def plan_history(plan: SheetPlan, found: Calibration, rows: dict[str, int], row:
     headings = ["Date", "Short rate", "Rate before", "Step [years]"]
     if has_law:
         headings += ["Mean reversion × step", "1 − e^(−that)", "Forecast", "Deviation"]
-        headings += ["Residual [deviations]", "Reported", "Check"]
         if is_vasicek:
-            headings += ["Log-density"]
+            headings += ["Residual [deviations]", "Reported", "Check", "Log-density"]
+        else:
+            headings += ["Reported forecast", "Reported deviation", "Check", "Residual [deviations]"]
     else:
         headings += ["Forecast", "Deviation", "Residual [deviations]"]
     plan.headings(headings, row=start)
@@ -113,7 +114,7 @@ def _live_block(
     )
 
     def values() -> Iterator[list[Any]]:
-        yield [dates[0], rates[0], *[None] * (10 if is_vasicek else 9)]
+        yield [dates[0], rates[0], *[None] * 10]
         for place in range(1, len(dates)):
             r = first + place
             line: list[Any] = [
@@ -135,21 +136,23 @@ def _live_block(
                 ]
             else:
                 # The residual is by the exact law, which a sheet has no function for.
-                gap = f"ABS(G{r}-{forecast[place - 1]!r})+ABS(H{r}-{deviation[place - 1]!r})"
                 line += [
                     Formula(f"={sigma}*SQRT(F{r}/{speed}*(C{r}*(1-F{r})+{level}*F{r}/2))"),
-                    residual[place - 1],
+                    forecast[place - 1],
                     deviation[place - 1],
-                    Formula(f'=IF({gap}<=check_tolerance,"OK","CHECK")'),
+                    Formula(f'=IF(ABS(G{r}-I{r})+ABS(H{r}-J{r})<=check_tolerance,"OK","CHECK")'),
+                    residual[place - 1],
                 ]
             yield line
 
-    roles = ["input", "input", *["live"] * 6, "live" if is_vasicek else "reported", "reported", "check"]
-    forms = ["date", "rate", "rate", "years", "factor", "factor", "rate", "rate", "ratio"]
-    forms += ["ratio" if is_vasicek else "rate", "text"]
+    roles = ["input", "input", *["live"] * 6]
+    forms = ["date", "rate", "rate", "years", "factor", "factor", "rate", "rate"]
     if is_vasicek:
-        roles.append("live")
-        forms.append("years")
+        roles += ["live", "reported", "check", "live"]
+        forms += ["ratio", "ratio", "text", "years"]
+    else:
+        roles += ["reported", "reported", "check", "reported"]
+        forms += ["rate", "rate", "text", "ratio"]
     return Block(first, len(dates), tuple(roles), tuple(forms), values)
 
 

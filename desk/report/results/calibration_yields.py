@@ -91,8 +91,8 @@ def _block(data: YieldHistory, fit: PanelFit, first: int) -> Block:
                 *(value if np.isfinite(value) else None for value in observed[place].tolist()),
                 *fitted[place].tolist(),
                 *(
-                    Formula(f'=IF(ISNUMBER({seen}{r}),({own}{r}-{seen}{r})*10000,"")')
-                    for seen, own in letters
+                    Formula(f"=({own}{r}-{seen}{r})*10000") if np.isfinite(observed[place, at]) else None
+                    for at, (seen, own) in enumerate(letters)
                 ),
             ]
 
