@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import math
+from collections.abc import Iterator
 from dataclasses import dataclass
 
 import numpy as np
@@ -15,6 +16,7 @@ from desk.rates.square_root import SquareRootRates
 from desk.scenarios.drawn_model import DrawnModel
 from desk.scenarios.draws import Paths, Plan
 from desk.scenarios.market_records import Diagnostics
+from desk.scenarios.sampling import Replicates
 
 __all__ = ["RatePairs", "diagnostics", "expected_autoregression", "rate_law"]
 
@@ -151,9 +153,18 @@ class RatePairs:
             rate = np.log(rate)
         before = self._before[paths.columns]
         if pairs is not None:
-            pairs[paths.columns.start] = _sums_of(before, rate, self._slope[step])
+            start = paths.columns.start
+            for part in self._apart(paths.columns):
+                own = slice(part.start - start, part.stop - start)
+                pairs[part.start] = _sums_of(before[own], rate[own], self._slope[step])
         if step in self._kept:
             before[:] = rate
+
+    def _apart(self, columns: slice) -> Iterator[slice]:
+        """The paths of a block, those of each replicate by themselves."""
+        each = self._plan.paths if self._plan.replicates is None else self._plan.replicates.paths
+        for replicate in range(columns.start // each, -(-columns.stop // each)):
+            yield slice(max(replicate * each, columns.start), min((replicate + 1) * each, columns.stop))
 
     def slopes(self) -> tuple[FloatArray, FloatArray, FloatArray]:
         """The slope at each reported step, its error and what it should be, shape (n + 1,), from step 0."""
@@ -171,7 +182,18 @@ class RatePairs:
             if whole.count > 2 and whole.xx > _ROUNDING * whole.count * whole.mean_x**2:
                 slope[row] = whole.xy / whole.xx
                 error[row] = math.sqrt(whole.robust) / whole.xx
+                if self._plan.replicates is not None:
+                    spread = _replicate_spread(by_block, float(slope[row]), self._plan.replicates)
+                    error[row] = spread / whole.xx
         return slope, error, expected
+
+
+def _replicate_spread(parts: dict[int, _Sums], slope: float, replicates: Replicates) -> float:
+    """Standard error of the sum of the products of rate and residual, from the sums of the replicates."""
+    products = np.zeros(replicates.count)
+    for start, sums in sorted(parts.items()):
+        products[start // replicates.paths] += sums.xy - slope * sums.xx
+    return math.sqrt(replicates.count) * float(products.std(ddof=1))
 
 
 def _sums_of(before: FloatArray, rate: FloatArray, slope: float) -> _Sums:

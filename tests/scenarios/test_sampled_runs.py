@@ -18,6 +18,7 @@ from desk.scenarios.records import Simulation
 from desk.scenarios.sampling import replicates_of
 from desk.scenarios.simulation import simulate
 from tests.scenarios.books import ALL_MODELS, assets, book, liabilities
+from tests.scenarios.inflating import ASSETS, inflating
 from tests.scenarios.test_simulation import same
 
 WAYS: list[dict[str, Any]] = [
@@ -144,3 +145,45 @@ def test_figures_converge_with_the_paths() -> None:
         place = result.present_value[2].levels.index(5.0)
         assert low.value[-1] == result.present_value[2].percentile[place]
         assert low.low[-1] == result.present_value[2].percentile_low[place]
+
+
+@pytest.mark.parametrize("way", WAYS)
+@pytest.mark.parametrize(
+    "name", [ModelName.HULL_WHITE, ModelName.GAUSSIAN_2, ModelName.BLACK_KARASINSKI, ModelName.CIR]
+)
+def test_assets_and_inflation_are_sampled_beside_the_rates(name: ModelName, way: dict[str, Any]) -> None:
+    """Discounted they are martingales, and the same bits for any number of threads."""
+    gaussian = name in (ModelName.HULL_WHITE, ModelName.GAUSSIAN_2)
+    own = ASSETS if gaussian else replace(ASSETS, rates_correlation=np.zeros(2))
+    stated = inflating(name, assets=own, correlation=0.4 if gaussian else 0.0, horizon_years=5)
+    stated = replace(stated, run=replace(stated.run, paths=16 * 128, **way))
+    result = simulate(stated, assets(), liabilities(), threads=1)
+    assert same(result, simulate(stated, assets(), liabilities(), threads=2))
+    assert result.risky is not None
+    assert result.index is not None
+    index = result.index
+    for mean, error, known in (
+        *((one.mean_excess, one.mean_excess_se, one.expected_excess) for one in result.risky.assets),
+        (index.mean_discounted, index.mean_discounted_se, index.expected_discounted),
+    ):
+        assert np.abs((mean - known)[1:] / error[1:]).max() < 6.0
+    equity = result.risky.assets[0].total_return
+    independent = equity.sd[1:] / np.sqrt(result.paths)
+    assert np.all(equity.mean_se[1:] < 0.8 * independent)
+
+
+@pytest.mark.parametrize("way", [{"sampling": Sampling.ANTITHETIC}, {"matching": True}])
+def test_errors_of_the_autoregression_are_the_spread_over_many_runs(way: dict[str, Any]) -> None:
+    """Mirrored pairs tell the slope twice over: White's error would be too small by a root of two."""
+    runs = [run(ModelName.HULL_WHITE, way, paths=16 * 32, horizon_years=2, seed=seed) for seed in range(150)]
+    table = np.array(
+        [
+            (one.autoregression[2], one.autoregression_se[2], one.expected_autoregression[2])
+            for one in (simulation.diagnostics for simulation in runs)
+            if one is not None
+        ]
+    )
+    slope, told, known = table.T
+    assert len(slope) == 150
+    assert np.sqrt(np.mean(told**2)) == pytest.approx(np.std(slope), rel=0.2)
+    assert abs(np.mean(slope - known)) < 4.0 * np.std(slope) / np.sqrt(150)
