@@ -49,6 +49,7 @@ class Picture(Canvas):
         self.page = QWidget(self)
         keep_look(self.page, "surface")
         self._title = QLabel()
+        self._title.setTextFormat(Qt.TextFormat.PlainText)
         keep_look(self._title, "strong")
         self._strip = ElidedLabel()
         keep_look(self._strip, "soft")

@@ -42,6 +42,8 @@ _GOALS = (
 )
 _ANSWERED = frozenset({"basis", "liabilities", "holdings", "asset_flows", "line_terms"})
 _MOST_MONEY = 1e15
+_NO_MODEL = "The book has no rates model: add one in Scenarios."
+_NO_HISTORY = "The book has no history of yields: put it in the sheet Yield history."
 
 
 @dataclass(frozen=True, eq=False)
@@ -57,7 +59,8 @@ class _Asked:
 def answer_words(found: ReverseResult | LeastMove, along: str | Shock, currency: str) -> str:
     """An answer in a sentence."""
     if found.fault is not None or found.result is None or found.shock is None:
-        return str(found.fault) if found.fault is not None else "There is no such move."
+        said = str(found.fault) if found.fault is not None else "There is no such move."
+        return said[:1].upper() + said[1:]
     what = (
         f"the funding ratio to {numbers.ratio(found.level, 2)}"
         if found.goal is Goal.FUNDING_RATIO
@@ -196,14 +199,14 @@ class ReverseMode(Mode):
                 "The least move, by the model",
                 "The likeliest move of the key rates under the covariance of the book's rates model."
                 if has_model
-                else "The book has no rates model: add one in Scenarios.",
+                else _NO_MODEL,
             ),
             Choice(
                 _HISTORY,
                 "The least move, by the history",
                 "The likeliest move of the key rates under the covariance of the book's history of yields."
                 if has_history
-                else "The book has no history of yields: put it in the sheet Yield history.",
+                else _NO_HISTORY,
             ),
             *(Choice(shock, _titled(shock), "So many times this shock.") for shock in shocks),
         ]
@@ -286,6 +289,12 @@ class ReverseMode(Mode):
         if book is None or level is None or self._job is not None:
             return
         along = self.along.value
+        lacks_model = along == _MODEL and book.rates_model is None
+        if lacks_model or (along == _HISTORY and book.yield_history is None):
+            self.found = self._asked = None
+            self._failure = _NO_MODEL if lacks_model else _NO_HISTORY
+            self._ended()
+            return
         work: Callable[..., ReverseResult | LeastMove]
         asked = _Asked(book, self.goal.value, level, along)
         if along in (_MODEL, _HISTORY):

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from dataclasses import replace
+from html import escape
 from typing import TYPE_CHECKING
 
 from PySide6.QtCore import QObject, Qt
@@ -80,8 +81,6 @@ def _shorter(source: str, most: int = 90) -> str:
 
 
 def _escaped(text: str) -> str:
-    from html import escape
-
     return escape(text).replace("\n", "<br>")
 
 

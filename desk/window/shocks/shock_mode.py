@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from dataclasses import replace
+from html import escape
 from typing import TYPE_CHECKING
 
 from PySide6.QtCore import Qt
@@ -79,6 +80,7 @@ class ShockMode(Mode):
         self.source_field.committed.connect(self._change_source)
         form.add(self.source_field)
         self.source_note = form.add_note("")
+        self.source_note.setTextFormat(Qt.TextFormat.PlainText)
         self.move_heading = form.add_heading("The selected move")
         self.kind = ChoiceField(
             "Moves", [Choice(kind, words.name, words.explanation) for kind, words in KINDS.items()]
@@ -151,7 +153,7 @@ class ShockMode(Mode):
         at = next((place for place, each in enumerate(there) if each is shock), None)
         self.which.set_value(at)
         self.which.set_hint("" if shock is None else f"Moves {in_short(shock)}.")
-        self.which.combo.setToolTip("" if shock is None else shock.name)
+        self.which.combo.setToolTip("" if shock is None else f"<qt>{escape(shock.name)}</qt>")
         for widget in (self.name, self.source_field, self.add_button, self.remove_button):
             widget.setVisible(own)
         self.delete_button.setVisible(own)

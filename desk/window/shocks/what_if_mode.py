@@ -121,6 +121,7 @@ class WhatIfMode(Mode):
         form.add(self.name)
         self.name.hide()
         self.state = form.add_note("")
+        self.state.setTextFormat(Qt.TextFormat.PlainText)
         self.rows: dict[str, HandleRow] = {}
         self._headings: dict[str, QLabel] = {}
         for handle in HANDLES:

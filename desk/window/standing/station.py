@@ -248,8 +248,9 @@ class StandingStation(Station):
                 self.pictures.addWidget(self.inflation_picture)
                 # It is made late: the keyboard comes to it after the picture that it stands beside.
                 made: tuple[QWidget, ...] = (self.inflation_picture.plot, self.inflation_picture.button)
-                for before, after in pairwise((self.key_rate_picture.button, *made)):
-                    QWidget.setTabOrder(before, after)
+                if self.key_rate_picture.window() is self.window():
+                    for before, after in pairwise((self.key_rate_picture.button, *made)):
+                        QWidget.setTabOrder(before, after)
             self.inflation_picture.show_inflation(inflation, standing.currency)
         shows_inflation = wanted and self.inflation_picture is not None
         if self.flow_picture.isHidden() == shows_inflation:

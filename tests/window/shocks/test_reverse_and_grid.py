@@ -114,10 +114,16 @@ def test_no_solution_is_told_in_one_line(
 def test_what_is_missing_is_told(
     bench: Bench, station: ShocksStation, reverse: ReverseMode, qtbot: QtBot
 ) -> None:
-    reverse.along.set_value("history")
     _find(bench, reverse, qtbot)
-    assert "history of yields" in station.words.text()
+    reverse.along.set_value("history")
+    reverse.find_button.click()
+    assert not bench.jobs.running
+    assert station.words.text().startswith("The book has no history of yields")
     assert reverse.found is None
+    bench.document.edit("No model", replace(bench.book, rates_model=None))
+    reverse.along.set_value("model")
+    reverse.find()
+    assert station.words.text().startswith("The book has no rates model")
 
 
 def test_an_answer_of_a_former_book_says_so(
