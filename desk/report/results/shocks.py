@@ -17,7 +17,8 @@ from desk.report.results.look import QUIET, SURPLUS
 from desk.report.results.plan import FIRST_ROW, HEADING_ROW, Formula, SheetPlan
 from desk.report.results.shocks_moves import flush_left, plan_moves
 from desk.report.results.shocks_profile import gap_turns_text, plan_profile
-from desk.report.results.shocks_rates import plan_rates, plan_recomputed, terms_of
+from desk.report.results.shocks_rates import plan_rates, terms_of
+from desk.report.results.shocks_recomputed import plan_recomputed
 from desk.valuation.shock_records import ShockResult, ShockTable, band_name
 
 __all__ = ["SHOCKS_SHEET", "ShockPlans", "plan_shocks", "shock_notes", "worst_of"]
