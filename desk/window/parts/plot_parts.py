@@ -63,6 +63,13 @@ class Axis(pg.AxisItem):
         digits = plain_digits(spacing * self.factor)
         return [numbers.number(value * self.factor, digits) for value in values]
 
+    def resizeEvent(self, event: object = None) -> None:
+        """Keep the heading under the axis whole: it would hang out by the depth of its letters."""
+        super().resizeEvent(event)
+        if self.orientation == "bottom" and self.label is not None:
+            lowest = self.size().height() - self.label.boundingRect().height() + 2
+            self.label.setY(min(self.label.y(), lowest))
+
     def boundingRect(self) -> QRectF:
         """With room for the figures at its ends, which a ruled axis would leave out."""
         rect: QRectF = super().boundingRect()

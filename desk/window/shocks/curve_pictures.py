@@ -10,7 +10,6 @@ from desk.window.parts import numbers
 from desk.window.parts.plots import Picture
 from desk.window.parts.theme import ThemeSwitch
 from desk.window.shocks.moved import MovedRates
-from desk.window.standing.wording import amount
 
 __all__ = ["MovePicture", "MovedCurvePicture", "ProfilePicture"]
 
@@ -31,21 +30,19 @@ class ProfilePicture(Picture):
         self.add_vertical(0.0, "today")
         for turn in profile.gap_turns[:3]:
             self.add_vertical(turn, f"gap turns at {numbers.signed(turn, 0)} bp")
-        self.set_description(_profile_sentence(profile, currency))
+        self.set_description(_profile_sentence(profile))
 
 
-def _profile_sentence(profile: ParallelProfile, currency: str) -> str:
+def _profile_sentence(profile: ParallelProfile) -> str:
     if profile.gap_turns:
         turns = ", ".join(numbers.signed(turn, 0) for turn in profile.gap_turns[:3])
         return f"The duration gap changes its sign at {turns} bp."
     gap = profile.duration_gap[np.isfinite(profile.duration_gap)]
     if not gap.size:
         return "Fully revalued; the tangent is what duration alone says."
-    worst = int(np.argmin(profile.surplus))
-    at = numbers.signed(float(profile.move[worst]), 0)
+    low, high = (numbers.signed(float(profile.move[end]), 0) for end in (0, -1))
     sign = "above" if gap[0] > 0.0 else "below"
-    least = amount(float(profile.surplus[worst]), currency)
-    return f"The duration gap stays {sign} 0; least at {at} bp: {least}."
+    return f"The duration gap stays {sign} 0 from {low} to {high} bp."
 
 
 class MovedCurvePicture(Picture):
