@@ -25,7 +25,8 @@ CAUTION = (
 
 QUANTILE_METHOD = (
     "Percentiles interpolate linearly between order statistics of the paths (Hyndman and Fan 1996, "
-    "definition 7); their 95 % intervals are order statistics."
+    "definition 7); their 95 % intervals run from one to another, by the binomial law for independent paths, "
+    "by the spread of the replicates for others."
 )
 
 LIABILITY_METHODS = {

@@ -5,7 +5,7 @@ from __future__ import annotations
 from collections.abc import Iterator, Sequence
 from typing import Any
 
-from desk.book import Basis, BondFit, Book, CurveKind, Holding, HoldingKind
+from desk.book import Basis, BondFit, Book, CurveKind, Holding, HoldingKind, Sampling
 from desk.book.arrays import FloatArray
 from desk.rates.compounding import to_continuous
 from desk.rates.smith_wilson import Extrapolation
@@ -138,6 +138,12 @@ def _items(book: Book, *, with_model: bool) -> list[tuple[str, Any, str, str]]:
             ("Seed", str(run.seed), "", "word"),
             ("Measure", run.measure.value, "", "word"),
         ]
+        if run.is_reduced:
+            items.append(("Sampling", run.sampling.value, "", "word"))
+            if run.sampling is Sampling.SOBOL:
+                items.append(("Bridge", run.bridge.value, "", "word"))
+            items.append(("Moment matching", "yes" if run.matching else "no", "", "word"))
+            items.append(("Replicates", run.replicates, "", "whole"))
     return items
 
 
