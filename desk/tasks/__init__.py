@@ -9,7 +9,7 @@ from __future__ import annotations
 from desk.tasks.calibration import calibrate
 from desk.tasks.results import read, report, save_copy, simulate, value
 from desk.tasks.running import Cancelled, CancelToken, Progress
-from desk.tasks.scenarios import curve_at, export_scenarios, paths_of
+from desk.tasks.scenarios import compare_models, curve_at, export_scenarios, look_ahead, paths_of
 from desk.tasks.shocks import grid, least_move, reverse, shock, shock_sets, shocks_of
 
 __all__ = [
@@ -17,10 +17,12 @@ __all__ = [
     "Cancelled",
     "Progress",
     "calibrate",
+    "compare_models",
     "curve_at",
     "export_scenarios",
     "grid",
     "least_move",
+    "look_ahead",
     "paths_of",
     "read",
     "report",

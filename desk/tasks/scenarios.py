@@ -2,18 +2,22 @@
 
 from __future__ import annotations
 
+from collections.abc import Sequence
+from dataclasses import replace
 from pathlib import Path
 from typing import TYPE_CHECKING
 
-from desk.book import Book, Side
+from desk.book import Book, Measure, RatesModel, Side
 from desk.tasks.running import CancelToken, Progress, part_of, watched
 
 if TYPE_CHECKING:
     from desk.book import PricedFlows
+    from desk.scenarios.compare import ModelRun
     from desk.scenarios.curve_fan import CurveFan
     from desk.scenarios.drawn_paths import DrawnPaths
+    from desk.scenarios.outlook import RunOutlook
 
-__all__ = ["curve_at", "export_scenarios", "paths_of"]
+__all__ = ["compare_models", "curve_at", "export_scenarios", "look_ahead", "paths_of"]
 
 
 def _sides(book: Book) -> tuple[PricedFlows, PricedFlows]:
@@ -21,6 +25,31 @@ def _sides(book: Book) -> tuple[PricedFlows, PricedFlows]:
     from desk.valuation.priced import priced_flows
 
     return priced_flows(book, Side.ASSETS).flows, priced_flows(book, Side.LIABILITIES).flows
+
+
+def look_ahead(
+    book: Book, *, progress: Progress | None = None, cancel: CancelToken | None = None
+) -> RunOutlook:
+    """What can be said of the book's run before it is made; what stands in its way is in the answer.
+
+    Parameters
+    ----------
+    book : Book
+    progress, cancel : optional
+        See `read`.
+
+    Raises
+    ------
+    Cancelled
+        If `cancel` was set before the work was done.
+    """
+    from desk.scenarios.outlook import run_outlook
+
+    watch = watched(progress, cancel)
+    watch(0.0)
+    found = run_outlook(book)
+    watch(1.0)
+    return found
 
 
 def curve_at(
@@ -139,3 +168,47 @@ def export_scenarios(
 
 def _names(book: Book) -> tuple[str, ...]:
     return () if book.risky_assets is None else book.risky_assets.names
+
+
+def compare_models(
+    book: Book,
+    models: Sequence[RatesModel],
+    *,
+    measures: Sequence[Measure] = (),
+    progress: Progress | None = None,
+    cancel: CancelToken | None = None,
+) -> tuple[tuple[Measure, ModelRun], ...]:
+    """Draw several models on one book with the same settings of the run.
+
+    Parameters
+    ----------
+    book : Book
+    models : sequence of RatesModel
+    measures : sequence of Measure, optional
+        Under each of which every model is drawn; that of the run when left out.
+    progress, cancel : optional
+        See `read`.
+
+    Returns
+    -------
+    tuple of (Measure, ModelRun)
+        By measure and then by model; one that cannot be drawn says why.
+
+    Raises
+    ------
+    Cancelled
+        If `cancel` was set before the work was done.
+    """
+    from desk.scenarios.compare import compare_models as compare
+
+    watch = watched(progress, cancel)
+    watch(0.0)
+    sides = _sides(book)
+    wanted = tuple(measures) or (book.run.measure,)
+    found: list[tuple[Measure, ModelRun]] = []
+    for number, measure in enumerate(wanted):
+        part = part_of(watch, number / len(wanted), (number + 1) / len(wanted))
+        under = replace(book, run=replace(book.run, measure=measure))
+        found += [(measure, run) for run in compare(under, tuple(models), *sides, progress=part)]
+    watch(1.0)
+    return tuple(found)

@@ -343,6 +343,11 @@ class Document(QObject):
             self.standing_changed.emit()
 
     @property
+    def simulation_book(self) -> Book | None:
+        """The version of the book that `simulation` was run on."""
+        return self._simulation_book
+
+    @property
     def simulation_is_stale(self) -> bool:
         """Whether `simulation` was run on a former version of the book."""
         return self._simulation_stale

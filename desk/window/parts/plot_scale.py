@@ -51,8 +51,7 @@ class Scale:
 
     def fit(self, low: float, high: float) -> None:
         """Choose thousands, millions or more for an axis of money."""
-        if self.kind == "money":
-            self.scale = numbers.scale_for([low, high])
+        self.scale = numbers.scale_for([low, high]) if self.kind == "money" else numbers.ONE
 
     def text(self, value: float) -> str:
         """A value as it stands in a reading."""

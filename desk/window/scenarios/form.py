@@ -1,4 +1,4 @@
-"""The settings of a run: how rates move, under which measure, and how much is drawn."""
+"""The settings of a run: how rates move, under which measure, and how much is drawn, and how."""
 
 from __future__ import annotations
 
@@ -8,111 +8,25 @@ from typing import Any
 
 from PySide6.QtWidgets import QLabel, QPushButton
 
-from desk.book import Book, Measure, ModelName, RatesModel
-from desk.book.run import MOST_PATHS
-from desk.scenarios.suggestions import MODEL_ITEMS, MODEL_TRAITS, suggested_model
-from desk.window.parts.fields import Choice, ChoiceField, Field, Form, IntegerField, NumberField
+from desk.book import Book, ModelName, RatesModel, Run, Sampling
+from desk.book.run import MOST_PATHS, MOST_REPLICATES
+from desk.scenarios.suggestions import suggested_model
+from desk.window.parts.fields import Choice, ChoiceField, Field, Form, IntegerField
 from desk.window.parts.models import MODEL_TITLES
+from desk.window.scenarios.model_fields import AssetFields, item_fields, items_shown, set_limits
+from desk.window.scenarios.model_words import BRIDGES, MEASURES, MODELS, SAMPLINGS, set_sentence
 
 __all__ = ["RunForm"]
 
-_FITTED = "Reprices the book's curve exactly."
-_OWN = "Makes its own curve, which is not the book's: present values are on that one."
-_WHAT = {
-    ModelName.VASICEK: f"One rate that is pulled back to a long-run level; it may turn negative. {_OWN}",
-    ModelName.HO_LEE: f"Rates wander without being pulled back. {_FITTED}",
-    ModelName.HULL_WHITE: f"One factor that is pulled back; rates may turn negative. {_FITTED}",
-    ModelName.GAUSSIAN_2: f"Two factors, so that short and long rates need not move together. {_FITTED}",
-    ModelName.CIR: f"A rate that never turns negative and moves less when it is low. {_OWN}",
-    ModelName.CIR_SHIFTED: f"A square-root factor and a shift that varies with time. {_FITTED}",
-    ModelName.BLACK_KARASINSKI: "A rate that stays above 0 and moves in proportion to itself. Reprices the "
-    "book's curve exactly; forward rates must be above 0.",
-    ModelName.OUTSIDE: "The paths in the sheet Scenario set, taken as they are. They need not reprice the "
-    "book's curve: see the check.",
-}
-_MEASURES = (
-    Choice(Measure.PRICING, "Pricing", "For values: what flows are worth. It is no forecast of rates."),
-    Choice(
-        Measure.REAL_WORLD,
-        "Real world",
-        "For forecasts: what may happen, with the price of risk. Its averages are no prices.",
-    ),
-)
-_LEAST_SQUARE_ROOT_REVERSION = 1e-6
+_OF_INFLATION = "inflation_"
+_VOLATILITIES = ("volatility", "root_volatility", "relative_volatility")
+_FIRST_INFLATION_SPEED = 0.3
+"""A speed to begin with where inflation begins to be drawn [1/year]; not calibrated."""
 
 
-def _item_fields() -> dict[str, NumberField]:
-    """A field for each parameter; that of the volatility stands twice, by what it means."""
-    speed = "a year"
-    return {
-        "mean_reversion": NumberField(
-            "Mean reversion",
-            unit=speed,
-            low=0.0,
-            high=100.0,
-            sensible=(0.01, 1.0),
-            hint="The part of the distance to its level that a rate makes up in a year.",
-        ),
-        "volatility": NumberField(
-            "Volatility",
-            unit="% a year",
-            percent=True,
-            low=0.0,
-            high=0.5,
-            sensible=(0.002, 0.02),
-            hint="Standard deviation of a year's move of the short rate.",
-        ),
-        "root_volatility": NumberField(
-            "Volatility",
-            unit="on √rate",
-            low=0.0,
-            high=5.0,
-            sensible=(0.02, 0.2),
-            hint="Multiplied by the root of the rate: a year's standard deviation.",
-        ),
-        "long_run_rate": NumberField(
-            "Long-run rate",
-            unit="% a year",
-            percent=True,
-            low=-0.2,
-            high=1.0,
-            sensible=(0.0, 0.08),
-            hint="The level the rate is pulled to, continuously compounded.",
-        ),
-        "starting_rate": NumberField(
-            "Starting rate",
-            unit="% a year",
-            percent=True,
-            low=-0.2,
-            high=1.0,
-            sensible=(-0.01, 0.08),
-            hint="The short rate today, continuously compounded.",
-        ),
-        "second_mean_reversion": NumberField(
-            "Second mean reversion",
-            unit=speed,
-            low=0.0,
-            high=100.0,
-            sensible=(0.1, 2.0),
-            hint="Of the second factor, usually the faster one.",
-        ),
-        "second_volatility": NumberField(
-            "Second volatility",
-            unit="% a year",
-            percent=True,
-            low=0.0,
-            high=0.5,
-            sensible=(0.002, 0.02),
-            hint="Of the second factor.",
-        ),
-        "factor_correlation": NumberField(
-            "Factor correlation",
-            low=-1.0,
-            high=1.0,
-            sensible=(-0.95, 0.5),
-            hint="Between the moves of the two factors.",
-        ),
-    }
+def _item(key: str) -> str:
+    """The field of the model that a field of the form is for."""
+    return "volatility" if key in _VOLATILITIES else key
 
 
 class RunForm:
@@ -120,14 +34,15 @@ class RunForm:
 
     Attributes
     ----------
-    model, measure : ChoiceField
+    model, measure, sampling, bridge, matching : ChoiceField
     items : dict of str to NumberField
-        By field of `RatesModel`; ``root_volatility`` stands for the volatility of a square-root model.
-    risk_price : NumberField
-    paths, horizon, steps, seed : IntegerField
-    run_button, cancel_button : QPushButton
-    state : QLabel
-        What the run under way is at.
+        By field of `RatesModel`; ``root_volatility`` and ``relative_volatility`` stand for the volatility of
+        models in which it means that.
+    paths, horizon, steps, seed, replicates : IntegerField
+    assets : AssetFields
+    run_button, cancel_button, export_button : QPushButton
+    state, memory, of_set : QLabel
+        What the run under way is at, what it takes, and what the set of scenarios holds.
     """
 
     def __init__(
@@ -138,6 +53,7 @@ class RunForm:
         change: Callable[[str, Book], None],
         run: Callable[[], object],
         cancel: Callable[[], object],
+        export: Callable[[], object],
     ) -> None:
         # Asked for at every edit: two edits may come before what is shown follows.
         self._book = book
@@ -146,29 +62,26 @@ class RunForm:
         self.run_button.setToolTip("Ctrl+R")
         self.cancel_button: QPushButton = form.add_button("Cancel the run", cancel)
         self.state: QLabel = form.add_note("")
+        self.memory: QLabel = form.add_note("")
+        self.export_button: QPushButton = form.add_button("Export the paths…", export)
+        self.export_button.setToolTip("Every path by year, as a workbook or as compressed CSV.")
         form.add_heading("How rates move")
-        self.model = ChoiceField(
-            "Model", [Choice(name, title, _WHAT[name]) for name, title in MODEL_TITLES.items()]
-        )
+        self.model = ChoiceField("Model", MODELS)
         form.add(self.model)
+        self.of_set: QLabel = form.add_note("")
         self.model.committed.connect(self._on_model)
-        self.items = _item_fields()
+        self.measure = ChoiceField("Measure", MEASURES)
+        form.add(self.measure)
+        self.measure.committed.connect(lambda value: self._on_run("measure", value, "measure"))
+        self.items = item_fields()
+        self._inflation_heading: QLabel | None = None
         for key, field in self.items.items():
+            if key.startswith(_OF_INFLATION) and self._inflation_heading is None:
+                self._inflation_heading = form.add_heading("Inflation beside the rates")
             form.add(field)
             field.committed.connect(lambda value, key=key: self._on_item(key, value))
-        self.measure = ChoiceField("Measure", _MEASURES)
-        self.risk_price = NumberField(
-            "Risk price",
-            low=-5.0,
-            high=5.0,
-            sensible=(-0.5, 0.5),
-            hint="Extra drift of the first factor for each unit of its volatility.",
-        )
-        form.add(self.measure)
-        form.add(self.risk_price)
-        self.risk_price.committed.connect(lambda value: self._on_item("risk_price", value))
-        self.measure.committed.connect(lambda value: self._on_run("measure", value, "measure"))
-        form.add_heading("How much is drawn")
+        self.assets = AssetFields(form, book=book, change=change)
+        form.add_heading("How much is drawn, and how")
         self._make_run_fields(form)
 
     def _make_run_fields(self, form: Form) -> None:
@@ -192,15 +105,44 @@ class RunForm:
         self.seed = IntegerField(
             "Seed", low=0, high=2**53, hint="The same seed draws the same paths, to the last bit."
         )
+        self.sampling = ChoiceField("Sampling", SAMPLINGS)
+        self.bridge = ChoiceField("Order of the directions", BRIDGES)
+        self.matching = ChoiceField(
+            "Moments",
+            (
+                Choice(False, "As drawn", "The normal numbers are left as they are."),
+                Choice(
+                    True,
+                    "Matched",
+                    "The normal numbers of every step are moved and stretched to mean 0 and variance 1.",
+                ),
+            ),
+        )
+        self.replicates = IntegerField(
+            "Replicates",
+            low=2,
+            high=MOST_REPLICATES,
+            sensible=(8, 64),
+            hint="Independent repetitions that share the paths: their spread tells the errors.",
+        )
         fields: tuple[tuple[Field, str, str], ...] = (
             (self.paths, "paths", "number of paths"),
             (self.horizon, "horizon_years", "horizon"),
             (self.steps, "steps_per_year", "steps a year"),
             (self.seed, "seed", "seed"),
+            (self.sampling, "sampling", "sampling"),
+            (self.bridge, "bridge", "order of the directions"),
+            (self.matching, "matching", "matching of moments"),
+            (self.replicates, "replicates", "number of replicates"),
         )
         for field, name, what in fields:
             form.add(field)
-            field.committed.connect(lambda value, name=name, what=what: self._on_run(name, int(value), what))
+            whole = isinstance(field, IntegerField)
+            field.committed.connect(
+                lambda value, name=name, what=what, whole=whole: self._on_run(
+                    name, int(value) if whole else value, what
+                )
+            )
 
     # Showing
 
@@ -208,26 +150,39 @@ class RunForm:
         """Show the settings of a book."""
         model, run = book.rates_model, book.run
         name = model.name if model is not None else ModelName.HULL_WHITE
+        outside = name is ModelName.OUTSIDE
         self.model.set_value(name)
-        _, square_root = MODEL_TRAITS[name]
-        self._set_limits(square_root=square_root)
+        self.of_set.setText(set_sentence(book) if outside else "")
+        self.of_set.setVisible(outside)
+        set_limits(self.items, name)
+        shown = items_shown(book)
         for key, field in self.items.items():
-            item = "volatility" if key == "root_volatility" else key
-            twin = key == ("volatility" if square_root else "root_volatility")
-            field.setVisible(item in MODEL_ITEMS[name] and not twin)
-            field.set_value(None if model is None else getattr(model, item))
+            field.setVisible(key in shown)
+            field.set_value(None if model is None else getattr(model, _item(key)))
+        if self._inflation_heading is not None:
+            self._inflation_heading.setVisible(any(key.startswith(_OF_INFLATION) for key in shown))
+        self.assets.show_book(book)
         self.measure.set_value(run.measure)
-        self.risk_price.set_value(0.0 if model is None else model.risk_price)
-        self.risk_price.setVisible(run.measure is Measure.REAL_WORLD)
+        # The paths of a set are what they are: only what is drawn beside them has a measure and a seed.
+        beside = book.risky_assets is not None and bool(book.risky_assets.names)
+        self.measure.setVisible(not outside or beside)
+        self.seed.setVisible(not outside or beside)
+        self._show_run(run, outside=outside)
+
+    def _show_run(self, run: Run, *, outside: bool) -> None:
         self.paths.set_value(run.paths)
         self.horizon.set_value(run.horizon_years)
         self.steps.set_value(run.steps_per_year)
         self.seed.set_value(run.seed)
-
-    def _set_limits(self, *, square_root: bool) -> None:
-        for key in ("long_run_rate", "starting_rate"):
-            self.items[key].low = 0.0 if square_root else -0.2
-        self.items["mean_reversion"].low = _LEAST_SQUARE_ROOT_REVERSION if square_root else 0.0
+        self.sampling.set_value(run.sampling)
+        self.bridge.set_value(run.bridge)
+        self.matching.set_value(run.matching)
+        self.replicates.set_value(run.replicates)
+        self.steps.setVisible(not outside)
+        self.sampling.setVisible(not outside)
+        self.matching.setVisible(not outside)
+        self.bridge.setVisible(not outside and run.sampling is Sampling.SOBOL)
+        self.replicates.setVisible(not outside and run.is_reduced)
 
     # Editing
 
@@ -242,12 +197,15 @@ class RunForm:
                 return
             self._change(f"Model {MODEL_TITLES[name]}", replace(book, rates_model=model))
 
-    def _on_item(self, key: str, value: float) -> None:
+    def _on_item(self, key: str, value: float | None) -> None:
         book = self._book()
         if book is None or book.rates_model is None:
             return
-        item = "volatility" if key == "root_volatility" else key
+        item = _item(key)
         changes: dict[str, Any] = {item: value}
+        begins = item == "inflation_volatility" and value is not None
+        if begins and book.rates_model.inflation_mean_reversion is None:
+            changes["inflation_mean_reversion"] = _FIRST_INFLATION_SPEED
         model: RatesModel = replace(book.rates_model, **changes)
         self._change(f"Change of the {item.replace('_', ' ')}", replace(book, rates_model=model))
 

@@ -1,4 +1,4 @@
-"""The pictures of a run: the fan over the years, the histogram of a year, and present values."""
+"""The pictures of a run by year: the fan of a quantity, and its histogram at one year."""
 
 from __future__ import annotations
 
@@ -11,20 +11,23 @@ from PySide6.QtCore import QPointF, Qt, Signal
 from PySide6.QtGui import QKeyEvent
 
 from desk.book.arrays import FloatArray
-from desk.scenarios.records import Distribution, Histogram, NodeSummary, Simulation
-from desk.scenarios.shapes import account_density, histogram_density, middle_range
+from desk.scenarios.records import Histogram, NodeSummary, Simulation
+from desk.scenarios.shapes import histogram_density, middle_range
+from desk.scenarios.tail_readings import Law, histogram_reading
 from desk.window.parts import numbers
 from desk.window.parts.plots import Picture
 from desk.window.parts.theme import ThemeSwitch
+from desk.window.scenarios.quantities import Quantity
 
-__all__ = ["FanPicture", "HistogramPicture", "ValuesPicture", "level_name"]
+__all__ = ["FanPicture", "HistogramPicture", "draw_bands", "drawn_bins", "level_name", "nice_width"]
 
 _ROLE = "rates"
 _CLOSED = "Closed form"
 _PATHS = "Paths"
-_SHOWN_PATHS = 25
 _STEPS = (1.0, 2.0, 5.0)
 _POINTS = 240
+_NEAR = 10.0
+"""A click this near to a path picks it [px]."""
 _FEW = 4
 """Marked percentiles of a histogram: at most this many, so that their names stay apart."""
 
@@ -37,98 +40,137 @@ def level_name(level: float) -> str:
 def _ticks(low: float, high: float) -> dict[float, str]:
     """Round figures from `low` to `high` at their logarithms."""
     powers = range(math.floor(math.log10(low)), math.ceil(math.log10(high)) + 1)
-    every = [step * 10.0**power for power in powers for step in _STEPS]
+    # Over many powers of ten only so many have room.
+    steps = _STEPS if len(powers) < 6 else (1.0,)
+    every = [step * 10.0**power for power in powers[:: 1 + len(powers) // 12] for step in steps]
     return {math.log10(value): numbers.exact(float(f"{value:g}")) for value in every if low <= value <= high}
 
 
-class FanPicture(Picture):
-    """The savings account or the short rate over the years, as nested bands.
+def draw_bands(
+    picture: Picture, places: FloatArray, levels: Sequence[float], values: FloatArray, mean: FloatArray
+) -> None:
+    """Percentiles as nested bands of one hue, the middle one and the mean as lines.
 
-    A click, or Return at the reading line, chooses a year.
+    Parameters
+    ----------
+    picture : Picture
+    places : ndarray, shape (n,)
+    levels : sequence of float, length m
+    values : ndarray, shape (n, m)
+    mean : ndarray, shape (n,)
+    """
+    for place in range(len(levels) // 2):
+        low, high = levels[place], levels[-1 - place]
+        picture.add_band(
+            f"{level_name(low)} to {level_name(high)}",
+            places,
+            values[:, place],
+            values[:, -1 - place],
+            _ROLE,
+            strength=0.2,
+            edge_names=(level_name(low), level_name(high)),
+        )
+    if len(levels) % 2:
+        middle = len(levels) // 2
+        picture.add_line(level_name(levels[middle]), places, values[:, middle], _ROLE)
+    picture.add_line("Mean", places, mean, "ink", dashed=True)
+
+
+class FanPicture(Picture):
+    """A quantity over the years as nested bands.
+
+    A click, or Return at the reading line, chooses a year; a click near a path picks it, and Page Up and
+    Page Down go to the path before and after.
 
     Signals
     -------
     year_chosen(float)
+    path_chosen(int)
+        By its number from 1.
+    path_stepped(int)
+        The path so many numbers further on is wanted.
     """
 
     year_chosen = Signal(float)
+    path_chosen = Signal(int)
+    path_stepped = Signal(int)
 
     def __init__(self, theme_switch: ThemeSwitch) -> None:
         super().__init__("Savings account", theme_switch)
         self._is_logarithmic = False
-        self._marked = ""
+        self._marked = self._picked = ""
+        self._digits = 3
+        self._paths: FloatArray = np.empty((0, 0))
+        self._year: FloatArray = np.empty(0)
         self.plot.scene().sigMouseClicked.connect(self._on_clicked)
 
     def show_run(
-        self, simulation: Simulation, quantity: str, *, logarithmic: bool = False, with_paths: bool = False
+        self,
+        simulation: Simulation,
+        quantity: Quantity,
+        *,
+        logarithmic: bool = False,
+        paths: FloatArray | None = None,
+        picked: tuple[int, FloatArray] | None = None,
     ) -> None:
         """Draw a run.
 
         Parameters
         ----------
         simulation : Simulation
-        quantity : str
-            ``account`` or ``rate``.
+        quantity : Quantity
         logarithmic : bool
-            Of the savings account alone: rates may be negative.
-        with_paths : bool
-            Draw some of the paths; only those of the savings account are kept.
+            Where the quantity can be.
+        paths : ndarray, shape (m, n), optional
+            Its values on the first m paths.
+        picked : (int, ndarray), optional
+            The number of a path, from 1, and its values.
         """
-        is_account = quantity == "account"
-        summary = simulation.savings_account if is_account else simulation.short_rate
-        shown = summary.percentile
-        can_be = is_account and bool(((shown > 0.0) & np.isfinite(shown)).all())
-        self._is_logarithmic = logarithmic and can_be
+        summary = quantity.summary
+        self._is_logarithmic = logarithmic and quantity.can_be_logarithmic
+        self._digits = quantity.digits
         self.clear()
-        self._marked = ""
-        if is_account:
-            self.set_title("Savings account: one unit rolled over")
-            scale = ", logarithmic" if self._is_logarithmic else ""
-            self.set_axes("Year", "", f"Value of 1 unit{scale}", "", y_digits=3)
-        else:
-            self.set_title("Short rate")
-            self.set_axes("Year", "", "Rate", "% a year, continuous", y_kind="rate", y_digits=2)
-        self._draw_bands(summary)
-        closed = simulation.closed_form if is_account else None
-        if with_paths and is_account:
-            self.add_paths(_PATHS, summary.year, self._shown(simulation.sample_paths[:_SHOWN_PATHS]), "ink")
+        self._marked = self._picked = ""
+        self.set_title(quantity.heading)
+        scale = ", logarithmic" if self._is_logarithmic else ""
+        kind = "number" if self._is_logarithmic else str(quantity.kind)
+        self.set_axes(
+            "Year", "", f"{quantity.axis}{scale}", quantity.unit, y_kind=kind, y_digits=quantity.digits
+        )
+        self._year = summary.year
+        draw_bands(
+            self, summary.year, summary.levels, self._shown(summary.percentile), self._shown(summary.mean)
+        )
+        self._paths = np.empty((0, 0)) if paths is None else self._shown(paths)
+        if paths is not None:
+            self.add_paths(_PATHS, summary.year, self._paths, "ink")
+        closed = quantity.closed
         if closed is not None:
             self.add_paths(_CLOSED, summary.year, self._shown(closed.percentile.T), "ink_soft", strength=0.9)
+        if picked is not None:
+            self._picked = f"Path {numbers.integer(picked[0])}"
+            self.add_line(self._picked, summary.year, self._shown(picked[1]), "assets")
         axis = self.plot.axes["left"]
         values = summary.percentile
         axis.set_names(_ticks(float(values.min()), float(values.max())) if self._is_logarithmic else {})
-        self.set_description(_fan_sentence(simulation, summary, is_account=is_account))
+        self.set_description(_fan_sentence(quantity))
         self.reset_view()
-
-    def _draw_bands(self, summary: NodeSummary) -> None:
-        levels, year = summary.levels, summary.year
-        values = self._shown(summary.percentile)
-        for place in range(len(levels) // 2):
-            low, high = levels[place], levels[-1 - place]
-            self.add_band(
-                f"{level_name(low)} to {level_name(high)}",
-                year,
-                values[:, place],
-                values[:, -1 - place],
-                _ROLE,
-                strength=0.2,
-                edge_names=(level_name(low), level_name(high)),
-            )
-        if len(levels) % 2:
-            middle = len(levels) // 2
-            self.add_line(level_name(levels[middle]), year, values[:, middle], _ROLE)
-        self.add_line("Mean", year, self._shown(summary.mean), "ink", dashed=True)
 
     def _shown(self, values: FloatArray) -> FloatArray:
         """Values as they are drawn."""
-        return np.log10(values) if self._is_logarithmic else values
+        if not self._is_logarithmic:
+            return values
+        # What a path holds beyond the numbers has no place on the axis.
+        with np.errstate(divide="ignore", invalid="ignore"):
+            logarithm = np.log10(values)
+        return np.where(np.isfinite(logarithm), logarithm, np.nan)
 
     def readings_at(self, x: float) -> list[tuple[str, str]]:
         """Names and values at `x`; those of a logarithmic axis as they are."""
         if not self._is_logarithmic:
             return super().readings_at(x)
         return [
-            (name, numbers.number(10.0**value, 3))
+            (name, numbers.number(10.0**value, self._digits))
             for series in self._series.values()
             for name, value in series.readings(x)
         ]
@@ -140,43 +182,66 @@ class FanPicture(Picture):
         self._marked = f"year {numbers.exact(year)}"
         self.add_vertical(year, self._marked)
 
+    def path_at(self, x: float, y: float) -> int:
+        """The number, from 1, of the path shown that comes nearest to a place; 0 where none comes near."""
+        if not self._paths.size:
+            return 0
+        left, stop, low, high = self._view()
+        if not left <= x <= stop:
+            return 0
+        heights = np.array([np.interp(x, self._year, path) for path in self._paths])
+        distance = np.abs(heights - y) / (high - low) * self._box.boundingRect().height()
+        if not np.isfinite(distance).any():
+            return 0
+        nearest = int(np.nanargmin(distance))
+        return nearest + 1 if distance[nearest] <= _NEAR else 0
+
     def _on_clicked(self, event: Any) -> None:
         if event.button() is not Qt.MouseButton.LeftButton:
             return
         place: QPointF = self._box.mapSceneToView(event.scenePos())
         left, stop, low, high = self._view()
         if left <= place.x() <= stop and low <= place.y() <= high:
-            self.year_chosen.emit(place.x())
+            near = self.path_at(place.x(), place.y())
+            if near:
+                self.path_chosen.emit(near)
+            else:
+                self.year_chosen.emit(place.x())
 
     def _on_key(self, event: QKeyEvent) -> None:
-        if event.key() in (Qt.Key.Key_Return, Qt.Key.Key_Enter) and self._reading_place is not None:
+        key = event.key()
+        if key in (Qt.Key.Key_Return, Qt.Key.Key_Enter) and self._reading_place is not None:
             self.year_chosen.emit(self._reading_place)
-            event.accept()
+        elif key in (Qt.Key.Key_PageUp, Qt.Key.Key_PageDown):
+            self.path_stepped.emit(1 if key == Qt.Key.Key_PageDown else -1)
+        else:
+            super()._on_key(event)
             return
-        super()._on_key(event)
+        event.accept()
 
 
-def _fan_sentence(simulation: Simulation, summary: NodeSummary, *, is_account: bool) -> str:
+def _fan_sentence(quantity: Quantity) -> str:
+    summary = quantity.summary
+    digits = 2 if quantity.kind == "rate" else 3
     mean, error = float(summary.mean[-1]), float(summary.mean_se[-1])
     year = numbers.exact(float(summary.year[-1]))
-    if not is_account:
-        text = (
-            f"{numbers.rate(mean, with_unit=True)}, standard error {numbers.rate(error, 3, with_unit=True)}"
-        )
-        return f"Mean at year {year}: {text}."
-    text = f"Mean at year {year}: {numbers.number(mean, 3)}, standard error {numbers.number(error, 3)}."
-    if simulation.closed_form is None:
+    text = (
+        f"Mean at year {year}: {quantity.shown(mean, digits)}, standard error {quantity.shown_error(error)}."
+    )
+    if quantity.key == "rate":
+        return text
+    if quantity.closed is None:
         return f"{text} There is no closed form."
     return f"{text} Thin lines: closed form."
 
 
-def _nice_width(histogram: Histogram) -> float:
+def nice_width(histogram: Histogram) -> float:
     """A round width near that of the bins: the power of ten below twice theirs."""
     width = float(np.median(np.diff(histogram.edges)))
     return float(10.0 ** math.floor(math.log10(2.0 * width))) if width > 0.0 else 1.0
 
 
-def _drawn_bins(histogram: Histogram, per: float) -> tuple[FloatArray, FloatArray, float]:
+def drawn_bins(histogram: Histogram, per: float) -> tuple[FloatArray, FloatArray, float]:
     """Middles, heights and width of the bins of equal width."""
     low, high = middle_range(histogram)
     edges = histogram.edges
@@ -187,42 +252,50 @@ def _drawn_bins(histogram: Histogram, per: float) -> tuple[FloatArray, FloatArra
 
 
 class HistogramPicture(Picture):
-    """The savings account or the short rate at one year."""
+    """A quantity at one year.
+
+    The reading line gives the share of the paths at and below a value, and the mean of those.
+    """
 
     def __init__(self, theme_switch: ThemeSwitch) -> None:
         super().__init__("Distribution", theme_switch)
+        self._histogram: Histogram | None = None
+        self._quantity: Quantity | None = None
+        self._law: Law | None = None
 
-    def show_year(self, simulation: Simulation, quantity: str, row: int) -> None:
+    def show_year(self, simulation: Simulation, quantity: Quantity, row: int) -> None:
         """Draw the reported year at `row`."""
-        is_account = quantity == "account"
-        summary = simulation.savings_account if is_account else simulation.short_rate
+        summary = quantity.summary
         histogram = summary.histograms[row]
         year = numbers.exact(float(summary.year[row]))
-        per = _nice_width(histogram)
+        per = nice_width(histogram)
         self.clear()
-        name = "Savings account" if is_account else "Short rate"
-        self.set_title(f"{name} at year {year}")
-        shown = numbers.exact(per) if is_account else numbers.rate(per, 2, with_unit=True)
-        heading = ("Value of 1 unit", "") if is_account else ("Rate", "% a year, continuous")
+        self._histogram, self._quantity = histogram, quantity
+        self._law = law = quantity.law(simulation, row)
+        self.set_title(f"{quantity.title} at year {year}")
+        shown = numbers.exact(per) if quantity.kind != "rate" else numbers.rate(per, 2, with_unit=True)
+        if quantity.kind == "money":
+            scaled = numbers.money_scaled(per, quantity.unit, digits=0)
+            shown = " ".join(part for part in (quantity.unit, scaled.text, scaled.scale.word) if part)
         self.set_axes(
-            *heading,
+            quantity.axis,
+            quantity.unit,
             "Share of paths",
             f"% per {shown}",
-            x_kind="number" if is_account else "rate",
-            x_digits=3 if is_account else 2,
+            x_kind=str(quantity.kind),
+            x_digits=None if quantity.kind == "money" else quantity.digits,
             y_kind="rate",
             with_zero=True,
         )
-        middles, heights, width = _drawn_bins(histogram, per)
+        middles, heights, width = drawn_bins(histogram, per)
         self.add_bars("Paths", middles, heights, _ROLE, width=width)
         low, high = middle_range(histogram)
         self.set_range(x=(low, high))
-        closed = simulation.closed_form if is_account else None
-        if closed is not None and closed.log_variance[row] > 0.0:
-            place = np.linspace(max(low, 1e-12), high, _POINTS)
-            self.add_line(_CLOSED, place, account_density(closed, row, place) * per, "ink")
+        if law is not None:
+            place = np.linspace(low, high, _POINTS)
+            self.add_line(_CLOSED, place, law.density(place) * per, "ink")
         self._mark_percentiles(summary, row, low, high)
-        self.set_description(_year_sentence(summary, row, is_account=is_account))
+        self.set_description(_year_sentence(quantity, row))
         self.reset_view()
 
     def _mark_percentiles(self, summary: NodeSummary, row: int, low: float, high: float) -> None:
@@ -233,60 +306,57 @@ class HistogramPicture(Picture):
             if low <= value <= high:
                 self.add_vertical(value, level_name(level))
 
+    def clear(self) -> None:
+        """Take out everything but the axes."""
+        self._histogram = None
+        super().clear()
 
-def _year_sentence(summary: NodeSummary, row: int, *, is_account: bool) -> str:
-    digits = 3
+    def _places(self) -> FloatArray:
+        """The edges of the bins, at which shares are exact."""
+        if self._histogram is None:
+            return super()._places()
+        left, stop, _, _ = self._view()
+        edges = self._histogram.edges
+        slack = 1e-9 * (stop - left)
+        return edges[(edges >= left - slack) & (edges <= stop + slack)]
 
-    def shown(value: float) -> str:
-        return numbers.number(value, digits) if is_account else numbers.rate(value, digits, with_unit=True)
+    def readings_at(self, x: float) -> list[tuple[str, str]]:
+        """Share and mean of what lies at and below `x`: of the paths, and in closed form."""
+        histogram, quantity = self._histogram, self._quantity
+        if histogram is None or quantity is None:
+            return super().readings_at(x)
+        found = histogram_reading(histogram, x)
+        share = numbers.rate(found.share, 2, with_unit=True)
+        error = numbers.rate(found.share_se, 2, with_unit=True)
+        result = [
+            ("P(X ≤ x)", f"{share} ± {error}"),
+            ("E[X | X ≤ x]", quantity.shown(found.mean, quantity.digits)),
+        ]
+        if self._law is not None:
+            exact = self._law.reading(x)
+            result += [
+                ("closed form", numbers.rate(exact.share, 2, with_unit=True)),
+                ("and", quantity.shown(exact.mean, quantity.digits)),
+            ]
+        return result
 
-    mean, error = shown(float(summary.mean[row])), shown(float(summary.mean_se[row]))
-    return f"Mean {mean} ± {error}, standard deviation {shown(float(summary.sd[row]))}."
-
-
-class ValuesPicture(Picture):
-    """Pathwise present values of one side or of several, with their values on the curve."""
-
-    def __init__(self, theme_switch: ThemeSwitch) -> None:
-        super().__init__("Present values along the paths", theme_switch)
-
-    def show_values(self, title: str, distributions: Sequence[Distribution], currency: str) -> None:
-        """Draw distributions; one alone as bars, several as outlines."""
-        self.clear()
-        self.set_title(title)
-        ranges = [middle_range(each.histogram) for each in distributions]
-        per = max(_nice_width(each.histogram) for each in distributions)
-        scaled = numbers.money_scaled(per, currency, digits=0)
-        width = " ".join(part for part in (currency, scaled.text, scaled.scale.word) if part)
-        self.set_axes(
-            "Present value",
-            currency,
-            "Share of paths",
-            f"% per {width}",
-            x_kind="money",
-            y_kind="rate",
-            with_zero=True,
-        )
-        alone = len(distributions) == 1
-        for each in distributions:
-            name = each.name.capitalize()
-            if alone:
-                middles, heights, wide = _drawn_bins(each.histogram, per)
-                self.add_bars(name, middles, heights, each.name, width=wide)
-            else:
-                density = np.append(histogram_density(each.histogram) * per, 0.0)
-                self.add_line(name, each.histogram.edges, density, each.name, stepped=True)
-            self.add_vertical(each.curve, "on the curve" if alone else f"{each.name} on the curve")
-        if alone and ranges[0][0] < 0.0 < ranges[0][1]:
-            self.add_vertical(0.0, "0")
-        self.set_range(x=(min(low for low, _ in ranges), max(high for _, high in ranges)))
-        self.set_description(_value_sentence(distributions))
-        self.reset_view()
+    def _read_at(self, x: float) -> None:
+        """As every picture, but each value has its own unit."""
+        places = self._places()
+        quantity = self._quantity
+        if not places.size or quantity is None or self._histogram is None:
+            super()._read_at(x)
+            return
+        place = float(places[np.abs(places - x).argmin()])
+        self._reading_place = place
+        self._cursor.setPos(place)
+        self._cursor.setVisible(True)
+        values = "  ·  ".join(f"{name} {text}" for name, text in self.readings_at(place))
+        self._say(f"x = {quantity.shown(place)}:  {values}")
 
 
-def _value_sentence(distributions: Sequence[Distribution]) -> str:
-    if len(distributions) != 1 or distributions[0].name != "surplus":
-        return "The flows discounted along each path."
-    chance = numbers.rate(distributions[0].below_zero, 1, with_unit=True)
-    error = numbers.rate(distributions[0].below_zero_se, 1, with_unit=True)
-    return f"Below zero on {chance} ± {error} of the paths."
+def _year_sentence(quantity: Quantity, row: int) -> str:
+    summary = quantity.summary
+    mean = quantity.shown(float(summary.mean[row]), 3)
+    error = quantity.shown_error(float(summary.mean_se[row]))
+    return f"Mean {mean} ± {error}, standard deviation {quantity.shown(float(summary.sd[row]), 3)}."

@@ -12,35 +12,35 @@ from PySide6.QtWidgets import (
     QHBoxLayout,
     QLabel,
     QPushButton,
-    QSlider,
+    QStackedWidget,
+    QTabBar,
     QVBoxLayout,
     QWidget,
 )
 
+from desk import tasks
 from desk.book import Book, ModelName
-from desk.scenarios.models import rate_model
-from desk.scenarios.records import Simulation
+from desk.scenarios.outlook import RunOutlook
 from desk.scenarios.suggestions import suggested_model
 from desk.window.document import Document
 from desk.window.jobs import Job, Jobs
 from desk.window.parts import numbers
-from desk.window.parts.boxes import TickBox
-from desk.window.parts.fields import Combo
 from desk.window.parts.labels import well_broken
-from desk.window.parts.theme import STEP, WIDE, ThemeSwitch, keep_look
+from desk.window.parts.theme import GAP, HALF, STEP, WIDE, ThemeSwitch, keep_look
+from desk.window.scenarios.export import PathExport
 from desk.window.scenarios.fitting_door import FittingDoor
 from desk.window.scenarios.form import RunForm
-from desk.window.scenarios.pictures import FanPicture, HistogramPicture, ValuesPicture
-from desk.window.scenarios.tables import PercentilesTable, RepricingTable, ValuesTable, run_sentence
-from desk.window.standing.pages import Pages
+from desk.window.scenarios.further_parts import ConvergencePart, CurvePart, ValuesPart
+from desk.window.scenarios.models_part import ModelsPart
+from desk.window.scenarios.part import Part, ShownRun
+from desk.window.scenarios.paths_part import PathsPart
+from desk.window.scenarios.tables import run_sentence
 from desk.window.station import STALE, Station
 
 __all__ = ["ScenariosStation"]
 
-_QUANTITIES = ("account", "rate", "values")
-_SMALL_TABLE = 184
-"""Height of the table of present values with its tabs [px]."""
-_TITLES = ("Savings account", "Short rate", "Present values")
+_PARTS: tuple[type[Part], ...] = (PathsPart, CurvePart, ValuesPart, ConvergencePart, ModelsPart)
+_MEGABYTE = 1e6
 
 
 class ScenariosStation(Station):
@@ -48,8 +48,12 @@ class ScenariosStation(Station):
 
     Attributes
     ----------
-    year : int
-        Whose histogram is shown.
+    tabs : QTabBar
+        The parts.
+    run_form : RunForm
+    export : PathExport
+    outlook : RunOutlook or None
+        What is known of the run of the book as it stands; None while it is looked into.
     """
 
     key = "scenarios"
@@ -60,68 +64,50 @@ class ScenariosStation(Station):
         self, document: Document, jobs: Jobs, theme_switch: ThemeSwitch, parent: QWidget | None = None
     ) -> None:
         super().__init__(document, jobs, theme_switch, parent)
-        self.year = 0
-        self._shown: Simulation | None = None
+        self._shown: ShownRun | None = None
         self._shown_book: Book | None = None
         self._job: Job | None = None
         self._failure = ""
-        self._usual_sizes: list[int] = []
-        self._values_pictures: tuple[ValuesPicture, ...] = ()
-        # Pictures and tables take turns, so that the window never stops for all at once.
-        self._waiting: list[Callable[[], None]] = []
-        self._filling = QTimer(self, singleShot=True, interval=0)
-        self._filling.timeout.connect(self._fill_next)
+        self.outlook: RunOutlook | None = None
+        self._parts: dict[str, Part] = {}
+        self._shown_part = ""
+        self.export = PathExport(self, jobs, say=self.message.emit, changed=self.request_refresh)
         self.run_form = RunForm(
             self.form,
             book=lambda: self.document.book,
             change=self._change,
             run=self.run,
             cancel=document.cancel_simulation,
+            export=self.ask_export,
         )
-        self._make_controls()
         self.fitting = FittingDoor(self)
-        self.fan = FanPicture(theme_switch)
-        self.histogram = HistogramPicture(theme_switch)
-        self.percentiles = PercentilesTable(theme_switch)
-        self.repricing = RepricingTable(theme_switch)
-        self.values = ValuesTable(theme_switch)
-        for teller in (
-            self.fan,
-            self.histogram,
-            self.percentiles,
-            self.repricing,
-            self.values,
-        ):
-            teller.message.connect(self.message)
-        self.pages = Pages(theme_switch, name="Tables of the run")
-        self.pages.add("percentiles", "Percentiles by year", self.percentiles)
-        self.pages.add("repricing", "Check against the curve", self.repricing)
-        self.pages.add("values", "Present values", self.values)
-        self.in_full = TickBox("Intervals and closed form")
-        self.in_full.setChecked(True)
-        self.pages.add_control(self.in_full)
-        self.set_pictures(self.fan, self.histogram)
-        for place, share in enumerate((3, 2)):
-            self.pictures.setStretchFactor(place, share)
-        self.set_table(self.pages, share=44)
+        self._make_bar()
+        self._tables = QStackedWidget()
+        self.set_pictures()
+        self.set_table(self._tables, share=44)
         self.main.addWidget(self._make_invitation())
         self.set_form_visible()
         self._connect()
 
-    def _make_controls(self) -> None:
-        self.quantity = Combo()
-        self.quantity.addItems(list(_TITLES))
-        self.quantity.setAccessibleName("Shown")
-        self.logarithmic = TickBox("Log scale")
-        self.with_paths = TickBox("Some paths")
-        self.slider = QSlider(Qt.Orientation.Horizontal)
-        self.slider.setFixedWidth(32 * STEP)
-        self.slider.setAccessibleName("Year of the histogram")
-        self.year_label = QLabel()
-        self.year_label.setBuddy(self.slider)
-        self.year_label.setFixedWidth(self.fontMetrics().horizontalAdvance("Year 200") + STEP)
-        for widget in (self.quantity, self.logarithmic, self.with_paths, self.year_label, self.slider):
-            self.add_to_heading(widget)
+    def _make_bar(self) -> None:
+        """The tabs of the parts, with the controls of the one that is shown."""
+        self.tabs = QTabBar()
+        self.tabs.setDrawBase(False)
+        self.tabs.setExpanding(False)
+        self.tabs.setAccessibleName("Parts of the station Scenarios")
+        for each in _PARTS:
+            place = self.tabs.addTab(each.title)
+            self.tabs.setTabToolTip(place, each.purpose)
+        self._bar = QWidget()
+        self._row = QHBoxLayout(self._bar)
+        self._row.setContentsMargins(GAP, 0, WIDE, HALF)
+        self._row.setSpacing(WIDE - STEP)
+        self._row.addWidget(self.tabs)
+        self._row.addStretch(1)
+        column = self.layout()
+        if isinstance(column, QVBoxLayout):
+            column.insertWidget(1, self._bar)
+        self._bar.hide()
 
     def _make_invitation(self) -> QWidget:
         self.invitation = QWidget()
@@ -146,22 +132,25 @@ class ScenariosStation(Station):
         return self.invitation
 
     def _connect(self) -> None:
-        self.quantity.currentIndexChanged.connect(lambda _: self._on_quantity())
-        for box in (self.logarithmic, self.with_paths):
-            box.toggled.connect(lambda _: self._soon(self._draw_fan))
-        self.in_full.toggled.connect(lambda _: self._soon(self._fill_table))
-        self.pages.changed.connect(lambda _: self._soon(self._share_height, self._fill_table))
-        self.slider.valueChanged.connect(self.set_year)
-        self.fan.year_chosen.connect(lambda year: self.set_year(round(year)))
+        self.tabs.currentChanged.connect(lambda place: self.show_part(_PARTS[place].key))
         self.jobs.progressed.connect(self._on_progress)
         self.document.failed.connect(self._on_failed)
-        # It holds while the station is seen, wherever the keyboard is.
+        # They hold while the station is seen, wherever the keyboard is.
         QShortcut(QKeySequence("Ctrl+R"), self).activated.connect(self.run)
+        for key, step in (("Ctrl+Tab", 1), ("Ctrl+Shift+Tab", -1)):
+            shortcut = QShortcut(QKeySequence(key), self)
+            shortcut.setContext(Qt.ShortcutContext.WidgetWithChildrenShortcut)
+            shortcut.activated.connect(partial(self._step, step))
 
     def home(self) -> QWidget:
         """The button that runs, or the one that stops."""
         form = self.run_form
         return form.cancel_button if self.document.is_simulating else form.run_button
+
+    def show_instead(self, page: QWidget) -> None:
+        """Put a page in the place of everything under the heading."""
+        self._bar.hide()
+        super().show_instead(page)
 
     # Running
 
@@ -184,6 +173,15 @@ class ScenariosStation(Station):
             model = suggested_model(ModelName.HULL_WHITE, book.basis)
             self.document.edit("New rates model Hull-White", replace(book, rates_model=model))
 
+    def ask_export(self) -> None:
+        """Ask where the paths of the run that is shown are to go, and write them."""
+        shown = self._shown
+        if self.export.is_running and self.export.job is not None:
+            self.jobs.cancel(self.export.job)
+        elif shown is not None and shown.book is not None:
+            name = self.document.path.stem if self.document.path is not None else "book"
+            self.export.ask(shown.book, f"{name}_paths")
+
     def _change(self, text: str, book: Book) -> None:
         self._failure = ""
         self.document.edit(text, book)
@@ -198,6 +196,24 @@ class ScenariosStation(Station):
             self._failure = text
             self.request_refresh()
 
+    # Looking ahead
+
+    def _look_ahead(self, book: Book) -> None:
+        """Find out in the background what stands in the way of a run, and what it takes."""
+        self.outlook = None
+
+        def take(found: RunOutlook) -> None:
+            if book is self._shown_book:
+                self.outlook = found
+                self._show_state()
+
+        self.jobs.start(
+            "Looking ahead",
+            partial(tasks.look_ahead, book),
+            on_done=take,
+            exclusive_key=f"outlook of {id(self)}",
+        )
+
     # Showing
 
     def refresh(self) -> None:
@@ -207,11 +223,11 @@ class ScenariosStation(Station):
         document = self.document
         book = document.book
         if book is None:
-            self._shown = self._shown_book = None
+            self._forget()
             self._show_none(
                 "Scenarios need a book: what is promised, what is held, and how rates move.",
                 "Open a book",
-                "open",
+                lambda: self.step_wanted.emit("open"),
             )
             return
         if book.rates_model is None:
@@ -220,48 +236,51 @@ class ScenariosStation(Station):
                 "reversion 0.05 a year, volatility 0.9 % a year, fitted to the book's curve. It is an edit "
                 "like any other: it can be changed and undone.",
                 "Add a Hull-White model",
-                "model",
+                self.add_model,
             )
             return
         self.show_content()
         if book is not self._shown_book:
             self._shown_book = book
             self.run_form.show_book(book)
+            self._look_ahead(book)
         self._show_state()
         simulation = document.simulation
         if simulation is None:
             self._shown = None
-        elif simulation is not self._shown:
-            self._shown = simulation
-            self._show_run(simulation)
+            for part in self._parts.values():
+                part.forget()
+        elif self._shown is None or simulation is not self._shown.simulation:
+            self._shown = ShownRun(simulation, document.simulation_book, book.basis.currency)
         self._show_parts()
 
-    def _show_none(self, text: str, button: str, step: str) -> None:
+    def _forget(self) -> None:
+        self._shown = self._shown_book = None
+        for part in self._parts.values():
+            part.forget()
+
+    def _show_none(self, text: str, button: str, act: Callable[[], object]) -> None:
         self.hide_stale()
-        for widget in (self.quantity, self.logarithmic, self.with_paths, self.year_label, self.slider):
-            widget.hide()
-        act = self.add_model if step == "model" else lambda: self.step_wanted.emit(step)
+        self._bar.hide()
         self.show_empty(text, button, act)
 
     def _show_state(self) -> None:
         """What runs, what is stale, what failed, what stands in the way."""
-        document, form = self.document, self.run_form
+        document, form, outlook = self.document, self.run_form, self.outlook
         running = document.is_simulating
-        obstacle = self._obstacle()
-        had_focus = form.run_button.hasFocus() or form.cancel_button.hasFocus()
+        obstacle = "" if outlook is None or not outlook.obstacle else f"{outlook.obstacle}."
         form.run_button.setEnabled(not obstacle)
-        for button, wanted in ((form.cancel_button, running), (form.run_button, not running)):
-            if wanted:
-                button.show()
-                if had_focus:
-                    # The other one goes: the keyboard would go with it.
-                    button.setFocus(Qt.FocusReason.OtherFocusReason)
         form.run_button.setVisible(not running)
         form.cancel_button.setVisible(running)
         there = document.simulation
         about = obstacle or (run_sentence(there) if there is not None else "")
         form.state.setText("Running." if running else well_broken(about))
         form.state.setVisible(running or bool(about))
+        form.memory.setText("" if outlook is None or obstacle else _memory_sentence(outlook))
+        form.memory.setVisible(bool(form.memory.text()))
+        can_export = there is not None and document.simulation_book is not None
+        form.export_button.setVisible(can_export)
+        form.export_button.setText("Stop the export" if self.export.is_running else "Export the paths…")
         self.invitation_button.setEnabled(not running and not obstacle)
         self.invitation_button.setVisible(not running)
         self.invitation_text.setText(
@@ -273,9 +292,9 @@ class ScenariosStation(Station):
         )
         if self._failure:
             self.show_stale("Close", self._close_failure, text=self._failure)
-        elif document.simulation is not None and document.simulation_is_stale and not running:
+        elif there is not None and document.simulation_is_stale and not running:
             self.show_stale("Run again", self.run)
-        elif document.simulation is not None and document.simulation_is_stale:
+        elif there is not None and document.simulation_is_stale:
             self.show_stale(text=f"{STALE} A new run is under way.")
         else:
             self.hide_stale()
@@ -284,154 +303,103 @@ class ScenariosStation(Station):
         self._failure = ""
         self._show_state()
 
-    def _obstacle(self) -> str:
-        """Why the model of the book cannot be drawn; empty where it can."""
-        book = self.document.book
-        if book is None:
-            return ""
-        try:
-            rate_model(book)
-        except ValueError as error:
-            return f"{error}."
-        return ""
-
-    @property
-    def values_pictures(self) -> tuple[ValuesPicture, ...]:
-        """Present values of both sides, and of the surplus; made when they are first wanted."""
-        if not self._values_pictures:
-            self._values_pictures = (ValuesPicture(self.theme_switch), ValuesPicture(self.theme_switch))
-            for picture in self._values_pictures:
-                picture.message.connect(self.message)
-                self.pictures.addWidget(picture)
-                self.pictures.setStretchFactor(self.pictures.count() - 1, 1)
-                picture.hide()
-        return self._values_pictures
-
-    def views(self) -> tuple[Callable[[], object], ...]:
-        """The short rate and the present values."""
-        return tuple(partial(self.quantity.setCurrentIndex, place) for place in range(1, len(_QUANTITIES)))
-
-    @property
-    def shown_quantity(self) -> str:
-        """``account``, ``rate`` or ``values``."""
-        return _QUANTITIES[max(self.quantity.currentIndex(), 0)]
-
     def _show_parts(self) -> None:
         there = self._shown is not None
-        quantity = self.shown_quantity
-        of_values = quantity == "values"
+        self._bar.setVisible(there)
         self.pictures.setVisible(there)
-        self.pages.setVisible(there)
+        self._tables.setVisible(there)
         self.invitation.setVisible(not there)
-        for picture in (self.fan, self.histogram):
-            picture.setVisible(not of_values)
-        if of_values or self._values_pictures:
-            for of_side in self.values_pictures:
-                of_side.setVisible(of_values)
-        self.quantity.setVisible(there)
-        for control in (self.year_label, self.slider):
-            control.setVisible(there and not of_values)
-        for box in (self.logarithmic, self.with_paths):
-            box.setVisible(there and quantity == "account")
+        if there:
+            self.show_part(self._shown_part or _PARTS[self.tabs.currentIndex()].key)
 
-    def _show_run(self, simulation: Simulation) -> None:
-        last = len(simulation.savings_account.year) - 1
-        if not 1 <= self.year <= last:
-            self.year = max(1, last // 2)
-        with QSignalBlocker(self.slider):
-            self.slider.setRange(1, last)
-        self._show_year_chosen()
-        self._draw()
+    # Parts
 
-    def _share_height(self) -> None:
-        """Give the pictures what a table of three rows does not need."""
-        small = self.shown_quantity == "values" and self.pages.current == "values"
-        if small and not self._usual_sizes:
-            self._usual_sizes = self.main.sizes()
-            self.main.setSizes([sum(self._usual_sizes) - _SMALL_TABLE, _SMALL_TABLE, 0])
-        elif not small and self._usual_sizes:
-            self.main.setSizes(self._usual_sizes)
-            self._usual_sizes = []
+    @property
+    def part(self) -> Part | None:
+        """The part that is shown."""
+        return self._parts.get(self._shown_part)
 
-    def _on_quantity(self) -> None:
-        self._show_parts()
-        if self.shown_quantity == "values":
-            self.pages.show_page("values")
-        elif self.pages.current == "values":
-            self.pages.show_page("percentiles")
-        self._draw()
+    def part_of(self, key: str) -> Part:
+        """A part, made where it is not there yet.
 
-    def _draw(self) -> None:
-        self._soon(self._draw_fan, self._draw_year, self._draw_values, self._fill_table)
+        Raises
+        ------
+        ValueError
+            If there is none of this key.
+        """
+        if key not in self._parts:
+            made = next((each for each in _PARTS if each.key == key), None)
+            if made is None:
+                raise ValueError(f"`key` must be one of {', '.join(each.key for each in _PARTS)}, not {key}")
+            part = made(self)
+            self._parts[key] = part
+            for picture in part.pictures:
+                picture.hide()
+                self.pictures.addWidget(picture)
+            self._tables.addWidget(part.table)
+            for control in part.controls:
+                control.hide()
+                self._row.addWidget(control)
+        return self._parts[key]
 
-    def _soon(self, *steps: Callable[[], None]) -> None:
-        """Do `steps`, one a turn, each once however often it was asked for."""
-        self._waiting += [step for step in steps if step not in self._waiting]
-        self._filling.start()
+    def show_part(self, key: str) -> None:
+        """Show a part.
 
-    def _fill_next(self) -> None:
-        step = self._waiting.pop(0)
-        if self._waiting:
-            self._filling.start()
-        step()
-
-    def set_year(self, year: int) -> None:
-        """Show the histogram of another year."""
+        Raises
+        ------
+        ValueError
+            If there is none of this key.
+        """
         if self._shown is None:
             return
-        year = min(max(year, 1), len(self._shown.savings_account.year) - 1)
-        if year != self.year:
-            self.year = year
-            self._show_year_chosen()
-            self._draw_year()
+        part, former = self.part_of(key), self.part
+        place = next(place for place, each in enumerate(_PARTS) if each.key == key)
+        with QSignalBlocker(self.tabs):
+            self.tabs.setCurrentIndex(place)
+        if former is not part:
+            if former is not None:
+                for widget in (*former.pictures, *former.controls):
+                    widget.hide()
+            self._shown_part = key
+            self._tables.setCurrentWidget(part.table)
+            for widget in (*part.pictures, *part.controls):
+                widget.show()
+            self.main.setSizes([10 * (100 - part.share), 10 * part.share, 0])
+            # What was hidden has no width yet.
+            QTimer.singleShot(0, self, self._share_pictures)
+        part.show_run(self._shown)
 
-    def _show_year_chosen(self) -> None:
-        with QSignalBlocker(self.slider):
-            self.slider.setValue(self.year)
-        self.year_label.setText(f"Year {self.year}")
-
-    def _draw_fan(self) -> None:
-        if self._shown is None or self.shown_quantity == "values":
+    def _share_pictures(self) -> None:
+        """Give the pictures of the part that is shown their shares of the width."""
+        part = self.part
+        if part is None:
             return
-        self.fan.show_run(
-            self._shown,
-            self.shown_quantity,
-            logarithmic=self.logarithmic.isChecked(),
-            with_paths=self.with_paths.isChecked(),
-        )
-        self._mark_year()
+        shares = dict(zip(part.pictures, part.shares, strict=False))
+        found = [self.pictures.widget(place) for place in range(self.pictures.count())]
+        whole = max(self.pictures.width(), 1)
+        self.pictures.setSizes([whole * shares.get(one, 0) for one in found])  # type: ignore[call-overload]
 
-    def _draw_year(self) -> None:
-        if self._shown is not None and self.shown_quantity != "values":
-            self.histogram.show_year(self._shown, self.shown_quantity, self.year)
-            self._mark_year()
+    def _step(self, step: int) -> None:
+        self.tabs.setCurrentIndex((self.tabs.currentIndex() + step) % self.tabs.count())
 
-    def _mark_year(self) -> None:
-        if self._shown is not None:
-            self.fan.mark_year(float(self._shown.savings_account.year[self.year]))
+    @property
+    def is_busy(self) -> bool:
+        """Whether something of the part that is shown is still to be drawn."""
+        return self.part is not None and self.part.is_busy
 
-    def _draw_values(self) -> None:
-        book = self.document.book
-        if self._shown is None or book is None or self.shown_quantity != "values":
-            return
-        by_name = {each.name: each for each in self._shown.present_value}
-        sides = [by_name[name] for name in ("assets", "liabilities") if name in by_name]
-        both, surplus = self.values_pictures
-        both.show_values("Assets and liabilities", sides, book.basis.currency)
-        if "surplus" in by_name:
-            surplus.show_values("Surplus", [by_name["surplus"]], book.basis.currency)
+    def views(self) -> tuple[Callable[[], object], ...]:
+        """The further quantities, and the other parts."""
+        if self._shown is None:
+            return ()
+        self.show_part(PathsPart.key)
+        first = self.part_of(PathsPart.key)
+        further = [each.key for each in _PARTS[1:] if each is not ModelsPart]
+        return (*first.views(), *(partial(self.show_part, key) for key in further))
 
-    def _fill_table(self) -> None:
-        """Fill the table that is shown."""
-        book = self.document.book
-        if self._shown is None or book is None:
-            return
-        in_full, page = self.in_full.isChecked(), self.pages.current
-        self.in_full.setVisible(page != "repricing")
-        if page == "percentiles":
-            quantity = "rate" if self.shown_quantity == "rate" else "account"
-            self.percentiles.show_run(self._shown, quantity, in_full=in_full)
-        elif page == "repricing":
-            self.repricing.show_run(self._shown)
-        else:
-            self.values.show_run(self._shown, book.basis.currency, in_full=in_full)
+
+def _memory_sentence(outlook: RunOutlook) -> str:
+    """What a run takes."""
+    megabytes = outlook.memory / _MEGABYTE
+    taken = f"{numbers.number(max(megabytes, 1.0), 0)}\N{NO-BREAK SPACE}MB"
+    drawn = f"{numbers.integer(outlook.paths)} paths of {numbers.integer(outlook.steps)} steps"
+    return f"A run draws {drawn} and takes about {taken} of memory."
