@@ -25,6 +25,8 @@ MOST_BYTES = 2_000_000_000
 # Numbers a path: present values of both sides and the surplus, and what summing up a node takes beside the
 # samples themselves, as measured.
 _SUMMED = 8
+# Bytes that a run takes whatever its paths: samples of a group of nodes, tables of surfaces.
+_FIXED = 40_000_000
 _SLACK = 1e-9
 
 
@@ -163,7 +165,7 @@ def run_bytes(plan: Plan, *, collars: int = 0) -> int:
     collars : int
         Kinds of collared growth that are followed along the paths.
     """
-    return plan.paths * 8 * _numbers(plan, collars)
+    return plan.paths * 8 * _numbers(plan, collars) + _FIXED
 
 
 def _numbers(plan: Plan, collars: int) -> int:
@@ -173,6 +175,9 @@ def _numbers(plan: Plan, collars: int) -> int:
         inflates = plan.market.index is not None
         # Where each is, and its sample; the total of the assets; the growth of a collar in the last years.
         beside = 2 * plan.market.asset_count + 1 + 4 * inflates + 6 * collars
+        # The normals and the noise of half a block's paths are kept beside it.
+        drawn = plan.market.asset_count + 2 * inflates
+        beside += drawn + (plan.model.factor_count + 1) // 2 + 1
     walked = plan.model.factor_count + 1 + 2 * isinstance(plan.model, BlackKarasinskiRates)
     sobol = 0
     if plan.replicates is not None:
@@ -188,7 +193,7 @@ def check_fits(plan: Plan, *, collars: int = 0, most: int = MOST_BYTES) -> None:
     needed = run_bytes(plan, collars=collars)
     if needed <= most:
         return
-    fits = most // (8 * _numbers(plan, collars))
+    fits = max(0, most - _FIXED) // (8 * _numbers(plan, collars))
     digits = 10 ** max(0, len(str(fits)) - 2)
     assets = 0 if plan.market is None else plan.market.asset_count
     beside = f" with {assets} risky assets" if assets > 1 else " with a risky asset" if assets else ""

@@ -177,11 +177,17 @@ def books(draw: st.DrawFn) -> Book:
         notes = (Notes("Liabilities", tuple(headings), rows),)
     model = st.builds(
         RatesModel,
-        name=st.sampled_from([ModelName.HULL_WHITE, ModelName.HO_LEE]),
+        name=st.sampled_from([ModelName.HULL_WHITE, ModelName.HO_LEE, ModelName.BLACK_KARASINSKI]),
         mean_reversion=st.floats(0, 5),
         volatility=st.floats(0, 0.9),
         long_run_rate=st.one_of(st.none(), rates),
         risk_price=st.floats(-3, 3),
+        second_risk_price=st.floats(-3, 3),
+        inflation_mean_reversion=st.floats(0, 5),
+        inflation_volatility=st.one_of(st.none(), st.floats(0, 0.9)),
+        inflation_rate_correlation=st.one_of(st.none(), st.floats(-1, 1)),
+        inflation_risk_price=st.floats(-3, 3),
+        mend_correlation=st.booleans(),
     )
     history_days = sorted(draw(st.sets(st.dates(date(1950, 1, 1), TODAY), max_size=4)))
     asset_flows = draw(st.one_of(st.just(FlowTable.empty()), flow_tables(day_count, beta=False)))
