@@ -7,26 +7,31 @@ error in one line a fault. With ``--json`` standard output is one JSON object an
 from __future__ import annotations
 
 import argparse
-import errno
-import os
-import signal
 import sys
-import threading
-import traceback
-from collections.abc import Callable, Iterable, Iterator, Sequence
-from contextlib import contextmanager
+from collections.abc import Callable, Iterable, Sequence
 from dataclasses import replace
 from pathlib import Path
 from typing import TYPE_CHECKING
 
 from desk import tasks
 from desk.arguments import COMMANDS, parser, range_faults, target_fault
+from desk.asked import (
+    BadRequest,
+    NotWritten,
+    Reported,
+    complain_of,
+    complain_of_reading,
+    insist_on,
+    read_usable,
+    write_to,
+)
 from desk.book import Book, Fault, RatesModel, Severity
+from desk.guarded import ended_by_signals, run_guarded, say_result
 from desk.intake.records import Reading
 from desk.report import as_json, as_text
 from desk.report.said_once import further_faults
 from desk.scenarios.records import Simulation
-from desk.terminal import ProgressLine, complain, say, use_standard_streams
+from desk.terminal import ProgressLine, complain
 from desk.valuation.records import Standing
 
 if TYPE_CHECKING:
@@ -35,23 +40,6 @@ if TYPE_CHECKING:
 __all__ = ["COMMANDS", "BadRequest", "demonstrate", "main", "read_usable", "run_guarded"]
 
 DONE, FAILED, AT_FAULT = 0, 1, 2
-
-_NO_PLACE_TO_WRITE = (errno.EACCES, errno.EPERM, errno.EROFS, errno.ENAMETOOLONG, errno.ENOENT)
-"""Reasons why a file cannot be written that lie in the place asked for."""
-
-
-class BadRequest(Exception):
-    """The book or the arguments are at fault.
-
-    Attributes
-    ----------
-    faults : tuple of Fault
-    """
-
-    def __init__(self, faults: Iterable[Fault]) -> None:
-        """Hold the faults."""
-        self.faults = tuple(faults)
-        super().__init__("; ".join(str(fault) for fault in self.faults))
 
 
 def main(arguments: Sequence[str] | None = None) -> int:
@@ -65,89 +53,10 @@ def main(arguments: Sequence[str] | None = None) -> int:
     given = list(sys.argv[1:] if arguments is None else arguments)
 
     def work() -> int:
-        with _ended_by_signals():
+        with ended_by_signals():
             return _command(given)
 
     return run_guarded(work)
-
-
-@contextmanager
-def _ended_by_signals() -> Iterator[None]:
-    """Let a request to end stop the work as Ctrl-C does, so that nothing half done stays behind."""
-    names = [name for name in ("SIGTERM", "SIGHUP") if hasattr(signal, name)]
-    former = {}
-
-    def end(number: int, frame: object) -> None:
-        signal.signal(number, signal.SIG_IGN)
-        raise KeyboardInterrupt
-
-    if threading.current_thread() is threading.main_thread():
-        for name in names:
-            number = getattr(signal, name)
-            # A process that is to outlive its terminal stays deaf to its end.
-            if signal.getsignal(number) is not signal.SIG_IGN:
-                former[number] = signal.signal(number, end)
-    try:
-        yield
-    finally:
-        for number, handler in former.items():
-            signal.signal(number, handler)
-
-
-class _CannotWrite(Exception):
-    """Standard output takes nothing more."""
-
-
-class _NotWritten(Exception):
-    """A file cannot be written, for no reason that lies in its place."""
-
-
-def run_guarded(work: Callable[[], int]) -> int:
-    """Do `work` and turn whatever ends it early into an exit status."""
-    use_standard_streams()
-    try:
-        status = work()
-        _flush()
-    except KeyboardInterrupt:
-        complain("Stopped.")
-        return FAILED
-    except MemoryError:
-        complain("There is not enough memory for this. Ask for fewer paths or a shorter horizon.")
-        return FAILED
-    except _CannotWrite as error:
-        complain(f"The result cannot be written: {error}.")
-        # What Python still holds for the stream must not raise again at exit.
-        sys.stdout = open(os.devnull, "w", encoding="utf-8")  # noqa: SIM115
-        return FAILED
-    except BrokenPipeError:
-        # The reader has gone: what Python still holds for it must not raise again at exit.
-        sys.stdout = open(os.devnull, "w", encoding="utf-8")  # noqa: SIM115
-        return FAILED
-    except Exception as error:
-        traceback.print_exc()
-        complain(f"The program failed: {type(error).__name__}: {error}")
-        return FAILED
-    return status
-
-
-def _flush() -> None:
-    """Hand over what was said."""
-    try:
-        sys.stdout.flush()
-    except BrokenPipeError:
-        raise
-    except OSError as error:
-        raise _CannotWrite(error.strerror or str(error)) from error
-
-
-def _say(text: str) -> None:
-    """Text on standard output, which may take nothing more."""
-    try:
-        say(text)
-    except BrokenPipeError:
-        raise
-    except OSError as error:
-        raise _CannotWrite(error.strerror or str(error)) from error
 
 
 def demonstrate(path: Path, folder: Path) -> tuple[Reading, Standing, Simulation | None]:
@@ -180,38 +89,18 @@ def demonstrate(path: Path, folder: Path) -> tuple[Reading, Standing, Simulation
         with ProgressLine("Simulating") as progress:
             simulation = tasks.simulate(book, progress=progress)
     second = _on_second_basis(book)
-    _say(as_text.standing_text(standing, title=book.basis.title, book=book, second=second))
+    say_result(as_text.standing_text(standing, title=book.basis.title, book=book, second=second))
     if simulation is not None:
-        _say("")
-        _say(as_text.simulation_text(simulation, currency=book.basis.currency))
+        say_result("")
+        say_result(as_text.simulation_text(simulation, currency=book.basis.currency))
     folder.mkdir(parents=True, exist_ok=True)
     target = folder / f"{path.stem}_report.xlsx"
     with ProgressLine("Writing") as progress:
         tasks.report(
             reading, target, standing=standing, simulation=simulation, second=second, progress=progress
         )
-    _say(f"\nThe report is in {target}")
+    say_result(f"\nThe report is in {target}")
     return reading, standing, simulation
-
-
-def read_usable(path: Path) -> tuple[Reading, Book]:
-    """Read a book, complain about its faults, and insist that it can be used.
-
-    Raises
-    ------
-    BadRequest
-        If the book has grave faults; its faults are on standard error already.
-    """
-    with ProgressLine("Reading") as progress:
-        reading = tasks.read(path, progress=progress)
-    _complain_of_reading(reading)
-    if reading.book is None or reading.grave:
-        raise _Reported(reading.faults)
-    return reading, reading.book
-
-
-class _Reported(BadRequest):
-    """Faults that stand on standard error already."""
 
 
 def _command(given: Sequence[str]) -> int:
@@ -225,15 +114,15 @@ def _command(given: Sequence[str]) -> int:
         return AT_FAULT
     try:
         return _ACTIONS[options.command](options)
-    except _NotWritten as error:
+    except NotWritten as error:
         complain(as_text.printable(f"{error}"))
         return FAILED
     except BadRequest as bad:
-        if not isinstance(bad, _Reported):
+        if not isinstance(bad, Reported):
             for fault in bad.faults:
                 complain(as_text.fault_line(fault))
         if getattr(options, "json", False):
-            _say(as_json.text({"faults": [as_json.fault_object(fault) for fault in bad.faults]}))
+            say_result(as_json.text({"faults": [as_json.fault_object(fault) for fault in bad.faults]}))
         return AT_FAULT
 
 
@@ -241,24 +130,24 @@ def _check(options: argparse.Namespace) -> int:
     """Read a book and list its faults."""
     with ProgressLine("Reading") as progress:
         reading = tasks.read(options.book, progress=progress)
-    _complain_of_reading(reading)
-    _say(as_json.text(as_json.check_object(reading)) if options.json else as_text.check_text(reading))
+    complain_of_reading(reading)
+    say_result(as_json.text(as_json.check_object(reading)) if options.json else as_text.check_text(reading))
     return AT_FAULT if reading.grave or reading.book is None else DONE
 
 
 def _value(options: argparse.Namespace) -> int:
     """The standing."""
     reading, book = read_usable(options.book)
-    _insist_on(book, model=False)
+    insist_on(book, model=False)
     with ProgressLine("Valuing") as progress:
         standing = tasks.value(book, progress=progress)
     second = _on_second_basis(book)
     found = standing.faults if second is None else (*standing.faults, *second.faults)
-    _complain_of(further_faults(reading.faults, found))
+    complain_of(further_faults(reading.faults, found))
     if options.json:
-        _say(as_json.text(as_json.standing_object(standing, reading.faults, book=book, second=second)))
+        say_result(as_json.text(as_json.standing_object(standing, reading.faults, book=book, second=second)))
     else:
-        _say(as_text.standing_text(standing, title=book.basis.title, book=book, second=second))
+        say_result(as_text.standing_text(standing, title=book.basis.title, book=book, second=second))
     return DONE
 
 
@@ -267,7 +156,7 @@ def _on_second_basis(book: Book) -> Standing | None:
     other = book.on_second_basis
     if other is None:
         return None
-    _insist_on(other, model=False, sheet="Second basis")
+    insist_on(other, model=False, sheet="Second basis")
     with ProgressLine("Valuing on the second basis") as progress:
         return tasks.value(other, progress=progress)
 
@@ -287,16 +176,16 @@ def _shock(options: argparse.Namespace) -> int:
             ]
         )
     reading, book = read_usable(options.book)
-    _insist_on(book, model=False)
+    insist_on(book, model=False)
     with ProgressLine("Shocking") as progress:
         table = tasks.shock(book, sets=tuple(options.set), folder=options.sets_from, progress=progress)
     reached = None if options.reach is None else _reach(book, options.reach)
     found = table.faults if reached is None else (*table.faults, *reached.faults)
-    _complain_of(further_faults(reading.faults, found))
+    complain_of(further_faults(reading.faults, found))
     if options.json:
-        _say(as_json.text(as_shocks.shocks_object(table, reading.faults, reached=reached)))
+        say_result(as_json.text(as_shocks.shocks_object(table, reading.faults, reached=reached)))
     else:
-        _say(as_shocks.shocks_text(table, title=book.basis.title, reached=reached))
+        say_result(as_shocks.shocks_text(table, title=book.basis.title, reached=reached))
     return DONE
 
 
@@ -334,7 +223,7 @@ def _simulate(options: argparse.Namespace) -> int:
     except BadRequest as bad:
         for fault in faults:
             complain(as_text.fault_line(fault))
-        raise _Reported((*bad.faults, *faults)) from None
+        raise Reported((*bad.faults, *faults)) from None
     asked = options.model or book.rates_model
     if asked is None:
         faults.append(
@@ -349,7 +238,7 @@ def _simulate(options: argparse.Namespace) -> int:
         raise BadRequest(faults)
     stated = book.rates_model
     book = _with_options(book, options)
-    _insist_on(book, model=True)
+    insist_on(book, model=True)
     saved: Path | None = options.paths_out
     if saved is not None:
         # Before the run: what stands in the way is told at once.
@@ -357,15 +246,15 @@ def _simulate(options: argparse.Namespace) -> int:
     with ProgressLine("Simulating") as progress:
         simulation = tasks.simulate(book, progress=progress)
     told = (*reading.faults, *_volatility_faults(stated, book.rates_model))
-    _complain_of((*told[len(reading.faults) :], *further_faults(reading.faults, simulation.faults)))
+    complain_of((*told[len(reading.faults) :], *further_faults(reading.faults, simulation.faults)))
     if options.json:
         plain = as_json.simulation_object(simulation, told)
-        _say(as_json.text(plain if saved is None else plain | {"paths_out": str(saved)}))
+        say_result(as_json.text(plain if saved is None else plain | {"paths_out": str(saved)}))
         return DONE
     title, currency = book.basis.title, book.basis.currency
-    _say(as_text.simulation_text(simulation, currency=currency, title=title))
+    say_result(as_text.simulation_text(simulation, currency=currency, title=title))
     if saved is not None:
-        _say(f"\nThe paths are in {as_text.printable(str(saved))}")
+        say_result(f"\nThe paths are in {as_text.printable(str(saved))}")
     return DONE
 
 
@@ -390,7 +279,7 @@ def _write_paths(book: Book, target: Path, *, every_step: bool) -> None:
             return tasks.export_scenarios(book, target, every_step=every_step, progress=progress)
 
     try:
-        _write_to(target, "--paths-out", "file of paths", write)
+        write_to(target, "--paths-out", "file of paths", write)
     except ValueError as error:
         raise BadRequest([Fault(f"{error}", "paths that the file can hold", "Ask for fewer.")]) from error
 
@@ -415,16 +304,16 @@ def _calibrate(options: argparse.Namespace) -> int:
             raise BadRequest([Fault(found.obstacle, "a model that can be used", "Leave --save out.")])
         with_model = replace(book, rates_model=found.model)
         try:
-            _write_to(saved, "--save", "book", lambda: tasks.save_copy(with_model, saved))
+            write_to(saved, "--save", "book", lambda: tasks.save_copy(with_model, saved))
         except ValueError as error:
             raise BadRequest([Fault(f"{error}", "a book that a workbook can hold", "Mend it.")]) from error
     if options.json:
         plain = as_calibration.calibration_object(found, reading.faults)
-        _say(as_json.text(plain | {"saved": None if saved is None else str(saved)}))
+        say_result(as_json.text(plain | {"saved": None if saved is None else str(saved)}))
         return DONE
-    _say(as_calibration.calibration_text(found, title=book.basis.title))
+    say_result(as_calibration.calibration_text(found, title=book.basis.title))
     if saved is not None:
-        _say(f"\nThe book with the fitted model is in {as_text.printable(str(saved))}")
+        say_result(f"\nThe book with the fitted model is in {as_text.printable(str(saved))}")
     return DONE
 
 
@@ -434,29 +323,17 @@ def _report(options: argparse.Namespace) -> int:
     if fault is not None:
         raise BadRequest([fault])
     reading, book = read_usable(options.book)
-    _insist_on(book, model=book.rates_model is not None)
+    insist_on(book, model=book.rates_model is not None)
     second = _on_second_basis(book)
     with ProgressLine("Reporting") as progress:
-        written = _write_to(
+        written = write_to(
             options.out,
             "--out",
             "report",
             lambda: tasks.report(reading, options.out, second=second, progress=progress),
         )
-    _say(f"The report is in {written}")
+    say_result(f"The report is in {written}")
     return DONE
-
-
-def _write_to(target: Path, option: str, what: str, write: Callable[[], Path]) -> Path:
-    """Where `write` has written; a place that it cannot write to is a fault of the option that names it."""
-    try:
-        return write()
-    except OSError as error:
-        reason = error.strerror or str(error)
-        if error.errno not in _NO_PLACE_TO_WRITE:
-            raise _NotWritten(f"{target}: the {what} cannot be written: {reason}.") from error
-        fault = Fault(f"{option} is {target}: {reason}", "a place that can be written to", "Name another.")
-        raise BadRequest([fault]) from error
 
 
 _ACTIONS: dict[str, Callable[[argparse.Namespace], int]] = {
@@ -503,45 +380,3 @@ def _volatility_faults(stated: RatesModel | None, drawn: RatesModel | None) -> t
             severity=Severity.MILD,
         ),
     )
-
-
-def _insist_on(book: Book, *, model: bool, sheet: str = "Basis") -> None:
-    """Raise BadRequest where the basis gives no curve, or the model, if it is needed, cannot be drawn."""
-    from desk.intake.checks import plain
-    from desk.intake.items import missing_items
-    from desk.scenarios.models import rate_model
-
-    if model and book.rates_model is not None and (missing := missing_items(book.rates_model)):
-        name = book.rates_model.name
-        raise BadRequest(
-            Fault(
-                f'the item "{item}" is missing, which the model {name} needs',
-                f'a row with the item "{item}" and its value',
-                "Add the row, or name another model.",
-                sheet="Rates model",
-            )
-            for item in missing
-        )
-    wanted = "a curve"
-    try:
-        _ = book.basis.curve, book.basis.liability_spread_at([1.0])
-        if book.basis.inflation is not None:
-            _ = book.basis.inflation.curve
-        if model:
-            sheet, wanted = "Rates model", "a model that can be drawn"
-            rate_model(book)
-    except ValueError as error:
-        raise BadRequest([Fault(plain(error), wanted, "Mend it in the book.", sheet=sheet)]) from error
-
-
-def _complain_of(faults: Iterable[Fault]) -> None:
-    """Say the mild faults of a result."""
-    for fault in faults:
-        complain(as_text.fault_line(replace(fault, severity=Severity.MILD)))
-
-
-def _complain_of_reading(reading: Reading) -> None:
-    """Say the faults of a reading; one that has no place in the book says which file it is of."""
-    for fault in reading.faults:
-        line = as_text.fault_line(fault)
-        complain(line if fault.place else f"{as_text.printable(str(reading.path))}: {line}")

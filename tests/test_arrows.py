@@ -28,7 +28,12 @@ MAY_IMPORT: dict[str, tuple[str, ...]] = {
     "store": (*NUMERIC, "intake", "places"),
     "tasks": (*NUMERIC, "intake", "report", "store", "places"),
     "arguments": ("rates", "book", "report", "terminal"),
-    "batch": (*NUMERIC, "intake", "report", "store", "tasks", "places", "terminal", "arguments"),
+    "guarded": ("terminal",),
+    "asked": (*NUMERIC, "intake", "report", "tasks", "terminal"),
+    "batch": (
+        *NUMERIC,
+        *("intake", "report", "store", "tasks", "places", "terminal", "arguments", "asked", "guarded"),
+    ),
     "window": (*NUMERIC, "intake", "report", "store", "tasks", "places"),
     "__main__": (*NUMERIC, "intake", "report", "store", "tasks", "places", "terminal", "batch", "window"),
 }
