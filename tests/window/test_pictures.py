@@ -53,7 +53,7 @@ def test_pictures_on_further_parts_of_a_station_are_drawn_too(tmp_path: Path) ->
         "shocks-change-in-surplus-by-shock",
         "shocks-surplus-against-a-parallel-move",
         "shocks-the-curve-before-and-after",
-        "shocks-funding-ratio-under-all-rates-and-inflation",
+        "shocks-funding-ratio-under-all-rates-and-credit-spreads",
     } <= names
     for path in written:
         if path.suffix == ".png":
