@@ -93,7 +93,7 @@ class ProfilePicture(Picture):
         estimate = found.figure("mean_reversion")
         self.add_vertical(estimate.value, "estimate")
         ends = f"{numbers.number(estimate.low, 3)} to {numbers.number(estimate.high, 3)}"
-        self.set_description(f"95 % interval {ends} a year: where the profile is above the cut.")
+        self.set_description(f"95 % interval: {ends} a year, above the cut.")
         self.reset_view()
 
 
