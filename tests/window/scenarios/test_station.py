@@ -2,7 +2,6 @@
 
 from __future__ import annotations
 
-from collections.abc import Iterator
 from dataclasses import replace
 
 import pytest
@@ -17,25 +16,6 @@ from desk.window.scenarios.models_part import ModelsPart
 from desk.window.scenarios.station import ScenariosStation
 from tests.window.benches import Bench, a_fund, dispose
 from tests.window.scenarios.running import paths_part, run, settle
-
-
-@pytest.fixture
-def bench() -> Iterator[Bench]:
-    made = Bench()
-    yield made
-    made.close()
-
-
-@pytest.fixture
-def station(bench: Bench, qtbot: QtBot, theme_switch: ThemeSwitch) -> Iterator[ScenariosStation]:
-    made = ScenariosStation(bench.document, bench.jobs, theme_switch)
-    made.resize(1130, 586)
-    made.show()
-    bench.open(a_fund())
-    made.refresh_now()
-    yield made
-    dispose(made)
-
 
 # Before the first run
 
