@@ -76,6 +76,8 @@ class CollaredFlows:
     indexation : Indexation
     inflation : Inflation
         What is known of the months just passed.
+    poll : callable
+        As in `desk.scenarios.linked.LinkedFlows`.
 
     Attributes
     ----------
@@ -83,7 +85,14 @@ class CollaredFlows:
         As in `desk.scenarios.linked.LinkedFlows`.
     """
 
-    def __init__(self, plan: Plan, rows: RealRows, indexation: Indexation, inflation: Inflation) -> None:
+    def __init__(
+        self,
+        plan: Plan,
+        rows: RealRows,
+        indexation: Indexation,
+        inflation: Inflation,
+        poll: Callable[[], None],
+    ) -> None:
         self._plan, self._lag = plan, rows.lag
         self._index = index_law(plan)
         self._recent = inflation.recent_rate
@@ -97,6 +106,7 @@ class CollaredFlows:
         self._buckets: dict[int, list[_Bucket]] = {}
         whole = np.floor(rows.time + _SLACK).astype(np.int64)
         for step in np.unique(steps[~early]).tolist():
+            poll()
             here = steps == step
             self._buckets[step] = [
                 self._bucket(step, year, rows, np.flatnonzero(here & (whole == year)))

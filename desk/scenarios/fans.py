@@ -11,6 +11,7 @@ import numpy as np
 from desk.book.arrays import FloatArray, owned_floats
 from desk.scenarios.drawn_model import DrawnModel
 from desk.scenarios.draws import Block, Crew, Plan, default_threads
+from desk.scenarios.given import GivenRates
 from desk.scenarios.summaries import sorted_quantile
 
 __all__ = ["Fan", "percentile_fan"]
@@ -61,7 +62,14 @@ def percentile_fan(
         Between 0 and 100.
     real_world : bool
     progress, threads : as in `desk.scenarios.simulation.simulate`
+
+    Raises
+    ------
+    ValueError
+        If `model` is a set of scenarios from outside.
     """
+    if isinstance(model, GivenRates):
+        raise ValueError("a set of scenarios has nodes of its own: a run reports on them")
     plan = Plan(model, paths, steps_per_year, steps, seed, real_world)
     shares = np.asarray(levels, dtype=np.float64) / 100.0
     account, short = np.empty((steps, shares.size)), np.empty((steps, shares.size))

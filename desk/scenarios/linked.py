@@ -12,6 +12,7 @@ the factor gives the index from the node on.
 
 from __future__ import annotations
 
+from collections.abc import Callable
 from dataclasses import dataclass
 
 import numpy as np
@@ -72,6 +73,8 @@ class LinkedFlows:
     plan : Plan
         With inflation.
     rows : RealRows
+    poll : callable
+        Called now and then; it may stop the work by raising.
 
     Attributes
     ----------
@@ -81,7 +84,7 @@ class LinkedFlows:
         Largest relative error of a fitted surface.
     """
 
-    def __init__(self, plan: Plan, rows: RealRows) -> None:
+    def __init__(self, plan: Plan, rows: RealRows, poll: Callable[[], None]) -> None:
         self._plan = plan
         self.error = 0.0
         self._visits: dict[int, Worth] = {}
@@ -94,6 +97,7 @@ class LinkedFlows:
         step, time = steps[~early][order], rows.time[~early][order]
         seen, amount = observed[~early][order], rows.expected[~early][order]
         for number in np.unique(step).tolist():
+            poll()
             part = slice(*np.searchsorted(step, [number, number + 1]).tolist())
             worth = self._worth(number, time[part], seen[part], amount[part])
             self.error = max(self.error, worth.error)
@@ -117,13 +121,17 @@ class LinkedFlows:
                 np.append(highest, high),
             )
         order = np.argsort(time, kind="stable")
+        # What all flows have in common need not be fitted: flows of one month differ little.
+        tilt = float(np.mean(own))
+        apart = own - tilt
         return joined_worth(
             lambda amounts: worth_of_rates(plan, step, time[order], amounts[order]),
-            lambda places: amount * np.exp(growth - np.multiply.outer(places, own)),
-            steepest=float(np.abs(own).max()) * 0.5 * (high - low),
+            lambda places: amount * np.exp(growth - np.multiply.outer(places, apart)),
+            steepest=float(np.abs(apart).max()) * 0.5 * (high - low),
             low=low,
             high=high,
             degree=series_degree,
+            tilt=tilt,
         )
 
     def add(self, step: int, paths: Paths, log_weight: FloatArray, value: FloatArray) -> None:
@@ -160,6 +168,8 @@ class FlooredFlows:
         The least growth from today to the payment.
     inflation : Inflation
         What is known of the months just passed.
+    poll : callable
+        As in `LinkedFlows`.
 
     Attributes
     ----------
@@ -167,7 +177,9 @@ class FlooredFlows:
         As in `LinkedFlows`.
     """
 
-    def __init__(self, plan: Plan, rows: RealRows, least: float, inflation: Inflation) -> None:
+    def __init__(
+        self, plan: Plan, rows: RealRows, least: float, inflation: Inflation, poll: Callable[[], None]
+    ) -> None:
         self._plan, self._least = plan, least
         self.error = 0.0
         self.certain = 0.0
@@ -181,6 +193,7 @@ class FlooredFlows:
             *(column.tolist() for column in (rows.time, observed, rows.real, rows.expected, growth)),
             strict=True,
         ):
+            poll()
             step = int(np.searchsorted(plan.time, seen, side="right")) - 1
             if step == 0:
                 self.certain += expected * float(plan.model.curve.discount(time))

@@ -8,6 +8,8 @@ Flows that follow the price index do so along the paths where inflation is drawn
 
 from __future__ import annotations
 
+from collections.abc import Callable
+
 import numpy as np
 from numpy.typing import NDArray
 
@@ -35,6 +37,8 @@ class PathValues:
     sides : sequence of PricedFlows, length s
     inflation : Inflation, optional
         Of the basis; needed where the plan has inflation.
+    poll : callable, optional
+        Called now and then while surfaces are fitted; it may stop the work by raising.
 
     Attributes
     ----------
@@ -47,9 +51,15 @@ class PathValues:
     """
 
     def __init__(
-        self, plan: Plan, sides: tuple[PricedFlows, ...], inflation: Inflation | None = None
+        self,
+        plan: Plan,
+        sides: tuple[PricedFlows, ...],
+        inflation: Inflation | None = None,
+        *,
+        poll: Callable[[], None] = lambda: None,
     ) -> None:
         self._plan = plan
+        self._poll = poll
         self._inflation = inflation
         self._following: list[tuple[int, LinkedFlows | FlooredFlows | CollaredFlows]] = []
         self._visits: dict[int, list[tuple[int, Worth]]] = {}
@@ -91,11 +101,11 @@ class PathValues:
             rows = RealRows.of(flows, np.flatnonzero(np.isin(classes, numbers)), each.lag)
             found: LinkedFlows | FlooredFlows | CollaredFlows
             if each.kind is IndexationKind.COLLARED:
-                found = CollaredFlows(self._plan, rows, each, self._inflation)
+                found = CollaredFlows(self._plan, rows, each, self._inflation, self._poll)
             elif each.least is not None:
-                found = FlooredFlows(self._plan, rows, each.least, self._inflation)
+                found = FlooredFlows(self._plan, rows, each.least, self._inflation, self._poll)
             else:
-                found = LinkedFlows(self._plan, rows)
+                found = LinkedFlows(self._plan, rows, self._poll)
             if isinstance(found, LinkedFlows):
                 self.linked_rows += rows.time.size
             else:
@@ -135,6 +145,7 @@ class PathValues:
             return
         found = worth_by_step(model, plan.time, steps, times, amounts, real_world=plan.real_world)
         for step, worth in found:
+            self._poll()
             self.surface_error = max(self.surface_error, worth.error)
             self._visits.setdefault(step, []).append((side, worth))
 

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import math
+import time
 from collections.abc import Callable, Sequence
 from dataclasses import dataclass
 from functools import partial
@@ -35,6 +36,8 @@ __all__ = ["simulate"]
 _SHOWN = 50
 # Part of the work that goes into summing up, for the progress only.
 _SUMMING = 0.1
+# Seconds between two looks at whether to go on while surfaces are fitted.
+_PAUSE = 0.1
 
 
 def simulate(
@@ -72,7 +75,7 @@ def simulate(
     plan = planned.plan
     # Values too large for a float are reported as a fault, not as a warning.
     with np.errstate(over="ignore", invalid="ignore", under="ignore", divide="ignore"):
-        values = PathValues(plan, (assets, liabilities), book.basis.inflation)
+        values = PathValues(plan, (assets, liabilities), book.basis.inflation, poll=_polled(progress))
         collected = _collect(
             plan, book.risky_assets, values, run.percentiles, progress, threads or default_threads()
         )
@@ -108,6 +111,19 @@ def simulate(
     if progress is not None:
         progress(1.0)
     return result
+
+
+def _polled(progress: Callable[[float], None] | None) -> Callable[[], None]:
+    """Lets `progress` stop the work before anything is drawn, without calling it all the time."""
+    last = time.monotonic()
+
+    def poll() -> None:
+        nonlocal last
+        if progress is not None and time.monotonic() - last >= _PAUSE:
+            last = time.monotonic()
+            progress(0.0)
+
+    return poll
 
 
 @dataclass(frozen=True)

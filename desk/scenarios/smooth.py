@@ -89,6 +89,8 @@ class JoinedWorth:
         From the values of `parts`, which hold at the Chebyshev points of the range, to the coefficients of a
         series in the last factor.
     error : float
+    tilt : float
+        ``exp(-tilt · factor)`` is left out of the parts.
     """
 
     parts: tuple[Worth, ...]
@@ -96,6 +98,7 @@ class JoinedWorth:
     high: float
     coefficient: FloatArray
     error: float
+    tilt: float
 
     def __call__(self, state: FloatArray, out: FloatArray | None = None) -> FloatArray:
         """Values at states, shape (n + 1, m), as an array of shape (m,)."""
@@ -110,6 +113,8 @@ class JoinedWorth:
             fill_series(self.coefficient[:, number], place, weight)
             weight *= part(rates)
             result += weight
+        if self.tilt != 0.0:
+            result *= np.exp(-self.tilt * state[-1])
         return result
 
 
@@ -121,6 +126,7 @@ def joined_worth(
     low: float,
     high: float,
     degree: Callable[[float, float], int],
+    tilt: float = 0.0,
 ) -> Worth:
     """A value that is a function of the rates at every value of one factor more.
 
@@ -135,6 +141,8 @@ def joined_worth(
     low, high : float
     degree : callable
         From a slope and a tolerance to the degree of the series of an exponential.
+    tilt : float
+        Of an exponential ``exp(-tilt · factor)`` that is common to all amounts and left out of them.
     """
     middle = 0.5 * (low + high)
     half = max(0.5 * (high - low), 1e-12 + 1e-9 * abs(middle))
@@ -142,4 +150,4 @@ def joined_worth(
     rows: Sequence[FloatArray] = list(amounts(middle + half * chebyshev_points(count)[:count]))
     parts = tuple(worth(row) for row in rows)
     error = max((part.error for part in parts), default=0.0)
-    return JoinedWorth(parts, middle - half, middle + half, to_coefficients(count), error)
+    return JoinedWorth(parts, middle - half, middle + half, to_coefficients(count), error, tilt)

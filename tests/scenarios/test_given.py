@@ -9,6 +9,7 @@ import pytest
 
 from desk.book import Book, ModelName, RatesModel, ScenarioSet, Side
 from desk.scenarios.draws import BLOCK_PATHS
+from desk.scenarios.fans import percentile_fan
 from desk.scenarios.given import GivenRates
 from desk.scenarios.models import rate_model
 from desk.scenarios.plans import planned_run
@@ -168,6 +169,8 @@ def test_a_time_between_nodes_is_refused() -> None:
     model = GivenRates(ScenarioSet(UNEVEN, rates(3, 5)), BASIS.curve)
     with pytest.raises(ValueError, match="no node of the set"):
         model.state_range(0.7)
+    with pytest.raises(ValueError, match="nodes of its own"):
+        percentile_fan(model, paths=3, steps_per_year=1, steps=4, seed=1, levels=(50.0,))
     walk = model.walk(1.0, 2, np.random.default_rng(1))
     assert walk.state.shape == (1, 2)
     with pytest.raises(ValueError, match="the set has 5 nodes, 6 are wanted"):

@@ -13,7 +13,8 @@ from scipy.stats import lognorm
 from desk.book import Indexation, IndexationKind, Measure, ModelName
 from desk.rates.inflation import log_growth
 from desk.scenarios.linked import held_growth
-from desk.scenarios.pathwise import curve_value
+from desk.scenarios.pathwise import PathValues, curve_value
+from desk.scenarios.plans import planned_run
 from desk.scenarios.simulation import simulate
 from desk.scenarios.smooth import fit_function
 from tests.scenarios.books import ALL_MODELS, NO_FLOWS, assets, book
@@ -214,3 +215,23 @@ def test_a_fitted_function() -> None:
     assert fit.error < 1e-10
     assert fit(np.array([-9.0]))[0] == pytest.approx(math.tanh(-6.0), abs=1e-10)
     assert fit_function(np.ones_like, 0.0, 0.0)(np.zeros(3)) == pytest.approx(np.ones(3))
+
+
+class _Stop(Exception):
+    pass
+
+
+@pytest.mark.parametrize(
+    "indexation",
+    [LINKED, replace(LINKED, least=1.1), Indexation(IndexationKind.COLLARED, cap=0.03), Indexation()],
+)
+def test_fitting_may_be_stopped(indexation: Indexation) -> None:
+    """A lognormal model takes seconds over many linked flows: a cancelled run does not."""
+
+    def poll() -> None:
+        raise _Stop
+
+    flows = following(np.arange(1, 61) / 12.0, np.ones(60), indexation)
+    plan = planned_run(inflating(ModelName.BLACK_KARASINSKI), flows).plan
+    with pytest.raises(_Stop):
+        PathValues(plan, (flows,), INFLATION, poll=poll)
