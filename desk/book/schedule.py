@@ -42,6 +42,8 @@ class RunningPeriods:
         The whole period in the day count of the leg [years].
     accrued_fraction : ndarray
         From its start to the valuation date, likewise [years].
+    length : ndarray
+        The whole period in the day count of the times [years].
     is_ex : ndarray of bool
         Whether a buyer no longer gets the coupon that ends it.
     is_received : ndarray of bool
@@ -55,6 +57,7 @@ class RunningPeriods:
     margin: FloatArray
     fraction: FloatArray
     accrued_fraction: FloatArray
+    length: FloatArray
     is_ex: NDArray[np.bool_]
     is_received: NDArray[np.bool_]
 
@@ -164,7 +167,7 @@ def holding_flows(
     interest, first_fraction = _interest(legs, leg, outstanding, from_day, when, head, own, begin == quasi)
 
     is_ahead = own.start > today  # where none is stated the comparison is False
-    running = _running(own, head, outstanding, begin, when[head], first_fraction, today, ~is_ahead)
+    running = _running(own, head, outstanding, begin, when[head], first_fraction, today, day_count, ~is_ahead)
     floats = legs.is_floating[leg]
     floats[running.row] = False
     now = own.is_floating[~is_ahead]
@@ -302,6 +305,7 @@ def _running(
     first: DateArray,
     fraction: FloatArray,
     today: np.datetime64,
+    day_count: DayCount,
     kept: NDArray[np.bool_],
 ) -> RunningPeriods:
     """The periods that have begun."""
@@ -318,6 +322,7 @@ def _running(
         margin=np.where(legs.is_floating, legs.rate, 0.0),
         fraction=fraction[kept],
         accrued_fraction=accrued,
+        length=year_fraction(begin[kept], first[kept], day_count),
         is_ex=is_ex,
         is_received=~(is_ex & legs.bought_ex),
     )

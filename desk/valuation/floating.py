@@ -102,8 +102,9 @@ def implied_current_rates(flows: HoldingFlows, curve: DiscountCurve) -> FloatArr
     -------
     ndarray, shape (p,)
         In the order of `flows.running` [1/year]. In place of a floating rate that is not stated stands the
-        simple rate of the curve from the valuation date to the end of the period, and the margin: an
-        estimate, since the rate was set on an earlier day.
+        simple rate of the curve from the valuation date to the end of the period, stated in the day count of
+        the leg, and the margin: an estimate, since the rate was set on an earlier day. For a period that
+        begins on the valuation date it is the rate that will be set.
     """
     running = flows.running
     missing = np.flatnonzero(np.isnan(running.rate))
@@ -112,5 +113,11 @@ def implied_current_rates(flows: HoldingFlows, curve: DiscountCurve) -> FloatArr
     rate = running.rate.copy()
     time = flows.time[running.row[missing]]
     # The difference of two zero-like quantities keeps its digits as an exponential less one.
-    rate[missing] = np.expm1(curve.zero(time) * time) / time + running.margin[missing]
+    simple = np.expm1(curve.zero(time) * time) / time
+    fraction = running.fraction[missing]
+    # From the 30th to the 31st some day counts see no time: there is nothing to state the rate in.
+    stated_in = np.where(
+        fraction > 0.0, running.length[missing] / np.where(fraction > 0.0, fraction, 1.0), 1.0
+    )
+    rate[missing] = simple * stated_in + running.margin[missing]
     return rate

@@ -132,8 +132,8 @@ def payments(holding: Holding, today: date, discount: Discount) -> list[Payment]
         if start <= today:
             if holding.current_rate is not None:
                 return holding.current_rate * years
-            ahead = (end - today).days / 365.0
-            return ((1.0 / factor(end) - 1.0) / ahead + holding.margin) * years
+            part_left = (end - today).days / (end - start).days
+            return (1.0 / factor(end) - 1.0) / part_left + holding.margin * years
         return factor(start) / factor(end) - 1.0 + holding.margin * years
 
     months = 12 // holding.frequency

@@ -168,6 +168,23 @@ def test_a_floater_is_worth_its_nominal_at_a_reset_and_moves_like_a_short_one() 
     assert line.spread_duration > 12.0
 
 
+@pytest.mark.parametrize("count", [None, DayCount.ACT_360, DayCount.THIRTY_E_360, DayCount.ACT_365F])
+def test_what_is_set_today_at_the_curve_needs_no_rate_stated(count: DayCount | None) -> None:
+    """A new note is worth its nominal and a new par swap nothing, whatever the day count of the rate."""
+    end = date(2036, TODAY.month, TODAY.day)
+    note = Holding("note", HoldingKind.FLOATER, 500.0, 0.0, 4, end, count, start_date=TODAY)
+    assert _line(note).measures.present_value == pytest.approx(500.0, rel=1e-13)
+    years = [(date(TODAY.year + k, TODAY.month, TODAY.day) - TODAY).days / 365.0 for k in range(1, 11)]
+    factors = [plain_discount(_book(), year) for year in years]
+    swap = Holding(
+        *("swap", HoldingKind.PAYER_SWAP, 500.0, (1.0 - factors[-1]) / sum(factors), 1, end),
+        start_date=TODAY,
+        floating_frequency=4,
+        floating_day_count=count,
+    )
+    assert _line(swap).measures.present_value == pytest.approx(0.0, abs=1e-11)
+
+
 def test_payer_and_receiver_swaps_cancel() -> None:
     payer = Holding(
         "payer", HoldingKind.PAYER_SWAP, 800.0, 0.03, 1, date(2041, 3, 31), start_date=date(2028, 3, 31)
