@@ -82,7 +82,7 @@ def insist_on(book: Book, *, model: bool, sheet: str = "Basis") -> None:
     """Raise BadRequest where the basis gives no curve, or the model, if it is needed, cannot be drawn."""
     from desk.intake.checks import plain
     from desk.intake.items import missing_items
-    from desk.scenarios.models import rate_model
+    from desk.scenarios.plans import planned_run
 
     if model and book.rates_model is not None and (missing := missing_items(book.rates_model)):
         name = book.rates_model.name
@@ -101,8 +101,8 @@ def insist_on(book: Book, *, model: bool, sheet: str = "Basis") -> None:
         if book.basis.inflation is not None:
             _ = book.basis.inflation.curve
         if model:
-            sheet, wanted = "Rates model", "a model that can be drawn"
-            rate_model(book)
+            sheet, wanted = "Rates model", "a run that can be drawn"
+            planned_run(book)
     except ValueError as error:
         raise BadRequest([Fault(plain(error), wanted, "Mend it in the book.", sheet=sheet)]) from error
 

@@ -364,17 +364,22 @@ def _with_options(book: Book, options: argparse.Namespace) -> Book:
 
 def _volatility_faults(stated: RatesModel | None, drawn: RatesModel | None) -> tuple[Fault, ...]:
     """Says so where a volatility is drawn as something else than it was stated as."""
-    from desk.scenarios.suggestions import MODEL_TRAITS
+    from desk.scenarios.suggestions import VolatilityKind, volatility_kind
 
     if stated is None or drawn is None or drawn.volatility is None:
         return ()
-    if MODEL_TRAITS[stated.name][1] == MODEL_TRAITS[drawn.name][1]:
+    kind = volatility_kind(drawn.name)
+    if kind in (volatility_kind(stated.name), VolatilityKind.NONE):
         return ()
-    kinds = ("a volatility a year of the rate itself", "a factor of the root of the rate")
+    kinds = {
+        VolatilityKind.ABSOLUTE: "a volatility a year of the rate itself",
+        VolatilityKind.ROOT: "a factor of the root of the rate",
+        VolatilityKind.RELATIVE: "a volatility of the logarithm of the rate",
+    }
     return (
         Fault(
             f"the volatility {drawn.volatility:g} was stated for {stated.name} and is used for {drawn.name}",
-            kinds[MODEL_TRAITS[drawn.name][1]],
+            kinds[kind],
             f"State one for {drawn.name} in the book.",
             sheet="Rates model",
             severity=Severity.MILD,
