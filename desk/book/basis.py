@@ -388,7 +388,7 @@ def _rows_of(subject: str, *, prefix: bool = False) -> Iterator[None]:
         yield
     except CurveError as error:
         found = f"{subject}: {error.found}" if prefix else error.found
-        raise CurveError(found, error.mend, rows=error.rows, subject=subject) from error
+        raise CurveError(found, error.mend, rows=error.rows, subject=error.subject or subject) from error
 
 
 def _periods(per_year: int) -> Compounding:

@@ -17,6 +17,7 @@ from desk.intake.faults import FaultList
 from desk.intake.layout import SHEETS, Table
 from desk.intake.quotes import read_bonds, read_by_term
 from desk.rates.curve_error import CurveError
+from desk.rates.smith_wilson import CONVERGENCE
 
 __all__ = ["FIRST", "SECOND", "BasisSheets", "read_basis", "report_missing", "unused_sheets"]
 
@@ -24,6 +25,9 @@ FloatArray = NDArray[np.float64]
 
 _TRIED = np.array([0.25, 1.0, 10.0, 50.0])
 """Times at which a curve must discount [years]."""
+
+_CONVERGENCE_ITEMS = ("Convergence point", "Convergence tolerance", "Ultimate forward rate")
+"""Where a curve that does not converge is told: the first of them that is stated."""
 
 
 @dataclass(frozen=True)
@@ -209,7 +213,12 @@ def _gives_curve(
     try:
         basis.curve.discount(basis.terms if basis.terms.size else _TRIED)
     except ValueError as error:
-        if kind in QUOTED_KINDS:
+        if isinstance(error, CurveError) and error.subject == CONVERGENCE:
+            stated = [item for item in _CONVERGENCE_ITEMS if items.sheet.states(item)]
+            items.sheet.fault(
+                stated[0], error.found, "a curve that comes to its ultimate forward rate", error.mend
+            )
+        elif kind in QUOTED_KINDS:
             _tell(error, faults, "quotes", tables[names.curve], ["Rate"])
         elif kind is CurveKind.BONDS:
             _tell(error, faults, "bonds", tables[names.bonds], ["Price", "Yield"])

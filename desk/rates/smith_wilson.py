@@ -21,7 +21,10 @@ from desk.rates.curve_error import CurveError
 from desk.rates.quoted_flows import QuotedFlows
 from desk.rates.wilson import WilsonProducts, WilsonSums
 
-__all__ = ["Extrapolation", "SmithWilsonCurve", "smith_wilson"]
+__all__ = ["CONVERGENCE", "Extrapolation", "SmithWilsonCurve", "smith_wilson"]
+
+CONVERGENCE = "convergence"
+"""Subject of the errors that convergence point and tolerance mend."""
 
 FloatArray = NDArray[np.float64]
 
@@ -192,6 +195,7 @@ def smith_wilson(
         f"the convergence point, {convergence_point:g} years, is not after the last liquid point, "
         f"{liquid:g} years",
         "Set it later.",
+        subject=CONVERGENCE,
     )
     if alpha is not None:
         _require(math.isfinite(alpha) and alpha > 0.0, "alpha is not above 0", "Give a higher one, or none.")
@@ -269,7 +273,8 @@ class _Fit:
                 raise CurveError(
                     f"no alpha brings the forward rate at {convergence_point:g} years within "
                     f"{1e4 * tolerance:g} basis points of the ultimate one",
-                    "Set a later convergence point or a wider tolerance, or give alpha.",
+                    "Set a later convergence point or a wider tolerance.",
+                    subject=CONVERGENCE,
                 )
         low = high - (_COARSE_STEP if high > _LOWEST_ALPHA else 1)
         # By the line between the two ends (regula falsi), a little past where it meets 0, so that both ends
@@ -310,9 +315,9 @@ def _require_positive(
     )
 
 
-def _require(right: bool | np.bool_, found: str, mend: str) -> None:
+def _require(right: bool | np.bool_, found: str, mend: str, *, subject: str = "") -> None:
     if not right:
-        raise CurveError(found, mend)
+        raise CurveError(found, mend, subject=subject)
 
 
 def _times(name: str, time: ArrayLike) -> FloatArray:

@@ -11,7 +11,7 @@ import pytest
 
 from desk.intake.records import Reading
 from desk.intake.workbook import read_workbook
-from tests.intake.books import Sheets, save
+from tests.intake.books import Sheets, save, sound_sheets
 from tests.intake.further_books import by_bonds, by_formula, wide_sheets
 from tests.intake.spoilt_books import MILD, Spoilt, add, check_spoilt, drop, read_spoilt
 from tests.intake.test_faults import both, drop_column, drop_item, item, put
@@ -74,6 +74,30 @@ CASES = [
         "is not used and was not read",
         MILD,
         lambda: flat() | {B: [["Maturity", "Coupon"], ["x", 0.02]]},
+    ),
+    # curves that come to an ultimate forward rate
+    Spoilt(
+        "alpha",
+        both(
+            item("Basis", "Beyond the last quote", "smith-wilson"),
+            item("Basis", "Ultimate forward rate", 0.042),
+            item("Basis", "Convergence point", 31),
+            item("Basis", "Convergence tolerance", 1e-12),
+        ),
+        "Basis!B13",
+        "no alpha brings the forward rate at 31 years",
+        start=sound_sheets,
+    ),
+    Spoilt(
+        "converged before",
+        both(
+            item("Basis", "Beyond the last quote", "smith-wilson"),
+            item("Basis", "Ultimate forward rate", 0.042),
+            item("Basis", "Convergence point", 20),
+        ),
+        "Basis!B13",
+        "is not after the last liquid point",
+        start=sound_sheets,
     ),
     # formulas and flat curves
     Spoilt(
