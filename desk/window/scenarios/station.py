@@ -269,9 +269,16 @@ class ScenariosStation(Station):
         document, form, outlook = self.document, self.run_form, self.outlook
         running = document.is_simulating
         obstacle = "" if outlook is None or not outlook.obstacle else f"{outlook.obstacle}."
+        had_focus = form.run_button.hasFocus() or form.cancel_button.hasFocus()
         form.run_button.setEnabled(not obstacle)
-        form.run_button.setVisible(not running)
-        form.cancel_button.setVisible(running)
+        shown, hidden = (
+            (form.cancel_button, form.run_button) if running else (form.run_button, form.cancel_button)
+        )
+        shown.show()
+        if had_focus:
+            # The other one goes: the keyboard would go with it.
+            shown.setFocus(Qt.FocusReason.OtherFocusReason)
+        hidden.hide()
         there = document.simulation
         about = obstacle or (run_sentence(there) if there is not None else "")
         form.state.setText("Running." if running else well_broken(about))
