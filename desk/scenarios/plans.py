@@ -15,9 +15,10 @@ from desk.scenarios.draws import BLOCK_PATHS, Plan
 from desk.scenarios.given import GivenRates
 from desk.scenarios.market import beside_rates
 from desk.scenarios.models import rate_model
+from desk.scenarios.records import Repricing
 from desk.scenarios.sampling import replicates_of, sampling_faults
 
-__all__ = ["MOST_BYTES", "PlannedRun", "check_fits", "planned_run", "run_bytes"]
+__all__ = ["MOST_BYTES", "PlannedRun", "check_fits", "planned_run", "run_bytes", "set_repricing_faults"]
 
 MOST_BYTES = 2_000_000_000
 """What a run may take of an office machine's memory."""
@@ -28,6 +29,8 @@ _SUMMED = 8
 # Bytes that a run takes whatever its paths: samples of a group of nodes, tables of surfaces.
 _FIXED = 40_000_000
 _SLACK = 1e-9
+# Standard errors by which the mean of 1/R may be off the curve before it is said.
+_MOST_OFF = 4.0
 
 
 @dataclass(frozen=True, eq=False)
@@ -135,6 +138,29 @@ def _set_faults(model: GivenRates, book: Book) -> list[Fault]:
             )
         )
     return faults
+
+
+def set_repricing_faults(plan: Plan, repricing: Repricing) -> tuple[Fault, ...]:
+    """Says so where a set from outside does not reprice today's curve, as a model would."""
+    if not isinstance(plan.model, GivenRates):
+        return ()
+    known = repricing.mean_discount_se > 0.0
+    off = np.abs(repricing.mean_discount - repricing.curve_discount)
+    score = np.where(known, off, 0.0) / np.where(known, repricing.mean_discount_se, 1.0)
+    row = int(np.argmax(score))
+    if not score[row] > _MOST_OFF:
+        return ()
+    return (
+        Fault(
+            found=f"the set does not reprice the curve: at {repricing.year[row]:g} years the mean of 1/R is "
+            f"{repricing.mean_discount[row]:.6f}, on the curve {repricing.curve_discount[row]:.6f}, "
+            f"{score[row]:.1f} standard errors apart",
+            expected="a mean of 1/R on the curve, where the set is to give values",
+            mend="Take a set made for this curve, or read its present values as forecasts, not as values.",
+            sheet="Scenario set",
+            severity=Severity.MILD,
+        ),
+    )
 
 
 def _collars(plan: Plan, sides: Sequence[PricedFlows]) -> int:

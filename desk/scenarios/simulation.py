@@ -19,7 +19,7 @@ from desk.scenarios.draws import BLOCK_PATHS, GENERATOR, Block, Crew, Paths, Pla
 from desk.scenarios.market_samples import MarketSamples
 from desk.scenarios.node_summaries import lognormal_form, node_summary
 from desk.scenarios.pathwise import PathValues, curve_value
-from desk.scenarios.plans import planned_run
+from desk.scenarios.plans import planned_run, set_repricing_faults
 from desk.scenarios.records import (
     ClosedForm,
     Distribution,
@@ -81,6 +81,7 @@ def simulate(
         )
         year = plan.time[[0, *plan.reported_steps]]
         present_value = _present_values(plan, (assets, liabilities), collected.sides, run.percentiles)
+        repricing = _repricing(plan, year, collected.discounts)
         result = Simulation(
             model=str(book.rates_model.name) if book.rates_model is not None else "",
             measure=run.measure,
@@ -91,10 +92,14 @@ def simulate(
             savings_account=node_summary(year, collected.accounts, run.percentiles),
             short_rate=node_summary(year, collected.rates, run.percentiles),
             closed_form=_closed_form(plan, year, run.percentiles),
-            repricing=_repricing(plan, year, collected.discounts),
+            repricing=repricing,
             present_value=present_value,
             sample_paths=owned_floats(np.exp(collected.shown)),
-            faults=(*planned.faults, *_faults(run.horizon_years, (assets, liabilities), collected)),
+            faults=(
+                *planned.faults,
+                *set_repricing_faults(plan, repricing),
+                *_faults(run.horizon_years, (assets, liabilities), collected),
+            ),
             provenance=Provenance(
                 book_digest=book.digest,
                 program_version=__version__,

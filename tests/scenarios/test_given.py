@@ -138,6 +138,20 @@ def test_what_a_set_does_not_reach_is_said() -> None:
     assert planned_run(given(np.array([10.0]), rates(11, 1), paths=11), NO_FLOWS).faults == ()
 
 
+def test_a_set_that_does_not_reprice_the_curve_is_said() -> None:
+    node = np.arange(1.0, 11.0)
+    forward = BASIS.curve.forward(node - 1.0, node) + 0.002 * rates(500, 10)
+    fair = forward - forward.mean(axis=0) + BASIS.curve.forward(node - 1.0, node)
+
+    def said(rate: np.ndarray) -> list[str]:
+        result = simulate(given(node, rate, paths=500), NO_FLOWS, liabilities())
+        return [fault.found for fault in result.faults if "reprice" in fault.found]
+
+    assert said(fair) == []
+    (found,) = said(fair + 0.01)
+    assert "standard errors apart" in found
+
+
 def test_one_path_and_one_node() -> None:
     result = simulate(given(np.array([2.0]), np.array([[0.05]]), paths=5), assets(), liabilities())
     assert result.savings_account.year.tolist() == [0.0, 2.0]
