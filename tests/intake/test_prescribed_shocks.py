@@ -61,7 +61,7 @@ def test_a_currency_without_sizes_has_no_shocks(tmp_path: Path) -> None:
     assert not found.sets[0].is_usual
     shocks, faults = chosen_shocks(found, asked=("house RULES",), currency="NOK", with_inflation=False)
     assert shocks == ()
-    assert "no sizes for NOK" in str(faults[0])
+    assert "no shocks that can be used for NOK" in str(faults[0])
     assert "\n" not in str(faults[0])
 
 
@@ -149,3 +149,48 @@ def test_inflation_is_left_out_where_the_basis_has_none(tmp_path: Path) -> None:
     assert names == {True: ["up", "both"], False: ["both"]}
     asked, _ = chosen_shocks(found, asked=("i",), currency="EUR", with_inflation=False)
     assert [shock.name for shock in asked] == ["up", "both"]
+
+
+def test_a_file_that_a_spreadsheet_wrote_back_is_the_same(tmp_path: Path) -> None:
+    """Lines filled up with separators; semicolons and decimal commas in much of the world."""
+    (before,) = read(tmp_path, OWN).sets
+    filled = "\n".join(f"{line},,,,,," for line in OWN.splitlines())
+    assert read(tmp_path, filled) == ShockSets((before,), ())
+    # Here as written where the comma is the decimal mark: what holds commas is no longer quoted.
+    text = OWN.replace(",", ";").replace('"Thin; autumn"', "Thin, autumn")
+    text = text.replace("Usual for: EUR; USD", "Usual for: EUR, USD").replace(
+        "committee; 2026", "committee, 2026"
+    )
+    with_commas = "\n".join(f"{line.replace(';20;', ';20,0;')};;;" for line in text.splitlines())
+    assert "20,0" in with_commas
+    assert read(tmp_path, with_commas) == ShockSets((before,), ())
+
+
+def test_headings_of_moves_stand_in_any_order(tmp_path: Path) -> None:
+    found = read(tmp_path, "# Set: A\nTerm,Move,Size,Shock\n5,rate,20,Up\n")
+    assert found.faults == ()
+    (move,) = found.sets[0].shocks[0].moves
+    assert (move.kind, move.size, move.term) == (MoveKind.RATE, 20.0, 5.0)
+
+
+@pytest.mark.parametrize(
+    ("text", "line", "said"),
+    [
+        ("Shock,Move\nUp,parallel\n", 2, "no column Size"),
+        ("Shock,Size\nUp,3\n", 2, "no column Move"),
+        ("Move,Size,Shock\nparallel,3\n", 3, "a move of no shock"),
+        ("Shock,Move,Size\nUp,parallel\n", 3, "''"),
+        ("Shock,Move,Size,Of\nUp,parallel,1,p\nCurrency,p\nEUR,5\neur,6\n", 6, "'EUR' once more"),
+        ("Shock,Move,Size,Of\nUp,value,-1,a\nFigure,Value\na,0.1\na,0.2\n", 6, "'a' once more"),
+    ],
+)
+def test_what_is_missing_or_stands_twice_is_told_in_its_line(
+    tmp_path: Path, text: str, line: int, said: str
+) -> None:
+    """The first of two holds; nothing is taken silently."""
+    found = read(tmp_path, f"# Set: A\n{text}")
+    (fault,) = found.faults
+    assert fault.cell == f"line {line}"
+    assert said in fault.found
+    sizes = [move.size for shock in found.sets[0].shocks for move in shock.moves]
+    assert sizes in ([], [5.0], [-1.1])
