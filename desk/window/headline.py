@@ -252,7 +252,7 @@ class Headline(QWidget):
         what_if = document.what_if
         if what_if.is_on:
             if what_if.frame is not None:
-                return "With the what-if"
+                return "With the what-if before its last move" if what_if.failure else "With the what-if"
             return "The what-if cannot be shown" if what_if.failure else "The what-if is being made ready…"
         if not document.is_comparing:
             return "Figures are up to date"

@@ -11,7 +11,10 @@ from desk.book import Book, Fault
 from desk.report.said_once import further_faults
 from desk.window.jobs import Job, Jobs
 
-__all__ = ["Valued", "changed_fields", "is_outdated", "reason", "with_faults"]
+__all__ = ["CANCELLED", "Valued", "changed_fields", "is_outdated", "reason", "with_faults"]
+
+CANCELLED = "It was cancelled."
+"""Why there is no result, where the reader stopped the job."""
 
 
 def changed_fields(old: Book, new: Book) -> frozenset[str]:
@@ -152,13 +155,15 @@ class Valued(Generic[Result]):
         self.failure = ""
         self._job_book = book
         # The former job, if one runs, is cancelled by the key; its callbacks no longer know this book.
-        self._job = self._jobs.start(
+        job = self._jobs.start(
             self._title,
             partial(with_faults, self._value(), book, self._told),
             on_done=partial(self._done, book),
             on_failed=partial(self._failed, book),
+            on_cancelled=lambda: self._cancelled(job),
             exclusive_key=f"{self._title} of {id(self)}",
         )
+        self._job = job
 
     def _done(self, book: Book, result: tuple[Result, tuple[Fault, ...]]) -> None:
         if book is not self._job_book or self._book is None:
@@ -175,3 +180,11 @@ class Valued(Generic[Result]):
         self.failure = reason(error)
         self._on_changed()
         self._on_failed(self.failure)
+
+    def _cancelled(self, job: Job) -> None:
+        """The reader stopped it; one that was replaced or is no longer wanted is not the running one."""
+        if job is not self._job:
+            return
+        self._job = self._job_book = None
+        self.failure = CANCELLED
+        self._on_changed()

@@ -15,7 +15,7 @@ from desk.valuation.shock_base import shock_base
 from desk.valuation.shock_effects import CannotShock
 from desk.valuation.what_if import Frame, WhatIf
 from desk.window.jobs import Job, Jobs
-from desk.window.valued import is_outdated, reason
+from desk.window.valued import CANCELLED, is_outdated, reason
 
 __all__ = ["MOST_MS", "WHAT_IF", "LiveWhatIf"]
 
@@ -122,8 +122,9 @@ class LiveWhatIf(QObject):
         self.changed.emit()
 
     def stop(self) -> None:
-        """Cancel what runs."""
+        """Cancel what runs, and begin nothing more."""
         self._soon.stop()
+        self._is_due = False
         for job in (self._preparing, self._framing):
             if job is not None:
                 self._jobs.cancel(job)
@@ -136,6 +137,9 @@ class LiveWhatIf(QObject):
         if self._engine is not None and is_outdated(self._engine.book, book, self._names):
             self._engine = None
             self.frame = None
+        if self._engine is None:
+            # What stood in the way of the former book need not stand in the way of this one.
+            self.failure = ""
         if self._engine is None and (self.is_on or (of is not None and is_outdated(of, book, self._names))):
             self._prepare(book)
         self.changed.emit()
@@ -182,13 +186,15 @@ class LiveWhatIf(QObject):
     def _prepare(self, book: Book) -> None:
         self.failure = ""
         self._preparing_book = book
-        self._preparing = self._jobs.start(
+        job = self._jobs.start(
             "Making the what-if ready",
             partial(_made_ready, book),
             on_done=partial(self._ready, book),
             on_failed=partial(self._not_ready, book),
+            on_cancelled=lambda: self._preparing_stopped(job),
             exclusive_key=f"what-if of {id(self)}",
         )
+        self._preparing = job
 
     def _ready(self, book: Book, engine: _Engine) -> None:
         if book is not self._preparing_book:
@@ -209,6 +215,14 @@ class LiveWhatIf(QObject):
             return
         self._preparing = self._preparing_book = None
         self.failure = reason(error)
+        self.changed.emit()
+
+    def _preparing_stopped(self, job: Job) -> None:
+        """The reader cancelled it; the next move of the hand makes it ready."""
+        if job is not self._preparing:
+            return
+        self._preparing = self._preparing_book = None
+        self.failure = CANCELLED
         self.changed.emit()
 
     # Frames
@@ -241,26 +255,31 @@ class LiveWhatIf(QObject):
             self._is_due = True
             return
         self._is_due = False
-        self._framing = self._jobs.start(
+        job = self._jobs.start(
             "Following the what-if",
             partial(_framed, engine.what_if, shock),
-            on_done=self._framed,
-            on_failed=self._not_framed,
-            on_cancelled=partial(self._framed, None),
+            on_done=lambda frame: self._framed(job, engine, frame),
+            on_failed=lambda error: self._not_framed(job, reason(error)),
+            on_cancelled=lambda: self._not_framed(job, CANCELLED),
         )
+        self._framing = job
 
-    def _framed(self, frame: Frame | None) -> None:
+    def _framed(self, job: Job, engine: _Engine, frame: Frame) -> None:
+        if job is not self._framing:
+            return
         self._framing = None
-        if frame is not None and self.is_on and self._engine is not None:
+        if self.is_on and engine is self._engine:
             self.frame, self.failure = frame, ""
             self.changed.emit()
         if self._is_due and self.is_on:
             self._draw()
 
-    def _not_framed(self, error: BaseException) -> None:
+    def _not_framed(self, job: Job, why: str) -> None:
+        if job is not self._framing:
+            return
         self._framing = None
-        if self.is_on:
-            self.failure = reason(error)
+        if self.is_on and not self._is_due:
+            self.failure = why
             self.changed.emit()
         if self._is_due and self.is_on:
             self._draw()

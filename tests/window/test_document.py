@@ -257,6 +257,26 @@ def test_a_failed_valuation_keeps_the_former_standing(opened: Bench, qtbot: QtBo
     assert opened.document.standing_failure == ""
 
 
+def test_a_valuation_the_reader_cancels_is_over_and_says_so(opened: Bench, qtbot: QtBot) -> None:
+    former = opened.document.standing
+    opened.value.let_go.clear()
+    opened.document.edit("Change of the spread", a_book(0.02))
+    job = next(job for job in opened.jobs.running if job.title == "Valuing the book")
+    opened.jobs.cancel(job)
+    settled(opened, qtbot)
+    document = opened.document
+    assert document.standing is former
+    assert document.standing_is_stale
+    assert not document.is_valuing
+    assert "cancelled" in document.standing_failure
+    opened.value.let_go.set()
+    document.revalue()
+    settled(opened, qtbot)
+    assert opened.standing == ("of", 0.02)
+    assert not document.standing_is_stale
+    assert document.standing_failure == ""
+
+
 def test_what_an_edit_makes_stale(opened: Bench, qtbot: QtBot) -> None:
     document = opened.document
     document.run_simulation()

@@ -242,6 +242,8 @@ class WhatIfMode(Mode):
         if not change:
             return f"The surplus stays at {amount(frame.position.surplus, currency)}{tail}."
         verb = "rises" if change > 0.0 else "falls"
+        if what_if.failure:
+            verb = f"before the last move {verb}"
         return f"The surplus {verb} by {size} to {amount(frame.position.surplus, currency)}{tail}."
 
     def home(self) -> QWidget:

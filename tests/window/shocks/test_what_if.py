@@ -263,3 +263,50 @@ def test_the_figures_of_a_what_if_are_told_to_a_reader_who_listens(bench: Bench,
     same = {figure.key: figure for figure in figures_of(standing, moved=shock_base(bench.book).position)}
     assert same["assets"].change == "as before"
     assert same["assets"].change_in_words == "unchanged by the what-if"
+
+
+def test_making_ready_can_be_cancelled_and_begun_again(
+    bench: Bench, station: ShocksStation, qtbot: QtBot
+) -> None:
+    what_if = bench.document.what_if
+    station.show_mode("what_if")
+    mode = station.mode
+    assert isinstance(mode, WhatIfMode)
+    assert what_if.is_preparing
+    for job in bench.jobs.running:
+        bench.jobs.cancel(job)
+    qtbot.waitUntil(lambda: not bench.jobs.running, timeout=10_000)
+    assert not what_if.is_preparing
+    assert not what_if.is_ready
+    assert "cancelled" in mode.state.text()
+    mode.rows["level"].box.setValue(-40.0)
+    qtbot.waitUntil(lambda: what_if.frame is not None, timeout=10_000)
+    assert what_if.failure == ""
+
+
+def test_figures_of_a_former_move_say_so(bench: Bench, mode: WhatIfMode, theme_switch: ThemeSwitch) -> None:
+    headline = Headline(bench.document, theme_switch)
+    _pull(mode, "level", -40.0)
+    assert headline._state.text() == "With the what-if"
+    mode.document.what_if.move(Shock("beyond sense", (Move(MoveKind.PARALLEL, -2e6),)))
+    mode.document.what_if.show_now()
+    assert "zero rate" in bench.document.what_if.failure
+    assert "before the last move" in mode.words()
+    assert headline._state.text() == "With the what-if before its last move"
+    mode.put_back()
+    assert headline._state.text() == "Figures are up to date"
+    dispose(headline)
+
+
+def test_a_document_that_stops_while_frames_wait_begins_no_more(
+    bench: Bench, mode: WhatIfMode, qtbot: QtBot, monkeypatch: pytest.MonkeyPatch
+) -> None:
+    what_if = bench.document.what_if
+    assert what_if._engine is not None
+    what_if._engine = replace(what_if._engine, frame_ms=2 * MOST_MS)
+    for size in (-10.0, -20.0, -30.0):
+        _pull(mode, "level", size)
+    assert what_if._is_due
+    bench.document.stop()
+    bench.jobs.shutdown()
+    assert not bench.jobs.running
