@@ -7,6 +7,7 @@ from numpy.typing import NDArray
 
 from desk.rates.curve import Curve, Interpolation
 from desk.rates.curve_error import CurveError
+from desk.rates.one_by_one import in_turn
 from desk.rates.quoted_flows import QuotedFlows, flow_yields
 from desk.rates.sensitivity import exponents
 from desk.rates.small_products import small_product
@@ -20,6 +21,10 @@ _MOST_HALVINGS = 25
 _REACHED = 1e-15  # of what an instrument is worth
 _ALLOWED = 1e-13  # likewise, where rounding bars the way to less
 _LONGEST_STEP = 3.0  # in the exponent zero rate · time
+_LOCAL = (Interpolation.LOG_LINEAR, Interpolation.LINEAR_ZERO)
+_MOST_TOGETHER = 1000  # quotes whose zero rates are found together
+_MOST_WORK, _MOST_TRIALS = 4e7, 200  # of one search among many: derivatives of values by rates, trials
+_MOST_TRIED = 100  # quotes among which the first that does not fit is looked for
 
 
 def bootstrap(flows: QuotedFlows, *, interpolation: Interpolation = Interpolation.LOG_LINEAR) -> Curve:
@@ -41,22 +46,36 @@ def bootstrap(flows: QuotedFlows, *, interpolation: Interpolation = Interpolatio
     ------
     CurveError
         If the instruments are out of order or two end together, or no curve gives back their values; `rows`
-        names the instruments.
+        names the instruments. If there are more than 1,000 of them, with a `cubic-zero` or `monotone-convex`
+        interpolation.
 
     Notes
     -----
-    All zero rates are found together by Newton's method, because with most interpolations a later rate moves
-    the curve before it. Each begins at the yield of its own instrument; a step that leads away from the
-    values is halved.
+    With `log-linear` and `linear-zero` interpolation each instrument tells the one zero rate at its end,
+    given those before it, so they are found one after the other; the time taken grows with the number of
+    payments. With the others a later rate moves the curve before it, and all zero rates are found together by
+    Newton's method. Each begins at the yield of its own instrument; a step that leads away from the values is
+    halved.
     """
     flows.require_rising_terms()
     interpolation = Interpolation(interpolation)
     start = flow_yields(flows)
     start = np.where(np.isfinite(start), start, 0.0)
-    rates = _solved(flows, interpolation, start)
-    if rates is None:
+    if interpolation in _LOCAL and flows.amount.min() > 0.0:
+        rates, row = in_turn(flows, interpolation, start)
+        if row is not None:
+            raise _misfit(flows, row, _known_worth(flows, interpolation, row, rates))
+        return Curve(flows.term, rates, interpolation)
+    if len(flows) > _MOST_TOGETHER:
+        raise CurveError(
+            f"there are {len(flows):,} quotes, and a curve that gives all of them back can be found for at "
+            f"most {_MOST_TOGETHER:,} with the interpolation {interpolation.value}",
+            "Take the interpolation log-linear or linear-zero, or fit a smooth curve through all.",
+        )
+    together = _solved(flows, interpolation, start)
+    if together is None:
         raise _diagnosis(flows, interpolation, start)
-    return Curve(flows.term, rates, interpolation)
+    return Curve(flows.term, together, interpolation)
 
 
 class _Equations:
@@ -90,6 +109,9 @@ def _solved(flows: QuotedFlows, interpolation: Interpolation, start: FloatArray)
         equations = _Equations(flows, interpolation)
         rates = start
         miss, slope = equations.at(rates)
+        left = _MOST_STEPS * _MOST_HALVINGS
+        if len(flows) > _MOST_TRIED:
+            left = min(_MOST_TRIALS, int(_MOST_WORK / len(flows) ** 2))
         for _ in range(_MOST_STEPS):
             largest = float(np.abs(miss).max())
             if largest <= _REACHED:
@@ -104,6 +126,9 @@ def _solved(flows: QuotedFlows, interpolation: Interpolation, start: FloatArray)
             step *= min(1.0, _LONGEST_STEP / longest) if longest > 0.0 else 1.0
             size = float(np.linalg.norm(miss))
             for _ in range(_MOST_HALVINGS):
+                left -= 1
+                if left < 0:
+                    return None
                 ahead, ahead_slope = equations.at(rates + step)
                 if np.linalg.norm(ahead) < size:
                     break
@@ -119,6 +144,16 @@ def _solved(flows: QuotedFlows, interpolation: Interpolation, start: FloatArray)
 def _diagnosis(flows: QuotedFlows, interpolation: Interpolation, start: FloatArray) -> CurveError:
     """The first instrument with which the ones before it give no curve."""
     works, fails = 0, len(flows)
+    if fails > _MOST_TRIED:
+        if flows.amount.min() > 0.0:
+            rates, first = in_turn(flows, Interpolation.LOG_LINEAR, start)
+            if first is not None:
+                return _misfit(flows, first, _known_worth(flows, Interpolation.LOG_LINEAR, first, rates))
+        return CurveError(
+            f"no curve with the interpolation {interpolation.value} was found that gives all {fails:,} "
+            "quotes what they are quoted at",
+            "Take the interpolation log-linear or linear-zero, or fit a smooth curve through all.",
+        )
     while fails - works > 1:
         middle = (works + fails) // 2
         if _solved(flows.leading(middle), interpolation, start[:middle]) is None:
@@ -126,28 +161,33 @@ def _diagnosis(flows: QuotedFlows, interpolation: Interpolation, start: FloatArr
         else:
             works = middle
     row = fails - 1
-    term = float(flows.term[row])
+    known = 0.0
+    if works:
+        earlier = _solved(flows.leading(works), interpolation, start[:works])
+        if earlier is not None:
+            known = _known_worth(flows, interpolation, row, earlier)
+    return _misfit(flows, row, known)
+
+
+def _misfit(flows: QuotedFlows, row: int, known: float) -> CurveError:
+    """That a quote does not fit those before it, on which a part of its payments is worth `known`."""
+    why = ""
+    if row and known >= flows.target[row]:
+        why = ", because what it pays up to the quote before it is already worth as much"
     return CurveError(
-        f"no curve gives the quote at {term:g} years what it is quoted at"
-        + _why(flows, interpolation, row, works, start),
+        f"no curve gives the quote at {float(flows.term[row]):g} years what it is quoted at{why}",
         "Check this quote and those beside it, or fit a smooth curve through all.",
         rows=(row,),
     )
 
 
-def _why(flows: QuotedFlows, interpolation: Interpolation, row: int, works: int, start: FloatArray) -> str:
-    """What keeps a quote from fitting those before it."""
-    if not works:
-        return ""
-    rates = _solved(flows.leading(works), interpolation, start[:works])
-    if rates is None:
-        return ""
-    earlier = Curve(flows.term[:works], rates, interpolation)
+def _known_worth(flows: QuotedFlows, interpolation: Interpolation, row: int, rates: FloatArray) -> float:
+    """What a quote pays up to the one before it, valued on the curve through those before it."""
+    if not row:
+        return 0.0
+    earlier = Curve(flows.term[:row], rates[:row], interpolation)
     own = flows.instrument == row
     time, amount = flows.time[own], flows.amount[own]
     known = time <= earlier.last_term
-    with np.errstate(over="ignore", invalid="ignore"):
-        already = float(amount[known] @ earlier.discount(time[known]))
-    if already >= flows.target[row]:
-        return ", because what it pays up to the quote before it is already worth as much"
-    return ""
+    with np.errstate(over="ignore", under="ignore", invalid="ignore"):
+        return float(amount[known] @ earlier.discount(time[known]))

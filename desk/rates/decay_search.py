@@ -1,7 +1,7 @@
 """The search for the parameters of a Nelson-Siegel or Svensson curve nearest to bonds.
 
-Parameters are the rates β and then the logarithms of the decays τ, one row a start: all starts of a search
-move at the same time.
+Parameters are the level β₀, the short rate β₀ + β₁, the curvatures β₂ (and β₃) and then the logarithms of
+the decays τ, one row a start: all starts of a search move at the same time.
 """
 
 from __future__ import annotations
@@ -11,6 +11,8 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import NDArray
 
+from desk.rates.decay_bounds import SearchBounds
+from desk.rates.decay_grid import least_squares, lowest_of_three
 from desk.rates.quoted_flows import QuotedFlows
 from desk.rates.small_products import small_product
 
@@ -18,10 +20,7 @@ __all__ = ["Found", "nearest"]
 
 FloatArray = NDArray[np.float64]
 
-_SHORTEST_DECAY, _LONGEST_DECAY = 0.05, 50.0  # years
-_DECAYS = np.geomspace(0.06, 50.0, 96)
-_LARGEST_RATE = 10.0  # 1000 % a year: no path of the search goes past it
-_LEVEL_BEYOND = 0.1  # how far the forward rate at the far end may be from all the yields [1/year]
+_LEAST_NOISE = 1e-4  # of a yield, where there is no bond more than parameters [1/year]
 _LARGEST_EXPONENT = 50.0
 _NODES = 64
 _LANDSCAPES = 2
@@ -32,8 +31,7 @@ _BETTER = 0.999  # of the sum of squares: with less gained, another round is not
 _HEATS = ((8, 6), (25, 3), (80, 3))
 _FINALISTS, _FINE_STEPS, _MORE_STEPS = 2, 15, 200
 _MORE_WORK = 2_000_000  # payments valued
-_RIDGE = 1e-11
-_AT_REST = 1e-9  # of the sum of squares: less than that is not to be gained
+_AT_REST = 1e-6  # of the sum of squares: less than that is not to be gained
 _NOTHING = 1e-26  # a sum of squares of rates that is rounding
 _LEAST_DAMPING, _MOST_DAMPING = 1e-11, 1e6
 
@@ -47,7 +45,7 @@ class Found:
     numbers : ndarray, shape (2 + 2 · humps,)
         The rates [1/year] and then the decays themselves [years].
     cost : float
-        The sum of squares [1/year²].
+        The sum of squares, those of the bounds' rows with it [1/year²].
     converged : bool
         Whether it came to rest.
     evaluations : int
@@ -61,7 +59,7 @@ class Found:
 
 
 def nearest(flows: QuotedFlows, yields: FloatArray, humps: int) -> Found:
-    """The parameters at which the sum of squares of price errors over price times duration is least.
+    """The parameters at which the sum of squares is least, see `desk.rates.fitting.fit_svensson`.
 
     Parameters
     ----------
@@ -79,21 +77,25 @@ def nearest(flows: QuotedFlows, yields: FloatArray, humps: int) -> Found:
 def _searched(flows: QuotedFlows, yields: FloatArray, humps: int) -> Found:
     worth = flows.amount * np.exp(-yields[flows.instrument] * flows.time)
     scale = flows.sums(worth * flows.time)  # price times duration
-    levels = float(yields.min()) - _LEVEL_BEYOND, float(yields.max()) + _LEVEL_BEYOND
-    rough, fine = _Thinned(flows, scale, humps, levels), _Whole(flows, scale, humps, levels)
+    bounds = SearchBounds.of(flows, yields, humps)
+    rough, fine = _Thinned(flows, scale, bounds), _Whole(flows, scale, bounds)
     starts = rough.landscape(yields[:, None])
     for _ in range(_LANDSCAPES - 1):
+        rough.note_noise(starts)
         starts = _joined(rough.landscape(rough.zero(starts[:1])), starts, humps)
     begun = starts
-    tried, costs = np.empty((0, starts.shape[1])), np.empty(0)
+    tried = np.empty((0, starts.shape[1]))
     best_cost = np.inf
     for _ in range(_ROUNDS):
         for steps, kept in _HEATS:
             moved = _descended(rough, starts, steps)
             starts = _distinct(moved.numbers, moved.cost)[:kept]
-        tried, costs = np.concatenate((tried, moved.numbers)), np.concatenate((costs, moved.cost))
+        tried = np.concatenate((tried, moved.numbers))
+        costs = rough.costs(tried)
         lowest = int(costs.argmin())
         gained = costs[lowest] < _BETTER * best_cost
+        rough.note_noise(tried[lowest : lowest + 1])
+        costs = rough.costs(tried)
         best_cost = float(costs[lowest])
         if not gained or best_cost <= _NOTHING:
             break
@@ -101,13 +103,22 @@ def _searched(flows: QuotedFlows, yields: FloatArray, humps: int) -> Found:
         starts, begun = further[len(begun) :], further
         if not len(starts):
             break
+    fine.note_noise(tried[lowest : lowest + 1])
     moved = _descended(fine, _distinct(tried, costs)[:_FINALISTS], _FINE_STEPS)
     lowest = int(moved.cost.argmin())
+    for _ in range(_ROUNDS):
+        former = fine.weight
+        fine.note_noise(moved.numbers[lowest : lowest + 1])
+        if fine.weight > 0.5 * former:
+            break
+        # Bonds on a curve of the family: what held their ends gives way, step by step.
+        moved, lowest = _descended(fine, moved.numbers[lowest : lowest + 1], _FINE_STEPS), 0
     if not moved.at_rest[lowest]:
         # Along the floor of a narrow valley, as far as there is time for.
         steps = min(max(_MORE_WORK // flows.instrument.size, _FINE_STEPS), _MORE_STEPS)
         moved, lowest = _descended(fine, moved.numbers[lowest : lowest + 1], steps), 0
     numbers = moved.numbers[lowest].copy()
+    numbers[1] -= numbers[0]
     numbers[2 + humps :] = np.exp(numbers[2 + humps :])
     return Found(numbers, float(moved.cost[lowest]), bool(moved.at_rest[lowest]), moved.evaluations)
 
@@ -127,16 +138,35 @@ def _distinct(tried: FloatArray, costs: FloatArray) -> FloatArray:
 
 
 class _Errors:
-    """Errors of yield and their slopes, for many sets of parameters at a time."""
+    """Errors of yield and their slopes, for many sets of parameters at a time.
+
+    Attributes
+    ----------
+    time : ndarray, shape (n + w,)
+        Of the payments, and those of the bounds.
+    weight : float
+        The noise of the bonds: what a difference of the bounds' rows weighs beside an error of yield.
+    """
 
     time: FloatArray
 
-    def __init__(self, humps: int, levels: tuple[float, float]) -> None:
-        self.humps, self.rates = humps, 2 + humps
-        count = 2 + 2 * humps
-        self.low, self.high = np.full(count, -_LARGEST_RATE), np.full(count, _LARGEST_RATE)
-        self.low[0], self.high[0] = levels
-        self.low[2 + humps :], self.high[2 + humps :] = np.log(_SHORTEST_DECAY), np.log(_LONGEST_DECAY)
+    def __init__(self, bounds: SearchBounds, count: int) -> None:
+        self.bounds, self.humps, self.rates = bounds, bounds.humps, 2 + bounds.humps
+        self.low, self.high = bounds.low, bounds.high
+        self.count = count
+        self.weight = _LEAST_NOISE
+
+    def note_noise(self, numbers: FloatArray) -> None:
+        """Take the noise from the least errors of some sets of parameters, shape (s, parameters)."""
+        squares = float(_sum_of_squares(self.at(numbers)[0][:, : self.count]).min())
+        if np.isfinite(squares):
+            free = self.count - self.low.size
+            # Few errors may be small by chance; that many are small is no chance.
+            self.weight = float(np.sqrt((squares + _LEAST_NOISE**2 * 10.0**-free) / max(free, 1)))
+
+    def costs(self, numbers: FloatArray) -> FloatArray:
+        """The sums of squares that the search makes least, by start."""
+        return _sum_of_squares(self.at(numbers)[0])
 
     def shapes(self, numbers: FloatArray) -> FloatArray:
         """Derivatives of zero rates by the parameters; dimensions: start, parameter, time."""
@@ -147,27 +177,40 @@ class _Errors:
         hump = tilt - left
         # By ln τ, x = t/τ: the slope's loading moves by the curvature's, and that by itself less x e^{-x}.
         bend = numbers[:, 2 : self.rates, None] * (hump - ratio * left)
-        bend[:, 0] += numbers[:, 1, None] * hump[:, 0]
+        bend[:, 0] += (numbers[:, 1] - numbers[:, 0])[:, None] * hump[:, 0]
         found = np.empty((len(numbers), self.rates + self.humps, self.time.size))
-        found[:, 0] = 1.0
+        found[:, 0] = 1.0 - tilt[:, 0]
         found[:, 1] = tilt[:, 0]
         found[:, 2 : self.rates] = hump
         found[:, self.rates :] = bend
         return found
 
     def zero(self, numbers: FloatArray) -> FloatArray:
-        """Zero rates; dimensions: start, time."""
-        shapes = self.shapes(numbers)[:, : self.rates]
+        """Zero rates at the payments; dimensions: start, time."""
+        shapes = self.shapes(numbers)[:, : self.rates, : -self.bounds.times.size]
         return np.asarray(np.einsum("sk,skt->st", numbers[:, : self.rates], shapes))
 
     def at(self, numbers: FloatArray) -> tuple[FloatArray, FloatArray]:
-        """Errors, dimensions start and bond [1/year], and slopes, dimensions start, parameter and bond."""
+        """Errors [1/year] and their slopes.
+
+        Returns
+        -------
+        errors : ndarray; dimensions: start, bond and then row of the bounds
+        slopes : ndarray; dimensions: start, parameter, bond and then row of the bounds
+        """
         shapes = self.shapes(numbers)
         zero = np.einsum("sk,skt->st", numbers[:, : self.rates], shapes[:, : self.rates])
+        paid = self.time.size - self.bounds.times.size
+        rows = self.weight * self.bounds.rows
+        about, about_slope = zero[:, paid:] @ rows, shapes[:, :, paid:] @ rows
+        time, shapes = self.time[:paid], shapes[:, :, :paid]
         # Bounded, so that a stray step meets large errors and not infinite ones.
-        factor = np.exp(np.minimum(-zero * self.time, _LARGEST_EXPONENT))
-        shapes *= (-self.time * factor)[:, None, :]
-        return self.errors(factor), self.sums(shapes)
+        factor = np.exp(np.minimum(-zero[:, :paid] * time, _LARGEST_EXPONENT))
+        shapes = shapes * (-time * factor)[:, None, :]
+        return (
+            np.concatenate((self.errors(factor), about), axis=-1),
+            np.concatenate((self.sums(shapes), about_slope), axis=-1),
+        )
 
     def errors(self, factor: FloatArray) -> FloatArray:
         """Errors at discount factors."""
@@ -181,16 +224,15 @@ class _Errors:
 class _Whole(_Errors):
     """Of the bonds as they are."""
 
-    def __init__(
-        self, flows: QuotedFlows, scale: FloatArray, humps: int, levels: tuple[float, float]
-    ) -> None:
-        super().__init__(humps, levels)
-        self.time, self._time_of = np.unique(flows.time, return_inverse=True)
+    def __init__(self, flows: QuotedFlows, scale: FloatArray, bounds: SearchBounds) -> None:
+        super().__init__(bounds, len(flows))
+        paid, self._time_of = np.unique(flows.time, return_inverse=True)
+        self.time = np.concatenate((paid, bounds.times))
         self._flows, self._scale = flows, scale
         # Many instruments pay on the same days: then a product of matrices is less work than sums of rows.
         self._weights: FloatArray | None = None
-        if len(flows) * self.time.size <= 8 * flows.time.size:
-            self._weights = np.zeros((self.time.size, len(flows)))
+        if len(flows) * paid.size <= 8 * flows.time.size:
+            self._weights = np.zeros((paid.size, len(flows)))
             np.add.at(self._weights, (self._time_of, flows.instrument), flows.amount)
             self._weights /= scale
 
@@ -211,11 +253,9 @@ class _Thinned(_Errors):
     A payment goes to the four times about it in such parts that cubic polynomials of time are summed right.
     """
 
-    def __init__(
-        self, flows: QuotedFlows, scale: FloatArray, humps: int, levels: tuple[float, float]
-    ) -> None:
-        super().__init__(humps, levels)
-        count = len(flows)
+    def __init__(self, flows: QuotedFlows, scale: FloatArray, bounds: SearchBounds) -> None:
+        super().__init__(bounds, len(flows))
+        count = self.count
         last = np.append(flows.first_row[1:], flows.instrument.size) - 1
         others = np.ones(flows.instrument.size, dtype=np.bool_)
         others[last] = False
@@ -225,16 +265,15 @@ class _Thinned(_Errors):
         if time.size:
             nodes, weights = _shared_out(time, amount, own, count)
             self._weights = weights / scale[:, None]
-        self.time = np.concatenate((flows.time[last], nodes))
+        self.time = np.concatenate((flows.time[last], nodes, bounds.times))
         self._own = flows.amount[last] / scale
         self._target = flows.target / scale
-        self._count = count
 
     def errors(self, factor: FloatArray) -> FloatArray:
         return self.sums(factor) - self._target
 
     def sums(self, per_time: FloatArray) -> FloatArray:
-        count = self._count
+        count = self.count
         return np.asarray(per_time[..., :count] * self._own + per_time[..., count:] @ self._weights.T)
 
     def landscape(self, known: FloatArray) -> FloatArray:
@@ -250,7 +289,7 @@ class _Thinned(_Errors):
         ndarray, shape (s, parameters)
             The lowest first.
         """
-        count, time = self._count, self.time
+        count, time = self.count, self.time[: -self.bounds.times.size]
         if known.shape[0] == 1:
             own_zero, zero = known[0, :count], known[:, count:]
         else:
@@ -261,42 +300,45 @@ class _Thinned(_Errors):
         # What a zero rate at each time weighs in the error, to first order.
         own_weight, weight = own * time[:count], shared * time[count:]
         goal = own_weight * own_zero + (weight * zero).sum(axis=1) + worth - self._target
-        ratio = time / _DECAYS[:, None]
+        decays = self.bounds.decays
+        ratio = self.time / decays[:, None]
         left = np.exp(-ratio)
         tilt = -np.expm1(-ratio) / ratio
-        loadings = np.concatenate((np.ones((1, time.size)), tilt, tilt - left))
-        # dimensions: level, slopes and curvatures of all decays, goal; bond
-        columns = np.empty((len(loadings) + 1, count))
-        columns[:-1] = loadings[:, :count] * own_weight + small_product(loadings[:, count:], weight.T)
-        columns[-1] = goal
+        loadings = np.concatenate((1.0 - tilt, tilt, tilt - left))
+        # dimensions: levels, short rates and curvatures of all decays, goal; bond, row of the bounds
+        columns = np.zeros((len(loadings) + 1, count + self.bounds.rows.shape[1]))
+        columns[:-1, :count] = loadings[:, :count] * own_weight
+        columns[:-1, :count] += small_product(loadings[:, count : time.size], weight.T)
+        columns[:-1, count:] = loadings[:, time.size :] @ (self.weight * self.bounds.rows)
+        columns[-1, :count] = goal
         products = small_product(columns, columns.T)
 
-        size = _DECAYS.size
+        size = decays.size
         each = np.arange(size)
         first = each if self.humps == 1 else each[:, None]
-        picks = [np.zeros_like(first[:1]), 1 + first, 1 + size + first]
+        picks = [first, size + first, 2 * size + first]
         if self.humps == 2:
-            picks.append(1 + size + each[None, :])
-        cost, rates = _least_squares(products, picks)
+            picks.append(2 * size + each[None, :])
+        cost, rates = least_squares(products, picks)
         for number, low, high in zip(rates, self.low, self.high, strict=False):
             cost[(number < low) | (number > high)] = np.inf
         if self.humps == 2:
             np.fill_diagonal(cost, np.inf)
         beside = cost
         for axis in range(self.humps):
-            beside = _lowest_of_three(beside, axis)
+            beside = lowest_of_three(beside, axis)
         is_low = np.flatnonzero(np.isfinite(cost) & (cost == beside))
         is_low = is_low[np.argsort(cost.ravel()[is_low], kind="stable")][:_STARTS]
         if not is_low.size:
             return self._middle()
-        decays = np.stack(np.unravel_index(is_low, cost.shape), axis=1)
-        return np.concatenate((rates.reshape(self.rates, -1)[:, is_low].T, np.log(_DECAYS)[decays]), axis=1)
+        places = np.stack(np.unravel_index(is_low, cost.shape), axis=1)
+        return np.concatenate((rates.reshape(self.rates, -1)[:, is_low].T, np.log(decays)[places]), axis=1)
 
     def _middle(self) -> FloatArray:
         """One start for quotes so far from each other that no rates within bounds fit any decays."""
         start = np.zeros((1, self.rates + self.humps))
-        start[0, 0] = 0.5 * (self.low[0] + self.high[0])
-        start[0, self.rates :] = np.log([1.0, 5.0][: self.humps])
+        start[0, :2] = 0.5 * (self.low[:2] + self.high[:2])
+        start[0, self.rates :] = np.linspace(self.low[-1], self.high[-1], 4)[1 : 1 + self.humps]
         return start
 
 
@@ -304,55 +346,6 @@ def _sum_of_squares(miss: FloatArray) -> FloatArray:
     """By start; infinite where an error is not a number."""
     total = np.sum(miss**2, axis=1)
     return np.where(np.isnan(total), np.inf, total)
-
-
-def _lowest_of_three(values: FloatArray, axis: int) -> FloatArray:
-    """Each value or the lower of its two neighbours along an axis."""
-    along = np.moveaxis(values, axis, 0)
-    found = along.copy()
-    np.minimum(found[1:], along[:-1], out=found[1:])
-    np.minimum(found[:-1], along[1:], out=found[:-1])
-    return np.moveaxis(found, 0, axis)
-
-
-def _least_squares(products: FloatArray, picks: list[NDArray[np.intp]]) -> tuple[FloatArray, FloatArray]:
-    """Linear least squares on some of the columns, for many choices of columns at a time.
-
-    Parameters
-    ----------
-    products : ndarray, shape (c + 1, c + 1)
-        Of every two columns, the goal being the last.
-    picks : list of ndarray, shapes that broadcast
-        The columns of each choice.
-
-    Returns
-    -------
-    cost : ndarray, the broadcast shape
-    numbers : ndarray, the number of columns and the broadcast shape
-        By Cholesky's method, written out over the choices.
-    """
-    count, goal = len(picks), np.array(len(products) - 1)
-    lower: list[list[FloatArray]] = [[] for _ in range(count + 1)]
-    for i, rows in enumerate([*picks, goal]):
-        for j in range(min(i + 1, count)):
-            left = products[rows, picks[j]]
-            for k in range(j):
-                left = left - lower[i][k] * lower[j][k]
-            if i == j:
-                lower[i].append(np.sqrt(np.maximum(left, _RIDGE * products[rows, rows])))
-            else:
-                lower[i].append(left / lower[j][j])
-    shape = np.broadcast_shapes(*(pick.shape for pick in picks))
-    cost = np.full(shape, products[goal, goal])
-    for part in lower[count]:
-        cost -= part**2
-    numbers = np.empty((count, *shape))
-    for i in range(count - 1, -1, -1):
-        left = lower[count][i]
-        for k in range(i + 1, count):
-            left = left - lower[k][i] * numbers[k]
-        numbers[i] = left / lower[i][i]
-    return np.maximum(cost, 0.0), numbers
 
 
 def _shared_out(

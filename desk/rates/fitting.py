@@ -133,9 +133,24 @@ def fit_svensson(flows: QuotedFlows) -> CurveFit:
     parameters are improved together, at first on payments shared out among a few times, at last on the
     payments as they are. The best curve then takes the place of the yields, until a round gains nothing.
 
-    Decays are kept within 0.05 and 50 years, the slope and curvatures within 1000 % a year, and the level,
-    which is the forward rate at the far end, within ten percentage points of the yields quoted: without that
-    last bound noise can be fitted by a curve that runs off to hundreds of percent beyond the bonds.
+    Noise can be fitted by a curve that runs off to hundreds of percent where there is no bond. Therefore:
+
+    - decays are at least half the term of the first bond to mature (and 0.05 years) and at most the term of
+      the last, so that no hump lies before or beyond all bonds;
+    - the rate at time 0, β₀ + β₁, is within five percentage points of the yields quoted, the level β₀,
+      which is the forward rate at the far end, within ten, and the curvatures within 1000 % a year;
+    - four differences are added to the errors of yield, as if they were observed to be 0: the zero rates at
+      time 0 and at a third and two thirds of the first term less that at the first term, with a standard
+      error of one percentage point each, and the level less the zero rate at the last term, with one of
+      two. The bonds themselves have the standard error that their own residuals show. What the bonds tell
+      of the ends outweighs this; where they tell nothing, the curve stays near them. Bonds that a curve of
+      the family within these bounds reprices exactly are repriced exactly: without residuals the differences
+      weigh nothing. (Least squares with prior observations, each weighted by the inverse of its variance:
+      Theil, H. and Goldberger, A.S. (1961), On pure and mixed statistical estimation in economics,
+      International Economic Review 2(1); the citation is from memory, the sizes of the standard errors are
+      a choice of ours);
+    - with no more bonds than parameters there are no residuals to tell the noise; it is then taken to be one
+      basis point at least, and with each bond more that least variance is a tenth.
     """
     return _fitted(flows, 2, _svensson)
 

@@ -16,7 +16,7 @@ from numpy.typing import NDArray
 from desk.rates.curve import Interpolation
 from desk.rates.small_products import small_product
 
-__all__ = ["Exponents", "exponents"]
+__all__ = ["Exponents", "exponents", "local_factors"]
 
 FloatArray = NDArray[np.float64]
 ComplexArray = NDArray[np.complexfloating]
@@ -67,7 +67,7 @@ def exponents(
         return lambda rates: _monotone_convex(terms, rates, times)
     by_rate = np.eye(terms.size)
     if interpolation is Interpolation.LOG_LINEAR:
-        place, factor = _log_linear(terms, times)
+        place, factor = local_factors(terms, times, interpolation)
     elif interpolation is Interpolation.CUBIC_ZERO and terms.size > 2:
         from scipy.interpolate import CubicSpline
 
@@ -75,12 +75,38 @@ def exponents(
         bend = CubicSpline(terms, by_rate, bc_type="natural")(terms, 2)
         by_rate = np.concatenate((by_rate, bend))
     else:
-        place, factor = _linear_zero(terms, times)
+        place, factor = local_factors(terms, times, Interpolation.LINEAR_ZERO)
 
     def linear(rates: FloatArray) -> Exponents:
         return Exponents(np.sum(factor * (by_rate @ rates)[place], axis=0), place, factor, by_rate)
 
     return linear
+
+
+def local_factors(
+    terms: FloatArray, times: FloatArray, interpolation: Interpolation
+) -> tuple[NDArray[np.intp], FloatArray]:
+    """The two zero rates that tell the exponent at each time, where no others do.
+
+    Parameters
+    ----------
+    terms : ndarray, shape (q,)
+        Positive and rising [years].
+    times : ndarray, shape (n,)
+        At most the last term [years].
+    interpolation : Interpolation
+        `LOG_LINEAR` or `LINEAR_ZERO`.
+
+    Returns
+    -------
+    place : ndarray of int, shape (2, n)
+        Of the rates on both sides.
+    factor : ndarray, shape (2, n)
+        Derivatives of the exponent by them; it is the sum of rates times factors.
+    """
+    if interpolation is Interpolation.LOG_LINEAR:
+        return _log_linear(terms, times)
+    return _linear_zero(terms, times)
 
 
 def _between(terms: FloatArray, times: FloatArray) -> tuple[NDArray[np.intp], NDArray[np.intp], FloatArray]:

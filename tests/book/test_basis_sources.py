@@ -27,6 +27,7 @@ def _bonds(curve: DiscountCurve, count: int = 12) -> CurveBonds:
     """Bonds in no order, half of them with clean prices, two with yields, priced on a curve."""
     random = np.random.default_rng(count)
     days = np.sort(random.choice(np.arange(120, 11_000), count, replace=False))
+    days[0] = 150  # the first decay, 0.48 years, is told by a bond of less than twice that
     random.shuffle(days)
     blank = CurveBonds(
         names=tuple(f"Bond {number}" for number in range(count)),

@@ -298,3 +298,45 @@ class TestFaults:
                 else:
                     worth = flows.sums(np.abs(flows.amount) * found.discount(flows.time))
                     assert np.all(np.abs(flows.values(found) - 1.0) <= 1e-12 * np.maximum(worth, 1.0))
+
+
+def _many(count: int, curve: Curve) -> QuotedFlows:
+    random = np.random.default_rng(count)
+    terms = np.sort(random.uniform(0.1, 40.0, count))
+    blank = bond_flows(terms, random.uniform(0.0, 0.06, count), yields=np.full(count, 0.03))
+    return QuotedFlows(blank.instrument, blank.time, blank.amount, blank.values(curve))
+
+
+class TestManyQuotes:
+    """Sheets of thousands of bonds."""
+
+    @pytest.mark.parametrize("interpolation", [Interpolation.LOG_LINEAR, Interpolation.LINEAR_ZERO])
+    def test_thousands_are_given_back(self, interpolation: Interpolation) -> None:
+        flows = _many(5000, Curve(TERMS, HUMPED, interpolation))
+        curve = bootstrap(flows, interpolation=interpolation)
+        np.testing.assert_allclose(flows.values(curve), flows.target, rtol=1e-12)
+
+    def test_the_first_that_does_not_fit_is_named(self) -> None:
+        flows = _many(5000, Curve(TERMS, HUMPED))
+        target = flows.target.copy()
+        target[3100] *= 0.2
+        with pytest.raises(CurveError, match="already worth as much") as caught:
+            bootstrap(QuotedFlows(flows.instrument, flows.time, flows.amount, target))
+        assert caught.value.rows == (3100,)
+
+    @pytest.mark.parametrize("interpolation", [Interpolation.CUBIC_ZERO, Interpolation.MONOTONE_CONVEX])
+    def test_too_many_are_refused_where_all_move_together(self, interpolation: Interpolation) -> None:
+        with pytest.raises(CurveError, match=r"1,001 quotes.* log-linear or linear-zero, or fit a smooth"):
+            bootstrap(_many(1001, Curve(TERMS, HUMPED)), interpolation=interpolation)
+
+    def test_what_does_not_fit_any_curve_is_found_without_trying_them_all(self) -> None:
+        flows = _many(150, Curve(TERMS, HUMPED))
+        target = flows.target.copy()
+        target[90] *= 0.2
+        for interpolation in (Interpolation.CUBIC_ZERO, Interpolation.MONOTONE_CONVEX):
+            with pytest.raises(CurveError, match="already worth as much") as caught:
+                bootstrap(
+                    QuotedFlows(flows.instrument, flows.time, flows.amount, target),
+                    interpolation=interpolation,
+                )
+            assert caught.value.rows == (90,)
