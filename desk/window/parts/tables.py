@@ -145,7 +145,11 @@ class Table(QTableView):
         current = self.current_source_row()
         place = max(self.currentIndex().column(), 0)
         scrolled = self.verticalScrollBar().value()
+        is_edited = self.state() is QAbstractItemView.State.EditingState
         self.table_model.set_rows(data, marks=marks, strong=strong)
+        if is_edited:
+            # The cell's editor went with the former rows, and the keyboard with it to whatever comes next.
+            self.setFocus()
         if not self._fitted and self.table_model.rowCount():
             self.fit_columns()
         if current >= 0:

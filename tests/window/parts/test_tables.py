@@ -12,6 +12,7 @@ import pytest
 from PySide6.QtCore import QLocale, QModelIndex, Qt
 from PySide6.QtGui import QGuiApplication
 from PySide6.QtTest import QAbstractItemModelTester, QTest
+from PySide6.QtWidgets import QApplication, QLineEdit, QPushButton, QVBoxLayout, QWidget
 from pytestqt.qtbot import QtBot
 
 from desk.window.parts.tables import Column, Mark, Table, TableModel, parse_grid
@@ -247,6 +248,37 @@ def test_an_edit_is_parsed_and_handed_on(table: Table) -> None:
     assert refused[-1] == "No: too large."
     assert "“lots” is not a number" in refused[0]
     assert not model.index(0, 0).flags() & Qt.ItemFlag.ItemIsEditable
+
+
+def test_the_keyboard_stays_in_the_table_when_an_edit_brings_other_rows(
+    qtbot: QtBot, theme_switch: ThemeSwitch
+) -> None:
+    page = QWidget()
+    rows = QVBoxLayout(page)
+    table = Table(COLUMNS, theme_switch, name="Lines")
+    rows.addWidget(table)
+    rows.addWidget(QPushButton("Add a line"))
+    qtbot.addWidget(page)
+
+    def take(row: int, key: str, value: object) -> None:
+        table.set_rows({**DATA, key: [value if place == row else own for place, own in enumerate(DATA[key])]})
+
+    table.table_model.commit = take
+    table.set_rows(DATA)
+    page.show()
+    page.activateWindow()
+    table.setFocus()
+    qtbot.waitUntil(table.hasFocus)
+    table.setCurrentIndex(table.table_model.index(1, 1))
+    table.edit(table.currentIndex())
+    editor = QApplication.focusWidget()
+    assert isinstance(editor, QLineEdit)
+    editor.setText("77")
+    QTest.keyClick(editor, Qt.Key.Key_Return)
+    qtbot.waitUntil(lambda: shown(table, "amount")[1] == "77")
+    assert table.hasFocus()
+    QTest.keyClick(table, Qt.Key.Key_Down)
+    assert table.current_source_row() == 2
 
 
 def test_marks_are_told_in_words(table: Table) -> None:
