@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import errno
+from collections import Counter
 from collections.abc import Callable, Iterable
 from dataclasses import replace
 from pathlib import Path
@@ -14,6 +15,7 @@ from desk.report import as_text
 from desk.terminal import ProgressLine, complain
 
 __all__ = [
+    "MOST_LINES",
     "BadRequest",
     "NotWritten",
     "Reported",
@@ -24,6 +26,8 @@ __all__ = [
     "write_to",
 ]
 
+MOST_LINES = 200
+"""Faults of one sheet and severity that are said one by one."""
 _NO_PLACE_TO_WRITE = (errno.EACCES, errno.EPERM, errno.EROFS, errno.ENAMETOOLONG, errno.ENOENT)
 """Reasons why a file cannot be written that lie in the place asked for."""
 
@@ -108,13 +112,36 @@ def insist_on(book: Book, *, model: bool, sheet: str = "Basis") -> None:
 
 
 def complain_of(faults: Iterable[Fault]) -> None:
-    """Say the mild faults of a result."""
-    for fault in faults:
-        complain(as_text.fault_line(replace(fault, severity=Severity.MILD)))
+    """Say the mild faults of a result, as many as of a reading."""
+    _complain((replace(fault, severity=Severity.MILD) for fault in faults), as_text.fault_line)
 
 
 def complain_of_reading(reading: Reading) -> None:
-    """Say the faults of a reading; one that has no place in the book says which file it is of."""
-    for fault in reading.faults:
+    """Say the faults of a reading; one that has no place in the book says which file it is of.
+
+    Of each sheet the first 200 of each severity, and in one line how many more there are.
+    """
+
+    def line_of(fault: Fault) -> str:
         line = as_text.fault_line(fault)
-        complain(line if fault.place else f"{as_text.printable(str(reading.path))}: {line}")
+        return line if fault.place else f"{as_text.printable(str(reading.path))}: {line}"
+
+    _complain(reading.faults, line_of)
+
+
+def _complain(faults: Iterable[Fault], line_of: Callable[[Fault], str]) -> None:
+    """Say faults in one line each; of very many the first, and what is left out."""
+    counts: Counter[tuple[str, Severity]] = Counter()
+    for fault in faults:
+        kind = fault.sheet, fault.severity
+        counts[kind] += 1
+        if counts[kind] <= MOST_LINES:
+            complain(line_of(fault))
+    for (sheet, severity), count in counts.items():
+        if count > MOST_LINES:
+            what = "mild faults" if severity is Severity.MILD else "grave faults"
+            where = f" of the sheet {as_text.printable(sheet)}" if sheet else ""
+            complain(
+                f"{count - MOST_LINES:,} further {what}{where} are left out here, {count:,} in all; "
+                "--json lists every one"
+            )

@@ -18,6 +18,9 @@ from openpyxl import load_workbook
 
 import desk.__main__ as entry
 from desk import __version__, batch, tasks
+from desk.asked import complain_of_reading
+from desk.book import Fault, Severity
+from desk.intake.records import Reading
 from desk.places import demo_books
 from desk.report.wording import CAUTION
 from desk.terminal import ProgressLine, say
@@ -70,6 +73,22 @@ def test_check_lists_every_fault_in_a_line(run: Run, spoilt: Path) -> None:
     assert len([line for line in lines if "much" in line or "more" in line]) == 2
     assert all("Liabilities!" in line for line in lines)
     assert "2 grave faults" in out
+
+
+def test_of_very_many_faults_the_first_are_said_and_the_rest_counted(
+    capsys: pytest.CaptureFixture[str],
+) -> None:
+    """By sheet and severity; a usual number is said whole."""
+    faults = [Fault("x", "a number", "Mend it.", sheet="Liabilities", cell=f"C{n}") for n in range(1000)]
+    faults += [Fault("y", "a date", "Mend it.", sheet="Curve", cell=f"A{n}") for n in range(200)]
+    faults.append(Fault("old", "a later date", "None.", sheet="Liabilities", severity=Severity.MILD))
+    complain_of_reading(Reading(Path("book.xlsx"), "", None, tuple(faults), ()))
+    lines = capsys.readouterr().err.splitlines()
+    assert len(lines) == 402
+    assert sum(line.startswith("Curve!") for line in lines) == 200
+    assert "mild: Liabilities" in lines[-2]
+    assert lines[-1].startswith("800 further grave faults of the sheet Liabilities are left out here, 1,000")
+    assert "--json" in lines[-1]
 
 
 def test_check_json_is_printed_with_faults(run: Run, spoilt: Path) -> None:

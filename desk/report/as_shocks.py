@@ -29,6 +29,7 @@ _CHANGES = (
     "estimated_change_in_surplus",
 )
 _LONGEST_NAME = 36
+_MOST_NAMES = 6
 
 
 @dataclass(frozen=True)
@@ -241,11 +242,22 @@ def _turns(found: ShockTable) -> str:
 
 
 def _sources(found: ShockTable) -> list[str]:
-    """Each set with its source, once."""
-    sources = dict.fromkeys(
-        (result.set_name or result.name, result.source) for result in found.results if result.source
-    )
-    return ["\n".join(_wrapped(f"{printable(name)}: {printable(source)}") for name, source in sources)]
+    """Each source once, after the sets or shocks that have it."""
+    names: dict[str, dict[str, None]] = {}
+    for result in found.results:
+        if result.source:
+            names.setdefault(result.source, {})[result.set_name or result.name] = None
+    return [
+        "\n".join(_wrapped(f"{_listed(list(own))}: {printable(source)}") for source, own in names.items())
+    ]
+
+
+def _listed(names: list[str]) -> str:
+    """Names in words; of many the first few and how many more."""
+    shown = [printable(name) for name in names[:_MOST_NAMES]]
+    if len(names) > _MOST_NAMES:
+        shown.append(f"{grouped(len(names) - _MOST_NAMES)} more")
+    return shown[0] if len(shown) == 1 else f"{', '.join(shown[:-1])} and {shown[-1]}"
 
 
 def _reached(reached: Reached) -> str:

@@ -121,7 +121,9 @@ def _assets(book: Book) -> PricedSide:
     funds = np.flatnonzero([holding.kind in STATED_KINDS for holding in holdings])
     fund_time = np.array([holdings[number].duration or 0.0 for number in funds], dtype=np.float64)
     market = np.where(np.isnan(priced.stated_value[funds]), 0.0, priced.stated_value[funds])
-    fund_amount = market / book.basis.curve.discount(fund_time)
+    # At absurd rates nothing is left of a discount factor; the figures then say that they are none.
+    with np.errstate(over="ignore", divide="ignore", invalid="ignore"):
+        fund_amount = market / book.basis.curve.discount(fund_time)
     kept = table.future
     no_date = np.full(funds.size, np.datetime64("NaT", "D"))
     own_line = np.concatenate((own.holding, funds))

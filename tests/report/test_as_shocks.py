@@ -48,6 +48,19 @@ def test_the_text_is_safe_and_complete() -> None:
     assert "changes its sign at a parallel move of −105.2 basis points" in text
 
 
+def test_each_source_is_told_once() -> None:
+    """After all that have it; of many the first few."""
+    own = tuple(
+        Shock(f"own {number}", (Move(MoveKind.PARALLEL, 1.0 + number),), "our rule") for number in range(9)
+    )
+    table = shock_table(small_book(), (*own[:2], Shock("other", own[0].moves, "a law"), *own[2:]))
+    text = " ".join(shocks_text(table).split())
+    assert text.count("our rule") == text.count("a law") == 1
+    assert "own 0, own 1, own 2, own 3, own 4, own 5 and 3 more: our rule" in text
+    table = shock_table(small_book(), own[:2])
+    assert "own 0 and own 1: our rule" in shocks_text(table)
+
+
 def test_faults_are_told_once() -> None:
     """Those of the reading first; what the shocks found after them."""
     table = shock_table(small_book(), (*SHOCKS, Shock("none", ())))

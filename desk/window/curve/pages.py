@@ -22,9 +22,9 @@ from desk.window.curve.quotes_page import QuotesPage
 from desk.window.curve.rates_page import RatesPage
 from desk.window.curve.shown import Shown
 from desk.window.curve.targets import Part, bonds_of, is_exact
+from desk.window.parts.pages import Pages
 from desk.window.parts.tables import Table
 from desk.window.parts.theme import ThemeSwitch
-from desk.window.standing.pages import Pages
 
 __all__ = ["CurvePages"]
 

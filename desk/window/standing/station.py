@@ -16,13 +16,13 @@ from desk.valuation.records import FlowDetail, LineStanding, Standing
 from desk.window.document import Document
 from desk.window.jobs import Jobs
 from desk.window.parts.fields import Combo
+from desk.window.parts.pages import Pages
 from desk.window.parts.theme import GAP, WIDE, ThemeSwitch
 from desk.window.standing.basis_form import BasisForm
 from desk.window.standing.comparison import ComparisonPage
 from desk.window.standing.edits import terms_of, with_terms
 from desk.window.standing.inflation import InflationPage, InflationPicture
 from desk.window.standing.lines import LinesPage
-from desk.window.standing.pages import Pages
 from desk.window.standing.pictures import FLOWS, FLOWS_IN_REAL, FlowPicture, KeyRatePicture
 from desk.window.standing.tables import ConditionsPage, KeyRatesTable, PeriodsTable
 from desk.window.standing.terms_dialog import TermsDialog
