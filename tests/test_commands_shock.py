@@ -132,15 +132,19 @@ def test_a_books_own_shocks_come_first(insurer: Book) -> None:
     book = replace(insurer, shocks=(own,), shock_settings=ShockSettings(sets=("Solvency II rates",)))
     table = tasks.shock(book)
     assert [result.name for result in table.results] == ["Mine", "Rates up", "Rates down"]
-    assert table.provenance.settings == (("sets", "Solvency II rates"),)
+    asked, stated = table.provenance.settings
+    assert asked == ("sets", "Solvency II rates")
+    assert stated[0] == "set Solvency II rates"
+    assert "Articles 166 and 167" in stated[1]
     usual = tasks.shock(replace(book, shock_settings=ShockSettings()))
-    assert usual.provenance.settings == (("sets", "usual for GBP"),)
+    assert usual.provenance.settings[0] == ("sets", "usual for GBP")
     assert "Steepener" in [result.name for result in usual.results]
     none = tasks.shock(
         replace(book, basis=replace(book.basis, currency="XTS"), shock_settings=ShockSettings())
     )
     assert "Steepener" not in [result.name for result in none.results]
-    assert none.faults == ()
+    (fault,) = none.faults
+    assert "no prescribed set with sizes for XTS" in str(fault)
 
 
 def test_progress_and_stopping(insurer: Book) -> None:

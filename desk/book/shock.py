@@ -147,6 +147,8 @@ class ShockSet:
     figures : tuple of (str, float)
         Stated figures that are no moves of a curve or of flows, such as a fall in mortality: what they do to
         a line of liabilities is for the user to state.
+    has_sizes_by_currency : bool
+        Whether the sizes are stated currency by currency.
     """
 
     name: str
@@ -155,6 +157,7 @@ class ShockSet:
     shocks: tuple[Shock, ...] = ()
     is_usual: bool = True
     figures: tuple[tuple[str, float], ...] = ()
+    has_sizes_by_currency: bool = False
 
 
 @dataclass(frozen=True)

@@ -105,14 +105,26 @@ def chosen_shocks(
     -------
     shocks : tuple of Shock
     faults : tuple of Fault
-        A set that is not there, or has no sizes for the currency.
+        A set that is not there, or holds nothing for the currency; or, where none is asked for, that no set
+        has sizes for it.
     """
     if not asked:
         usual = [shock for own in found.sets if own.is_usual for shock in own.shocks]
         moves_inflation = {
             shock for shock in usual if all(move.kind is MoveKind.INFLATION for move in shock.moves)
         }
-        return tuple(shock for shock in usual if with_inflation or shock not in moves_inflation), ()
+        chosen = tuple(shock for shock in usual if with_inflation or shock not in moves_inflation)
+        by_currency = [own for own in found.sets if own.has_sizes_by_currency]
+        if not by_currency or any(own.shocks for own in by_currency):
+            return chosen, ()
+        fault = shock_file_fault(
+            "Shock settings",
+            "",
+            f"no prescribed set with sizes for {currency}",
+            f"sizes for one of the currencies that {' or '.join(own.name for own in by_currency)} names",
+            "Only sets that suit any currency are used; put sizes into the files, or state your own shocks.",
+        )
+        return chosen, (fault,)
     by_name = {own.name.casefold(): own for own in found.sets}
     shocks: list[Shock] = []
     faults: list[Fault] = []

@@ -212,6 +212,7 @@ class ShockFile:
             shocks=() if needs_sizes else shocks,
             is_usual="ALL" in usual or currency in usual,
             figures=tuple(self.figures.items()),
+            has_sizes_by_currency=bool(self.size_names),
         )
 
     def _adjust(self) -> None:

@@ -65,6 +65,19 @@ def test_a_currency_without_sizes_has_no_shocks(tmp_path: Path) -> None:
     assert "\n" not in str(faults[0])
 
 
+def test_a_currency_of_which_no_set_has_sizes_is_told_in_one_line(tmp_path: Path) -> None:
+    """The sets that suit any currency are used; what is missing is never left out silently."""
+    read(tmp_path, OWN)
+    plain = "# Set: Plain\n# Usual for: all\nShock,Move,Size\nUp,parallel,10\n"
+    found = read(tmp_path, plain, "XAU", "plain.csv")
+    shocks, (fault,) = chosen_shocks(found, asked=(), currency="XAU", with_inflation=False)
+    assert [shock.name for shock in shocks] == ["Up"]
+    assert "no prescribed set with sizes for XAU" in str(fault)
+    assert "\n" not in str(fault)
+    found = read_shock_sets(tmp_path, currency="USD")
+    assert chosen_shocks(found, asked=(), currency="USD", with_inflation=False)[1] == ()
+
+
 @pytest.mark.parametrize(
     ("before", "after", "told"),
     [
