@@ -2,16 +2,20 @@
 
 from __future__ import annotations
 
-from PySide6.QtCore import Signal
+from functools import partial
+
+from PySide6.QtCore import Qt, Signal
+from PySide6.QtGui import QKeySequence, QShortcut
 from PySide6.QtWidgets import QHBoxLayout, QStackedWidget, QTabBar, QVBoxLayout, QWidget
 
+from desk.window.parts.panes import focus_first
 from desk.window.parts.theme import GAP, Theme, ThemeSwitch
 
 __all__ = ["Pages"]
 
 
 class Pages(QWidget):
-    """Pages with tabs; Left and Right in the tabs, or Ctrl+Tab anywhere on a page, go from one to the next.
+    """Pages with tabs; Left and Right in the tabs go from one to the next, and Ctrl+Tab by `take_keys_of`.
 
     Signals
     -------
@@ -81,6 +85,22 @@ class Pages(QWidget):
             If there is none.
         """
         self.tabs.setCurrentIndex(self._keys.index(key))
+
+    def take_keys_of(self, station: QWidget) -> None:
+        """Let Ctrl+Tab and Ctrl+Shift+Tab anywhere in a station go from page to page."""
+        for key, by in (("Ctrl+Tab", 1), ("Ctrl+Shift+Tab", -1)):
+            shortcut = QShortcut(QKeySequence(key), station)
+            shortcut.setContext(Qt.ShortcutContext.WidgetWithChildrenShortcut)
+            shortcut.activated.connect(partial(self.step, by))
+
+    def step(self, by: int) -> None:
+        """Show the page that is `by` further among those offered, and give it the keyboard."""
+        offered = [place for place in range(self.tabs.count()) if self.tabs.isTabVisible(place)]
+        if not offered:
+            return
+        now = offered.index(self.tabs.currentIndex())
+        self.tabs.setCurrentIndex(offered[(now + by) % len(offered)])
+        focus_first(self._stack.currentWidget())
 
     def _on_changed(self, place: int) -> None:
         if 0 <= place < self._stack.count():

@@ -100,6 +100,7 @@ class StandingStation(Station):
         self.pages.set_page_visible("comparison", False)
         self.pages.set_page_visible("inflation", False)
         self.pages.changed.connect(self._on_page)
+        self.pages.take_keys_of(self)
         self.lines.terms_wanted.connect(self._ask_terms)
         self.money = Combo()
         self.money.addItems(["Flows in money", "Flows in today's money"])

@@ -7,7 +7,8 @@ from dataclasses import replace
 import numpy as np
 import pytest
 from PySide6.QtCore import Qt
-from PySide6.QtWidgets import QAbstractButton, QLabel, QWidget
+from PySide6.QtTest import QTest
+from PySide6.QtWidgets import QAbstractButton, QApplication, QLabel, QWidget
 from pytestqt.qtbot import QtBot
 
 from desk.book import LiabilityMethod
@@ -80,3 +81,26 @@ def test_tab_goes_from_heading_to_pictures_tables_and_form(
     inside = [place for place in places if place >= 0]
     assert inside == sorted(inside)
     assert set(inside) == {0, 1, 2, 3, 4}
+
+
+def test_ctrl_tab_goes_round_the_pages_that_are_offered(
+    station: StandingStation, bench: Bench, qtbot: QtBot
+) -> None:
+    show(bench, station, qtbot, with_inflation())
+    station.activateWindow()
+    station.lines.table.setFocus()
+    qtbot.waitUntil(station.lines.table.hasFocus)
+    seen = []
+    for _ in range(5):
+        focus = QApplication.focusWidget()
+        assert focus is not None
+        QTest.keyClick(focus, Qt.Key.Key_Tab, Qt.KeyboardModifier.ControlModifier)
+        seen.append(station.pages.current)
+    assert seen == ["periods", "key_rates", "inflation", "redington", "lines"]
+    assert station.lines.table.hasFocus()
+    QTest.keyClick(
+        station.lines.table,
+        Qt.Key.Key_Backtab,
+        Qt.KeyboardModifier.ControlModifier | Qt.KeyboardModifier.ShiftModifier,
+    )
+    assert station.pages.current == "redington"
