@@ -14,6 +14,7 @@ from desk.book.shock import Shock
 from desk.valuation.moved_curve import CurveMove
 from desk.valuation.shock_base import ShockBase, SideBase
 from desk.valuation.shock_effects import CannotShock, Effects, effects_of, shock_fault
+from desk.valuation.shock_records import Position
 from desk.valuation.shocks import side_after
 
 __all__ = ["MOST_CELLS", "ShockGrid", "shock_grid"]
@@ -38,6 +39,8 @@ class ShockGrid:
         Fully revalued [currency]; NaN where the two together cannot be computed.
     faults : tuple of Fault
         What could not be done as asked.
+    before : Position
+        Both sides before either of the two.
     """
 
     first: Shock
@@ -47,6 +50,7 @@ class ShockGrid:
     assets: FloatArray
     liabilities: FloatArray
     faults: tuple[Fault, ...]
+    before: Position
 
     @property
     def surplus(self) -> FloatArray:
@@ -134,7 +138,8 @@ def shock_grid(
             _by_cell(base, side, (first, second), effects, faults, part) if found is None else found
         )
     report(1.0)
-    return ShockGrid(first, second, scales[0], scales[1], values[0], values[1], tuple(dict.fromkeys(faults)))
+    told = tuple(dict.fromkeys(faults))
+    return ShockGrid(first, second, scales[0], scales[1], values[0], values[1], told, base.position)
 
 
 def _at_scales(base: ShockBase, shock: Shock, scale: FloatArray, faults: list[Fault]) -> list[Effects | None]:

@@ -8,7 +8,7 @@ from typing import TYPE_CHECKING
 from PySide6.QtCore import QObject
 from PySide6.QtWidgets import QWidget
 
-from desk.book import Book
+from desk.book import Book, Shock
 from desk.window.document import Document
 from desk.window.jobs import Jobs
 from desk.window.parts.fields import Form
@@ -105,3 +105,8 @@ class Mode(QObject):
     def take_back(self) -> bool:
         """Escape: take back what was begun here; whether anything was."""
         return False
+
+    def still_stands(self, shock: Shock) -> bool:
+        """Whether a shock is one of those of the book, as it was."""
+        table = self.document.shocks.result
+        return table is None or any(result.shock == shock for result in table.results)

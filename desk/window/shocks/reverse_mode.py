@@ -15,6 +15,7 @@ from desk import tasks
 from desk.book import Book, Shock
 from desk.valuation.reverse import Goal, ReverseResult
 from desk.valuation.reverse_rates import LeastMove
+from desk.valuation.shock_records import Position
 from desk.window.jobs import Job
 from desk.window.parts import numbers
 from desk.window.parts.fields import Choice, ChoiceField, NumberField
@@ -114,7 +115,8 @@ class ReverseMode(Mode):
         self._asked: _Asked | None = None
         self._failure = ""
         self._job: Job | None = None
-        self._drawn: tuple[object, object] = (None, None)
+        self._drawn: tuple[object, ...] = ()
+        self._before: Position | None = None
         self.curve = MovedCurvePicture(self.theme_switch)
         self.move = MovePicture(self.theme_switch)
         self.pictures = (self.curve, self.move)
@@ -234,25 +236,36 @@ class ReverseMode(Mode):
 
     @property
     def is_stale(self) -> bool:
-        """Whether the answer is of a former version of the book."""
-        book = self.document.book
-        return self._asked is not None and (book is None or is_outdated(self._asked.book, book, _ANSWERED))
+        """Whether the answer is of a former version of the book, or of the shock it goes along."""
+        book, asked = self.document.book, self._asked
+        if asked is None:
+            return False
+        along = asked.along
+        further = {_MODEL: {"rates_model"}, _HISTORY: {"yield_history"}}
+        names = _ANSWERED | further.get(along, set()) if isinstance(along, str) else _ANSWERED
+        return (
+            book is None
+            or is_outdated(asked.book, book, names)
+            or (isinstance(along, Shock) and not self.still_stands(along))
+        )
 
     def _show_answer(self, book: Book) -> None:
         found = self.found
         shock = found.shock if found is not None else None
         self.keep_button.setEnabled(shock is not None)
-        if self._drawn != (book.basis, found) or found is None:
-            self._drawn = (book.basis, found)
-            rates = moved_rates(book, shock)
+        # An answer is shown on the book that it was found on.
+        of = book if self._asked is None or found is None else self._asked.book
+        table = self.document.shocks.result
+        if table is not None and not self.document.shocks.is_stale and not self.is_stale:
+            self._before = table.base
+        if self._drawn != (of.basis, found, self._before) or found is None:
+            self._drawn = (of.basis, found, self._before)
+            rates = moved_rates(of, shock)
             self.curve.show_rates(rates)
             self.move.show_rates(rates)
             self.terms.show_rates(rates if shock is not None else None)
-            table = self.document.shocks.result
             result = found.result if found is not None else None
-            self.position.show_positions(
-                table.base if table is not None else None, result, book.basis.currency
-            )
+            self.position.show_positions(self._before, result, of.basis.currency)
         self.note.setVisible(self.is_stale and found is not None)
         self.note.setText(well_broken("This answer is from before your last change."))
 

@@ -18,7 +18,8 @@ from desk.valuation.reverse_rates import LeastMove
 from desk.valuation.shock_base import shock_base
 from desk.valuation.shocks import run_shock
 from desk.window.parts.theme import DARK, LIGHT, contrast
-from desk.window.shocks.grid_mode import MOST_STEPS, GridMode
+from desk.window.shocks.grid_axes import MOST_STEPS, axes_of
+from desk.window.shocks.grid_mode import GridMode
 from desk.window.shocks.heat_picture import contour_path, shade_of
 from desk.window.shocks.reverse_mode import ReverseMode
 from desk.window.shocks.station import ShocksStation
@@ -124,6 +125,79 @@ def test_what_is_missing_is_told(
     reverse.along.set_value("model")
     reverse.find()
     assert station.words.text().startswith("The book has no rates model")
+
+
+def test_what_is_shown_of_a_former_book_is_of_that_book_throughout(
+    bench: Bench, station: ShocksStation, qtbot: QtBot
+) -> None:
+    """Its figures before the move are not those of the book as it stands now."""
+    station.show_mode("reverse")
+    reverse, grid = station.mode_of("reverse"), station.mode_of("grid")
+    assert isinstance(reverse, ReverseMode)
+    assert isinstance(grid, GridMode)
+    _find(bench, reverse, qtbot)
+    before = column(reverse.position, "before")
+    station.show_mode("grid")
+    grid.run()
+    qtbot.waitUntil(lambda: grid.grid is not None and not bench.jobs.running, timeout=20_000)
+    grid.shown.setCurrentIndex(2)
+    place = int(np.flatnonzero(grid.grid.first_scale == 0.0)[0]) if grid.grid is not None else 0
+    untouched = [column(grid.values, "c10")[place]]
+    bench.edit_basis(liability_spread=0.01)
+    settled(bench, station, qtbot)
+    grid.shown.setCurrentIndex(1)
+    grid.shown.setCurrentIndex(2)
+    assert grid.is_stale
+    assert [column(grid.values, "c10")[place]] == untouched
+    assert float(untouched[0].replace("\u2212", "-").replace("\u2013", "0") or 0.0) == 0.0
+    station.show_mode("reverse")
+    settled(bench, station, qtbot)
+    assert reverse.is_stale
+    assert column(reverse.position, "before") == before
+
+
+def test_an_answer_along_a_shock_that_was_changed_says_so(
+    bench: Bench, station: ShocksStation, qtbot: QtBot
+) -> None:
+    station.show_mode("reverse")
+    reverse, grid = station.mode_of("reverse"), station.mode_of("grid")
+    assert isinstance(reverse, ReverseMode)
+    assert isinstance(grid, GridMode)
+    reverse.along.set_value(FALL)
+    _find(bench, reverse, qtbot)
+    station.show_mode("grid")
+    grid.second.which.set_value(next(axis for axis in axes_of(bench.book, (FALL,)) if axis.shock == FALL))
+    grid.second.suggest()
+    grid.run()
+    qtbot.waitUntil(lambda: grid.grid is not None and not bench.jobs.running, timeout=20_000)
+    assert not grid.is_stale
+    assert not reverse.is_stale
+    shocks = (replace(FALL, moves=(Move(MoveKind.PARALLEL, -90.0),)), *bench.book.shocks[1:])
+    bench.document.edit("Change of a shock", replace(bench.book, shocks=shocks))
+    settled(bench, station, qtbot)
+    assert grid.is_stale
+    assert reverse.is_stale
+    bench.document.undo()
+    settled(bench, station, qtbot)
+    assert not grid.is_stale
+    assert not reverse.is_stale
+
+
+def test_a_least_move_of_a_former_model_says_so(
+    bench: Bench, station: ShocksStation, reverse: ReverseMode, qtbot: QtBot
+) -> None:
+    reverse.along.set_value("model")
+    _find(bench, reverse, qtbot)
+    model = bench.book.rates_model
+    assert model is not None
+    bench.document.edit("Another model", replace(bench.book, rates_model=replace(model, volatility=0.02)))
+    settled(bench, station, qtbot)
+    assert reverse.is_stale
+    reverse.along.set_value("parallel")
+    _find(bench, reverse, qtbot)
+    bench.document.undo()
+    settled(bench, station, qtbot)
+    assert not reverse.is_stale
 
 
 def test_an_answer_of_a_former_book_says_so(
