@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from collections.abc import Callable
 from dataclasses import replace
 from typing import Any
 
@@ -9,6 +10,7 @@ from desk.book import Basis, Book, CurveBonds, CurveKind, Inflation, LiabilityMe
 from desk.book.arrays import FloatArray
 from desk.rates.curve import DiscountCurve
 from desk.valuation.restating import with_day_count
+from desk.window.curve.building import Builder, must_wait
 from desk.window.curve.faults import QUOTED_KINDS, fault_of
 from desk.window.curve.starting import liability_start, mean_time, source_of, start
 from desk.window.curve.targets import Part, Target, basis_of, with_basis
@@ -22,11 +24,23 @@ class Editor:
 
     An edit that gives no curve is not taken. What a curve of another kind lacks at first, its bonds, is
     gathered in a *draft* beside the book, until it gives a curve and goes into the book as one step. What a
-    curve was made from before it became one of another kind is kept, to come back to.
+    curve was made from before it became one of another kind is kept, to come back to. A curve of many bonds
+    is built in the background; until it is there its changes are a draft too.
+
+    Attributes
+    ----------
+    builder : Builder or None
+        Without one every curve is built at once.
+    on_built : callable
+        Is told, after a curve was built in the background, why it was not taken, or nothing.
     """
 
-    def __init__(self, document: Document) -> None:
+    def __init__(self, document: Document, builder: Builder | None = None) -> None:
         self.document = document
+        self.builder = builder
+        self.on_built: Callable[[str], None] = lambda reason: None
+        self._found: tuple[Basis, Part, str] | None = None
+        self._waiting: Target | None = None
         self.target = Target()
         self._drafts: dict[Target, dict[str, Any]] = {}
         self._kept: dict[tuple[bool, CurveKind], dict[str, Any]] = {}
@@ -34,6 +48,7 @@ class Editor:
     def clear(self) -> None:
         """Forget drafts and what was kept: another book is open."""
         self.target = Target()
+        self._stop()
         self._drafts.clear()
         self._kept.clear()
 
@@ -68,11 +83,28 @@ class Editor:
     @property
     def draft_fault(self) -> str:
         """Why the draft gives no curve yet; empty where there is none."""
-        return fault_of(self.drafted, self.target.part) if self.has_draft else ""
+        if not self.has_draft:
+            return ""
+        if self.builder is not None and self._waiting == self.target and self.builder.words:
+            return self.builder.words
+        basis, part = self.drafted, self.target.part
+        if self._found is not None and self._found[:2] == (basis, part):
+            return self._found[2]
+        if self.builder is not None and must_wait(basis, part):
+            return "The curve of these bonds was not drawn to its end: change a bond, or give them up."
+        return fault_of(basis, part)
 
     def discard_draft(self) -> None:
         """Leave the curve as it is in the book."""
+        if self._waiting == self.target:
+            self._stop()
         self._drafts.pop(self.target, None)
+
+    def _stop(self) -> None:
+        """Build no more of what is built in the background."""
+        self._waiting = None
+        if self.builder is not None:
+            self.builder.stop()
 
     # Edits
 
@@ -82,8 +114,39 @@ class Editor:
         Changes of a draft are taken into it; `may_wait` makes a draft of those that give no curve.
         """
         draft = self._drafts.get(self.target, {})
-        basis = replace(self.basis, **{**draft, **changes})
-        fault = fault_of(basis, self.target.part)
+        former, target = self.basis, self.target
+        basis = replace(former, **{**draft, **changes})
+        self._stop()
+        if self.builder is not None and must_wait(basis, target.part):
+            self._waiting = target
+            self._drafts[target] = {**draft, **changes}
+
+            def built(fault: str) -> None:
+                if basis_of(self.book, target) is not former:
+                    # Something else was edited meanwhile: it is built once more, with that.
+                    again = self._drafts.pop(target)
+                    now, self.target = self.target, target
+                    reason = self.put(text, may_wait=may_wait, **again)
+                    self.target = now
+                    self.on_built(reason)
+                elif fault and (draft or may_wait):
+                    self._found = (basis, target.part, fault)
+                    self.on_built("")
+                elif fault:
+                    self._drafts.pop(target)
+                    self.on_built(f"{fault} The curve is unchanged.")
+                else:
+                    self._drafts.pop(target)
+                    self.document.edit(text, with_basis(self.book, target, basis))
+                    self.on_built("")
+
+            def stopped() -> None:
+                self._drafts.pop(target, None)
+                self.on_built("The curve was not drawn to its end, and is unchanged.")
+
+            self.builder.build(basis, target.part, built, stopped)
+            return ""
+        fault = fault_of(basis, target.part)
         if fault and (draft or may_wait):
             self._drafts[self.target] = {**draft, **changes}
             return ""

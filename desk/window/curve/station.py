@@ -15,6 +15,7 @@ from desk.rates.compounding import Compounding
 from desk.rates.curve import DiscountCurve
 from desk.window.curve.bond_cells import added
 from desk.window.curve.bond_figures import fit_in_words
+from desk.window.curve.building import Builder, must_wait
 from desk.window.curve.comparison import (
     PASTED,
     Compared,
@@ -64,7 +65,10 @@ class CurveStation(Station):
         self, document: Document, jobs: Jobs, theme_switch: ThemeSwitch, parent: QWidget | None = None
     ) -> None:
         super().__init__(document, jobs, theme_switch, parent)
-        self.editor = Editor(document)
+        self.builder = Builder(jobs, "edited curve")
+        self.redrawer = Builder(jobs, "drawn curve")
+        self.editor = Editor(document, self.builder)
+        self.editor.on_built = self._on_built
         self.former = Former()
         self._source: Reading | None = None
         self._shown_book: Book | None = None
@@ -153,6 +157,7 @@ class CurveStation(Station):
         if self.document.source is not self._source:
             self._source = self.document.source
             self.editor.clear()
+            self.redrawer.stop()
             self.former.clear()
             self._pasted = None
             self._refusal = ""
@@ -204,6 +209,9 @@ class CurveStation(Station):
         if book is None:
             return
         target = self.target
+        if must_wait(self.editor.basis, target.part):
+            self._redraw_later()
+            return
         fault = ""
         shown: Shown | None = None
         try:
@@ -227,6 +235,35 @@ class CurveStation(Station):
         else:
             self._draw(book, basis, shown, other)
         self._tell(fault)
+
+    def _redraw_later(self) -> None:
+        """Build the curve of the book in the background; what was drawn last stays, marked as stale."""
+        basis, part = self.editor.basis, self.target.part
+
+        def again(fault: str) -> None:
+            if fault:
+                self._not_built(basis, part, fault)
+            else:
+                self.redraw()
+
+        self.pages.show_source(self.editor.drafted, part, None, is_draft=True)
+        self.redrawer.build(basis, part, again, lambda: self._not_built(basis, part, "It was stopped."))
+        self._tell("")
+
+    def _not_built(self, basis: Basis, part: Part, fault: str) -> None:
+        self.picture.clear()
+        self.misfit.hide()
+        self.rates.show_curve(None, until=1.0, compounding=Compounding.ANNUAL)
+        self.pages.show_source(basis, part, None, is_draft=True)
+        self.show_stale("Try again", self.redraw, text=f"There is no curve. {fault}")
+
+    def _on_built(self, reason: str) -> None:
+        """After a curve was built in the background for an edit."""
+        self._refusal = reason
+        self._shown_book = None
+        self.refresh()
+        if reason:
+            self._refuse(reason)
 
     def _other(self, book: Book) -> Compared | None:
         choices = choices_of(book, self.target, self.former, self._pasted)
@@ -287,6 +324,8 @@ class CurveStation(Station):
             )
         elif fault:
             self.show_stale("Close", self.hide_stale, text=fault)
+        elif self.redrawer.words:
+            self.show_stale(text=f"{self.redrawer.words} What is shown is of the former one.")
         else:
             self.hide_stale()
 
