@@ -212,6 +212,7 @@ class ModelsPart(Part):
 
     key = "models"
     title = "Models"
+    share = 32
     purpose = "Several models, or both measures, on the same book with the same settings"
 
     def __init__(self, station: ScenariosStation) -> None:

@@ -59,7 +59,8 @@ class Quantity:
         if self.kind == "rate":
             return numbers.rate(value, places, with_unit=True)
         if self.kind == "money":
-            return numbers.money(value)
+            scaled = numbers.money_scaled(value, self.unit)
+            return f"{scaled.text} {scaled.unit}".strip()
         return numbers.number(value, places)
 
     def shown_error(self, value: float) -> str:

@@ -41,6 +41,7 @@ __all__ = ["ScenariosStation"]
 
 _PARTS: tuple[type[Part], ...] = (PathsPart, CurvePart, ValuesPart, ConvergencePart, ModelsPart)
 _MEGABYTE = 1e6
+_BETWEEN_PARTS_MS = 100
 
 
 class ScenariosStation(Station):
@@ -71,6 +72,9 @@ class ScenariosStation(Station):
         self.outlook: RunOutlook | None = None
         self._parts: dict[str, Part] = {}
         self._shown_part = ""
+        # Parts take turns to be made before they are wanted: making one and showing it is too much at once.
+        self._preparing = QTimer(self, singleShot=True, interval=_BETWEEN_PARTS_MS)
+        self._preparing.timeout.connect(self._prepare)
         self.export = PathExport(self, jobs, say=self.message.emit, changed=self.request_refresh)
         self.run_form = RunForm(
             self.form,
@@ -164,6 +168,7 @@ class ScenariosStation(Station):
             return
         self._failure = ""
         self._job = self.document.run_simulation()
+        self._preparing.start()
         self.refresh_now()
 
     def add_model(self) -> None:
@@ -317,6 +322,7 @@ class ScenariosStation(Station):
         self._tables.setVisible(there)
         self.invitation.setVisible(not there)
         if there:
+            self._preparing.start()
             self.show_part(self._shown_part or _PARTS[self.tabs.currentIndex()].key)
 
     # Parts
@@ -348,6 +354,13 @@ class ScenariosStation(Station):
                 control.hide()
                 self._row.addWidget(control)
         return self._parts[key]
+
+    def _prepare(self) -> None:
+        """Make the next part that is not there yet."""
+        missing = next((each.key for each in _PARTS if each.key not in self._parts), None)
+        if missing is not None and self.document.book is not None:
+            self.part_of(missing)
+            self._preparing.start()
 
     def show_part(self, key: str) -> None:
         """Show a part.
