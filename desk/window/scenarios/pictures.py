@@ -272,7 +272,7 @@ class HistogramPicture(Picture):
         self.clear()
         self._histogram, self._quantity = histogram, quantity
         self._law = law = quantity.law(simulation, row)
-        self.set_title(f"{quantity.title} at year {year}")
+        self.set_title(f"{quantity.short_title} at year {year}")
         shown = numbers.exact(per) if quantity.kind != "rate" else numbers.rate(per, 2, with_unit=True)
         if quantity.kind == "money":
             scaled = numbers.money_scaled(per, quantity.unit, digits=0)

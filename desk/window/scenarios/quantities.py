@@ -17,6 +17,9 @@ from desk.window.parts.tables import Kind
 __all__ = ["Quantity", "quantities_of", "year_name"]
 
 
+_LONG_NAME = 28
+
+
 @dataclass(frozen=True, eq=False)
 class Quantity:
     """One quantity of a run.
@@ -46,6 +49,11 @@ class Quantity:
     digits: int
     summary: NodeSummary
     closed: ClosedForm | None
+
+    @property
+    def short_title(self) -> str:
+        """The title, cut where it would fill a picture's."""
+        return _short(self.title)
 
     @property
     def can_be_logarithmic(self) -> bool:
@@ -123,8 +131,8 @@ def quantities_of(simulation: Simulation, currency: str) -> tuple[Quantity, ...]
                 Quantity(
                     f"asset {place}",
                     asset.name,
-                    f"{asset.name}: one unit with dividends reinvested",
-                    "Value of 1 unit",
+                    f"{_short(asset.name)}: total return",
+                    "Value of 1 unit, dividends reinvested",
                     "",
                     number,
                     3,
@@ -161,6 +169,11 @@ def quantities_of(simulation: Simulation, currency: str) -> tuple[Quantity, ...]
             )
         )
     return tuple(found)
+
+
+def _short(name: str) -> str:
+    """A name that leaves room in a title."""
+    return name if len(name) <= _LONG_NAME else f"{name[: _LONG_NAME - 1].rstrip()}…"
 
 
 def year_name(year: float) -> str:
