@@ -20,6 +20,7 @@ from desk.window.jobs import Job, Jobs
 from desk.window.parts import numbers
 from desk.window.parts.fields import Combo
 from desk.window.parts.models import MODEL_TITLES
+from desk.window.parts.pages import Pages
 from desk.window.parts.plots import Picture
 from desk.window.parts.theme import GAP, STEP, WIDE, ThemeSwitch, keep_look
 from desk.window.scenarios.fitting_panel import FittingPanel, missing_text
@@ -32,7 +33,6 @@ from desk.window.scenarios.fitting_pictures import (
     YieldsPicture,
 )
 from desk.window.scenarios.fitting_tables import FiguresTable, ResidualsTable, TestsTable
-from desk.window.standing.pages import Pages
 
 __all__ = ["FittingPage"]
 

@@ -14,6 +14,7 @@ from desk.scenarios.curve_fan import CurveFan
 from desk.window.parts import numbers
 from desk.window.parts.boxes import TickBox
 from desk.window.parts.fields import Combo
+from desk.window.parts.pages import Pages
 from desk.window.parts.plots import Picture
 from desk.window.parts.theme import STEP, ThemeSwitch
 from desk.window.scenarios.part import Part, ShownRun
@@ -26,7 +27,6 @@ from desk.window.scenarios.result_tables import (
     ValuesTable,
 )
 from desk.window.scenarios.value_pictures import ConvergencePicture, ValuesPicture
-from desk.window.standing.pages import Pages
 
 if TYPE_CHECKING:
     from desk.window.scenarios.station import ScenariosStation

@@ -16,6 +16,7 @@ from desk.scenarios.drawn_paths import DrawnPaths
 from desk.scenarios.node_checks import node_checks
 from desk.window.parts.boxes import TickBox
 from desk.window.parts.fields import Combo
+from desk.window.parts.pages import Pages
 from desk.window.parts.theme import GAP, HALF, STEP, WIDE
 from desk.window.scenarios.part import Part, ShownRun
 from desk.window.scenarios.path_box import PathBox
@@ -29,7 +30,6 @@ from desk.window.scenarios.tables import (
     PercentilesTable,
     check_sentence,
 )
-from desk.window.standing.pages import Pages
 
 if TYPE_CHECKING:
     from desk.window.scenarios.station import ScenariosStation
