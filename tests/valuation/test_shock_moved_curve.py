@@ -87,6 +87,21 @@ def test_relative_moves_are_of_the_rate_stated_in_its_compounding() -> None:
     np.testing.assert_allclose(from_continuous(up.zero(TIMES), Compounding.ANNUAL), wanted, atol=1e-15)
 
 
+def test_a_least_size_goes_the_way_of_its_sign() -> None:
+    """A fall is at least so deep, whatever the rate; one that is deeper stays."""
+    flat = flat_curve(float(np.expm1(0.02)))
+    shallow = moved(flat, Move(MoveKind.RELATIVE, -0.1), Move(MoveKind.LEAST, -100.0))
+    deep = moved(flat, Move(MoveKind.RELATIVE, -0.75), Move(MoveKind.LEAST, -100.0))
+    negative = moved(
+        flat_curve(float(np.expm1(-0.01))), Move(MoveKind.RELATIVE, -0.75), Move(MoveKind.LEAST, -100.0)
+    )
+    rise = moved(flat, Move(MoveKind.RELATIVE, 0.1), Move(MoveKind.LEAST, 100.0))
+    np.testing.assert_allclose(shallow.zero(TIMES), 0.01, atol=1e-15)
+    np.testing.assert_allclose(deep.zero(TIMES), 0.005, atol=1e-15)
+    np.testing.assert_allclose(negative.zero(TIMES), -0.02, atol=1e-15)
+    np.testing.assert_allclose(rise.zero(TIMES), 0.03, atol=1e-15)
+
+
 @given(
     st.lists(st.floats(-0.03, 0.08), min_size=4, max_size=4),
     st.floats(-600.0, 600.0),

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import time
 from dataclasses import replace
 
 import numpy as np
@@ -14,7 +15,7 @@ from desk import tasks
 from desk.book import Move, MoveKind, Shock
 from desk.valuation.shock_base import shock_base
 from desk.valuation.shocks import run_shock
-from desk.valuation.what_if import curve_moves
+from desk.valuation.what_if import Frame, curve_moves
 from desk.window.figures import figures_of
 from desk.window.headline import Headline
 from desk.window.parts.theme import ThemeSwitch
@@ -310,3 +311,24 @@ def test_a_document_that_stops_while_frames_wait_begins_no_more(
     bench.document.stop()
     bench.jobs.shutdown()
     assert not bench.jobs.running
+
+
+def test_a_machine_that_grows_busy_leaves_the_window_awake(
+    bench: Bench, mode: WhatIfMode, monkeypatch: pytest.MonkeyPatch
+) -> None:
+    """A frame that took too long on the window's thread is the last one there."""
+    what_if = bench.document.what_if
+    _pull(mode, "level", -10.0)
+    assert what_if.engine is not None
+    frame = what_if.engine.frame
+
+    def slow(shock: Shock) -> Frame:
+        time.sleep(4 * MOST_MS / 1e3)
+        return frame(shock)
+
+    monkeypatch.setattr(what_if.engine, "frame", slow)
+    _pull(mode, "level", -20.0)
+    assert what_if.is_threaded
+    made = what_if.frames
+    _pull(mode, "level", -30.0)
+    assert what_if.frames == made
