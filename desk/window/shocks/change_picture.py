@@ -146,6 +146,15 @@ class ChangePicture(Picture):
         top = -self._first + 0.5
         self.set_range(x=(low - room, high + room), y=(top - count, top))
         self._name_rows()
+        self._count_rows()
+
+    def _count_rows(self) -> None:
+        """Say which rows are seen, where they are not all."""
+        count, every = self.rows_seen, len(self._rows)
+        seen = f"{self._first + 1} to {self._first + count} of {every:,}" if count < every else ""
+        if self._y.label != seen:
+            self._y.label = seen
+            self._y_heading.setText(self._y.heading)
 
     def _name_rows(self) -> None:
         metrics = QFontMetrics(soft_font(self.font()))

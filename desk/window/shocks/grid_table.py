@@ -19,7 +19,7 @@ __all__ = ["GridTable"]
 
 
 class GridTable(Table):
-    """Rows are sizes of the first move, columns those of the second."""
+    """As in the picture: columns are sizes of the first move, rows of the second, the greatest on top."""
 
     def __init__(self, mode: Mode) -> None:
         super().__init__(
@@ -38,11 +38,11 @@ class GridTable(Table):
             known = np.abs(value[np.isfinite(value)])
             scale = numbers.scale_for(float(known.max()) / 10.0 if known.size else 0.0)
             unit, value = numbers.unit_with_scale(unit, scale), value / scale.factor
-        first, second = axes
-        columns = [Column("size", first.label, first.unit, "number", digits=_places(grid.first_scale))]
-        places = _places(grid.second_scale)
-        for place, size in enumerate(grid.second_scale.tolist()):
-            heading = f"{numbers.signed(size, places)} {second.unit}"
+        across, up = axes
+        columns = [Column("size", up.label, up.unit, "number", digits=_places(grid.second_scale))]
+        places = _places(grid.first_scale)
+        for place, size in enumerate(grid.first_scale.tolist()):
+            heading = f"{numbers.signed(size, places)} {across.unit}"
             columns.append(
                 Column(
                     f"c{place}",
@@ -51,13 +51,12 @@ class GridTable(Table):
                     "rate" if kind == "rate" else "number",
                     digits=1,
                     is_change=kind == "money" and "change" in unit,
-                    tooltip=f"{second.label} {heading}",
+                    tooltip=f"{across.label} {heading}",
                 )
             )
         self.set_columns(columns)
-        self.set_rows(
-            {"size": grid.first_scale, **{f"c{place}": value[:, place] for place in range(value.shape[1])}}
-        )
+        cells = {f"c{place}": row[::-1] for place, row in enumerate(value)}
+        self.set_rows({"size": grid.second_scale[::-1], **cells})
 
 
 def _places(scale: FloatArray) -> int:
