@@ -128,7 +128,7 @@ def read_pasted(text: str, like: Shown) -> tuple[Shown | None, str]:
     if fault:
         return None, f"Nothing was taken. {fault}"
     terms, rates = np.array(pasted.columns["term"]), np.array(pasted.columns["rate"])
-    fault = quotes_fault(terms, rates, like.compounding)
+    fault = quotes_fault(terms, rates)
     if fault:
         return None, f"Nothing was taken. {fault}"
     try:

@@ -8,7 +8,6 @@ from dataclasses import dataclass
 import numpy as np
 
 from desk.book.arrays import FloatArray
-from desk.rates.compounding import Compounding
 from desk.window.parts import numbers
 
 __all__ = ["Pasted", "merged", "next_term", "quotes_fault", "read_cells"]
@@ -16,22 +15,24 @@ __all__ = ["Pasted", "merged", "next_term", "quotes_fault", "read_cells"]
 _MOST_SHOWN = 6
 _MOST_ROWS = 10_000
 _LONGEST = 24
+_MOST_YEARS = 200
+_LEAST_RATE, _MOST_RATE = -0.5, 1.0
+"""As in a workbook: what is edited can be saved and read back [1/year]."""
 
 
-def quotes_fault(
-    terms: FloatArray, rates: FloatArray, compounding: Compounding, *, what: str = "rate"
-) -> str:
+def quotes_fault(terms: FloatArray, rates: FloatArray, *, what: str = "rate", from_zero: bool = False) -> str:
     """Why these quotes make no curve, in one line for the reader; empty where they make one.
 
-    `what` is the name of a quote's figure.
+    `what` is the name of a quote's figure, and `from_zero` says whether a term may be 0.
     """
     if not terms.size:
         return "A curve needs at least one quote."
     if not (np.isfinite(terms).all() and np.isfinite(rates).all()):
         return f"Every quote needs a term and a {what}."
-    if (terms <= 0.0).any():
-        bad = float(terms[terms <= 0.0][0])
-        return f"A term must be above 0 years, not {numbers.exact(bad)}."
+    early = terms < 0.0 if from_zero else terms <= 0.0
+    if early.any():
+        least = "at least" if from_zero else "above"
+        return f"A term must be {least} 0 years, not {numbers.exact(float(terms[early][0]))}."
     steps = np.diff(terms)
     if (steps == 0.0).any():
         twice = float(terms[:-1][steps == 0.0][0])
@@ -42,10 +43,14 @@ def quotes_fault(
         return (
             f"Terms must rise: {numbers.exact(after)} years would come after {numbers.exact(before)} years."
         )
-    least = -compounding.per_year
-    if compounding is not Compounding.CONTINUOUS and (rates <= least).any():
+    if terms[-1] > _MOST_YEARS:
+        return f"A term must be at most {_MOST_YEARS} years, not {numbers.exact(float(terms[-1]))}."
+    far = (rates > _MOST_RATE) | (rates < _LEAST_RATE)
+    if far.any():
         return (
-            f"A rate compounded {compounding} must be above {numbers.rate(float(least), 0, with_unit=True)}."
+            f"A {what} must be from {numbers.rate(_LEAST_RATE, 0)} to "
+            f"{numbers.rate(_MOST_RATE, 0, with_unit=True)} a year, "
+            f"not {numbers.rate(float(rates[far][0]), 0, with_unit=True)}."
         )
     return ""
 

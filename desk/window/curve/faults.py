@@ -5,7 +5,6 @@ from __future__ import annotations
 import numpy as np
 
 from desk.book import Basis, BondFit, CurveBonds, CurveKind, LiabilityMethod
-from desk.rates.compounding import Compounding
 from desk.rates.curve_error import CurveError
 from desk.window.curve.edits import quotes_fault
 from desk.window.curve.targets import Part
@@ -30,16 +29,14 @@ def fault_of(basis: Basis, part: Part) -> str:
         inflation = basis.inflation
         if inflation is None:
             return ""
-        return quotes_fault(inflation.terms, inflation.rates, Compounding.ANNUAL) or _tried(basis, part)
+        return quotes_fault(inflation.terms, inflation.rates) or _tried(basis, part)
     if part is Part.CURVE:
         return _source_fault(basis) or _tried(basis, part)
     method = basis.liability_method
     if method is LiabilityMethod.CORPORATE_BONDS:
         return _bonds_fault(basis.liability_bonds, basis.liability_fit) or _tried(basis, part)
     if method is LiabilityMethod.TERM_SPREADS:
-        return quotes_fault(
-            basis.liability_terms, basis.liability_spreads, Compounding.CONTINUOUS, what="spread"
-        )
+        return quotes_fault(basis.liability_terms, basis.liability_spreads, what="spread", from_zero=True)
     if method is LiabilityMethod.EXPECTED_RETURN and basis.expected_return is None:
         return "There is no expected return: give it as a yearly rate."
     return _tried(basis, part)
@@ -48,7 +45,7 @@ def fault_of(basis: Basis, part: Part) -> str:
 def _source_fault(basis: Basis) -> str:
     kind = basis.curve_kind
     if kind in QUOTED_KINDS:
-        return quotes_fault(basis.terms, basis.rates, basis.compounding)
+        return quotes_fault(basis.terms, basis.rates)
     if kind is CurveKind.BONDS:
         return _bonds_fault(basis.bonds, basis.bond_fit)
     if kind is CurveKind.FLAT:

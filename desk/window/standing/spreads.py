@@ -29,8 +29,8 @@ def spreads_fault(terms: FloatArray, spreads: FloatArray) -> str:
         return "There must be a spread for one term at least."
     if not (np.isfinite(terms).all() and np.isfinite(spreads).all()):
         return "Every row needs a term and a spread."
-    if (terms <= 0.0).any():
-        return f"A term must be above 0 years, not {numbers.exact(float(terms[terms <= 0.0][0]))}."
+    if (terms < 0.0).any():
+        return f"A term must be at least 0 years, not {numbers.exact(float(terms[terms < 0.0][0]))}."
     steps = np.diff(terms)
     if (steps <= 0.0).any():
         place = int(np.flatnonzero(steps <= 0.0)[0])

@@ -303,23 +303,44 @@ def test_the_day_count_moves_the_dates(station: CurveStation, bench: Bench) -> N
 
 
 @pytest.mark.parametrize(
-    ("terms", "rates", "compounding", "part"),
+    ("terms", "rates", "part"),
     [
-        ([], [], Compounding.ANNUAL, "at least one"),
-        ([1.0, np.nan], [0.1, 0.1], Compounding.ANNUAL, "a term and a rate"),
-        ([1.0], [np.inf], Compounding.ANNUAL, "a term and a rate"),
-        ([1.0], [-1.0], Compounding.ANNUAL, "must be above"),
-        ([1.0], [-12.0], Compounding.MONTHLY, "must be above"),
-        ([1.0], [-1.0], Compounding.CONTINUOUS, ""),
-        ([1.0, 2.0], [-0.01, 0.0], Compounding.ANNUAL, ""),
+        ([], [], "at least one"),
+        ([1.0, np.nan], [0.1, 0.1], "a term and a rate"),
+        ([1.0], [np.inf], "a term and a rate"),
+        ([0.0], [0.02], "above 0 years"),
+        ([1.0], [-1.0], "from −50 to 100"),
+        ([1.0, 2.0], [0.02, 9.0], "not 900"),
+        ([1.0, 250.0], [0.02, 0.02], "at most 200 years"),
+        ([1.0, 2.0], [-0.01, 0.0], ""),
+        ([1.0, 200.0], [-0.5, 1.0], ""),
     ],
 )
-def test_what_is_wrong_with_quotes(
-    terms: list[float], rates: list[float], compounding: Compounding, part: str
-) -> None:
-    fault = quotes_fault(np.array(terms), np.array(rates), compounding)
+def test_what_is_wrong_with_quotes(terms: list[float], rates: list[float], part: str) -> None:
+    fault = quotes_fault(np.array(terms), np.array(rates))
     assert part in fault
     assert bool(fault) == bool(part)
+
+
+def test_spreads_may_begin_today() -> None:
+    terms, spreads = np.array([0.0, 5.0]), np.array([0.01, 0.012])
+    assert not quotes_fault(terms, spreads, what="spread", from_zero=True)
+    assert "at least 0 years" in quotes_fault(-terms[::-1], spreads, what="spread", from_zero=True)
+
+
+def test_a_curve_that_cannot_converge_is_refused(station: CurveStation, bench: Bench) -> None:
+    bench.edit_basis(
+        extrapolation=Extrapolation.SMITH_WILSON, ultimate_forward_rate=0.04, convergence_tolerance=1e-10
+    )
+    station.refresh_now()
+    before = bench.book
+    for point, reason in ((5.0, "not after the last liquid point"), (10.5, "No alpha brings")):
+        station.fields.convergence_point.committed.emit(point)
+        assert reason in station.stale_text
+        assert "The curve is unchanged." in station.stale_text
+        assert bench.book is before
+    station.fields.convergence_point.committed.emit(70.0)
+    assert bench.book.basis.convergence_point == 70.0
 
 
 @pytest.mark.parametrize("grid", [[], [[]], [["", ""]], [["Term", "Rate"]]])

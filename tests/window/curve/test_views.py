@@ -216,7 +216,7 @@ def test_inflation_is_pasted_typed_and_taken_back(station: CurveStation, bench: 
         ("1\t2\n1\t3", "would stand twice"),
         ("1\t\n2\t2", "the rate is missing"),
         ("one\t2", "“one” is no term"),
-        ("1\t-100", "must be above"),
+        ("1\t-100", "must be from"),
     ],
 )
 def test_wrong_pastes_leave_inflation_as_it_is(

@@ -120,7 +120,8 @@ def test_bases_in_words() -> None:
     [
         ([], [], "one term at least"),
         ([1.0, 2.0], [0.01, np.nan], "needs a term and a spread"),
-        ([0.0, 2.0], [0.01, 0.01], "above 0 years"),
+        ([-1.0, 2.0], [0.01, 0.01], "at least 0 years"),
+        ([0.0, 2.0], [0.01, 0.01], ""),
         ([2.0, 2.0], [0.01, 0.01], "rise: 2 years would come after 2 years"),
         ([1.0, 2.0], [0.01, 3.0], "out of all proportion"),
         ([1.0, 2.0], [0.01, 0.02], ""),
