@@ -92,7 +92,7 @@ def small_endowment() -> Book:
                 volatility=owned_floats([0.10]),
                 dividend_yield=owned_floats([0.02]),
                 correlation=owned_floats([[1.0]]),
-                rates_correlation=owned_floats([0.05]),
+                rates_correlation=owned_floats([0.0]),
             ),
             run=Run(paths=10_000, horizon_years=30, steps_per_year=12, seed=1693, measure=Measure.REAL_WORLD),
             shocks=endowment_shocks(),

@@ -243,7 +243,8 @@ def run_tests(python: Path, arguments: Sequence[str]) -> int:
         ("format", ["ruff", "format", "--check", "."]),
         ("lint", ["ruff", "check", "."]),
         ("types", ["mypy"]),
-        ("tests", ["pytest", *arguments]),
+        # A file to one process: what its tests share is made once.
+        ("tests", ["pytest", "-n", "auto", "--dist", "loadfile", *arguments]),
     ):
         say(f"— {title}")
         done = subprocess.run([python, "-m", *command], cwd=PROJECT, env=settings, check=False)
