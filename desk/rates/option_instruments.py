@@ -11,12 +11,12 @@ import math
 from collections.abc import Sequence
 from dataclasses import dataclass
 from functools import cached_property
-from itertools import pairwise
 
 import numpy as np
 from numpy.typing import ArrayLike, NDArray
 
 from desk.rates.curve import DiscountCurve
+from desk.rates.option_arbitrage import arbitrage_faults
 from desk.rates.option_formulas import forward_option, implied_volatility
 
 __all__ = ["OptionQuotes", "OptionQuotesError", "option_quotes"]
@@ -212,7 +212,7 @@ def option_quotes(
     if faults:
         raise OptionQuotesError(faults)
     quotes = _laid_out(curve, names, kinds, arrays)
-    faults = _shift_faults(quotes) or _arbitrage(quotes, arrays["frequency"])
+    faults = _shift_faults(quotes) or arbitrage_faults(quotes, arrays["frequency"])
     if faults:
         raise OptionQuotesError(faults)
     return quotes
@@ -327,51 +327,3 @@ def _shift_faults(quotes: OptionQuotes) -> list[tuple[int, str]]:
                 )
                 break
     return faults
-
-
-def _arbitrage(quotes: OptionQuotes, frequency: FloatArray) -> list[tuple[int, str]]:
-    """Quotes that let money be made of nothing: caps worth less though they run longer, or at a strike that
-    pays more."""
-    faults = []
-    prices = quotes.prices(quotes.volatility)
-    groups: dict[tuple[object, ...], list[int]] = {}
-    for row, name in enumerate(quotes.instrument):
-        if not quotes.swaption[row]:
-            key: tuple[object, ...] = (
-                "term",
-                name,
-                round(float(quotes.strike[row]), 12),
-                float(frequency[row]),
-            )
-            groups.setdefault(key, []).append(row)
-        key = (
-            "strike",
-            name,
-            float(quotes.expiry[row]),
-            float(quotes.length[row]) if quotes.swaption[row] else 0.0,
-            float(frequency[row]),
-        )
-        groups.setdefault(key, []).append(row)
-    for key, rows in groups.items():
-        by_term = key[0] == "term"
-        place = quotes.expiry if by_term else np.where(quotes.call, -1.0, 1.0) * quotes.strike
-        ordered = sorted(rows, key=lambda row: (float(place[row]), float(prices[row])))
-        for before, row in pairwise(ordered):
-            slack = 1e-9 * float(prices[before])
-            if place[row] > place[before] and prices[row] < prices[before] - slack:
-                if by_term:
-                    text = (
-                        f"at its volatility this {quotes.instrument[row]} to {quotes.expiry[row]:g} years is "
-                        f"worth {1e4 * prices[row]:.2f} basis points, less than the one to "
-                        f"{quotes.expiry[before]:g} years in quote {before + 1} "
-                        f"({1e4 * prices[before]:.2f}), though it insures more: one of the two is wrong."
-                    )
-                else:
-                    text = (
-                        f"at its strike of {100.0 * quotes.strike[row]:.4g} % this "
-                        f"{quotes.instrument[row]} pays more than that of quote {before + 1} at "
-                        f"{100.0 * quotes.strike[before]:.4g} %, yet by its volatility it is worth less: "
-                        "one of the two is wrong."
-                    )
-                faults.append((row, text))
-    return sorted(faults)

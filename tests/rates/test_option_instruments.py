@@ -333,6 +333,34 @@ def test_too_few_quotes_and_unknown_models() -> None:
             2,
             "worth less",
         ),
+        (
+            {"strike": np.array([0.02, 0.025, 0.03]), "volatility": np.array([0.006, 0.0066, 0.006])},
+            1,
+            "above the straight line between those of quotes",
+        ),
+        (
+            {"strike": np.full(3, 0.02), "volatility": np.array([0.006, 0.006, 0.007])},
+            2,
+            "quote 1 over again",
+        ),
+        (
+            {
+                "instrument": ["payer swaption", "payer swaption", "receiver swaption"],
+                "strike": np.array([0.02, 0.03, 0.02]),
+                "volatility": np.array([0.006, 0.006, 0.008]),
+            },
+            2,
+            "must have one volatility",
+        ),
+        (
+            {
+                "instrument": ["cap", "floor", "cap"],
+                "strike": np.array([0.02, 0.02, 0.03]),
+                "volatility": np.array([0.006, 0.008, 0.006]),
+            },
+            1,
+            "must have one volatility",
+        ),
     ],
 )
 def test_faulty_quotes(given: dict[str, Any], row: int, said: str) -> None:
@@ -341,6 +369,18 @@ def test_faulty_quotes(given: dict[str, Any], row: int, said: str) -> None:
     assert any(at == row and said in text for at, text in caught.value.faults)
     assert f"Quote {row + 1}:" in str(caught.value)
     assert pickle.loads(pickle.dumps(caught.value)).faults == caught.value.faults
+
+
+def test_call_and_put_of_one_volatility_hold_together() -> None:
+    """A volatility that is the same at every strike leaves nothing to be made of nothing (Black, 1976): caps
+    beside floors, payers beside receivers, and the same quote twice."""
+    names = [*["cap", "floor"] * 5, *["payer swaption", "receiver swaption"] * 5]
+    strikes = np.tile(np.repeat(np.linspace(0.005, 0.06, 5), 2), 2)
+    for kind, volatility in (("normal", 0.007), ("lognormal", 0.25)):
+        given = _columns(
+            20, instrument=names, strike=strikes, volatility=np.full(20, volatility), kind=[kind] * 20
+        )
+        assert option_quotes(CURVE, **given).count == 20
 
 
 def test_lognormal_quotes_on_negative_rates_ask_for_a_shift() -> None:
