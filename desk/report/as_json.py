@@ -11,16 +11,23 @@ from typing import Any
 
 from desk.book import Book, Fault
 from desk.intake.records import Reading
-from desk.report.as_sampling import sampling_object
+from desk.report.as_sampling import convergence_objects, gain_objects, sampling_object
+from desk.report.as_scenarios import (
+    diagnostics_object,
+    levels_object,
+    price_index_object,
+    risky_assets_object,
+    summary_rows,
+)
 from desk.report.basis_objects import (
     curve_object,
     inflation_object,
     liability_basis_object,
     line_objects,
 )
-from desk.report.plain_numbers import plain_number, plain_rows
+from desk.report.plain_numbers import percentile_name, plain_number, plain_rows
 from desk.report.said_once import further_faults
-from desk.scenarios.records import Distribution, NodeSummary, Simulation
+from desk.scenarios.records import Distribution, Simulation
 from desk.valuation.records import LineStanding, Measures, Standing
 
 __all__ = ["check_object", "fault_object", "percentile_name", "simulation_object", "standing_object", "text"]
@@ -46,12 +53,6 @@ def text(value: object) -> str:
         If a number in it is not finite.
     """
     return json.dumps(value, allow_nan=False, indent=2)
-
-
-def percentile_name(level: float) -> str:
-    """The key of a percentile: ``p05`` for 5, ``p97.5`` for 97.5."""
-    whole, _, part = repr(float(level)).partition(".")
-    return f"p{whole:>02}" if part == "0" else f"p{whole:>02}.{part}"
 
 
 def fault_object(fault: Fault) -> dict[str, str]:
@@ -195,7 +196,8 @@ def simulation_object(simulation: Simulation, faults: Iterable[Fault] = ()) -> d
     Returns
     -------
     dict
-        Years in years, rates continuously compounded per year, amounts in the book's currency.
+        Years in years, rates continuously compounded per year, amounts in the book's currency, nothing
+        rounded. The keys are the same for every run; what a run does not have is None.
     """
     check = simulation.repricing
     return {
@@ -204,15 +206,23 @@ def simulation_object(simulation: Simulation, faults: Iterable[Fault] = ()) -> d
         "seed": simulation.seed,
         "measure": simulation.measure.value,
         "model": str(simulation.model),
-        "savings_account": _summary(
+        "savings_account": summary_rows(
             simulation.savings_account,
+            closed=simulation.closed_form,
+            has_law=True,
             mean_discount=check.mean_discount,
             mean_discount_se=check.mean_discount_se,
             curve_discount=check.curve_discount,
+            expected_discount=check.expected_discount,
         ),
-        "short_rate": _summary(simulation.short_rate),
+        "short_rate": summary_rows(simulation.short_rate),
         "present_value": {side.name: _distribution(side) for side in simulation.present_value},
+        "risky_assets": risky_assets_object(simulation.risky),
+        "price_index": price_index_object(simulation.index),
+        "diagnostics": diagnostics_object(simulation),
         "sampling": sampling_object(simulation),
+        "convergence": convergence_objects(simulation),
+        "gains": gain_objects(simulation),
         "faults": [fault_object(fault) for fault in _together(faults, simulation.faults)],
     }
 
@@ -241,24 +251,16 @@ def _line(line: LineStanding) -> dict[str, Any]:
     }
 
 
-def _summary(summary: NodeSummary, **further: Any) -> list[dict[str, float | int | None]]:
-    """A quantity by year: mean, standard deviation, percentiles, and what stands beside them."""
-    percentiles = {
-        percentile_name(level): summary.percentile[:, index] for index, level in enumerate(summary.levels)
-    }
-    return plain_rows(year=summary.year, mean=summary.mean, sd=summary.sd, **percentiles, **further)
-
-
-def _distribution(side: Distribution) -> dict[str, float | int | None]:
+def _distribution(side: Distribution) -> dict[str, Any]:
     """The pathwise present value of one side."""
-    percentiles = {
-        percentile_name(level): plain_number(value)
-        for level, value in zip(side.levels, side.percentile, strict=True)
-    }
+    by_level = ("percentile_se", "percentile_low", "percentile_high", "tail_mean", "tail_mean_se")
     return {
         "mean": plain_number(side.mean),
         "se": plain_number(side.se),
         "sd": plain_number(side.sd),
-        **percentiles,
+        **levels_object(side.levels, side.percentile),
         "curve": plain_number(side.curve),
+        "below_zero": plain_number(side.below_zero),
+        "below_zero_se": plain_number(side.below_zero_se),
+        **{name: levels_object(side.levels, getattr(side, name)) for name in by_level},
     }

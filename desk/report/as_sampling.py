@@ -7,10 +7,10 @@ from typing import Any
 
 from desk.report.plain_numbers import plain_number, plain_rows
 from desk.report.text_tables import grouped, percent, printable, table, wrapped
-from desk.scenarios.records import Distribution, NodeSummary, Simulation
+from desk.scenarios.records import Simulation
 from desk.scenarios.sampling_records import Convergence, SamplingGain
 
-__all__ = ["sampling_object", "sampling_text"]
+__all__ = ["convergence_objects", "gain_objects", "sampling_object", "sampling_text"]
 
 
 def sampling_object(simulation: Simulation) -> dict[str, Any]:
@@ -24,31 +24,25 @@ def sampling_object(simulation: Simulation) -> dict[str, Any]:
     -------
     dict
         `method` (plain, antithetic, sobol), `bridge` (None without Sobol points), `moment_matching`,
-        `replicates` (1 for independent paths); `tails` with, for the sides and for the savings account at the
-        horizon, each level's percentile and tail mean with their errors; `convergence`, a list a figure; and
-        `gains` over plain sampling.
+        `replicates` (1 for independent paths).
     """
     stated = dict(simulation.provenance.settings)
-    account = simulation.savings_account
     return {
         "method": stated.get("sampling", "plain"),
         "bridge": stated.get("bridge"),
         "moment_matching": "moment_matching" in stated,
         "replicates": simulation.replicates,
-        "tails": {
-            **{side.name: _tails(side) for side in simulation.present_value},
-            "savings_account": _tails(account, row=-1),
-        },
-        "convergence": [_convergence(one) for one in simulation.convergence],
-        "gains": [_gain(one) for one in simulation.gains],
     }
 
 
-def _tails(of: Distribution | NodeSummary, *, row: int | None = None) -> list[dict[str, float | int | None]]:
-    """Percentiles and tail means by level, of a row of a summary or of a distribution."""
-    names = ("percentile", "percentile_se", "percentile_low", "percentile_high", "tail_mean", "tail_mean_se")
-    columns = {name: getattr(of, name) if row is None else getattr(of, name)[row] for name in names}
-    return plain_rows(level=of.levels, **columns)
+def convergence_objects(simulation: Simulation) -> list[dict[str, Any]] | None:
+    """The headline figures after part of the paths; None where they were not followed."""
+    return [_convergence(one) for one in simulation.convergence] or None
+
+
+def gain_objects(simulation: Simulation) -> list[dict[str, Any]] | None:
+    """Gains over plain sampling; None for a plain run."""
+    return [_gain(one) for one in simulation.gains] if simulation.replicates > 1 else None
 
 
 def _convergence(settled: Convergence) -> dict[str, Any]:

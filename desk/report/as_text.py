@@ -9,7 +9,9 @@ import numpy as np
 from desk.book import Book, Fault, Severity
 from desk.intake.records import Reading
 from desk.report.as_sampling import sampling_text
+from desk.report.as_scenarios import beside_text, checks_text
 from desk.report.basis_text import basis_text, comparison_text, inflation_text
+from desk.report.scenario_wording import measure_use, own_curve, run_label
 from desk.report.text_tables import (
     LINE_WIDTH,
     MISSING,
@@ -100,16 +102,15 @@ def simulation_text(simulation: Simulation, *, currency: str, title: str = "") -
     """A run as tables."""
     account = simulation.savings_account
     shown = _years_shown(account.year)
-    head = (
-        f"{_count(simulation.paths, 'path')} of {simulation.model} over "
-        f"{_count(simulation.horizon_years, 'year')}, {_count(simulation.steps_per_year, 'step')} a year, "
-        f"{simulation.measure} measure, seed {simulation.seed}"
-    )
+    head = run_label(simulation, horizon=_count(simulation.horizon_years, "year"))
     blocks = [
-        f"{printable(title)}\n{head}" if title else head,
+        f"{printable(title)}\n{wrapped(head)}" if title else wrapped(head),
+        wrapped(f"{measure_use(simulation)} {own_curve(simulation)}"),
         "Savings account: one unit rolled over\n" + _summary(account, shown, lambda value: grouped(value, 4)),
         "Check of the mean of 1/R against the curve\n" + _repricing(simulation, shown),
         "Short rate, continuously compounded [% a year]\n" + _summary(simulation.short_rate, shown, percent),
+        *beside_text(simulation, currency=currency),
+        checks_text(simulation),
         "Present values along the paths\n" + _distributions(simulation, printable(currency)),
         sampling_text(simulation, currency=currency),
         wrapped(QUANTILE_METHOD),

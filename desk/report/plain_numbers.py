@@ -6,7 +6,7 @@ import math
 from collections.abc import Sequence
 from typing import Any
 
-__all__ = ["plain_number", "plain_rows"]
+__all__ = ["percentile_name", "plain_number", "plain_rows"]
 
 
 def plain_number(value: Any) -> float | int | None:
@@ -25,3 +25,9 @@ def plain_rows(**columns: Sequence[Any] | Any) -> list[dict[str, float | int | N
         {name: plain_number(value) for name, value in zip(columns, row, strict=True)}
         for row in zip(*columns.values(), strict=True)
     ]
+
+
+def percentile_name(level: float) -> str:
+    """The key of a percentile: ``p05`` for 5, ``p97.5`` for 97.5."""
+    whole, _, part = repr(float(level)).partition(".")
+    return f"p{whole:>02}" if part == "0" else f"p{whole:>02}.{part}"

@@ -7,6 +7,7 @@ import re
 from datetime import datetime
 from functools import lru_cache
 from pathlib import Path
+from statistics import NormalDist
 from types import CodeType
 from typing import Any
 
@@ -41,6 +42,11 @@ class Spreadsheet:
         """Value of one cell."""
         column, row, _, _ = range_boundaries(address)
         return self._cell(sheet, int(row or 0), int(column or 0))
+
+    def forget(self) -> None:
+        """Evaluate everything anew: cells were changed after one was asked for."""
+        self._known.clear()
+        self._areas.clear()
 
     def formulas(self) -> list[tuple[str, str, str]]:
         """Sheet, address and text of every formula."""
@@ -179,6 +185,7 @@ _FUNCTIONS: dict[str, Any] = {
     "AND": lambda *values: all(values),
     "IF": lambda condition, one, other: one if condition else other,
     "NORMSDIST": _normal,
+    "NORMSINV": lambda share: NormalDist().inv_cdf(share),
 }
 
 _FUNCTIONS |= {

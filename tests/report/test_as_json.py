@@ -18,6 +18,8 @@ MEASURES = {
     "convexity", "dispersion", "dv01",
 }  # fmt: skip
 PERCENTILES = {"p01", "p05", "p25", "p50", "p75", "p95", "p99"}
+BY_LEVEL = {"percentile_se", "percentile_low", "percentile_high", "tail_mean", "tail_mean_se"}
+SAMPLED = {"mean_se", "sd_se"}
 FAULT = {"sheet", "cell", "found", "expected", "mend", "severity"}
 
 
@@ -98,14 +100,18 @@ def test_simulation_has_the_keys_of_the_contract() -> None:
     found = as_json.simulation_object(run, examples.reading().faults)
     assert set(found) == {
         "paths", "steps_per_year", "seed", "measure", "model", "savings_account", "short_rate",
-        "present_value", "sampling", "faults",
+        "present_value", "risky_assets", "price_index", "diagnostics", "sampling", "convergence", "gains",
+        "faults",
     }  # fmt: skip
     account = {"year", "mean", "sd", "mean_discount", "mean_discount_se", "curve_discount"} | PERCENTILES
-    assert all(set(row) == account for row in found["savings_account"])
-    assert all(set(row) == {"year", "mean", "sd"} | PERCENTILES for row in found["short_rate"])
+    further = {"expected_discount", "closed_form"}
+    assert all(set(row) == account | BY_LEVEL | SAMPLED | further for row in found["savings_account"])
+    plain = {"year", "mean", "sd"} | PERCENTILES
+    assert all(set(row) == plain | BY_LEVEL | SAMPLED for row in found["short_rate"])
     assert set(found["present_value"]) == {"assets", "liabilities", "surplus"}
     assert all(
-        set(side) == {"mean", "se", "sd", "curve"} | PERCENTILES for side in found["present_value"].values()
+        set(side) == {"mean", "se", "sd", "curve", "below_zero", "below_zero_se"} | PERCENTILES | BY_LEVEL
+        for side in found["present_value"].values()
     )
     assert (found["paths"], found["steps_per_year"], found["seed"]) == (400, 2, 7)
     assert (found["measure"], found["model"]) == ("pricing", "hull-white")

@@ -25,10 +25,13 @@ from tests.report.spreadsheet import FUNCTION_CALL, FUNCTION_NAMES, Spreadsheet
 
 SHEETS = [
     "Summary", "Basis and curve", "Curve by term", "Liabilities", "Holdings", "Asset flows", "Standing",
-    "Key rates", "Periods", "Savings account", "Short rate", "Present values", "Checks", "Faults",
-    "Provenance",
+    "Key rates", "Periods", "Scenario model", "Savings account", "Short rate", "Present values",
+    "Scenario diagnostics", "Convergence", "Checks", "Faults", "Provenance",
 ]  # fmt: skip
-RUN_SHEETS = {"Savings account", "Short rate", "Present values"}
+RUN_SHEETS = {
+    "Scenario model", "Savings account", "Short rate", "Present values", "Scenario diagnostics",
+    "Convergence",
+}  # fmt: skip
 MASTER = ("Summary", "B3")
 
 
@@ -236,7 +239,7 @@ def charts(path: Path) -> list[Any]:
 def test_charts_have_titles_axes_and_straight_lines(report: Path) -> None:
     """Each chart shows its axes with titles and units, and no line is bent."""
     found = charts(report)
-    assert len(found) == 12
+    assert len(found) == 18
     for chart in found:
         assert chart.findall(f".//{CHART}title")
         axes = [axis for kind in ("catAx", "valAx") for axis in chart.iter(f"{CHART}{kind}")]

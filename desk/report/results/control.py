@@ -17,9 +17,9 @@ from desk.report.results.flows import FlowSheet
 from desk.report.results.key_rates import key_rate_chart
 from desk.report.results.periods import flow_chart
 from desk.report.results.plan import FIRST_ROW, HEADING_ROW, Block, Formula, SheetPlan
-from desk.report.results.runs import run_label
 from desk.report.results.shocks import shock_notes, worst_of
 from desk.report.said_once import further_faults
+from desk.report.scenario_wording import checks_words, run_label
 from desk.report.wording import CAUTION, MEASURES, QUANTILE_METHOD, liability_words
 from desk.scenarios.records import Simulation
 from desk.valuation.records import Standing
@@ -227,7 +227,7 @@ def _how_to_read(
         )
         notes.append(f"{why}: those sheets are left out.")
     else:
-        notes.append(f"Simulated: {run_label(simulation)}. {QUANTILE_METHOD}")
+        notes.append(f"Simulated: {run_label(simulation)}. {checks_words(simulation)} {QUANTILE_METHOD}")
     notes += shock_notes(shocks)
     notes += [
         f"{sheet.plan.name}: {sheet.rows_before:,} flows are summed by line and year."

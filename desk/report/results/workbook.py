@@ -24,7 +24,7 @@ from desk.report.results.naming import FIRST, SECOND
 from desk.report.results.periods import plan_periods
 from desk.report.results.plan import MASTER_CHECK, SheetPlan, widen, write_sheet
 from desk.report.results.position import Position, plan_position
-from desk.report.results.runs import plan_present_values, plan_savings_account, plan_short_rate
+from desk.report.results.runs import plan_run
 from desk.report.results.shocks import plan_shocks
 from desk.report.results.standing import plan_lines
 from desk.report.safe_cells import clean_text, write_whole
@@ -156,6 +156,9 @@ def plan_sheets(
         recomputed = recomputed | {"least_surplus": shocked.least_surplus}
     compared, of_second = _second_basis(book, standing, second, first, checks)
     fitted = plan_calibrations(*fits, checks)
+    drawn: list[SheetPlan] = []
+    if simulation is not None:
+        drawn = plan_run(book, simulation, currency=standing.currency, checks=checks)
     summary = plan_summary(
         reading,
         standing,
@@ -174,10 +177,7 @@ def plan_sheets(
     if shocked is not None:
         plans += shocked.sheets
     plans += fitted
-    if simulation is not None:
-        plans.append(plan_savings_account(simulation))
-        plans.append(plan_short_rate(simulation))
-        plans.append(plan_present_values(simulation, currency=standing.currency))
+    plans += drawn
     plans.append(checks.plan())
     plans.append(plan_faults(reading, standing, simulation, second=compared.standing, shocks=shocks))
     plans.append(plan_provenance(reading, standing, simulation, shocks=shocks, written_at=written_at))
