@@ -10,13 +10,13 @@ import numpy as np
 from desk.book.arrays import FloatArray
 from desk.window.parts import numbers
 
-__all__ = ["Pasted", "merged", "next_term", "quotes_fault", "read_cells"]
+__all__ = ["LEAST_RATE", "MOST_RATE", "Pasted", "merged", "next_term", "quotes_fault", "read_cells"]
 
 _MOST_SHOWN = 6
 _MOST_ROWS = 10_000
 _LONGEST = 24
 _MOST_YEARS = 200
-_LEAST_RATE, _MOST_RATE = -0.5, 1.0
+LEAST_RATE, MOST_RATE = -0.5, 1.0
 """As in a workbook: what is edited can be saved and read back [1/year]."""
 
 
@@ -45,11 +45,11 @@ def quotes_fault(terms: FloatArray, rates: FloatArray, *, what: str = "rate", fr
         )
     if terms[-1] > _MOST_YEARS:
         return f"A term must be at most {_MOST_YEARS} years, not {numbers.exact(float(terms[-1]))}."
-    far = (rates > _MOST_RATE) | (rates < _LEAST_RATE)
+    far = (rates > MOST_RATE) | (rates < LEAST_RATE)
     if far.any():
         return (
-            f"A {what} must be from {numbers.rate(_LEAST_RATE, 0)} to "
-            f"{numbers.rate(_MOST_RATE, 0, with_unit=True)} a year, "
+            f"A {what} must be from {numbers.rate(LEAST_RATE, 0)} to "
+            f"{numbers.rate(MOST_RATE, 0, with_unit=True)} a year, "
             f"not {numbers.rate(float(rates[far][0]), 0, with_unit=True)}."
         )
     return ""

@@ -6,7 +6,7 @@ import numpy as np
 
 from desk.book import Basis, BondFit, CurveBonds, CurveKind, LiabilityMethod
 from desk.rates.curve_error import CurveError
-from desk.window.curve.edits import quotes_fault
+from desk.window.curve.edits import LEAST_RATE, MOST_RATE, quotes_fault
 from desk.window.curve.targets import Part
 from desk.window.parts import numbers
 
@@ -16,6 +16,8 @@ QUOTED_KINDS = (CurveKind.ZERO, CurveKind.PAR, CurveKind.SWAP)
 """Kinds of curve with one rate a term."""
 NO_BONDS = "There are no bonds yet: paste them, or add them one by one."
 _MOST_NAMED = 3
+_MOST_PRICE = 1e6
+"""Per 100 of nominal, as in a workbook."""
 
 
 def least_bonds(fit: BondFit) -> int:
@@ -60,7 +62,20 @@ def _bonds_fault(bonds: CurveBonds | None, fit: BondFit) -> str:
     if len(bonds) < least:
         count = f"There {'is one bond' if len(bonds) == 1 else f'are {len(bonds)} bonds'}"
         return f"{count}, and this fit needs {least}: add more, or choose a fit of fewer parameters."
+    with np.errstate(invalid="ignore"):  # where one of price and yield is given the other is none
+        for wrong, what in (
+            (bonds.coupon > MOST_RATE, f"a coupon is at most {_shown(MOST_RATE)} a year"),
+            (bonds.bond_yield > MOST_RATE, f"a yield is at most {_shown(MOST_RATE)} a year"),
+            (bonds.bond_yield < LEAST_RATE, f"a yield is at least {_shown(LEAST_RATE)} a year"),
+            (bonds.price > _MOST_PRICE, "a price is at most 1,000,000 per 100 of nominal"),
+        ):
+            for row in np.flatnonzero(wrong)[:1].tolist():
+                return f"{bonds.names[row] or f'Bond {row + 1}'}: {what}."
     return ""
+
+
+def _shown(rate: float) -> str:
+    return numbers.rate(rate, 0, with_unit=True)
 
 
 def _tried(basis: Basis, part: Part) -> str:

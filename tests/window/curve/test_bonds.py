@@ -402,3 +402,21 @@ def test_a_fit_that_is_none_says_so(bonded: CurveStation) -> None:
     put_on_clipboard("\n".join(rows))
     bonded.bonds.replace_all()
     assert "That is no fit: check the bonds furthest off." in bonded.bonds.words
+
+
+@pytest.mark.parametrize(
+    ("key", "text", "reason"),
+    [
+        ("yield", "210", "Gilt 2033: a yield is at most 100\u202f% a year."),
+        ("yield", "-60", "a yield is at least −50\u202f% a year."),
+        ("coupon", "300", "a coupon is at most 100\u202f% a year."),
+        ("price", "2000000", "a price is at most 1,000,000"),
+    ],
+)
+def test_what_no_workbook_could_give_back_is_refused(
+    bonded: CurveStation, bench: Bench, key: str, text: str, reason: str
+) -> None:
+    before = bench.book
+    assert not edit(bonded.bonds.table, 0, key, text)
+    assert reason in bonded.stale_text
+    assert bench.book is before
