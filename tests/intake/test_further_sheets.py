@@ -21,6 +21,7 @@ from desk.book import (
     Move,
     MoveKind,
     Notes,
+    PriceKind,
     Severity,
     Shock,
     ShockSettings,
@@ -82,6 +83,23 @@ def test_inflation_of_the_second_basis(tmp_path: Path) -> None:
     assert second.inflation is not None
     assert (second.inflation.rates.tolist(), second.inflation.volatility) == ([0.03], 0.02)
     assert second.inflation.recent == 0.04
+
+
+def test_prices_are_clean_where_nothing_is_said_and_an_index_lags_three_months(tmp_path: Path) -> None:
+    sheets = by_bonds()
+    kind = sheets["Curve bonds"][0].index("Price kind")
+    for row, stated in ((1, None), (2, "dirty"), (3, "clean")):
+        sheets["Curve bonds"][row][kind] = stated
+    sheets["Holdings"] = [
+        ["Name", "Kind", "Nominal", "Coupon", "Frequency", "Maturity", "Price"],
+        ["Linked 2040", "linked bond", 100, 0.01, 2, date(2040, 3, 22), 99],
+    ]
+    book = book_of(sheets, tmp_path)
+    assert book.basis.bonds is not None
+    assert book.basis.bonds.is_clean[:3].tolist() == [True, False, True]
+    (holding,) = book.holdings
+    assert holding.price_kind is PriceKind.CLEAN
+    assert (holding.index_lag_months, holding.index_ratio, holding.has_principal_floor) == (3, 1.0, False)
 
 
 def test_terms_of_lines(wide: Book) -> None:
