@@ -131,7 +131,7 @@ def _result(result: ShockResult, thresholds: tuple[float, ...]) -> dict[str, Any
         "source": result.source,
         **_position(result),
         **{name: finite(getattr(result, name)) for name in _CHANGES},
-        "band": band_name(result.band, thresholds),
+        "band": _band(result, thresholds),
         "moves": [
             {
                 "move": move.kind.value,
@@ -147,6 +147,11 @@ def _result(result: ShockResult, thresholds: tuple[float, ...]) -> dict[str, Any
 def finite(figure: float) -> float | None:
     """A plain finite number, or None."""
     return figure if -float("inf") < figure < float("inf") else None
+
+
+def _band(result: ShockResult, thresholds: tuple[float, ...]) -> str:
+    """The band in a word; none where there is no funding ratio to judge."""
+    return "" if finite(result.funding_ratio) is None else band_name(result.band, thresholds)
 
 
 def shocks_text(found: ShockTable, *, title: str = "", reached: Reached | None = None) -> str:
@@ -193,7 +198,7 @@ def shocks_text(found: ShockTable, *, title: str = "", reached: Reached | None =
                 percent(result.funding_ratio, 2),
                 grouped(result.change_in_surplus),
                 grouped(result.estimated_change_in_surplus),
-                band_name(result.band, found.thresholds),
+                _band(result, found.thresholds),
             )
         )
     parts = [

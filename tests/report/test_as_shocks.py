@@ -28,6 +28,7 @@ def test_an_empty_book_gives_null_and_not_nan() -> None:
     table = shock_table(Book(basis(), FlowTable.empty()), SHOCKS)
     plain = shocks_object(table)
     assert plain["shocks"][0]["funding_ratio"] is None
+    assert plain["shocks"][0]["band"] == ""
     assert plain["base"]["duration_gap"] is None
     assert '"funding_ratio": null' in as_json.text(plain)
     assert "n/a" in shocks_text(table)
