@@ -82,6 +82,30 @@ def test_a_known_curve_is_fitted_back() -> None:
     np.testing.assert_allclose(basis.curve.zero(time), KNOWN.zero(time), atol=1e-7)
 
 
+def test_a_price_follows_from_a_yield_by_whole_periods_and_the_part_of_one() -> None:
+    """The standard formula between coupon dates, for example Fabozzi, Bond Markets, yield measures."""
+    bonds = CurveBonds(
+        names=("half-yearly", "yearly", "strip"),
+        maturity=np.array(["2030-03-15", "2030-03-15", "2030-03-15"], "datetime64[D]"),
+        coupon=np.array([0.05, 0.03, 0.0]),
+        frequency=np.array([2, 1, 1]),
+        price=np.full(3, np.nan),
+        bond_yield=np.array([0.041, 0.0365, 0.04]),
+        is_clean=np.ones(3, dtype=np.bool_),
+    )
+    expected = []
+    for coupon, frequency, rate in ((5.0, 2, 0.041), (3.0, 1, 0.0365), (0.0, 1, 0.04)):
+        days = [date(year, month, 15) for year in range(2025, 2031) for month in (3, 9)[:frequency]]
+        dates = [day for day in days if day <= date(2030, 3, 15)]
+        due = [day for day in dates if day > TODAY]
+        before = dates[dates.index(due[0]) - 1]
+        part = (due[0] - TODAY).days / (due[0] - before).days
+        growth = 1.0 + rate / frequency
+        value = sum(coupon / frequency / growth ** (part + place) for place in range(len(due)))
+        expected.append(value + 100.0 / growth ** (part + len(due) - 1))
+    np.testing.assert_allclose(_basis(bonds).quoted_bonds.target, expected, rtol=1e-12)
+
+
 def test_nelson_siegel_is_fitted_back() -> None:
     known = NelsonSiegel(0.04, -0.02, 0.015, 1.8)
     fit = _basis(_bonds(known), bond_fit=BondFit.NELSON_SIEGEL).curve_fit
