@@ -211,8 +211,8 @@ def fit_volatilities(quotes: OptionQuotes, *, model: str = "hull-white") -> Vola
     size = len(family.parameters)
     if quotes.count < size:
         raise ValueError(
-            f"{model} has {size} parameters and there are only {quotes.count} quotes: give at least {size}, "
-            "or choose a model of fewer parameters"
+            f"{model} has {size} parameters, more than there are quotes ({quotes.count}): give at least "
+            f"{size}, or choose a model of fewer parameters"
         )
     unit = _kind_means(quotes)
     nearby = [quotes.volatility]  # those of the point before, where the search for the next ones begins

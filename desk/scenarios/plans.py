@@ -84,7 +84,7 @@ def planned_run(book: Book, *sides: PricedFlows) -> PlannedRun:
             nodes=model.nodes,
             reported=reported,
         )
-        faults += _set_faults(model, book)
+        faults += _set_faults(model, book, float(model.nodes[reported[-1]]))
     else:
         plan = Plan(
             model=model,
@@ -112,13 +112,14 @@ def _reported(model: GivenRates, horizon: int) -> tuple[int, ...]:
     return tuple(inside.tolist()) or (1,)
 
 
-def _set_faults(model: GivenRates, book: Book) -> list[Fault]:
-    """Where a set does not reach as far as the run asks."""
+def _set_faults(model: GivenRates, book: Book, end: float) -> list[Fault]:
+    """Where a set does not reach as far as the run asks, whose last reported node is at `end` years."""
     faults = []
     if model.paths < book.run.paths:
+        held = "1 path" if model.paths == 1 else f"{model.paths:,} paths"
         faults.append(
             Fault(
-                found=f"the set holds {model.paths:,} paths, fewer than the {book.run.paths:,} of the run",
+                found=f"the set holds {held}, fewer than the {book.run.paths:,} of the run",
                 expected="as many paths as the run takes",
                 mend="Set Paths to those of the set, or leave it: all paths of the set are taken.",
                 sheet="Scenario set",
@@ -133,6 +134,17 @@ def _set_faults(model: GivenRates, book: Book) -> list[Fault]:
                 expected="nodes up to the horizon",
                 mend="Add nodes, or leave it: later flows are discounted from the last node on by the "
                 "book's curve.",
+                sheet="Scenario set",
+                severity=Severity.MILD,
+            )
+        )
+    elif abs(end - book.run.horizon_years) > _SLACK:
+        faults.append(
+            Fault(
+                found=f"the set has no node at the horizon of {book.run.horizon_years} years; the last one "
+                f"reported is at {end:g} years",
+                expected="a node at the horizon",
+                mend="Set the horizon to a node of the set, or leave it: values go on to the end of the set.",
                 sheet="Scenario set",
                 severity=Severity.MILD,
             )

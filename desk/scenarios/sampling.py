@@ -149,7 +149,8 @@ def sampling_faults(run: Run, model: object) -> tuple[Fault, ...]:
     if paths != asked:
         found.append(
             _remark(
-                f"{asked:,} paths are no equal even shares for {run.replicates} replicates",
+                f"{asked:,} {'path is' if asked == 1 else 'paths are'} no equal even shares for "
+                f"{run.replicates} replicates",
                 f"a multiple of {2 * run.replicates}",
                 f"Set Paths to {paths:,}, or leave it: {paths:,} paths are drawn.",
             )

@@ -89,6 +89,7 @@ class JoinedWorth:
         From the values of `parts`, which hold at the Chebyshev points of the range, to the coefficients of a
         series in the last factor.
     error : float
+        Of the parts and of the series between its points, as a part of the value.
     tilt : float
         ``exp(-tilt · factor)`` is left out of the parts.
     """
@@ -147,7 +148,13 @@ def joined_worth(
     middle = 0.5 * (low + high)
     half = max(0.5 * (high - low), 1e-12 + 1e-9 * abs(middle))
     count = min(degree(steepest, _TOLERANCE) if steepest > 0.0 else 0, _COUNTS[-1]) + 1
-    rows: Sequence[FloatArray] = list(amounts(middle + half * chebyshev_points(count)[:count]))
+    found = amounts(middle + half * chebyshev_points(count))
+    rows: Sequence[FloatArray] = list(found[:count])
     parts = tuple(worth(row) for row in rows)
-    error = max((part.error for part in parts), default=0.0)
+    # A value is linear in the amounts: that of the series is off by no more than its worst amount.
+    between = check_polynomials(count).T @ (to_coefficients(count) @ found[:count])
+    off = np.abs(between - found[count:])
+    size = np.abs(found[count:])
+    error = float(np.divide(off, size, out=np.zeros_like(off), where=size > 0.0).max(initial=0.0))
+    error += max((part.error for part in parts), default=0.0)
     return JoinedWorth(parts, middle - half, middle + half, to_coefficients(count), error, tilt)

@@ -296,7 +296,7 @@ def test_quotes_that_do_not_determine_two_factors() -> None:
 
 def test_too_few_quotes_and_unknown_models() -> None:
     quotes = option_quotes(CURVE, **_columns(2))
-    with pytest.raises(ValueError, match="5 parameters and there are only 2 quotes"):
+    with pytest.raises(ValueError, match="5 parameters, more than there are quotes"):
         fit_volatilities(quotes, model="gaussian-2")
     with pytest.raises(ValueError, match="`model` must be one of"):
         fit_volatilities(quotes, model="other")

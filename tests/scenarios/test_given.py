@@ -136,6 +136,9 @@ def test_what_a_set_does_not_reach_is_said() -> None:
     assert "10 paths, fewer than the 11" in faults[0].found
     assert "ends after 4.2 years, before the horizon of 10" in faults[1].found
     assert planned_run(given(np.array([10.0]), rates(11, 1), paths=11), NO_FLOWS).faults == ()
+    (fault,) = planned_run(given(UNEVEN, rates(11, 5), paths=11, horizon_years=4), NO_FLOWS).faults
+    assert "no node at the horizon of 4 years; the last one reported is at 3 years" in fault.found
+    assert planned_run(given(UNEVEN, rates(11, 5), paths=11, horizon_years=3), NO_FLOWS).faults == ()
 
 
 def test_a_set_that_does_not_reprice_the_curve_is_said() -> None:
