@@ -259,7 +259,7 @@ class Headline(QWidget):
         if document.second_failure:
             return f"The second basis could not be valued: {document.second_failure}"
         if document.comparison_is_current:
-            return "Compared with the second basis"
+            return "Against the second basis"
         return "The second basis is being valued…"
 
     def take_focus(self) -> None:

@@ -144,7 +144,7 @@ def test_the_headline_compares_while_a_comparison_is_on(opened: Frame, qtbot: Qt
     assert "more than on the second basis" in owed.accessibleName()
     assert "1 line" in owed.accessibleName()
     assert headline.buttons[0].note == "as on the second"
-    assert headline._state.text() == "Compared with the second basis"
+    assert headline._state.text() == "Against the second basis"
     document.compare(False)
     assert owed.note == "1 line"
     assert "second" not in owed.accessibleName()

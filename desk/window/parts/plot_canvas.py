@@ -23,6 +23,9 @@ __all__ = ["Canvas"]
 
 AnySeries = TypeVar("AnySeries", bound=Series)
 
+_SHADE_ROOM = 0.1
+"""Part of the height kept free at the top for the words over a tinted part."""
+
 
 class Canvas(QWidget):
     """Series over one x axis, with one y axis or two.
@@ -319,7 +322,10 @@ class Canvas(QWidget):
                 low, high = min(low, 0.0), max(high, 0.0)
             self._y.fit(low, high)
             self._x.fit(left, stop)
-            low, high = self._fixed.get("y", with_room(low, high))
+            low, high = with_room(low, high)
+            if self._shade is not None and self._shade[1]:
+                high += _SHADE_ROOM * (high - low)
+            low, high = self._fixed.get("y", (low, high))
             left, stop = self._fixed.get("x", (left, stop) if stop > left else (left - 0.5, stop + 0.5))
             self._home = (left, stop, low, high)
             self._zero.setVisible(low < 0 < high)

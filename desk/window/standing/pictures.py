@@ -96,7 +96,7 @@ def _flow_sentence(periods: Periods, currency: str) -> str:
     if value >= 0.0:
         return "Undiscounted. Receipts so far cover payments so far in every year."
     year = int(periods.year[lowest])
-    return f"Undiscounted. Lowest cumulative: {amount(value, currency)}, year {year}."
+    return f"Undiscounted. Lowest total: {amount(value, currency)}, year {year}."
 
 
 class KeyRatePicture(Picture):
