@@ -255,8 +255,10 @@ class _Reader:
                 used["Risky assets"], faults, mend=model is not None and model.mend_correlation
             )
         if (sheet := self._item_sheet("Run")) is not None:
+            before = faults.grave_count
             parts["run"] = read_run(sheet)
-            if liabilities is not None and asset_flows is not None:
+            # A horizon that could not be read is told already.
+            if liabilities is not None and asset_flows is not None and faults.grave_count == before:
                 # Rows that could not be read may be the last ones.
                 last = _last_payment(liabilities, asset_flows, holdings, valuation_date, day_count)
                 _check_horizon(sheet, parts["run"], last)
