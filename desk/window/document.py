@@ -4,9 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Callable
 from dataclasses import replace
-from functools import partial
 from pathlib import Path
-from typing import Any
 
 from PySide6.QtCore import QObject, Signal
 
@@ -18,7 +16,8 @@ from desk.valuation.records import Standing
 from desk.valuation.shock_records import ShockTable
 from desk.window.history import History
 from desk.window.jobs import Job, Jobs
-from desk.window.valued import Valued, changed_fields, is_outdated, reason, with_faults
+from desk.window.simulated import Simulated
+from desk.window.valued import Valued, changed_fields
 from desk.window.what_if import LiveWhatIf
 
 __all__ = ["Document", "changed_fields"]
@@ -80,9 +79,7 @@ class Document(QObject):
     ) -> None:
         """Start empty; `value`, `simulate` and `shock` stand in for the tasks of those names."""
         super().__init__(parent)
-        self._jobs = jobs
         self._value = value or tasks.value
-        self._simulate = simulate or tasks.simulate
         self._shock = shock or tasks.shock
         self.reading: Reading | None = None
         self.source: Reading | None = None
@@ -114,13 +111,15 @@ class Document(QObject):
         self._shocks_asked: Book | None = None
         self.what_if = LiveWhatIf(jobs, _VALUED, self)
         self._wants_comparison = True
-        self._simulation_faults: tuple[Fault, ...] = ()
-        self.simulation: Simulation | None = None
+        self._run = Simulated(
+            jobs,
+            simulate=simulate or tasks.simulate,
+            names=SIMULATION_FIELDS,
+            on_changed=self.simulation_changed.emit,
+            on_failed=self.failed.emit,
+        )
         self._history = History()
         self._was_modified = False
-        self._simulation_book: Book | None = None
-        self._simulation_stale = False
-        self._simulating: Job | None = None
 
     # The book and its history
 
@@ -144,7 +143,7 @@ class Document(QObject):
         if self.reading is not self.source:
             return self.reading.faults
         further = dict.fromkeys(
-            (*self._first.faults, *self._second.faults, *self.shocks.faults, *self._simulation_faults)
+            (*self._first.faults, *self._second.faults, *self.shocks.faults, *self._run.faults)
         )
         return (*self.reading.faults, *further)
 
@@ -167,9 +166,7 @@ class Document(QObject):
         self._shocks_asked = None
         self.what_if.forget()
         self._wants_comparison = True
-        self.simulation = self._simulation_book = None
-        self._simulation_faults = ()
-        self._simulation_stale = False
+        self._run.forget()
         self._request_standings()
         self.reading_changed.emit()
         self.book_changed.emit()
@@ -254,9 +251,9 @@ class Document(QObject):
 
     def _book_replaced(self) -> None:
         book = self._open_book()
-        stale = (self.standing_is_stale, self.second_is_stale, self._simulation_stale)
+        stale = (self.standing_is_stale, self.second_is_stale, self._run.is_stale)
         had_second = self._second.result is not None
-        self._simulation_stale = is_outdated(self._simulation_book, book, SIMULATION_FIELDS)
+        self._run.note(book)
         self.shocks.note(book)
         self._request_standings()
         self.what_if.follow(book)
@@ -264,7 +261,7 @@ class Document(QObject):
         lost_second = had_second and self._second.result is None
         if (self.standing_is_stale, self.second_is_stale) != stale[:2] or lost_second:
             self.standing_changed.emit()
-        if self._simulation_stale != stale[2]:
+        if self._run.is_stale != stale[2]:
             self.simulation_changed.emit()
         self._tell_history()
 
@@ -343,14 +340,19 @@ class Document(QObject):
             self.standing_changed.emit()
 
     @property
+    def simulation(self) -> Simulation | None:
+        """The last run that came to its end."""
+        return self._run.result
+
+    @property
     def simulation_book(self) -> Book | None:
         """The version of the book that `simulation` was run on."""
-        return self._simulation_book
+        return self._run.of
 
     @property
     def simulation_is_stale(self) -> bool:
         """Whether `simulation` was run on a former version of the book."""
-        return self._simulation_stale
+        return self._run.is_stale
 
     @property
     def is_valuing(self) -> bool:
@@ -365,7 +367,7 @@ class Document(QObject):
     @property
     def is_simulating(self) -> bool:
         """Whether a run is under way."""
-        return self._simulating is not None
+        return self._run.is_running
 
     def stop(self) -> None:
         """Cancel what runs for this book."""
@@ -373,9 +375,7 @@ class Document(QObject):
         self._second.stop()
         self.shocks.stop()
         self.what_if.stop()
-        if self._simulating is not None:
-            self._jobs.cancel(self._simulating)
-        self._simulating = None
+        self._run.stop()
 
     def revalue(self) -> None:
         """Value the book once more, on both bases."""
@@ -414,36 +414,8 @@ class Document(QObject):
         book = self.book
         if book is None:
             raise RuntimeError("there is no open book to simulate")
-        key = f"simulation of {id(self)}"
-        told = () if self.source is None else self.source.faults
-        job: Job | None = None
-
-        def ended(act: Callable[[Any], None], value: Any = None) -> None:
-            if job is self._simulating:
-                self._simulating = None
-                act(value)
-                self.simulation_changed.emit()
-
-        def done(result: tuple[Simulation, tuple[Fault, ...]]) -> None:
-            (self.simulation, self._simulation_faults), self._simulation_book = result, book
-            self._simulation_stale = is_outdated(book, self._open_book(), SIMULATION_FIELDS)
-
-        def failed(error: BaseException) -> None:
-            self.failed.emit(f"The simulation came to nothing: {reason(error)}")
-
-        job = self._jobs.start(
-            "Simulating",
-            partial(with_faults, self._simulate, book, told),
-            on_done=partial(ended, done),
-            on_failed=partial(ended, failed),
-            on_cancelled=partial(ended, lambda _: None),
-            exclusive_key=key,
-        )
-        self._simulating = job
-        self.simulation_changed.emit()
-        return job
+        return self._run.start(book, () if self.source is None else self.source.faults)
 
     def cancel_simulation(self) -> None:
         """Stop the run under way; the former result stays."""
-        if self._simulating is not None:
-            self._jobs.cancel(self._simulating)
+        self._run.cancel()
