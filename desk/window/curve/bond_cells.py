@@ -125,8 +125,24 @@ def read_bonds(grid: Sequence[Sequence[str]], first: str = "name") -> PastedBond
         values, wrong = _read_column(key, texts)
         columns[key] = values
         found += [(number, text) for (number, _), text in zip(rows, wrong, strict=True) if text]
+    if has_headings and {"price", "yield"} <= columns.keys():
+        _leave_out_what_follows(columns, grid[0], [row for _, row in rows])
     found.sort(key=lambda one: one[0])
     return PastedBonds(columns, tuple(f"Row {number}: {text}." for number, text in found))
+
+
+def _leave_out_what_follows(
+    columns: dict[str, list[Any]], headings: Sequence[str], rows: Sequence[Sequence[str]]
+) -> None:
+    """Where a column says which of price and yield was given, the other one is taken as blank."""
+    place = next((place for place, text in enumerate(headings) if text.strip().casefold() == "given"), None)
+    if place is None:
+        return
+    for number, row in enumerate(rows):
+        given = row[place].strip().casefold() if place < len(row) else ""
+        other = {"price": "yield", "yield": "price"}.get(given)
+        if other is not None and columns[given][number] is not None:
+            columns[other][number] = None
 
 
 def _headed(row: Sequence[str]) -> bool:

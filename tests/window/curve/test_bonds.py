@@ -420,3 +420,18 @@ def test_what_no_workbook_could_give_back_is_refused(
     assert not edit(bonded.bonds.table, 0, key, text)
     assert reason in bonded.stale_text
     assert bench.book is before
+
+
+def test_what_was_copied_is_pasted_back_as_it_was_given(bonded: CurveStation, bench: Bench) -> None:
+    assert edit(bonded.bonds.table, 1, "price", "99.5")
+    bonded.refresh_now()
+    before = bench.book.basis.bonds
+    assert before is not None
+    bonded.bonds.table.selectAll()
+    bonded.bonds.table.copy(exactly=True)
+    bonded.bonds.replace_all()
+    after = bench.book.basis.bonds
+    assert after is not None
+    np.testing.assert_allclose(after.bond_yield, before.bond_yield, rtol=1e-12)
+    np.testing.assert_allclose(after.price, before.price, rtol=1e-12)
+    assert np.isnan(after.price).sum() == len(after) - 1
