@@ -14,6 +14,7 @@ from desk.book.arrays import FloatArray
 from desk.window.parts.fields import Choice, ChoiceField, IntegerField, NumberField
 from desk.window.parts.theme import GAP
 from desk.window.shocks.hand import handles_of
+from desk.window.shocks.wording import short
 
 if TYPE_CHECKING:
     from desk.window.shocks.mode import Mode
@@ -22,6 +23,7 @@ __all__ = ["MOST_STEPS", "Axis", "AxisFields", "axes_of"]
 
 MOST_STEPS = 41
 _STANDARD = "standard"
+_ROOM = 28
 
 
 @dataclass(frozen=True)
@@ -48,6 +50,11 @@ class Axis:
     def key(self) -> tuple[str, str]:
         """Tells it from others."""
         return (self.shock.name, self.shock.set_name)
+
+    @property
+    def short_label(self) -> str:
+        """The label, cut where it is longer than an axis has room for."""
+        return short(self.label, _ROOM)
 
     @property
     def is_standard(self) -> bool:

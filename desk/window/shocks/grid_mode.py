@@ -146,14 +146,14 @@ class GridMode(Mode):
             grid.first_scale,
             grid.second_scale,
             value,
-            axes=((asked.first.label, asked.first.unit), (asked.second.label, asked.second.unit)),
+            axes=((asked.first.short_label, asked.first.unit), (asked.second.short_label, asked.second.unit)),
             level=level,
             level_text=level_text,
             text=text,
             sentence=_grid_sentence(value, text),
         )
         names = " and ".join(
-            axis.label.casefold() if axis.is_standard else f"“{axis.label}”"
+            axis.label.casefold() if axis.is_standard else f"“{axis.short_label}”"
             for axis in (asked.first, asked.second)
         )
         self.heat.set_title(f"{_SHOWN[which]} under {names}")

@@ -39,7 +39,16 @@ class GridTable(Table):
             scale = numbers.scale_for(float(known.max()) / 10.0 if known.size else 0.0)
             unit, value = numbers.unit_with_scale(unit, scale), value / scale.factor
         across, up = axes
-        columns = [Column("size", up.label, up.unit, "number", digits=_places(grid.second_scale))]
+        columns = [
+            Column(
+                "size",
+                up.short_label,
+                up.unit,
+                "number",
+                digits=_places(grid.second_scale),
+                tooltip=up.label if up.short_label != up.label else "",
+            )
+        ]
         places = _places(grid.first_scale)
         for place, size in enumerate(grid.first_scale.tolist()):
             heading = f"{numbers.signed(size, places)} {across.unit}"

@@ -274,6 +274,23 @@ def test_the_heat_picture_is_read_by_keys_and_pointer(bench: Bench, grid: GridMo
     assert heat.reading.endswith("EUR 0")
 
 
+def test_a_long_name_keeps_to_its_axis(bench: Bench, station: ShocksStation, qtbot: QtBot) -> None:
+    """It is whole in the choice and in the tip; title, axis and table have a short one."""
+    name = "A fall of all rates that goes on for very much longer than anybody thought"
+    settled(bench, station, qtbot, a_shocked_fund(replace(FALL, name=name)))
+    station.show_mode("grid")
+    grid = station.mode
+    assert isinstance(grid, GridMode)
+    axis = next(axis for axis in axes_of(bench.book, bench.book.shocks) if axis.label == name)
+    assert axis.short_label == "A fall of all rates that go…"
+    grid.second.which.set_value(axis)
+    grid.second.suggest()
+    _run(bench, grid, qtbot)
+    assert grid.heat.title == "Funding ratio under all rates and “A fall of all rates that go…”"
+    first = grid.values.table_model.columns[0]
+    assert (first.heading, first.tooltip) == (axis.short_label, name)
+
+
 def test_what_makes_no_grid_is_refused(bench: Bench, station: ShocksStation, grid: GridMode) -> None:
     grid.first.low.set_value(100.0)
     grid.first.high.set_value(-100.0)
