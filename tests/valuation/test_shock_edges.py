@@ -16,7 +16,7 @@ from desk.valuation.shock_base import shock_base
 from desk.valuation.shock_effects import CannotShock
 from desk.valuation.shock_grid import shock_grid
 from desk.valuation.shock_profile import parallel_profile
-from desk.valuation.shocks import run_shock
+from desk.valuation.shocks import band_of, run_shock
 from desk.valuation.what_if import WhatIf
 from tests.valuation.books import basis
 
@@ -119,3 +119,15 @@ def test_a_whole_year_is_a_whole_year_whatever_its_rounding() -> None:
     frame = WhatIf(base).frame(Shock("none", ()))
     worth = base.liabilities.value
     np.testing.assert_allclose(frame.liabilities, [worth[0], worth[1] + worth[2]], rtol=1e-14)
+
+
+def test_a_ratio_that_is_the_threshold_has_not_fallen_short() -> None:
+    """At it and above it is well; without a ratio nothing falls short."""
+    thresholds = (1.05, 1.0)
+    assert [band_of(ratio, thresholds) for ratio in (1.05, np.nextafter(1.05, 0.0), 1.0, 0.99)] == [
+        0,
+        1,
+        1,
+        2,
+    ]
+    assert band_of(np.nan, thresholds) == 0
