@@ -90,7 +90,8 @@ class Canvas(QWidget):
         self._naming.timeout.connect(self._place_names)
         self._box.sigRangeChangedManually.connect(self._on_zoomed)
         self._box.sigRangeChanged.connect(lambda *_: self._naming.start())
-        self._box.sigResized.connect(self._on_resized)
+        # It can move and keep its size, where one axis gets wider by what the other one gives up.
+        self._box.geometryChanged.connect(self._on_resized)
         theme_switch.changed.connect(self._on_theme)
         self._recolour()
 

@@ -186,6 +186,15 @@ def test_the_right_hand_axis_has_a_scale_of_its_own(picture: Picture) -> None:
     assert [text for text, *_ in labels(picture)] == ["Zero", "Discount"]
 
 
+def test_the_right_hand_axis_follows_a_drawing_area_that_moves_and_keeps_its_size(picture: Picture) -> None:
+    picture.set_right_axis("Discount factor", "", digits=4)
+    picture.add_line("Zero", [0, 30], [0.02, 0.03], "neutral")
+    picture.add_line("Discount", [0, 30], [1.0, 0.4], "rates", right=True)
+    picture.settle()
+    picture._box.setGeometry(picture._box.geometry().translated(10.0, 0.0))
+    assert picture._right_box.geometry() == picture._box.sceneBoundingRect()
+
+
 def test_names_stand_beside_the_ends_and_do_not_overlap(picture: Picture) -> None:
     picture.set_axes("Year", "", "Value", "")
     for place in range(8):
