@@ -322,6 +322,7 @@ def test_correlations_that_were_mended_are_told(written: dict[str, Path]) -> Non
     assert mended is not None
     assert mended.mended is not None
     assert f"the largest change is {mended.mended.largest_change:.3g}" in words(sheet, "Risky assets")
+    assert mended.counted in words(sheet, "Risky assets")
 
 
 def test_names_of_assets_are_no_formulas(written: dict[str, Path]) -> None:

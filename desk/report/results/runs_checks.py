@@ -72,7 +72,7 @@ def plan_node_check(
     found = distances(check.mean, check.se, check.expected)
     plan.put(row, 1, f"{check.title}, against what it should be", "title")
     labels = ["Year", "Mean", "Mean, standard error", "Expected", "Expected, recomputed"]
-    labels += ["Mean less expected [standard errors]", "The same, recomputed", "Check"]
+    labels += ["Mean less expected, in standard errors", "The same, recomputed", "Check"]
     labels += [f"Within {FAR:g} standard errors", *(heading for heading, _ in further)]
     columns: list[tuple[Any, str]] = [
         (check.year, "term"),
@@ -94,7 +94,7 @@ def plan_node_check(
             live = f"ABS(D{at}-E{at})"
         if np.isfinite(found.distance[offset]):
             _plan_distance(plan, at, 6, found.distance[offset], ("B", "C", "D"))
-            plan.put(at, 9, Formula(f'=IF(ABS(G{at})<={FAR:g},"yes","no")'), "live", "text")
+            plan.put(at, 9, Formula(f'=IF(ABS(G{at})<={FAR:g},"yes","no")'), "check")
             live = "+".join(part for part in (f"ABS(F{at}-G{at})*C{at}", live) if part)
         if live:
             total += 1

@@ -23,6 +23,8 @@ __all__ = ["plan_convergence", "plan_gains"]
 
 _CHART_ROWS = 19
 _CHARTS_ABREAST = 2
+_CHARTS_A_PAGE = 2
+"""Rows of charts that a printed page holds."""
 
 
 def plan_convergence(simulation: Simulation, *, currency: str, checks: Checks) -> SheetPlan:
@@ -64,13 +66,18 @@ def plan_convergence(simulation: Simulation, *, currency: str, checks: Checks) -
         beside, below = number % _CHARTS_ABREAST, number // _CHARTS_ABREAST
         chart = _chart(plan, found, first, last, currency)
         plan.charts.append((chart, f"{'AE'[beside]}{row + _CHART_ROWS * below}"))
+    plan.page_breaks += [
+        row + _CHART_ROWS * below - 1
+        for below in range(_CHARTS_A_PAGE, len(spans) // _CHARTS_ABREAST + 1, _CHARTS_A_PAGE)
+        if _CHARTS_ABREAST * below < len(spans)
+    ]
     _check_last(plan, simulation, spans, currency, checks)
     return plan
 
 
 def _chart(plan: SheetPlan, found: Convergence, first: int, last: int, currency: str) -> ScatterChart:
     """A figure with its interval over the number of paths."""
-    number_format, unit = "0.0000", "1"
+    number_format, unit = "0.0000", "Value of 1 rolled over"
     if found.is_money:
         sizes = [abs(value) for value in (*found.low.tolist(), *found.high.tolist()) if math.isfinite(value)]
         # One more digit than an axis of the whole amounts: what changes is small.

@@ -11,7 +11,7 @@ from desk.report.known_means import distances
 from desk.report.results.checks import Checks
 from desk.report.results.plan import FIRST_ROW, Formula, SheetPlan
 from desk.report.results.runs_checks import PlannedCheck, plan_distances
-from desk.report.results.runs_tables import plan_table
+from desk.report.results.runs_tables import plan_notes, plan_table
 from desk.report.scenario_wording import checks_words, far_chance, is_outside, run_label
 from desk.scenarios.node_checks import FAR
 from desk.scenarios.records import Simulation
@@ -46,7 +46,7 @@ def plan_diagnostics(simulation: Simulation, planned: Sequence[PlannedCheck], ch
             f"Beyond {FAR:g} standard errors",
             "The same, recomputed",
             "Check",
-            "Furthest off [standard errors]",
+            "Furthest off, in standard errors",
             "In year",
         ],
         left=2,
@@ -82,8 +82,7 @@ def plan_diagnostics(simulation: Simulation, planned: Sequence[PlannedCheck], ch
             "makers assumed of the curve, not that anything was drawn wrongly."
         )
     for note in notes:
-        plan.put(row, 1, note, "note")
-        row += 1
+        row = plan_notes(plan, row, note)
     if simulation.diagnostics is None:
         plan.put(row + 1, 1, "The law of the short rate is not known.", "note")
         return plan
@@ -115,7 +114,7 @@ def _plan_rate(plan: SheetPlan, simulation: Simulation, row: int, checks: Checks
     for title, value, error, expected, form in groups:
         placed.append((len(labels) + 1, distances(value, error, expected)))
         labels += [title, f"{title}, standard error", f"{title}, closed form"]
-        labels += ["Difference [standard errors]", "The same, recomputed"]
+        labels += ["Difference, in standard errors", "The same, recomputed"]
         columns += [(value, form), (error, "tiny"), (expected, form), (nothing, "ratio"), (nothing, "ratio")]
     check = len(labels) + 1
     last = plan_table(plan, row + 1, [*labels, "Check"], columns)

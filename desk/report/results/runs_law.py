@@ -93,8 +93,8 @@ def plan_law(
         *("Year", f"Mean of ln {symbol}", f"Variance of ln {symbol}", "Mean", "Standard deviation"),
         *(f"{level:g} %" for level in summary.levels),
         *(tail_words(level) for level in summary.levels),
-        "Mean, simulated less this [standard errors]",
-        "Standard deviation, simulated less this [standard errors]",
+        "Mean, simulated less this, in standard errors",
+        "Standard deviation, simulated less this, in standard errors",
     ]
     columns: list[tuple[Any, str]] = [
         (summary.year, "term"),

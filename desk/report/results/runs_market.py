@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import textwrap
 from collections.abc import Callable, Mapping
 
 import numpy as np
@@ -11,7 +12,14 @@ from desk.report.results.checks import Checks
 from desk.report.results.plan import FIRST_ROW, Formula, SheetPlan, column_letter
 from desk.report.results.runs_checks import PlannedCheck, plan_node_check, rows_of_check
 from desk.report.results.runs_law import plan_law
-from desk.report.results.runs_tables import begin_quantity, plan_table, row_after_chart, run_sheet
+from desk.report.results.runs_tables import (
+    NOTE_WIDTH,
+    begin_quantity,
+    plan_notes,
+    plan_table,
+    row_after_chart,
+    run_sheet,
+)
 from desk.report.safe_cells import clean_text
 from desk.scenarios.market_records import AssetSummary, IndexSummary, RiskySummary
 from desk.scenarios.node_checks import NodeCheck
@@ -71,7 +79,7 @@ def _plan_together(
 ) -> SheetPlan:
     """What all assets are, how they move together, and what they are worth together by year."""
     count = len(risky.assets)
-    plan = run_sheet(RISKY_SHEET, "Risky assets, dividends reinvested", simulation, before=risky.counted)
+    plan = run_sheet(RISKY_SHEET, "Risky assets, dividends reinvested", simulation)
     plan.widths[1] = 24.0
     plan.headings(
         [
@@ -115,20 +123,19 @@ def _plan_together(
     if total:
         area = plan.mark_checks(7, FIRST_ROW, FIRST_ROW + count - 1)
         checks.add_column("Risky assets whose volatility differs", plan, area)
-    row = _plan_matrices(plan, risky, matrix)
+    row = plan_notes(plan, _plan_matrices(plan, risky, matrix), risky.counted) + 1
     if risky.mended is not None:
         told = risky.mended
         names = ("the rates", *(asset.name for asset in risky.assets))
         one, two = (names[place] for place in told.largest_at)
-        plan.put(
+        row = plan_notes(
+            plan,
             row,
-            1,
             "The correlations stated contradicted one another (least eigenvalue "
             f"{told.least_eigenvalue:.3g}) and were mended; the largest change is {told.largest_change:.3g}, "
             f"between {one} and {two}.",
-            "note",
         )
-        row += 2
+        row += 1
     if count > ASSETS_SHOWN:
         plan.put(row, 1, f"The first {ASSETS_SHOWN} of {count:,} assets have a sheet of their own.", "note")
         row += 2
@@ -263,7 +270,9 @@ def plan_price_index(
         discounted index should be that times the expected index.
     checks : Checks
     """
-    plan = run_sheet("Price index", "Price index, today's is 1", simulation, before=f"{index.revalued}")
+    plan = run_sheet("Price index", "Price index, today's is 1", simulation)
+    # Those of the note below the check, with a gap.
+    note_rows = len(textwrap.wrap(index.revalued, NOTE_WIDTH)) + 1
     row = begin_quantity(
         plan,
         index.index,
@@ -271,7 +280,7 @@ def plan_price_index(
         title="Price index",
         upward="Today's is 1",
         number_format="0.0",
-        after_chart=rows_of_check(index.index.year.size) + 2,
+        after_chart=rows_of_check(index.index.year.size) + note_rows,
     )
     at = row_after_chart(index.index)
 
@@ -286,14 +295,7 @@ def plan_price_index(
         expected=None if discount is None else expected,
         further=[("Index expected today", index.expected_index)],
     )
-    if not index.matches_today:
-        plan.put(
-            at + rows_of_check(index.index.year.size),
-            1,
-            "Floors and caps on the growth are valued along the paths with the inflation factor's own "
-            "volatility: mean present values of the run need not be those on the curve.",
-            "note",
-        )
+    plan_notes(plan, at + rows_of_check(index.index.year.size), index.revalued)
     plan_law(
         plan, row, index.closed_form, index.index, checks, figure="Price index", symbol="I", form="ratio"
     )

@@ -6,8 +6,9 @@ from dataclasses import dataclass, fields
 from typing import Any
 
 from desk.book import Book, ModelName, RatesModel
-from desk.report.results.plan import FIRST_ROW, SheetPlan
+from desk.report.results.plan import FIRST_ROW, HEADING_ROW, SheetPlan
 from desk.report.results.runs_law import FactorCells
+from desk.report.results.runs_tables import plan_notes
 from desk.report.scenario_wording import checks_words, is_outside, measure_use, own_curve, run_label
 from desk.report.wording import QUANTILE_METHOD
 from desk.scenarios.records import Simulation
@@ -64,8 +65,9 @@ def plan_model(book: Book | None, simulation: Simulation) -> PlannedModel:
     simulation : Simulation
     """
     plan = SheetPlan("Scenario model", "Scenarios: what was drawn", f"{run_label(simulation)}.")
-    plan.widths = {1: 34.0, 2: 22.0, 3: 34.0, 4: 40.0}
-    plan.headings(["Item", "Value", "Unit"], left=3)
+    plan.widths = {1: 34.0, 2: 22.0, 3: 42.0}
+    plan.headings(["Item", "Value"])
+    plan.put(HEADING_ROW, 3, "Unit", "heading_unit")
     stated = None if book is None else book.rates_model
     if stated is not None and str(stated.name) != simulation.model:
         stated = None
@@ -90,8 +92,7 @@ def plan_model(book: Book | None, simulation: Simulation) -> PlannedModel:
     row += 1
     for heading, text in _sentences(simulation):
         plan.put(row, 1, heading, "heading_left")
-        plan.put(row + 1, 1, text, "note")
-        row += 2
+        row = plan_notes(plan, row + 1, text)
     if stated is None or stated.name not in _ONE_FACTOR:
         return PlannedModel(plan)
     speed = 0.0 if stated.mean_reversion is None or stated.name is ModelName.HO_LEE else stated.mean_reversion

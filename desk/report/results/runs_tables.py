@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import math
+import textwrap
 from collections.abc import Sequence
 from itertools import pairwise
 from typing import Any
@@ -13,16 +14,17 @@ from desk.report.results.charts import Column, band_colours, fan
 from desk.report.results.look import INK
 from desk.report.results.plan import FIRST_ROW, HEADING_ROW, Formula, SheetPlan, column_letter
 from desk.report.scenario_wording import run_label
-from desk.report.wording import QUANTILE_METHOD
 from desk.scenarios.records import Histogram, NodeSummary, Simulation
 
 __all__ = [
     "CHART_ROWS",
+    "NOTE_WIDTH",
     "SUMMARY_COLUMNS",
     "begin_quantity",
     "further_tables",
     "histogram_table",
     "plan_fan",
+    "plan_notes",
     "plan_table",
     "row_after_chart",
     "run_sheet",
@@ -30,26 +32,28 @@ __all__ = [
 ]
 
 CHART_ROWS = 21
+NOTE_WIDTH = 120
+"""Characters of a note on a line."""
+
 SUMMARY_COLUMNS = 5
 """Columns before the percentiles in the first table of a quantity by year."""
 
 
-def run_sheet(name: str, title: str, simulation: Simulation, *, before: str = "") -> SheetPlan:
-    """An empty sheet of a quantity by year.
-
-    Parameters
-    ----------
-    name, title : str
-    simulation : Simulation
-    before : str
-        What the note begins with.
-    """
-    note = f"Simulated values, not recalculable here: {run_label(simulation)}. {QUANTILE_METHOD}"
-    plan = SheetPlan(name, title, f"{before} {note}".strip())
+def run_sheet(name: str, title: str, simulation: Simulation) -> SheetPlan:
+    """An empty sheet of a quantity by year."""
+    plan = SheetPlan(name, title, f"Simulated values, not recalculable here: {run_label(simulation)}.")
     plan.widths = dict.fromkeys(range(1, 24), 11.5)
     plan.title_rows = "1:3"
     plan.frozen = f"B{FIRST_ROW}"
     return plan
+
+
+def plan_notes(plan: SheetPlan, row: int, text: str) -> int:
+    """Plan a text in lines that do not make the printed page wider; returns the row after."""
+    for part in textwrap.wrap(text, NOTE_WIDTH):
+        plan.put(row, 1, part, "note")
+        row += 1
+    return row
 
 
 def plan_table(plan: SheetPlan, row: int, labels: Sequence[str], columns: Sequence[tuple[Any, str]]) -> int:

@@ -14,7 +14,6 @@ from desk.report.results.look import ASSETS, INK, LIABILITIES, SURPLUS
 from desk.report.results.plan import FIRST_ROW, Formula, SheetPlan, column_letter
 from desk.report.results.runs_tables import histogram_table
 from desk.report.scenario_wording import measure_use, run_label
-from desk.report.wording import QUANTILE_METHOD
 from desk.scenarios.records import Distribution, Simulation
 
 __all__ = ["VALUES_SHEET", "plan_present_values"]
@@ -31,8 +30,7 @@ def plan_present_values(simulation: Simulation, *, currency: str, checks: Checks
     plan = SheetPlan(
         VALUES_SHEET,
         "Present values along the paths",
-        f"Simulated values, not recalculable here: {run_label(simulation)}. {measure_use(simulation)} "
-        f"{QUANTILE_METHOD}",
+        f"Simulated values, not recalculable here: {run_label(simulation)}. {measure_use(simulation)}",
     )
     plan.widths = {1: 34.0, 2: 12.0} | dict.fromkeys(range(3, 16), 18.0)
     headings = ["Figure", "Unit"]
