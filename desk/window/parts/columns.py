@@ -39,6 +39,8 @@ class Column:
     editable : bool
     is_change : bool
         Figures carry a plus or a minus.
+    holds_figures : bool
+        A text holds a figure, and stands as one: on the right.
     """
 
     key: str
@@ -49,11 +51,17 @@ class Column:
     tooltip: str = ""
     editable: bool = False
     is_change: bool = False
+    holds_figures: bool = False
 
     @property
     def is_numeric(self) -> bool:
         """Whether it holds figures."""
         return self.kind in _DIGITS
+
+    @property
+    def stands_right(self) -> bool:
+        """Whether heading and cells stand on the right."""
+        return self.is_numeric or self.holds_figures
 
     @property
     def shown_unit(self) -> str:

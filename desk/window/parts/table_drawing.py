@@ -48,15 +48,15 @@ class Header(QHeaderView):
     def paintSection(self, painter: QPainter, rect: QRect, section: int) -> None:
         """Draw one heading."""
         theme, column = self._table.theme, self._table.table_model.columns[section]
-        side = Qt.AlignmentFlag.AlignRight if column.is_numeric else Qt.AlignmentFlag.AlignLeft
+        side = Qt.AlignmentFlag.AlignRight if column.stands_right else Qt.AlignmentFlag.AlignLeft
         painter.save()
         painter.fillRect(rect, theme.surface)
         inner = rect.adjusted(GAP, HALF, -GAP, -HALF)
         name_font, unit_font = strong_font(self.font()), soft_font(self.font())
         name_metrics = QFontMetrics(name_font)
         if self.sortIndicatorSection() == section:
-            self._paint_arrow(painter, inner, name_metrics.height(), column.is_numeric)
-            inner_name = inner.adjusted(12, 0, 0, 0) if column.is_numeric else inner.adjusted(0, 0, -12, 0)
+            self._paint_arrow(painter, inner, name_metrics.height(), column.stands_right)
+            inner_name = inner.adjusted(12, 0, 0, 0) if column.stands_right else inner.adjusted(0, 0, -12, 0)
         else:
             inner_name = inner
         painter.setFont(name_font)
@@ -111,7 +111,7 @@ class Cells(QStyledItemDelegate):
             painter.fillRect(rect, mixed(theme.surface, theme.grave if mark.grave else theme.mild, 0.10))
         painter.setFont(self._table.strong_font if model.is_strong(row) else self._table.font())
         painter.setPen(theme.ink)
-        side = Qt.AlignmentFlag.AlignRight if column.is_numeric else Qt.AlignmentFlag.AlignLeft
+        side = Qt.AlignmentFlag.AlignRight if column.stands_right else Qt.AlignmentFlag.AlignLeft
         inner = rect.adjusted(GAP, 0, -GAP, -1)
         text = str(model.data(index))
         shown = painter.fontMetrics().elidedText(text, Qt.TextElideMode.ElideRight, inner.width())

@@ -208,7 +208,7 @@ class TableModel(QAbstractTableModel):
         if role == Qt.ItemDataRole.EditRole:
             return column.edited(self.value_at(row, place))
         if role == Qt.ItemDataRole.TextAlignmentRole:
-            side = Qt.AlignmentFlag.AlignRight if column.is_numeric else Qt.AlignmentFlag.AlignLeft
+            side = Qt.AlignmentFlag.AlignRight if column.stands_right else Qt.AlignmentFlag.AlignLeft
             return side | Qt.AlignmentFlag.AlignVCenter
         if role == Qt.ItemDataRole.ToolTipRole:
             mark = self.mark_at(row, place)

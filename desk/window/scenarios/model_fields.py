@@ -7,6 +7,7 @@ from dataclasses import replace
 from typing import Any
 
 import numpy as np
+from PySide6.QtWidgets import QWidget
 
 from desk.book import Book, Measure, ModelName
 from desk.scenarios.suggestions import MODEL_ITEMS, VolatilityKind, volatility_kind
@@ -210,6 +211,7 @@ class AssetFields:
             field.setParent(None)
             field.deleteLater()
         self.fields, self._names = {}, names
+        before: QWidget = self._inner
         for place, name in enumerate(names):
             made = {
                 "volatility": NumberField(
@@ -234,6 +236,9 @@ class AssetFields:
             for column, field in made.items():
                 self._inner.add(field)
                 self.fields[column, place] = field
+                # Made later than what stands below, the keyboard would come to them last.
+                QWidget.setTabOrder(before, field.editor)
+                before = field.editor
                 field.committed.connect(
                     lambda value, column=column, place=place: self._on_value(column, place, value)
                 )

@@ -261,7 +261,9 @@ class ModelsPart(Part):
         count = len(self.chosen)
         self.choice.setText(f"{count} model{'' if count == 1 else 's'} chosen")
         self.choice.setAccessibleName(f"Models to compare: {count} chosen")
-        self.button.setEnabled(count > 0 and not self.is_comparing)
+        # It stays enabled while it compares: the keyboard would leave it for the rail.
+        self.button.setEnabled(count > 0)
+        self.button.setText("Comparing…" if self.is_comparing else "Compare")
 
     def take_run(self, run: ShownRun) -> None:
         """Another run of the station: a comparison made of this book stays."""
@@ -327,10 +329,7 @@ class ModelsPart(Part):
         elif not self.runs:
             self.surplus.clear()
             self.surplus.set_title("Present value of surplus")
-            self.surplus.set_description(
-                "Nothing is compared yet. Parameters that the book does not state are figures to begin with, "
-                "not calibrated."
-            )
+            self.surplus.set_description("Nothing is compared yet. Choose models and press Compare.")
 
     def _draw_rate(self) -> None:
         if self.runs:
@@ -338,7 +337,7 @@ class ModelsPart(Part):
         else:
             self.rate.clear()
             self.rate.set_title("Short rate")
-            self.rate.set_description("Nothing is compared yet.")
+            self.rate.set_description("What the book does not state is a usual figure, not calibrated.")
 
     def _fill(self) -> None:
         if self.run is not None and self.runs:

@@ -95,7 +95,7 @@ class PathsPart(Part):
         for key, title, page in (
             ("percentiles", "Percentiles", self.percentiles),
             ("checks", "Checks", self.verdict),
-            ("moments", "Moments of the rate", self.moments),
+            ("moments", "Moments", self.moments),
             ("path", "One path", self.path_table),
             ("assets", "Covariance", self.covariance),
         ):

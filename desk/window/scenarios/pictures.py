@@ -225,9 +225,7 @@ def _fan_sentence(quantity: Quantity) -> str:
     digits = 2 if quantity.kind == "rate" else 3
     mean, error = float(summary.mean[-1]), float(summary.mean_se[-1])
     year = numbers.exact(float(summary.year[-1]))
-    text = (
-        f"Mean at year {year}: {quantity.shown(mean, digits)}, standard error {quantity.shown_error(error)}."
-    )
+    text = f"Mean at year {year}: {quantity.shown(mean, digits)} ± {quantity.shown_error(error)}."
     if quantity.key == "rate":
         return text
     if quantity.closed is None:
@@ -321,24 +319,19 @@ class HistogramPicture(Picture):
         return edges[(edges >= left - slack) & (edges <= stop + slack)]
 
     def readings_at(self, x: float) -> list[tuple[str, str]]:
-        """Share and mean of what lies at and below `x`: of the paths, and in closed form."""
+        """Share and mean of what lies at and below `x`: of the paths, and by the law in closed form."""
         histogram, quantity = self._histogram, self._quantity
         if histogram is None or quantity is None:
             return super().readings_at(x)
         found = histogram_reading(histogram, x)
-        share = numbers.rate(found.share, 2, with_unit=True)
+        share = numbers.rate(found.share, 2)
         error = numbers.rate(found.share_se, 2, with_unit=True)
-        result = [
-            ("P(X ≤ x)", f"{share} ± {error}"),
-            ("E[X | X ≤ x]", quantity.shown(found.mean, quantity.digits)),
-        ]
+        shares, mean = f"{share} ± {error}", quantity.shown(found.mean, quantity.digits)
         if self._law is not None:
             exact = self._law.reading(x)
-            result += [
-                ("closed form", numbers.rate(exact.share, 2, with_unit=True)),
-                ("and", quantity.shown(exact.mean, quantity.digits)),
-            ]
-        return result
+            shares += f", law {numbers.rate(exact.share, 2, with_unit=True)}"
+            mean += f", law {quantity.shown(exact.mean, quantity.digits)}"
+        return [("P(X ≤ x)", shares), ("mean to x", mean)]
 
     def _read_at(self, x: float) -> None:
         """As every picture, but each value has its own unit."""

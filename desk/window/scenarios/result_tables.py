@@ -96,7 +96,7 @@ class ConvergenceTable(RunTable):
             heading = f"{numbers.integer(paths)} paths"
             for key, unit in (("value", ""), ("se", _SE)):
                 # Money and plain numbers stand in one column: each is written as it is usual.
-                columns.append(Column(f"{key}{place}", heading, unit, "text"))
+                columns.append(Column(f"{key}{place}", heading, unit, holds_figures=True))
                 data[f"{key}{place}"] = [
                     _figure(float(getattr(each, key)[place]), is_money)
                     if place < each.paths.size
@@ -129,8 +129,8 @@ class GainsTable(RunTable):
             Column("gain", "Gain", "times fewer paths", "number", digits=1),
             Column("low", "Gain", "95 % from", "number", digits=1),
             Column("high", "Gain", "95 % to", "number", digits=1),
-            Column("plain", "Standard error", "plain sampling"),
-            Column("se", "Standard error", "this run"),
+            Column("plain", "Standard error", "plain sampling", holds_figures=True),
+            Column("se", "Standard error", "this run", holds_figures=True),
         ]
         money = {each.figure for each in simulation.convergence if each.is_money}
         data: dict[str, Any] = {
