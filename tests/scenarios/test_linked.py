@@ -11,12 +11,13 @@ from scipy.integrate import quad
 from scipy.stats import lognorm
 
 from desk.book import Indexation, IndexationKind, Measure, ModelName
+from desk.rates.black_karasinski import BlackKarasinskiRates
 from desk.rates.inflation import log_growth
-from desk.scenarios.linked import held_growth
+from desk.scenarios.linked import LinkedFlows, held_growth, index_law
 from desk.scenarios.pathwise import PathValues, curve_value
 from desk.scenarios.plans import planned_run
 from desk.scenarios.simulation import simulate
-from desk.scenarios.smooth import fit_function
+from desk.scenarios.smooth import JoinedWorth, fit_function
 from tests.scenarios.books import ALL_MODELS, NO_FLOWS, assets, book
 from tests.scenarios.inflating import INFLATION, drawn, following, inflating
 from tests.scenarios.test_simulation import same
@@ -235,3 +236,28 @@ def test_fitting_may_be_stopped(indexation: Indexation) -> None:
     plan = planned_run(inflating(ModelName.BLACK_KARASINSKI), flows).plan
     with pytest.raises(_Stop):
         PathValues(plan, (flows,), INFLATION, poll=poll)
+
+
+def test_flows_between_nodes_path_by_path_in_a_model_without_closed_forms() -> None:
+    """Under lognormal rates, whose bonds have no closed form, flows of a year are worth at the node before
+    what each is by itself: its bond, times what the factor of inflation says of the index to come."""
+    due = np.array([5.25, 5.5, 5.75, 5.9, 6.0 - 1e-3])
+    real = np.array([3.0, 5.0, 7.0, 11.0, 2.0])
+    found = drawn(
+        inflating(ModelName.BLACK_KARASINSKI, paths=50, steps_per_year=1), following(due, real, LINKED)
+    )
+    index, model = index_law(found.plan), found.plan.model
+    assert isinstance(model, BlackKarasinskiRates)
+    ((_, rows),) = found.values._following
+    assert isinstance(rows, LinkedFlows)
+    worth = rows._visits[5]
+    assert isinstance(worth, JoinedWorth)
+    assert worth.tilt != 0.0
+    random = np.random.default_rng(6)
+    factor, rate = random.uniform(-0.02, 0.02, 40), random.uniform(0.005, 0.08, 40)
+    summed = np.zeros(40)
+    for time, amount in zip(due.tolist(), real.tolist(), strict=True):
+        level, exposure = index.growth_terms(5.0, time, time)
+        bond = model.value_flows_at(5.0, np.array([time]), np.ones(1))(rate[None])
+        summed += amount * bond * np.exp(float(level) - float(exposure) * factor)
+    assert worth(np.array([rate, factor])) == pytest.approx(summed, rel=1e-10)

@@ -31,10 +31,11 @@ def test_error_of_a_series_is_that_between_its_points() -> None:
     assert kinked.error > 1e-6
 
 
+@pytest.mark.parametrize("tilt", [0.0, 3.0, -2.0])
 @pytest.mark.parametrize(("too_few", "least", "most"), [(0, 0.0, 1e-10), (8, 1e-9, 1.0)])
-def test_error_of_rates_beside_a_factor(too_few: int, least: float, most: float) -> None:
+def test_error_of_rates_beside_a_factor(too_few: int, least: float, most: float, tilt: float) -> None:
     """The error that is said is that of the worst amount: 1e-11 with the degree that is taken, and where the
-    degree is too low no less than the value is missed by."""
+    degree is too low no less than the value is missed by. What is left out of the amounts comes back."""
     joined = joined_worth(
         worth,  # type: ignore[arg-type]  # a Surface is a Worth
         amounts,
@@ -42,9 +43,11 @@ def test_error_of_rates_beside_a_factor(too_few: int, least: float, most: float)
         low=-0.1,
         high=0.1,
         degree=lambda slope, tolerance: series_degree(slope, tolerance) - too_few,
+        tilt=tilt,
     )
     rates, factor = np.random.default_rng(5).uniform(-0.1, 0.1, (2, 500))
-    summed = np.exp(np.multiply.outer(factor, GROWTH) - np.multiply.outer(rates, EXPOSURE)).sum(axis=1)
+    exponents = np.multiply.outer(factor, GROWTH) - np.multiply.outer(rates, EXPOSURE)
+    summed = np.exp(-tilt * factor) * np.exp(exponents).sum(axis=1)
     missed = float(np.abs(joined(np.array([rates, factor])) / summed - 1.0).max())
     assert least <= joined.error < most
     assert missed < max(2.0 * joined.error, 1e-11)
