@@ -8,6 +8,7 @@ import numpy as np
 import pytest
 import QuantLib as ql
 
+from desk.rates.compounding import Compounding, to_continuous
 from desk.rates.gaussian import GaussianRates, gaussian_2, hull_white
 from desk.rates.option_formulas import forward_option, implied_volatility
 from desk.rates.option_instruments import OptionQuotes, option_quotes
@@ -29,9 +30,14 @@ def _one(curve_rate: float, **parts: float | str) -> OptionQuotes:
 
 def test_black_caplet() -> None:
     """Hull, J.C., Options, Futures, and Other Derivatives, interest-rate cap example (memory): 10,000 over a
-    quarter in a year, forward 7 %, strike 8 %, volatility 20 %; 5.162 as printed."""
+    quarter in a year, forward 7 %, strike 8 %, volatility 20 %; 5.162 as printed. Discounted at 7 %
+    compounded quarterly: 6.9394 % continuous, a factor of 0.9169."""
     value = float(forward_option(0.07, 0.08, 0.2, 1.0))
-    assert 10_000.0 * 0.25 * math.exp(-0.06939455333845229 * 1.25) * value == pytest.approx(5.162, abs=6e-4)
+    continuous = float(to_continuous(0.07, Compounding.QUARTERLY))
+    assert continuous == pytest.approx(0.069394, abs=6e-7)
+    discount = float(flat_curve(continuous).discount(1.25))
+    assert discount == pytest.approx(0.9169, abs=5e-5)
+    assert 10_000.0 * 0.25 * discount * value == pytest.approx(5.162, abs=6e-4)
 
 
 @pytest.mark.parametrize(("strike", "printed"), [(1000.0, 9.49), (1008.33, 7.97)])

@@ -126,3 +126,32 @@ def test_the_limit_of_two_factors_is_one() -> None:
     times = np.array([0.5, 10.0, 60.0])
     assert two.account_variance(times) == pytest.approx(one.account_variance(times), rel=1e-13)
     assert float(first_integral(0.1, 10.0)) == pytest.approx((1.0 - math.exp(-1.0)) / 0.1, rel=1e-14)
+
+
+@pytest.mark.parametrize(
+    ("intercept", "slope", "level", "half_life", "is_square_root"),
+    [(0.0154, -0.1779, 0.0866, 3.9, False), (0.0189, -0.2339, 0.0808, 2.96, True)],
+    ids=["vasicek", "square root"],
+)
+def test_estimates_of_one_month_bills(
+    intercept: float, slope: float, level: float, half_life: float, is_square_root: bool
+) -> None:
+    """Chan, K.C., Karolyi, G.A., Longstaff, F.A. and Sanders, A.B. (1992), An empirical comparison of
+    alternative models of the short-term interest rate, Journal of Finance 47(3), table III (estimates from
+    memory, not confirmed): the level and the half-life that ``dr = (α + β r) dt`` implies are recomputed, and
+    the mean of our models comes to them."""
+    speed, start = -slope, 0.02
+    long_run = intercept / speed
+    assert long_run == pytest.approx(level, abs=5e-5)
+    years = math.log(2.0) / speed
+    assert years == pytest.approx(half_life, abs=0.005)
+    if is_square_root:
+        model = SquareRootRates(
+            mean_reversion=speed, long_run_rate=long_run, volatility=math.sqrt(0.0073), starting_rate=start
+        )
+        means = model.factor_mean([years, 200.0])
+    else:
+        means = vasicek(
+            mean_reversion=speed, long_run_rate=long_run, volatility=math.sqrt(0.0004), starting_rate=start
+        ).rate_offset([years, 200.0])
+    assert means == pytest.approx([0.5 * (start + long_run), long_run], abs=1e-12)

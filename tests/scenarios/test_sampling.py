@@ -18,7 +18,7 @@ def replicates(*, count: int, paths: int, block_paths: int = 50) -> Replicates:
 
 
 @pytest.mark.parametrize(
-    ("count", "paths"), [(2, 2), (7, 10), (16, 48), (3, 50), (4, 52), (5, 126), (2, 102)]
+    ("count", "paths"), [(2, 2), (7, 10), (16, 48), (3, 50), (4, 52), (5, 126), (2, 102), (2, 54), (3, 110)]
 )
 def test_blocks_and_segments_hold_every_path_once(count: int, paths: int) -> None:
     shared = replicates(count=count, paths=paths)

@@ -208,7 +208,13 @@ class ValuesPart(Part):
         if self.run is not None:
             by_name = {each.name: each for each in self.run.simulation.present_value}
             sides = [by_name[name] for name in ("assets", "liabilities") if name in by_name]
-            self.both.show_values("Assets and liabilities", sides, self.run.currency)
+            settings = dict(self.run.simulation.provenance.settings)
+            self.both.show_values(
+                "Assets and liabilities",
+                sides,
+                self.run.currency,
+                fit_error=float(settings.get("surface_error", 0.0)),
+            )
 
     def _draw_surplus(self) -> None:
         if self.run is not None:

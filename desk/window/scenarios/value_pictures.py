@@ -26,8 +26,13 @@ class ValuesPicture(Picture):
         self._distributions: tuple[Distribution, ...] = ()
         self._currency = ""
 
-    def show_values(self, title: str, distributions: Sequence[Distribution], currency: str) -> None:
-        """Draw distributions; one alone as bars, several as outlines."""
+    def show_values(
+        self, title: str, distributions: Sequence[Distribution], currency: str, *, fit_error: float = 0.0
+    ) -> None:
+        """Draw distributions; one alone as bars, several as outlines.
+
+        `fit_error` is that of the values fitted at the nodes, as a part of the value.
+        """
         self.clear()
         self._distributions, self._currency = tuple(distributions), currency
         self.set_title(title)
@@ -57,7 +62,7 @@ class ValuesPicture(Picture):
         if alone and ranges[0][0] < 0.0 < ranges[0][1]:
             self.add_vertical(0.0, "0")
         self.set_range(x=(min(low for low, _ in ranges), max(high for _, high in ranges)))
-        self.set_description(_value_sentence(distributions))
+        self.set_description(_value_sentence(distributions, fit_error))
         self.reset_view()
 
     def readings_at(self, x: float) -> list[tuple[str, str]]:
@@ -71,9 +76,12 @@ class ValuesPicture(Picture):
         return found
 
 
-def _value_sentence(distributions: Sequence[Distribution]) -> str:
+def _value_sentence(distributions: Sequence[Distribution], fit_error: float) -> str:
     if len(distributions) != 1 or distributions[0].name != "surplus":
-        return "The flows discounted along each path."
+        if not fit_error > 0.0:
+            return "The flows discounted along each path."
+        error = f"{fit_error:.0e}".replace("-", "\N{MINUS SIGN}")
+        return f"The flows discounted along each path, fitted at the nodes to {error}."
     chance = numbers.rate(distributions[0].below_zero, 1, with_unit=True)
     error = numbers.rate(distributions[0].below_zero_se, 1, with_unit=True)
     return f"Below zero on {chance} ± {error} of the paths."

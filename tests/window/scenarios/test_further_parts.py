@@ -299,3 +299,19 @@ def test_the_task_gives_each_model_under_each_measure() -> None:
     found = tasks.compare_models(a_fund(), [model], measures=tuple(Measure))
     assert [measure for measure, _ in found] == list(Measure)
     assert [run.simulation.measure for _, run in found if run.simulation is not None] == list(Measure)
+
+
+def test_the_error_of_the_fitted_values_is_told(
+    station: ScenariosStation, bench: Bench, qtbot: QtBot
+) -> None:
+    station.run_form.model.committed.emit(ModelName.BLACK_KARASINSKI)
+    station.refresh_now()
+    simulation = run(station, bench, qtbot)
+    station.show_part("values")
+    settle(station, qtbot)
+    part = station.part_of("values")
+    assert isinstance(part, ValuesPart)
+    error = float(dict(simulation.provenance.settings)["surface_error"])
+    assert 0.0 < error < 1e-10
+    told = part.both.description.rsplit(" to ", 1)[1].rstrip(".").replace("\N{MINUS SIGN}", "-")
+    assert float(told) == pytest.approx(error, rel=0.5)
