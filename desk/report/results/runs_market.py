@@ -174,13 +174,8 @@ def _plan_total(plan: SheetPlan, risky: RiskySummary, row: int, currency: str, c
     for index, level in enumerate(total.levels):
         labels += [f"{level:g} %{unit}"]
         columns += [(total.percentile[:, index], "money")]
-    for index, level in enumerate(total.levels):
-        labels += [f"{level:g} %, standard error"]
-        columns += [(total.percentile_se[:, index], "money")]
-    for index, level in enumerate(total.levels):
-        labels += [f"Mean at and {'below' if level < 50.0 else 'above'} {level:g} %{unit}"]
-        columns += [(total.tail_mean[:, index], "money")]
-    plan_table(plan, row + 1, labels, columns)
+    last = plan_table(plan, row + 1, labels, columns)
+    further_tables(plan, total, last + 2, form="money")
     plan.page_breaks.append(row - 1)
     count = len(risky.assets)
     values = plan.area(2, FIRST_ROW, FIRST_ROW + count - 1)
