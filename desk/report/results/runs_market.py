@@ -15,6 +15,7 @@ from desk.report.results.runs_law import plan_law
 from desk.report.results.runs_tables import (
     NOTE_WIDTH,
     begin_quantity,
+    further_tables,
     plan_notes,
     plan_table,
     row_after_chart,
