@@ -12,10 +12,14 @@ from desk.rates.quoted_flows import QuotedFlows, flow_yields
 from desk.rates.sensitivity import exponents
 from desk.rates.small_products import small_product
 
-__all__ = ["bootstrap"]
+__all__ = ["MENDS", "bootstrap"]
 
 FloatArray = NDArray[np.float64]
 
+_CHECK = "Check this quote and those beside it."
+_LOCAL_ONE = "Take the interpolation log-linear or linear-zero."
+MENDS = (_CHECK, _LOCAL_ONE)
+"""What would mend instruments that no curve gives back, whatever they are."""
 _MOST_STEPS = 60
 _MOST_HALVINGS = 25
 _REACHED = 1e-15  # of what an instrument is worth
@@ -70,7 +74,7 @@ def bootstrap(flows: QuotedFlows, *, interpolation: Interpolation = Interpolatio
         raise CurveError(
             f"there are {len(flows):,} quotes, and a curve that gives all of them back can be found for at "
             f"most {_MOST_TOGETHER:,} with the interpolation {interpolation.value}",
-            "Take the interpolation log-linear or linear-zero, or fit a smooth curve through all.",
+            _LOCAL_ONE,
         )
     together = _solved(flows, interpolation, start)
     if together is None:
@@ -152,7 +156,7 @@ def _diagnosis(flows: QuotedFlows, interpolation: Interpolation, start: FloatArr
         return CurveError(
             f"no curve with the interpolation {interpolation.value} was found that gives all {fails:,} "
             "quotes what they are quoted at",
-            "Take the interpolation log-linear or linear-zero, or fit a smooth curve through all.",
+            _LOCAL_ONE,
         )
     while fails - works > 1:
         middle = (works + fails) // 2
@@ -176,7 +180,7 @@ def _misfit(flows: QuotedFlows, row: int, known: float) -> CurveError:
         why = ", because what it pays up to the quote before it is already worth as much"
     return CurveError(
         f"no curve gives the quote at {float(flows.term[row]):g} years what it is quoted at{why}",
-        "Check this quote and those beside it, or fit a smooth curve through all.",
+        _CHECK,
         rows=(row,),
     )
 

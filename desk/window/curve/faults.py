@@ -5,9 +5,10 @@ from __future__ import annotations
 import numpy as np
 
 from desk.book import Basis, BondFit, CurveBonds, CurveKind, LiabilityMethod
+from desk.rates.bootstrap import MENDS
 from desk.rates.curve_error import CurveError
 from desk.window.curve.edits import LEAST_RATE, MOST_RATE, quotes_fault
-from desk.window.curve.targets import Part
+from desk.window.curve.targets import Part, bonds_of
 from desk.window.parts import numbers
 
 __all__ = ["NO_BONDS", "QUOTED_KINDS", "fault_of", "least_bonds"]
@@ -88,7 +89,10 @@ def _tried(basis: Basis, part: Part) -> str:
         else:
             _ = basis.liability_curve
     except CurveError as error:
-        return f"{_places(basis, part, error.rows)}{_ended(error.found)} {error.mend}".strip()
+        mend = error.mend
+        if mend in MENDS and bonds_of(basis, part) is not None:
+            mend += " Or choose a smooth fit through the bonds."
+        return f"{_places(basis, part, error.rows)}{_ended(error.found)} {mend}".strip()
     except (ValueError, ArithmeticError) as error:
         return _ended(str(error))
     return ""

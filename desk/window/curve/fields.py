@@ -144,7 +144,6 @@ class CurveFields(QObject):
             "Convergence tolerance",
             unit="% a year",
             percent=True,
-            low=1e-8,
             high=0.01,
             sensible=(1e-5, 1e-3),
             hint="How far the forward rate may still be from the ultimate one there.",

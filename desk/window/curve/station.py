@@ -78,6 +78,7 @@ class CurveStation(Station):
         self.picture = CurvePicture(theme_switch)
         self.misfit = MisfitPicture(theme_switch)
         self.pages = CurvePages(theme_switch)
+        self.pages.take_keys_of(self)
         self.quotes, self.bonds, self.rates = self.pages.quotes, self.pages.bonds, self.pages.rates
         for teller in (self.picture, self.misfit, self.quotes, self.bonds, self.rates):
             teller.message.connect(self.message)

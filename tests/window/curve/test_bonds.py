@@ -13,7 +13,9 @@ from pytestqt.qtbot import QtBot
 
 from desk.book import BondFit, CurveKind
 from desk.window.curve.bond_figures import bond_figures, fit_in_words
+from desk.window.curve.faults import fault_of
 from desk.window.curve.station import CurveStation
+from desk.window.curve.targets import Part
 from tests.window.benches import Bench, a_fund
 from tests.window.curve.books import (
     TERMS,
@@ -179,6 +181,15 @@ def test_an_exact_fit_says_so_and_draws_no_rounding(bonded: CurveStation) -> Non
     choose(bonded.fields.bond_fit, "Smooth: Nelson-Siegel")
     assert bonded.fields.interpolation.isHidden()
     assert not bonded.misfit.isHidden()
+
+
+def test_a_smooth_fit_is_advised_where_bonds_give_no_exact_one() -> None:
+    yields = YIELDS.copy()
+    yields[5] = 0.9
+    basis = with_bonds(bonds=some_bonds(TERMS, yields), bond_fit=BondFit.EXACT).basis
+    fault = fault_of(basis, Part.CURVE)
+    assert "Check this quote and those beside it. Or choose a smooth fit through the bonds." in fault
+    assert "Or choose" not in fault_of(replace(basis, bonds=some_bonds(TERMS, YIELDS * 300)), Part.CURVE)
 
 
 def test_few_bonds_for_many_parameters_are_said() -> None:

@@ -343,6 +343,41 @@ def test_a_curve_that_cannot_converge_is_refused(station: CurveStation, bench: B
     assert bench.book.basis.convergence_point == 70.0
 
 
+def test_a_tolerance_is_taken_or_refused_with_its_reason(station: CurveStation, bench: Bench) -> None:
+    bench.edit_basis(extrapolation=Extrapolation.SMITH_WILSON, ultimate_forward_rate=0.04)
+    station.refresh_now()
+    line = station.fields.tolerance.line
+
+    def enter(text: str) -> None:
+        line.clear()
+        QTest.keyClicks(line, text)
+        QTest.keyClick(line, Qt.Key.Key_Return)
+
+    enter("0.0000001")
+    assert bench.book.basis.convergence_tolerance == pytest.approx(1e-9, rel=1e-12)
+    assert not station.stale_text
+    before = bench.book
+    for text in ("0", "-0.01"):
+        enter(text)
+        assert station.stale_text == (
+            "The tolerance is not above 0. One basis point is usual. The curve is unchanged."
+        )
+        assert bench.book is before
+        assert line.text() == "0.0000001"
+
+
+def test_ctrl_tab_goes_from_page_to_page(station: CurveStation, qtbot: QtBot) -> None:
+    station.activateWindow()
+    station.quotes.table.setFocus()
+    qtbot.waitUntil(station.quotes.table.hasFocus)
+    control, shift = Qt.KeyboardModifier.ControlModifier, Qt.KeyboardModifier.ShiftModifier
+    QTest.keyClick(station.quotes.table, Qt.Key.Key_Tab, control)
+    assert station.pages.current == "rates"
+    assert station.focusWidget() is station.rates.table
+    QTest.keyClick(station.rates.table, Qt.Key.Key_Backtab, control | shift)
+    assert station.pages.current == "source"
+
+
 @pytest.mark.parametrize("grid", [[], [[]], [["", ""]], [["Term", "Rate"]]])
 def test_cells_without_a_quote_are_said_to_hold_none(grid: list[list[str]]) -> None:
     assert read_cells(grid, "term").faults == ("There is no quote among what was pasted.",)

@@ -133,6 +133,7 @@ def test_an_edit_that_gives_no_curve_names_the_quote(station: CurveStation, benc
     before = bench.book
     assert not edit(station.quotes.table, 3, "rate", "60")
     assert "Quote at 10 years: " in station.stale_text
+    assert "smooth" not in station.stale_text
     assert "The curve is unchanged." in station.stale_text
     assert bench.book is before
 
