@@ -7,6 +7,7 @@ from dataclasses import replace
 from typing import Any
 
 import numpy as np
+from PySide6.QtCore import Qt
 from PySide6.QtWidgets import QWidget
 
 from desk.book import Book, Measure, ModelName
@@ -211,7 +212,9 @@ class AssetFields:
             field.setParent(None)
             field.deleteLater()
         self.fields, self._names = {}, names
-        before: QWidget = self._inner
+        before = self.mend.editor.previousInFocusChain() or self.mend.editor
+        while before.focusPolicy() == Qt.FocusPolicy.NoFocus and before is not self.mend.editor:
+            before = before.previousInFocusChain() or self.mend.editor
         for place, name in enumerate(names):
             made = {
                 "volatility": NumberField(

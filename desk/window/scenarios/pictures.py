@@ -344,8 +344,9 @@ class HistogramPicture(Picture):
         self._reading_place = place
         self._cursor.setPos(place)
         self._cursor.setVisible(True)
-        values = "  ·  ".join(f"{name} {text}" for name, text in self.readings_at(place))
-        self._say(f"x = {quantity.shown(place)}:  {values}")
+        # Short, for the picture may be narrow: what lies at or below the place, and its mean.
+        share, mean = (text for _, text in self.readings_at(place))
+        self._say(f"≤ {quantity.shown(place)}:  {share}; mean {mean}")
 
 
 def _year_sentence(quantity: Quantity, row: int) -> str:

@@ -50,14 +50,17 @@ class ValuesPicture(Picture):
             with_zero=True,
         )
         alone = len(distributions) == 1
+        far = max(float(each.histogram.edges[-1]) for each in distributions)
         for each in distributions:
             name = each.name.capitalize()
             if alone:
                 middles, heights, wide = drawn_bins(each.histogram, per)
                 self.add_bars(name, middles, heights, each.name, width=wide)
             else:
-                density = np.append(histogram_density(each.histogram) * per, 0.0)
-                self.add_line(name, each.histogram.edges, density, each.name, stepped=True)
+                # All end at one place, so that no name stands on the outline of another.
+                place = np.append(each.histogram.edges, far)
+                density = np.append(histogram_density(each.histogram) * per, [0.0, 0.0])
+                self.add_line(name, place, density, each.name, stepped=True)
             self.add_vertical(each.curve, "on the curve" if alone else f"{each.name} on the curve")
         if alone and ranges[0][0] < 0.0 < ranges[0][1]:
             self.add_vertical(0.0, "0")
@@ -79,9 +82,9 @@ class ValuesPicture(Picture):
 def _value_sentence(distributions: Sequence[Distribution], fit_error: float) -> str:
     if len(distributions) != 1 or distributions[0].name != "surplus":
         if not fit_error > 0.0:
-            return "The flows discounted along each path."
+            return "Flows discounted along each path."
         error = f"{fit_error:.0e}".replace("-", "\N{MINUS SIGN}")
-        return f"The flows discounted along each path, fitted at the nodes to {error}."
+        return f"Flows discounted along each path; error of the fit {error}."
     chance = numbers.rate(distributions[0].below_zero, 1, with_unit=True)
     error = numbers.rate(distributions[0].below_zero_se, 1, with_unit=True)
     return f"Below zero on {chance} ± {error} of the paths."

@@ -119,6 +119,20 @@ def test_assets_have_volatilities_and_in_the_real_world_premiums(
     assert set(form.assets.fields) == {("volatility", 0), ("premium", 0)}
 
 
+def test_the_keyboard_comes_to_the_assets_where_they_stand(station: ScenariosStation, bench: Bench) -> None:
+    """They are made later than what stands below them."""
+    bench.open(with_assets(a_fund()))
+    station.refresh_now()
+    fields = station.run_form.assets.fields
+    wanted = [fields["volatility", 0].editor, fields["volatility", 1].editor, station.run_form.paths.editor]
+    met, widget = [], station.run_form.run_button.nextInFocusChain()
+    while widget is not None and widget is not station.run_form.run_button:
+        if widget in wanted:
+            met.append(widget)
+        widget = widget.nextInFocusChain()
+    assert met == wanted
+
+
 def test_correlations_that_contradict_one_another_are_refused_or_mended(
     station: ScenariosStation, bench: Bench, qtbot: QtBot
 ) -> None:

@@ -313,5 +313,5 @@ def test_the_error_of_the_fitted_values_is_told(
     assert isinstance(part, ValuesPart)
     error = float(dict(simulation.provenance.settings)["surface_error"])
     assert 0.0 < error < 1e-10
-    told = part.both.description.rsplit(" to ", 1)[1].rstrip(".").replace("\N{MINUS SIGN}", "-")
+    told = part.both.description.rsplit(" fit ", 1)[1].rstrip(".").replace("\N{MINUS SIGN}", "-")
     assert float(told) == pytest.approx(error, rel=0.5)
