@@ -147,7 +147,7 @@ def checks_object(simulation: Simulation) -> list[dict[str, Any]]:
 
 
 def diagnostics_object(simulation: Simulation) -> dict[str, Any]:
-    """Means that are known beforehand, and the short rate against its law."""
+    """Means that are known beforehand, the short rate against its law, and the error of fitted values."""
     found = simulation.diagnostics
     rows = None
     if found is not None:
@@ -159,7 +159,17 @@ def diagnostics_object(simulation: Simulation) -> dict[str, Any]:
             autoregression_se=found.autoregression_se,
             expected_autoregression=found.expected_autoregression,
         )
-    return {"checks": checks_object(simulation), "short_rate_law": rows}
+    return {
+        "checks": checks_object(simulation),
+        "short_rate_law": rows,
+        "fit_error": fit_error(simulation),
+    }
+
+
+def fit_error(simulation: Simulation) -> float | None:
+    """Of the values of later flows fitted at the nodes, as a part of the value; None where none is told."""
+    told = dict(simulation.provenance.settings).get("surface_error")
+    return None if told is None else float(told)
 
 
 def beside_text(simulation: Simulation, *, currency: str) -> list[str]:
@@ -218,6 +228,9 @@ def checks_text(simulation: Simulation) -> str:
         ),
         [_check_row(check) for check in node_checks(simulation)],
     )
+    worst = fit_error(simulation)
+    if worst is not None and worst > 0.0:
+        made += f"\n\nValues of later flows are fitted at the nodes, to {worst:.0e} of the value at worst."
     found, rate = simulation.diagnostics, simulation.short_rate
     if found is None or not np.isfinite(found.rate_mean).any():
         return made

@@ -248,7 +248,9 @@ class Jobs(QObject):
                     job._on_done(value)
             elif state is JobState.FAILED:
                 job.error = value
-                _log.error("%s failed", job.title, exc_info=value)
+                # Faults of the data are told in the window: they are no failure of the program.
+                if not getattr(value, "faults", ()):
+                    _log.error("%s failed", job.title, exc_info=value)
                 if job._on_failed is not None:
                     job._on_failed(value)
             elif job._on_cancelled is not None:

@@ -75,6 +75,9 @@ def test_figures_are_those_of_the_run() -> None:
     assert run.diagnostics is not None
     assert law["sd"] == run.diagnostics.rate_sd[-1]
     assert law["autoregression"] == run.diagnostics.autoregression[-1]
+    fit_error = found["diagnostics"]["fit_error"]
+    assert fit_error == float(dict(run.provenance.settings)["surface_error"])
+    assert 0.0 <= fit_error < 1e-10
 
 
 def test_checks_tell_what_is_far_off() -> None:
@@ -129,3 +132,10 @@ def test_odd_runs_have_a_text(name: str) -> None:
     assert "Means over the paths that are known beforehand" in text
     assert "nan" not in text
     assert "inf " not in text
+
+
+@pytest.mark.parametrize("name", WHOLE)
+def test_the_error_of_fitted_values_is_told_where_there_is_one(name: str) -> None:
+    text = as_text.simulation_text(simulation_of(name), currency="EUR")
+    error = told(name)["diagnostics"]["fit_error"]
+    assert (f"fitted at the nodes, to {error:.0e} of the value" in text) == (error > 0.0)

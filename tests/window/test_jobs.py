@@ -11,6 +11,8 @@ import pytest
 from PySide6.QtCore import QObject
 from pytestqt.qtbot import QtBot
 
+from desk.book import Fault
+from desk.scenarios.calibration_records import CalibrationError
 from desk.tasks import Cancelled
 from desk.window.jobs import Job, Jobs, JobState
 
@@ -217,3 +219,20 @@ def test_jobs_can_have_a_parent(qtbot: QtBot) -> None:
     jobs = Jobs(owner)
     assert jobs.parent() is owner
     jobs.shutdown()
+
+
+def test_what_is_wrong_with_the_data_is_no_failure_of_the_program(
+    qtbot: QtBot, jobs: Jobs, caplog: pytest.LogCaptureFixture
+) -> None:
+    """It is told in the window, and not as a traceback beside it."""
+    fault = Fault("the history is too short", "more dates", "Add rows.", "History")
+
+    def work(**_: object) -> None:
+        raise CalibrationError((fault,))
+
+    said: list[BaseException] = []
+    job = jobs.start("Fitting", work, on_failed=said.append)
+    qtbot.waitUntil(lambda: bool(said))
+    assert job.state is JobState.FAILED
+    assert isinstance(said[0], CalibrationError)
+    assert caplog.text == ""

@@ -273,7 +273,9 @@ class ScenariosStation(Station):
         """What runs, what is stale, what failed, what stands in the way."""
         document, form, outlook = self.document, self.run_form, self.outlook
         running = document.is_simulating
-        obstacle = "" if outlook is None or not outlook.obstacle else f"{outlook.obstacle}."
+        obstacle = "" if outlook is None else outlook.obstacle
+        if obstacle:
+            obstacle = f"{obstacle[:1].upper()}{obstacle[1:]}."
         had_focus = form.run_button.hasFocus() or form.cancel_button.hasFocus()
         form.run_button.setEnabled(not obstacle)
         shown, hidden = (
