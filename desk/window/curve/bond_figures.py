@@ -5,6 +5,7 @@ from __future__ import annotations
 from dataclasses import dataclass, replace
 
 import numpy as np
+from numpy.typing import NDArray
 
 from desk.book import Basis, CurveBonds
 from desk.book.arrays import FloatArray
@@ -56,49 +57,90 @@ def bond_figures(basis: Basis, bonds: CurveBonds, fit: CurveFit | None) -> BondF
     plain = BondFigures(bonds.price, bonds.bond_yield, none, none, none)
     try:
         flows = _quotes(basis, bonds)
-        # A price of 100 without accrued interest is worth 100 and that interest.
-        at_par = replace(
-            bonds,
-            price=np.full(len(bonds), 100.0),
-            bond_yield=none,
-            is_clean=np.ones(len(bonds), dtype=bool),
-        )
-        accrued = _quotes(basis, at_par).target - 100.0
+        periods = _periods(basis, bonds)
     except ValueError:
         return plain
+    accrued = 100.0 * bonds.coupon * (1.0 - periods.left) / bonds.frequency
     price = np.where(np.isnan(bonds.price), flows.target - accrued * bonds.is_clean, bonds.price)
-    found = np.where(np.isnan(bonds.bond_yield), _street(basis, bonds, flows, flows.target), bonds.bond_yield)
+    bond_yield = bonds.bond_yield
+    if np.isnan(bond_yield).any():
+        bond_yield = np.where(np.isnan(bond_yield), _street(periods, flows, flows.target), bond_yield)
     if fit is None or fit.residual_price.shape != (len(bonds),):
-        return BondFigures(price, found, none, none, none)
-    fitted = _street(basis, bonds, flows, flows.target + fit.residual_price)
-    return BondFigures(price, found, fitted, fit.residual_bp, fit.residual_price)
+        return BondFigures(price, bond_yield, none, none, none)
+    fitted = _street(periods, flows, flows.target + fit.residual_price)
+    return BondFigures(price, bond_yield, fitted, fit.residual_bp, fit.residual_price)
 
 
 def _quotes(basis: Basis, bonds: CurveBonds) -> QuotedFlows:
     return bond_quotes(bonds, valuation_date=basis.valuation_date, day_count=basis.day_count)
 
 
-def _street(basis: Basis, bonds: CurveBonds, flows: QuotedFlows, target: FloatArray) -> FloatArray:
-    """Yields over coupon periods at which the bonds are worth `target`; NaN where none is found."""
+@dataclass(frozen=True, eq=False)
+class _Periods:
+    """Payments of m bonds by coupon periods from the valuation date.
+
+    Attributes
+    ----------
+    left : ndarray, shape (m,)
+        The part of the running period that is left.
+    each : ndarray, shape (m,)
+        Periods a year.
+    instrument, time, amount : ndarray, shape (n,)
+        Of each payment its bond, when it is due [periods], and how much it is [per 100].
+    first : ndarray, shape (m,)
+        The first payment of each bond.
+    """
+
+    left: FloatArray
+    each: FloatArray
+    instrument: NDArray[np.intp]
+    time: FloatArray
+    amount: FloatArray
+    first: NDArray[np.intp]
+
+
+def _periods(basis: Basis, bonds: CurveBonds) -> _Periods:
+    count = len(bonds)
+    # Coupons of 100 % at a clean price of 100 have all the dates, and accrue what has passed of the period.
+    alike = replace(
+        bonds,
+        coupon=np.ones(count),
+        price=np.full(count, 100.0),
+        bond_yield=np.full(count, np.nan),
+        is_clean=np.ones(count, dtype=bool),
+    )
+    flows = _quotes(basis, alike)
     each = bonds.frequency.astype(np.float64)
+    left = 1.0 - (flows.target / 100.0 - 1.0) * each
+    own = np.asarray(flows.instrument, dtype=np.intp)
+    first = np.flatnonzero(np.diff(own, prepend=-1))
+    amount = (100.0 * bonds.coupon / each)[own]
+    amount[np.append(first[1:], own.size) - 1] += 100.0
+    return _Periods(left, each, own, left[own] + np.arange(own.size) - first[own], amount, first)
+
+
+def _street(periods: _Periods, flows: QuotedFlows, target: FloatArray) -> FloatArray:
+    """Yields over coupon periods at which the bonds are worth `target`; NaN where none is found."""
+    own, each = periods.instrument, periods.each
     with np.errstate(all="ignore"):
-        continuous = flow_yields(flows, target=target)
-        if np.isnan(continuous).any():
-            return np.full(len(bonds), np.nan)
-        rate = each * np.expm1(continuous / each)
-        duration = flows.sums(flows.amount * flows.time * np.exp(-continuous[flows.instrument] * flows.time))
+        growth = flow_yields(flows, target=target) / each
+        if np.isnan(growth).any():
+            return np.full(each.size, np.nan)
         for _ in range(_ROUNDS):
-            priced = replace(bonds, price=np.full(len(bonds), np.nan), bond_yield=rate)
-            gap = _quotes(basis, priced).target - target
-            step = gap / duration * (1.0 + rate / each)
-            rate = rate + step
+            worth = periods.amount * np.exp(-growth[own] * periods.time)
+            slope = np.add.reduceat(worth * periods.time, periods.first)
+            step = (np.add.reduceat(worth, periods.first) - target) / slope
+            growth = growth + step
             if np.abs(step).max(initial=0.0) < _REST:
                 break
-    return np.asarray(rate)
+        return np.asarray(each * np.expm1(growth))
 
 
-def fit_in_words(bonds: CurveBonds, fit: CurveFit, *, is_exact: bool) -> str:
-    """How near a curve comes to its bonds, in a sentence or two."""
+def fit_in_words(bonds: CurveBonds, fit: CurveFit, *, is_exact: bool, name_first: bool = False) -> str:
+    """How near a curve comes to its bonds, in a sentence or two.
+
+    With `name_first` the bond furthest off comes before the rest, for a narrow place that may cut its end.
+    """
     known = np.isfinite(fit.residual_bp) & fit.is_used
     if not known.any():
         return ""
@@ -110,10 +152,11 @@ def fit_in_words(bonds: CurveBonds, fit: CurveFit, *, is_exact: bool) -> str:
     if is_exact and fit.largest_bp < 5e-7:
         return f"The curve reprices {'the' if used == 1 else 'all'} {count} {plural} exactly."
     largest = numbers.signed(float(fit.residual_bp[row]), 1)
-    text = (
-        f"Root mean square misfit {numbers.number(fit.rmse_bp, 1)} bp over {count} {plural}; the largest "
-        f"{largest} bp, {name}."
-    )
+    whole = f"oot mean square misfit {numbers.number(fit.rmse_bp, 1)} bp over {count} {plural}"
+    if name_first:
+        text = f"{name}: {largest} bp, the largest; r{whole}."
+    else:
+        text = f"R{whole}; the largest {largest} bp, {name}."
     if fit.rmse_bp > _POOR:
         text += " That is no fit: check the bonds furthest off."
     parameters = {NelsonSiegel: 4, Svensson: 6}.get(type(fit.curve), 0)

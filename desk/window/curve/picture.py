@@ -10,7 +10,8 @@ from PySide6.QtWidgets import QVBoxLayout, QWidget
 from desk.book.arrays import FloatArray
 from desk.rates.compounding import Compounding, from_continuous
 from desk.rates.fitting import CurveFit
-from desk.window.curve.shown import Shown
+from desk.window.curve.marks import Marks
+from desk.window.curve.shown import Dots, Shown
 from desk.window.curve.words import stated_as
 from desk.window.parts import numbers
 from desk.window.parts.labels import ElidedLabel
@@ -24,6 +25,11 @@ _MOST_BEYOND = 3.0
 """Shown at most this many times as far as the last term."""
 _LEAST_HEIGHT = 0.005
 """Shown above and below a flat curve [1/year]."""
+_ON_CURVE = "On the curve"
+_NAME_BESIDE = 0.1
+"""How far the name of the bond yields stands from them, as a part of the height of what is drawn."""
+_MOST_LINES = 3
+"""Of the sentence and the reading."""
 _DIGITS = 10
 """To which rates are drawn: beyond them there is only noise."""
 _USUAL_REACH = 40.0
@@ -39,11 +45,11 @@ def reach(shown: Shown, last_flow: float) -> float:
 
 
 class _RoomyPicture(Picture):
-    """A picture whose sentence and reading may go over two lines, in room that does not change."""
+    """A picture whose sentence and reading may go over some lines, in room that does not change."""
 
     def __init__(self, title: str, theme_switch: ThemeSwitch) -> None:
         super().__init__(title, theme_switch)
-        former, self._strip = self._strip, ElidedLabel(lines=2)
+        former, self._strip = self._strip, ElidedLabel(lines=_MOST_LINES)
         keep_look(self._strip, "soft")
         self._strip_room = QWidget()
         column = QVBoxLayout(self._strip_room)
@@ -118,12 +124,15 @@ class CurvePicture(_RoomyPicture):
         """
         factor = "Index" if shown.is_index else "Discount"
         others = (f"{other_name}: zero", f"{other_name}: forward") if other is not None else ()
-        for name in set(self.names) - {factor, "Forward", "Zero", *others, shown.quotes.name}:
+        quotes = shown.quotes
+        marks = {quotes.name} if quotes.on_curve is None else {quotes.name, _ON_CURVE}
+        for name in set(self.names) - {factor, "Forward", "Zero", *others, *marks}:
             self.remove(name)
         self._shown, self._other, self._compounding, self._until = shown, other, compounding, until
         self._other_name = other_name
         # Beside another picture there is less width.
-        self.set_lines(2 if other is not None or (shown.fit is not None and not shown.knots.size) else 1)
+        by_formula = shown.fit is not None and not shown.knots.size
+        self.set_lines((2 if other is not None or by_formula else 1) + (quotes.on_curve is not None))
         right = "Price index" if shown.is_index else "Discount factor"
         self.set_right_axis(right, "today 1" if shown.is_index else "", digits=4)
         self.set_title(title)
@@ -151,8 +160,9 @@ class CurvePicture(_RoomyPicture):
         self._give_height(
             zero if other is None else np.append(zero, other.zero(time, compounding)), _LEAST_HEIGHT
         )
-        quotes = shown.quotes
-        if quotes.term.size:
+        if quotes.on_curve is not None:
+            self._add_bonds(quotes, shown, compounding)
+        elif quotes.term.size:
             order = np.argsort(quotes.term, kind="stable")
             self.add_dots(
                 quotes.name, quotes.term[order], from_continuous(quotes.rate[order], compounding), "rates"
@@ -160,7 +170,29 @@ class CurvePicture(_RoomyPicture):
         is_beyond = np.isfinite(shown.last_quoted) and shown.last_quoted < until
         last = "bond" if shown.fit is not None else "quote"
         self.shade_from(shown.last_quoted if is_beyond else None, f"beyond the last {last}")
-        self.set_description(_sentence(shown, compounding, until))
+        self.set_description(f"{_sentence(shown, compounding, until)}{_of_the_marks(quotes)}")
+
+    def _add_bonds(self, quotes: Dots, shown: Shown, compounding: Compounding) -> None:
+        """Draw the yields of bonds, quoted and on the curve, in no colour of a curve: they are none."""
+        assert quotes.on_curve is not None
+        order = np.argsort(quotes.term, kind="stable")
+        term = quotes.term[order]
+        quoted, on_curve = (
+            from_continuous(some[order], compounding) for some in (quotes.rate, quotes.on_curve)
+        )
+        # On the side where the zero rates are not, beyond the last bonds.
+        last = term >= 0.75 * term[-1]
+        zero = shown.zero(term[last], compounding)
+        values = np.concatenate((quoted, on_curve, zero))
+        apart = _NAME_BESIDE * max(float(np.ptp(values[np.isfinite(values)])), _LEAST_HEIGHT)
+        if np.nanmean(zero - on_curve[last]) >= 0.0:
+            level = float(np.nanmin((quoted[last], on_curve[last]))) - apart
+        else:
+            level = float(np.nanmax((quoted[last], on_curve[last]))) + apart
+        self._put(Marks(_ON_CURVE, "ink", symbol="tick"), 29).set(term, on_curve)
+        self._put(Marks(quotes.name, "ink", symbol="o"), 30).set(
+            term, quoted, name_at=(float(term[-1]), level)
+        )
 
     def clear(self) -> None:
         """Take out everything but the axes."""
@@ -173,6 +205,9 @@ class CurvePicture(_RoomyPicture):
         if self._shown is not None and self._other is not None and 0.0 <= x <= self._until:
             apart = self._shown.zero(x, self._compounding) - self._other.zero(x, self._compounding)
             found["Difference"] = f"{numbers.signed(1e4 * float(apart), 1)} bp"
+        if self._shown is not None and _ON_CURVE in found:
+            on_curve = found.pop(_ON_CURVE)
+            found["Bond yield"] = f"{found.pop(self._shown.quotes.name)} quoted, {on_curve} on the curve"
         if self._shown is not None and x > self._shown.last_quoted:
             found["extrapolated"] = ""
         other = self._other_name
@@ -187,13 +222,15 @@ class MisfitPicture(_RoomyPicture):
     def __init__(self, theme_switch: ThemeSwitch) -> None:
         super().__init__("Difference in zero rates", theme_switch)
         self.set_lines(2)
-        self._bond_names: dict[float, list[str]] = {}
+        self._bond_terms: FloatArray = np.zeros(0)
+        self._bond_names: list[str] = []
 
     def show_difference(
         self, shown: Shown, other: Shown, *, words: str, until: float, compounding: Compounding
     ) -> None:
         """Draw the zero rates of one curve less those of another, as `words` say, up to `until` [years]."""
         self._only("Zero rates")
+        self.set_lines(2)
         self.set_range()
         self.set_title("Difference in zero rates")
         self.set_axes("Term", "years", "Difference", "bp", y_digits=1, with_zero=True)
@@ -213,34 +250,41 @@ class MisfitPicture(_RoomyPicture):
         """Draw the misfit of bonds at their maturities [years]; those left out of the fit stand apart."""
         self._only("Misfit", "Left out")
         self.shade_from(None)
-        for at, name in zip(term.tolist(), names, strict=True):
-            self._bond_names.setdefault(at, []).append(name)
+        self.set_lines(3)
         self.set_title("Misfit of each bond")
         self.set_axes("Maturity", "years", "Fitted less quoted yield", "bp", y_digits=2, with_zero=True)
         order = np.argsort(term, kind="stable")
+        self._bond_terms, self._bond_names = term[order], [names[row] for row in order.tolist()]
         self.set_range(x=(0.0, 1.05 * float(term.max())))
         used = fit.is_used[order]
-        self.add_dots("Misfit", term[order][used], fit.residual_bp[order][used], "rates")
+        misfit = fit.residual_bp[order]
+        self._put(Marks("Misfit", "ink", symbol="o"), 30).set(term[order][used], misfit[used])
         if used.all():
             self.remove("Left out")
         else:
-            self.add_dots(
-                "Left out", term[order][~used], fit.residual_bp[order][~used], "ink_soft", symbol="x"
-            )
+            self._put(Marks("Left out", "ink_soft", symbol="x"), 30).set(term[order][~used], misfit[~used])
         self.set_description(words)
 
     def _only(self, *kept: str) -> None:
-        self._bond_names = {}
+        self._bond_terms, self._bond_names = np.zeros(0), []
         for name in set(self.names) - set(kept):
             self.remove(name)
 
     def readings_at(self, x: float) -> list[tuple[str, str]]:
         """With the bonds' names."""
         found = super().readings_at(x)
-        names = [
-            name for at, some in self._bond_names.items() if np.isclose(at, x, rtol=1e-9) for name in some
-        ]
+        slack = 1e-9 * max(1.0, abs(x))
+        first, stop = np.searchsorted(self._bond_terms, (x - slack, x + slack))
+        names = self._bond_names[first:stop]
         return [(", ".join(names), ""), *found] if names else found
+
+
+def _of_the_marks(quotes: Dots) -> str:
+    """What rings and ticks are, after another sentence."""
+    if quotes.on_curve is None:
+        return ""
+    without = ", without the liability spread" if quotes.spread else ""
+    return f" Rings: bond yields as quoted; ticks: the same bonds' yields on the curve{without}."
 
 
 def _sentence(shown: Shown, compounding: Compounding, until: float) -> str:

@@ -56,11 +56,26 @@ class SpreadCurve:
 
 @dataclass(frozen=True, eq=False)
 class Dots:
-    """Quotes in the picture: terms [years] and continuous rates [1/year], each shape (q,)."""
+    """Quotes in the picture.
+
+    Attributes
+    ----------
+    name : str
+    term : ndarray, shape (q,)
+        [years]
+    rate : ndarray, shape (q,)
+        Continuous [1/year].
+    on_curve : ndarray, shape (q,), or None
+        Of bonds: the yields at their values on the curve, continuous [1/year].
+    spread : float
+        In the curve that is shown and not in the yields [1/year].
+    """
 
     name: str
     term: FloatArray
     rate: FloatArray
+    on_curve: FloatArray | None = None
+    spread: float = 0.0
 
 
 @dataclass(frozen=True, eq=False)
@@ -144,7 +159,7 @@ def shown_of(basis: Basis, part: Part) -> Shown | None:
             drawn,
             basis.compounding,
             last,
-            _bond_dots(basis.quoted_bonds),
+            _bond_dots(basis.quoted_bonds, basis.curve_fit),
             drawn.terms if isinstance(drawn, Curve) else _NONE,
             basis.curve_fit,
             alpha,
@@ -170,7 +185,7 @@ def _liabilities(basis: Basis) -> Shown:
             curve,
             basis.compounding,
             float(bonds.term.max()),
-            _bond_dots(bonds),
+            _bond_dots(bonds, basis.liability_curve_fit, basis.liability_spread),
             own.terms if isinstance(own, Curve) else _NONE,
             basis.liability_curve_fit,
         )
@@ -184,8 +199,10 @@ def _liabilities(basis: Basis) -> Shown:
     return Shown(curve, base.compounding, base.last_quoted, Dots("", _NONE, _NONE), knots)
 
 
-def _bond_dots(flows: QuotedFlows) -> Dots:
-    return Dots("Bond yield", flows.term, flow_yields(flows))
+def _bond_dots(flows: QuotedFlows, fit: CurveFit | None, spread: float = 0.0) -> Dots:
+    quoted = flow_yields(flows)
+    on_curve = None if fit is None else quoted + 1e-4 * fit.residual_bp
+    return Dots("Bond yields", flows.term, quoted, on_curve, spread)
 
 
 def pasted_curve(terms: FloatArray, rates: FloatArray, like: Shown) -> Shown:

@@ -305,7 +305,8 @@ class CurveStation(Station):
                 compounding=compounding,
             )
         elif bonds is not None and _has_misfits(shown, len(bonds)) and shown.fit is not None:
-            words = fit_in_words(bonds, shown.fit, is_exact=is_exact(basis, self.target.part))
+            exact = is_exact(basis, self.target.part)
+            words = fit_in_words(bonds, shown.fit, is_exact=exact, name_first=True)
             self.misfit.show_misfits(shown.quotes.term, shown.fit, bonds.names, words)
         else:
             self.misfit.hide()

@@ -3,19 +3,22 @@
 from __future__ import annotations
 
 from dataclasses import replace
+from pathlib import Path
 
 import numpy as np
+import pyqtgraph as pg
 import pytest
 from PySide6.QtCore import QLocale, Qt
 from PySide6.QtGui import QGuiApplication
 from PySide6.QtTest import QTest
 from pytestqt.qtbot import QtBot
 
-from desk.book import BondFit, CurveKind
+from desk.book import BondFit, CurveKind, LiabilityMethod
 from desk.window.curve.bond_figures import bond_figures, fit_in_words
 from desk.window.curve.faults import fault_of
+from desk.window.curve.marks import Marks
 from desk.window.curve.station import CurveStation
-from desk.window.curve.targets import Part
+from desk.window.curve.targets import Part, Target
 from tests.window.benches import Bench, a_fund
 from tests.window.curve.books import (
     TERMS,
@@ -150,6 +153,92 @@ def test_the_table_and_the_words_say_how_each_bond_fits(bonded: CurveStation, be
     (name, _), (_, misfit) = bonded.misfit.readings_at(float(bench.book.basis.quoted_bonds.term[worst]))
     assert name == f"Gilt {2031 + int(TERMS[worst])}"
     assert misfit.replace("\N{MINUS SIGN}", "-") == f"{fit.residual_bp[worst]:.2f}"
+
+
+def test_the_picture_says_what_rings_and_ticks_are(bonded: CurveStation, bench: Bench) -> None:
+    basis = bench.book.basis
+    fit = basis.curve_fit
+    assert fit is not None
+    picture = bonded.picture
+    assert {"Bond yields", "On the curve"} <= set(picture.names)
+    assert picture.description.endswith(
+        "Rings: bond yields as quoted; ticks: the same bonds' yields on the curve."
+    )
+    picture.settle()
+    assert "Bond yields" in {item.text() for item in picture._names}
+    flows = basis.quoted_bonds
+    term, own = float(flows.term[4]), flows.instrument == 4
+    # Discounted at each of the two yields the bond is worth what is quoted, and its value on the curve.
+    read = dict(picture.readings_at(term))["Bond yield"]
+    yields = [float(part.split()[0]) / 100.0 for part in read.split(", ")]
+    for rate, worth in zip(yields, (flows.target[4], flows.values(basis.curve)[4]), strict=True):
+        assert flows.amount[own] @ (1.0 + rate) ** -flows.time[own] == pytest.approx(worth, abs=0.004)
+    assert abs(yields[0] - yields[1]) > 2e-5
+    assert "Bond yield" not in dict(picture.readings_at(term + 0.5))
+    choose(bonded.fields.curve_kind, "Zero rates")
+    assert "On the curve" not in picture.names
+    assert "Rings" not in picture.description
+
+
+def test_a_spread_that_the_yields_do_not_have_is_said(bonded: CurveStation, bench: Bench) -> None:
+    bench.edit_basis(
+        liability_method=LiabilityMethod.CORPORATE_BONDS, liability_bonds=some_bonds(), liability_spread=0.01
+    )
+    bonded.look_at(Target(Part.LIABILITIES))
+    assert bonded.picture.description.endswith("on the curve, without the liability spread.")
+
+
+@pytest.mark.parametrize("size", [(900, 560), (1130, 586)])
+def test_the_line_over_the_misfits_keeps_the_bonds_name(
+    bonded: CurveStation, bench: Bench, size: tuple[int, int]
+) -> None:
+    bonds = some_bonds()
+    names = tuple(f"Treasury stock of {name}, third series" for name in bonds.names)
+    bench.edit_basis(bonds=replace(bonds, names=names))
+    bonded.resize(*size)
+    bonded.refresh_now()
+    fit = bench.book.basis.curve_fit
+    assert fit is not None
+    worst = names[int(np.abs(fit.residual_bp).argmax())]
+    assert worst in " ".join(bonded.misfit._strip.shown)
+    assert worst in bonded.misfit.description
+
+
+def test_many_marks_are_stamped_on_the_screen_and_drawn_into_files(
+    bonded: CurveStation, bench: Bench, tmp_path: Path
+) -> None:
+    """Drawn one by one they would hold up the window; stamped they would be images in an SVG file."""
+    terms = np.linspace(1.0, 28.0, 61)
+    bonds = some_bonds(terms, 0.02 + 0.01 * np.sin(terms))
+    days = (365.25 * terms).astype(int)
+    bench.edit_basis(bonds=replace(bonds, maturity=np.datetime64("2031-03-31") + days))
+    bonded.redrawer.stop()
+    fit = bench.book.basis.curve_fit
+    assert fit is not None
+    bonded.misfit.show_misfits(terms, fit, bonds.names, "")
+    bonded.misfit.show()
+    bonded.misfit.settle()
+    marks = bonded.misfit._series["Misfit"]
+    assert isinstance(marks, Marks)
+    drawn: list[bool] = []
+    real = pg.ScatterPlotItem.paint
+
+    def noted(item: pg.ScatterPlotItem, *more: object) -> None:
+        if item is marks.item:
+            drawn.append(bool(item.opts["useCache"]))
+        real(item, *more)
+
+    with pytest.MonkeyPatch.context() as patch:
+        patch.setattr(pg.ScatterPlotItem, "paint", noted)
+        bonded.misfit.plot.viewport().repaint()
+        assert drawn == [True]
+        for name in ("misfit.svg", "misfit.png"):
+            drawn.clear()
+            bonded.misfit.save(tmp_path / name)
+            assert drawn[-1] is False, name
+    assert "<image" not in (tmp_path / "misfit.svg").read_text(encoding="utf-8")
+    marks.set(terms[:60], terms[:60])
+    assert not marks.item.opts["useCache"]
 
 
 def test_price_follows_from_yield_and_yield_from_price() -> None:
