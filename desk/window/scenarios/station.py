@@ -249,6 +249,8 @@ class ScenariosStation(Station):
             self._shown_book = book
             self.run_form.show_book(book)
             self._look_ahead(book)
+            # Now, for during a run all goes slower.
+            self._preparing.start()
         self._show_state()
         simulation = document.simulation
         if simulation is None:
