@@ -177,7 +177,7 @@ def _first_full_row(sheet: SourceSheet) -> int | None:
     for column in sheet.data.columns:
         held += column.filled[filled]
     # The column of the paths often has no heading, which makes the headings the shorter row.
-    return int(filled[np.argmax(held >= max(held.max() - 1, 1))])
+    return int(filled[np.argmax(held >= max(int(held.max()) - 1, 1))])
 
 
 def _take_years(

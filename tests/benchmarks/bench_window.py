@@ -121,6 +121,7 @@ def _steps(window: object, folder: Path, longest: _Longest) -> Iterator[Callable
     yield lambda: quiet() and all(key in window._stations for key in window._entries)
     # Only now, for the window loads them beside its event loop.
     from desk.window.report.station import ReportStation
+    from desk.window.scenarios.further_parts import ValuesPart
     from desk.window.scenarios.station import ScenariosStation
 
     longest.enter("book opened and valued")
@@ -137,7 +138,7 @@ def _steps(window: object, folder: Path, longest: _Longest) -> Iterator[Callable
     longest.enter("present values shown")
     scenarios = window.station("scenarios")
     assert isinstance(scenarios, ScenariosStation)
-    scenarios.quantity.setCurrentIndex(2)
+    scenarios.show_part(ValuesPart.key)
     yield quiet
     longest.enter("report laid out")
     window.show_station("report")

@@ -75,7 +75,9 @@ def test_published_treasury_curve() -> None:
 def test_bonds_at_published_par_yields_are_fitted_back() -> None:
     """Bonds of every half year with the par coupons of the published curve, at par, give back the published
     zero rates and par yields."""
-    maturity = np.arange("2002-07", "2032-02", 6, dtype="datetime64[M]").astype("datetime64[D]") + 30
+    maturity = np.arange("2002-07", "2032-02", 6, dtype="datetime64[M]").astype(
+        "datetime64[D]"
+    ) + np.timedelta64(30, "D")
     curve = TREASURY.curve
     count = maturity.size
 

@@ -47,7 +47,7 @@ def _square_root_path(
     return np.array(rate)
 
 
-IRREGULAR = np.random.default_rng(1).choice([1 / 52, 1 / 12, 0.25], 1500)
+IRREGULAR = np.asarray(np.random.default_rng(1).choice([1 / 52, 1 / 12, 0.25], 1500), dtype=np.float64)
 
 
 def test_vasicek_recovered_from_irregular_steps() -> None:
@@ -261,7 +261,7 @@ def test_gaps_and_short_histories_are_remarked_on() -> None:
         (np.arange(20.0)[::-1], np.arange(20.0), "comes before"),
         (np.arange(20.0), np.full(20, 0.03), "never moves"),
         (np.arange(20.0), np.append(np.arange(19.0), np.nan), "rate in row 20"),
-        (np.full(20, np.datetime64("NaT")), np.arange(20.0), "date in row 1"),
+        (np.full(20, np.datetime64("NaT", "D")), np.arange(20.0), "date in row 1"),
         (np.arange(20.0), np.zeros((20, 2)), "one rate a date"),
         (np.arange(20.0), 1e200 * np.arange(20.0), "beyond any sense"),
     ],

@@ -66,7 +66,7 @@ def test_loadings_are_the_bonds_of_the_model() -> None:
 @pytest.mark.parametrize("model", [ONE, TWO], ids=["one factor", "two factors"])
 def test_likelihood_three_ways(model: PanelModel) -> None:
     """The band matrix, the filter by prediction errors, and all quotes as one normal vector (scipy)."""
-    steps = np.random.default_rng(1).choice([1 / 52, 1 / 12, 1.0], 24)
+    steps = np.asarray(np.random.default_rng(1).choice([1 / 52, 1 / 12, 1.0], 24), dtype=np.float64)
     panel = _panel(model, steps, 2, missing=0.2)
     panel.rate[5] = np.nan
     gap = np.abs(panel.time[:, None] - panel.time)

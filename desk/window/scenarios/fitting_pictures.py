@@ -63,7 +63,7 @@ class HistoryPicture(Picture):
 def _years(date: NDArray[np.datetime64]) -> FloatArray:
     """Dates as years with their parts."""
     start = date.astype("datetime64[Y]")
-    length = (start + 1).astype("datetime64[D]") - start.astype("datetime64[D]")
+    length = (start + np.timedelta64(1, "Y")).astype("datetime64[D]") - start.astype("datetime64[D]")
     part = (date - start.astype("datetime64[D]")) / length
     return np.asarray(1970.0 + start.astype(np.float64) + part)
 
