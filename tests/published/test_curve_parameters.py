@@ -75,9 +75,8 @@ def test_published_treasury_curve() -> None:
 def test_bonds_at_published_par_yields_are_fitted_back() -> None:
     """Bonds of every half year with the par coupons of the published curve, at par, give back the published
     zero rates and par yields."""
-    maturity = np.arange("2002-07", "2032-02", 6, dtype="datetime64[M]").astype(
-        "datetime64[D]"
-    ) + np.timedelta64(30, "D")
+    first = np.arange("2002-07", "2032-02", 6, dtype="datetime64[M]").astype("datetime64[D]")
+    maturity = first + np.full(first.size, 30)
     curve = TREASURY.curve
     count = maturity.size
 
