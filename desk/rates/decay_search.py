@@ -6,6 +6,7 @@ the decays τ, one row a start: all starts of a search move at the same time.
 
 from __future__ import annotations
 
+from abc import ABC, abstractmethod
 from dataclasses import dataclass
 
 import numpy as np
@@ -137,7 +138,7 @@ def _distinct(tried: FloatArray, costs: FloatArray) -> FloatArray:
     return tried[order[is_new]]
 
 
-class _Errors:
+class _Errors(ABC):
     """Errors of yield and their slopes, for many sets of parameters at a time.
 
     Attributes
@@ -212,13 +213,13 @@ class _Errors:
             np.concatenate((self.sums(shapes), about_slope), axis=-1),
         )
 
+    @abstractmethod
     def errors(self, factor: FloatArray) -> FloatArray:
         """Errors at discount factors."""
-        raise NotImplementedError
 
+    @abstractmethod
     def sums(self, per_time: FloatArray) -> FloatArray:
         """Sums over the payments of each bond, by the scale of the bond; dimensions as given."""
-        raise NotImplementedError
 
 
 class _Whole(_Errors):

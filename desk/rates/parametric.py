@@ -10,6 +10,7 @@ Paper 4871.
 from __future__ import annotations
 
 import math
+from abc import ABC, abstractmethod
 from dataclasses import dataclass, fields
 
 import numpy as np
@@ -45,14 +46,14 @@ def loadings(time: ArrayLike, decay: ArrayLike) -> tuple[FloatArray, FloatArray]
         return slope, np.asarray(slope - np.exp(-ratio))
 
 
-class _Formula:
+class _Formula(ABC):
     """What both formulas share: the exponent from the zero rate and its slope."""
 
     compounding: Compounding
 
+    @abstractmethod
     def _stated(self, time: FloatArray) -> tuple[FloatArray, FloatArray]:
         """``z`` and ``z + t dz/dt`` in the compounding of the parameters [1/year]."""
-        raise NotImplementedError
 
     def discount(self, time: ArrayLike) -> FloatArray:
         """Discount factors ``P(0, time)``.

@@ -15,7 +15,12 @@ from PySide6.QtCore import QLocale
 from PySide6.QtWidgets import QApplication
 from pytestqt.qtbot import QtBot
 
+from desk.window.document import Document
+from desk.window.jobs import Jobs
+from desk.window.main_window import MainWindow
 from desk.window.parts.theme import ThemeSwitch
+from desk.window.settings import Settings
+from desk.window.stations import all_stations
 from tests.window.frame import Frame
 
 
@@ -47,6 +52,27 @@ def theme_switch(qapp: QApplication) -> Iterator[ThemeSwitch]:
     yield switch
     switch.set_mode("light")
     switch.deleteLater()
+
+
+@pytest.fixture
+def window(qtbot: QtBot, tmp_path: Path, theme_switch: ThemeSwitch) -> Iterator[MainWindow]:
+    """The window as it is, with settings of its own."""
+    jobs = Jobs()
+    document = Document(jobs)
+    made = MainWindow(
+        jobs=jobs,
+        document=document,
+        settings=Settings(tmp_path / "settings.ini"),
+        theme_switch=theme_switch,
+        stations=all_stations(),
+    )
+    qtbot.addWidget(made, before_close_func=lambda _: document.stop())
+    made.resize(1280, 720)
+    made.show()
+    yield made
+    made.discard_changes()
+    made.close()
+    jobs.shutdown()
 
 
 @pytest.fixture

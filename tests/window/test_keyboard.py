@@ -2,7 +2,6 @@
 
 from __future__ import annotations
 
-from collections.abc import Iterator
 from itertools import pairwise
 from pathlib import Path
 
@@ -13,38 +12,13 @@ from PySide6.QtWidgets import QAbstractButton, QApplication, QLabel, QWidget
 from pytestqt.qtbot import QtBot
 
 from desk.places import demo_books
-from desk.window.document import Document
-from desk.window.jobs import Jobs
 from desk.window.main_window import MainWindow
-from desk.window.parts.theme import ThemeSwitch
 from desk.window.report.station import ReportStation
 from desk.window.scenarios.station import ScenariosStation
-from desk.window.settings import Settings
 from desk.window.standing.station import StandingStation
 from desk.window.stations import StationEntry, all_stations
 
 KEYS = [entry.key for entry in all_stations()]
-
-
-@pytest.fixture
-def window(qtbot: QtBot, tmp_path: Path, theme_switch: ThemeSwitch) -> Iterator[MainWindow]:
-    """The window as it is, with settings of its own."""
-    jobs = Jobs()
-    document = Document(jobs)
-    made = MainWindow(
-        jobs=jobs,
-        document=document,
-        settings=Settings(tmp_path / "settings.ini"),
-        theme_switch=theme_switch,
-        stations=all_stations(),
-    )
-    qtbot.addWidget(made, before_close_func=lambda _: document.stop())
-    made.resize(1280, 720)
-    made.show()
-    yield made
-    made.discard_changes()
-    made.close()
-    jobs.shutdown()
 
 
 @pytest.fixture

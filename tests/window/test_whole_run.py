@@ -3,7 +3,6 @@
 from __future__ import annotations
 
 import json
-from collections.abc import Iterator
 from pathlib import Path
 
 import openpyxl
@@ -13,37 +12,12 @@ from pytestqt.qtbot import QtBot
 from desk.batch import main
 from desk.places import demo_books
 from desk.report.as_json import simulation_object, standing_object
-from desk.window.document import Document
-from desk.window.jobs import Jobs
 from desk.window.main_window import MainWindow
-from desk.window.parts.theme import ThemeSwitch
 from desk.window.report.station import ReportStation
-from desk.window.settings import Settings
 from desk.window.stations import all_stations
 
 DEMO_BOOKS = sorted(path.name for path in demo_books().glob("*.xlsx"))
 PATIENCE = 60_000
-
-
-@pytest.fixture
-def window(qtbot: QtBot, tmp_path: Path, theme_switch: ThemeSwitch) -> Iterator[MainWindow]:
-    """The window as it is, with settings of its own."""
-    jobs = Jobs()
-    document = Document(jobs)
-    made = MainWindow(
-        jobs=jobs,
-        document=document,
-        settings=Settings(tmp_path / "settings.ini"),
-        theme_switch=theme_switch,
-        stations=all_stations(),
-    )
-    qtbot.addWidget(made, before_close_func=lambda _: document.stop())
-    made.resize(1280, 720)
-    made.show()
-    yield made
-    made.discard_changes()
-    made.close()
-    jobs.shutdown()
 
 
 def cells_of(path: Path) -> dict[str, list[object]]:
